@@ -1,0 +1,1 @@
+"""How this lab's probes lose sensitivity: arrays in, dataclasses out; nothing of the database."""

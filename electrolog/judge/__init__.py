@@ -1,0 +1,1 @@
+"""From a forecast to a decision: limits, verdict, what would change it."""

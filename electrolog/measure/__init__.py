@@ -1,0 +1,1 @@
+"""From a signal to a sensitivity: arrays in, dataclasses out; nothing of the database."""

@@ -1,0 +1,1 @@
+"""The record: schema, entry, amendment, journal, queries, exchange folder. The only room that knows SQL."""

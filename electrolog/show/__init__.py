@@ -1,0 +1,1 @@
+"""From answers to something to look at: tables, timelines, JSON and CSV."""
