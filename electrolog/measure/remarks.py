@@ -1,0 +1,201 @@
+"""What the points of a calibration don't say, or say against themselves: one plain sentence each."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass
+
+import numpy as np
+
+from electrolog.measure.line import LineFit, levels_um
+from electrolog.measure.points import (
+    SuspectPoint,
+    curvature_p,
+    intercept_p,
+    lack_of_fit,
+    p_against_zero,
+)
+from electrolog.measure.saturating import SaturatingFit
+
+SIGNIFICANT = 0.05
+REPLICATE_SHARE = 0.10  # common practice: replicates of one injection agree within 10 %
+
+
+@dataclass(frozen=True)
+class Outcome:
+    """One calibration, fitted: what the remarks look at. `curve` is None where the line was kept."""
+
+    line: LineFit
+    curve: SaturatingFit | None
+    suspect: SuspectPoint | None
+    noise_na: float | None
+
+    @property
+    def sensitivity_na_um(self) -> float:
+        return self.line.slope_na_um if self.curve is None else self.curve.sensitivity_na_um
+
+    @property
+    def sensitivity_se_na_um(self) -> float:
+        return self.line.slope_se_na_um if self.curve is None else self.curve.sensitivity_se_na_um
+
+    @property
+    def sensitivity_p(self) -> float:
+        """The chance of such a sensitivity if there were none; NaN where the points can't say."""
+        freedom = self.line.degrees_of_freedom if self.curve is None else self.curve.degrees_of_freedom
+        return p_against_zero(self.sensitivity_na_um, self.sensitivity_se_na_um, freedom)
+
+    @property
+    def responds(self) -> bool:
+        """A positive sensitivity that scatter alone wouldn't give, as far as the points can say."""
+        return self.sensitivity_na_um > 0 and not self.sensitivity_p >= SIGNIFICANT
+
+    @property
+    def levels(self) -> int:
+        return len(levels_um(self.line.concentration_um))
+
+
+def without_response(concentrations: int) -> str:
+    if concentrations == 0:
+        return "no points: nothing can be computed"
+    return "every concentration is zero: a sensitivity needs a current at a concentration above zero"
+
+
+def all_of(outcome: Outcome, lod_um: float | None) -> tuple[str, ...]:
+    said = [remark(outcome) for remark in REMARKS] + [_below_detection(outcome, lod_um)]
+    return tuple(text for text in said if text)
+
+
+def _few_points(outcome: Outcome) -> str | None:
+    line = outcome.line
+    if outcome.levels == 1:
+        alone = "" if line.n_points > 1 else ", and one point gives it no standard error"
+        return (
+            f"one concentration only ({line.concentration_um[0]:g} µM): the sensitivity assumes a line "
+            f"through zero, which these points can't test{alone}"
+        )
+    if line.degrees_of_freedom == 0:
+        return f"{line.n_points} points: the line runs exactly through them, so there is no standard error"
+    if outcome.levels == 2:
+        return "two concentrations only: whether the response is linear can't be tested"
+    if line.degrees_of_freedom == 1:
+        return f"{line.n_points} points: the standard errors rest on a single degree of freedom"
+    return None
+
+
+def _falling(outcome: Outcome) -> str | None:
+    line = outcome.line
+    if line.slope_na_um >= 0:
+        return None
+    falls = f"the current falls as the concentration rises ({line.slope_na_um:.4g} nA/µM)"
+    if (line.current_na[line.concentration_um > 0] < 0).all():
+        return f"{falls} and every current is negative: is oxidation recorded as negative? Nothing was turned"
+    return f"{falls}: no detection limit can be stated"
+
+
+def _no_response(outcome: Outcome) -> str | None:
+    if outcome.line.slope_na_um == 0:
+        return "the current doesn't change with the concentration: no response was measured"
+    if not outcome.sensitivity_p >= SIGNIFICANT:
+        return None
+    return (
+        f"the sensitivity {outcome.sensitivity_na_um:.3g} ± {outcome.sensitivity_se_na_um:.3g} nA/µM can't "
+        f"be told from zero (p = {outcome.sensitivity_p:.2g}): it gives no detection limit and no concentration"
+    )
+
+
+def _exact(outcome: Outcome) -> str | None:
+    line = outcome.line
+    if line.degrees_of_freedom < 1 or line.slope_na_um == 0 or not line.exact():
+        return None
+    return "the points lie exactly on the line, without any scatter: computed rather than measured?"
+
+
+def _levels_off(outcome: Outcome) -> str | None:
+    if outcome.curve is None:
+        return None
+    return (
+        f"the current levels off (largest {outcome.curve.current_max_na:.3g} nA above the offset): an "
+        f"adsorption isotherm was fitted, and the sensitivity is its slope at low concentration"
+    )
+
+
+def _not_straight(outcome: Outcome) -> str | None:
+    if outcome.curve is not None or outcome.line.exact():
+        return None
+    test = lack_of_fit(outcome.line)
+    if test.significant(SIGNIFICANT):
+        return (
+            f"the means lie off the line by more than the replicates' scatter allows "
+            f"(F = {test.f:.3g}, p = {test.p:.2g})"
+        )
+    if curvature_p(outcome.line) > 1 - SIGNIFICANT / 5:
+        return "the current rises faster than the concentration: the points bend away from the line upwards"
+    return None
+
+
+def _suspect(outcome: Outcome) -> str | None:
+    point = outcome.suspect
+    if point is None:
+        return None
+    off = min(abs(point.studentised_residual), 999)
+    return (
+        f"point {point.index + 1} ({point.concentration_um:g} µM, {point.current_na:g} nA) lies {off:.3g} "
+        "standard errors off the line through the others; it was kept"
+    )
+
+
+def _offset(outcome: Outcome) -> str | None:
+    line = outcome.line
+    if line.through_zero or line.exact() or not intercept_p(line) < SIGNIFICANT / 5:
+        return None
+    return (
+        f"the line misses zero: intercept {line.intercept_na:.3g} ± {line.intercept_se_na:.2g} nA "
+        f"(p = {intercept_p(line):.2g}); look at the background subtraction and the blank"
+    )
+
+
+def _replicates(outcome: Outcome) -> str | None:
+    """Replicates near the noise scatter by nature: they disagree only beyond four times it."""
+    line, noise_na = outcome.line, outcome.noise_na or 0.0
+    for level_um in levels_um(line.concentration_um[line.concentration_um > 0]):
+        current_na = line.current_na[line.concentration_um == level_um]
+        mean_na = abs(float(current_na.mean()))
+        sd_na = float(current_na.std(ddof=1)) if len(current_na) > 1 else 0.0
+        if sd_na > REPLICATE_SHARE * mean_na and np.ptp(current_na) > 4 * noise_na:
+            return (
+                f"the {len(current_na)} replicates at {level_um:g} µM disagree: {current_na.min():g} to "
+                f"{current_na.max():g} nA"
+            )
+    return None
+
+
+def _clipped(outcome: Outcome) -> str | None:
+    line = outcome.line
+    top_um = levels_um(line.concentration_um[line.current_na == line.current_na.max()])
+    if len(top_um) < 2 or line.slope_na_um <= 0:
+        return None
+    return (
+        f"the highest current, {line.current_na.max():g} nA, stands at {len(top_um)} concentrations "
+        f"({', '.join(f'{level:g}' for level in top_um)} µM): was the amplifier at its limit?"
+    )
+
+
+def _below_detection(outcome: Outcome, lod_um: float | None) -> str | None:
+    lowest_um = outcome.line.concentration_um[outcome.line.concentration_um > 0].min()
+    if lod_um is None or lowest_um >= lod_um:
+        return None
+    return f"the range begins at {lowest_um:g} µM, below the detection limit of {lod_um:.2g} µM"
+
+
+REMARKS: tuple[Callable[[Outcome], str | None], ...] = (
+    _few_points,
+    _falling,
+    _no_response,
+    _exact,
+    _levels_off,
+    _not_straight,
+    _suspect,
+    _offset,
+    _replicates,
+    _clipped,
+)
