@@ -81,9 +81,7 @@ def parse_day(text: str, what: str = "date") -> date:
     return day
 
 
-def _at_time_of_day(
-    day: date, clock: re.Match[str], zone: tzinfo | None, text: str, what: str
-) -> datetime:
+def _at_time_of_day(day: date, clock: re.Match[str], zone: tzinfo | None, text: str, what: str) -> datetime:
     try:
         moment = datetime(day.year, day.month, day.day, int(clock[1]), int(clock[2]), int(clock[3] or 0))
     except ValueError:

@@ -45,9 +45,7 @@ FREQUENCY_HZ = Unit("Hz", {"hz": 1.0, "khz": 1e3}, "10Hz")
 TEMPERATURE_C = Unit("°C", {"c": 1.0, "°c": 1.0, "degc": 1.0}, "37C")
 WEIGHT_PERCENT = Unit("wt%", {"%": 1.0, "wt%": 1.0}, "5%")
 FRACTION = Unit("", {"%": 0.01}, "0.7, 70%")
-SENSITIVITY_NA_UM = Unit(
-    "nA/µM", {"na/um": 1.0, "pa/nm": 1.0, "na/nm": 1e3, "pa/um": 1e-3, "na/mm": 1e-3}, "12.5nA/uM"
-)
+SENSITIVITY_NA_UM = Unit("nA/µM", {"na/um": 1.0, "pa/nm": 1.0, "na/nm": 1e3, "pa/um": 1e-3, "na/mm": 1e-3}, "12.5nA/uM")
 MOLAR_MASS_G_MOL = Unit("g/mol", {"g/mol": 1.0, "kg/mol": 1e3}, "153.18g/mol")
 COUNT = Unit("", {}, "3")
 PLAIN = Unit("", {}, "0.95")

@@ -1,0 +1,140 @@
+"""Adding one row: checked against its sheet, its names looked up, written with its journal entry."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from datetime import datetime
+from typing import Any
+
+from sqlalchemy import select
+
+from electrolog.errors import InputError, shortened, unknown
+from electrolog.record import columns as kinds
+from electrolog.record import schema, sheets
+from electrolog.record.columns import Value
+from electrolog.record.journal import Writer
+from electrolog.record.names import Names
+from electrolog.record.sheets import Sheet
+
+Points = Sequence[tuple[float, float]]
+Row = dict[str, Any]
+
+
+def add(writer: Writer, sheet: Sheet, values: Mapping[str, Value], points: Points = ()) -> int:
+    """Adds a row to a sheet and returns its number; `points` are (µM, nA) of a calibration.
+
+    Values are those that the sheet's columns read. Raises InputError for a value that can't be taken, an
+    unknown name, or a key that a live row already has.
+    """
+    row = resolved(sheet, values, writer.names)
+    check_row(sheet, row, bool(points))
+    refuse_double(writer, sheet, row)
+    refuse_lookalike(sheet, row, writer.names)
+    return insert(writer, sheet, row, points)
+
+
+def insert(writer: Writer, sheet: Sheet, row: Row, points: Points) -> int:
+    """Writes a row that has been checked already."""
+    row_id = writer.new_id(sheet.name)
+    writer.insert(sheet.name, {"id": row_id, **row})
+    change: dict[str, Any] = {"after": known(row)}
+    if points:
+        change["points"] = [[float(c), float(i)] for c, i in points]
+        for place, (concentration, current) in enumerate(change["points"], start=1):
+            writer.insert(
+                "calibration_points",
+                {
+                    "calibration_id": row_id,
+                    "ordinal": place,
+                    "concentration_um": concentration,
+                    "current_na": current,
+                },
+            )
+    writer.note("add", sheet.name, row_id, change)
+    _remember(sheet, row, row_id, writer.names)
+    return row_id
+
+
+def resolved(sheet: Sheet, values: Mapping[str, Value], names: Names) -> Row:
+    """The row as its table keeps it: every column there, names turned into row numbers."""
+    for name in values:
+        if name not in sheet.by_name:
+            raise unknown(f"column of {sheet.name}", name, sheet.by_name)
+    return {
+        schema.column_name(column): resolved_value(sheet, column, values.get(column.name), names)
+        for column in sheet.columns
+    }
+
+
+def resolved_value(sheet: Sheet, column: kinds.Column, value: Value, names: Names) -> Any:
+    if value is None or value == "":
+        if column.required:
+            raise InputError(f"{column.name}: missing; a {sheet.one} needs it ({column.about})")
+        return None
+    if isinstance(column, kinds.Link):
+        return names.row_id(column.to, str(value))
+    if isinstance(column, kinds.Word):
+        return names.word(column.kind, str(value))
+    return float(value) if isinstance(column, kinds.Number) else value  # type: ignore[arg-type]
+
+
+def known(row: Row) -> Row:
+    return {name: value for name, value in row.items() if value is not None}
+
+
+def check_row(sheet: Sheet, row: Row, has_points: bool = False) -> None:
+    """Rules between the columns of one row."""
+    if sheet is sheets.CALIBRATIONS:
+        _check_factor(row, has_points)
+    if sheet is sheets.STANDARDS:
+        _check_use_by(row["prepared_at"], row["expires_at"])
+
+
+def _check_factor(row: Row, has_points: bool) -> None:
+    if has_points and row["sensitivity_na_um"] is not None:
+        raise InputError(
+            "sensitivity_na_um: refused where points exist, since the points give it; accepted: one or the other"
+        )
+    if row["sensitivity_se_na_um"] is not None and row["sensitivity_na_um"] is None:
+        raise InputError("sensitivity_se_na_um: a standard error without its sensitivity; accepted: both, or neither")
+
+
+def _check_use_by(prepared: datetime, expires: datetime | None) -> None:
+    if expires is not None and expires < prepared:
+        raise InputError("expires_at: lies before prepared_at; accepted: a later moment")
+
+
+def refuse_double(writer: Writer, sheet: Sheet, row: Row) -> None:
+    if not sheet.key:
+        return
+    table = schema.tables[sheet.name]
+    names = [schema.column_name(sheet.by_name[part]) for part in sheet.key]
+    matches = [table.c[name].is_(None) if row[name] is None else table.c[name] == row[name] for name in names]
+    found = writer.connection.execute(select(table.c.id).where(*matches, table.c.struck.is_(None))).scalar()
+    if found is not None:
+        raise InputError(f"{described(sheet, row, found)} is there already", "correct it with `electrolog amend`")
+
+
+def refuse_lookalike(sheet: Sheet, row: Row, names: Names) -> None:
+    """Two labels that differ by case alone would be one probe to a tired eye."""
+    if len(sheet.key) != 1 or sheet.key[0] == "electrode":
+        return
+    label = str(row[sheet.key[0]])
+    twin = names.spelled(sheet.name, label)
+    if twin is not None:
+        raise InputError(
+            f"{sheet.key[0]}: '{shortened(label)}' differs from '{shortened(twin)}' by case alone;"
+            " accepted: a label that can't be mistaken for another"
+        )
+
+
+def described(sheet: Sheet, row: Row, row_id: int) -> str:
+    label = row.get(sheet.key[0]) if len(sheet.key) == 1 else None
+    return f"{sheet.one} '{shortened(label)}'" if isinstance(label, str) else f"{sheet.one} {row_id}"
+
+
+def _remember(sheet: Sheet, row: Row, row_id: int, names: Names) -> None:
+    if sheet is sheets.TERMS:
+        names.add_word(row["kind"], row["term"])
+    elif (len(sheet.key) == 1 and sheet.key[0] != "electrode") or sheet is sheets.ELECTRODES:
+        names.add(sheet.name, row[sheet.key[0]], row_id)

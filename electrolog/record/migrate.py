@@ -1,0 +1,115 @@
+"""Making a database and bringing an older one up, by Alembic. The only room that loads it, and only when needed."""
+
+from __future__ import annotations
+
+import shutil
+import sqlite3
+from collections.abc import Iterator
+from contextlib import closing, contextmanager
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+from sqlalchemy import Connection
+
+from electrolog.clock import utc_now
+from electrolog.errors import RecordError
+from electrolog.record import schema
+
+if TYPE_CHECKING:
+    from alembic.config import Config
+
+    from electrolog.record.store import Record
+
+
+def create(record: Record) -> None:
+    """An empty record with the trade's analytes and waveforms in it."""
+    from electrolog.record import builtin
+
+    if record.is_file:
+        with closing(sqlite3.connect(record.name)) as connection:
+            connection.execute("PRAGMA journal_mode = WAL")
+    to_revision(record, schema.REVISION)
+    builtin.add_all(record)
+
+
+def upgrade(record: Record) -> Path | None:
+    """Brings an older record up to date; returns the copy that was made first (SQLite)."""
+    copy = copy_of_file(record) if record.is_file else None
+    to_revision(record, schema.REVISION)
+    return copy
+
+
+def copy_of_file(record: Record) -> Path:
+    """A whole copy beside the file, named by the moment, checked after writing."""
+    source = Path(record.name)
+    target = source.with_name(f"{source.name}.{utc_now().strftime('%Y%m%dT%H%M%S%f')}.copy")
+    if shutil.disk_usage(source.parent).free < 2 * source.stat().st_size:
+        raise RecordError(f"no room for a copy of {source} before its upgrade", "make room on that disk first")
+    with closing(sqlite3.connect(source)) as old, closing(sqlite3.connect(target)) as new:
+        old.backup(new)
+        if new.execute("PRAGMA integrity_check").fetchone() != ("ok",):
+            raise RecordError(f"the copy {target} is not whole; {source} was left as it was")
+    return target
+
+
+def to_revision(record: Record, revision: str) -> None:
+    """Runs the migrations from where the database stands to `revision`, up or down, in one transaction."""
+    from alembic import command
+    from alembic.script import ScriptDirectory
+
+    config = _config()
+    script = ScriptDirectory.from_config(config)
+    with _migrating(record) as connection:
+        config.attributes["connection"] = connection
+        now = connection.exec_driver_sql(
+            "SELECT version_num FROM alembic_version" if _has_version(connection) else "SELECT NULL"
+        ).scalar()
+        known = [step.revision for step in reversed(list(script.walk_revisions()))]
+        order = ["base", *known]
+        if order.index(revision) >= order.index(now or "base"):
+            command.upgrade(config, revision)
+        else:
+            command.downgrade(config, revision)
+
+
+def _has_version(connection: Connection) -> bool:
+    return connection.dialect.has_table(connection, "alembic_version")
+
+
+def newest_revision() -> str | None:
+    from alembic.script import ScriptDirectory
+
+    return ScriptDirectory.from_config(_config()).get_current_head()
+
+
+def _config() -> Config:
+    from alembic.config import Config
+
+    config = Config()
+    config.set_main_option("script_location", str(migrations_folder()))
+    config.set_main_option("path_separator", "os")
+    return config
+
+
+def migrations_folder() -> Path:
+    """Beside the package in a checkout, inside it in an installed wheel."""
+    package = Path(__file__).resolve().parents[1]
+    inside = package / "migrations"
+    return inside if inside.is_dir() else package.parent / "migrations"
+
+
+@contextmanager
+def _migrating(record: Record) -> Iterator[Connection]:
+    """A connection with foreign keys off: rebuilding a parent table with them on would empty its children.
+
+    The pragma does nothing inside a transaction, so it stands before BEGIN; every key is checked before COMMIT.
+    """
+    with record.engine.connect().execution_options(electrolog_writes=True) as connection:
+        if record.is_file:
+            connection.connection.driver_connection.execute("PRAGMA foreign_keys = OFF")  # type: ignore[union-attr]
+        with connection.begin():
+            yield connection
+            if record.is_file:
+                broken = connection.exec_driver_sql("PRAGMA foreign_key_check").all()
+                if broken:
+                    raise RecordError(f"the migration would break {len(broken)} links; nothing was changed")

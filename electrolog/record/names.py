@@ -1,0 +1,133 @@
+"""Rows by the names people use, words by the lab's lists; what isn't known is refused with its nearest neighbour."""
+
+from __future__ import annotations
+
+from sqlalchemy import Connection, func, select
+
+from electrolog.errors import InputError, UnknownName, shortened, unknown
+from electrolog.record import schema
+from electrolog.record.builtin import WORDS
+from electrolog.record.sheets import BY_NAME, Sheet
+
+
+class Names:
+    """A look-up for the length of one transaction; rows that it has not met are asked of the database once."""
+
+    def __init__(self, connection: Connection) -> None:
+        self._connection = connection
+        self._known: dict[tuple[str, str], int] = {}
+        self._complete: dict[str, dict[str, tuple[str, int]]] = {}
+        self._words: dict[str, dict[str, str]] | None = None
+
+    def row_id(self, sheet: str, name: str) -> int:
+        """The live row of that name: spelled so, or in other case, or an analyte's abbreviation."""
+        found = self._known.get((sheet, name))
+        if found is None:
+            found = self._known[sheet, name] = self._asked(sheet, name)
+        return found
+
+    def add(self, sheet: str, name: str, row_id: int) -> None:
+        """A row inserted in this transaction."""
+        self._known[sheet, name] = row_id
+        if sheet in self._complete:
+            self._complete[sheet][name.casefold()] = (name, row_id)
+
+    def spelled(self, sheet: str, name: str) -> str | None:
+        """How a live row of that name is spelled, if there is one that looks the same."""
+        found = self.everything(sheet).get(name.casefold())
+        return found[0] if found else None
+
+    def everything(self, sheet: str) -> dict[str, tuple[str, int]]:
+        """Every live name of a sheet, folded, with its spelling and row number."""
+        if sheet not in self._complete:
+            table, label = schema.tables[sheet], _label_column(BY_NAME[sheet])
+            query = select(table.c[label], table.c.id).where(table.c.struck.is_(None))
+            rows = self._connection.execute(query).all()
+            self._complete[sheet] = {name.casefold(): (name, row_id) for name, row_id in rows}
+            self._known.update({(sheet, name): row_id for name, row_id in rows})
+        return self._complete[sheet]
+
+    def word(self, kind: str, text: str) -> str:
+        """The list's own spelling of a word."""
+        words = self._word_lists()[kind]
+        found = words.get(text.casefold())
+        if found is None:
+            hint = f"add it with `electrolog words add '{kind}' '{shortened(text, 40)}'`, or as a row of terms.csv"
+            raise unknown(kind, text, words.values(), hint)
+        return found
+
+    def words(self, kind: str) -> list[str]:
+        return list(self._word_lists()[kind].values())
+
+    def add_word(self, kind: str, word: str) -> None:
+        self._word_lists()[kind].setdefault(word.casefold(), word)
+
+    def _asked(self, sheet: str, name: str) -> int:
+        table, label = schema.tables[sheet], _label_column(BY_NAME[sheet])
+        query = select(table.c.id).where(table.c[label] == name, table.c.struck.is_(None))
+        found = self._connection.execute(query).scalar()
+        return self._asked_leniently(sheet, name) if found is None else int(found)
+
+    def _asked_leniently(self, sheet: str, name: str) -> int:
+        known = self.everything(sheet)
+        if name.casefold() in known:
+            return known[name.casefold()][1]
+        if sheet == "analytes":
+            table = schema.tables[sheet]
+            query = select(table.c.id).where(func.lower(table.c.abbreviation) == name.lower(), table.c.struck.is_(None))
+            found = self._connection.execute(query).scalar()
+            if found is not None:
+                return int(found)
+        raise unknown(BY_NAME[sheet].one, name, [spelling for spelling, _ in known.values()])
+
+    def _word_lists(self) -> dict[str, dict[str, str]]:
+        if self._words is None:
+            self._words = {kind: {w.casefold(): w for w in words} for kind, words in WORDS.items()}
+            terms = schema.tables["terms"]
+            for kind, term in self._connection.execute(
+                select(terms.c.kind, terms.c.term).where(terms.c.struck.is_(None))
+            ):
+                self._words[kind].setdefault(term.casefold(), term)
+        return self._words
+
+
+def _label_column(sheet: Sheet) -> str:
+    return sheet.key[0]
+
+
+def find_row(connection: Connection, one: str, name: str) -> tuple[Sheet, int]:
+    """The row that a person means by `calibration C0012` or `coating 17`, struck or not.
+
+    Events without a label of their own go by the number that the timeline shows. Raises UnknownName.
+    """
+    sheet = sheet_called(one)
+    table = schema.tables[sheet.name]
+    if len(sheet.key) == 1 and sheet.key[0] != "electrode":
+        return sheet, Names(connection).row_id(sheet.name, name)
+    number = int(name) if name.isascii() and name.isdigit() else -1
+    if connection.execute(select(table.c.id).where(table.c.id == number)).first() is None:
+        raise UnknownName(
+            f"no {sheet.one} has the number '{shortened(name)}'",
+            "`electrolog life PROBE` shows each event's number",
+        )
+    return sheet, number
+
+
+def sheet_called(one: str) -> Sheet:
+    """A sheet by the word for one of its rows, or by its file's name."""
+    for sheet in BY_NAME.values():
+        if one.casefold() in (sheet.one, sheet.name, sheet.one.replace("-", "")):
+            return sheet
+    if one.casefold() == "electrode":
+        return BY_NAME["electrodes"]
+    raise unknown("kind of row", one, [sheet.one for sheet in BY_NAME.values()])
+
+
+def point_place(name: str) -> tuple[str, int]:
+    """`C0012/3`: the third point of calibration C0012."""
+    label, slash, place = name.rpartition("/")
+    if not slash or not (place.isascii() and place.isdigit()) or int(place) < 1:
+        raise InputError(
+            f"point: '{shortened(name)}' names no point; accepted: the calibration and the point's place, as in C0012/3"
+        )
+    return label, int(place)

@@ -1,0 +1,215 @@
+"""Opening the database: where it is, one short write transaction per event, readers that block nobody."""
+
+from __future__ import annotations
+
+import getpass
+import os
+import sqlite3
+from collections.abc import Iterator
+from contextlib import contextmanager
+from pathlib import Path
+from typing import Any
+
+from sqlalchemy import Connection, Engine, create_engine, event, select, text
+from sqlalchemy.engine import URL, make_url
+from sqlalchemy.exc import ArgumentError, DBAPIError, NoSuchModuleError, OperationalError
+from sqlalchemy.pool import NullPool
+
+from electrolog.errors import InputError, RecordError, shortened
+from electrolog.record import journal, schema
+
+BUSY_TIMEOUT_MS = 30_000
+LEAST_SQLITE = (3, 37, 0)  # STRICT tables
+
+
+class Record:
+    """One database. Build it with open_record(); nothing is kept open between two questions."""
+
+    def __init__(self, engine: Engine, who: str) -> None:
+        self.engine = engine
+        self.who = who
+
+    @property
+    def name(self) -> str:
+        """What to call the database in a message: never with a password in it."""
+        return self.engine.url.database or "" if self.is_file else self.engine.url.render_as_string(True)
+
+    @property
+    def is_file(self) -> bool:
+        return self.engine.dialect.name == "sqlite"
+
+    @contextmanager
+    def reading(self) -> Iterator[Connection]:
+        with _translated(self.name), self.engine.connect() as connection, connection.begin():
+            yield connection
+
+    @contextmanager
+    def writing(self, reason: str = "") -> Iterator[journal.Writer]:
+        """One transaction: the rows and their journal entries are both there, or neither is."""
+        engine = self.engine.execution_options(electrolog_writes=True)
+        with _translated(self.name), engine.begin() as connection:
+            if not self.is_file:
+                connection.execute(text("LOCK TABLE journal IN EXCLUSIVE MODE"))
+            writer = journal.Writer(connection, self.who, reason)
+            yield writer
+            writer.flush()
+
+
+def open_record(where: str, who: str | None = None, create: bool = False) -> Record:
+    """The record at `where`: a file's path or an SQLAlchemy URL.
+
+    With `create` a database that isn't there yet is made; without, it is an error. Raises RecordError for a
+    database that can't be used (absent, damaged, of another version), InputError for a URL that can't be read.
+    """
+    record = Record(_engine(database_url(where)), who or current_user())
+    if record.is_file and not Path(record.name).exists():
+        if not create:
+            raise RecordError(
+                f"there is no record at {record.name}",
+                "make one with `electrolog setup`, or name another with --db or ELECTROLOG_DB",
+            )
+        _make_folder(Path(record.name))
+    _bring_to_revision(record, create)
+    return record
+
+
+def default_location() -> str:
+    """ELECTROLOG_DB, or a file in the folder where this platform keeps a program's data."""
+    named = os.environ.get("ELECTROLOG_DB")
+    if named:
+        return named
+    import platformdirs
+
+    return str(platformdirs.user_data_path("electrolog", appauthor=False) / "record.db")
+
+
+def current_user() -> str:
+    try:
+        return getpass.getuser()
+    except (KeyError, OSError):  # an account without a name, as in some containers
+        return "unknown"
+
+
+def database_url(where: str) -> URL:
+    if "://" not in where:
+        if not where.strip():
+            raise InputError("the database's name is empty; accepted: a file's path or an SQLAlchemy URL")
+        return URL.create("sqlite", database=str(Path(where).expanduser()))
+    try:
+        url = make_url(where)
+    except ArgumentError:
+        raise InputError("the database's URL can't be read; accepted: such as postgresql+psycopg://host/name") from None
+    if url.get_backend_name() not in ("sqlite", "postgresql"):
+        raise InputError(
+            f"a '{shortened(url.drivername, 30)}' database can't hold the record; accepted: sqlite, postgresql+psycopg"
+        )
+    if url.get_backend_name() == "sqlite" and not url.database:
+        raise InputError("a database in memory would be lost at once; accepted: a file's path")
+    return url
+
+
+def _engine(url: URL) -> Engine:
+    try:
+        engine = create_engine(url, poolclass=NullPool)
+    except (NoSuchModuleError, ModuleNotFoundError) as missing:
+        raise RecordError(
+            f"the driver for {url.drivername} is not installed ({missing})",
+            'install it with: python -m pip install "electrolog[postgresql]"',
+        ) from None
+    if engine.dialect.name == "sqlite":
+        if sqlite3.sqlite_version_info < LEAST_SQLITE:
+            raise RecordError(
+                f"this Python carries SQLite {sqlite3.sqlite_version}; 3.37 or newer is needed", "use a newer Python"
+            )
+        event.listen(engine, "connect", _prepare_sqlite)
+        event.listen(engine, "begin", _begin_sqlite)
+    return engine
+
+
+def _prepare_sqlite(connection: Any, _: object) -> None:
+    # The driver's own transactions start too late (at the first write) and leave DDL outside; we say BEGIN.
+    connection.isolation_level = None
+    cursor = connection.cursor()
+    cursor.execute(f"PRAGMA busy_timeout = {BUSY_TIMEOUT_MS}")
+    cursor.execute("PRAGMA foreign_keys = ON")
+    cursor.close()
+
+
+def _begin_sqlite(connection: Connection) -> None:
+    # A writer takes its lock at once: one that read first and then wrote could be refused in the middle.
+    writes = connection.get_execution_options().get("electrolog_writes")
+    connection.exec_driver_sql("BEGIN IMMEDIATE" if writes else "BEGIN")
+
+
+def _make_folder(path: Path) -> None:
+    try:
+        path.parent.mkdir(parents=True, exist_ok=True)
+    except OSError as why:
+        raise RecordError(f"the folder {path.parent} can't be made: {why.strerror}") from None
+
+
+def _bring_to_revision(record: Record, create: bool) -> None:
+    found = revision_of(record)
+    if found == schema.REVISION:
+        return
+    if found is None and not create:
+        raise RecordError(f"{record.name} holds no record", "make one there with `electrolog setup`")
+    if found is not None and found > schema.REVISION:
+        raise RecordError(
+            f"{record.name} was written by a newer electrolog (revision {found}, this one knows {schema.REVISION})",
+            "install the newer version",
+        )
+    if found is not None:
+        raise RecordError(
+            f"{record.name} is of an older version (revision {found}, now {schema.REVISION})",
+            "bring it up with `electrolog setup`; a copy is made first",
+        )
+    from electrolog.record import migrate
+
+    migrate.create(record)
+
+
+def revision_of(record: Record) -> str | None:
+    """The newest migration the database has seen; None for an empty one."""
+    version = schema.alembic_version
+    with _translated(record.name), record.engine.connect() as connection:
+        if not record.engine.dialect.has_table(connection, version.name):
+            _refuse_foreign(record, connection)
+            return None
+        return connection.execute(select(version.c.version_num)).scalar_one_or_none()
+
+
+def _refuse_foreign(record: Record, connection: Connection) -> None:
+    """A database that holds something else is nobody's empty place to build in."""
+    others = record.engine.dialect.get_table_names(connection)
+    if others:
+        raise RecordError(
+            f"{record.name} is a database of something else (it holds the table '{shortened(others[0])}')",
+            "name another place with --db",
+        )
+
+
+@contextmanager
+def _translated(name: str) -> Iterator[None]:
+    """The driver's words into ours; the database's own name is all that is said of where."""
+    try:
+        yield
+    except OperationalError as error:
+        raise RecordError(*_operational(str(error.orig), name)) from None
+    except DBAPIError as error:
+        raise RecordError(f"{name}: the database refused: {shortened(str(error.orig), 300)}") from None
+
+
+def _operational(said: str, name: str) -> tuple[str, str]:
+    known = {
+        "unable to open": (f"{name} can't be opened", "look whether the folder is there and may be written"),
+        "readonly": (f"{name} may not be written", "ask who owns the file, or name another with --db"),
+        "locked": (f"{name} is in use by another program for over 30 s", "try again when it has finished"),
+        "full": (f"no room left on the disk of {name}", "make room; nothing was written"),
+        "disk I/O error": (f"the disk of {name} can't be read or written", "copy what can be saved, then check it"),
+        "append-only": (f"{name}: the journal is append-only", ""),
+    }
+    for words, answer in known.items():
+        if words in said:
+            return answer
+    return f"{name}: {shortened(said, 300)}", ""

@@ -1,0 +1,102 @@
+"""Replaying the journal against the tables: whatever was changed, added or removed behind its back is named."""
+
+from __future__ import annotations
+
+import json
+from dataclasses import dataclass
+from typing import Any
+
+from sqlalchemy import Connection, select
+
+from electrolog.record import journal, schema
+from electrolog.record.sheets import BY_NAME, SHEETS
+
+Place = tuple[str, int, int]  # sheet, row number, place of a point (0 for any other row)
+Rows = dict[Place, dict[str, Any]]
+
+
+@dataclass(frozen=True)
+class Verification:
+    entries: int
+    head: str
+    faults: tuple[str, ...]
+
+    @property
+    def whole(self) -> bool:
+        return not self.faults
+
+
+def verify(connection: Connection) -> Verification:
+    faults: list[str] = []
+    expected, count, head = _replayed(connection, faults)
+    found = _found(connection)
+    for place in sorted(expected.keys() | found.keys()):
+        faults += _compared(place, expected.get(place), found.get(place))
+    return Verification(count, head, tuple(faults))
+
+
+def _replayed(connection: Connection, faults: list[str]) -> tuple[Rows, int, str]:
+    rows: Rows = {}
+    seq, previous = 0, journal.FIRST_HASH
+    for mapping in connection.execute(select(schema.journal).order_by(schema.journal.c.seq)).mappings():
+        raw = dict(mapping)
+        seq += 1
+        if raw["seq"] != seq:
+            faults.append(f"journal: entries {seq} to {raw['seq'] - 1} are missing")
+            seq = raw["seq"]
+        if raw["previous_hash"] != previous:
+            faults.append(f"journal entry {seq}: does not follow the entry before it")
+        if journal.entry_hash(raw) != raw["hash"]:
+            faults.append(f"journal entry {seq}: was changed after it was written")
+        previous = raw["hash"]
+        _replay(rows, raw, faults)
+    return rows, seq, previous
+
+
+def _replay(rows: Rows, raw: dict[str, Any], faults: list[str]) -> None:
+    try:
+        change = json.loads(raw["change"])
+        place = (raw["sheet"], raw["row_id"], change.get("ordinal", 0))
+        if raw["action"] == "add":
+            _replay_add(rows, place, change)
+        elif raw["action"] == "amend":
+            rows[place].update(change["after"])
+        else:
+            rows[place]["struck"] = raw["seq"]
+    except (KeyError, ValueError, TypeError, AttributeError):
+        faults.append(f"journal entry {raw['seq']}: can't be replayed (it names a row that was never added)")
+
+
+def _replay_add(rows: Rows, place: Place, change: dict[str, Any]) -> None:
+    rows[place] = dict(change["after"])
+    for number, (concentration, current) in enumerate(change.get("points", ()), start=1):
+        rows["calibration_points", place[1], number] = {
+            "calibration_id": place[1],
+            "concentration_um": concentration,
+            "current_na": current,
+        }
+
+
+def _found(connection: Connection) -> Rows:
+    rows: Rows = {}
+    for sheet in SHEETS:
+        for row in connection.execute(select(schema.tables[sheet.name])).mappings():
+            values = dict(row)
+            row_id = values.pop("id") if "id" in values else values["calibration_id"]
+            rows[sheet.name, row_id, values.pop("ordinal", 0)] = values
+    return rows
+
+
+def _compared(place: Place, expected: dict[str, Any] | None, found: dict[str, Any] | None) -> list[str]:
+    sheet, row_id, number = place
+    what = f"{BY_NAME[sheet].one} {row_id}" + (f", point {number}" if number else "") if sheet in BY_NAME else sheet
+    if found is None:
+        return [f"{what}: was removed behind the journal's back"]
+    if expected is None:
+        return [f"{what}: was added behind the journal's back"]
+    plain = json.loads(journal.canonical(found))
+    return [
+        f"{what}: {name} was changed behind the journal's back, from {expected.get(name)!r} to {plain.get(name)!r}"
+        for name in sorted(expected.keys() | plain.keys())
+        if expected.get(name) != plain.get(name)
+    ]
