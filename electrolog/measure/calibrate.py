@@ -11,6 +11,7 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from electrolog.errors import DataError, InputError
+from electrolog.measure.detection import from_noise, from_residuals
 from electrolog.measure.line import LineFit, fit_line, levels_um
 from electrolog.measure.linear import LINEAR_SHARE, linear_to_um
 from electrolog.measure.points import curvature_p, lack_of_fit, suspect_point
@@ -19,7 +20,6 @@ from electrolog.measure.saturating import SaturatingFit, fit_saturating
 from electrolog.measure.student import t_quantile
 from electrolog.measure.version import METHOD
 
-LOD_K, LOQ_K = 3.0, 10.0  # IUPAC (Pure Appl. Chem. 45 (1976) 99) and common practice
 BENT = 0.01  # stricter than usual: a handful of points bends by chance, and a needless curve costs precision
 BENT_WITH_LACK_OF_FIT = 0.05
 
@@ -210,15 +210,15 @@ def _interval(found: Mapping[str, Any], shared_relative: float | None) -> dict[s
 
 
 def _limits(found: Mapping[str, Any], noise_na: float | None, line: LineFit | None) -> dict[str, Any]:
-    """3 and 10 deviations over the sensitivity: of the signal's noise if known, else of the scatter."""
+    """By the signal's noise where known, else by the scatter of the points; unknown where they have none."""
+    sensitivity = found["sensitivity_na_um"]
     if noise_na is not None:
-        sd_na, route = noise_na, "3 × the signal's noise / sensitivity"
+        limits = from_noise(noise_na, sensitivity)
     elif line is not None and line.degrees_of_freedom > 0 and not line.exact():
-        sd_na, route = found["residual_sd_na"], "3 × residual standard deviation / sensitivity"
+        limits = from_residuals(found["residual_sd_na"], sensitivity)
     else:
         return {}
-    sensitivity = found["sensitivity_na_um"]
-    return {"lod_um": LOD_K * sd_na / sensitivity, "loq_um": LOQ_K * sd_na / sensitivity, "lod_route": route}
+    return {"lod_um": limits.lod_um, "loq_um": limits.loq_um, "lod_route": limits.route}
 
 
 def _linear_to_um(line: LineFit, curve: SaturatingFit | None) -> float | None:

@@ -67,6 +67,11 @@ def p_against_zero(value: float, se: float, degrees_of_freedom: int) -> float:
     return two_sided_p(value / se, degrees_of_freedom)
 
 
+def tells_from_zero(value: float, se: float, degrees_of_freedom: int, level: float = 0.05) -> bool:
+    """A value above zero that scatter alone wouldn't give, as far as the points can say."""
+    return value > 0 and not p_against_zero(value, se, degrees_of_freedom) >= level
+
+
 def intercept_p(fit: LineFit) -> float:
     """The chance of an intercept at least so far from zero if there were none."""
     return p_against_zero(fit.intercept_na, fit.intercept_se_na, fit.degrees_of_freedom)

@@ -7,6 +7,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from electrolog.measure.detection import claimed_below_detection
 from electrolog.measure.line import LineFit, levels_um
 from electrolog.measure.points import (
     SuspectPoint,
@@ -50,6 +51,10 @@ class Outcome:
         return self.sensitivity_na_um > 0 and not self.sensitivity_p >= SIGNIFICANT
 
     @property
+    def lowest_um(self) -> float:
+        return float(self.line.concentration_um[self.line.concentration_um > 0].min())
+
+    @property
     def levels(self) -> int:
         return len(levels_um(self.line.concentration_um))
 
@@ -61,7 +66,7 @@ def without_response(concentrations: int) -> str:
 
 
 def all_of(outcome: Outcome, lod_um: float | None) -> tuple[str, ...]:
-    said = [remark(outcome) for remark in REMARKS] + [_below_detection(outcome, lod_um)]
+    said = [remark(outcome) for remark in REMARKS] + [claimed_below_detection(outcome.lowest_um, lod_um)]
     return tuple(text for text in said if text)
 
 
@@ -178,13 +183,6 @@ def _clipped(outcome: Outcome) -> str | None:
         f"the highest current, {line.current_na.max():g} nA, stands at {len(top_um)} concentrations "
         f"({', '.join(f'{level:g}' for level in top_um)} µM): was the amplifier at its limit?"
     )
-
-
-def _below_detection(outcome: Outcome, lod_um: float | None) -> str | None:
-    lowest_um = outcome.line.concentration_um[outcome.line.concentration_um > 0].min()
-    if lod_um is None or lowest_um >= lod_um:
-        return None
-    return f"the range begins at {lowest_um:g} µM, below the detection limit of {lod_um:.2g} µM"
 
 
 REMARKS: tuple[Callable[[Outcome], str | None], ...] = (
