@@ -27,16 +27,16 @@ class InversePrediction:
 
 
 def predict_concentration(
-    fit: LineFit, current_na: float, replicates: int = 1, *, confidence: float = 0.95
+    fit: LineFit, current_na: float, replicates: int = 1, *, weight: float = 1.0, confidence: float = 0.95
 ) -> InversePrediction:
-    """current_na: the mean of `replicates` measurements that scatter as the calibration's points do.
+    """current_na: the mean of `replicates` measurements, each of `weight` (the mean of the points' is one).
 
     Delta: Miller & Miller, chapter 5; Fieller: Draper & Smith, chapter 3.
     """
-    if replicates < 1 or not 0 < confidence < 1 or not math.isfinite(current_na):
+    if replicates < 1 or weight <= 0 or not 0 < confidence < 1 or not math.isfinite(current_na):
         raise InputError(
-            f"current {current_na} nA of {replicates} replicates at confidence {confidence}: a finite current, "
-            "one replicate or more and a confidence between 0 and 1 are needed"
+            f"{current_na} nA from {replicates} replicates of weight {weight} at confidence {confidence}: needed "
+            "are a finite current, one replicate or more, a weight above 0 and a confidence between 0 and 1"
         )
     why_not = _without_slope(fit, 1 - confidence)
     if why_not:
@@ -45,9 +45,10 @@ def predict_concentration(
     if fit.degrees_of_freedom < 1:
         return InversePrediction(estimate_um, None, None, None, "no degree of freedom: no interval")
     t = t_quantile((1 + confidence) / 2, fit.degrees_of_freedom)
-    se_um = _se_um(fit, estimate_um, replicates)
+    own = 1 / (replicates * weight) + (0.0 if fit.through_zero else 1 / fit.n_points)
+    se_um = _se_um(fit, estimate_um, own)
     delta_um = (estimate_um - t * se_um, estimate_um + t * se_um)
-    return InversePrediction(estimate_um, se_um, delta_um, _fieller_um(fit, estimate_um, replicates, t))
+    return InversePrediction(estimate_um, se_um, delta_um, _fieller_um(fit, estimate_um, own, t))
 
 
 def _without_slope(fit: LineFit, level: float) -> str | None:
@@ -60,20 +61,16 @@ def _without_slope(fit: LineFit, level: float) -> str | None:
     )
 
 
-def _mean_variance(fit: LineFit) -> float:
-    return 0.0 if fit.through_zero else 1 / fit.n_points
-
-
-def _se_um(fit: LineFit, estimate_um: float, replicates: int) -> float:
+def _se_um(fit: LineFit, estimate_um: float, own: float) -> float:
     from_centre = (estimate_um - fit.centre_um) ** 2 / fit.spread_um2
     unit_um = fit.residual_sd_na / abs(fit.slope_na_um)
-    return unit_um * math.sqrt(1 / replicates + _mean_variance(fit) + from_centre)
+    return unit_um * math.sqrt(own + from_centre)
 
 
-def _fieller_um(fit: LineFit, estimate_um: float, replicates: int, t: float) -> tuple[float, float]:
+def _fieller_um(fit: LineFit, estimate_um: float, own: float, t: float) -> tuple[float, float]:
     """g below one: the slope is told from zero at this confidence, so that both ends are finite."""
     g = (t * fit.slope_se_na_um / fit.slope_na_um) ** 2
     away_um = estimate_um - fit.centre_um
-    spread = (1 - g) * (1 / replicates + _mean_variance(fit)) + away_um**2 / fit.spread_um2
+    spread = (1 - g) * own + away_um**2 / fit.spread_um2
     half_um = t * fit.residual_sd_na / abs(fit.slope_na_um) * math.sqrt(spread)
     return fit.centre_um + (away_um - half_um) / (1 - g), fit.centre_um + (away_um + half_um) / (1 - g)

@@ -67,8 +67,8 @@ def inverse_factor(sensitivity_na_um: float | None, earlier_na_um: Sequence[floa
     if abs(math.log10(abs(sensitivity_na_um) * usual)) > DECIMAL:
         return None
     return (
-        f"the sensitivity {_plain(sensitivity_na_um)} nA/µM is nearly 1/{_plain(usual)}, the inverse of this probe's usual "
-        f"{_plain(usual)} nA/µM: was it typed in µM/nA?"
+        f"the sensitivity {_plain(sensitivity_na_um)} nA/µM is nearly 1/{_plain(usual)}, the inverse of "
+        f"the usual {_plain(usual)} nA/µM: was it typed in µM/nA?"
     )
 
 
