@@ -32,14 +32,14 @@ class Shape:
             case "none":
                 return 0.0 * half_lives
             case "exponential":
-                return np.log(2) * half_lives
+                return half_lives * float(np.log(2))
             case "plateau":
                 return -np.log(self.plateau + (1 - self.plateau) * np.exp2(-half_lives))
             case "fast-then-slow":
                 fast, slow = np.exp2(-half_lives * self.fast_times), np.exp2(-half_lives)
                 return -np.log(self.fast_share * fast + (1 - self.fast_share) * slow)
             case "square-root":
-                return np.log(2) * np.sqrt(half_lives)
+                return np.sqrt(half_lives) * float(np.log(2))
             case "patch":
                 return np.asarray(np.log(2) * half_lives ** np.exp(log_exponent))
         raise ValueError(self.name)
