@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import math
 import unicodedata
 from dataclasses import dataclass
 from datetime import UTC, date, datetime, tzinfo
@@ -13,6 +12,7 @@ from electrolog.units import PLAIN, Unit, parse_quantity
 
 Value = str | float | datetime | date | None
 TEXT_LIMIT, LABEL_LIMIT = 100_000, 200
+LARGEST = 1e300  # what a number may be at most where its column sets no bound
 
 
 @dataclass(frozen=True)
@@ -101,7 +101,7 @@ class Number(Column):
 
     def checked(self, value: float, text: str) -> float:
         outside = (
-            not math.isfinite(value)
+            not abs(value) <= LARGEST  # so written, NaN is outside too
             or (self.above is not None and value <= self.above)
             or (self.least is not None and value < self.least)
             or (self.most is not None and value > self.most)

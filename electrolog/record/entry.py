@@ -138,3 +138,5 @@ def _remember(sheet: Sheet, row: Row, row_id: int, names: Names) -> None:
         names.add_word(row["kind"], row["term"])
     elif (len(sheet.key) == 1 and sheet.key[0] != "electrode") or sheet is sheets.ELECTRODES:
         names.add(sheet.name, row[sheet.key[0]], row_id)
+    if sheet is sheets.ANALYTES and row["abbreviation"]:
+        names.add_abbreviation(row["abbreviation"], row_id)

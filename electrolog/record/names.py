@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from sqlalchemy import Connection, func, select
+from sqlalchemy import Connection, select
 
 from electrolog.errors import InputError, UnknownName, shortened, unknown
 from electrolog.record import schema
@@ -18,12 +18,22 @@ class Names:
         self._known: dict[tuple[str, str], int] = {}
         self._complete: dict[str, dict[str, tuple[str, int]]] = {}
         self._words: dict[str, dict[str, str]] | None = None
+        self._abbreviations: dict[str, int] | None = None
 
     def row_id(self, sheet: str, name: str) -> int:
         """The live row of that name: spelled so, or in other case, or an analyte's abbreviation."""
+        found = self.find(sheet, name)
+        if found is None:
+            raise unknown(BY_NAME[sheet].one, name, [spelling for spelling, _ in self.everything(sheet).values()])
+        return found
+
+    def find(self, sheet: str, name: str) -> int | None:
+        """The same, None where there is no such row."""
         found = self._known.get((sheet, name))
         if found is None:
-            found = self._known[sheet, name] = self._asked(sheet, name)
+            found = self._asked(sheet, name)
+        if found is not None:
+            self._known[sheet, name] = found
         return found
 
     def add(self, sheet: str, name: str, row_id: int) -> None:
@@ -31,6 +41,9 @@ class Names:
         self._known[sheet, name] = row_id
         if sheet in self._complete:
             self._complete[sheet][name.casefold()] = (name, row_id)
+
+    def add_abbreviation(self, short: str, row_id: int) -> None:
+        self._abbreviated().setdefault(short.casefold(), row_id)
 
     def spelled(self, sheet: str, name: str) -> str | None:
         """How a live row of that name is spelled, if there is one that looks the same."""
@@ -49,12 +62,14 @@ class Names:
 
     def word(self, kind: str, text: str) -> str:
         """The list's own spelling of a word."""
-        words = self._word_lists()[kind]
-        found = words.get(text.casefold())
+        found = self.find_word(kind, text)
         if found is None:
             hint = f"add it with `electrolog words add '{kind}' '{shortened(text, 40)}'`, or as a row of terms.csv"
-            raise unknown(kind, text, words.values(), hint)
+            raise unknown(kind, text, self.words(kind), hint)
         return found
+
+    def find_word(self, kind: str, text: str) -> str | None:
+        return self._word_lists()[kind].get(text.casefold())
 
     def words(self, kind: str) -> list[str]:
         return list(self._word_lists()[kind].values())
@@ -62,23 +77,27 @@ class Names:
     def add_word(self, kind: str, word: str) -> None:
         self._word_lists()[kind].setdefault(word.casefold(), word)
 
-    def _asked(self, sheet: str, name: str) -> int:
+    def _asked(self, sheet: str, name: str) -> int | None:
         table, label = schema.tables[sheet], _label_column(BY_NAME[sheet])
         query = select(table.c.id).where(table.c[label] == name, table.c.struck.is_(None))
-        found = self._connection.execute(query).scalar()
-        return self._asked_leniently(sheet, name) if found is None else int(found)
-
-    def _asked_leniently(self, sheet: str, name: str) -> int:
-        known = self.everything(sheet)
-        if name.casefold() in known:
-            return known[name.casefold()][1]
-        if sheet == "analytes":
-            table = schema.tables[sheet]
-            query = select(table.c.id).where(func.lower(table.c.abbreviation) == name.lower(), table.c.struck.is_(None))
+        if sheet not in self._complete:
             found = self._connection.execute(query).scalar()
             if found is not None:
                 return int(found)
-        raise unknown(BY_NAME[sheet].one, name, [spelling for spelling, _ in known.values()])
+        known = self.everything(sheet).get(name.casefold())
+        if known is not None:
+            return known[1]
+        return self._abbreviated().get(name.casefold()) if sheet == "analytes" else None
+
+    def _abbreviated(self) -> dict[str, int]:
+        if self._abbreviations is None:
+            table = schema.tables["analytes"]
+            query = select(table.c.abbreviation, table.c.id).where(
+                table.c.abbreviation.is_not(None), table.c.struck.is_(None)
+            )
+            # Folded here: the database's own lower() knows ASCII only.
+            self._abbreviations = {short.casefold(): row_id for short, row_id in self._connection.execute(query)}
+        return self._abbreviations
 
     def _word_lists(self) -> dict[str, dict[str, str]]:
         if self._words is None:
