@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from typing import Any
 
-from sqlalchemy import ColumnElement, func, select, update
+from sqlalchemy import ColumnElement, Connection, func, select, update
 
 from electrolog.errors import InputError
 from electrolog.record import columns as kinds
@@ -54,6 +54,12 @@ def strike(writer: Writer, sheet: Sheet, row_id: int, ordinal: int | None = None
     writer.flush()  # the row will point at this entry, so the entry has to be there first
     statement = update(schema.tables[sheet.name]).where(_place(sheet, row_id, ordinal))
     writer.connection.execute(statement.values(struck=seq))
+
+
+def is_live(connection: Connection, sheet: Sheet, row_id: int) -> bool:
+    table = schema.tables[sheet.name]
+    query = select(table.c.id).where(table.c.id == row_id, table.c.struck.is_(None))
+    return connection.execute(query).first() is not None
 
 
 def _require_reason(writer: Writer) -> None:

@@ -47,8 +47,13 @@ class Names:
 
     def spelled(self, sheet: str, name: str) -> str | None:
         """How a live row of that name is spelled, if there is one that looks the same."""
-        found = self.everything(sheet).get(name.casefold())
-        return found[0] if found else None
+        if sheet in self._complete:
+            found = self._complete[sheet].get(name.casefold())
+            return found[0] if found else None
+        table, label = schema.tables[sheet], _label_column(BY_NAME[sheet])
+        query = select(table.c[label]).where(func.lower(table.c[label]) == name.lower(), table.c.struck.is_(None))
+        spelling: str | None = self._connection.execute(query).scalars().first()
+        return spelling
 
     def everything(self, sheet: str) -> dict[str, tuple[str, int]]:
         """Every live name of a sheet, folded, with its spelling and row number."""

@@ -18,6 +18,8 @@ from sqlalchemy.pool import NullPool
 from electrolog.errors import InputError, RecordError, shortened
 from electrolog.record import journal, schema
 
+__all__ = ["Connection", "Record", "open_record"]
+
 BUSY_TIMEOUT_MS = 30_000
 LEAST_SQLITE = (3, 37, 0)  # STRICT tables
 

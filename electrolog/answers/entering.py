@@ -1,0 +1,193 @@
+"""Logging: rows are read, checked, looked over for slips and written, all of them or none."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+from datetime import tzinfo
+from typing import Any
+
+from electrolog.answers import doubts as asked
+from electrolog.answers import figures as made
+from electrolog.answers.labels import expanded, numbered
+from electrolog.errors import DoubtfulEntry, InputError, unknown
+from electrolog.measure.calibrate import CalibrationFigures
+from electrolog.record import entry, queries, sheets
+from electrolog.record.columns import Value
+from electrolog.record.journal import Writer
+from electrolog.record.sheets import Sheet
+from electrolog.record.store import Record
+
+Typed = Mapping[str, str | Value]
+Points = Sequence[tuple[float, float]]
+
+
+@dataclass(frozen=True)
+class Entered:
+    """A row that is now in the record, and what was doubted and confirmed."""
+
+    sheet: str
+    row_id: int
+    values: dict[str, Value]
+    doubts: tuple[str, ...]
+
+
+@dataclass(frozen=True)
+class NewCalibration:
+    """One calibration about to be logged: its columns as typed, its raw points (µM, nA)."""
+
+    values: Typed
+    points: Points = ()
+
+
+def read(sheet: Sheet, typed: Typed, zone: tzinfo | None = None) -> dict[str, Value]:
+    """Typed text as the sheet's values; what is None or blank is unknown. Raises InputError."""
+    values: dict[str, Value] = {}
+    for name, value in typed.items():
+        column = sheet.by_name.get(name)
+        if column is None:
+            raise unknown(f"column of {sheet.name}", name, sheet.by_name)
+        if isinstance(value, str):
+            values[name] = column.read_typed(value, zone) if value.strip() else None
+        else:
+            values[name] = value
+    for column in sheet.columns:
+        if column.required and values.get(column.name) is None:
+            raise InputError(f"{column.name}: missing; a {sheet.one} needs it ({column.about})")
+    return values
+
+
+def log(
+    record: Record, sheet: Sheet, typed: Typed, labels: Sequence[str], zone: tzinfo | None, confirmed: bool
+) -> list[Entered]:
+    """The same event for one probe or several. Raises DoubtfulEntry unless doubts are confirmed."""
+    with record.writing() as writer:
+        chosen = spelled(writer, labels)
+        rows = [read(sheet, {**typed, "electrode": label}, zone) for label in chosen]
+        said = _doubts(writer, sheet, rows)
+        _confirm(said, confirmed)
+        return [Entered(sheet.name, entry.add(writer, sheet, row), row, tuple(said)) for row in rows]
+
+
+def log_plain(record: Record, sheet: Sheet, typed: Typed, zone: tzinfo | None) -> Entered:
+    """A row that is no event of a probe: a standard, a waveform, an analyte, a word."""
+    values = read(sheet, typed, zone)
+    with record.writing() as writer:
+        return Entered(sheet.name, entry.add(writer, sheet, values), values, ())
+
+
+def log_calibrations(
+    record: Record, new: Sequence[NewCalibration], zone: tzinfo | None, confirmed: bool
+) -> list[Entered]:
+    """Calibrations with their points and figures; a label that isn't given is the next free number."""
+    with record.writing() as writer:
+        rows = [(_labelled(writer, item.values, zone, place), item.points) for place, item in enumerate(new)]
+        uncertainties = made.standards_uncertainties(writer.connection)
+        computed = [made.computed(_as_calibration(row, points), uncertainties) for row, points in rows]
+        said = _doubts(writer, sheets.CALIBRATIONS, [row for row, _ in rows])
+        for (row, points), figures in zip(rows, computed, strict=True):
+            said += asked.of_calibration(row, points, figures, _earlier(writer, row))
+        _confirm(said, confirmed)
+        entered = [
+            Entered("calibrations", entry.add(writer, sheets.CALIBRATIONS, row, points), row, tuple(said))
+            for row, points in rows
+        ]
+        queries.keep_figures(
+            writer,
+            {one.row_id: (figures.method, figures.to_dict()) for one, figures in zip(entered, computed, strict=True)},
+        )
+        return entered
+
+
+def make_probes(
+    record: Record, labels: Sequence[str], count: int | None, batch: Typed, probe: Typed, zone: tzinfo | None
+) -> list[str]:
+    """New probes, by label or `count` of a batch; a batch that isn't there yet is made with what `batch` says."""
+    name = str(batch.get("batch") or "")
+    with record.writing() as writer:
+        known = writer.names.everything("electrodes")
+        chosen = expanded(labels) if labels else numbered(name, _first_free(name, known), count or 1)
+        if not labels and not name:
+            raise InputError("which probes? accepted: labels, or --count with --batch")
+        _make_batch(writer, read(sheets.BATCHES, batch, zone) if name else {})
+        values = {**probe, "batch": name or None}
+        for label in chosen:
+            entry.add(writer, sheets.ELECTRODES, read(sheets.ELECTRODES, {**values, "electrode": label}, zone))
+        return chosen
+
+
+def spelled(writer: Writer, labels: Sequence[str]) -> list[str]:
+    """Labels as the record spells them; ranges and lists are taken apart. Raises UnknownName."""
+    known = writer.names.everything("electrodes")
+    chosen = expanded(labels, (spelling for spelling, _ in known.values()))
+    for label in chosen:
+        writer.names.row_id("electrodes", label)
+    return [known[label.casefold()][0] for label in chosen]
+
+
+def _make_batch(writer: Writer, values: dict[str, Value]) -> None:
+    """Adds the batch; for one that is there, what is said of it again must be what is known."""
+    if not values:
+        return
+    label = str(values["batch"])
+    if writer.names.spelled("batches", label) is None:
+        entry.add(writer, sheets.BATCHES, values)
+        return
+    said = {name for name, value in values.items() if value is not None} - {"batch"}
+    if said:
+        raise InputError(
+            f"batch '{label}' is there already, and this says more of it ({', '.join(sorted(said))})",
+            "correct it with `electrolog amend batch`",
+        )
+
+
+def _first_free(stem: str, known: Mapping[str, object]) -> int:
+    prefix = f"{stem}-".casefold()
+    taken = [name.removeprefix(prefix) for name in known if name.startswith(prefix)]
+    return max((int(tail) for tail in taken if tail.isdigit()), default=0) + 1
+
+
+def _labelled(writer: Writer, typed: Typed, zone: tzinfo | None, place: int) -> dict[str, Value]:
+    """With its probe's own spelling, and a label if none was given: C0001, C0002, …"""
+    label = typed.get("calibration") or _next_label(writer, place)
+    electrode = spelled(writer, [str(typed["electrode"])])[0]
+    return read(sheets.CALIBRATIONS, {**typed, "calibration": label, "electrode": electrode}, zone)
+
+
+def _next_label(writer: Writer, place: int) -> str:
+    number = queries.newest_id(writer.connection, sheets.CALIBRATIONS) + 1 + place
+    while writer.names.spelled("calibrations", f"C{number:04d}") is not None:
+        number += 1
+    return f"C{number:04d}"
+
+
+def _as_calibration(row: dict[str, Value], points: Points) -> queries.Calibration:
+    full: dict[str, Any] = {column.name: row.get(column.name) for column in sheets.CALIBRATIONS.columns}
+    return queries.Calibration(full, tuple(points), None)
+
+
+def _doubts(writer: Writer, sheet: Sheet, rows: Sequence[dict[str, Value]]) -> list[str]:
+    if sheet.time_column is None:
+        return []
+    probes = queries.probes(writer.connection, [str(row["electrode"]) for row in rows])
+    life = queries.events(writer.connection, [probe["id"] for probe in probes])
+    made_on = {probe["electrode"]: probe["made_on"] for probe in probes}
+    return [
+        text
+        for row in rows
+        for text in asked.of_event(sheet, row, life.get(str(row["electrode"]), []), made_on[row["electrode"]])
+    ]
+
+
+def _earlier(writer: Writer, row: dict[str, Value]) -> list[tuple[CalibrationFigures, list[float]]]:
+    electrode_id = writer.names.row_id("electrodes", str(row["electrode"]))
+    analyte_id = writer.names.row_id("analytes", str(row["analyte"]))
+    waveform_id = writer.names.row_id("waveforms", str(row["waveform"]))
+    found = queries.calibrations(writer.connection, [electrode_id], analyte_id, waveform_id)
+    uncertainties: dict[str, float | None] = {}
+    return [(made.figures_of(one, uncertainties), [c for c, _ in one.points]) for one in found]
+
+
+def _confirm(said: Sequence[str], confirmed: bool) -> None:
+    if said and not confirmed:
+        raise DoubtfulEntry("; ".join(said), said, "if it is right as it stands, repeat it with --yes")

@@ -1,0 +1,103 @@
+"""The sensitivity history: every calibration with what it says, and what the probe had been through by then."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+from dataclasses import dataclass
+from datetime import datetime
+from typing import Any
+
+from electrolog.answers import figures as made
+from electrolog.answers import life as lives
+from electrolog.measure.calibrate import CalibrationFigures
+from electrolog.record import queries, sheets
+from electrolog.record.queries import Calibration, Event
+from electrolog.record.store import Record
+
+
+@dataclass(frozen=True)
+class Reading:
+    """One calibration of a probe. `share_left` is of the reference calibration; its error is of both readings."""
+
+    electrode: str
+    calibration: str
+    at: datetime
+    stage: str
+    analyte: str
+    waveform: str
+    figures: CalibrationFigures
+    row: dict[str, Any]
+    points: tuple[tuple[float, float], ...]
+    exposure_h: dict[str, float]
+    share_left: float | None
+    share_left_se: float | None
+    is_reference: bool
+    warnings: tuple[str, ...]
+
+
+def readings(
+    record: Record, labels: Sequence[str], analyte: str | None = None, waveform: str | None = None
+) -> list[Reading]:
+    """Calibrations of the named probes, oldest first; of one analyte or waveform if named."""
+    with record.reading() as connection:
+        probes = queries.probes(connection, labels)
+        ids = [probe["id"] for probe in probes]
+        found = queries.calibrations(connection, ids)
+        life = queries.events(connection, ids)
+    numbers = made.all_figures(record, found)
+    return [
+        _reading(calibration, life[calibration.row["electrode"]], numbers)
+        for calibration in found
+        if analyte in (None, calibration.row["analyte"]) and waveform in (None, calibration.row["waveform"])
+    ]
+
+
+def _reading(calibration: Calibration, life: list[Event], numbers: dict[int, CalibrationFigures]) -> Reading:
+    row = calibration.row
+    own = numbers[row["id"]]
+    first = lives.reference(life, row["analyte"], row["waveform"], calibration.at)
+    share, share_se = _share(own, numbers[first.row["id"]]) if first else (None, None)
+    is_reference = bool(first) and first is not None and first.row["id"] == row["id"]
+    return Reading(
+        electrode=row["electrode"],
+        calibration=row["calibration"],
+        at=calibration.at,
+        stage=row["stage"],
+        analyte=row["analyte"],
+        waveform=row["waveform"],
+        figures=own,
+        row=row,
+        points=calibration.points,
+        exposure_h=lives.exposure_h(life, calibration.at),
+        share_left=share,
+        share_left_se=None if is_reference else share_se,
+        is_reference=is_reference,
+        warnings=own.warnings + tuple(_said_of_order(calibration, life)),
+    )
+
+
+def _share(now: CalibrationFigures, reference: CalibrationFigures) -> tuple[float | None, float | None]:
+    """Ratio of two sensitivities and its standard error by propagation of both relative errors."""
+    top, bottom = now.sensitivity_na_um, reference.sensitivity_na_um
+    if top is None or not bottom or bottom <= 0:
+        return None, None
+    top_se, bottom_se = now.sensitivity_se_na_um, reference.sensitivity_se_na_um
+    if top_se is None or bottom_se is None:
+        return top / bottom, None
+    return top / bottom, math.hypot(top_se / bottom, top * bottom_se / bottom**2)
+
+
+def _said_of_order(calibration: Calibration, life: list[Event]) -> list[str]:
+    """A cleaning between a run and its post-calibration hides the loss that the calibration was to measure."""
+    if calibration.row["stage"] != "post":
+        return []
+    before = [event for event in lives.until(life, calibration.at) if event.sheet is not sheets.CALIBRATIONS]
+    runs = [lives.end_of(event) for event in before if event.sheet is sheets.EXPOSURES]
+    if not runs:
+        return ["a post-calibration without a logged run before it: the exposure behind it is unknown"]
+    since = [event for event in before if event.sheet in lives.RENEWING and event.at >= max(runs)]
+    return [
+        f"a {event.sheet.one} stands between the run and this post-calibration: the run's own loss is hidden by it"
+        for event in since
+    ]

@@ -1,0 +1,199 @@
+"""What is asked of the record. Status and exposure are derived here from events; nowhere are they stored."""
+
+from __future__ import annotations
+
+import json
+from collections import defaultdict
+from collections.abc import Iterable, Mapping, Sequence
+from dataclasses import dataclass
+from datetime import datetime
+from typing import Any
+
+from sqlalchemy import Connection, Select, delete, func, insert, select
+
+from electrolog.record import schema, sheets
+from electrolog.record.journal import Writer
+from electrolog.record.readable import Row, readable, rows
+from electrolog.record.sheets import EVENTS, Sheet
+
+_MANY = 500  # engines limit how many parameters one statement takes; above this a whole table is read instead
+
+
+@dataclass(frozen=True)
+class Event:
+    """One thing that happened to a probe: `row` is the readable row of its sheet."""
+
+    at: datetime
+    sheet: Sheet
+    row: Row
+
+    @property
+    def name(self) -> str:
+        """How a person refers to it: `coating 17`, or its label."""
+        return f"{self.sheet.one} {self.row.get('calibration') or self.row['id']}"
+
+
+@dataclass(frozen=True)
+class Calibration:
+    """A calibration with its live raw points (µM, nA) and, if made before, its derived figures as stored."""
+
+    row: Row
+    points: tuple[tuple[float, float], ...]
+    figures: Mapping[str, Any] | None
+
+    @property
+    def at(self) -> datetime:
+        moment: datetime = self.row["at"]
+        return moment
+
+
+def probes(connection: Connection, labels: Sequence[str] = ()) -> list[Row]:
+    """Probes with their batch's columns; all of them, or those named, in the order of their labels."""
+    table, batch = schema.tables["electrodes"], schema.tables["batches"]
+    query = (
+        select(
+            table.c.id,
+            table.c.electrode,
+            table.c.geometry,
+            table.c.exposed_length_um,
+            table.c.diameter_um,
+            table.c.note,
+            *[batch.c[name] for name in ("batch", "made_on", "made_by", "fibre", "fibre_diameter_um", "insulation")],
+            batch.c.seal,
+        )
+        .select_from(table.outerjoin(batch, table.c.batch_id == batch.c.id))
+        .where(table.c.struck.is_(None))
+        .order_by(table.c.electrode)
+    )
+    if labels:
+        query = query.where(table.c.electrode.in_(labels))
+    return [dict(row) for row in connection.execute(query).mappings()]
+
+
+def events(
+    connection: Connection, electrode_ids: Sequence[int] | None = None, of: Iterable[Sheet] = EVENTS
+) -> dict[str, list[Event]]:
+    """Events by probe label, each list in the order of time; of all probes, or of those named."""
+    lives: dict[str, list[Event]] = defaultdict(list)
+    for sheet in of:
+        time = sheet.time_column or "at"
+        query = _of_electrodes(readable(sheet), sheet, electrode_ids)
+        for row in connection.execute(query).mappings():
+            lives[row["electrode"]].append(Event(row[time], sheet, dict(row)))
+    for life in lives.values():
+        life.sort(key=lambda event: (event.at, EVENTS.index(event.sheet)))
+    return dict(lives)
+
+
+def calibrations(
+    connection: Connection,
+    electrode_ids: Sequence[int] | None = None,
+    analyte_id: int | None = None,
+    waveform_id: int | None = None,
+) -> list[Calibration]:
+    """Calibrations with points and stored figures, oldest first."""
+    table = schema.tables["calibrations"]
+    query = _of_electrodes(readable(sheets.CALIBRATIONS), sheets.CALIBRATIONS, electrode_ids)
+    if analyte_id is not None:
+        query = query.where(table.c.analyte_id == analyte_id)
+    if waveform_id is not None:
+        query = query.where(table.c.waveform_id == waveform_id)
+    return _with_points(connection, query)
+
+
+def calibrations_by_id(connection: Connection, ids: Sequence[int]) -> list[Calibration]:
+    return _with_points(connection, readable(sheets.CALIBRATIONS).where(schema.tables["calibrations"].c.id.in_(ids)))
+
+
+def calibrations_on_standard(connection: Connection, standard_id: int) -> list[Calibration]:
+    table = schema.tables["calibrations"]
+    return _with_points(connection, readable(sheets.CALIBRATIONS).where(table.c.standard_id == standard_id))
+
+
+def _with_points(connection: Connection, query: Select[Any]) -> list[Calibration]:
+    table, figures = schema.tables["calibrations"], schema.calibration_figures
+    found = [dict(row) for row in connection.execute(query.order_by(table.c.at, table.c.calibration)).mappings()]
+    ids = [row["id"] for row in found]
+    points = _points(connection, ids)
+    kept = {
+        row.calibration_id: json.loads(row.figures)
+        for row in connection.execute(_among(select(figures), figures.c.calibration_id, ids))
+    }
+    return [Calibration(row, tuple(points.get(row["id"], ())), kept.get(row["id"])) for row in found]
+
+
+def _points(connection: Connection, calibration_ids: Sequence[int]) -> dict[int, list[tuple[float, float]]]:
+    table = schema.tables["calibration_points"]
+    query = select(table.c.calibration_id, table.c.concentration_um, table.c.current_na).where(table.c.struck.is_(None))
+    query = _among(query, table.c.calibration_id, calibration_ids)
+    found: dict[int, list[tuple[float, float]]] = defaultdict(list)
+    for calibration_id, concentration, current in connection.execute(
+        query.order_by(table.c.calibration_id, table.c.ordinal)
+    ):
+        found[calibration_id].append((concentration, current))
+    return found
+
+
+def _of_electrodes(query: Any, sheet: Sheet, electrode_ids: Sequence[int] | None) -> Any:
+    if electrode_ids is None:
+        return query
+    return _among(query, schema.tables[sheet.name].c.electrode_id, electrode_ids)
+
+
+def _among(query: Any, column: Any, ids: Sequence[int]) -> Any:
+    return query.where(column.in_(ids)) if len(ids) <= _MANY else query
+
+
+def keep_figures(writer: Writer, figures: Mapping[int, tuple[str, Mapping[str, Any]]]) -> None:
+    """Stores derived figures, by calibration number: (method, figures). What was stored before is replaced."""
+    table = schema.calibration_figures
+    writer.flush()  # the figures point at rows that may still be waiting
+    ids = list(figures)
+    for start in range(0, len(ids), _MANY):
+        writer.connection.execute(delete(table).where(table.c.calibration_id.in_(ids[start : start + _MANY])))
+    made = [
+        {"calibration_id": key, "method": method, "figures": json.dumps(values, allow_nan=False)}
+        for key, (method, values) in figures.items()
+    ]
+    if made:
+        writer.connection.execute(insert(table), made)
+
+
+def newest_id(connection: Connection, sheet: Sheet) -> int:
+    return connection.execute(select(func.max(schema.tables[sheet.name].c.id))).scalar() or 0
+
+
+def standard_of(connection: Connection, label: str) -> Row:
+    found = rows(connection, sheets.STANDARDS, schema.tables["standards"].c.standard == label)
+    return found[0]
+
+
+def limits(connection: Connection) -> list[Row]:
+    return rows(connection, sheets.LIMITS, order=("rule", "id"))
+
+
+@dataclass(frozen=True)
+class KeptFit:
+    method: str
+    fingerprint: str
+    made_at: datetime
+    fit: dict[str, Any]
+
+
+def kept_fit(connection: Connection, analyte_id: int) -> KeptFit | None:
+    table = schema.kept_fits
+    row = connection.execute(select(table).where(table.c.analyte_id == analyte_id)).first()
+    return KeptFit(row.method, row.fingerprint, row.made_at, json.loads(row.fit)) if row else None
+
+
+def keep_fit(writer: Writer, analyte_id: int, method: str, fingerprint: str, fit: Mapping[str, Any]) -> None:
+    table = schema.kept_fits
+    writer.connection.execute(delete(table).where(table.c.analyte_id == analyte_id))
+    row = {
+        "analyte_id": analyte_id,
+        "method": method,
+        "fingerprint": fingerprint,
+        "made_at": writer.at,
+        "fit": json.dumps(fit, allow_nan=False),
+    }
+    writer.connection.execute(insert(table), [row])
