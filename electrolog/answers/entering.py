@@ -9,7 +9,7 @@ from typing import Any
 
 from electrolog.answers import doubts as asked
 from electrolog.answers import figures as made
-from electrolog.answers.labels import expanded, numbered
+from electrolog.answers.labels import expanded, known_labels, numbered
 from electrolog.errors import DoubtfulEntry, InputError, unknown
 from electrolog.measure.calibrate import CalibrationFigures
 from electrolog.record import entry, queries, sheets
@@ -62,7 +62,7 @@ def log(
 ) -> list[Entered]:
     """The same event for one probe or several. Raises DoubtfulEntry unless doubts are confirmed."""
     with record.writing() as writer:
-        chosen = spelled(writer, labels)
+        chosen = known_labels(writer.connection, labels, writer.names)
         rows = [read(sheet, {**typed, "electrode": label}, zone) for label in chosen]
         said = _doubts(writer, sheet, rows)
         _confirm(said, confirmed)
@@ -116,15 +116,6 @@ def make_probes(
         return chosen
 
 
-def spelled(writer: Writer, labels: Sequence[str]) -> list[str]:
-    """Labels as the record spells them; ranges and lists are taken apart. Raises UnknownName."""
-    known = writer.names.everything("electrodes")
-    chosen = expanded(labels, (spelling for spelling, _ in known.values()))
-    for label in chosen:
-        writer.names.row_id("electrodes", label)
-    return [known[label.casefold()][0] for label in chosen]
-
-
 def _make_batch(writer: Writer, values: dict[str, Value]) -> None:
     """Adds the batch; for one that is there, what is said of it again must be what is known."""
     if not values:
@@ -150,7 +141,7 @@ def _first_free(stem: str, known: Mapping[str, object]) -> int:
 def _labelled(writer: Writer, typed: Typed, zone: tzinfo | None, place: int) -> dict[str, Value]:
     """With its probe's own spelling, and a label if none was given: C0001, C0002, …"""
     label = typed.get("calibration") or _next_label(writer, place)
-    electrode = spelled(writer, [str(typed["electrode"])])[0]
+    electrode = known_labels(writer.connection, [str(typed["electrode"])], writer.names)[0]
     return read(sheets.CALIBRATIONS, {**typed, "calibration": label, "electrode": electrode}, zone)
 
 

@@ -6,6 +6,8 @@ import re
 from collections.abc import Iterable
 
 from electrolog.errors import InputError, shortened
+from electrolog.record.names import Names
+from electrolog.record.store import Connection
 
 _NUMBERED = re.compile(r"(.*?)(\d+)", re.DOTALL)
 MOST = 10_000
@@ -26,6 +28,18 @@ def expanded(names: Iterable[str], known: Iterable[str] = ()) -> list[str]:
     if "" in labels:
         raise InputError("a label is empty; accepted: such as B1-01, or several as B1-01..B1-08 or B1-01,B1-04")
     return list(labels)
+
+
+def known_labels(connection: Connection, names: Iterable[str], lookup: Names | None = None) -> list[str]:
+    """Labels as the record spells them. Raises UnknownName for the first that it doesn't know."""
+    lookup = lookup or Names(connection)
+    plain = [name for name in names if lookup.find("electrodes", name) is not None]
+    rest = [name for name in names if name not in plain]
+    known = lookup.everything("electrodes") if rest else {}
+    chosen = plain if not rest else expanded(names, (spelling for spelling, _ in known.values()))
+    for label in chosen:
+        lookup.row_id("electrodes", label)
+    return list(dict.fromkeys(lookup.spelled("electrodes", label) or label for label in chosen))
 
 
 def numbered(stem: str, first: int, count: int) -> list[str]:

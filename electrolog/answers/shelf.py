@@ -5,7 +5,6 @@ from __future__ import annotations
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass, field
 from datetime import date, datetime
-from typing import Any
 
 from electrolog.answers import figures as made
 from electrolog.answers import life as lives
@@ -13,9 +12,10 @@ from electrolog.clock import utc_now
 from electrolog.errors import unknown
 from electrolog.measure.calibrate import CalibrationFigures
 from electrolog.record import queries, sheets
+from electrolog.record.names import Names
 from electrolog.record.queries import Event
-from electrolog.record.readable import Row
-from electrolog.record.store import Record
+from electrolog.record.readable import Row, row_by_id
+from electrolog.record.store import Connection, Record
 
 STATES = ("untested", "calibrated", "used", "retired")
 
@@ -73,14 +73,10 @@ def shelf(record: Record, wanted: Filter, moment: datetime | None = None) -> lis
     return [one for one, probe in zip(shelved, probes, strict=True) if _matches(one, probe, wanted, life)]
 
 
-def _analyte_spelled(connection: Any, name: str | None) -> str | None:
+def _analyte_spelled(connection: Connection, name: str | None) -> str | None:
     if name is None:
         return None
-    from electrolog.record.names import Names
-
     row_id = Names(connection).row_id("analytes", name)
-    from electrolog.record.readable import row_by_id
-
     return str(row_by_id(connection, sheets.ANALYTES, row_id)["analyte"])
 
 
@@ -130,10 +126,8 @@ def _share_left(life: list[Event], last: Event | None, figures: Mapping[int, Cal
 
 
 def _matches(one: Shelved, probe: Row, wanted: Filter, life: Mapping[str, list[Event]]) -> bool:
-    if wanted.state is None or wanted.state == "usable":
-        in_state = one.state != "retired"
-    else:
-        in_state = one.state == wanted.state
+    usable = wanted.state in (None, "usable")
+    in_state = one.state != "retired" if usable else one.state == wanted.state
     coating = one.coating or "none"
     checks: list[tuple[str | None, Callable[[str], bool]]] = [
         (wanted.batch, lambda text: _begins(one.batch, text)),

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from sqlalchemy import Connection, select
+from sqlalchemy import Connection, func, select
 
 from electrolog.errors import InputError, UnknownName, shortened, unknown
 from electrolog.record import schema

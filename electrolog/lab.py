@@ -1,0 +1,171 @@
+"""The one door: everything the terminal can do, for Python users too.
+
+    from electrolog import open_lab
+    lab = open_lab("lab.db")
+    lab.readings(["B1-01"])
+
+Each method is one question or one entry; the answers are the dataclasses of electrolog/answers.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+from datetime import datetime, tzinfo
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+from electrolog.record import sheets
+from electrolog.record.columns import Value
+from electrolog.record.store import Record, default_location, open_record
+
+if TYPE_CHECKING:
+    from electrolog.answers.correcting import Corrected
+    from electrolog.answers.entering import Entered, NewCalibration
+    from electrolog.answers.figures import Recomputed
+    from electrolog.answers.history import Reading
+    from electrolog.answers.shelf import Filter, Shelved
+    from electrolog.record.exchange_in import ImportReport
+    from electrolog.record.exchange_out import ExportReport
+    from electrolog.record.journal import Entry
+    from electrolog.record.queries import Event
+    from electrolog.record.readable import Row
+    from electrolog.record.verify import Verification
+
+
+@dataclass(frozen=True)
+class Lab:
+    """A record and the time zone in which times without an offset are read (None: the machine's)."""
+
+    record: Record
+    zone: tzinfo | None = None
+
+    # --- at the bench -------------------------------------------------------------------------------------
+
+    def make_probes(
+        self,
+        labels: Sequence[str] = (),
+        *,
+        count: int | None = None,
+        batch: Mapping[str, str | Value] | None = None,
+        probe: Mapping[str, str | Value] | None = None,
+    ) -> list[str]:
+        """Adds probes by label, or `count` numbered ones of a batch; returns their labels."""
+        from electrolog.answers.entering import make_probes
+
+        return make_probes(self.record, labels, count, batch or {}, probe or {}, self.zone)
+
+    def log(
+        self, sheet: str, labels: Sequence[str], values: Mapping[str, str | Value], *, confirmed: bool = False
+    ) -> list[Entered]:
+        """Logs the same event for one probe or several. Raises DoubtfulEntry for a likely slip unless confirmed."""
+        from electrolog.answers.entering import log
+
+        return log(self.record, sheets.BY_NAME[sheet], values, labels, self.zone, confirmed)
+
+    def log_plain(self, sheet: str, values: Mapping[str, str | Value]) -> Entered:
+        """Adds a standard, a waveform, an analyte, a word: what is no event of a probe."""
+        from electrolog.answers.entering import log_plain
+
+        return log_plain(self.record, sheets.BY_NAME[sheet], values, self.zone)
+
+    def calibrate(self, new: Sequence[NewCalibration], *, confirmed: bool = False) -> list[Entered]:
+        """Logs calibrations with their raw points and keeps what was computed from them."""
+        from electrolog.answers.entering import log_calibrations
+
+        return log_calibrations(self.record, new, self.zone, confirmed)
+
+    # --- asking back --------------------------------------------------------------------------------------
+
+    def rows(self, sheet: str) -> list[Row]:
+        """The live rows of a sheet, links by name."""
+        from electrolog.record.readable import rows
+
+        chosen = sheets.BY_NAME[sheet]
+        with self.record.reading() as connection:
+            return rows(connection, chosen, order=chosen.key[:1] if chosen.key[:1] != ("electrode",) else ())
+
+    def labels(self, names: Sequence[str]) -> list[str]:
+        """Labels as the record spells them, ranges taken apart. Raises UnknownName."""
+        from electrolog.answers.labels import known_labels
+
+        with self.record.reading() as connection:
+            return known_labels(connection, names)
+
+    def life(self, label: str) -> tuple[Row, list[Event]]:
+        """A probe and its events in the order of time."""
+        from electrolog.record import queries
+
+        with self.record.reading() as connection:
+            probe = queries.probes(connection, [label])[0]
+            return probe, queries.events(connection, [probe["id"]]).get(label, [])
+
+    def readings(
+        self, labels: Sequence[str], *, analyte: str | None = None, waveform: str | None = None
+    ) -> list[Reading]:
+        """The sensitivity history of the named probes, oldest first."""
+        from electrolog.answers.history import readings
+
+        return readings(self.record, labels, analyte, waveform)
+
+    def shelf(self, wanted: Filter, moment: datetime | None = None) -> list[Shelved]:
+        from electrolog.answers.shelf import shelf
+
+        return shelf(self.record, wanted, moment)
+
+    def words(self, kind: str) -> list[str]:
+        from electrolog.record.names import Names
+
+        with self.record.reading() as connection:
+            return Names(connection).words(kind)
+
+    # --- correcting and trusting --------------------------------------------------------------------------
+
+    def amend(self, one: str, name: str, values: Mapping[str, str], reason: str) -> Corrected:
+        from electrolog.answers.correcting import amend_row
+
+        return amend_row(self.record, one, name, values, reason, self.zone)
+
+    def strike(self, one: str, name: str, reason: str) -> Corrected:
+        from electrolog.answers.correcting import strike_row
+
+        return strike_row(self.record, one, name, reason)
+
+    def journal(self, sheet: str | None = None, row_id: int | None = None) -> list[Entry]:
+        from electrolog.record import journal
+
+        with self.record.reading() as connection:
+            return list(journal.entries(connection, sheet, row_id))
+
+    def verify(self) -> Verification:
+        from electrolog.record.verify import verify
+
+        with self.record.reading() as connection:
+            return verify(connection)
+
+    def recompute(self) -> list[Recomputed]:
+        from electrolog.answers.figures import recompute
+
+        return recompute(self.record)
+
+    # --- in and out ---------------------------------------------------------------------------------------
+
+    def import_folder(self, folder: Path) -> ImportReport:
+        from electrolog.record.exchange_in import import_folder
+
+        return import_folder(self.record, folder, self.zone)
+
+    def export_folder(self, folder: Path) -> ExportReport:
+        from electrolog.record.exchange_out import export_folder
+
+        return export_folder(self.record, folder)
+
+
+def open_lab(
+    where: str | None = None, *, zone: tzinfo | None = None, who: str | None = None, create: bool = False
+) -> Lab:
+    """The lab whose record is at `where` (a file or an SQLAlchemy URL; None: ELECTROLOG_DB or the platform's place).
+
+    Raises RecordError when there is none, unless `create`.
+    """
+    return Lab(open_record(where or default_location(), who, create), zone)

@@ -1,0 +1,58 @@
+"""Tables for a person: they fit the width there is, and meaning is never carried by colour."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Sequence
+from datetime import datetime
+from typing import TYPE_CHECKING
+
+from electrolog.clock import shown_moment
+from electrolog.show.text import one_line, safe, width
+from electrolog.units import shown_number
+
+if TYPE_CHECKING:
+    from rich.table import Table
+
+
+def print_table(columns: Sequence[str], rows: Iterable[Sequence[object]], numeric: Iterable[str] = ()) -> None:
+    """`numeric` columns stand right. Cells are text and never markup: a note may hold brackets."""
+    from rich import box
+    from rich.table import Table
+    from rich.text import Text
+
+    right = set(numeric)
+    table = Table(box=box.SIMPLE_HEAD, pad_edge=False, show_edge=False, expand=False)
+    for name in columns:
+        table.add_column(Text(name), justify="right" if name in right else "left", overflow="fold")
+    for row in rows:
+        table.add_row(*[Text(one_line("" if cell is None else cell)) for cell in row])
+    _print(table)
+
+
+def _print(table: Table) -> None:
+    from rich.console import Console
+
+    Console(width=width(), color_system=None, highlight=False, markup=False, emoji=False).print(table)
+
+
+def print_lines(*lines: str) -> None:
+    """Sentences, wrapped at the width there is."""
+    import textwrap
+
+    for line in lines:
+        indent = " " * (len(line) - len(line.lstrip()))
+        wrapped = textwrap.wrap(safe(line), width(), subsequent_indent=indent + "  ", break_on_hyphens=False)
+        print("\n".join(wrapped) if wrapped else "")  # noqa: T201
+
+
+def with_error(value: float | None, error: float | None, digits: int = 3) -> str:
+    """`12.4 ± 0.3`; without an error the value alone says less, and is marked so."""
+    if value is None:
+        return "?"
+    if error is None:
+        return f"{shown_number(value, digits)} ± ?"
+    return f"{shown_number(value, digits)} ± {shown_number(error, 2)}"
+
+
+def moment_or_never(moment: datetime | None) -> str:
+    return "never" if moment is None else shown_moment(moment)
