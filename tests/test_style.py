@@ -78,7 +78,7 @@ def leaves_encoding_open(call: ast.Call) -> bool:
     given = {keyword.arg for keyword in call.keywords}
     if name in ("run", "Popen", "check_output"):
         return bool(given & {"text", "universal_newlines"}) and "encoding" not in given
-    if name not in TEXT_CALLS or "encoding" in given:
+    if name not in TEXT_CALLS or "encoding" in given or ast.unparse(call.func) == "os.open":
         return False
     modes = [
         value.value for value in [*call.args, *(k.value for k in call.keywords)] if isinstance(value, ast.Constant)
@@ -114,6 +114,7 @@ def asserts(function: ast.FunctionDef, known: dict[str, ast.FunctionDef], deep: 
         ("open(name)", True),
         ("open(name, 'rb')", False),
         ("path.open(mode='wb')", False),
+        ("os.open(name, os.O_WRONLY)", False),
         ("path.open('w', newline='')", True),
         ("subprocess.run(x, text=True)", True),
         ("subprocess.run(x, text=True, encoding='utf-8')", False),
