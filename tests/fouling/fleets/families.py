@@ -50,8 +50,8 @@ def _plain_lab(family: str, n_units: int, shape: Shape, rng: np.random.Generator
         n_units=n_units,
         level=Gaussian(rng.uniform(1.5, 3.5), rng.uniform(0.3, 0.5)),
         log_half_life=Gaussian(np.log(rng.uniform(11, 20)), rng.uniform(0.4, 0.7)),
-        day_sd=rng.uniform(0.03, 0.10),
-        repeat_sd=rng.uniform(0.015, 0.045),
+        day_sd=rng.uniform(0.03, 0.08),
+        repeat_sd=rng.uniform(0.02, 0.05),
     )
 
 

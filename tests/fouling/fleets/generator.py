@@ -72,7 +72,8 @@ class Generator:
     day_sd: float
     repeat_sd: float  # of a calibration done again on the same day, beyond its line's own error
     reading_counts: tuple[int, ...] = (2, 3, 4, 5, 6, 7)
-    readings_per_day: float = 10.0
+    readings_per_day: float = 16.0
+    days_between: float = 10.0  # readings of one probe, on average, unless on the same day
     bad_day_share: float = 0.0
     bad_day_sd: float = 0.0
     settings: tuple[str, ...] = ("in-vivo",)

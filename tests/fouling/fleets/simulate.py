@@ -132,7 +132,8 @@ def _skeleton(gen: Generator, rng: np.random.Generator) -> Events:
 def _life(gen: Generator, n_days: int, rng: np.random.Generator) -> _Life:
     life = _Life([], [], [])
     n_readings = int(rng.choice(gen.reading_counts))
-    gaps = rng.choice([0, 1, 2, 3, 5], size=n_readings, p=[0.25, 0.3, 0.2, 0.15, 0.1])
+    # before and after a run on one day, or days apart
+    gaps = np.where(rng.random(n_readings) < 0.2, 0, rng.geometric(1 / gen.days_between, n_readings))
     date = int(rng.integers(max(1, n_days - gaps[1:].sum())))
     if rng.random() < 0.1:
         _run(life, gen, rng)
