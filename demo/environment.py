@@ -97,7 +97,8 @@ def _install(extras: list[str], anew: bool) -> None:
     # From inside the checkout, as ".": pip takes a bracket in a path for the beginning of the extras.
     # --no-user: where pip is set to install per user, it would refuse to work inside an environment.
     pip = [str(PYTHON), "-m", "pip", "install", "--no-user", "--quiet", "--editable"]
-    _run([*pip, f".[{','.join(extras)}]"], "look at the network or pip's settings (pip config list), and run it again")
+    target = f".[{','.join(extras)}]" if extras else "."
+    _run([*pip, target], "look at the network or pip's settings (pip config list), and run it again")
     _link_to_checkout()
     STAMP.write_text("\n".join([_fingerprint(), *extras]) + "\n", encoding="utf-8")
 
