@@ -113,6 +113,12 @@ class Lab:
 
         return shelf(self.record, wanted, moment)
 
+    def usual_waveform(self, label: str, analyte: str) -> str:
+        """The waveform this probe was last calibrated with for the analyte. Raises InputError if it never was."""
+        from electrolog.answers.history import usual_waveform
+
+        return usual_waveform(self.record, label, analyte)
+
     def words(self, kind: str) -> list[str]:
         from electrolog.record.names import Names
 
@@ -159,6 +165,22 @@ class Lab:
         from electrolog.record.exchange_out import export_folder
 
         return export_folder(self.record, folder)
+
+
+@dataclass(frozen=True)
+class SetUp:
+    where: str
+    what: str
+    revision: str
+    copy: str | None
+
+
+def set_up(where: str | None = None) -> SetUp:
+    """Makes the record, or brings an older one up to date after a copy; one that is up to date is left alone."""
+    from electrolog.record.migrate import set_up as bring_up
+
+    record, what, revision, copy = bring_up(where or default_location())
+    return SetUp(record.name, what, revision, None if copy is None else str(copy))
 
 
 def open_lab(

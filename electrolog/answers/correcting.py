@@ -22,6 +22,7 @@ class Corrected:
     """What a correction did: column -> (before, after) as people read them; empty for a strike."""
 
     what: str
+    sheet: str
     changes: dict[str, tuple[Any, Any]]
 
 
@@ -37,7 +38,7 @@ def amend_row(
         _make_figures_anew(writer, sheet, row_id)
         plain = {column.removesuffix("_id"): pair for column, pair in changed.items()}
         named = {column: (before.get(column, old), values.get(column, new)) for column, (old, new) in plain.items()}
-        return Corrected(f"{sheet.one} {name}", named)
+        return Corrected(f"{sheet.one} {name}", sheet.name, named)
 
 
 def strike_row(record: Record, one: str, name: str, reason: str) -> Corrected:
@@ -45,7 +46,7 @@ def strike_row(record: Record, one: str, name: str, reason: str) -> Corrected:
         sheet, row_id, ordinal = _place(writer, one, name)
         amend.strike(writer, sheet, row_id, ordinal)
         _make_figures_anew(writer, sheet, row_id)
-        return Corrected(f"{sheet.one} {name}", {})
+        return Corrected(f"{sheet.one} {name}", sheet.name, {})
 
 
 def _place(writer: Writer, one: str, name: str) -> tuple[Sheet, int, int | None]:

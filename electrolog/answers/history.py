@@ -10,8 +10,10 @@ from typing import Any
 
 from electrolog.answers import figures as made
 from electrolog.answers import life as lives
+from electrolog.errors import InputError, shortened
 from electrolog.measure.calibrate import CalibrationFigures
 from electrolog.record import queries, sheets
+from electrolog.record.names import Names
 from electrolog.record.queries import Calibration, Event
 from electrolog.record.store import Record
 
@@ -51,6 +53,21 @@ def readings(
         for calibration in found
         if analyte in (None, calibration.row["analyte"]) and waveform in (None, calibration.row["waveform"])
     ]
+
+
+def usual_waveform(record: Record, label: str, analyte: str) -> str:
+    """The waveform of the probe's last calibration with this analyte. Raises InputError if there is none."""
+    with record.reading() as connection:
+        names = Names(connection)
+        ids = [names.row_id("electrodes", label)]
+        found = queries.calibrations(connection, ids, names.row_id("analytes", analyte))
+        known = [name for name, _ in names.everything("waveforms").values()]
+    if not found:
+        raise InputError(
+            f"waveform: missing, and '{shortened(label)}' was never calibrated with {shortened(analyte)};"
+            f" known waveforms: {', '.join(known)}"
+        )
+    return str(found[-1].row["waveform"])
 
 
 def _reading(calibration: Calibration, life: list[Event], numbers: dict[int, CalibrationFigures]) -> Reading:

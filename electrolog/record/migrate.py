@@ -32,6 +32,22 @@ def create(record: Record) -> None:
     builtin.add_all(record)
 
 
+def set_up(where: str) -> tuple[Record, str, str, Path | None]:
+    """Makes a record at `where`, or brings an older one up; says which, the revision, and the copy made first."""
+    from electrolog.record import store
+
+    record = store.connected(where)
+    store.make_folder(record)
+    found = store.revision_of(record)
+    if found is None:
+        create(record)
+        return record, "made", schema.REVISION, None
+    if found == schema.REVISION:
+        return record, "up to date already", found, None
+    store.refuse_newer(record, found)
+    return record, f"brought up from revision {found}", schema.REVISION, upgrade(record)
+
+
 def upgrade(record: Record) -> Path | None:
     """Brings an older record up to date; returns the copy that was made first (SQLite)."""
     copy = copy_of_file(record) if record.is_file else None

@@ -69,7 +69,7 @@ class Names:
         """The list's own spelling of a word."""
         found = self.find_word(kind, text)
         if found is None:
-            hint = f"add it with `electrolog words add '{kind}' '{shortened(text, 40)}'`, or as a row of terms.csv"
+            hint = f"add it with `electrolog add '{kind}' '{shortened(text, 40)}'`, or as a row of terms.csv"
             raise unknown(kind, text, self.words(kind), hint)
         return found
 
@@ -100,8 +100,10 @@ class Names:
             query = select(table.c.abbreviation, table.c.id).where(
                 table.c.abbreviation.is_not(None), table.c.struck.is_(None)
             )
-            # Folded here: the database's own lower() knows ASCII only.
-            self._abbreviations = {short.casefold(): row_id for short, row_id in self._connection.execute(query)}
+            self._abbreviations = {}
+            for short, row_id in self._connection.execute(query.order_by(table.c.id)):
+                # Folded here: the database's own lower() knows ASCII only.
+                self._abbreviations.setdefault(short.casefold(), row_id)
         return self._abbreviations
 
     def _word_lists(self) -> dict[str, dict[str, str]]:

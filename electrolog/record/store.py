@@ -63,16 +63,21 @@ def open_record(where: str, who: str | None = None, create: bool = False) -> Rec
     With `create` a database that isn't there yet is made; without, it is an error. Raises RecordError for a
     database that can't be used (absent, damaged, of another version), InputError for a URL that can't be read.
     """
-    record = Record(_engine(database_url(where)), who or current_user())
+    record = connected(where, who)
     if record.is_file and not Path(record.name).exists():
         if not create:
             raise RecordError(
                 f"there is no record at {record.name}",
                 "make one with `electrolog setup`, or name another with --db or ELECTROLOG_DB",
             )
-        _make_folder(Path(record.name))
+        make_folder(record)
     _bring_to_revision(record, create)
     return record
+
+
+def connected(where: str, who: str | None = None) -> Record:
+    """The record at `where`, not yet looked at."""
+    return Record(_engine(database_url(where)), who or current_user())
 
 
 def default_location() -> str:
@@ -143,7 +148,10 @@ def _begin_sqlite(connection: Connection) -> None:
     connection.exec_driver_sql("BEGIN IMMEDIATE" if writes else "BEGIN")
 
 
-def _make_folder(path: Path) -> None:
+def make_folder(record: Record) -> None:
+    if not record.is_file:
+        return
+    path = Path(record.name)
     try:
         path.parent.mkdir(parents=True, exist_ok=True)
     except OSError as why:
@@ -156,12 +164,8 @@ def _bring_to_revision(record: Record, create: bool) -> None:
         return
     if found is None and not create:
         raise RecordError(f"{record.name} holds no record", "make one there with `electrolog setup`")
-    if found is not None and found > schema.REVISION:
-        raise RecordError(
-            f"{record.name} was written by a newer electrolog (revision {found}, this one knows {schema.REVISION})",
-            "install the newer version",
-        )
     if found is not None:
+        refuse_newer(record, found)
         raise RecordError(
             f"{record.name} is of an older version (revision {found}, now {schema.REVISION})",
             "bring it up with `electrolog setup`; a copy is made first",
@@ -169,6 +173,14 @@ def _bring_to_revision(record: Record, create: bool) -> None:
     from electrolog.record import migrate
 
     migrate.create(record)
+
+
+def refuse_newer(record: Record, found: str) -> None:
+    if found > schema.REVISION:
+        raise RecordError(
+            f"{record.name} was written by a newer electrolog (revision {found}, this one knows {schema.REVISION})",
+            "install the newer version",
+        )
 
 
 def revision_of(record: Record) -> str | None:

@@ -14,19 +14,49 @@ if TYPE_CHECKING:
     from rich.table import Table
 
 
-def print_table(columns: Sequence[str], rows: Iterable[Sequence[object]], numeric: Iterable[str] = ()) -> None:
-    """`numeric` columns stand right. Cells are text and never markup: a note may hold brackets."""
+def print_table(
+    columns: Sequence[str],
+    rows: Iterable[Sequence[object]],
+    numeric: Iterable[str] = (),
+    least: Sequence[str] = (),
+    wrapped: str = "",
+) -> None:
+    """Rows under their columns' names; cells are text and never markup: a note may hold brackets.
+
+    `numeric` columns stand right. Where the width doesn't do, columns named in `least` are left out, the first
+    one first, and it is said; only the column `wrapped` is broken into lines before that.
+    """
+    cells = [[one_line("" if cell is None else cell) for cell in row] for row in rows]
+    kept, dropped = _fitting(columns, cells, least, wrapped)
     from rich import box
     from rich.table import Table
     from rich.text import Text
 
     right = set(numeric)
     table = Table(box=box.SIMPLE_HEAD, pad_edge=False, show_edge=False, expand=False)
-    for name in columns:
+    for place in kept:
+        name = columns[place]
         table.add_column(Text(name), justify="right" if name in right else "left", overflow="fold")
-    for row in rows:
-        table.add_row(*[Text(one_line("" if cell is None else cell)) for cell in row])
+    for row in cells:
+        table.add_row(*[Text(row[place]) for place in kept])
     _print(table)
+    if dropped:
+        print_lines(f"(no room for: {', '.join(dropped)}; a wider terminal, --csv or --json shows all)")
+
+
+def _fitting(
+    columns: Sequence[str], cells: Sequence[Sequence[str]], least: Sequence[str], wrapped: str
+) -> tuple[list[int], list[str]]:
+    """The places of the columns that fit side by side, and the names of those left out."""
+    natural = [max([len(name), *(len(row[place]) for row in cells)]) for place, name in enumerate(columns)]
+    needed = [min(wide, 30) if name == wrapped else wide for wide, name in zip(natural, columns, strict=True)]
+    kept, dropped = list(range(len(columns))), []
+    for name in least:
+        if sum(needed[place] + 3 for place in kept) <= width() + 3:
+            break
+        kept.remove(columns.index(name))
+        dropped.append(name)
+    return kept, dropped
 
 
 def _print(table: Table) -> None:
@@ -54,5 +84,5 @@ def with_error(value: float | None, error: float | None, digits: int = 3) -> str
     return f"{shown_number(value, digits)} ± {shown_number(error, 2)}"
 
 
-def moment_or_never(moment: datetime | None) -> str:
-    return "never" if moment is None else shown_moment(moment)
+def day_or_never(moment: datetime | None) -> str:
+    return "never" if moment is None else shown_moment(moment)[:10]

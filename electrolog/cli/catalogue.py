@@ -1,0 +1,52 @@
+"""Every command in one list: its module, its one line of help. The terminal loads only the one that was typed."""
+
+from __future__ import annotations
+
+COMMANDS: dict[str, dict[str, str]] = {
+    "At the bench": {
+        "new": "Add probes: one, a range, or a numbered batch.",
+        "coat": "Log a coating.",
+        "condition": "Log cycling before use.",
+        "calibrate": "Log a calibration with its points; answers with sensitivity and detection limit.",
+        "expose": "Log time in tissue or flow.",
+        "clean": "Log a cleaning.",
+        "recut": "Log that the carbon was trimmed.",
+        "inspect": "Log what a look or a test showed.",
+        "note": "Log a remark on a probe.",
+        "retire": "Log the end of a probe's use.",
+        "standard": "Log a standard solution.",
+    },
+    "Asking back": {
+        "shelf": "Every probe with state, age, exposure, last calibration and share left.",
+        "life": "One probe's life as a timeline.",
+        "history": "A probe's sensitivity against its exposure.",
+        "calibrations": "Calibrations with all their figures.",
+        "list": "The lab's words, analytes, waveforms, batches or standards.",
+    },
+    "Judging": {
+        "forecast": "What probes will still see after a run.",
+        "check": "Fit, recalibrate, retire or undetermined, before a run.",
+        "fit": "How this lab's probes foul, as learned from its record.",
+        "limits": "What the lab demands of a probe.",
+    },
+    "Correcting and trusting": {
+        "amend": "Correct a value; the old one is kept.",
+        "strike": "Take an entry out of every answer; it is kept.",
+        "journal": "What was done to the record, by whom and why.",
+        "verify": "Replay the journal against the record.",
+        "recompute": "Make all figures again from the raw points.",
+    },
+    "The record": {
+        "setup": "Make a record, or bring an older one up to date.",
+        "add": "Add a word, an analyte or a waveform.",
+        "import": "Read an exchange folder.",
+        "export": "Write an exchange folder.",
+    },
+}
+
+HELP = {name: text for section in COMMANDS.values() for name, text in section.items()}
+
+
+def module_of(name: str) -> str:
+    """`import` and `list` can't name a module that others import by name."""
+    return f"electrolog.cli.{name}_command" if name in ("import", "list") else f"electrolog.cli.{name}"

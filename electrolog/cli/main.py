@@ -1,0 +1,137 @@
+"""The terminal's edge: finds the command, and turns every refusal into one line and an exit status."""
+
+from __future__ import annotations
+
+import difflib
+import importlib
+import json
+import os
+import sys
+from typing import Annotated, Any
+
+import typer
+from typer.core import TyperGroup
+from typer.exceptions import TyperException
+
+from electrolog.cli.catalogue import COMMANDS, HELP, module_of
+from electrolog.cli.session import Session
+from electrolog.errors import ElectrologError, FaultyRows, InputError
+from electrolog.show.text import one_line, prepare_streams, safe
+
+
+class LazyCommands(TyperGroup):
+    """Loads a command's module when it is typed; the overview needs none of them."""
+
+    def list_commands(self, ctx: typer.Context) -> list[str]:  # type: ignore[override]
+        return list(HELP)
+
+    def get_command(self, ctx: typer.Context, cmd_name: str) -> Any:  # type: ignore[override]
+        if cmd_name not in HELP:
+            near = difflib.get_close_matches(cmd_name, list(HELP), n=1)
+            said = f"the nearest one is '{near[0]}'" if near else f"known: {', '.join(HELP)}"
+            raise InputError(
+                f"no command is called '{one_line(cmd_name)[:80]}'; {said}", "electrolog --help lists them"
+            )
+        module = importlib.import_module(module_of(cmd_name))
+        single = typer.Typer(add_completion=False, rich_markup_mode=None, pretty_exceptions_enable=False)
+        single.command(cmd_name, help=_unwrapped(module.command.__doc__))(module.command)
+        return typer.main.get_command(single)
+
+    def format_commands(self, ctx: typer.Context, formatter: Any) -> None:  # type: ignore[override]
+        for section, commands in COMMANDS.items():
+            with formatter.section(section):
+                formatter.write_dl(list(commands.items()))
+
+
+def _unwrapped(text: str | None) -> str:
+    """A docstring's example keeps its line breaks."""
+    import inspect
+
+    paragraphs = inspect.cleandoc(text or "").split("\n\n")
+    return "\n\n".join(f"\b\n{part}" if "electrolog " in part else part for part in paragraphs)
+
+
+app = typer.Typer(
+    cls=LazyCommands,
+    add_completion=False,
+    no_args_is_help=True,
+    rich_markup_mode=None,
+    pretty_exceptions_enable=False,
+    context_settings={"help_option_names": ["-h", "--help"]},
+)
+
+
+@app.callback()
+def electrolog(
+    ctx: typer.Context,
+    db: Annotated[
+        str | None,
+        typer.Option("--db", envvar="ELECTROLOG_DB", metavar="WHERE", help="The record: a file, or an SQLAlchemy URL."),
+    ] = None,
+    zone: Annotated[
+        str | None,
+        typer.Option("--zone", metavar="NAME", help="Zone of times without an offset (default: the machine's)."),
+    ] = None,
+) -> None:
+    """The life of every carbon-fibre microelectrode: what it was, what it sees, how long it will hold.
+
+    It advises people who decide: approved protocol, licensed practice and local rules come first. Never for
+    clinical decisions.
+    """
+    ctx.obj = Session(db, zone)
+
+
+def run() -> None:
+    prepare_streams()
+    sys.exit(main(sys.argv[1:]))
+
+
+def main(arguments: list[str]) -> int:
+    """Runs one command line and returns its exit status."""
+    as_json = "--json" in arguments
+    try:
+        answer = app(arguments, prog_name="electrolog", standalone_mode=False)
+        sys.stdout.flush()
+        return answer if isinstance(answer, int) else 0
+    except ElectrologError as error:
+        _report(error, as_json)
+        return error.exit_code
+    except TyperException as error:
+        if type(error).__name__ == "NoArgsIsHelpError":
+            print(error.format_message())  # noqa: T201
+            return 2
+        hint = "electrolog COMMAND --help shows what it takes"
+        _report(InputError(one_line(error.format_message()).rstrip("."), hint), as_json)
+        return 2
+    except (typer.Abort, KeyboardInterrupt):
+        print("electrolog: stopped; nothing was written", file=sys.stderr)  # noqa: T201
+        return 130
+    except BrokenPipeError:
+        # The reader has gone (`| head`); without this the interpreter complains once more at its end.
+        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+        return 0
+    except OSError as error:
+        _report(ElectrologError(f"{error.filename or 'system'}: {error.strerror or error}"), as_json)
+        return 1
+    except Exception as error:
+        if os.environ.get("ELECTROLOG_DEBUG"):
+            raise
+        said = f"an error in electrolog itself ({type(error).__name__}: {one_line(error)[:200]})"
+        _report(ElectrologError(said, "please report it; ELECTROLOG_DEBUG=1 shows where"), as_json)
+        return 1
+
+
+def _report(error: ElectrologError, as_json: bool) -> None:
+    if as_json:
+        body: dict[str, Any] = {"kind": error.kind, "message": error.message, "hint": error.hint}
+        if isinstance(error, FaultyRows):
+            body["faults"] = list(error.faults)
+        sys.stderr.write(json.dumps({"error": body}) + "\n")
+        return
+    sys.stderr.write(f"electrolog: {safe(error.message)}{' -- ' + safe(error.hint) if error.hint else ''}\n")
+    if isinstance(error, FaultyRows):
+        sys.stderr.writelines(f"  {one_line(fault)}\n" for fault in error.faults)
+
+
+if __name__ == "__main__":
+    run()

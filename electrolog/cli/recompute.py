@@ -1,0 +1,16 @@
+from __future__ import annotations
+
+import typer
+
+from electrolog.cli.options import Csv, Json
+from electrolog.cli.session import lab_of
+
+
+def command(ctx: typer.Context, json: Json = False, csv: Csv = False) -> None:
+    """Make every calibration's figures again from its raw points, and list what changed.
+
+    electrolog recompute
+    """
+    from electrolog.show import corrections
+
+    corrections.answer_recomputed(lab_of(ctx).recompute(), json, csv)

@@ -1,0 +1,75 @@
+"""The sensitivity history as a table."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from typing import Any
+
+from electrolog.answers.history import Reading
+from electrolog.clock import shown_moment
+from electrolog.show.machine import print_csv, print_json
+from electrolog.show.tables import print_lines, print_table, with_error
+from electrolog.units import shown_number, shown_percent
+
+
+def answer(readings: Sequence[Reading], json: bool, csv: bool) -> None:
+    rows = [as_dict(reading) for reading in readings]
+    if json:
+        print_json(rows)
+    elif csv:
+        print_csv(rows)
+    elif not readings:
+        print_lines("no calibration yet: log one with `electrolog calibrate`")
+    else:
+        _print(readings)
+
+
+def as_dict(reading: Reading) -> dict[str, Any]:
+    return {
+        "electrode": reading.electrode,
+        "calibration": reading.calibration,
+        "at": reading.at,
+        "stage": reading.stage,
+        "analyte": reading.analyte,
+        "waveform": reading.waveform,
+        "exposure_h": sum(reading.exposure_h.values()),
+        "exposure_by_setting_h": reading.exposure_h,
+        "sensitivity_na_um": reading.figures.sensitivity_na_um,
+        "sensitivity_se_na_um": reading.figures.sensitivity_se_na_um,
+        "share_left": reading.share_left,
+        "share_left_se": reading.share_left_se,
+        "is_reference": reading.is_reference,
+        "warnings": reading.warnings,
+    }
+
+
+def _print(readings: Sequence[Reading]) -> None:
+    many = len({reading.electrode for reading in readings}) > 1
+    columns = ["probe"] * many + ["calibration", "when", "stage", "analyte", "waveform", "exposed (h)"]
+    columns += ["nA/µM", "share left"]
+    rows = [
+        [reading.electrode] * many
+        + [
+            reading.calibration,
+            shown_moment(reading.at),
+            reading.stage,
+            reading.analyte,
+            reading.waveform,
+            shown_number(sum(reading.exposure_h.values())),
+            with_error(reading.figures.sensitivity_na_um, reading.figures.sensitivity_se_na_um),
+            share(reading),
+        ]
+        for reading in readings
+    ]
+    print_table(columns, rows, ("exposed (h)", "nA/µM", "share left"), ("waveform", "stage", "when", "analyte"))
+    said = [f"{reading.calibration}: {text}" for reading in readings for text in reading.warnings]
+    print_lines(*[f"! {text}" for text in said])
+
+
+def share(reading: Reading) -> str:
+    if reading.is_reference:
+        return "reference"
+    if reading.share_left is None:
+        return "?"
+    error = f" ± {shown_percent(reading.share_left_se)}" if reading.share_left_se is not None else " ± ?"
+    return f"{reading.share_left * 100:.0f} %{error}"
