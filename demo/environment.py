@@ -112,7 +112,7 @@ def _run(command: list[str], remedy: str) -> None:
 
 def _reason(output: bytes) -> str:
     lines = [line.strip() for line in output.decode("utf-8", "replace").splitlines() if line.strip()]
-    errors = [line for line in lines if line.lower().startswith("error")]
+    errors = [line.removeprefix("ERROR: ") for line in lines if line.startswith("ERROR: ")]
     return (errors or lines or ["no reason was given"])[-1]
 
 
