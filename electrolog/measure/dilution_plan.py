@@ -49,7 +49,7 @@ def plan_dilutions(
     _refuse_what_cannot_be(stock_um, wanted_um, volume_ml, smallest_ml)
     if min(wanted_um) / stock_um * volume_ml >= smallest_ml:
         return DilutionPlan(None, _steps(stock_um, wanted_um, volume_ml))
-    for factor in (10, 20, 50, 100, 200, 500, 1000, 2000, 5000, 10000):
+    for factor in (2, 5, 10, 20, 50, 100, 200, 500, 1000, 2000, 5000, 10000):
         source_um = stock_um / factor
         steps = _steps(source_um, wanted_um, volume_ml)
         flask_ml = _flask_ml(max(sum(step.take_ml for step in steps), smallest_ml * factor))

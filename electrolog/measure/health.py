@@ -148,10 +148,10 @@ def day_points_at_the_standard(log_ratio: ArrayLike, what: str) -> str | None:
     found = shared_shift(log_ratio)
     if found is None:
         return None
-    low, high = sorted((math.expm1(found.low), math.expm1(found.high)))
+    off, low, high = (math.expm1(value) for value in (found.mean, found.low, found.high))
     return (
-        f"all {found.probes} probes measured with {what} read {math.expm1(found.mean):+.0%} of what was expected "
-        f"({low:+.0%} to {high:+.0%}): that points at {what}, not at the probes"
+        f"all {found.probes} probes measured with {what} read {off:+.1%} against what was expected "
+        f"({low:+.1%} to {high:+.1%}): that points at {what}, not at the probes"
     )
 
 

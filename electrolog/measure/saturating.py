@@ -76,7 +76,7 @@ def _start(x: Array, y: Array, w: Array, with_offset: bool) -> Array:
 def _refined(parameters: Array, x: Array, y: Array, w: Array) -> tuple[Array, LeastSquares]:
     """Gauss–Newton with halved steps; each step is a least-squares problem of its own."""
     for _ in range(100):
-        step = least_squares(_jacobian(parameters, x), y - _current(parameters, x), w)
+        step = least_squares(_jacobian(parameters, x), y - _current(parameters, x), w, refinements=0)
         share = _downhill(parameters, step.coefficient, x, y, w)
         parameters = parameters + share * step.coefficient
         if np.abs(share * step.coefficient).max() <= 1e-13 * np.abs(parameters).max() or share < 1e-12:
