@@ -17,10 +17,13 @@ Array = NDArray[np.float64]
 
 @dataclass(frozen=True)
 class Outlook:
-    """What can only be said where the accepted risk is set and every limit at the run's end can be told."""
+    """What can only be said where the accepted risk is set and every limit at the run's end can be told.
+
+    longest_min: None where it wasn't asked for.
+    """
 
     risk: float
-    longest_min: float
+    longest_min: float | None
     value: ValueOfCalibration
 
 

@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass, field
+from typing import Protocol
 
 import numpy as np
 from numpy.typing import NDArray
@@ -40,7 +41,14 @@ class Question:
     after_cleaning: Mapping[str, Callable[[float], Array]] = field(default_factory=dict)
 
 
-def refuse_nonsense(question: Question) -> None:
+class Asked(Protocol):
+    @property
+    def run_min(self) -> float: ...
+    @property
+    def needs_um(self) -> float | None: ...
+
+
+def refuse_nonsense(question: Asked) -> None:
     """Raises InputError for a run that isn't longer than zero, or a needed concentration that isn't above zero."""
     if not (math.isfinite(question.run_min) and question.run_min > 0):
         raise InputError(f"the run is {question.run_min:g} min long; accepted: longer than zero", "give --run 2h")

@@ -44,9 +44,10 @@ def value_of_calibration(
     reading_sd_log: float,
     accepted_risk: float,
     widest_interval: float | None = None,
+    outcomes: int = OUTCOMES,
 ) -> ValueOfCalibration:
     """From joint draws (D,) of one probe; reading_sd_log: how far one calibration's reading strays from the truth."""
-    weights = _weights(log_now, reading_sd_log)
+    weights = _weights(log_now, reading_sd_log, outcomes)
     p_after = weights @ broken_at_end
     most_wide = np.inf if widest_interval is None else widest_interval
     fit = (p_after <= accepted_risk) & (_width(weights, log_end) <= most_wide)
@@ -62,16 +63,19 @@ def value_of_calibration(
     )
 
 
-def _weights(log_now: Array, reading_sd_log: float) -> Array:
-    """(OUTCOMES, D) weights of the draws after each likely reading; each row sums to 1."""
+def _weights(log_now: Array, reading_sd_log: float, outcomes: int) -> Array:
+    """(outcomes, D) weights of the draws after each likely reading; each row sums to 1."""
     from scipy.special import ndtri
 
-    truths = np.sort(log_now)[((np.arange(OUTCOMES) + 0.5) / OUTCOMES * len(log_now)).astype(int)]
-    errors = np.random.default_rng(OUTCOMES).permutation(ndtri((np.arange(OUTCOMES) + 0.5) / OUTCOMES))
+    truths = np.sort(log_now)[((np.arange(outcomes) + 0.5) / outcomes * len(log_now)).astype(int)]
+    errors = np.random.default_rng(outcomes).permutation(ndtri((np.arange(outcomes) + 0.5) / outcomes))
     floor = float(np.std(log_now)) * FEWEST_DRAWS / len(log_now)
     sd = max(reading_sd_log, floor, 1e-9)
     misfit = ((truths + sd * errors)[:, None] - log_now) / sd
-    raised = np.exp(-0.5 * (misfit**2 - (misfit**2).min(axis=1, keepdims=True)))
+    misfit *= misfit
+    misfit -= misfit.min(axis=1, keepdims=True)
+    np.minimum(misfit, 1000.0, out=misfit)  # beyond, the weight is nothing and its exponential slow
+    raised = np.exp(-0.5 * misfit)
     return np.asarray(raised / raised.sum(axis=1, keepdims=True))
 
 

@@ -60,13 +60,16 @@ def beyond_saving(p_now: float, chance_fit: float) -> Reason:
     return Reason("odds", text)
 
 
-def run_too_long(longest_min: float, chance_fit: float) -> Reason:
-    hardly = f"a calibration before it would hardly change that ({chance(chance_fit)})"
-    if longest_min <= 0:
-        return Reason("run-length", f"no run stays within the accepted risk, and {hardly}: take another probe")
-    text = (
-        f"the run is too long for it, and {hardly}: shorten it to {shown_duration(longest_min)} or take another probe"
-    )
+def run_too_long(longest_min: float | None, value: ValueOfCalibration) -> Reason:
+    hardly = f"a calibration would hardly make it fit for this one ({chance(value.chance_fit)})"
+    if longest_min is None:
+        text = f"the run is too long for it, and {hardly}: take another probe"
+    elif longest_min > 0:
+        shorter = shown_duration(longest_min)
+        text = f"the run is too long for it, and {hardly}: shorten it to {shorter} or take another probe"
+    else:
+        shorter = f"for a shorter one it might ({chance(value.chance_any_run)})"
+        text = f"no run stays within the accepted risk as things stand; {hardly}, {shorter}: take another probe"
     return Reason("run-length", text)
 
 
@@ -111,3 +114,7 @@ def clean_first(method: str, p_before: float, p_after: float) -> str:
         f"clean first ({method}): the odds of a breach fall from {chance(p_before)} to {chance(p_after)} "
         "by this lab's own recovery; calibrate after it"
     )
+
+
+def in_short(p: float) -> Reason:
+    return Reason("odds", f"odds of a breach by the end {chance(p)}")
