@@ -20,9 +20,11 @@ from electrolog.record.columns import Value
 from electrolog.record.store import Record, default_location, open_record
 
 if TYPE_CHECKING:
+    from electrolog.answers.asked import Run
     from electrolog.answers.correcting import Corrected
     from electrolog.answers.entering import Entered, NewCalibration
     from electrolog.answers.figures import Recomputed
+    from electrolog.answers.forecasting import Forecast
     from electrolog.answers.history import Reading
     from electrolog.answers.shelf import Filter, Shelved
     from electrolog.record.exchange_in import ImportReport
@@ -124,6 +126,26 @@ class Lab:
 
         with self.record.reading() as connection:
             return Names(connection).words(kind)
+
+    def moment(self, text: str) -> datetime:
+        """A typed moment, in the lab's zone."""
+        from electrolog.clock import parse_moment
+
+        return parse_moment(text, self.zone)
+
+    # --- judging ------------------------------------------------------------------------------------------
+
+    def forecast(
+        self,
+        labels: Sequence[str],
+        run: Run,
+        quantiles: Sequence[float] = (0.05, 0.5, 0.95),
+        moment: datetime | None = None,
+    ) -> list[Forecast]:
+        """What the named probes will still see after a run: quantiles of the true sensitivity."""
+        from electrolog.answers.forecasting import forecasts
+
+        return forecasts(self.record, labels, run, quantiles, moment)
 
     # --- correcting and trusting --------------------------------------------------------------------------
 

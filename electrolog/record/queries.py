@@ -173,26 +173,50 @@ def limits(connection: Connection) -> list[Row]:
 
 
 @dataclass(frozen=True)
+class Seen:
+    """How much of the record a fit has seen: its count of calibrations, and the newest correction's entry."""
+
+    readings: int
+    correction: int
+
+
+@dataclass(frozen=True)
 class KeptFit:
     method: str
     fingerprint: str
+    seen: Seen
     made_at: datetime
     fit: dict[str, Any]
+
+
+def to_be_seen(connection: Connection, analyte_id: int) -> Seen:
+    """What a fit made now would see."""
+    calibrations, journal = schema.tables["calibrations"], schema.journal
+    readings = select(func.count()).where(calibrations.c.analyte_id == analyte_id, calibrations.c.struck.is_(None))
+    newest = select(func.max(journal.c.seq)).where(schema.CORRECTIONS)
+    return Seen(connection.execute(readings).scalar_one(), connection.execute(newest).scalar() or 0)
 
 
 def kept_fit(connection: Connection, analyte_id: int) -> KeptFit | None:
     table = schema.kept_fits
     row = connection.execute(select(table).where(table.c.analyte_id == analyte_id)).first()
-    return KeptFit(row.method, row.fingerprint, row.made_at, json.loads(row.fit)) if row else None
+    if row is None:
+        return None
+    seen = Seen(row.seen_readings, row.seen_correction)
+    return KeptFit(row.method, row.fingerprint, seen, row.made_at, json.loads(row.fit))
 
 
-def keep_fit(writer: Writer, analyte_id: int, method: str, fingerprint: str, fit: Mapping[str, Any]) -> None:
+def keep_fit(
+    writer: Writer, analyte_id: int, method: str, fingerprint: str, seen: Seen, fit: Mapping[str, Any]
+) -> None:
     table = schema.kept_fits
     writer.connection.execute(delete(table).where(table.c.analyte_id == analyte_id))
     row = {
         "analyte_id": analyte_id,
         "method": method,
         "fingerprint": fingerprint,
+        "seen_readings": seen.readings,
+        "seen_correction": seen.correction,
         "made_at": writer.at,
         "fit": json.dumps(fit, allow_nan=False),
     }

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from datetime import UTC, date, datetime
+from functools import lru_cache
 from typing import Any
 
 from sqlalchemy import (
@@ -77,8 +78,10 @@ class IsoDay(TypeDecorator[date]):
         return None if value is None else date.fromisoformat(value)
 
 
+@lru_cache(maxsize=1024)
 def fixed_width(moment: datetime) -> str:
-    return moment.astimezone(UTC).strftime("%Y-%m-%dT%H:%M:%S.%fZ")
+    """One text for one moment. Kept for a while: a row, its journal entry and the entry's hash ask in turn."""
+    return moment.astimezone(UTC).replace(tzinfo=None).isoformat(timespec="microseconds") + "Z"
 
 
 Real: TypeEngine[float] = REAL().with_variant(
@@ -196,6 +199,10 @@ journal = Table(
     sqlite_strict=True,
 )
 
+# What can change a fit that was made before: found without reading the whole journal.
+CORRECTIONS = text("action <> 'add' AND sheet <> 'limits'")
+Index("ix_journal_corrections", journal.c.seq, sqlite_where=CORRECTIONS, postgresql_where=CORRECTIONS)
+
 tables: dict[str, Table] = {sheet.name: _table(sheet) for sheet in SHEETS}
 Index(
     "ix_calibrations_analyte_waveform",
@@ -219,6 +226,8 @@ kept_fits = Table(
     SqlColumn("analyte_id", Integer, ForeignKey("analytes.id"), primary_key=True),
     SqlColumn("method", SqlText, nullable=False),
     SqlColumn("fingerprint", SqlText, nullable=False),
+    SqlColumn("seen_readings", Integer, nullable=False),
+    SqlColumn("seen_correction", Integer, nullable=False),
     SqlColumn("made_at", UtcMoment(), nullable=False),
     SqlColumn("fit", SqlText, nullable=False),
     sqlite_strict=True,

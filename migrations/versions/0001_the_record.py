@@ -16,6 +16,7 @@ depends_on = None
 MOMENT = sa.Text().with_variant(sa.TIMESTAMP(timezone=True), "postgresql")
 REAL = sa.REAL().with_variant(sa.DOUBLE_PRECISION(), "postgresql")
 LIVE = sa.text("struck IS NULL")
+CORRECTIONS = sa.text("action <> 'add' AND sheet <> 'limits'")
 RECORDED = (
     "terms",
     "analytes",
@@ -81,6 +82,9 @@ def _create_journal() -> None:
         sa.CheckConstraint("seq > 0", name=op.f("ck_journal_seq")),
         sa.UniqueConstraint("hash", name=op.f("uq_journal_hash")),
         sqlite_strict=True,
+    )
+    op.create_index(
+        "ix_journal_corrections", "journal", ["seq"], sqlite_where=CORRECTIONS, postgresql_where=CORRECTIONS
     )
     op.create_index("ix_journal_sheet_row_id", "journal", ["sheet", "row_id"])
 
@@ -199,8 +203,7 @@ def _create_electrodes() -> None:
         sa.CheckConstraint("diameter_um > 0 AND diameter_um <= 1000", name=op.f("ck_electrodes_diameter_um")),
         sa.CheckConstraint("length(electrode) BETWEEN 1 AND 200", name=op.f("ck_electrodes_electrode")),
         sa.CheckConstraint(
-            "exposed_length_um > 0 AND exposed_length_um <= 100000",
-            name=op.f("ck_electrodes_exposed_length_um"),
+            "exposed_length_um > 0 AND exposed_length_um <= 100000", name=op.f("ck_electrodes_exposed_length_um")
         ),
         sa.CheckConstraint("geometry IN ('cylinder', 'disk', 'other')", name=op.f("ck_electrodes_geometry")),
         sa.CheckConstraint("length(note) BETWEEN 1 AND 100000", name=op.f("ck_electrodes_note")),
@@ -210,12 +213,7 @@ def _create_electrodes() -> None:
     )
     op.create_index("ix_electrodes_batch_id", "electrodes", ["batch_id"])
     op.create_index(
-        "uq_electrodes_live",
-        "electrodes",
-        ["electrode"],
-        unique=True,
-        sqlite_where=LIVE,
-        postgresql_where=LIVE,
+        "uq_electrodes_live", "electrodes", ["electrode"], unique=True, sqlite_where=LIVE, postgresql_where=LIVE
     )
 
 
@@ -237,8 +235,7 @@ def _create_inspections() -> None:
         ),
         sa.CheckConstraint("background_na >= 0 AND background_na <= 1e+300", name=op.f("ck_inspections_background_na")),
         sa.CheckConstraint(
-            "exposed_length_um > 0 AND exposed_length_um <= 100000",
-            name=op.f("ck_inspections_exposed_length_um"),
+            "exposed_length_um > 0 AND exposed_length_um <= 100000", name=op.f("ck_inspections_exposed_length_um")
         ),
         sa.CheckConstraint("noise_na >= 0 AND noise_na <= 1e+300", name=op.f("ck_inspections_noise_na")),
         sa.CheckConstraint("length(note) BETWEEN 1 AND 100000", name=op.f("ck_inspections_note")),
@@ -276,13 +273,11 @@ def _create_coatings() -> None:
         sa.PrimaryKeyConstraint("id", name="pk_coatings"),
         sa.CheckConstraint("at LIKE '____-__-__T__:__:__.______Z'", name=op.f("ck_coatings_at_utc")).ddl_if("sqlite"),
         sa.CheckConstraint(
-            "concentration_wt_pct >= 0 AND concentration_wt_pct <= 100",
-            name=op.f("ck_coatings_concentration_wt_pct"),
+            "concentration_wt_pct >= 0 AND concentration_wt_pct <= 100", name=op.f("ck_coatings_concentration_wt_pct")
         ),
         sa.CheckConstraint("cure_min >= 0 AND cure_min <= 1e+300", name=op.f("ck_coatings_cure_min")),
         sa.CheckConstraint(
-            "cure_temperature_c >= -273.15 AND cure_temperature_c <= 1000",
-            name=op.f("ck_coatings_cure_temperature_c"),
+            "cure_temperature_c >= -273.15 AND cure_temperature_c <= 1000", name=op.f("ck_coatings_cure_temperature_c")
         ),
         sa.CheckConstraint("duration_s > 0 AND duration_s <= 1e+300", name=op.f("ck_coatings_duration_s")),
         sa.CheckConstraint("layers >= 1 AND layers <= 1000", name=op.f("ck_coatings_layers")),
@@ -387,12 +382,7 @@ def _create_recuts() -> None:
         sqlite_strict=True,
     )
     op.create_index(
-        "uq_recuts_live",
-        "recuts",
-        ["electrode_id", "at"],
-        unique=True,
-        sqlite_where=LIVE,
-        postgresql_where=LIVE,
+        "uq_recuts_live", "recuts", ["electrode_id", "at"], unique=True, sqlite_where=LIVE, postgresql_where=LIVE
     )
 
 
@@ -422,8 +412,7 @@ def _create_standards() -> None:
             "prepared_at LIKE '____-__-__T__:__:__.______Z'", name=op.f("ck_standards_prepared_at_utc")
         ).ddl_if("sqlite"),
         sa.CheckConstraint(
-            "relative_uncertainty >= 0 AND relative_uncertainty <= 1",
-            name=op.f("ck_standards_relative_uncertainty"),
+            "relative_uncertainty >= 0 AND relative_uncertainty <= 1", name=op.f("ck_standards_relative_uncertainty")
         ),
         sa.CheckConstraint("length(standard) BETWEEN 1 AND 200", name=op.f("ck_standards_standard")),
         sa.ForeignKeyConstraint(["analyte_id"], ["analytes.id"], name=op.f("fk_standards_analyte_id")),
@@ -472,12 +461,10 @@ def _create_calibrations() -> None:
         sa.CheckConstraint("noise_na >= 0 AND noise_na <= 1e+300", name=op.f("ck_calibrations_noise_na")),
         sa.CheckConstraint("length(note) BETWEEN 1 AND 100000", name=op.f("ck_calibrations_note")),
         sa.CheckConstraint(
-            "oxidation_peak_v >= -10 AND oxidation_peak_v <= 10",
-            name=op.f("ck_calibrations_oxidation_peak_v"),
+            "oxidation_peak_v >= -10 AND oxidation_peak_v <= 10", name=op.f("ck_calibrations_oxidation_peak_v")
         ),
         sa.CheckConstraint(
-            "reduction_peak_v >= -10 AND reduction_peak_v <= 10",
-            name=op.f("ck_calibrations_reduction_peak_v"),
+            "reduction_peak_v >= -10 AND reduction_peak_v <= 10", name=op.f("ck_calibrations_reduction_peak_v")
         ),
         sa.CheckConstraint("length(rig) BETWEEN 1 AND 200", name=op.f("ck_calibrations_rig")),
         sa.CheckConstraint(
@@ -503,12 +490,7 @@ def _create_calibrations() -> None:
     op.create_index("ix_calibrations_standard_id", "calibrations", ["standard_id"])
     op.create_index("ix_calibrations_waveform_id", "calibrations", ["waveform_id"])
     op.create_index(
-        "uq_calibrations_live",
-        "calibrations",
-        ["calibration"],
-        unique=True,
-        sqlite_where=LIVE,
-        postgresql_where=LIVE,
+        "uq_calibrations_live", "calibrations", ["calibration"], unique=True, sqlite_where=LIVE, postgresql_where=LIVE
     )
 
 
@@ -522,8 +504,7 @@ def _create_calibration_points() -> None:
         sa.Column("struck", sa.Integer()),
         sa.PrimaryKeyConstraint("calibration_id", "ordinal", name="pk_calibration_points"),
         sa.CheckConstraint(
-            "concentration_um >= 0 AND concentration_um <= 1e+300",
-            name=op.f("ck_calibration_points_concentration_um"),
+            "concentration_um >= 0 AND concentration_um <= 1e+300", name=op.f("ck_calibration_points_concentration_um")
         ),
         sa.CheckConstraint(
             "current_na >= -1e300 AND current_na <= 1e+300", name=op.f("ck_calibration_points_current_na")
@@ -598,12 +579,7 @@ def _create_retirements() -> None:
         sqlite_strict=True,
     )
     op.create_index(
-        "uq_retirements_live",
-        "retirements",
-        ["electrode_id"],
-        unique=True,
-        sqlite_where=LIVE,
-        postgresql_where=LIVE,
+        "uq_retirements_live", "retirements", ["electrode_id"], unique=True, sqlite_where=LIVE, postgresql_where=LIVE
     )
 
 
@@ -659,6 +635,8 @@ def _create_kept_fits() -> None:
         sa.Column("analyte_id", sa.Integer(), nullable=False, autoincrement=False),
         sa.Column("method", sa.Text(), nullable=False),
         sa.Column("fingerprint", sa.Text(), nullable=False),
+        sa.Column("seen_readings", sa.Integer(), nullable=False),
+        sa.Column("seen_correction", sa.Integer(), nullable=False),
         sa.Column("made_at", MOMENT, nullable=False),
         sa.Column("fit", sa.Text(), nullable=False),
         sa.PrimaryKeyConstraint("analyte_id", name="pk_kept_fits"),
