@@ -47,7 +47,7 @@ class Label(Column):
 
     def read(self, text: str, zone: tzinfo | None = None) -> Value:
         label = checked_text(text.strip(), self.name, LABEL_LIMIT)
-        if any(unicodedata.category(c) in ("Cc", "Zl", "Zp") for c in label):
+        if not label.isprintable() and any(unicodedata.category(c) in ("Cc", "Zl", "Zp") for c in label):
             raise InputError(
                 f"{self.name}: '{shortened(label)}' holds a control character; accepted: printable signs on one line"
             )
