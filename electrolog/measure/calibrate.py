@@ -86,10 +86,8 @@ def calibrate(
     Raises InputError for what can't be a point: a concentration below zero, a value that is no finite number.
     """
     x, y = _points(concentration_um, current_na)
-    noise_na, shared = (
-        _known("noise", noise_na),
-        _known("standard's relative uncertainty", standard_relative_uncertainty),
-    )
+    noise_na = _known("noise", noise_na)
+    shared = _known("standard's relative uncertainty", standard_relative_uncertainty)
     if not (x > 0).any():
         return CalibrationFigures(n_points=len(x), warnings=(without_response(len(x)),))
     line = fit_line(x, y, through_zero=through_zero or len(levels_um(x)) == 1, weights=weights)

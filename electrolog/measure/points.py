@@ -72,11 +72,6 @@ def tells_from_zero(value: float, se: float, degrees_of_freedom: int, level: flo
     return value > 0 and not p_against_zero(value, se, degrees_of_freedom) >= level
 
 
-def intercept_p(fit: LineFit) -> float:
-    """The chance of an intercept at least so far from zero if there were none."""
-    return p_against_zero(fit.intercept_na, fit.intercept_se_na, fit.degrees_of_freedom)
-
-
 def leverage(fit: LineFit) -> Array:
     """Each point's pull on the line, 0 to 1: the diagonal of the hat matrix."""
     about_centre = (fit.concentration_um - fit.centre_um) ** 2 / fit.spread_um2

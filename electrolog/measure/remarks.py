@@ -12,13 +12,14 @@ from electrolog.measure.line import LineFit, levels_um
 from electrolog.measure.points import (
     SuspectPoint,
     curvature_p,
-    intercept_p,
     lack_of_fit,
     p_against_zero,
+    tells_from_zero,
 )
 from electrolog.measure.saturating import SaturatingFit
 
 SIGNIFICANT = 0.05
+CLEARLY = 0.01  # for what is looked at in every calibration: one false remark in a hundred
 REPLICATE_SHARE = 0.10  # common practice: replicates of one injection agree within 10 %
 
 
@@ -40,15 +41,19 @@ class Outcome:
         return self.line.slope_se_na_um if self.curve is None else self.curve.sensitivity_se_na_um
 
     @property
-    def sensitivity_p(self) -> float:
-        """The chance of such a sensitivity if there were none; NaN where the points can't say."""
-        freedom = self.line.degrees_of_freedom if self.curve is None else self.curve.degrees_of_freedom
-        return p_against_zero(self.sensitivity_na_um, self.sensitivity_se_na_um, freedom)
+    def offset_na(self) -> tuple[float, float]:
+        """With its standard error."""
+        if self.curve is None:
+            return self.line.intercept_na, self.line.intercept_se_na
+        return self.curve.offset_na, self.curve.offset_se_na
+
+    @property
+    def degrees_of_freedom(self) -> int:
+        return self.line.degrees_of_freedom if self.curve is None else self.curve.degrees_of_freedom
 
     @property
     def responds(self) -> bool:
-        """A positive sensitivity that scatter alone wouldn't give, as far as the points can say."""
-        return self.sensitivity_na_um > 0 and not self.sensitivity_p >= SIGNIFICANT
+        return tells_from_zero(self.sensitivity_na_um, self.sensitivity_se_na_um, self.degrees_of_freedom)
 
     @property
     def lowest_um(self) -> float:
@@ -100,11 +105,12 @@ def _falling(outcome: Outcome) -> str | None:
 def _no_response(outcome: Outcome) -> str | None:
     if outcome.line.slope_na_um == 0:
         return "the current doesn't change with the concentration: no response was measured"
-    if not outcome.sensitivity_p >= SIGNIFICANT:
+    p = p_against_zero(outcome.sensitivity_na_um, outcome.sensitivity_se_na_um, outcome.degrees_of_freedom)
+    if not p >= SIGNIFICANT:
         return None
     return (
         f"the sensitivity {outcome.sensitivity_na_um:.3g} ± {outcome.sensitivity_se_na_um:.3g} nA/µM can't "
-        f"be told from zero (p = {outcome.sensitivity_p:.2g}): it gives no detection limit and no concentration"
+        f"be told from zero (p = {p:.2g}): it gives no detection limit and no concentration"
     )
 
 
@@ -133,7 +139,7 @@ def _not_straight(outcome: Outcome) -> str | None:
             f"the means lie off the line by more than the replicates' scatter allows "
             f"(F = {test.f:.3g}, p = {test.p:.2g})"
         )
-    if curvature_p(outcome.line) > 1 - SIGNIFICANT / 5:
+    if curvature_p(outcome.line) > 1 - CLEARLY:
         return "the current rises faster than the concentration: the points bend away from the line upwards"
     return None
 
@@ -150,12 +156,13 @@ def _suspect(outcome: Outcome) -> str | None:
 
 
 def _offset(outcome: Outcome) -> str | None:
-    line = outcome.line
-    if line.through_zero or line.exact() or not intercept_p(line) < SIGNIFICANT / 5:
+    offset_na, se_na = outcome.offset_na
+    p = p_against_zero(offset_na, se_na, outcome.degrees_of_freedom)
+    if outcome.line.through_zero or outcome.line.exact() or not p < CLEARLY:
         return None
     return (
-        f"the line misses zero: intercept {line.intercept_na:.3g} ± {line.intercept_se_na:.2g} nA "
-        f"(p = {intercept_p(line):.2g}); look at the background subtraction and the blank"
+        f"the line misses zero: intercept {offset_na:.3g} ± {se_na:.2g} nA (p = {p:.2g}); "
+        "look at the background subtraction and the blank"
     )
 
 

@@ -20,7 +20,7 @@ Array = NDArray[np.float64]
 
 DECIMAL = 0.15  # how near, in decades, a ratio must be to a power of ten to look like a slipped decimal
 THOUSAND = 0.5  # the same for a prefix: nothing else moves a sensitivity so far
-UNSEEN_FALL = 0.05  # of the largest current: a fall this small is taken for scatter where none was measured
+UNSEEN_FALL = 0.05  # of the largest current: what two injections may differ by anyway (common practice)
 
 
 def likely_slips(
@@ -98,8 +98,8 @@ def wrong_sign(concentration_um: ArrayLike, current_na: ArrayLike) -> str | None
 def reversed_order(concentration_um: ArrayLike, current_na: ArrayLike, noise_na: float | None = None) -> str | None:
     """A concentration whose mean current lies below that of a lower one, beyond what scatter allows.
 
-    Scatter: that of the replicates (95 %), three times the noise of a difference, or, where neither was
-    measured, 5 % of the largest current.
+    Scatter: that of the replicates (95 %) or three times the noise, whichever is more, and a fall of less than
+    5 % of the largest current is never asked about.
     """
     x, y = np.asarray(concentration_um, dtype=float), np.asarray(current_na, dtype=float)
     levels = levels_um(x)
@@ -120,14 +120,12 @@ def reversed_order(concentration_um: ArrayLike, current_na: ArrayLike, noise_na:
 
 
 def _scatter_na(y: Array, mean_na: Array, x: Array, levels: Array, noise_na: float | None) -> float:
-    """The widest that one mean of one point may stray, of a difference of two."""
-    freedom = len(x) - len(levels)
+    """How far one point may stray; a difference of two points may be √2 times as large."""
+    freedom, within_na = len(x) - len(levels), 0.0
     if freedom > 0:
-        pooled_na = math.sqrt(float(((y - mean_na[np.searchsorted(levels, x)]) ** 2).sum()) / freedom)
-        return max(t_quantile(0.975, freedom) * pooled_na, 3 * (noise_na or 0.0))
-    if noise_na:
-        return 3 * noise_na
-    return UNSEEN_FALL * float(np.abs(y).max()) / math.sqrt(2)
+        pooled_na2 = float(((y - mean_na[np.searchsorted(levels, x)]) ** 2).sum()) / freedom
+        within_na = t_quantile(0.975, freedom) * math.sqrt(pooled_na2)
+    return max(within_na, 3 * (noise_na or 0.0), UNSEEN_FALL * float(np.abs(y).max()) / math.sqrt(2))
 
 
 def _usual(earlier: Sequence[float]) -> float | None:

@@ -118,6 +118,7 @@ def test_a_bend_makes_the_shape_saturating():
     assert figures.sensitivity_na_um == pytest.approx(20, abs=2 * 3.182 * figures.sensitivity_se_na_um)
     assert figures.linear_to_um == pytest.approx(0.05 / 0.95 / 0.3, rel=0.1)
     assert said(figures, "levels off")
+    assert not said(figures, "misses zero")  # the straight line through a bend does; the bend doesn't
 
 
 def test_replicates_let_a_lesser_bend_be_seen():

@@ -4,9 +4,9 @@ import pytest
 from electrolog.measure.line import fit_line
 from electrolog.measure.points import (
     curvature_p,
-    intercept_p,
     lack_of_fit,
     leverage,
+    p_against_zero,
     studentised_residuals,
     suspect_point,
 )
@@ -43,7 +43,9 @@ def test_intercept_is_tested_against_zero():
     from statsmodels.regression.linear_model import OLS
 
     theirs = OLS(Y, np.column_stack([np.ones_like(X), X])).fit()
-    assert intercept_p(fit_line(X, Y)) == pytest.approx(theirs.pvalues[0], rel=1e-10)
+    fit = fit_line(X, Y)
+    p = p_against_zero(fit.intercept_na, fit.intercept_se_na, fit.degrees_of_freedom)
+    assert p == pytest.approx(theirs.pvalues[0], rel=1e-10)
 
 
 def test_the_point_far_off_is_named():

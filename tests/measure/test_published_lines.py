@@ -4,7 +4,7 @@ import numpy as np
 import pytest
 
 from electrolog.measure.line import fit_line
-from electrolog.measure.points import intercept_p, lack_of_fit
+from electrolog.measure.points import lack_of_fit, p_against_zero
 from electrolog.measure.weights import from_sd
 
 
@@ -234,4 +234,4 @@ def test_a_load_cell_is_not_straight():
     test = lack_of_fit(fit)
     assert test.f == pytest.approx(112.23997927520622, rel=1e-9)
     assert test.p == pytest.approx(2.776e-16, rel=1e-3)
-    assert intercept_p(fit) < 1e-8
+    assert p_against_zero(fit.intercept_na, fit.intercept_se_na, fit.degrees_of_freedom) < 1e-8

@@ -79,4 +79,5 @@ def test_scatter_may_reverse_the_order():
     assert reversed_order([0, 1, 2], [0, 10.0, 8.0]) is not None
     assert reversed_order([0, 1, 2], [0, 10.0, 8.0], noise_na=1.0) is None
     assert reversed_order([0, 1, 1, 2, 2], [0, 20, 20.2, 10, 10.2]) is not None
+    assert reversed_order([0, 1, 1, 2, 2], [0, 20, 20, 19.8, 19.8]) is None  # alike by rounding, not by precision
     assert reversed_order([1], [10]) is None
