@@ -21,11 +21,13 @@ from electrolog.record.store import Record, default_location, open_record
 
 if TYPE_CHECKING:
     from electrolog.answers.asked import Run
+    from electrolog.answers.checking import Checked
     from electrolog.answers.correcting import Corrected
     from electrolog.answers.entering import Entered, NewCalibration
     from electrolog.answers.figures import Recomputed
     from electrolog.answers.forecasting import Forecast
     from electrolog.answers.history import Reading
+    from electrolog.answers.limiting import LimitSet
     from electrolog.answers.shelf import Filter, Shelved
     from electrolog.record.exchange_in import ImportReport
     from electrolog.record.exchange_out import ExportReport
@@ -146,6 +148,49 @@ class Lab:
         from electrolog.answers.forecasting import forecasts
 
         return forecasts(self.record, labels, run, quantiles, moment)
+
+    def check(
+        self,
+        labels: Sequence[str],
+        run: Run,
+        *,
+        needs_um: float | None = None,
+        project: str = "",
+        limits: Mapping[str, str] | None = None,
+        moment: datetime | None = None,
+    ) -> list[Checked]:
+        """The verdict on each probe for a run; `limits` override the lab's for this run, with their units."""
+        from electrolog.answers.checking import Demands, check
+        from electrolog.answers.limiting import typed_limits
+
+        demands = Demands(needs_um, project, typed_limits(limits or {}))
+        return check(self.record, labels, run, demands, moment)
+
+    def limits(self) -> list[LimitSet]:
+        """Every limit there can be, with what the lab has set."""
+        from electrolog.answers.limiting import limits
+
+        return limits(self.record)
+
+    def set_limit(
+        self, rule: str, value: str, *, analyte: str | None = None, project: str | None = None, note: str | None = None
+    ) -> LimitSet:
+        from electrolog.answers.limiting import Scope, set_limit
+
+        return set_limit(self.record, rule, value, Scope(analyte, project), note)
+
+    def adopt_limits(self, rules: Sequence[str] = ()) -> list[LimitSet]:
+        """Sets the named limits, or all that are offered, to their common-practice values."""
+        from electrolog.answers.limiting import adopt
+
+        return adopt(self.record, rules)
+
+    def unset_limit(
+        self, rule: str, *, analyte: str | None = None, project: str | None = None, reason: str = ""
+    ) -> None:
+        from electrolog.answers.limiting import Scope, unset
+
+        unset(self.record, rule, Scope(analyte, project), reason)
 
     # --- correcting and trusting --------------------------------------------------------------------------
 

@@ -55,6 +55,7 @@ class Asked:
     cohort: Cohort
     posterior: Posterior
     figures: dict[int, CalibrationFigures]
+    points: dict[int, tuple[tuple[float, float], ...]]
     labels: tuple[str, ...]
     probes: dict[str, Row]
     life: dict[str, list[Event]]
@@ -82,6 +83,10 @@ class Asked:
         found: Floats = np.exp(alone.log_sensitivity_at_reading(np.array([which]))[0])
         return found
 
+    def blanks_na(self, calibration: Event) -> list[float]:
+        """Currents at zero concentration of one calibration."""
+        return [current for concentration, current in self.points[calibration.row["id"]] if concentration == 0]
+
     def said_of(self, label: str) -> tuple[str, ...]:
         """What this probe's own calibrations could not tell the fit."""
         own = [event.row["calibration"] for event in lives.of(self.life[label], sheets.CALIBRATIONS)]
@@ -108,4 +113,5 @@ def ask(record: Record, labels: Sequence[str], run: Run, moment: datetime | None
 
     by_label = {probe["electrode"]: probe for probe in probes}
     drawn = posterior(fit, cohort.events)
-    return Asked(chosen, setting, fit, cohort, drawn, figures, order, by_label, story, moment)
+    points = {one.row["id"]: one.points for one in found}
+    return Asked(chosen, setting, fit, cohort, drawn, figures, points, order, by_label, story, moment)

@@ -8,7 +8,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterable, Iterator, Mapping, Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from datetime import timedelta
 from typing import Any
 
@@ -112,6 +112,21 @@ def gather(
         groups=_groups(wanted, of_probe, life),
     )
     return Cohort(events, tuple(wanted), readings, left_out)
+
+
+def unit_after(events: Events, place: int, renewal: str) -> Events:
+    """The same events with one more at the end of one unit: a renewal that leaves the area as it is."""
+    end = int(np.searchsorted(events.unit, place, side="right"))
+    renewals = events.renewals if renewal in events.renewals else (*events.renewals, renewal)
+    return replace(
+        events,
+        unit=np.insert(events.unit, end, place),
+        kind=np.insert(events.kind, end, RENEWAL),
+        which=np.insert(events.which, end, renewals.index(renewal)),
+        amount=np.insert(events.amount, end, 0.0),
+        se=np.insert(events.se, end, _NOWHERE),
+        renewals=renewals,
+    )
 
 
 def unusable(figures: CalibrationFigures) -> str:

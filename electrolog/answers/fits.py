@@ -2,12 +2,14 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 
 from electrolog.answers import cohorts
 from electrolog.answers import figures as made
 from electrolog.answers.cohorts import Cohort
 from electrolog.fouling.cohort import METHOD, CohortFit, fit_cohort
+from electrolog.fouling.parameters import read_scales
 from electrolog.record import queries
 from electrolog.record.names import Names
 from electrolog.record.readable import row_by_id
@@ -63,6 +65,17 @@ def fit_for(record: Record, asked: Assay, fresh: bool = False) -> CohortFit:
 def keep(record: Record, analyte_id: int, fit: CohortFit, seen: queries.Seen) -> None:
     with record.writing() as writer:
         queries.keep_fit(writer, analyte_id, fit.method, fit.fingerprint, seen, fit.to_dict())
+
+
+def reading_sd_log(fit: CohortFit) -> float:
+    """How far one calibration strays from the truth, in log units: its own scatter and its day's."""
+    likeliest = max(fit.components, key=lambda part: part.weight)
+    scales = read_scales(likeliest.layout, likeliest.theta)
+    return math.hypot(float(scales.residual_sd), float(scales.day_sd))
+
+
+def known_renewals(fit: CohortFit) -> tuple[str, ...]:
+    return fit.components[0].layout.renewals
 
 
 def _changed(kept: queries.Seen, now: queries.Seen) -> bool:

@@ -1,0 +1,160 @@
+"""The verdict before a run: what is known of each probe, put to the judge."""
+
+from __future__ import annotations
+
+import statistics
+from collections.abc import Callable, Mapping, Sequence
+from dataclasses import dataclass, field
+from datetime import datetime, timedelta
+
+import numpy as np
+
+from electrolog.answers import fits
+from electrolog.answers import life as lives
+from electrolog.answers.asked import Asked, Floats, Run, ask
+from electrolog.answers.cohorts import unit_after
+from electrolog.clock import shown_moment
+from electrolog.fouling.forecast import posterior
+from electrolog.judge.facts import CalibrationFacts
+from electrolog.judge.limits import LimitRow, Limits, effective
+from electrolog.judge.question import Question
+from electrolog.judge.verdict import Verdict, judge
+from electrolog.record import queries, sheets
+from electrolog.record.queries import Event
+from electrolog.record.readable import Row, rows
+from electrolog.record.store import Record
+
+
+@dataclass(frozen=True)
+class Demands:
+    """What the run asks beyond the lab's limits; `limits` override them for this run."""
+
+    needs_um: float | None = None
+    project: str = ""
+    limits: Mapping[str, float] = field(default_factory=dict)
+
+
+@dataclass(frozen=True)
+class Checked:
+    electrode: str
+    verdict: Verdict
+    notes: tuple[str, ...]
+
+
+def check(
+    record: Record, labels: Sequence[str], run: Run, demands: Demands, moment: datetime | None = None
+) -> list[Checked]:
+    """One verdict per probe, in the order of labels."""
+    asked = ask(record, labels, run, moment)
+    with record.reading() as connection:
+        limits = limits_in_force(queries.limits(connection), asked, demands)
+        standards = {row["standard"]: row for row in rows(connection, sheets.STANDARDS)}
+    return [
+        Checked(label, judge(_question(asked, place, run, limits, demands, standards)), _notes(asked, label))
+        for place, label in enumerate(asked.labels)
+    ]
+
+
+def limits_in_force(stored: Sequence[Row], asked: Asked, demands: Demands) -> Limits:
+    found = [
+        LimitRow(row["rule"], row["value"], row["origin"], row["analyte"] or "", row["project"] or "") for row in stored
+    ]
+    return effective(found, analyte=asked.assay.analyte, project=demands.project, per_run=demands.limits)
+
+
+def _question(
+    asked: Asked, place: int, run: Run, limits: Limits, demands: Demands, standards: Mapping[str, Row]
+) -> Question:
+    label = asked.labels[place]
+    life = asked.life[label]
+    reference = asked.reference_draws(place)
+    return Question(
+        run_min=run.run_min,
+        log_sensitivity_at=_outlook(asked, place),
+        limits=limits,
+        calibration=calibration_facts(asked, label, standards),
+        reference_log_sensitivity=None if reference is None else np.log(reference),
+        reading_sd_log=fits.reading_sd_log(asked.fit),
+        needs_um=demands.needs_um,
+        uses=lives.state(life, asked.moment).uses,
+        assay=asked.assay.said,
+        out_of_use=_out_of_use(label, life, asked.moment),
+        after_cleaning=_after_cleaning(asked, place),
+    )
+
+
+def _outlook(asked: Asked, place: int) -> Callable[[float], Floats]:
+    alone = asked.posterior.only(np.array([place]))
+
+    def log_sensitivity_at(run_min: float) -> Floats:
+        found: Floats = alone.log_sensitivity(asked.extra_hours(run_min)[place : place + 1])[0]
+        return found
+
+    return log_sensitivity_at
+
+
+def _after_cleaning(asked: Asked, place: int) -> dict[str, Callable[[float], Floats]]:
+    """Per cleaning method whose recovery this lab's record has taught the fit."""
+    known = [name.removeprefix("clean:") for name in fits.known_renewals(asked.fit) if name.startswith("clean:")]
+    return {method: _cleaned(asked, place, f"clean:{method}") for method in known}
+
+
+def _cleaned(asked: Asked, place: int, renewal: str) -> Callable[[float], Floats]:
+    def log_sensitivity_at(run_min: float) -> Floats:
+        events = unit_after(asked.cohort.events, place, renewal)
+        found: Floats = posterior(asked.fit, events).log_sensitivity(asked.extra_hours(run_min)[place : place + 1])[0]
+        return found
+
+    return log_sensitivity_at
+
+
+def calibration_facts(asked: Asked, label: str, standards: Mapping[str, Row]) -> CalibrationFacts | None:
+    """The last calibration with the assay's analyte and waveform, and what has happened since."""
+    life = asked.life[label]
+    comparable = lives.comparable_calibrations(life, asked.assay.analyte, asked.assay.waveform)
+    if not comparable:
+        return None
+    last = comparable[-1]
+    figures = asked.figures[last.row["id"]]
+    blanks = asked.blanks_na(last)
+    return CalibrationFacts(
+        age_h=(asked.moment - last.at) / timedelta(hours=1),
+        events_since=tuple(lives.voided_by(life, last, asked.moment)),
+        standard_past_use_by=_past_use_by(last, standards),
+        noise_na=last.row["noise_na"],
+        noise_before_na=comparable[-2].row["noise_na"] if len(comparable) > 1 else None,
+        blank_sd_na=statistics.stdev(blanks) if len(blanks) > 1 else None,
+        blank_degrees_of_freedom=len(blanks) - 1 if len(blanks) > 1 else None,
+        residual_sd_na=figures.residual_sd_na,
+        residual_degrees_of_freedom=figures.degrees_of_freedom,
+        r_squared=figures.r_squared,
+        peak_shift_v=_peak_shift(asked, label, last),
+    )
+
+
+def _past_use_by(calibration: Event, standards: Mapping[str, Row]) -> bool:
+    standard = standards.get(calibration.row["standard"] or "")
+    return bool(standard and standard["expires_at"] and calibration.at > standard["expires_at"])
+
+
+def _peak_shift(asked: Asked, label: str, last: Event) -> float | None:
+    first = lives.reference(asked.life[label], asked.assay.analyte, asked.assay.waveform, asked.moment)
+    peaks = [event.row["oxidation_peak_v"] for event in (first, last) if event is not None]
+    if len(peaks) < 2 or None in peaks:
+        return None
+    return float(peaks[1] - peaks[0])
+
+
+def _out_of_use(label: str, life: Sequence[Event], moment: datetime) -> str:
+    state = lives.state(life, moment)
+    if state.retired_at is None:
+        return ""
+    return f"{label} was retired on {shown_moment(state.retired_at)}: {state.reason}"
+
+
+def _notes(asked: Asked, label: str) -> tuple[str, ...]:
+    own = len(asked.cohort.readings[label, asked.assay.waveform])
+    said = [] if asked.fit.converged else ["the cohort's fit did not converge: its odds are not to be relied on"]
+    if own < 2:
+        said.append(f"the forecast rests on {own} calibration{'s' if own != 1 else ''} of its own and on its cohort")
+    return (*said, *asked.fit.notes, *asked.said_of(label))

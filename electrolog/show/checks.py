@@ -1,0 +1,81 @@
+"""The verdict for a person and for a program."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from typing import Any
+
+from electrolog.answers.asked import Run
+from electrolog.answers.checking import Checked
+from electrolog.judge.verdict import NowAndEnd, Verdict
+from electrolog.show.machine import plain, print_csv, print_json
+from electrolog.show.tables import print_lines
+from electrolog.units import shown_concentration, shown_duration, shown_number, shown_percent
+
+_SIGNS = {"fit": "[+]", "recalibrate": "[~]", "retire": "[x]", "undetermined": "[?]"}
+_CAUTION = "Advice for people who decide: approved protocol and local rules come first. Never for clinical decisions."
+
+
+def answer(found: Sequence[Checked], run: Run, json: bool, csv: bool) -> None:
+    if json:
+        print_json([as_dict(one) for one in found])
+    elif csv:
+        print_csv([plain(as_dict(one)) for one in found])
+    elif not found:
+        print_lines("no probe to check")
+    else:
+        for one in found:
+            print_lines(*sentences(one, run))
+        print_lines(_CAUTION)
+
+
+def as_dict(one: Checked) -> dict[str, Any]:
+    verdict = one.verdict
+    return {
+        "electrode": one.electrode,
+        **verdict.to_dict(),
+        "p_breach_now": verdict.p_breach_now,
+        "p_by_rule": dict(verdict.p_by_rule),
+        "changes": verdict.changes,
+        "value_of_calibration": verdict.value_of_calibration,
+        "notes": one.notes,
+    }
+
+
+def sentences(one: Checked, run: Run) -> list[str]:
+    verdict = one.verdict
+    head = f"{_SIGNS[verdict.verdict]} {one.electrode}: {verdict.verdict.upper()}"
+    head += f" for {shown_duration(run.run_min)} {run.setting}"
+    if verdict.p_breach is not None:
+        head += f"; odds of breaking a limit {shown_percent(verdict.p_breach)}"
+    return [head, *[f"  {line}" for line in (*_because(verdict), *_numbers(verdict), *_notes(one))]]
+
+
+def _because(verdict: Verdict) -> list[str]:
+    said = [f"because {reason.text}" for reason in verdict.reasons]
+    if verdict.longest_run_min is not None:
+        said.append(f"longest run that stays fit: {shown_duration(verdict.longest_run_min)}")
+    return said + [f"what would change it: {change.text}" for change in verdict.changes]
+
+
+def _numbers(verdict: Verdict) -> list[str]:
+    found = (
+        ("sensitivity (nA/µM)", verdict.sensitivity_na_um, shown_number),
+        ("share left", verdict.fraction_left, shown_percent),
+        ("detection limit", verdict.lod_um, shown_concentration),
+    )
+    return [f"{name}: {_both(value, shown)}" for name, value, shown in found if value.now and value.end]
+
+
+def _both(value: NowAndEnd, shown: Any) -> str:
+    """`12.1 [10.4 to 13.9] now, 9.8 [7.7 to 12.0] at the end`: median and 90 % interval."""
+    parts = []
+    for word, spread in (("now", value.now), ("at the end", value.end)):
+        if spread is not None:
+            low, middle, high = spread
+            parts.append(f"{shown(middle)} [{shown(low)} to {shown(high)}] {word}")
+    return ", ".join(parts)
+
+
+def _notes(one: Checked) -> list[str]:
+    return [f"! {note}" for note in one.notes]
