@@ -17,7 +17,7 @@ from electrolog.measure.linear import LINEAR_SHARE, linear_to_um
 from electrolog.measure.points import curvature_p, lack_of_fit, suspect_point
 from electrolog.measure.remarks import Outcome, all_of, without_response
 from electrolog.measure.saturating import SaturatingFit, fit_saturating
-from electrolog.measure.student import t_quantile
+from electrolog.measure.tails import t_quantile
 from electrolog.measure.version import METHOD
 
 BENT = 0.01  # stricter than usual: a handful of points bends by chance, and a needless curve costs precision

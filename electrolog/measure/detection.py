@@ -18,7 +18,7 @@ from numpy.typing import ArrayLike
 from electrolog.errors import DataError, InputError
 from electrolog.measure.line import LineFit
 from electrolog.measure.points import tells_from_zero
-from electrolog.measure.student import t_quantile
+from electrolog.measure.tails import t_quantile
 
 LOD_K, LOQ_K = 3.0, 10.0  # common practice, and IUPAC (Spectrochim. Acta B 33 (1978) 241)
 Z_95 = 1.6448536269514722  # the normal distribution's 0.95 quantile

@@ -10,7 +10,7 @@ from datetime import datetime
 import numpy as np
 from numpy.typing import ArrayLike
 
-from electrolog.measure.student import t_quantile, two_sided_p
+from electrolog.measure.tails import t_quantile, two_sided_p
 from electrolog.measure.use_by import past_use_by
 
 # Common practice, all of them; what a lab sets as its own limit goes before.

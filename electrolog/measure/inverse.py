@@ -8,7 +8,7 @@ from dataclasses import dataclass
 from electrolog.errors import InputError
 from electrolog.measure.line import LineFit
 from electrolog.measure.points import p_against_zero
-from electrolog.measure.student import t_quantile
+from electrolog.measure.tails import t_quantile
 
 
 @dataclass(frozen=True)

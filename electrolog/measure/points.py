@@ -9,7 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from electrolog.measure.line import LineFit, levels_um
-from electrolog.measure.student import two_sided_p
+from electrolog.measure.tails import f_p, two_sided_p
 
 Array = NDArray[np.float64]
 
@@ -36,13 +36,11 @@ class LackOfFit:
 
     @property
     def p(self) -> float:
-        from scipy.special import fdtrc
-
-        return float(fdtrc(self.lack_of_fit_freedom, self.pure_error_freedom, self.f))
+        return f_p(self.f, self.lack_of_fit_freedom, self.pure_error_freedom)
 
     def significant(self, level: float = 0.05) -> bool:
-        """False also where it can't be tested. An F below one never is, which spares the import in `p`."""
-        return self.f > 1 and self.p < level
+        """False also where it can't be tested."""
+        return self.p < level
 
 
 def lack_of_fit(fit: LineFit) -> LackOfFit:
@@ -117,6 +115,38 @@ def suspect_point(fit: LineFit, level: float = 0.01) -> SuspectPoint | None:
         return None
     x, y = fit.concentration_um[index], fit.current_na[index]
     return SuspectPoint(index, float(x), float(y), float(t[index]), p)
+
+
+@dataclass(frozen=True)
+class GrowingScatter:
+    """The replicates' pooled standard deviations in the lower and in the upper half of the concentrations."""
+
+    low_na: float
+    high_na: float
+    from_um: float
+    p: float
+
+
+def growing_scatter(fit: LineFit, level: float = 0.01) -> GrowingScatter | None:
+    """Where weighted replicates scatter more above the middle concentration than below, by the F test; else None."""
+    replicated = [u for u in levels_um(fit.concentration_um) if (fit.concentration_um == u).sum() > 1]
+    if len(replicated) < 2:
+        return None
+    middle = len(replicated) // 2
+    low_na2, low_freedom = _pooled(fit, replicated[:middle])
+    high_na2, high_freedom = _pooled(fit, replicated[middle:])
+    p = f_p(high_na2 / low_na2, high_freedom, low_freedom) if low_na2 > 0 else math.nan
+    return GrowingScatter(low_na2**0.5, high_na2**0.5, replicated[middle], p) if p < level else None
+
+
+def _pooled(fit: LineFit, levels: list[float]) -> tuple[float, int]:
+    """Variance within the concentrations (weighted), and its degrees of freedom."""
+    squares, freedom = 0.0, 0
+    for here in (fit.concentration_um == level for level in levels):
+        w, y = fit.weights[here], fit.current_na[here]
+        squares += float(w @ (y - float(w @ y) / float(w.sum())) ** 2)
+        freedom += len(y) - 1
+    return squares / freedom, freedom
 
 
 def curvature_p(fit: LineFit) -> float:

@@ -12,6 +12,7 @@ from electrolog.measure.line import LineFit, levels_um
 from electrolog.measure.points import (
     SuspectPoint,
     curvature_p,
+    growing_scatter,
     lack_of_fit,
     p_against_zero,
     tells_from_zero,
@@ -181,6 +182,16 @@ def _replicates(outcome: Outcome) -> str | None:
     return None
 
 
+def _uneven_scatter(outcome: Outcome) -> str | None:
+    grown = growing_scatter(outcome.line)
+    if grown is None:
+        return None
+    return (
+        f"the replicates scatter more from {grown.from_um:g} µM on (sd {grown.high_na:.2g} nA, below it "
+        f"{grown.low_na:.2g} nA): as weighted here, the standard errors are too small"
+    )
+
+
 def _clipped(outcome: Outcome) -> str | None:
     line = outcome.line
     top_um = levels_um(line.concentration_um[line.current_na == line.current_na.max()])
@@ -202,5 +213,6 @@ REMARKS: tuple[Callable[[Outcome], str | None], ...] = (
     _suspect,
     _offset,
     _replicates,
+    _uneven_scatter,
     _clipped,
 )

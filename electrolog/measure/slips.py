@@ -14,7 +14,7 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from electrolog.measure.line import fit_line, levels_um
-from electrolog.measure.student import t_quantile
+from electrolog.measure.tails import t_quantile
 
 Array = NDArray[np.float64]
 

@@ -161,6 +161,11 @@ def test_replicates_that_disagree_are_said_unless_noise_explains_them():
     assert not said(calibrate(x, y, noise_na=1.5), "replicates at")
 
 
+def test_scatter_that_grows_is_said():
+    x = np.repeat([0, 0.5, 1, 2], 4)
+    assert said(calibrate(x, 20 * x + np.tile([1.0, -1.0, 0.5, -0.5], 4) * (0.1 + x)), "scatter more from 1 µM")
+
+
 def test_an_intercept_that_is_no_scatter_is_said():
     assert said(calibrate(X, Y + 8), "misses zero", "background")
     assert not said(calibrate(X, Y), "misses zero")
@@ -270,6 +275,7 @@ def test_the_ordinary_path_loads_nothing_heavy():
     program = (
         "import sys; from electrolog.measure.calibrate import calibrate\n"
         "calibrate([0, .25, .5, 1, 2], [.3, 4.8, 10.4, 19.5, 40.1], noise_na=.05)\n"
+        "calibrate([0, 0, 1, 1, 2, 2, 4, 4], [0, 1, 20, 21, 36, 35, 59, 58])\n"
         "print([name for name in sys.modules if name.split('.')[0] in ('scipy', 'pandas', 'sqlalchemy')])"
     )
     ran = subprocess.run([sys.executable, "-c", program], capture_output=True, text=True, check=True, encoding="utf-8")

@@ -4,6 +4,7 @@ import pytest
 from electrolog.measure.line import fit_line
 from electrolog.measure.points import (
     curvature_p,
+    growing_scatter,
     lack_of_fit,
     leverage,
     p_against_zero,
@@ -97,3 +98,21 @@ def test_sums_of_squares_add_up():
     whole = fit.residual_sd_na**2 * fit.degrees_of_freedom
     assert test.pure_error_na2 + test.lack_of_fit_na2 == pytest.approx(whole, rel=1e-12)
     assert test.pure_error_freedom + test.lack_of_fit_freedom == fit.degrees_of_freedom
+
+
+def test_scatter_that_grows_with_the_concentration_is_seen():
+    x = np.repeat([0, 0.5, 1, 2], 4)
+    apart = np.tile([1.0, -1.0, 0.5, -0.5], 4)
+    grown = growing_scatter(fit_line(x, 20 * x + apart * (0.1 + x)))
+    assert grown is not None
+    assert grown.from_um == 1
+    assert grown.high_na > 3 * grown.low_na
+    assert growing_scatter(fit_line(x, 20 * x + apart)) is None
+    assert growing_scatter(fit_line(x, 20 * x + apart * (0.1 + x), weights=1 / (0.1 + x) ** 2)) is None
+    assert growing_scatter(fit_line(X, Y)) is None
+
+
+def test_even_scatter_is_called_growing_as_rarely_as_stated():
+    random, x = np.random.default_rng(5), np.repeat([0, 0.5, 1, 2], 3)
+    found = [growing_scatter(fit_line(x, 20 * x + random.normal(0, 1, 12)), level=0.05) for _ in range(1500)]
+    assert sum(one is not None for one in found) / 1500 == pytest.approx(0.05, abs=0.02)
