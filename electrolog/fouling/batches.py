@@ -1,0 +1,68 @@
+"""Units with about as many readings each, padded to one size, so that small matrices can be worked on all at once."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from electrolog.fouling.effects import Effects, columns_of_days, columns_of_units
+from electrolog.fouling.events import READING, Events
+
+Floats = NDArray[np.float64]
+Integers = NDArray[np.int64]
+SIZES = (2, 4, 7, 12, 20, 40, 80, 160, 320, 640)
+
+
+@dataclass(frozen=True)
+class Batch:
+    """B units with up to n readings. Padding: real False, log_sensitivity 0, columns F (none)."""
+
+    unit: Integers  # (B,)
+    reading: Integers  # (B, n) place among all readings, 0 where padded
+    real: NDArray[np.bool_]  # (B, n)
+    log_sensitivity: Floats  # (B, n) less the log area changes so far
+    variance: Floats  # (B, n) of the line's own error
+    columns: Integers  # (B, q + n, e) of the shared effects: latents first, then readings
+    level_columns: Integers  # (B, e)
+
+
+def make_batches(events: Events, effects: Effects, n_latents: int, log_area: Floats) -> list[Batch]:
+    """Every unit that has a reading, in batches by number of readings."""
+    is_reading = events.kind == READING
+    owner = events.unit[is_reading]
+    counts = np.bincount(owner, minlength=len(events.units))
+    sizes = [s for s in SIZES if s < counts.max(initial=1)]
+    edges = np.array([0, *sizes, counts.max(initial=1)])
+    batches = []
+    for low, high in zip(edges[:-1], edges[1:], strict=True):
+        units = np.flatnonzero((counts > low) & (counts <= high))
+        if len(units):
+            batches.append(pad_units(units, int(high), events, effects, n_latents, log_area))
+    return batches
+
+
+def pad_units(units: Integers, size: int, events: Events, effects: Effects, n_latents: int, log_area: Floats) -> Batch:
+    is_reading = events.kind == READING
+    owner, amount, se = events.unit[is_reading], events.amount[is_reading], events.se[is_reading]
+    day = columns_of_days(effects, events.days)[events.which[is_reading]]
+    first = np.searchsorted(owner, units, side="left")
+    count = np.searchsorted(owner, units, side="right") - first
+    within = np.arange(size)
+    real = within < count[:, None]
+    reading = np.where(real, first[:, None] + within, 0)
+    latents, level = columns_of_units(effects, events, n_latents)
+    none = len(effects.names)
+    level = level[units]
+    seen = np.full((len(units), size, level.shape[1] + 1), none)
+    if size and len(owner):
+        seen[:, :, :-1] = np.where(real[:, :, None], level[:, None, :], none)
+        seen[:, :, -1] = np.where(real, day[reading], none)
+        y = np.where(real, (amount - log_area)[reading], 0.0)
+        variance = np.where(real, np.nan_to_num(se[reading], nan=0.0) ** 2, 0.0)
+    else:
+        y, variance = np.zeros((len(units), size)), np.zeros((len(units), size))
+    widened = np.full((len(units), n_latents, seen.shape[2]), none)
+    widened[:, :, : latents.shape[2]] = latents[units]
+    return Batch(units, reading, real, y, variance, np.concatenate([widened, seen], axis=1), level)

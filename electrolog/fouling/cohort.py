@@ -1,0 +1,119 @@
+"""The whole cohort's fit: every shape of loss, weighed by its evidence."""
+
+from __future__ import annotations
+
+import hashlib
+import numpy as np
+from numpy.typing import NDArray
+
+from electrolog.errors import DataError
+from electrolog.fouling.ascend import Peak, Width, climb, rough_width, widths
+from electrolog.fouling.batches import make_batches
+from electrolog.fouling.clock import log_area_changes
+from electrolog.fouling.effects import lay_out_effects, layout_for
+from electrolog.fouling.events import READING, Events
+from electrolog.fouling.fit import METHOD, CohortFit, Component, KeptUnits
+from electrolog.fouling.points import normal_points
+from electrolog.fouling.propagation import Problem
+from electrolog.fouling.shapes import ALL_SHAPES, SHAPES
+
+Floats = NDArray[np.float64]
+DRAWS = 64  # of the hyper-parameters, over all shapes
+HOPELESS = 25.0  # nats behind the best shape
+LEAST_WEIGHT = 0.01  # a shape with less is named, but not drawn from
+
+
+def fit_cohort(events: Events, *, shapes: tuple[str, ...] = ALL_SHAPES) -> CohortFit:
+    check_events(events)
+    fits = fit_shapes(events, shapes)
+    log_evidence = np.array([width.log_evidence for _, _, width in fits])
+    weight = np.exp(log_evidence - log_evidence.max())
+    weight /= weight.sum()
+    drawn = np.where(weight >= LEAST_WEIGHT, weight, 0.0)
+    drawn /= drawn.sum()
+    components = tuple(
+        keep(problem, peak, width, float(w)) for (problem, peak, width), w in zip(fits, drawn, strict=True) if w > 0.0
+    )
+    return CohortFit(
+        METHOD,
+        fingerprint(events),
+        dict(zip(shapes, weight.tolist(), strict=True)),
+        components,
+        len(events.units),
+        int(np.sum(events.kind == READING)),
+        all(peak.converged for (_, peak, _), w in zip(fits, drawn, strict=True) if w > 0.0),
+        (),
+        {},
+    )
+
+
+def fit_shapes(events: Events, shapes: tuple[str, ...]) -> list[tuple[Problem, Peak, Width]]:
+    """Every shape at its peak. One starts where the best so far ended, and is given up once it is hopelessly behind."""
+    fits: list[tuple[Problem, Peak, Width]] = []
+    known: dict[str, float] = {}
+    best = -np.inf
+    for name in shapes:
+        problem = pose(events, name)
+        theta = np.array([known.get(prior.name, prior.mean) for prior in problem.layout.priors])
+        peak = climb(problem, theta, best - HOPELESS)
+        width = widths(problem, peak) if peak.log_posterior > best - HOPELESS else rough_width(problem, peak)
+        if peak.log_posterior > best:
+            best = peak.log_posterior
+            known.update(zip((p.name for p in problem.layout.priors), peak.theta, strict=True))
+        fits.append((problem, peak, width))
+    return fits
+
+
+def check_events(events: Events) -> None:
+    read = events.kind == READING
+    if not np.all(np.isfinite(events.amount)):
+        raise DataError(
+            "an exposure, a renewal or a reading has no finite number",
+            "leave out calibrations whose slope has no logarithm, and give every exposure its hours",
+        )
+    if np.any(np.diff(events.unit) < 0):
+        raise DataError("events aren't sorted by unit", "sort them by unit, then by time")
+    if np.any(events.se[read] < 0.0):
+        raise DataError("a standard error is negative", "give NaN where it is unknown")
+
+
+def pose(events: Events, shape_name: str) -> Problem:
+    shape = SHAPES[shape_name]
+    layout = layout_for(shape, events)
+    effects = lay_out_effects(shape, layout.group_sds, events)
+    return Problem(
+        events, layout, effects, make_batches(events, effects, len(shape.latents), log_area_changes(events)[0])
+    )
+
+
+def keep(problem: Problem, peak: Peak, width: Width, weight: float) -> Component:
+    count = max(1, round(DRAWS * weight))
+    theta = peak.theta + normal_points(count, len(peak.theta)) @ np.linalg.cholesky(width.covariance).T
+    mean = peak.state.mean[:-1]
+    labels = problem.events.units
+    units = tuple(
+        KeptUnits(tuple(labels[u] for u in batch.unit), batch.columns, site.precision, site.shift)
+        for batch, site in zip(problem.batches, peak.state.sites, strict=True)
+    )
+    moved = mean + (theta - peak.theta) @ width.effects_per_theta.T
+    return Component(
+        problem.layout,
+        problem.effects,
+        weight,
+        peak.theta,
+        theta,
+        width.covariance,
+        mean,
+        moved,
+        peak.state.covariance,
+        units,
+    )
+
+
+def fingerprint(events: Events) -> str:
+    digest = hashlib.sha256()
+    for column in (events.unit, events.kind, events.which, events.amount, events.se):
+        digest.update(np.ascontiguousarray(column).tobytes())
+    names = (events.units, events.settings, events.renewals, events.days, sorted(events.groups.items()))
+    digest.update(repr(names).encode())
+    return digest.hexdigest()

@@ -1,0 +1,220 @@
+"""What all units together say of the shared effects, each unit seeing them without its own contribution.
+
+Expectation propagation (Minka 2001): every unit, and every day's prior, is replaced by a Gaussian in the few shared
+effects that it sees; a factor is judged beside all the others' Gaussians (its cavity), so a day's uncertainty is shared
+by every probe measured on it, and no probe's own reading is counted twice. At the fixed point the log evidence is
+stationary in the stand-ins, so its slope in theta is the sum of the factors' own (Seeger 2005).
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from electrolog.fouling.batches import Batch
+from electrolog.fouling.clock import Clock, run_clock
+from electrolog.fouling.days import day_prior
+from electrolog.fouling.effects import Effects
+from electrolog.fouling.events import Events
+from electrolog.fouling.evidence import slopes
+from electrolog.fouling.parameters import Layout, Scales, read_scales
+from electrolog.fouling.quadrature import Grid, Setup, Tilted, refit_grid, starting_grid, tilt
+
+Floats = NDArray[np.float64]
+
+
+@dataclass
+class Site:
+    """Gaussian stand-ins: precision (B, R, R) and shift (B, R), natural parameters in the effects as rows see them."""
+
+    precision: Floats
+    shift: Floats
+
+
+@dataclass
+class State:
+    """Where the propagation stands: stand-ins of units and days, grids, and the shared effects' mean and covariance.
+
+    The covariance has one more row and column, of zeros, for "no column".
+    """
+
+    sites: list[Site]
+    day_site: Site
+    grids: list[Grid] | None
+    mean: Floats
+    covariance: Floats
+
+
+@dataclass(frozen=True)
+class Outcome:
+    log_evidence: float
+    score: Floats  # (P,)
+    unit_scores: Floats  # (units, P)
+    bad_day: Floats
+    tilted: list[Tilted]
+
+
+@dataclass(frozen=True)
+class Problem:
+    events: Events
+    layout: Layout
+    effects: Effects
+    batches: list[Batch]
+
+
+def start(problem: Problem, theta: Floats) -> State:
+    rows = [batch.columns.shape[:2] for batch in problem.batches]
+    sites = [Site(np.zeros((b, r, r)), np.zeros((b, r))) for b, r in rows]
+    n_days = int(problem.effects.is_day.sum())
+    precision = np.full(n_days, 1.0 / float(read_scales(problem.layout, theta).day_sd) ** 2)
+    empty = np.zeros(len(problem.effects.names) + 1)
+    return State(sites, Site(precision, np.zeros(n_days)), None, empty, np.zeros((len(empty), len(empty))))
+
+
+def settle(problem: Problem, theta: Floats, state: State, sweeps: int = 8, tolerance: float = 1e-3) -> Outcome:
+    """Sweep until the log evidence stands still; changes `state`."""
+    before = -np.inf
+    scales = read_scales(problem.layout, theta)
+    clock = run_clock(problem.events, scales.weight, scales.recovery)
+    for _ in range(sweeps):
+        outcome = sweep(problem, scales, clock, state)
+        if abs(outcome.log_evidence - before) < tolerance:
+            break
+        before = outcome.log_evidence
+    return outcome
+
+
+def sweep(problem: Problem, scales: Scales, clock: Clock, state: State) -> Outcome:
+    """Judge every factor beside the others at once, then renew all stand-ins."""
+    log_evidence = combine(problem, scales, state)
+    score = np.zeros(len(problem.layout.priors))
+    all_scores, all_tilted, grids = [], [], []
+    for k, (batch, site) in enumerate(zip(problem.batches, state.sites, strict=True)):
+        cavity_mean, cavity = cavity_of(batch.columns, site, state)
+        setup = set_up(batch, scales, clock, cavity_mean, cavity)
+        grid = state.grids[k] if state.grids else settle_grid(problem, setup)
+        tilted = tilt(problem.layout.shape, setup, grid)
+        found = slopes(problem.layout, setup, tilted, clock.reading_slopes[batch.reading])
+        log_evidence += float(np.sum(tilted.log_evidence - log_overlap(site, cavity_mean, cavity)))
+        state.sites[k] = renewed(found.gradient, found.curvature, cavity_mean, cavity)
+        grids.append(refit_grid(tilted, grid))
+        all_scores.append(found.score)
+        all_tilted.append(tilted)
+    state.grids = grids
+    by_days, day_scores, bad = sweep_days(problem.effects, scales, state)
+    unit_scores = np.concatenate(all_scores) if all_scores else np.zeros((0, len(score)))
+    score += unit_scores.sum(axis=0) + group_scores(problem, scales, state)
+    score[2:5] += day_scores
+    return Outcome(log_evidence + by_days, score, unit_scores, bad, all_tilted)
+
+
+def combine(problem: Problem, scales: Scales, state: State) -> float:
+    """Mean and covariance of the shared effects from all stand-ins; log of their integral."""
+    effects = problem.effects
+    n = len(effects.names)
+    precision, shift = np.zeros((n + 1) ** 2), np.zeros(n + 1)
+    for batch, site in zip(problem.batches, state.sites, strict=True):
+        at = batch.columns
+        pairs = at[:, :, None, :, None] * (n + 1) + at[:, None, :, None, :]
+        weights = np.broadcast_to(site.precision[:, :, :, None, None], pairs.shape)
+        precision += np.bincount(pairs.ravel(), weights=weights.ravel(), minlength=(n + 1) ** 2)
+        pull = np.broadcast_to(site.shift[:, :, None], at.shape)
+        shift += np.bincount(at.ravel(), weights=pull.ravel(), minlength=n + 1)
+    inner, pull = precision.reshape(n + 1, n + 1)[:n, :n], shift[:n]
+    prior = 1.0 / effects.prior_variance(scales)
+    prior[effects.is_day] = state.day_site.precision
+    pull = pull + effects.prior_mean * prior
+    pull[effects.is_day] += state.day_site.shift
+    inner = inner + np.diag(prior)
+    factor = np.linalg.cholesky(inner)
+    state.covariance[:n, :n] = np.linalg.inv(inner)
+    state.mean[:n] = state.covariance[:n, :n] @ pull
+    fixed = ~effects.is_day
+    known = 0.5 * np.sum(np.log(prior[fixed]) - effects.prior_mean[fixed] ** 2 * prior[fixed])
+    days = 0.5 * np.sum(~fixed) * np.log(2.0 * np.pi)
+    return float(known + days + 0.5 * state.mean[:n] @ pull - np.log(np.diag(factor)).sum())
+
+
+def cavity_of(columns: NDArray[np.int64], site: Site, state: State) -> tuple[Floats, Floats]:
+    """Mean (B, R) and covariance (B, R, R) of what the rows see, without the site's own contribution."""
+    seen_mean, seen = seen_by(columns, state.mean, state.covariance)
+    without = seen @ np.linalg.inv(np.eye(seen.shape[1]) - site.precision @ seen)
+    without = 0.5 * (without + without.transpose(0, 2, 1))
+    own = np.einsum("bij,bj->bi", site.precision, seen_mean) - site.shift
+    return seen_mean + np.einsum("bij,bj->bi", without, own), without
+
+
+def seen_by(columns: NDArray[np.int64], mean: Floats, covariance: Floats) -> tuple[Floats, Floats]:
+    pairs = covariance[columns[:, :, None, :, None], columns[:, None, :, None, :]]
+    return mean[columns].sum(axis=-1), pairs.sum(axis=(-1, -2))
+
+
+def renewed(gradient: Floats, curvature: Floats, mean: Floats, covariance: Floats) -> Site:
+    """The Gaussian that, beside the cavity, has the tilted distribution's moments; its precision kept from going negative."""
+    freed = np.linalg.solve(np.eye(curvature.shape[1]) - curvature @ covariance, curvature)
+    values, vectors = np.linalg.eigh(0.5 * (freed + freed.transpose(0, 2, 1)))
+    precision = (vectors * np.maximum(values, 0.0)[:, None, :]) @ vectors.transpose(0, 2, 1)
+    moved = mean + np.einsum("bij,bj->bi", covariance, gradient)
+    return Site(precision, gradient + np.einsum("bij,bj->bi", precision, moved))
+
+
+def log_overlap(site: Site, mean: Floats, covariance: Floats) -> Floats:
+    """Log integral of the stand-in exp(shift'x - x'precision x / 2) over the cavity N(mean, covariance)."""
+    ratio = np.eye(covariance.shape[1]) + covariance @ site.precision
+    pull = site.shift - np.einsum("bij,bj->bi", site.precision, mean)
+    moved = np.linalg.solve(ratio, np.einsum("bij,bj->bi", covariance, pull)[..., None])[..., 0]
+    linear = np.einsum("bi,bi->b", site.shift + pull, mean) * 0.5
+    return linear + 0.5 * np.einsum("bi,bi->b", pull, moved) - 0.5 * np.linalg.slogdet(ratio)[1]
+
+
+def sweep_days(effects: Effects, scales: Scales, state: State) -> tuple[float, Floats, Floats]:
+    place = np.flatnonzero(effects.is_day)
+    mean, variance = state.mean[place], state.covariance[place, place]
+    site = state.day_site
+    cavity = 1.0 / np.maximum(1.0 / variance - site.precision, 1e-6)
+    cavity_mean = cavity * (mean / variance - site.shift)
+    found = day_prior(scales, cavity_mean, cavity)
+    one = Site(site.precision[:, None, None], site.shift[:, None])
+    overlap = log_overlap(one, cavity_mean[:, None], cavity[:, None, None])
+    curvature = np.clip(found.curvature, 1e-9, 0.999 / cavity)
+    precision = curvature / (1.0 - curvature * cavity)
+    shift = found.gradient / (1.0 - curvature * cavity) + precision * cavity_mean
+    state.day_site = Site(precision, shift)
+    return float(np.sum(found.log_evidence - overlap)), found.score.sum(axis=0), found.bad
+
+
+def group_scores(problem: Problem, scales: Scales, state: State) -> Floats:
+    effects, layout = problem.effects, problem.layout
+    score = np.zeros(len(layout.priors))
+    second = state.mean[:-1] ** 2 + np.diag(state.covariance)[:-1]
+    for g in range(len(layout.group_sds)):
+        mine = effects.variance_slot == g
+        score[layout.group_slots.start + g] = np.sum(second[mine] / scales.group_sds[g] ** 2 - 1.0)
+    return score
+
+
+def set_up(batch: Batch, scales: Scales, clock: Clock, mean: Floats, covariance: Floats) -> Setup:
+    def each(value: Floats) -> Floats:
+        return np.broadcast_to(value, (len(batch.unit), *value.shape))
+
+    return Setup(
+        batch,
+        clock.at_readings[batch.reading] * batch.real,
+        mean,
+        covariance,
+        each(scales.level_sd**2),
+        each(scales.residual_sd**2),
+        each(scales.latent_sds**2),
+        each(scales.slip_odds),
+        each(scales.damage_odds),
+        each(scales.shape),
+    )
+
+
+def settle_grid(problem: Problem, setup: Setup, rounds: int = 6) -> Grid:
+    grid = starting_grid(setup)
+    for _ in range(rounds):
+        grid = refit_grid(tilt(problem.layout.shape, setup, grid), grid)
+    return grid
