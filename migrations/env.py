@@ -2,12 +2,12 @@
 
 from alembic import context
 
-from electrolog.record.schema import metadata
+from electrolog.record.constraints import full_metadata
 
 connection = context.config.attributes["connection"]
 context.configure(
     connection=connection,
-    target_metadata=metadata,
+    target_metadata=full_metadata(),
     render_as_batch=True,
     transactional_ddl=True,
 )

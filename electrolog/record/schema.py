@@ -1,4 +1,7 @@
-"""The tables, made from the sheets. Every rule that a single row can break is a named CHECK in the database itself."""
+"""The tables and their columns, made from the sheets: what an ordinary command needs to ask and to write.
+
+Constraints and indexes stand in constraints.py: only the database itself needs them, and loading them costs time.
+"""
 
 from __future__ import annotations
 
@@ -10,37 +13,24 @@ from sqlalchemy import (
     DOUBLE_PRECISION,
     REAL,
     TIMESTAMP,
-    CheckConstraint,
     Dialect,
-    ForeignKey,
     Index,
     Integer,
     MetaData,
-    PrimaryKeyConstraint,
     Table,
-    func,
     text,
 )
 from sqlalchemy import Column as SqlColumn
 from sqlalchemy import Text as SqlText
-from sqlalchemy.sql.elements import ColumnElement
 from sqlalchemy.types import TypeDecorator, TypeEngine
 
 from electrolog.record import columns as kinds
-from electrolog.record.columns import as_utc, number_text
+from electrolog.record.columns import as_utc
 from electrolog.record.sheets import POINTS, SHEETS, Sheet
 
 REVISION = "0001"  # the newest migration; a test holds it equal to the newest file in migrations/
 
-metadata = MetaData(
-    naming_convention={
-        "ix": "ix_%(table_name)s_%(column_0_N_name)s",
-        "uq": "uq_%(table_name)s_%(column_0_N_name)s",
-        "ck": "ck_%(table_name)s_%(constraint_name)s",
-        "fk": "fk_%(table_name)s_%(column_0_name)s",
-        "pk": "pk_%(table_name)s",
-    }
-)
+metadata = MetaData()
 
 
 class UtcMoment(TypeDecorator[datetime]):
@@ -103,79 +93,13 @@ def _sql_type(column: kinds.Column) -> TypeEngine[Any]:
     return IsoDay() if isinstance(column, kinds.Day) else SqlText()
 
 
-def _sql_column(column: kinds.Column) -> SqlColumn[Any]:
-    keys = [ForeignKey(f"{column.to}.id")] if isinstance(column, kinds.Link) else []
-    return SqlColumn(column_name(column), _sql_type(column), *keys, nullable=not column.required)
-
-
-def _checks(column: kinds.Column) -> list[CheckConstraint]:
-    rule = _rule(column)
-    return [CheckConstraint(rule, name=column.name)] if rule else []
-
-
-def _rule(column: kinds.Column) -> str:
-    name = column.name
-    if isinstance(column, kinds.Choice):
-        return f"{name} IN ({', '.join(repr(choice) for choice in column.choices)})"
-    if isinstance(column, kinds.Number):
-        # Infinity passes a one-sided bound, and NaN is above everything in PostgreSQL: both sides are always held.
-        low = f"{name} > {number_text(column.above)}" if column.above is not None else f"{name} >= -1e300"
-        low = f"{name} >= {number_text(column.least)}" if column.least is not None else low
-        return f"{low} AND {name} <= {number_text(column.most if column.most is not None else 1e300)}"
-    if isinstance(column, kinds.Label) and not isinstance(column, kinds.Link):
-        return f"length({name}) BETWEEN 1 AND {kinds.LABEL_LIMIT}"
-    if isinstance(column, kinds.Text):
-        return f"length({name}) BETWEEN 1 AND {kinds.TEXT_LIMIT}"
-    return ""
-
-
-def _moment_checks(sheet: Sheet) -> list[CheckConstraint]:
-    """UTC, held by the database: SQLite would keep any text, PostgreSQL's type already knows its zone."""
-    shape = "____-__-__T__:__:__.______Z"
-    return [
-        CheckConstraint(f"{column.name} LIKE '{shape}'", name=f"{column.name}_utc").ddl_if("sqlite")
-        for column in sheet.columns
-        if isinstance(column, kinds.Moment)
-    ]
-
-
 def _table(sheet: Sheet) -> Table:
-    rules = [check for column in sheet.columns for check in _checks(column)] + _moment_checks(sheet)
-    columns = [_sql_column(column) for column in sheet.columns]
-    struck = SqlColumn("struck", Integer, ForeignKey("journal.seq"))
+    columns = [SqlColumn(column_name(c), _sql_type(c), nullable=not c.required) for c in sheet.columns]
+    struck = SqlColumn("struck", Integer)
     if sheet is POINTS:
-        place = SqlColumn("ordinal", Integer, nullable=False)
-        keys = PrimaryKeyConstraint("calibration_id", "ordinal")
-        return Table(sheet.name, metadata, *columns, place, struck, keys, *rules, sqlite_strict=True)
+        return Table(sheet.name, metadata, *columns, SqlColumn("ordinal", Integer, nullable=False), struck)
     identity = SqlColumn("id", Integer, primary_key=True, autoincrement=False)
-    table = Table(sheet.name, metadata, identity, *columns, struck, *rules, sqlite_strict=True)
-    _index(sheet, table)
-    return table
-
-
-def _index(sheet: Sheet, table: Table) -> None:
-    """One live row per key; a struck row no longer stands in the way of its correction."""
-    live = text("struck IS NULL")
-    Index(
-        f"uq_{sheet.name}_live",
-        *[_key_part(sheet, table, name) for name in sheet.key],
-        unique=True,
-        sqlite_where=live,
-        postgresql_where=live,
-    )
-    leading = column_name(sheet.by_name[sheet.key[0]]) if sheet.key else ""
-    for column in sheet.columns:
-        if isinstance(column, kinds.Link) and column_name(column) != leading:
-            Index(f"ix_{sheet.name}_{column_name(column)}", table.c[column_name(column)])
-
-
-def _key_part(sheet: Sheet, table: Table, name: str) -> ColumnElement[Any]:
-    """An unknown part of a key counts as one value, or two NULLs would make two rows of the same limit."""
-    column = sheet.by_name[name]
-    part = table.c[column_name(column)]
-    if column.required:
-        return part
-    return func.coalesce(part, text("0") if isinstance(column, kinds.Link) else text("''"))
+    return Table(sheet.name, metadata, identity, *columns, struck)
 
 
 journal = Table(
@@ -190,13 +114,7 @@ journal = Table(
     SqlColumn("reason", SqlText, nullable=False),
     SqlColumn("change", SqlText, nullable=False),
     SqlColumn("previous_hash", SqlText, nullable=False),
-    SqlColumn("hash", SqlText, nullable=False, unique=True),
-    CheckConstraint("action IN ('add', 'amend', 'strike')", name="action"),
-    CheckConstraint("length(hash) = 64 AND length(previous_hash) = 64", name="hash"),
-    CheckConstraint("seq > 0", name="seq"),
-    CheckConstraint("at LIKE '____-__-__T__:__:__.______Z'", name="at_utc").ddl_if("sqlite"),
-    Index("ix_journal_sheet_row_id", "sheet", "row_id"),
-    sqlite_strict=True,
+    SqlColumn("hash", SqlText, nullable=False),
 )
 
 # What can change a fit that was made before: found without reading the whole journal.
@@ -215,22 +133,20 @@ Index(
 calibration_figures = Table(
     "calibration_figures",
     metadata,
-    SqlColumn("calibration_id", Integer, ForeignKey("calibrations.id"), primary_key=True),
+    SqlColumn("calibration_id", Integer, primary_key=True, autoincrement=False),
     SqlColumn("method", SqlText, nullable=False),
     SqlColumn("figures", SqlText, nullable=False),
-    sqlite_strict=True,
 )
 kept_fits = Table(
     "kept_fits",
     metadata,
-    SqlColumn("analyte_id", Integer, ForeignKey("analytes.id"), primary_key=True),
+    SqlColumn("analyte_id", Integer, primary_key=True, autoincrement=False),
     SqlColumn("method", SqlText, nullable=False),
     SqlColumn("fingerprint", SqlText, nullable=False),
     SqlColumn("seen_readings", Integer, nullable=False),
     SqlColumn("seen_correction", Integer, nullable=False),
     SqlColumn("made_at", UtcMoment(), nullable=False),
     SqlColumn("fit", SqlText, nullable=False),
-    sqlite_strict=True,
 )
 
 # Alembic's own table, described here so that an ordinary command can look at it without loading Alembic.

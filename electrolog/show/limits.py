@@ -20,7 +20,12 @@ def answer(limits: Sequence[LimitSet], json: bool, csv: bool) -> None:
         print_csv(rows)
     else:
         columns = ("limit", "value", "for", "origin", "common practice", "meaning")
-        print_table(columns, [_row(limit) for limit in limits], least=("common practice", "meaning"), wrapped="meaning")
+        print_table(
+            columns,
+            [_row(limit) for limit in limits],
+            least=("meaning", "common practice", "for", "origin"),
+            wrapped="meaning",
+        )
 
 
 def as_dict(limit: LimitSet) -> dict[str, Any]:

@@ -1,0 +1,133 @@
+"""Every rule that a single row can break, as the database itself holds it: named CHECKs, keys, unique indexes.
+
+The migrations make them; the tests hold a migrated database equal to what stands here.
+"""
+
+from __future__ import annotations
+
+from typing import Any
+
+from sqlalchemy import (
+    CheckConstraint,
+    ForeignKeyConstraint,
+    Index,
+    MetaData,
+    PrimaryKeyConstraint,
+    Table,
+    UniqueConstraint,
+    func,
+    text,
+)
+from sqlalchemy.sql.elements import ColumnElement
+
+from electrolog.record import columns as kinds
+from electrolog.record import schema
+from electrolog.record.columns import number_text
+from electrolog.record.schema import column_name
+from electrolog.record.sheets import POINTS, SHEETS, Sheet
+
+NAMES = {
+    "ix": "ix_%(table_name)s_%(column_0_N_name)s",
+    "uq": "uq_%(table_name)s_%(column_0_N_name)s",
+    "ck": "ck_%(table_name)s_%(constraint_name)s",
+    "fk": "fk_%(table_name)s_%(column_0_name)s",
+    "pk": "pk_%(table_name)s",
+}
+_LIVE = text("struck IS NULL")
+_UTC_SHAPE = "____-__-__T__:__:__.______Z"
+
+
+def full_metadata() -> MetaData:
+    """The schema with everything that guards it."""
+    full = MetaData(naming_convention=NAMES)
+    for table in schema.metadata.tables.values():
+        copied = table.to_metadata(full)
+        copied.dialect_options["sqlite"]["strict"] = True
+    _guard_journal(full.tables["journal"])
+    for sheet in SHEETS:
+        _guard(sheet, full.tables[sheet.name])
+    calibrations = full.tables["calibrations"]
+    Index("ix_calibrations_analyte_waveform", calibrations.c.analyte_id, calibrations.c.waveform_id)
+    for name, target in (("calibration_figures", "calibrations"), ("kept_fits", "analytes")):
+        key = f"{target.removesuffix('s')}_id"
+        full.tables[name].append_constraint(ForeignKeyConstraint([key], [f"{target}.id"]))
+    return full
+
+
+def _guard(sheet: Sheet, table: Table) -> None:
+    for column in sheet.columns:
+        for check in _checks(column):
+            table.append_constraint(check)
+        if isinstance(column, kinds.Link):
+            table.append_constraint(ForeignKeyConstraint([column_name(column)], [f"{column.to}.id"]))
+    table.append_constraint(ForeignKeyConstraint(["struck"], ["journal.seq"]))
+    if sheet is POINTS:
+        table.append_constraint(PrimaryKeyConstraint("calibration_id", "ordinal"))
+    else:
+        _index(sheet, table)
+
+
+def _guard_journal(table: Table) -> None:
+    checks = {
+        "action": "action IN ('add', 'amend', 'strike')",
+        "hash": "length(hash) = 64 AND length(previous_hash) = 64",
+        "seq": "seq > 0",
+    }
+    for name, rule in checks.items():
+        table.append_constraint(CheckConstraint(rule, name=name))
+    table.append_constraint(_utc("at"))
+    table.append_constraint(UniqueConstraint("hash"))
+    Index("ix_journal_sheet_row_id", table.c.sheet, table.c.row_id)
+    corrections = schema.CORRECTIONS
+    Index("ix_journal_corrections", table.c.seq, sqlite_where=corrections, postgresql_where=corrections)
+
+
+def _checks(column: kinds.Column) -> list[Any]:
+    rule = _rule(column)
+    found: list[Any] = [CheckConstraint(rule, name=column.name)] if rule else []
+    return [*found, _utc(column.name)] if isinstance(column, kinds.Moment) else found
+
+
+def _utc(column: str) -> Any:
+    """UTC, held by the database: SQLite would keep any text, PostgreSQL's type already knows its zone."""
+    return CheckConstraint(f"{column} LIKE '{_UTC_SHAPE}'", name=f"{column}_utc").ddl_if("sqlite")
+
+
+def _rule(column: kinds.Column) -> str:
+    name = column.name
+    if isinstance(column, kinds.Choice):
+        return f"{name} IN ({', '.join(repr(choice) for choice in column.choices)})"
+    if isinstance(column, kinds.Number):
+        # Infinity passes a one-sided bound, and NaN is above everything in PostgreSQL: both sides are always held.
+        low = f"{name} > {number_text(column.above)}" if column.above is not None else f"{name} >= -1e300"
+        low = f"{name} >= {number_text(column.least)}" if column.least is not None else low
+        return f"{low} AND {name} <= {number_text(column.most if column.most is not None else 1e300)}"
+    if isinstance(column, kinds.Label) and not isinstance(column, kinds.Link):
+        return f"length({name}) BETWEEN 1 AND {kinds.LABEL_LIMIT}"
+    if isinstance(column, kinds.Text):
+        return f"length({name}) BETWEEN 1 AND {kinds.TEXT_LIMIT}"
+    return ""
+
+
+def _index(sheet: Sheet, table: Table) -> None:
+    """One live row per key; a struck row no longer stands in the way of its correction."""
+    Index(
+        f"uq_{sheet.name}_live",
+        *[_key_part(sheet, table, name) for name in sheet.key],
+        unique=True,
+        sqlite_where=_LIVE,
+        postgresql_where=_LIVE,
+    )
+    leading = column_name(sheet.by_name[sheet.key[0]]) if sheet.key else ""
+    for column in sheet.columns:
+        if isinstance(column, kinds.Link) and column_name(column) != leading:
+            Index(f"ix_{sheet.name}_{column_name(column)}", table.c[column_name(column)])
+
+
+def _key_part(sheet: Sheet, table: Table, name: str) -> ColumnElement[Any]:
+    """An unknown part of a key counts as one value, or two NULLs would make two rows of the same limit."""
+    column = sheet.by_name[name]
+    part = table.c[column_name(column)]
+    if column.required:
+        return part
+    return func.coalesce(part, text("0") if isinstance(column, kinds.Link) else text("''"))
