@@ -43,15 +43,15 @@ def parse_moment(text: str, zone: tzinfo | None = None, what: str = "at") -> dat
     if folded == "now":
         return now
     if folded.endswith(" ago"):
-        return now - timedelta(minutes=parse_quantity(folded.removesuffix(" ago"), MINUTES, what))
+        return _ago(now, folded.removesuffix(" ago"), text, what)
     word, _, rest = folded.partition(" ")
     days = _DAY_WORDS.get(word, 0)
-    clock = _TIME_OF_DAY.fullmatch(rest if word in _DAY_WORDS else folded)
+    clock = _TIME_OF_DAY.fullmatch(rest.removeprefix("at ") if word in _DAY_WORDS else folded)
     if clock:
         day = (now.astimezone(zone) + timedelta(days=days)).date()
         return _at_time_of_day(day, clock, zone, text, what)
     if word in _DAY_WORDS:
-        raise InputError(f"{what}: '{shortened(text)}' names a day without a time; accepted: {_ACCEPTED}")
+        raise InputError(f"{what}: '{shortened(text)}' names a day without a time of day; accepted: {_ACCEPTED}")
     return parse_iso(text, zone, what)
 
 
@@ -81,6 +81,17 @@ def parse_day(text: str, what: str = "date") -> date:
     return day
 
 
+def _ago(now: datetime, span: str, text: str, what: str) -> datetime:
+    minutes = parse_quantity(span, MINUTES, what)
+    if minutes < 0:
+        raise InputError(f"{what}: '{shortened(text)}' would lie in the future; accepted: {_ACCEPTED}")
+    try:
+        moment = now - timedelta(minutes=minutes)
+    except OverflowError:
+        moment = datetime.min.replace(tzinfo=UTC)
+    return _within_range(moment, text, what)
+
+
 def _at_time_of_day(day: date, clock: re.Match[str], zone: tzinfo | None, text: str, what: str) -> datetime:
     try:
         moment = datetime(day.year, day.month, day.day, int(clock[1]), int(clock[2]), int(clock[3] or 0))
@@ -90,15 +101,20 @@ def _at_time_of_day(day: date, clock: re.Match[str], zone: tzinfo | None, text: 
 
 
 def _to_utc(moment: datetime, zone: tzinfo | None, text: str, what: str) -> datetime:
+    _within_range(moment, text, what)  # before the conversion too, which would overflow in the year 1
+    if moment.tzinfo is None:
+        _refuse_doubled_or_missing(moment, zone, text, what)
+        moment = moment.astimezone() if zone is None else moment.replace(tzinfo=zone)
+    return _within_range(moment.astimezone(UTC), text, what)
+
+
+def _within_range(moment: datetime, text: str, what: str) -> datetime:
     if not _EARLIEST <= moment.year < _LATEST:
         raise InputError(
             f"{what}: the year {moment.year} of '{shortened(text)}' is out of range;"
             f" accepted: {_EARLIEST} to {_LATEST - 1}"
         )
-    if moment.tzinfo is None:
-        _refuse_doubled_or_missing(moment, zone, text, what)
-        moment = moment.astimezone() if zone is None else moment.replace(tzinfo=zone)
-    return moment.astimezone(UTC)
+    return moment
 
 
 def _refuse_doubled_or_missing(moment: datetime, zone: tzinfo | None, text: str, what: str) -> None:

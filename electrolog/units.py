@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 import re
 from dataclasses import dataclass
+from decimal import Decimal
 
 from electrolog.errors import InputError, shortened
 
@@ -12,22 +13,25 @@ from electrolog.errors import InputError, shortened
 # give "u". Signs pasted from a paper bring their own minus.
 _FOLD = str.maketrans({"\u00b5": "u", "\u03bc": "u", "\u2212": "-", "\u2013": "-", "\u00a0": " ", "\u202f": " "})
 _NUMBER = re.compile(r"([+-]?(?:\d+\.?\d*|\.\d+)(?:e[+-]?\d+)?)\s*(.*)", re.IGNORECASE | re.DOTALL)
-_CLOCK_PARTS = re.compile(r"(\d+(?:\.\d+)?)\s*([a-z]+)?\s*", re.IGNORECASE)
+_CLOCK_PARTS = re.compile(r"(\d+\.?\d*|\.\d+)\s*([a-z]+)?\s*", re.IGNORECASE)
 
 
 @dataclass(frozen=True)
 class Unit:
-    """A column's unit: its sign, and every other sign that is accepted with its factor into it."""
+    """A column's unit: its sign, and every sign that is accepted with its factor into it.
+
+    Signs are read whatever their case, but for a first m or M: milli and molar or mega are a world apart.
+    """
 
     sign: str
     factors: dict[str, float]
     example: str
 
 
-CONCENTRATION_UM = Unit("µM", {"fm": 1e-9, "pm": 1e-6, "nm": 1e-3, "um": 1.0, "mm": 1e3, "m": 1e6}, "500nM, 0.5uM")
-CURRENT_NA = Unit("nA", {"pa": 1e-3, "na": 1.0, "ua": 1e3, "ma": 1e6}, "12.5nA, 800pA")
+CONCENTRATION_UM = Unit("µM", {"fM": 1e-9, "pM": 1e-6, "nM": 1e-3, "uM": 1.0, "mM": 1e3, "M": 1e6}, "500nM, 0.5uM")
+CURRENT_NA = Unit("nA", {"pA": 1e-3, "nA": 1.0, "uA": 1e3, "mA": 1e6}, "12.5nA, 800pA")
 LENGTH_UM = Unit("µm", {"nm": 1e-3, "um": 1.0, "mm": 1e3}, "75um, 0.1mm")
-POTENTIAL_V = Unit("V", {"mv": 1e-3, "v": 1.0}, "0.6V, -400mV")
+POTENTIAL_V = Unit("V", {"mV": 1e-3, "V": 1.0}, "0.6V, -400mV")
 MINUTES = Unit(
     "min",
     {
@@ -40,12 +44,12 @@ MINUTES = Unit(
 )
 SECONDS = Unit("s", {sign: factor * 60 for sign, factor in MINUTES.factors.items()}, "30s, 2min")
 HOURS = Unit("h", {sign: factor / 60 for sign, factor in MINUTES.factors.items()}, "24h, 3d")
-SCAN_RATE_V_S = Unit("V/s", {"v/s": 1.0, "mv/s": 1e-3, "kv/s": 1e3}, "400V/s")
-FREQUENCY_HZ = Unit("Hz", {"hz": 1.0, "khz": 1e3}, "10Hz")
-TEMPERATURE_C = Unit("°C", {"c": 1.0, "°c": 1.0, "degc": 1.0}, "37C")
+SCAN_RATE_V_S = Unit("V/s", {"V/s": 1.0, "mV/s": 1e-3, "kV/s": 1e3}, "400V/s")
+FREQUENCY_HZ = Unit("Hz", {"Hz": 1.0, "kHz": 1e3}, "10Hz")
+TEMPERATURE_C = Unit("°C", {"C": 1.0, "°C": 1.0, "degC": 1.0}, "37C")
 WEIGHT_PERCENT = Unit("wt%", {"%": 1.0, "wt%": 1.0}, "5%")
 FRACTION = Unit("", {"%": 0.01}, "0.7, 70%")
-SENSITIVITY_NA_UM = Unit("nA/µM", {"na/um": 1.0, "pa/nm": 1.0, "na/nm": 1e3, "pa/um": 1e-3, "na/mm": 1e-3}, "12.5nA/uM")
+SENSITIVITY_NA_UM = Unit("nA/µM", {"nA/uM": 1.0, "pA/nM": 1.0, "nA/nM": 1e3, "pA/uM": 1e-3, "nA/mM": 1e-3}, "12.5nA/uM")
 MOLAR_MASS_G_MOL = Unit("g/mol", {"g/mol": 1.0, "kg/mol": 1e3}, "153.18g/mol")
 COUNT = Unit("", {}, "3")
 PLAIN = Unit("", {}, "0.95")
@@ -57,60 +61,77 @@ def parse_quantity(text: str, unit: Unit, what: str = "value") -> float:
     Raises InputError when there is no finite number, or a unit that doesn't belong to this column.
     """
     folded = text.translate(_FOLD).strip()
-    if unit in (MINUTES, SECONDS, HOURS):
-        return _parse_duration(folded, unit, text, what)
     match = _NUMBER.fullmatch(folded)
-    if match is None:
-        raise _not_a_number(text, unit, what)
-    sign = match[2].strip().casefold()
-    if sign and sign not in unit.factors:
-        raise _wrong_unit(text, sign, unit, what)
-    return _finite(float(match[1]) * unit.factors.get(sign, 1.0), text, unit, what)
+    duration = unit in (MINUTES, SECONDS, HOURS)
+    if match and (not duration or _known_sign(match[2], unit) is not None):
+        sign = _known_sign(match[2], unit)
+        if sign is None:
+            raise _wrong_unit(text, match[2], unit, what)
+        return _scaled(match[1], unit.factors[sign] if sign else 1.0, text, what)
+    if duration:
+        return _parse_compound(folded, unit, text, what)
+    raise _not_a_number(text, unit, what)
 
 
-def _parse_duration(folded: str, unit: Unit, text: str, what: str) -> float:
-    """Durations may be compound, `2h10min`; a last part without a sign takes the next smaller one (`2h10`)."""
-    negative = folded.startswith("-")
-    rest = folded.removeprefix("-").removeprefix("+")
-    plain = _NUMBER.fullmatch(rest)
-    if plain and not plain[2].strip():
-        value = float(plain[1])
-        return _finite(-value if negative else value, text, unit, what)
-    parts = _CLOCK_PARTS.findall(rest)
-    if not parts or "".join(n + s for n, s in parts) != re.sub(r"\s+", "", rest):
-        raise _not_a_number(text, unit, what)
-    total, smaller = 0.0, ""
-    for number, raw_sign in parts:
-        sign = raw_sign.casefold() or smaller
-        if sign not in unit.factors:
-            raise _wrong_unit(text, raw_sign, unit, what)
-        total += float(number) * unit.factors[sign]
-        smaller = {"d": "h", "h": "min", "m": "s"}.get(sign[0], "")
-    return _finite(-total if negative else total, text, unit, what)
+def _known_sign(typed: str, unit: Unit) -> str | None:
+    """The unit's own spelling of a typed sign; '' for none, None for one that doesn't belong here."""
+    sign = "".join(typed.split())
+    if sign in unit.factors or not sign:
+        return sign
+    same = (known for known in unit.factors if known.casefold() == sign.casefold())
+    milli_or_mega = sign[0] in "mM" and unit not in (MINUTES, SECONDS, HOURS)
+    return next((known for known in same if not milli_or_mega or known[0] == sign[0]), None)
 
 
-def _finite(value: float, text: str, unit: Unit, what: str) -> float:
+def _scaled(number: str, factor: float, text: str, what: str) -> float:
+    """In decimals, so that `9nM` and `0.009uM` are one concentration: 9 * 1e-3 in binary is another number."""
+    value = float(number)
+    if math.isfinite(value) and factor != 1.0:
+        value = float(Decimal(number) * Decimal(repr(factor)))
     if not math.isfinite(value):
-        raise _not_a_number(text, unit, what)
+        raise InputError(f"{what}: '{shortened(text)}' is too large a number")
     return value
 
 
+def _parse_compound(folded: str, unit: Unit, text: str, what: str) -> float:
+    """`2h10min`: each part smaller than the one before; a last part without a sign takes the next smaller (`2h10`)."""
+    negative = folded.startswith("-")
+    rest = folded.removeprefix("-").removeprefix("+")
+    parts = _CLOCK_PARTS.findall(rest)
+    if not parts or "".join(n + s for n, s in parts) != re.sub(r"\s+", "", rest):
+        raise _not_a_number(text, unit, what)
+    total, smaller, before = 0.0, "", math.inf
+    for number, raw_sign in parts:
+        sign = raw_sign.casefold() or smaller
+        if sign and sign not in unit.factors:
+            raise _wrong_unit(text, raw_sign, unit, what)
+        if not sign or unit.factors[sign] >= before:
+            raise _not_a_number(text, unit, what)
+        before = unit.factors[sign]
+        total += _scaled(number, before, text, what)
+        smaller = {"d": "h", "h": "min", "m": "s"}.get(sign[0], "")
+    return -total if negative else total
+
+
 def _not_a_number(text: str, unit: Unit, what: str) -> InputError:
-    hint = "a decimal comma isn't read: write 0.5 for a half" if re.search(r"\d,\d", text) else ""
     in_unit = f" in {unit.sign}" if unit.sign else ""
     return InputError(
-        f"{what}: '{shortened(text)}' is not a number; accepted: a number{in_unit}, such as {unit.example}", hint
+        f"{what}: '{shortened(text)}' is not a number; accepted: a number{in_unit}, such as {unit.example}", _hint(text)
     )
+
+
+def _hint(text: str) -> str:
+    return "a decimal comma isn't read: write 0.5 for a half" if re.search(r"\d,\d", text) else ""
 
 
 def _wrong_unit(text: str, sign: str, unit: Unit, what: str) -> InputError:
-    if not unit.factors:
-        accepted = "a bare number"
-    else:
+    if "".join(sign.split())[0] in ",._:'0123456789":  # no unit, but more of a number
+        return _not_a_number(text, unit, what)
+    accepted = "a bare number"
+    if unit.factors:
         accepted = f"{', '.join(list(unit.factors)[:6])} (a bare number is in {unit.sign or 'parts of 1'})"
-    return InputError(
-        f"{what}: '{shortened(text)}' has the unit '{shortened(sign, 20)}'; accepted: {accepted}, such as {unit.example}"
-    )
+    typed = f"'{shortened(text)}' has the unit '{shortened(sign, 20)}'"
+    return InputError(f"{what}: {typed}; accepted: {accepted}, such as {unit.example}")
 
 
 def shown_number(value: float | None, digits: int = 3) -> str:
