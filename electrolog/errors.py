@@ -73,12 +73,16 @@ def unknown(what: str, found: str, known: Iterable[str], hint: str = "") -> Unkn
     folded = {name.casefold(): name for name in names}
     near = difflib.get_close_matches(found.casefold(), list(folded), n=1, cutoff=0.5)
     if near:
-        said = f"the nearest known one is '{folded[near[0]]}'"
+        said = f"the nearest known one is '{shortened(folded[near[0]])}'"
     elif names:
-        said = f"known: {', '.join(names[:12])}{', …' if len(names) > 12 else ''}"
+        said = f"known: {', '.join(shortened(name, 40) for name in names[:12])}{', …' if len(names) > 12 else ''}"
     else:
         said = "none is known yet"
     return UnknownName(f"no {what} is called '{shortened(found)}'; {said}", hint)
+
+
+def with_article(word: str) -> str:
+    return f"{'an' if word[0] in 'aeiou' else 'a'} {word}"
 
 
 def shortened(text: str, most: int = 80) -> str:

@@ -10,7 +10,7 @@ from typing import Any
 from electrolog.answers import doubts as asked
 from electrolog.answers import figures as made
 from electrolog.answers.labels import expanded, known_labels, numbered
-from electrolog.errors import DoubtfulEntry, InputError, unknown
+from electrolog.errors import DoubtfulEntry, InputError, shortened, unknown, with_article
 from electrolog.measure.calibrate import CalibrationFigures
 from electrolog.record import entry, queries, sheets
 from electrolog.record.columns import Value
@@ -53,7 +53,7 @@ def read(sheet: Sheet, typed: Typed, zone: tzinfo | None = None) -> dict[str, Va
             values[name] = value
     for column in sheet.columns:
         if column.required and values.get(column.name) is None:
-            raise InputError(f"{column.name}: missing; a {sheet.one} needs it ({column.about})")
+            raise InputError(f"{column.name}: missing; {with_article(sheet.one)} needs it ({column.about})")
     return values
 
 
@@ -106,10 +106,11 @@ def make_probes(
     name = str(batch.get("batch") or "")
     with record.writing() as writer:
         known = writer.names.everything("electrodes")
-        chosen = expanded(labels) if labels else numbered(name, _first_free(name, known), count or 1)
-        if not labels and not name:
+        if (labels and count is not None) or not (labels or name):
             raise InputError("which probes? accepted: labels, or --count with --batch")
-        _make_batch(writer, read(sheets.BATCHES, batch, zone) if name else {})
+        name = writer.names.spelled("batches", name) or name
+        chosen = expanded(labels) if labels else numbered(name, _first_free(name, known), 1 if count is None else count)
+        _make_batch(writer, read(sheets.BATCHES, {**batch, "batch": name}, zone) if name else {})
         values = {**probe, "batch": name or None}
         for label in chosen:
             entry.add(writer, sheets.ELECTRODES, read(sheets.ELECTRODES, {**values, "electrode": label}, zone))
@@ -141,8 +142,13 @@ def _first_free(stem: str, known: Mapping[str, object]) -> int:
 def _labelled(writer: Writer, typed: Typed, zone: tzinfo | None, place: int) -> dict[str, Value]:
     """With its probe's own spelling, and a label if none was given: C0001, C0002, …"""
     label = typed.get("calibration") or _next_label(writer, place)
-    electrode = known_labels(writer.connection, [str(typed["electrode"])], writer.names)[0]
-    return read(sheets.CALIBRATIONS, {**typed, "calibration": label, "electrode": electrode}, zone)
+    electrodes = known_labels(writer.connection, [str(typed["electrode"])], writer.names)
+    if len(electrodes) > 1:
+        raise InputError(
+            f"electrode: '{shortened(str(typed['electrode']))}' names {len(electrodes)} probes;"
+            " accepted: one label, or a file of points with a label in every row (points belong to one probe)"
+        )
+    return read(sheets.CALIBRATIONS, {**typed, "calibration": label, "electrode": electrodes[0]}, zone)
 
 
 def _next_label(writer: Writer, place: int) -> str:

@@ -41,18 +41,17 @@ class Reading:
 def readings(
     record: Record, labels: Sequence[str], analyte: str | None = None, waveform: str | None = None
 ) -> list[Reading]:
-    """Calibrations of the named probes, oldest first; of one analyte or waveform if named."""
+    """Calibrations of the named probes, oldest first; of one analyte or waveform if named. Raises UnknownName."""
     with record.reading() as connection:
+        names = Names(connection)
+        wanted_analyte = None if analyte is None else names.row_id("analytes", analyte)
+        wanted_waveform = None if waveform is None else names.row_id("waveforms", waveform)
         probes = queries.probes(connection, labels)
         ids = [probe["id"] for probe in probes]
-        found = queries.calibrations(connection, ids)
+        found = queries.calibrations(connection, ids, wanted_analyte, wanted_waveform)
         life = queries.events(connection, ids)
     numbers = made.all_figures(record, found)
-    return [
-        _reading(calibration, life[calibration.row["electrode"]], numbers)
-        for calibration in found
-        if analyte in (None, calibration.row["analyte"]) and waveform in (None, calibration.row["waveform"])
-    ]
+    return [_reading(one, life[one.row["electrode"]], numbers) for one in found]
 
 
 def usual_waveform(record: Record, label: str, analyte: str) -> str:

@@ -31,8 +31,8 @@ def command(
     electrolog expose B9-01 --for 4h --setting in-vivo --waveform triangle --subject S-031
     """
     values = {
-        "start": start or f"{duration} ago",
         "duration_min": duration,
+        "start": start or f"{duration} ago",
         "setting": setting,
         "waveform": waveform,
         "medium": medium,

@@ -6,6 +6,7 @@ import typer
 
 from electrolog.cli.logging import log_and_answer
 from electrolog.cli.options import At, Json, Labels, Yes
+from electrolog.errors import InputError
 
 
 def command(
@@ -20,4 +21,6 @@ def command(
 
     electrolog note B9-01 "tip looks bent under the 40x"
     """
+    if not text.strip():
+        raise InputError("a note without words; accepted: a remark in quotes")
     log_and_answer(ctx, "inspections", labels, {"at": at, "note": text}, yes, json)

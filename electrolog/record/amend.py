@@ -30,7 +30,7 @@ def amend(writer: Writer, sheet: Sheet, row_id: int, values: Mapping[str, Value]
     changed = {name: (before[name], after[name]) for name in after if after[name] != before[name]}
     if not changed:
         raise InputError("nothing to amend: the row holds these values already")
-    _check_amended(writer, sheet, row_id, after, changed)
+    _check_amended(writer, sheet, row_id, before, after)
     change: dict[str, Any] = {
         "before": {name: old for name, (old, _) in changed.items()},
         "after": {name: new for name, (_, new) in changed.items()},
@@ -93,11 +93,17 @@ def _resolved_part(writer: Writer, sheet: Sheet, values: Mapping[str, Value]) ->
     return part
 
 
-def _check_amended(writer: Writer, sheet: Sheet, row_id: int, after: dict[str, Any], changed: Change) -> None:
+def _check_amended(writer: Writer, sheet: Sheet, row_id: int, before: dict[str, Any], after: dict[str, Any]) -> None:
     entry.check_row(sheet, after, sheet is sheets.CALIBRATIONS and _count_points(writer, row_id) > 0)
-    key = {schema.column_name(sheet.by_name[name]) for name in sheet.key}
-    if key & set(changed):
+    if sheet is sheets.POINTS and after["calibration_id"] != row_id:
+        raise InputError(
+            "calibration: a point stays with its calibration; accepted: strike it, and log it where it belongs"
+        )
+    key = [schema.column_name(sheet.by_name[name]) for name in sheet.key]
+    if any(after[name] != before[name] for name in key):
+        _refuse_word_in_use(writer, sheet, before)
         entry.refuse_double(writer, sheet, after)
+        entry.refuse_lookalike(sheet, after, writer.names, itself=before[key[-1]])
 
 
 def _count_points(writer: Writer, calibration_id: int) -> int:

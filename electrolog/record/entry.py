@@ -8,7 +8,7 @@ from typing import Any
 
 from sqlalchemy import select
 
-from electrolog.errors import InputError, shortened, unknown
+from electrolog.errors import InputError, shortened, unknown, with_article
 from electrolog.record import columns as kinds
 from electrolog.record import schema, sheets
 from electrolog.record.columns import Value
@@ -69,7 +69,7 @@ def resolved(sheet: Sheet, values: Mapping[str, Value], names: Names) -> Row:
 def resolved_value(sheet: Sheet, column: kinds.Column, value: Value, names: Names) -> Any:
     if value is None or value == "":
         if column.required:
-            raise InputError(f"{column.name}: missing; a {sheet.one} needs it ({column.about})")
+            raise InputError(f"{column.name}: missing; {with_article(sheet.one)} needs it ({column.about})")
         return None
     if isinstance(column, kinds.Link):
         return names.row_id(column.to, str(value))
@@ -115,28 +115,29 @@ def refuse_double(writer: Writer, sheet: Sheet, row: Row) -> None:
         raise InputError(f"{described(sheet, row, found)} is there already", "correct it with `electrolog amend`")
 
 
-def refuse_lookalike(sheet: Sheet, row: Row, names: Names) -> None:
-    """Two labels that differ by case alone would be one probe to a tired eye."""
-    if len(sheet.key) != 1 or sheet.key[0] == "electrode":
+def refuse_lookalike(sheet: Sheet, row: Row, names: Names, itself: str | None = None) -> None:
+    """Two labels that differ by case alone would be one probe to a tired eye; `itself`: the row's label so far."""
+    if sheet is sheets.TERMS:
+        twin, what = names.find_word(row["kind"], row["term"]), "term"
+    elif sheet.labelled:
+        twin, what = names.spelled(sheet.name, str(row[sheet.key[0]])), sheet.key[0]
+    else:
         return
-    label = str(row[sheet.key[0]])
-    twin = names.spelled(sheet.name, label)
-    if twin is not None:
+    if twin is not None and twin != itself:
         raise InputError(
-            f"{sheet.key[0]}: '{shortened(label)}' differs from '{shortened(twin)}' by case alone;"
-            " accepted: a label that can't be mistaken for another"
+            f"{what}: '{shortened(row[what])}' can't be told from '{shortened(twin)}', which is there already;"
+            " accepted: a name that can't be mistaken for another"
         )
 
 
 def described(sheet: Sheet, row: Row, row_id: int) -> str:
-    label = row.get(sheet.key[0]) if len(sheet.key) == 1 else None
-    return f"{sheet.one} '{shortened(label)}'" if isinstance(label, str) else f"{sheet.one} {row_id}"
+    return f"{sheet.one} '{shortened(row[sheet.key[0]])}'" if sheet.labelled else f"{sheet.one} {row_id}"
 
 
 def _remember(sheet: Sheet, row: Row, row_id: int, names: Names) -> None:
     if sheet is sheets.TERMS:
         names.add_word(row["kind"], row["term"])
-    elif (len(sheet.key) == 1 and sheet.key[0] != "electrode") or sheet is sheets.ELECTRODES:
+    elif sheet.labelled:
         names.add(sheet.name, row[sheet.key[0]], row_id)
     if sheet is sheets.ANALYTES and row["abbreviation"]:
         names.add_abbreviation(row["abbreviation"], row_id)

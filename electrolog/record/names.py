@@ -7,7 +7,7 @@ from sqlalchemy import Connection, func, select
 from electrolog.errors import InputError, UnknownName, shortened, unknown
 from electrolog.record import schema
 from electrolog.record.builtin import WORDS
-from electrolog.record.sheets import BY_NAME, Sheet
+from electrolog.record.sheets import BY_NAME, TERMS, Sheet
 
 
 class Names:
@@ -47,13 +47,15 @@ class Names:
 
     def spelled(self, sheet: str, name: str) -> str | None:
         """How a live row of that name is spelled, if there is one that looks the same."""
-        if sheet in self._complete:
-            found = self._complete[sheet].get(name.casefold())
+        if (sheet, name) in self._known and sheet in self._complete:
+            return name
+        if sheet in self._complete or not name.isascii():  # the database's own lower() knows ASCII only
+            found = self.everything(sheet).get(name.casefold())
             return found[0] if found else None
         table, label = schema.tables[sheet], _label_column(BY_NAME[sheet])
         query = select(table.c[label]).where(func.lower(table.c[label]) == name.lower(), table.c.struck.is_(None))
-        spelling: str | None = self._connection.execute(query).scalars().first()
-        return spelling
+        spellings = list(self._connection.execute(query).scalars())
+        return name if name in spellings else next(iter(spellings), None)
 
     def everything(self, sheet: str) -> dict[str, tuple[str, int]]:
         """Every live name of a sheet, folded, with its spelling and row number."""
@@ -128,8 +130,10 @@ def find_row(connection: Connection, one: str, name: str) -> tuple[Sheet, int]:
     """
     sheet = sheet_called(one)
     table = schema.tables[sheet.name]
-    if len(sheet.key) == 1 and sheet.key[0] != "electrode":
+    if sheet.labelled:
         return sheet, Names(connection).row_id(sheet.name, name)
+    if sheet is TERMS:
+        return sheet, _term_id(connection, name)
     number = int(name) if name.isascii() and name.isdigit() else -1
     if connection.execute(select(table.c.id).where(table.c.id == number)).first() is None:
         raise UnknownName(
@@ -137,6 +141,20 @@ def find_row(connection: Connection, one: str, name: str) -> tuple[Sheet, int]:
             "`electrolog life PROBE` shows each event's number",
         )
     return sheet, number
+
+
+def _term_id(connection: Connection, name: str) -> int:
+    """A word of the lab's own: `brain phantom`, or `setting/brain phantom` where two lists hold it."""
+    terms = schema.tables["terms"]
+    query = select(terms.c.id, terms.c.kind, terms.c.term).where(terms.c.struck.is_(None))
+    own = connection.execute(query).all()
+    found = [row for row in own if name.casefold() in (row.term.casefold(), f"{row.kind}/{row.term}".casefold())]
+    if not found:
+        raise unknown("word of the lab's own", name, [row.term for row in own], "built-in words stay as they are")
+    if len(found) > 1:
+        said = ", ".join(f"'{row.kind}/{row.term}'" for row in found)
+        raise InputError(f"'{shortened(name)}' stands in {len(found)} lists; accepted: {said}")
+    return int(found[0].id)
 
 
 def sheet_called(one: str) -> Sheet:

@@ -50,6 +50,11 @@ class Sheet:
         return {column.name: column for column in self.columns}
 
     @cached_property
+    def labelled(self) -> bool:
+        """Whether a person names a row by its label; any other row goes by its number."""
+        return len(self.key) == 1 and not isinstance(self.by_name[self.key[0]], Link)
+
+    @cached_property
     def time_column(self) -> str | None:
         """Where the row stands in a probe's life; None for rows that are no event of a probe."""
         if "electrode" not in self.by_name or self.name == "electrodes":
