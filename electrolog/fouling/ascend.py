@@ -11,9 +11,9 @@ from numpy.typing import NDArray
 from electrolog.fouling.propagation import Outcome, Problem, State, settle, start
 
 Floats = NDArray[np.float64]
-ROUNDS = (8, 25, 25)  # steps before the coordinates are renewed
-FLAT = 0.15  # steepest slope left, per standard deviation: moves the peak by less than that part of one
-OUT_OF_REACH = 1e12
+MOST_STEPS, LOOK = 60, 8
+FLAT = 0.02  # gain of log posterior (twice) that a last step would still bring
+NOISE = 0.02  # in a log evidence whose stand-ins haven't quite settled
 STEP = 0.15  # of a standard deviation, for second derivatives by differences
 
 
@@ -52,56 +52,72 @@ def log_posterior(problem: Problem, theta: Floats, state: State, sweeps: int = 6
 
 
 def climb(problem: Problem, theta: Floats, hopeless_below: float = -np.inf) -> Peak:
-    """BFGS in coordinates in which the outer product of the units' scores (Berndt et al. 1974) is the identity.
+    """Quasi-Newton ascent (BFGS), started from the outer product of the units' scores (Berndt et al. 1974).
 
-    Gives up, unconverged, once a first round of steps leaves it below `hopeless_below`: a shape that far behind another
-    has no weight, however well its own peak is found.
+    The stand-ins are carried from step to step, so most steps need two sweeps. Gives up, unconverged, once its slope
+    promises to leave it below `hopeless_below`: a shape that far behind another has no weight, however well its peak is found.
     """
-    peak = first_look(problem, theta)
-    for most_steps in ROUNDS:
-        peak = best_nearby(problem, peak, most_steps)
-        if peak.converged or peak.log_posterior < hopeless_below:
-            break
-    return peak
-
-
-def first_look(problem: Problem, theta: Floats) -> Peak:
     state = start(problem, theta)
-    value, _, outcome = log_posterior(problem, theta, state, 15)
-    return Peak(theta, value, state, outcome, False, rough_covariance(problem, outcome))
+    value, slope, outcome = log_posterior(problem, theta, state, 15)
+    inverse = rough_covariance(problem, outcome)
+    best = Step(theta, value, slope, outcome, deepcopy(state))
+    shrink, converged = 1.0, False
+    for count in range(MOST_STEPS):
+        step = capped(inverse @ best.slope) * shrink
+        converged = bool(best.slope @ inverse @ best.slope < FLAT)
+        hopeless = best.value + 10.0 * float(best.slope @ step) < hopeless_below
+        if converged or (count >= LOOK and hopeless):
+            break
+        found = try_step(problem, best, step)
+        if found is None or found.value < best.value - NOISE:
+            best = try_step(problem, best, 0.0 * step, 12) or best
+        if found is None or found.value < best.value - NOISE:
+            shrink *= 0.35
+            if shrink < 1e-3:
+                break
+            continue
+        inverse = updated(inverse, found.theta - best.theta, best.slope - found.slope)
+        best, shrink = found, min(1.0, shrink * 2.0)
+    return Peak(best.theta, best.value, best.state, best.outcome, converged, rough_covariance(problem, best.outcome))
 
 
-def best_nearby(problem: Problem, peak: Peak, most_steps: int) -> Peak:
-    from scipy.optimize import minimize
+@dataclass(frozen=True)
+class Step:
+    theta: Floats
+    value: float
+    slope: Floats
+    outcome: Outcome
+    state: State
 
-    root = np.linalg.cholesky(peak.rough_covariance)
-    best, state = peak, deepcopy(peak.state)
 
-    def downhill(x: Floats) -> tuple[float, Floats]:
-        nonlocal best, state
-        theta = peak.theta + root @ x
-        try:
-            value, slope, outcome = log_posterior(problem, theta, state)
-        except np.linalg.LinAlgError:  # a step too far: the line search will come back
-            state = deepcopy(best.state)
-            return OUT_OF_REACH, np.zeros(len(x))
-        if value > best.log_posterior:
-            best = Peak(theta, value, deepcopy(state), outcome, False, peak.rough_covariance)
-        return -value, -(root.T @ slope)
-
-    minimize(downhill, np.zeros(len(root)), jac=True, method="BFGS", options={"maxiter": most_steps, "gtol": 0.05})
+def try_step(problem: Problem, best: Step, step: Floats, sweeps: int = 4) -> Step | None:
+    """None where a step went too far for the matrices to stay positive definite."""
     state = deepcopy(best.state)
-    value, slope, outcome = log_posterior(problem, best.theta, state)
-    rough = rough_covariance(problem, outcome)
-    steepest = float(np.max(np.abs(np.linalg.cholesky(rough).T @ slope)))
-    return Peak(best.theta, value, state, outcome, steepest < FLAT, rough)
+    try:
+        return Step(best.theta + step, *log_posterior(problem, best.theta + step, state, sweeps), state)
+    except np.linalg.LinAlgError:
+        return None
+
+
+def capped(step: Floats) -> Floats:
+    """Scales and odds are logarithms: nothing moves by more than two units at once."""
+    return step / max(1.0, 0.5 * float(np.max(np.abs(step))))
+
+
+def updated(inverse: Floats, moved: Floats, turned: Floats) -> Floats:
+    """The BFGS update of the inverse curvature, left out where the slope didn't turn the right way."""
+    product = float(moved @ turned)
+    if product <= 1e-3 * float(np.sqrt((moved @ moved) * (turned @ turned))):
+        return inverse
+    left = np.eye(len(moved)) - np.outer(moved, turned) / product
+    return np.asarray(left @ inverse @ left.T + np.outer(moved, moved) / product)
 
 
 def rough_covariance(problem: Problem, outcome: Outcome) -> Floats:
     sd = prior_of(problem)[1]
     scores = outcome.unit_scores - outcome.unit_scores.mean(axis=0)
     information = scores.T @ scores + np.diag(1.0 / sd**2)
-    information[2, 2] += 0.5 * np.sum(problem.effects.is_day)
+    information[2:5, 2:5] += outcome.day_information
     for g in range(len(problem.layout.group_sds)):
         slot = problem.layout.group_slots.start + g
         information[slot, slot] += 0.5 * np.sum(problem.effects.variance_slot == g)

@@ -18,7 +18,7 @@ from electrolog.fouling.events import READING, Events
 from electrolog.fouling.fit import CohortFit, Component
 from electrolog.fouling.parameters import Scales, prior_draws, read_scales
 from electrolog.fouling.points import even_points
-from electrolog.fouling.quadrature import SPACING, Grid, Setup, Tilted, refit_grid, starting_grid, standard_nodes, tilt
+from electrolog.fouling.quadrature import SPACING, STRETCH, Grid, Setup, Tilted, refit_grid, starting_grid, standard_nodes, tilt
 
 Floats = NDArray[np.float64]
 Integers = NDArray[np.int64]
@@ -312,7 +312,7 @@ def sample(
     cell = np.minimum((ranks[:, :, None] * steps[:, -1:, None] > steps[:, None, :]).sum(axis=2), n_nodes * n_fates - 1)
     node, fate = cell // n_fates, cell % n_fates
     pair = np.arange(n_pairs)[:, None]
-    within = standard_nodes(q)[node] + (points[:, :, 3:] - 0.5) * SPACING[q]
+    within = standard_nodes(q)[0][node] + (points[:, :, 3:] - 0.5) * cell_sides(q)[node]
     latents = grid.centre[:, None, :] + np.einsum("bij,bsj->bsi", grid.spread, within)
     z = ndtri(points[:, :, 1:3])
     shift = tilted.shift[pair, node, fate] + z[:, :, 0] / np.sqrt(tilted.stiffness[pair, fate])
@@ -327,3 +327,9 @@ def sample(
     drawn = mean[:, None] + by_node - by_fate * shift + np.sqrt(np.maximum(left, 0.0))[:, None] * z[:, :, 1]
     is_damage = fate > n
     return latents, drawn, np.where(is_damage, shift, 0.0), np.where(is_damage, fate - 1 - n, 0)
+
+
+def cell_sides(q: int) -> Floats:
+    """(G, q) widths of the cells around the standard nodes, to first order."""
+    nodes = standard_nodes(q)[0]
+    return np.asarray(SPACING[q] * np.sqrt(1.0 + (STRETCH * nodes) ** 2))

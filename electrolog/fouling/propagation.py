@@ -53,6 +53,7 @@ class Outcome:
     score: Floats  # (P,)
     unit_scores: Floats  # (units, P)
     bad_day: Floats
+    day_information: Floats  # (3, 3) outer product of the days' scores in theta[2:5]
     tilted: list[Tilted]
 
 
@@ -73,7 +74,7 @@ def start(problem: Problem, theta: Floats) -> State:
     return State(sites, Site(precision, np.zeros(n_days)), None, empty, np.zeros((len(empty), len(empty))))
 
 
-def settle(problem: Problem, theta: Floats, state: State, sweeps: int = 8, tolerance: float = 1e-3) -> Outcome:
+def settle(problem: Problem, theta: Floats, state: State, sweeps: int = 8, tolerance: float = 0.01) -> Outcome:
     """Sweep until the log evidence stands still; changes `state`."""
     before = -np.inf
     scales = read_scales(problem.layout, theta)
@@ -106,8 +107,8 @@ def sweep(problem: Problem, scales: Scales, clock: Clock, state: State) -> Outco
     by_days, day_scores, bad = sweep_days(problem.effects, scales, state)
     unit_scores = np.concatenate(all_scores) if all_scores else np.zeros((0, len(score)))
     score += unit_scores.sum(axis=0) + group_scores(problem, scales, state)
-    score[2:5] += day_scores
-    return Outcome(log_evidence + by_days, score, unit_scores, bad, all_tilted)
+    score[2:5] += day_scores.sum(axis=0)
+    return Outcome(log_evidence + by_days, score, unit_scores, bad, day_scores.T @ day_scores, all_tilted)
 
 
 def combine(problem: Problem, scales: Scales, state: State) -> float:
@@ -179,10 +180,11 @@ def sweep_days(effects: Effects, scales: Scales, state: State) -> tuple[float, F
     one = Site(site.precision[:, None, None], site.shift[:, None])
     overlap = log_overlap(one, cavity_mean[:, None], cavity[:, None, None])
     curvature = np.clip(found.curvature, 1e-9, 0.999 / cavity)
-    precision = curvature / (1.0 - curvature * cavity)
-    shift = found.gradient / (1.0 - curvature * cavity) + precision * cavity_mean
+    # A day between good and bad looks wider than either; without a floor its stand-in would say nothing at all.
+    precision = np.maximum(curvature / (1.0 - curvature * cavity), 0.25 / scales.bad_day_sd**2)
+    shift = found.gradient + precision * (cavity_mean + cavity * found.gradient)
     state.day_site = Site(precision, shift)
-    return float(np.sum(found.log_evidence - overlap)), found.score.sum(axis=0), found.bad
+    return float(np.sum(found.log_evidence - overlap)), found.score, found.bad
 
 
 def group_scores(problem: Problem, scales: Scales, state: State) -> Floats:

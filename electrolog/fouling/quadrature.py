@@ -4,6 +4,7 @@ A unit's residual vector stacks its latents less their means and its readings le
 latents it is Gaussian with one covariance J, so the level, the shared effects and every reading's error are integrated
 exactly; the latents (log rate, log exponent) by the trapezoid rule on a grid laid on the unit's own posterior: for a
 smooth density that converges faster than any power of the spacing (Trefethen & Weideman 2014, doi:10.1137/130932132).
+Nodes are dense on the main peak and reach far beyond it (a sinh map), for a peak may stand on a broad foot.
 
 At most one thing goes wrong with a unit: nothing; a slip at one reading; sudden damage that stays, before one reading
 but the first. A slip or a damage adds a Gaussian shift along one vector u, so J changes by rank one.
@@ -22,7 +23,9 @@ from electrolog.fouling.shapes.shape import Loss, Shape
 Floats = NDArray[np.float64]
 SLIP_SD = 2.0  # a slip of the decimal point moves log sensitivity by 2.3
 DAMAGE_MEAN, DAMAGE_SD = -0.9, 0.6  # half of the sensitivity or more is gone at once
-NODES, SPACING = {0: 1, 1: 17, 2: 11}, {0: 1.0, 1: 0.55, 2: 0.8}
+SPACING = {0: 1.0, 1: 0.6, 2: 0.9}  # of the nodes, in standard deviations, by the number of latents
+REACH = 4.3  # of the grid before it is stretched, in standard deviations
+STRETCH = 0.45
 
 
 @dataclass(frozen=True)
@@ -77,20 +80,25 @@ class Tilted:
     stiffness: Floats  # (B, O) u' inverse(J) u + 1 / variance
 
 
-def standard_nodes(n_latents: int) -> Floats:
-    """(G, q) nodes of the tensor trapezoid rule, in standard deviations."""
-    half = NODES[n_latents] // 2
+def standard_nodes(n_latents: int) -> tuple[Floats, Floats]:
+    """(G, q) nodes in standard deviations, and the log volume (G,) of each one's cell."""
+    if n_latents == 0:
+        return np.zeros((1, 0)), np.zeros(1)
+    half = int(REACH / SPACING[n_latents])
     line = np.arange(-half, half + 1) * SPACING[n_latents]
-    return (
-        np.stack(np.meshgrid(*[line] * n_latents, indexing="ij"), axis=-1).reshape(-1, n_latents)
-        if n_latents
-        else np.zeros((1, 0))
-    )
+    even = np.stack(np.meshgrid(*[line] * n_latents, indexing="ij"), axis=-1).reshape(-1, n_latents)
+    even = even[np.linalg.norm(even, axis=1) <= REACH]
+    volume = np.log(np.cosh(STRETCH * even)).sum(axis=1) + n_latents * np.log(SPACING[n_latents])
+    return stretched(even), volume
+
+
+def stretched(even: Floats) -> Floats:
+    return np.sinh(STRETCH * even) / STRETCH
 
 
 def tilt(shape: Shape, setup: Setup, grid: Grid) -> Tilted:
     q = grid.centre.shape[1]
-    steps = standard_nodes(q)
+    steps, volume = standard_nodes(q)
     nodes = grid.centre[:, None, :] + np.einsum("bij,gj->bgi", grid.spread, steps)
     loss = shape.loss(setup.hours[:, None, :], nodes[:, :, None, :], setup.shape_parameters[:, None, None, :])
     residual = residuals(setup, nodes, loss)
@@ -104,8 +112,8 @@ def tilt(shape: Shape, setup: Setup, grid: Grid) -> Tilted:
     gain = 0.5 * (push * shift - fates.mean**2 / fates.variance - np.log(fates.variance * stiffness)[:, None, :])
     gain[..., 0] = shift[..., 0] = 0.0
     base = -0.5 * ((pulled * residual).sum(-1) + log_det[:, None] + count_terms(setup) * np.log(2.0 * np.pi))
-    cell = np.log(np.abs(np.linalg.det(grid.spread))) + q * np.log(SPACING[q])
-    log_weight = base[..., None] + gain + fates.log_prior[:, None, :] + cell[:, None, None]
+    cell = np.log(np.abs(np.linalg.det(grid.spread)))[:, None] + volume
+    log_weight = base[..., None] + gain + fates.log_prior[:, None, :] + cell[:, :, None]
     top = log_weight.max(axis=(1, 2), keepdims=True)
     weight = np.exp(log_weight - top)
     total = weight.sum(axis=(1, 2), keepdims=True)
@@ -171,20 +179,29 @@ def starting_grid(setup: Setup, widening: float = 1.0) -> Grid:
 
 
 def refit_grid(tilted: Tilted, grid: Grid) -> Grid:
-    """The grid moved onto the posterior it found; never shrunk to less than half at once, or a peak would be missed."""
+    """The grid moved onto the main peak it found; never shrunk to less than about half at once, or it would be missed.
+
+    The peak's mean and covariance are those of the squared density, the covariance doubled: right for a Gaussian, and
+    hardly moved by a broad foot.
+    """
     q = grid.centre.shape[1]
     if q == 0:
         return grid
-    mean, spread = moments(tilted)
-    spacing = np.linalg.norm(grid.spread, axis=2) * SPACING[q]
-    floor = (0.6 * spacing) ** 2
-    spread[:, np.arange(q), np.arange(q)] += np.where(np.diagonal(spread, axis1=1, axis2=2) < floor, floor, 0.0)
-    return Grid(mean, np.linalg.cholesky(spread))
-
-
-def moments(tilted: Tilted) -> tuple[Floats, Floats]:
-    """Mean (B, q) and covariance (B, q, q) of the latents."""
     weight = tilted.probability.sum(axis=2)
-    mean = np.einsum("bg,bgi->bi", weight, tilted.nodes)
-    off = tilted.nodes - mean[:, None, :]
+    squared = weight**2 * np.exp(-standard_nodes(q)[1])
+    mean, spread = moments(squared / squared.sum(axis=1, keepdims=True), tilted.nodes)
+    floor = (0.5 * np.linalg.norm(grid.spread, axis=2) * SPACING[q]) ** 2
+    own = np.diagonal(spread, axis1=1, axis2=2)
+    spread[:, np.arange(q), np.arange(q)] += np.where(own < floor, floor, own)
+    return Grid(mean, np.linalg.cholesky(spread + off_diagonal(spread)))
+
+
+def off_diagonal(matrices: Floats) -> Floats:
+    return matrices * (1.0 - np.eye(matrices.shape[1]))
+
+
+def moments(weight: Floats, nodes: Floats) -> tuple[Floats, Floats]:
+    """Mean (B, q) and covariance (B, q, q) of nodes (B, G, q) by weight (B, G)."""
+    mean = np.einsum("bg,bgi->bi", weight, nodes)
+    off = nodes - mean[:, None, :]
     return mean, (weight[..., None] * off).transpose(0, 2, 1) @ off
