@@ -41,7 +41,8 @@ STEPS = [
         "check B08-02 --analyte dopamine --waveform triangle --setting in-vivo --run 2h",
         UNDETERMINED,
     ),
-    Step("The lab's limits: what it asks of a probe, in the lab's own numbers.", "limits"),
+    Step("So the lab says what it asks of a probe, in its own numbers.", "limits set least-share-left 60%"),
+    Step("What is set by now, and what isn't.", "limits"),
     Step("Has anybody changed the record behind its back? The journal is replayed against the tables.", "verify"),
     Step("The whole record goes out again as plain files that any other program reads.", "export demo/exported"),
 ]
