@@ -13,8 +13,9 @@ from electrolog.fouling.clock import log_area_changes
 from electrolog.fouling.effects import lay_out_effects, layout_for
 from electrolog.fouling.events import READING, Events
 from electrolog.fouling.fit import METHOD, CohortFit, Component, KeptUnits
+from electrolog.fouling.parameters import read_scales
 from electrolog.fouling.points import normal_points
-from electrolog.fouling.propagation import Problem
+from electrolog.fouling.propagation import Problem, combine
 from electrolog.fouling.shapes import ALL_SHAPES, SHAPES
 
 Floats = NDArray[np.float64]
@@ -87,6 +88,9 @@ def pose(events: Events, shape_name: str) -> Problem:
 
 
 def keep(problem: Problem, peak: Peak, width: Width, weight: float) -> Component:
+    # The last sweep has renewed the stand-ins: the shared effects have to be those of the stand-ins that are kept,
+    # or a unit taken out again would leave a negative precision behind.
+    combine(problem, read_scales(problem.layout, peak.theta), peak.state)
     count = max(1, round(DRAWS * weight))
     theta = peak.theta + normal_points(count, len(peak.theta)) @ np.linalg.cholesky(width.covariance).T
     mean = peak.state.mean[:-1]
