@@ -9,6 +9,7 @@ from electrolog.answers import cohorts
 from electrolog.answers import figures as made
 from electrolog.answers.cohorts import Cohort
 from electrolog.fouling.cohort import METHOD, CohortFit, fit_cohort
+from electrolog.fouling.kept import from_dict, to_dict
 from electrolog.fouling.parameters import read_scales
 from electrolog.record import queries
 from electrolog.record.names import Names
@@ -56,7 +57,7 @@ def fit_for(record: Record, asked: Assay, fresh: bool = False) -> CohortFit:
         kept = None if fresh else queries.kept_fit(connection, asked.analyte_id)
         seen = queries.to_be_seen(connection, asked.analyte_id)
     if kept is not None and kept.method == METHOD and not _changed(kept.seen, seen):
-        return CohortFit.from_dict(kept.fit)
+        return from_dict(kept.fit)
     fit = fit_cohort(gathered(record, asked).events)
     keep(record, asked.analyte_id, fit, seen)
     return fit
@@ -64,7 +65,7 @@ def fit_for(record: Record, asked: Assay, fresh: bool = False) -> CohortFit:
 
 def keep(record: Record, analyte_id: int, fit: CohortFit, seen: queries.Seen) -> None:
     with record.writing() as writer:
-        queries.keep_fit(writer, analyte_id, fit.method, fit.fingerprint, seen, fit.to_dict())
+        queries.keep_fit(writer, analyte_id, fit.method, fit.fingerprint, seen, to_dict(fit))
 
 
 def reading_sd_log(fit: CohortFit) -> float:

@@ -14,7 +14,6 @@ from sqlalchemy import (
     REAL,
     TIMESTAMP,
     Dialect,
-    Index,
     Integer,
     MetaData,
     Table,
@@ -119,15 +118,8 @@ journal = Table(
 
 # What can change a fit that was made before: found without reading the whole journal.
 CORRECTIONS = text("action <> 'add' AND sheet <> 'limits'")
-Index("ix_journal_corrections", journal.c.seq, sqlite_where=CORRECTIONS, postgresql_where=CORRECTIONS)
 
 tables: dict[str, Table] = {sheet.name: _table(sheet) for sheet in SHEETS}
-Index(
-    "ix_calibrations_analyte_waveform",
-    tables["calibrations"].c.analyte_id,
-    tables["calibrations"].c.waveform_id,
-)
-
 # Derived figures: made by a method of a stated version from what the tables above hold, and made again at will,
 # so they are not journalled.
 calibration_figures = Table(
