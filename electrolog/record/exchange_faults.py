@@ -9,7 +9,7 @@ from electrolog.errors import FaultyRows, shortened, unknown
 from electrolog.record.sheets import SHEETS
 
 FILES = tuple(f"{sheet.name}.csv" for sheet in SHEETS if sheet.exchanged)
-COMPARISONS = 300_000  # names looked at for a nearest one, in all; beyond it a wrong file would take minutes to refuse
+COMPARISONS = 100_000  # names looked at for a nearest one, in all; beyond it a wrong file would take minutes to refuse
 
 
 @dataclass

@@ -118,11 +118,13 @@ class SheetMerge:
         first = self.seen.setdefault(key, index)
         if first == index:
             return False
-        there = self._shown(values, self.sheet.key)
-        line = self.rows.lines[first]
-        self._fault(
-            index, f"{', '.join(self.sheet.key)}: {there} stands on line {line} already; accepted: one row for each"
-        )
+        there, line = self._shown(values, self.sheet.key), self.rows.lines[first]
+        before = self.rows.cells[0][first]
+        if is_labelled(self.sheet) and before != values[0]:
+            said = f"{there} differs from '{shortened(before)}' on line {line} by case alone; accepted: one of them"
+        else:
+            said = f"{there} stands on line {line} already; accepted: one row for each"
+        self._fault(index, f"{', '.join(self.sheet.key)}: {said}")
         return True
 
     def _repeats_built_in(self, values: Values) -> bool:

@@ -65,14 +65,14 @@ def _rows(connection: Connection, sheet: Sheet, labels: Labels) -> list[Any]:
         rows = [row for row in connection.execute(query) if row[0] in names]
         rows.sort(key=lambda row: names[row[0]])  # a stable sort keeps the order of the points
         return rows
-    found = connection.execute(select(table.c.id, *columns).where(table.c.struck.is_(None))).all()
+    found: Sequence[Any] = connection.execute(select(table.c.id, *columns).where(table.c.struck.is_(None))).all()
     if len(sheet.key) == 1 or sheet is sheets.ELECTRODES:
         place = 1 + list(sheet.by_name).index(sheet.key[0])
         labels[sheet.name] = {row[0]: row[place] for row in found}
-    rows = [tuple(row[1:]) for row in found]
-    if sheet is sheets.TERMS:
-        rows = [row for row in rows if row[1].casefold() not in map(str.casefold, WORDS[row[0]])]
-    return sorted(rows, key=_order(sheet, labels))
+    live = [tuple(row[1:]) for row in found]
+    if sheet is sheets.TERMS:  # the lab's own: a built-in word needs no row
+        live = [row for row in live if row[1].casefold() not in map(str.casefold, WORDS[row[0]])]
+    return sorted(live, key=_order(sheet, labels))
 
 
 def _order(sheet: Sheet, labels: Labels) -> Callable[[Sequence[Any]], Any]:
