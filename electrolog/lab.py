@@ -246,7 +246,7 @@ def set_up(where: str | None = None) -> SetUp:
     """Makes the record, or brings an older one up to date after a copy; one that is up to date is left alone."""
     from electrolog.record.migrate import set_up as bring_up
 
-    record, what, revision, copy = bring_up(where or default_location())
+    record, what, revision, copy = bring_up(default_location() if where is None else where)
     return SetUp(record.name, what, revision, None if copy is None else str(copy))
 
 
@@ -257,4 +257,4 @@ def open_lab(
 
     Raises RecordError when there is none, unless `create`.
     """
-    return Lab(open_record(where or default_location(), who, create), zone)
+    return Lab(open_record(default_location() if where is None else where, who, create), zone)

@@ -88,21 +88,11 @@ def run() -> None:
 
 def main(arguments: list[str]) -> int:
     """Runs one command line and returns its exit status."""
-    as_json = "--json" in arguments
     try:
+        _refuse_undecodable(arguments)
         answer = app(arguments, prog_name="electrolog", standalone_mode=False)
         sys.stdout.flush()
         return answer if isinstance(answer, int) else 0
-    except ElectrologError as error:
-        _report(error, as_json)
-        return error.exit_code
-    except TyperException as error:
-        if type(error).__name__ == "NoArgsIsHelpError":
-            print(error.format_message())  # noqa: T201
-            return 2
-        hint = "electrolog COMMAND --help shows what it takes"
-        _report(InputError(one_line(error.format_message()).rstrip("."), hint), as_json)
-        return 2
     except (typer.Abort, KeyboardInterrupt):
         print("electrolog: stopped; nothing was written", file=sys.stderr)  # noqa: T201
         return 130
@@ -110,15 +100,34 @@ def main(arguments: list[str]) -> int:
         # The reader has gone (`| head`); without this the interpreter complains once more at its end.
         os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
         return 0
-    except OSError as error:
-        _report(ElectrologError(f"{error.filename or 'system'}: {error.strerror or error}"), as_json)
-        return 1
     except Exception as error:
-        if os.environ.get("ELECTROLOG_DEBUG"):
-            raise
-        said = f"an error in electrolog itself ({type(error).__name__}: {one_line(error)[:200]})"
-        _report(ElectrologError(said, "please report it; ELECTROLOG_DEBUG=1 shows where"), as_json)
-        return 1
+        if type(error).__name__ == "NoArgsIsHelpError":
+            print(error.format_message())  # type: ignore[attr-defined]  # noqa: T201
+            return 2
+        refusal = _as_refusal(error)
+        _report(refusal, "--json" in arguments)
+        return refusal.exit_code
+
+
+def _refuse_undecodable(arguments: list[str]) -> None:
+    try:
+        "".join(arguments).encode()
+    except UnicodeEncodeError:
+        raise InputError("the command line holds bytes that are not UTF-8; accepted: text in UTF-8") from None
+
+
+def _as_refusal(error: Exception) -> ElectrologError:
+    if isinstance(error, ElectrologError):
+        return error
+    if isinstance(error, TyperException):
+        hint = "electrolog COMMAND --help shows what it takes"
+        return InputError(one_line(error.format_message()).rstrip("."), hint)
+    if isinstance(error, OSError):
+        return ElectrologError(f"{error.filename or 'system'}: {error.strerror or error}")
+    if os.environ.get("ELECTROLOG_DEBUG"):
+        raise error
+    said = f"an error in electrolog itself ({type(error).__name__}: {one_line(error)[:200]})"
+    return ElectrologError(said, "please report it; ELECTROLOG_DEBUG=1 shows where")
 
 
 def _report(error: ElectrologError, as_json: bool) -> None:

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import csv
-from collections.abc import Iterable
+from collections.abc import Iterable, Iterator
 from pathlib import Path
 
 from electrolog.errors import FaultyRows, InputError, shortened
@@ -23,33 +23,48 @@ def parsed(pairs: Iterable[str]) -> list[Point]:
                 f"point: '{shortened(pair)}' is no pair; accepted: concentration:current with replicates after"
                 " commas, such as 0.5uM:5.1,5.3"
             )
-        at_um = parse_quantity(concentration, CONCENTRATION_UM, "concentration")
-        if at_um < 0:
-            raise InputError(f"concentration: '{shortened(pair)}' lies below zero; accepted: zero or more")
-        points += [(at_um, parse_quantity(text, CURRENT_NA, "current")) for text in currents.split(",")]
+        points += [_point(concentration, current) for current in currents.split(",")]
     return points
+
+
+def _point(concentration: str, current: str) -> Point:
+    at_um = parse_quantity(concentration, CONCENTRATION_UM, "concentration")
+    if at_um < 0:
+        raise InputError(f"concentration: '{shortened(concentration)}' lies below zero; accepted: zero or more")
+    return at_um, parse_quantity(current, CURRENT_NA, "current")
 
 
 def from_file(path: Path) -> dict[str, list[Point]]:
     """Points by probe, from the columns concentration_um, current_na and (for several probes) electrode."""
     by_probe: dict[str, list[Point]] = {}
     faults: list[str] = []
-    with path.open(encoding="utf-8-sig", newline="") as file:
-        reader = csv.DictReader(file)
-        missing = [name for name in _COLUMNS if name not in (reader.fieldnames or ())]
-        if missing:
-            raise InputError(
-                f"{path.name}: has no column {' or '.join(missing)};"
-                " accepted: concentration_um, current_na and, for several probes, electrode"
-            )
-        for row in reader:
-            try:
-                points = parsed([f"{row['concentration_um']}:{row['current_na']}"])
-                by_probe.setdefault(row.get("electrode") or "", []).extend(points)
-            except InputError as fault:
-                faults.append(f"{path.name} line {reader.line_num}: {fault.message}")
+    for line, row in _rows(path):
+        try:
+            if None in row or None in row.values():
+                raise InputError(f"has not one cell for each of the {len([key for key in row if key])} columns")
+            by_probe.setdefault(row.get("electrode") or "", []).append(_point(row[_COLUMNS[0]], row[_COLUMNS[1]]))
+        except InputError as fault:
+            faults.append(f"{path.name} line {line}: {fault.message}")
     if faults:
         raise FaultyRows(f"{path.name}: {len(faults)} rows can't be taken; nothing was written", faults)
     if not by_probe:
         raise InputError(f"{path.name}: holds no points; accepted: a row per point")
     return by_probe
+
+
+def _rows(path: Path) -> Iterator[tuple[int, dict[str, str]]]:
+    with path.open(encoding="utf-8-sig", newline="") as file:
+        reader = csv.DictReader(file, strict=True)
+        try:
+            missing = [name for name in _COLUMNS if name not in (reader.fieldnames or ())]
+            if missing:
+                raise InputError(
+                    f"{path.name}: has no column {' or '.join(missing)};"
+                    " accepted: concentration_um, current_na and, for several probes, electrode"
+                )
+            for row in reader:
+                yield reader.line_num, row
+        except UnicodeDecodeError:
+            raise InputError(f"{path.name}: is not text in UTF-8; accepted: CSV in UTF-8") from None
+        except csv.Error as why:
+            raise InputError(f"{path.name} line {reader.line_num}: can't be read ({why}); accepted: CSV") from None

@@ -81,6 +81,8 @@ def to_revision(record: Record, revision: str) -> None:
             "SELECT version_num FROM alembic_version" if _has_version(connection) else "SELECT NULL"
         ).scalar()
         known = [step.revision for step in reversed(list(script.walk_revisions()))]
+        if now is not None and now not in known:
+            raise RecordError(f"{record.name} is of revision '{now}', which this electrolog has never had")
         order = ["base", *known]
         if order.index(revision) >= order.index(now or "base"):
             command.upgrade(config, revision)

@@ -12,15 +12,24 @@ from typing import Any
 
 from sqlalchemy import Connection, Engine, create_engine, event, select, text
 from sqlalchemy.engine import URL, make_url
-from sqlalchemy.exc import ArgumentError, DBAPIError, NoSuchModuleError, OperationalError
+from sqlalchemy.exc import ArgumentError, DBAPIError
 from sqlalchemy.pool import NullPool
 
 from electrolog.errors import InputError, RecordError, shortened
 from electrolog.record import journal, schema
+from electrolog.record.columns import checked_text
 
 __all__ = ["Connection", "Record", "open_record"]
 
 BUSY_TIMEOUT_MS = 30_000
+LONGEST_NAME = 4096
+_DRIVERS = {
+    "sqlite": "sqlite",
+    "sqlite+pysqlite": "sqlite",
+    "postgresql": "postgresql+psycopg",
+    "postgresql+psycopg": "postgresql+psycopg",
+}
+_SECRETS = ("password", "passfile", "sslpassword")  # what a URL may hold beside the password in its usual place
 LEAST_SQLITE = (3, 37, 0)  # STRICT tables
 
 
@@ -34,7 +43,8 @@ class Record:
     @property
     def name(self) -> str:
         """What to call the database in a message: never with a password in it."""
-        return self.engine.url.database or "" if self.is_file else self.engine.url.render_as_string(True)
+        url = self.engine.url.difference_update_query(_SECRETS)
+        return url.database or "" if self.is_file else url.render_as_string(True)
 
     @property
     def is_file(self) -> bool:
@@ -98,27 +108,35 @@ def current_user() -> str:
 
 
 def database_url(where: str) -> URL:
-    if "://" not in where:
-        if not where.strip():
-            raise InputError("the database's name is empty; accepted: a file's path or an SQLAlchemy URL")
-        return URL.create("sqlite", database=str(Path(where).expanduser()))
-    try:
-        url = make_url(where)
-    except ArgumentError:
-        raise InputError("the database's URL can't be read; accepted: such as postgresql+psycopg://host/name") from None
-    if url.get_backend_name() not in ("sqlite", "postgresql"):
+    if not where.strip():
+        raise InputError("the database's name is empty; accepted: a file's path or an SQLAlchemy URL")
+    checked_text(where, "the database's name", LONGEST_NAME)
+    url = _url(where) if "://" in where else URL.create("sqlite", database=str(Path(where).expanduser()))
+    if url.drivername not in _DRIVERS:
         raise InputError(
             f"a '{shortened(url.drivername, 30)}' database can't hold the record; accepted: sqlite, postgresql+psycopg"
         )
-    if url.get_backend_name() == "sqlite" and not url.database:
+    url = url.set(drivername=_DRIVERS[url.drivername])
+    if url.drivername != "sqlite":
+        return url
+    if url.database in (None, "", ":memory:"):
         raise InputError("a database in memory would be lost at once; accepted: a file's path")
+    if url.query or url.host:
+        raise InputError("an SQLite URL takes a file's path and nothing else; accepted: such as sqlite:///lab.db")
     return url
+
+
+def _url(where: str) -> URL:
+    try:
+        return make_url(where)
+    except (ArgumentError, ValueError):  # ValueError: a port that is no number
+        raise InputError("the database's URL can't be read; accepted: such as postgresql+psycopg://host/name") from None
 
 
 def _engine(url: URL) -> Engine:
     try:
         engine = create_engine(url, poolclass=NullPool)
-    except (NoSuchModuleError, ModuleNotFoundError) as missing:
+    except ModuleNotFoundError as missing:
         raise RecordError(
             f"the driver for {url.drivername} is not installed ({missing})",
             'install it with: python -m pip install "electrolog[postgresql]"',
@@ -184,21 +202,22 @@ def refuse_newer(record: Record, found: str) -> None:
 
 
 def revision_of(record: Record) -> str | None:
-    """The newest migration the database has seen; None for an empty one."""
+    """The newest migration the database has seen; None for an empty one. Raises RecordError for one that isn't ours."""
     version = schema.alembic_version
     with _translated(record.name), record.engine.connect() as connection:
-        if not record.engine.dialect.has_table(connection, version.name):
-            _refuse_foreign(record, connection)
-            return None
-        return connection.execute(select(version.c.version_num)).scalar_one_or_none()
+        tables = set(record.engine.dialect.get_table_names(connection))
+        found = connection.execute(select(version.c.version_num)).scalar() if version.name in tables else None
+        if schema.journal.name in tables and found is not None:
+            return str(found)
+        _refuse_foreign(record, tables if found else tables - {version.name})
+        return None
 
 
-def _refuse_foreign(record: Record, connection: Connection) -> None:
+def _refuse_foreign(record: Record, tables: set[str]) -> None:
     """A database that holds something else is nobody's empty place to build in."""
-    others = record.engine.dialect.get_table_names(connection)
-    if others:
+    if tables:
         raise RecordError(
-            f"{record.name} is a database of something else (it holds the table '{shortened(others[0])}')",
+            f"{record.name} is a database of something else (it holds the table '{shortened(min(tables))}')",
             "name another place with --db",
         )
 
@@ -208,19 +227,19 @@ def _translated(name: str) -> Iterator[None]:
     """The driver's words into ours; the database's own name is all that is said of where."""
     try:
         yield
-    except OperationalError as error:
-        raise RecordError(*_operational(str(error.orig), name)) from None
     except DBAPIError as error:
-        raise RecordError(f"{name}: the database refused: {shortened(str(error.orig), 300)}") from None
+        raise RecordError(*_reworded(str(error.orig), name)) from None
 
 
-def _operational(said: str, name: str) -> tuple[str, str]:
+def _reworded(said: str, name: str) -> tuple[str, str]:
     known = {
         "unable to open": (f"{name} can't be opened", "look whether the folder is there and may be written"),
         "readonly": (f"{name} may not be written", "ask who owns the file, or name another with --db"),
         "locked": (f"{name} is in use by another program for over 30 s", "try again when it has finished"),
         "full": (f"no room left on the disk of {name}", "make room; nothing was written"),
         "disk I/O error": (f"the disk of {name} can't be read or written", "copy what can be saved, then check it"),
+        "not a database": (f"{name} is not a database", "look whether it is the file you mean"),
+        "malformed": (f"{name} is damaged", "take the newest whole copy; `sqlite3 FILE .recover` saves what is left"),
         "append-only": (f"{name}: the journal is append-only", ""),
     }
     for words, answer in known.items():
