@@ -66,10 +66,11 @@ def parse_iso(text: str, zone: tzinfo | None = None, what: str = "at") -> dateti
     return _to_utc(moment, zone, text, what)
 
 
-def parse_day(text: str, what: str = "date") -> date:
+def parse_day(text: str, zone: tzinfo | None = None, what: str = "date") -> date:
+    """A calendar date; `today` is the one of the zone (None: the machine's). Raises InputError."""
     stripped = text.strip()
     if stripped.casefold() in _DAY_WORDS:
-        return utc_now().astimezone().date() + timedelta(days=_DAY_WORDS[stripped.casefold()])
+        return utc_now().astimezone(zone).date() + timedelta(days=_DAY_WORDS[stripped.casefold()])
     try:
         day = date.fromisoformat(stripped)
     except ValueError:

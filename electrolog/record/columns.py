@@ -142,7 +142,7 @@ class Moment(Column):
 @dataclass(frozen=True)
 class Day(Column):
     def read(self, text: str, zone: tzinfo | None = None) -> Value:
-        return parse_day(text, self.name)
+        return parse_day(text, zone, self.name)
 
     def write(self, value: Value) -> str:
         return value.isoformat() if isinstance(value, date) else ""
