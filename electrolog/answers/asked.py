@@ -25,7 +25,7 @@ from electrolog.record.readable import Row
 from electrolog.record.store import Record
 
 if TYPE_CHECKING:
-    from electrolog.fouling.cohort import CohortFit
+    from electrolog.fouling.fit import CohortFit
     from electrolog.fouling.forecast import Posterior
 
 Floats = NDArray[np.float64]

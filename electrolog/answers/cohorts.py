@@ -59,7 +59,7 @@ class _Index:
     """Names in the order of their first appearance."""
 
     def __init__(self, first: Iterable[str] = ()) -> None:
-        self.places = {name: place for place, name in enumerate(first)}
+        self.places = {name: place for place, name in enumerate(dict.fromkeys(first))}
 
     def place(self, name: str) -> int:
         return self.places.setdefault(name, len(self.places))

@@ -8,7 +8,8 @@ from dataclasses import dataclass
 from electrolog.answers import cohorts
 from electrolog.answers import figures as made
 from electrolog.answers.cohorts import Cohort
-from electrolog.fouling.cohort import METHOD, CohortFit, fit_cohort
+from electrolog.fouling.cohort import fit_cohort
+from electrolog.fouling.fit import METHOD, CohortFit
 from electrolog.fouling.kept import from_dict, to_dict
 from electrolog.fouling.parameters import read_scales
 from electrolog.record import queries

@@ -54,7 +54,6 @@ def _unwrapped(text: str | None) -> str:
 app = typer.Typer(
     cls=LazyCommands,
     add_completion=False,
-    no_args_is_help=True,
     rich_markup_mode=None,
     pretty_exceptions_enable=False,
     context_settings={"help_option_names": ["-h", "--help"]},
@@ -90,7 +89,7 @@ def main(arguments: list[str]) -> int:
     """Runs one command line and returns its exit status."""
     try:
         _refuse_undecodable(arguments)
-        answer = app(arguments, prog_name="electrolog", standalone_mode=False)
+        answer = app(arguments or ["--help"], prog_name="electrolog", standalone_mode=False)
         sys.stdout.flush()
         return answer if isinstance(answer, int) else 0
     except (typer.Abort, KeyboardInterrupt):
@@ -101,9 +100,6 @@ def main(arguments: list[str]) -> int:
         os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
         return 0
     except Exception as error:
-        if type(error).__name__ == "NoArgsIsHelpError":
-            print(error.format_message())  # type: ignore[attr-defined]  # noqa: T201
-            return 2
         refusal = _as_refusal(error)
         _report(refusal, "--json" in arguments)
         return refusal.exit_code

@@ -4,13 +4,9 @@ dictionary are all made from here. The names are a contract with other programs;
 
 from __future__ import annotations
 
-from dataclasses import dataclass
-from functools import cached_property
-
 from electrolog import units
 from electrolog.record.columns import (
     Choice,
-    Column,
     Day,
     Label,
     Link,
@@ -20,6 +16,9 @@ from electrolog.record.columns import (
     Vertices,
     Word,
 )
+from electrolog.record.sheet import AT, BY, NOTE, PROBE, Sheet, current, length, minutes, potential
+
+__all__ = ["BY_NAME", "EVENTS", "SHEETS", "WORD_KINDS", "Sheet"]
 
 WORD_KINDS = (
     "fibre",
@@ -32,58 +31,6 @@ WORD_KINDS = (
     "cleaning method",
     "retirement reason",
 )
-
-
-@dataclass(frozen=True)
-class Sheet:
-    """One kind of row: `key` names the columns that tell one live row from another."""
-
-    name: str
-    one: str
-    about: str
-    columns: tuple[Column, ...]
-    key: tuple[str, ...]
-    exchanged: bool = True
-
-    @cached_property
-    def by_name(self) -> dict[str, Column]:
-        return {column.name: column for column in self.columns}
-
-    @cached_property
-    def labelled(self) -> bool:
-        """Whether a person names a row by its label; any other row goes by its number."""
-        return len(self.key) == 1 and not isinstance(self.by_name[self.key[0]], Link)
-
-    @cached_property
-    def time_column(self) -> str | None:
-        """Where the row stands in a probe's life; None for rows that are no event of a probe."""
-        if "electrode" not in self.by_name or self.name == "electrodes":
-            return None
-        return "start" if "start" in self.by_name else "at"
-
-
-NOTE = Text("note", "anything else worth keeping")
-BY = Text("by", "who did it")
-AT = Moment("at", "when, ISO 8601 with an offset", required=True)
-PROBE = Link("electrode", "label of the probe", required=True, to="electrodes")
-
-
-def _length(required: bool = False) -> Number:
-    return Number(
-        "exposed_length_um", "exposed length of the carbon", required, unit=units.LENGTH_UM, above=0, most=1e5
-    )
-
-
-def _minutes(required: bool = False) -> Number:
-    return Number("duration_min", "how long", required, unit=units.MINUTES, above=0, most=5e6)
-
-
-def _current(name: str, about: str, least: float | None = None) -> Number:
-    return Number(name, about, unit=units.CURRENT_NA, least=least)
-
-
-def _potential(name: str, about: str) -> Number:
-    return Number(name, about, unit=units.POTENTIAL_V, least=-10, most=10)
 
 
 TERMS = Sheet(
@@ -152,7 +99,7 @@ ELECTRODES = Sheet(
         Label("electrode", "label", required=True),
         Link("batch", "label of its batch", to="batches"),
         Choice("geometry", "shape of the exposed carbon", choices=("cylinder", "disk", "other")),
-        _length(),
+        length(),
         Number("diameter_um", "diameter of the exposed carbon", unit=units.LENGTH_UM, above=0, most=1000),
         NOTE,
     ),
@@ -165,10 +112,10 @@ INSPECTIONS = Sheet(
     (
         PROBE,
         AT,
-        _length(),
+        length(),
         Choice("seal_ok", "whether the seal holds", choices=("yes", "no")),
-        _current("background_na", "background charging current", least=0),
-        _current("noise_na", "standard deviation of the signal at rest", least=0),
+        current("background_na", "background charging current", least=0),
+        current("noise_na", "standard deviation of the signal at rest", least=0),
         NOTE,
     ),
     key=("electrode", "at"),
@@ -182,7 +129,7 @@ COATINGS = Sheet(
         AT,
         Word("material", "film", required=True, kind="coating material"),
         Word("method", "how it was put on", kind="coating method"),
-        _potential("potential_v", "potential held while coating"),
+        potential("potential_v", "potential held while coating"),
         Number("duration_s", "how long", unit=units.SECONDS, above=0),
         Number(
             "concentration_wt_pct",
@@ -206,7 +153,7 @@ CONDITIONINGS = Sheet(
         PROBE,
         AT,
         Link("waveform", "waveform applied", to="waveforms"),
-        _minutes(),
+        minutes(),
         Word("medium", "what it was in", kind="medium"),
         NOTE,
     ),
@@ -216,10 +163,10 @@ CLEANINGS = Sheet(
     "cleanings",
     "cleaning",
     "what was done to undo fouling",
-    (PROBE, AT, Word("method", "cleaning method", required=True, kind="cleaning method"), _minutes(), NOTE),
+    (PROBE, AT, Word("method", "cleaning method", required=True, kind="cleaning method"), minutes(), NOTE),
     key=("electrode", "at", "method"),
 )
-RECUTS = Sheet("recuts", "re-cut", "the carbon trimmed anew", (PROBE, AT, _length(), NOTE), key=("electrode", "at"))
+RECUTS = Sheet("recuts", "re-cut", "the carbon trimmed anew", (PROBE, AT, length(), NOTE), key=("electrode", "at"))
 STANDARDS = Sheet(
     "standards",
     "standard",
@@ -252,10 +199,10 @@ CALIBRATIONS = Sheet(
         Link("standard", "label of the standard", to="standards"),
         Label("rig", "which rig"),
         BY,
-        _current("noise_na", "standard deviation of the signal at rest", least=0),
-        _current("background_na", "background charging current"),
-        _potential("oxidation_peak_v", "potential of the oxidation peak"),
-        _potential("reduction_peak_v", "potential of the reduction peak"),
+        current("noise_na", "standard deviation of the signal at rest", least=0),
+        current("background_na", "background charging current"),
+        potential("oxidation_peak_v", "potential of the oxidation peak"),
+        potential("reduction_peak_v", "potential of the reduction peak"),
         Number(
             "sensitivity_na_um",
             "sensitivity of an old record that kept only the factor",
@@ -284,7 +231,7 @@ EXPOSURES = Sheet(
     (
         PROBE,
         Moment("start", "when it began", required=True),
-        _minutes(required=True),
+        minutes(required=True),
         Word("setting", "where the probe was", required=True, kind="setting"),
         Link("waveform", "waveform applied", to="waveforms"),
         Word("medium", "what it was in", kind="medium"),

@@ -28,4 +28,4 @@ def answer_export(report: ExportReport, json: bool) -> None:
     if json:
         print_json(report)
         return
-    print_table(("file", "rows"), [(one.file, one.rows) for one in report.files], numeric=("rows",))
+    print_table(("file", "rows"), [(f"{sheet}.csv", count) for sheet, count in report.rows.items()], numeric=("rows",))

@@ -26,14 +26,16 @@ def plain(value: Any) -> Any:
         return plain(asdict(value))
     if isinstance(value, Mapping):
         return {str(key): plain(item) for key, item in value.items()}
+    if isinstance(value, Iterable) and not isinstance(value, str):
+        return [plain(item) for item in value]
+    return _plain_scalar(value)
+
+
+def _plain_scalar(value: Any) -> Any:
     if isinstance(value, str | bool | int) or value is None:
         return value
-    if isinstance(value, datetime):
-        return iso_utc(value)
     if isinstance(value, date):
-        return value.isoformat()
-    if isinstance(value, Iterable):
-        return [plain(item) for item in value]
+        return iso_utc(value) if isinstance(value, datetime) else value.isoformat()
     number = float(value)
     return number if math.isfinite(number) else None
 

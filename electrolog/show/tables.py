@@ -60,9 +60,14 @@ def _fitting(
 
 
 def _print(table: Table) -> None:
+    import io
+
     from rich.console import Console
 
-    Console(width=width(), color_system=None, highlight=False, markup=False, emoji=False).print(table)
+    # Drawn into a text first: rich would end the program by itself where the reader has gone (`| head`).
+    drawn = io.StringIO()
+    Console(file=drawn, width=width(), color_system=None, highlight=False, markup=False, emoji=False).print(table)
+    print("\n".join(line.rstrip() for line in drawn.getvalue().splitlines()))  # noqa: T201
 
 
 def print_lines(*lines: str) -> None:
