@@ -40,16 +40,14 @@ def insert(writer: Writer, sheet: Sheet, row: Row, points: Points) -> int:
     change: dict[str, Any] = {"after": known(row)}
     if points:
         change["points"] = [[float(c), float(i)] for c, i in points]
-        for place, (concentration, current) in enumerate(change["points"], start=1):
-            writer.insert(
-                "calibration_points",
-                {
-                    "calibration_id": row_id,
-                    "ordinal": place,
-                    "concentration_um": concentration,
-                    "current_na": current,
-                },
-            )
+        places = enumerate(change["points"], start=1)
+        writer.insert(
+            "calibration_points",
+            *[
+                {"calibration_id": row_id, "ordinal": place, "concentration_um": c, "current_na": i}
+                for place, (c, i) in places
+            ],
+        )
     writer.note("add", sheet.name, row_id, change)
     _remember(sheet, row, row_id, writer.names)
     return row_id

@@ -78,8 +78,8 @@ class Writer:
         self._tail = (seq + 1, row["hash"])
         return seq + 1
 
-    def insert(self, sheet: str, row: dict[str, Any]) -> None:
-        self._rows.setdefault(sheet, []).append(row)
+    def insert(self, sheet: str, *rows: dict[str, Any]) -> None:
+        self._rows.setdefault(sheet, []).extend(rows)
 
     def flush(self) -> None:
         for sheet in list(schema.tables):

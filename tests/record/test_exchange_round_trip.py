@@ -71,18 +71,16 @@ def test_hostile_texts_come_back_as_they_were(tmp_path: Path) -> None:
 
 
 texts = st.text(st.characters(exclude_categories=["Cs"], exclude_characters="\x00"), min_size=1, max_size=30)
-labels = texts.map(str.strip).filter(
-    lambda label: label and not any(ord(c) < 32 or 0x7F <= ord(c) < 0xA0 for c in label)
-)
-labels = labels.filter(lambda label: "\u2028" not in label and "\u2029" not in label)
-numbers = st.floats(-1e300, 1e300)
+signs = st.characters(exclude_categories=["Cs", "Cc", "Zl", "Zp"])
+labels = st.text(signs, min_size=1, max_size=30).map(str.strip).filter(bool)
+numbers = st.floats(-1e60, 1e60)
 
 
 @settings(max_examples=25)
 @given(
     probes=st.lists(st.tuples(labels, texts), min_size=1, max_size=6, unique_by=lambda probe: probe[0].casefold()),
     points=st.lists(st.tuples(st.floats(0, 1e9), numbers), max_size=8),
-    moment=st.datetimes(min_value=datetime(1970, 1, 2)).filter(lambda m: m.year < 2199),
+    moment=st.datetimes(datetime(1970, 1, 2), datetime(2199, 12, 30)),
 )
 def test_whatever_a_cell_can_hold_comes_back(
     probes: list[tuple[str, str]], points: list[tuple[float, float]], moment: datetime
