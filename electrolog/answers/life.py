@@ -17,8 +17,8 @@ RENEWING = (sheets.CLEANINGS, sheets.COATINGS, sheets.RECUTS)
 class State:
     """What may be said of a probe at a moment, from its events alone.
 
-    `name` is one of: untested (never calibrated), calibrated (not used since its last calibration), used (since its
-    last calibration), retired (with `reason`).
+    `name` is one of: untested (never calibrated), calibrated (nothing done to it since its last calibration), used
+    or renewed (cleaned, coated, re-cut) since its last calibration, retired (with `reason`).
     """
 
     name: str
@@ -62,7 +62,7 @@ def state(life: Sequence[Event], moment: datetime) -> State:
     elif last is None:
         name = "untested"
     else:
-        name = "used" if any(end_of(exposure) > last for exposure in exposures) else "calibrated"
+        name = _since(past, last)
     return State(
         name,
         retirement.row["reason"] if retirement else None,
@@ -71,6 +71,13 @@ def state(life: Sequence[Event], moment: datetime) -> State:
         last,
         retirement.at if retirement else None,
     )
+
+
+def _since(past: Sequence[Event], calibrated: datetime) -> str:
+    if any(end_of(exposure) > calibrated for exposure in of(past, sheets.EXPOSURES)):
+        return "used"
+    renewed = any(event.sheet in RENEWING and event.at > calibrated for event in past)
+    return "renewed" if renewed else "calibrated"
 
 
 def reference(life: Sequence[Event], analyte: str, waveform: str, moment: datetime | None = None) -> Event | None:

@@ -17,7 +17,7 @@ from electrolog.record.queries import Event
 from electrolog.record.readable import Row, row_by_id
 from electrolog.record.store import Connection, Record
 
-STATES = ("untested", "calibrated", "used", "retired")
+STATES = ("untested", "calibrated", "used", "renewed", "retired")
 
 
 @dataclass(frozen=True)

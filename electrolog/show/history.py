@@ -9,7 +9,7 @@ from electrolog.answers.history import Reading
 from electrolog.clock import shown_moment
 from electrolog.show.machine import print_csv, print_json
 from electrolog.show.tables import print_lines, print_table, with_error
-from electrolog.units import shown_number, shown_percent
+from electrolog.units import shown_number
 
 
 def answer(readings: Sequence[Reading], json: bool, csv: bool) -> None:
@@ -71,5 +71,5 @@ def share(reading: Reading) -> str:
         return "reference"
     if reading.share_left is None:
         return "?"
-    error = f" ± {shown_percent(reading.share_left_se)}" if reading.share_left_se is not None else " ± ?"
-    return f"{reading.share_left * 100:.0f} %{error}"
+    percent, error = reading.share_left * 100, reading.share_left_se
+    return f"{shown_number(percent)} ± {'?' if error is None else shown_number(error * 100, 2)} %"
