@@ -7,8 +7,10 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from electrolog.fouling.clock import log_area_changes
 from electrolog.fouling.effects import Effects, columns_of_days, columns_of_units
 from electrolog.fouling.events import READING, Events
+from electrolog.fouling.line_error import LineError
 
 Floats = NDArray[np.float64]
 Integers = NDArray[np.int64]
@@ -28,7 +30,7 @@ class Batch:
     level_columns: Integers  # (B, e)
 
 
-def make_batches(events: Events, effects: Effects, n_latents: int, log_area: Floats) -> list[Batch]:
+def make_batches(events: Events, effects: Effects, n_latents: int, line: LineError) -> list[Batch]:
     """Every unit that has a reading, in batches by number of readings."""
     is_reading = events.kind == READING
     owner = events.unit[is_reading]
@@ -39,13 +41,15 @@ def make_batches(events: Events, effects: Effects, n_latents: int, log_area: Flo
     for low, high in zip(edges[:-1], edges[1:], strict=True):
         units = np.flatnonzero((counts > low) & (counts <= high))
         if len(units):
-            batches.append(pad_units(units, int(high), events, effects, n_latents, log_area))
+            batches.append(pad_units(units, int(high), events, effects, n_latents, line))
     return batches
 
 
-def pad_units(units: Integers, size: int, events: Events, effects: Effects, n_latents: int, log_area: Floats) -> Batch:
+def pad_units(units: Integers, size: int, events: Events, effects: Effects, n_latents: int, line: LineError) -> Batch:
     is_reading = events.kind == READING
-    owner, amount, se = events.unit[is_reading], events.amount[is_reading], events.se[is_reading]
+    owner = events.unit[is_reading]
+    level_seen = events.amount[is_reading] - log_area_changes(events)[0]
+    line_variance = line.moderated(events.se[is_reading])
     day = columns_of_days(effects, events.days)[events.which[is_reading]]
     first = np.searchsorted(owner, units, side="left")
     count = np.searchsorted(owner, units, side="right") - first
@@ -59,8 +63,8 @@ def pad_units(units: Integers, size: int, events: Events, effects: Effects, n_la
     if size and len(owner):
         seen[:, :, :-1] = np.where(real[:, :, None], level[:, None, :], none)
         seen[:, :, -1] = np.where(real, day[reading], none)
-        y = np.where(real, (amount - log_area)[reading], 0.0)
-        variance = np.where(real, np.nan_to_num(se[reading], nan=0.0) ** 2, 0.0)
+        y = np.where(real, level_seen[reading], 0.0)
+        variance = np.where(real, line_variance[reading], 0.0)
     else:
         y, variance = np.zeros((len(units), size)), np.zeros((len(units), size))
     widened = np.full((len(units), n_latents, seen.shape[2]), none)

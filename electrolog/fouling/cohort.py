@@ -3,17 +3,18 @@
 from __future__ import annotations
 
 import hashlib
+
 import numpy as np
 from numpy.typing import NDArray
 
 from electrolog.errors import DataError
 from electrolog.fouling.ascend import Peak, Width, climb, rough_width, widths
 from electrolog.fouling.batches import make_batches
-from electrolog.fouling.clock import log_area_changes
 from electrolog.fouling.effects import lay_out_effects, layout_for
 from electrolog.fouling.events import READING, Events
 from electrolog.fouling.fit import METHOD, CohortFit, Component, KeptUnits
 from electrolog.fouling.parameters import read_scales
+from electrolog.fouling.line_error import LineError, learn_line_error
 from electrolog.fouling.points import normal_points
 from electrolog.fouling.propagation import Problem, combine
 from electrolog.fouling.shapes import ALL_SHAPES, SHAPES
@@ -38,6 +39,7 @@ def fit_cohort(events: Events, *, shapes: tuple[str, ...] = ALL_SHAPES) -> Cohor
     return CohortFit(
         METHOD,
         fingerprint(events),
+        line_error_of(events),
         dict(zip(shapes, weight.tolist(), strict=True)),
         components,
         len(events.units),
@@ -78,12 +80,16 @@ def check_events(events: Events) -> None:
         raise DataError("a standard error is negative", "give NaN where it is unknown")
 
 
+def line_error_of(events: Events) -> LineError:
+    return learn_line_error(events.se[events.kind == READING])
+
+
 def pose(events: Events, shape_name: str) -> Problem:
     shape = SHAPES[shape_name]
     layout = layout_for(shape, events)
     effects = lay_out_effects(shape, layout.group_sds, events)
     return Problem(
-        events, layout, effects, make_batches(events, effects, len(shape.latents), log_area_changes(events)[0])
+        events, layout, effects, make_batches(events, effects, len(shape.latents), line_error_of(events))
     )
 
 

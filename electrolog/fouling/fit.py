@@ -9,6 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from electrolog.fouling.effects import Effects
+from electrolog.fouling.line_error import LineError
 from electrolog.fouling.parameters import Layout
 
 Floats = NDArray[np.float64]
@@ -47,6 +48,7 @@ class CohortFit:
 
     method: str
     fingerprint: str
+    line_error: LineError
     shape_weights: dict[str, float]
     components: tuple[Component, ...]
     n_units: int

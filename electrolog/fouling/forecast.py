@@ -16,9 +16,20 @@ from electrolog.fouling.clock import Clock, log_area_changes, run_clock
 from electrolog.fouling.effects import Effects
 from electrolog.fouling.events import READING, Events
 from electrolog.fouling.fit import CohortFit, Component
+from electrolog.fouling.line_error import LineError
 from electrolog.fouling.parameters import Scales, prior_draws, read_scales
 from electrolog.fouling.points import even_points
-from electrolog.fouling.quadrature import SPACING, STRETCH, Grid, Setup, Tilted, refit_grid, starting_grid, standard_nodes, tilt
+from electrolog.fouling.quadrature import (
+    SPACING,
+    STRETCH,
+    Grid,
+    Setup,
+    Tilted,
+    refit_grid,
+    standard_nodes,
+    starting_grid,
+    tilt,
+)
 
 Floats = NDArray[np.float64]
 Integers = NDArray[np.int64]
@@ -124,7 +135,7 @@ def posterior(fit: CohortFit, events: Events) -> Posterior:
     slipped, damaged = np.zeros(int(is_reading.sum())), np.zeros(len(events.units))
     strands, total = [], sum(len(part.theta_draws) for part in fit.components)
     for part in fit.components:
-        strand = draw_strand(part, events, at_readings, max(1, round(DRAWS / total)), slipped, damaged)
+        strand = draw_strand(part, events, fit.line_error, max(1, round(DRAWS / total)), slipped, damaged)
         strands.append(strand)
     first = np.cumsum(counts) - counts
     return Posterior(tuple(strands), first, counts, at_end, at_readings, slipped, damaged)
@@ -143,7 +154,7 @@ class View:
 
 
 def draw_strand(
-    part: Component, events: Events, log_area: Floats, per_theta: int, slipped: Floats, damaged: Floats
+    part: Component, events: Events, line: LineError, per_theta: int, slipped: Floats, damaged: Floats
 ) -> Strand:
     view = widen(part, events)
     scales = known_scales(part, events)
@@ -154,7 +165,7 @@ def draw_strand(
     latents, level = np.zeros((n_units, k, per_theta, q)), np.zeros((n_units, k, per_theta))
     damage, since = np.zeros_like(level), np.zeros(level.shape, dtype=np.int64)
     for units, size in groups_by_size(events, k):
-        batch = pad_units(units, size, events, view.effects, q, log_area)
+        batch = pad_units(units, size, events, view.effects, q, line)
         cavity = cavities(view, batch, events)
         grid = peak_grid(view, batch, cavity, peak, peak_clock)
         pairs = set_up_pairs(view, batch, cavity, scales, clock)

@@ -14,6 +14,7 @@ from numpy.typing import NDArray
 from electrolog.errors import DataError
 from electrolog.fouling.effects import Effects
 from electrolog.fouling.fit import METHOD, CohortFit, Component, KeptUnits
+from electrolog.fouling.line_error import LineError
 from electrolog.fouling.parameters import Layout
 from electrolog.fouling.shapes import SHAPES
 
@@ -24,7 +25,8 @@ ARRAYS = ("theta", "theta_draws", "theta_covariance", "mean", "mean_draws", "cov
 
 def to_dict(fit: CohortFit) -> dict[str, Any]:
     plain = {name: getattr(fit, name) for name in PLAIN}
-    return plain | {"notes": list(fit.notes), "components": [_component(part) for part in fit.components]}
+    line = {"typical_variance": fit.line_error.typical_variance, "prior_df": fit.line_error.prior_df}
+    return plain | {"line_error": line, "notes": list(fit.notes), "components": [_component(part) for part in fit.components]}
 
 
 def from_dict(kept: dict[str, Any]) -> CohortFit:
@@ -35,7 +37,7 @@ def from_dict(kept: dict[str, Any]) -> CohortFit:
         )
     parts = tuple(_read_component(part) for part in kept["components"])
     plain = {name: kept[name] for name in PLAIN}
-    return CohortFit(**(plain | {"notes": tuple(kept["notes"]), "components": parts}))
+    return CohortFit(**(plain | {"line_error": LineError(**kept["line_error"]), "notes": tuple(kept["notes"]), "components": parts}))
 
 
 def _component(part: Component) -> dict[str, Any]:

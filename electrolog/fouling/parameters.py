@@ -77,7 +77,7 @@ class Layout:
 
 
 def _recovery(name: str) -> tuple[float, float]:
-    return RECOVERY.get(name.split(":")[0], RECOVERY["clean"])
+    return RECOVERY.get(name.split(":", maxsplit=1)[0], RECOVERY["clean"])
 
 
 @dataclass(frozen=True)

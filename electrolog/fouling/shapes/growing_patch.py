@@ -9,7 +9,6 @@ import numpy as np
 
 from electrolog.fouling.shapes.shape import LOG_RATE, LOG_RATE_SD, LOG_TWO, Floats, Loss, Prior
 
-
 MOST_LOG_LOSS = 7.0  # of a grid's outermost nodes, far from any posterior: keeps squares finite
 
 
