@@ -1,0 +1,95 @@
+"""A sheet of scans (scans, points) read in stretches of rows: it may be larger than the memory there is."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from typing import Any, Protocol
+
+import numpy as np
+from numpy.typing import ArrayLike, NDArray
+
+from electrolog.errors import DataError, InputError
+from electrolog.measure.recording import Span, checked_clock, clipped, refuse_too_many, spans_of
+
+Array = NDArray[np.float64]
+
+AROUND = 2  # points to either side that are averaged with the one asked for
+_ROWS_AT_ONCE = 512
+
+
+class ScanSheet(Protocol):
+    """(scans, points) in nA: an array, in memory or mapped from a file; it is read in stretches of rows."""
+
+    @property
+    def shape(self) -> tuple[int, ...]: ...
+
+    def __getitem__(self, rows: Any, /) -> Any: ...
+
+
+def clock_of(sheet: ScanSheet, time_s: ArrayLike) -> Array:
+    """Times (scans,), where the sheet is one at all."""
+    if len(sheet.shape) != 2:
+        raise InputError(f"a sheet of scans has two dimensions, scans and points; found {sheet.shape}")
+    scans = sheet.shape[0]
+    refuse_too_many(scans * sheet.shape[1])
+    time = checked_clock(time_s)
+    if len(time) != scans:
+        raise InputError(f"{scans} scans and {len(time)} times don't pair up; each scan needs one")
+    return time
+
+
+def first_pass(sheet: ScanSheet, block: int) -> tuple[Array, tuple[float, float]]:
+    """Means over `block` scans (m, points), and the lowest and highest current. Raises InputError for a NaN."""
+    size = max(block, _ROWS_AT_ONCE // block * block)
+    means, low, high = [], np.inf, -np.inf
+    for first, rows in _stretches(sheet, size):
+        bottom, top = float(rows.min()), float(rows.max())
+        if not (np.isfinite(bottom) and np.isfinite(top)):
+            row, column = (int(i[0]) for i in np.nonzero(~np.isfinite(rows)))
+            raise InputError(
+                f"scan {first + row + 1} holds no finite number at its point {column + 1}; every point needs one",
+                "leave that scan out of the file: a gap is named and borne",
+            )
+        low, high = min(low, bottom), max(high, top)
+        whole = len(rows) // block * block
+        means.append(rows[:whole].reshape(-1, block, rows.shape[1]).mean(1, dtype=np.float64))
+    if low == high:
+        raise DataError(f"the current is {low:g} nA throughout: nothing was recorded", "is the probe connected?")
+    return np.concatenate(means), (low, high)
+
+
+def column(sheet: ScanSheet, at: int) -> Array:
+    first, last = max(0, at - AROUND), at + AROUND + 1
+    parts = [rows[:, first:last].mean(1, dtype=np.float64) for _, rows in _stretches(sheet, _ROWS_AT_ONCE)]
+    return np.concatenate(parts)
+
+
+def around(scan: Array, at: int) -> float:
+    return float(scan[max(0, at - AROUND) : at + AROUND + 1].mean())
+
+
+def mean_scan(sheet: ScanSheet, time: Array, span: Span) -> Array:
+    rows = np.flatnonzero(span.within(time))
+    if len(rows) < 3:
+        raise DataError(
+            f"{len(rows)} scans lie between {span.start_s:.4g} and {span.end_s:.4g} s, where a plateau or a background "
+            "is to be taken; three or more are needed",
+            "record longer before and during each injection, or set the stretches by hand",
+        )
+    return np.asarray(np.asarray(sheet[rows[0] : rows[-1] + 1]).mean(0, dtype=np.float64))
+
+
+def held_at_limit(sheet: ScanSheet, extremes: tuple[float, float], time: Array) -> tuple[Span, ...]:
+    """Stretches of scans in which the current stands at the sheet's very extreme for several points on end."""
+    flags = np.zeros(sheet.shape[0], dtype=bool)
+    for first, rows in _stretches(sheet, _ROWS_AT_ONCE):
+        touched = np.flatnonzero(((rows == extremes[0]) | (rows == extremes[1])).sum(1) >= 5)
+        for row in touched.tolist():
+            scan = rows[row]
+            flags[first + row] = bool((clipped(scan) & ((scan == extremes[0]) | (scan == extremes[1]))).any())
+    return spans_of(flags, time)
+
+
+def _stretches(sheet: ScanSheet, size: int) -> Iterator[tuple[int, NDArray[np.floating[Any]]]]:
+    for first in range(0, sheet.shape[0], size):
+        yield first, np.asarray(sheet[first : first + size])
