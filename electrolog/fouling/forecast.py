@@ -20,8 +20,6 @@ from electrolog.fouling.line_error import LineError
 from electrolog.fouling.parameters import Scales, prior_draws, read_scales
 from electrolog.fouling.points import even_points
 from electrolog.fouling.quadrature import (
-    SPACING,
-    STRETCH,
     Grid,
     Setup,
     Tilted,
@@ -323,8 +321,10 @@ def sample(
     cell = np.minimum((ranks[:, :, None] * steps[:, -1:, None] > steps[:, None, :]).sum(axis=2), n_nodes * n_fates - 1)
     node, fate = cell // n_fates, cell % n_fates
     pair = np.arange(n_pairs)[:, None]
-    within = standard_nodes(q)[0][node] + (points[:, :, 3:] - 0.5) * cell_sides(q)[node]
-    latents = grid.centre[:, None, :] + np.einsum("bij,bsj->bsi", grid.spread, within)
+    standard = standard_nodes(q)
+    within = standard.place[node] + (points[:, :, 3:] - 0.5) * standard.sides[node]
+    which = standard.grid[node]
+    latents = grid.centre[pair, which] + np.einsum("bsij,bsj->bsi", grid.spread[pair, which], within)
     z = ndtri(points[:, :, 1:3])
     shift = tilted.shift[pair, node, fate] + z[:, :, 0] / np.sqrt(tilted.stiffness[pair, fate])
     shift = np.where(fate > 0, shift, 0.0)
@@ -338,9 +338,3 @@ def sample(
     drawn = mean[:, None] + by_node - by_fate * shift + np.sqrt(np.maximum(left, 0.0))[:, None] * z[:, :, 1]
     is_damage = fate > n
     return latents, drawn, np.where(is_damage, shift, 0.0), np.where(is_damage, fate - 1 - n, 0)
-
-
-def cell_sides(q: int) -> Floats:
-    """(G, q) widths of the cells around the standard nodes, to first order."""
-    nodes = standard_nodes(q)[0]
-    return np.asarray(SPACING[q] * np.sqrt(1.0 + (STRETCH * nodes) ** 2))

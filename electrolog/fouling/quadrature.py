@@ -4,7 +4,8 @@ A unit's residual vector stacks its latents less their means and its readings le
 latents it is Gaussian with one covariance J, so the level, the shared effects and every reading's error are integrated
 exactly; the latents (log rate, log exponent) by the trapezoid rule on a grid laid on the unit's own posterior: for a
 smooth density that converges faster than any power of the spacing (Trefethen & Weideman 2014, doi:10.1137/130932132).
-Nodes are dense on the main peak and reach far beyond it (a sinh map), for a peak may stand on a broad foot.
+Nodes are dense on the main peak and reach far beyond it (a sinh map), for a peak may stand on a broad foot. There are
+two grids: one for nothing having gone wrong, one for something having, for the second leaves the latents far less certain.
 
 At most one thing goes wrong with a unit: nothing; a slip at one reading; sudden damage that stays, before one reading
 but the first. A slip or a damage adds a Gaussian shift along one vector u, so J changes by rank one.
@@ -13,6 +14,7 @@ but the first. A slip or a damage adds a Gaussian shift along one vector u, so J
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cache
 
 import numpy as np
 from numpy.typing import NDArray
@@ -23,17 +25,28 @@ from electrolog.fouling.shapes.shape import Loss, Shape
 Floats = NDArray[np.float64]
 SLIP_SD = 2.0  # a slip of the decimal point moves log sensitivity by 2.3
 DAMAGE_MEAN, DAMAGE_SD = -0.9, 0.6  # half of the sensitivity or more is gone at once
-SPACING = {0: 1.0, 1: 0.6, 2: 0.9}  # of the nodes, in standard deviations, by the number of latents
-REACH = 4.3  # of the grid before it is stretched, in standard deviations
+# Of the nodes before they are stretched, in standard deviations, by the number of latents: nothing wrong, something wrong.
+SPACING = {0: (1.0, 1.0), 1: (0.6, 0.8), 2: (0.9, 1.1)}
+REACH = 4.3
 STRETCH = 0.45
 
 
 @dataclass(frozen=True)
 class Grid:
-    """A unit's nodes: centre (B, q) + spread (B, q, q) @ standard nodes."""
+    """A unit's nodes: centre (B, 2, q) + spread (B, 2, q, q) @ standard nodes, for nothing wrong and for something wrong."""
 
     centre: Floats
     spread: Floats
+
+
+@dataclass(frozen=True)
+class Nodes:
+    """Standard nodes (G, q) of both grids, log volumes (G,) and sides (G, q) of their cells, and each one's grid (G,)."""
+
+    place: Floats
+    log_volume: Floats
+    sides: Floats
+    grid: NDArray[np.int64]
 
 
 @dataclass(frozen=True)
@@ -76,30 +89,38 @@ class Tilted:
     pulled: Floats  # (B, G, R) inverse of J times the residuals
     shift: Floats  # (B, G, O) expected size of the slip or damage
     fates: Fates
+    log_weight: Floats  # (B, G, O)
     bent: Floats  # (B, R, O) inverse of J times u
     stiffness: Floats  # (B, O) u' inverse(J) u + 1 / variance
 
 
-def standard_nodes(n_latents: int) -> tuple[Floats, Floats]:
-    """(G, q) nodes in standard deviations, and the log volume (G,) of each one's cell."""
+@cache
+def standard_nodes(n_latents: int) -> Nodes:
     if n_latents == 0:
-        return np.zeros((1, 0)), np.zeros(1)
-    half = int(REACH / SPACING[n_latents])
-    line = np.arange(-half, half + 1) * SPACING[n_latents]
+        return Nodes(np.zeros((2, 0)), np.zeros(2), np.zeros((2, 0)), np.arange(2))
+    both = [even_nodes(n_latents, spacing) for spacing in SPACING[n_latents]]
+    which = np.repeat([0, 1], [len(even) for even in both])
+    even = np.concatenate(both)
+    widening = np.cosh(STRETCH * even) * np.array(SPACING[n_latents])[which][:, None]
+    return Nodes(np.sinh(STRETCH * even) / STRETCH, np.log(widening).sum(axis=1), widening, which)
+
+
+def even_nodes(n_latents: int, spacing: float) -> Floats:
+    half = int(REACH / spacing)
+    line = np.arange(-half, half + 1) * spacing
     even = np.stack(np.meshgrid(*[line] * n_latents, indexing="ij"), axis=-1).reshape(-1, n_latents)
-    even = even[np.linalg.norm(even, axis=1) <= REACH]
-    volume = np.log(np.cosh(STRETCH * even)).sum(axis=1) + n_latents * np.log(SPACING[n_latents])
-    return stretched(even), volume
+    return even[np.linalg.norm(even, axis=1) <= REACH]
 
 
-def stretched(even: Floats) -> Floats:
-    return np.sinh(STRETCH * even) / STRETCH
+def place_nodes(grid: Grid, nodes: Nodes) -> Floats:
+    """(B, G, q)."""
+    return grid.centre[:, nodes.grid] + np.einsum("bgij,gj->bgi", grid.spread[:, nodes.grid], nodes.place)
 
 
 def tilt(shape: Shape, setup: Setup, grid: Grid) -> Tilted:
-    q = grid.centre.shape[1]
-    steps, volume = standard_nodes(q)
-    nodes = grid.centre[:, None, :] + np.einsum("bij,gj->bgi", grid.spread, steps)
+    q = grid.centre.shape[2]
+    standard = standard_nodes(q)
+    nodes = place_nodes(grid, standard)
     loss = shape.loss(setup.hours[:, None, :], nodes[:, :, None, :], setup.shape_parameters[:, None, None, :])
     residual = residuals(setup, nodes, loss)
     precision, log_det = invert(covariance(setup))
@@ -112,13 +133,17 @@ def tilt(shape: Shape, setup: Setup, grid: Grid) -> Tilted:
     gain = 0.5 * (push * shift - fates.mean**2 / fates.variance - np.log(fates.variance * stiffness)[:, None, :])
     gain[..., 0] = shift[..., 0] = 0.0
     base = -0.5 * ((pulled * residual).sum(-1) + log_det[:, None] + count_terms(setup) * np.log(2.0 * np.pi))
-    cell = np.log(np.abs(np.linalg.det(grid.spread)))[:, None] + volume
-    log_weight = base[..., None] + gain + fates.log_prior[:, None, :] + cell[:, :, None]
+    cell = np.log(np.abs(np.linalg.det(grid.spread)))[:, standard.grid] + standard.log_volume
+    log_weight = (base + cell)[..., None] + gain + fates.log_prior[:, None, :]
+    log_weight[:, standard.grid == 0, 1:] = -np.inf
+    log_weight[:, standard.grid == 1, 0] = -np.inf
     top = log_weight.max(axis=(1, 2), keepdims=True)
     weight = np.exp(log_weight - top)
     total = weight.sum(axis=(1, 2), keepdims=True)
     log_evidence = (top + np.log(total))[:, 0, 0]
-    return Tilted(log_evidence, weight / total, nodes, loss, precision, pulled, shift, fates, bent, stiffness)
+    return Tilted(
+        log_evidence, weight / total, nodes, loss, precision, pulled, shift, fates, log_weight, bent, stiffness
+    )
 
 
 def residuals(setup: Setup, nodes: Floats, loss: Loss) -> Floats:
@@ -171,29 +196,41 @@ def possible_fates(setup: Setup, q: int) -> Fates:
     return Fates(along, log_prior, mean, variance, slips.sum(1) / total, damages.sum(1) / total)
 
 
-def starting_grid(setup: Setup, widening: float = 1.0) -> Grid:
-    """A grid on the prior: the cavity's means, with the cavity's and the units' own variances."""
+def starting_grid(setup: Setup) -> Grid:
+    """Grids on the prior: the cavity's means, with the cavity's and the units' own variances."""
     q = setup.latent_variance.shape[1]
     variance = np.diagonal(setup.cavity_covariance, axis1=1, axis2=2)[:, :q] + setup.latent_variance
-    return Grid(setup.cavity_mean[:, :q].copy(), np.sqrt(variance)[:, :, None] * np.eye(q) * widening)
+    one = np.sqrt(variance)[:, :, None] * np.eye(q)
+    return Grid(np.stack([setup.cavity_mean[:, :q]] * 2, axis=1), np.stack([one] * 2, axis=1))
 
 
 def refit_grid(tilted: Tilted, grid: Grid) -> Grid:
-    """The grid moved onto the main peak it found; never shrunk to less than about half at once, or it would be missed.
+    """The grids moved onto the main peaks they found."""
+    q = grid.centre.shape[2]
+    if q == 0:
+        return grid
+    parts = [refit_one(tilted, grid, which) for which in (0, 1)]
+    return Grid(np.stack([p[0] for p in parts], axis=1), np.stack([p[1] for p in parts], axis=1))
+
+
+def refit_one(tilted: Tilted, grid: Grid, which: int) -> tuple[Floats, Floats]:
+    """Never shrunk to less than about half at once, or a peak would be missed.
 
     The peak's mean and covariance are those of the squared density, the covariance doubled: right for a Gaussian, and
     hardly moved by a broad foot.
     """
-    q = grid.centre.shape[1]
-    if q == 0:
-        return grid
-    weight = tilted.probability.sum(axis=2)
-    squared = weight**2 * np.exp(-standard_nodes(q)[1])
-    mean, spread = moments(squared / squared.sum(axis=1, keepdims=True), tilted.nodes)
-    floor = (0.5 * np.linalg.norm(grid.spread, axis=2) * SPACING[q]) ** 2
+    q = grid.centre.shape[2]
+    standard = standard_nodes(q)
+    mine = standard.grid == which
+    by_node = tilted.log_weight[:, mine][:, :, [0] if which == 0 else slice(1, None)]
+    top = by_node.max(axis=(1, 2), keepdims=True)
+    density = np.exp(by_node - top).sum(axis=2)
+    squared = density**2 * np.exp(-standard.log_volume[mine])
+    mean, spread = moments(squared / squared.sum(axis=1, keepdims=True), tilted.nodes[:, mine])
+    floor = (0.5 * np.linalg.norm(grid.spread[:, which], axis=2) * SPACING[q][which]) ** 2
     own = np.diagonal(spread, axis1=1, axis2=2)
     spread[:, np.arange(q), np.arange(q)] += np.where(own < floor, floor, own)
-    return Grid(mean, np.linalg.cholesky(spread + off_diagonal(spread)))
+    return mean, np.linalg.cholesky(spread + off_diagonal(spread))
 
 
 def off_diagonal(matrices: Floats) -> Floats:
