@@ -29,7 +29,8 @@ class CalibrationFacts:
     age_h: its age at the start of the run. events_since: what voids it since, in words ("a run on 3 May",
     "cleaned", "re-coated", "re-cut"). noise_na: standard deviation of the signal at rest, and noise_before_na
     that of the calibration before. blank_sd_na and residual_sd_na: of the blanks and about the line, with
-    their degrees of freedom; the detection limit rests on the first of the three that is known.
+    their degrees of freedom. The detection limit rests on the noise; where it wasn't noted, on that of the other two
+    which has more degrees of freedom.
     peak_shift_v: of the oxidation peak since the reference calibration.
     """
 
@@ -73,12 +74,11 @@ class Noise:
 def noise_of(facts: CalibrationFacts) -> Noise | None:
     if facts.noise_na:
         return Noise(facts.noise_na, None, "the signal's noise at the last calibration")
-    if facts.blank_sd_na and facts.blank_degrees_of_freedom:
-        return Noise(facts.blank_sd_na, facts.blank_degrees_of_freedom, "the scatter of its blanks")
-    if facts.residual_sd_na and facts.residual_degrees_of_freedom:
-        return Noise(
-            facts.residual_sd_na, facts.residual_degrees_of_freedom, "the scatter of its points about the line"
-        )
+    blanks, points = facts.blank_degrees_of_freedom or 0, facts.residual_degrees_of_freedom or 0
+    if facts.blank_sd_na and blanks and blanks >= points:
+        return Noise(facts.blank_sd_na, blanks, "the scatter of its blanks")
+    if facts.residual_sd_na and points:
+        return Noise(facts.residual_sd_na, points, "the scatter of its points about the line")
     return None
 
 

@@ -6,6 +6,7 @@ the sensitivity, so a limit that holds at the run's end held all the way.
 
 from __future__ import annotations
 
+import functools
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 
@@ -68,12 +69,27 @@ def breaches(log_sensitivity: Array, beside: Beside, ends: EndLimits) -> dict[st
     }
 
 
+def least_log_sensitivity(beside: Beside, ends: EndLimits) -> Array | None:
+    """What the log sensitivity may not fall below, by the strictest limit in each draw; None where none can be told.
+
+    Shapes broadcast: (D,), (U, D), or (U, 1) for a noise that is taken as known. NaN: unknown for that probe.
+    """
+    found: list[Array] = []
+    if SHARE in ends.by_rule and beside.log_reference is not None:
+        found.append(beside.log_reference + np.log(ends.by_rule[SHARE]))
+    highest_um = min((ends.by_rule[rule] for rule in (LOD, NEEDS) if rule in ends.by_rule), default=None)
+    if highest_um is not None and beside.noise_na is not None:
+        found.append(np.log(ends.signal_to_noise * beside.noise_na / highest_um))
+    return functools.reduce(np.fmax, found) if found else None
+
+
 def any_breach(log_sensitivity: Array, beside: Beside, ends: EndLimits) -> Mask:
-    """A probe that breaks two limits in the same draw fails once: the odds are of the union, not a sum."""
-    broken = np.zeros(log_sensitivity.shape, dtype=bool)
-    for mask in breaches(log_sensitivity, beside, ends).values():
-        broken = broken | mask
-    return broken
+    """A probe that breaks two limits in the same draw fails once: the odds are of the union, not a sum.
+
+    What can't be told (None, or NaN for one probe of a shelf) breaks nothing here; who asks names it.
+    """
+    least = least_log_sensitivity(beside, ends)
+    return np.zeros(log_sensitivity.shape, dtype=bool) if least is None else np.asarray(log_sensitivity < least)
 
 
 def relative_width(log_sensitivity: Array) -> Array:

@@ -52,23 +52,14 @@ def breaking_times_min(question: Question) -> Array | None:
     now = question.log_sensitivity_at(0.0)
     noise = noise_of(question.calibration) if question.calibration else None
     beside = odds.Beside(question.reference_log_sensitivity, noise.draws(len(now)) if noise else None)
-    least = _least_log_sensitivity(beside, odds.EndLimits.of(question.limits, question.needs_um))
-    return None if least is None else _crossing_min(question.log_sensitivity_at, np.broadcast_to(least, now.shape))
-
-
-def _least_log_sensitivity(beside: odds.Beside, ends: odds.EndLimits) -> Array | None:
-    """What the log sensitivity may not fall below in each draw, by the strictest of the limits."""
-    found = []
-    for rule, value in ends.by_rule.items():
-        if rule == odds.SHARE:
-            if beside.log_reference is None:
-                return None
-            found.append(beside.log_reference + np.log(value))
-        elif beside.noise_na is None:
-            return None
-        else:
-            found.append(np.log(ends.signal_to_noise * beside.noise_na / value))
-    return np.asarray(np.max(found, axis=0)) if found else None
+    ends = odds.EndLimits.of(question.limits, question.needs_um)
+    untold = len(odds.values_at(now, beside, ends)) < len(ends.by_rule)
+    least = odds.least_log_sensitivity(beside, ends)
+    return (
+        None
+        if least is None or untold
+        else _crossing_min(question.log_sensitivity_at, np.broadcast_to(least, now.shape))
+    )
 
 
 def _crossing_min(log_sensitivity_at: Callable[[float], Array], least: Array) -> Array:

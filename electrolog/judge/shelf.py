@@ -100,7 +100,6 @@ def _look(shelf: Shelf) -> _Seen:
     log_now, log_end = shelf.log_sensitivity_at(0.0), shelf.log_sensitivity_at(shelf.run_min)
     reference, noise_na = shelf.reference_log_sensitivity, _noise(shelf.calibrations, log_now.shape[1])
     beside, ends = odds.Beside(reference, noise_na), odds.EndLimits.of(shelf.limits, shelf.needs_um)
-    # A comparison with NaN is false: what can't be told breaks nothing here, and is named by `untold`.
     broken_now, broken_end = (odds.any_breach(log, beside, ends) for log in (log_now, log_end))
     widest = ends.widest_interval
     middle = np.median(log_end, axis=1)
@@ -122,10 +121,11 @@ def _look(shelf: Shelf) -> _Seen:
 
 
 def _noise(calibrations: Sequence[CalibrationFacts | None], draws: int) -> Array:
-    """(U, D); rows of NaN where nothing is known."""
-    found = np.full((len(calibrations), draws), np.nan)
-    for probe, facts in enumerate(calibrations):
-        noise = noise_of(facts) if facts else None
+    """(U, D), or (U, 1) where every noise is taken as known; rows of NaN where nothing is known."""
+    noises = [noise_of(facts) if facts else None for facts in calibrations]
+    uncertain = any(noise and noise.degrees_of_freedom for noise in noises)
+    found = np.full((len(noises), draws if uncertain else 1), np.nan)
+    for probe, noise in enumerate(noises):
         if noise is not None:
             found[probe] = noise.draws(draws) if noise.degrees_of_freedom else noise.sd_na
     return found

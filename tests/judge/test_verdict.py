@@ -171,6 +171,15 @@ def test_noise_from_few_points_widens_the_detection_limit():
     assert "about the line" in texts(verdict)
 
 
+def test_the_detection_limit_rests_on_what_is_known_best():
+    measured = {"blank_sd_na": 0.04, "residual_sd_na": 0.05}
+    few_blanks = fresh(noise_na=None, blank_degrees_of_freedom=1, residual_degrees_of_freedom=6, **measured)
+    many_blanks = fresh(noise_na=None, blank_degrees_of_freedom=6, residual_degrees_of_freedom=6, **measured)
+    noted = fresh(noise_na=0.03, blank_degrees_of_freedom=6, residual_degrees_of_freedom=6, **measured)
+    for facts, said in ((few_blanks, "about the line"), (many_blanks, "blanks"), (noted, "the signal's noise")):
+        assert said in texts(judge(question(calibration=facts, needs_um=0.05)))
+
+
 def test_a_set_limit_that_nobody_measured_is_undetermined():
     verdict = judge(question(Known(rate=0.0), limits=limits(largest_peak_shift=0.05)))
     assert (verdict.verdict, rules(verdict)[0]) == ("undetermined", "largest-peak-shift")
