@@ -22,13 +22,14 @@ from electrolog.fouling.shapes import ALL_SHAPES, SHAPES
 Floats = NDArray[np.float64]
 DRAWS = 64  # of the hyper-parameters, over all shapes
 HOPELESS = 25.0  # nats behind the best shape
+PRIOR_ODDS = {"none": 0.1}  # against any other shape: a probe in use that doesn't foul at all is rare
 LEAST_WEIGHT = 0.01  # a shape with less is named, but not drawn from
 
 
 def fit_cohort(events: Events, *, shapes: tuple[str, ...] = ALL_SHAPES) -> CohortFit:
     check_events(events)
     fits = fit_shapes(events, shapes)
-    log_evidence = np.array([width.log_evidence for _, _, width in fits])
+    log_evidence = np.array([width.log_evidence + np.log(PRIOR_ODDS.get(p.layout.shape.name, 1.0)) for p, _, width in fits])
     weight = np.exp(log_evidence - log_evidence.max())
     weight /= weight.sum()
     drawn = np.where(weight >= LEAST_WEIGHT, weight, 0.0)
