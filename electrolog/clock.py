@@ -13,7 +13,8 @@ from electrolog.units import MINUTES, parse_quantity
 _DAY_WORDS = {"today": 0, "yesterday": -1, "tomorrow": 1}
 _TIME_OF_DAY = re.compile(r"(\d{1,2})[:.h](\d{2})(?::(\d{2}))?")
 _EARLIEST, _LATEST = 1970, 2200
-_ACCEPTED = "now, '2h ago', 'yesterday 14:30', '14:30' (today) or ISO such as 2026-03-14T14:30+01:00"
+_ISO = "ISO 8601 such as 2026-03-14T14:30+01:00"
+_ACCEPTED = f"now, '2h ago', 'yesterday 14:30', '14:30' (today) or {_ISO}"
 
 
 def utc_now() -> datetime:
@@ -52,17 +53,17 @@ def parse_moment(text: str, zone: tzinfo | None = None, what: str = "at") -> dat
         return _at_time_of_day(day, clock, zone, text, what)
     if word in _DAY_WORDS:
         raise InputError(f"{what}: '{shortened(text)}' names a day without a time of day; accepted: {_ACCEPTED}")
-    return parse_iso(text, zone, what)
+    return parse_iso(text, zone, what, _ACCEPTED)
 
 
-def parse_iso(text: str, zone: tzinfo | None = None, what: str = "at") -> datetime:
+def parse_iso(text: str, zone: tzinfo | None = None, what: str = "at", accepted: str = _ISO) -> datetime:
     """An ISO 8601 moment in UTC; without an offset it is read in `zone` (None: the machine's)."""
     try:
         moment = datetime.fromisoformat(text.strip())
     except ValueError:
-        raise InputError(f"{what}: '{shortened(text)}' is not a time; accepted: {_ACCEPTED}") from None
+        raise InputError(f"{what}: '{shortened(text)}' is not a time; accepted: {accepted}") from None
     if re.fullmatch(r"\d{4}-?\d{2}-?\d{2}|\d{4}-?W\d{2}(-?\d)?", text.strip()):
-        raise InputError(f"{what}: '{shortened(text)}' is a day without a time; accepted: {_ACCEPTED}")
+        raise InputError(f"{what}: '{shortened(text)}' is a day without a time; accepted: {accepted}")
     return _to_utc(moment, zone, text, what)
 
 

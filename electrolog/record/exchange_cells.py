@@ -8,7 +8,7 @@ from dataclasses import dataclass
 from datetime import tzinfo
 from typing import Any
 
-from electrolog.errors import InputError
+from electrolog.errors import InputError, shortened
 from electrolog.record import columns as kinds
 from electrolog.record.columns import Column, Value
 
@@ -53,7 +53,10 @@ class CellReader:
         try:
             return self.column.read(text, self.zone)
         except InputError as why:
-            return Refusal(f"{why.message}; {why.hint}" if why.hint else why.message)
+            if isinstance(self.column, kinds.Choice):
+                accepted = ", ".join(self.column.choices)
+                return Refusal(f"{self.column.name}: found '{shortened(text)}'; accepted: {accepted}")
+            return Refusal(why.message)
 
 
 def _plain_numbers(column: kinds.Number, texts: Sequence[str]) -> list[Any] | None:

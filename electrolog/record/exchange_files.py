@@ -18,7 +18,7 @@ from electrolog.record.exchange_cells import CellReader, refusals
 from electrolog.record.exchange_faults import FILES, Faults, printable
 from electrolog.record.sheets import BY_NAME, Sheet
 
-CHUNK = 50_000  # rows held as text at a time
+CHUNK = 10_000  # rows held as text at a time
 CELL_LIMIT = min(sys.maxsize, 2**31 - 1)
 Numbered = tuple[int, list[str]]
 Progress = Callable[[str, int], None]  # what is under way, and rows done so far

@@ -28,7 +28,6 @@ from electrolog.record.exchange_links import resolve
 from electrolog.record.exchange_points import FilePoints
 from electrolog.record.journal import Writer
 
-NOT_WRITTEN = -1  # the number of a row that a fault keeps out; its name is known all the same
 SHARED = (sheets.ANALYTES, sheets.WAVEFORMS, sheets.TERMS)  # names of the trade: another case is the same name
 
 
@@ -49,6 +48,7 @@ class Import:
     counts: dict[str, Counts] = field(default_factory=lambda: defaultdict(Counts))
     notes: list[str] = field(default_factory=list)
     unsure: set[str] = field(default_factory=set)  # sheets whose files couldn't be read whole
+    kept_out: int = 0  # the number of the last row that a fault kept out, below zero
     left_struck: dict[str, set[int]] = field(default_factory=lambda: defaultdict(set))
 
 
@@ -230,13 +230,13 @@ class SheetMerge:
         points = self.all.points.of(key) if self.sheet is sheets.CALIBRATIONS else []
         row = dict(zip(self.names, values, strict=True))
         if not self._passes(index, values, (), bool(points)):
-            self._remember(values, NOT_WRITTEN)
+            self._remember(values)
             return
         self.counts.added += 1
         if points:
             self.all.counts["calibration_points"].added += len(points)
         if self.all.faults:
-            self._remember(values, NOT_WRITTEN)
+            self._remember(values)
         else:
             entry.insert(self.all.writer, self.sheet, row, points)
 
@@ -253,13 +253,19 @@ class SheetMerge:
         return True
 
     def _keep_out(self, values: Values) -> None:
-        self._remember(values, NOT_WRITTEN)
+        self._remember(values)
         if is_labelled(self.sheet) and values[0]:
             self.kept_out.add(values[0].casefold())
 
-    def _remember(self, values: Values, row_id: int) -> None:
-        """A name that the folder has, whatever became of its row: links to it are no fault of their own."""
+    def _remember(self, values: Values, row_id: int | None = None) -> None:
+        """A name that the folder has, whatever became of its row: links to it are no fault of their own.
+
+        A row that isn't written has a number that no other has, or two such rows would pass for one.
+        """
         names = self.all.writer.names
+        if row_id is None:
+            self.all.kept_out -= 1
+            row_id = self.all.kept_out
         if self.sheet is sheets.TERMS:
             if values[0] and values[1]:
                 names.add_word(values[0], values[1])

@@ -114,6 +114,12 @@ def test_a_name_kept_out_by_a_fault_makes_no_faults_of_those_that_rest_on_it(rec
     assert len(faults_of(record, tmp_path, lab(electrodes=bare))) == 1
 
 
+def test_rows_that_rest_on_different_rows_kept_out_are_no_doubles(record: Record, tmp_path: Path) -> None:
+    cuts = "electrode,at\nP1,2026-01-01T00:00Z\nP2,2026-01-01T00:00Z\n"
+    found = faults_of(record, tmp_path, lab(batches="batch,made_on\nB1,soon\n", recuts=cuts))
+    assert [fault.split(":")[0] for fault in found] == ["batches.csv line 2, made_on"]
+
+
 def test_a_wrong_file_of_many_rows_is_refused_in_seconds(record: Record, tmp_path: Path) -> None:
     probes = "electrode\n" + "\n".join(f"P{number:05}" for number in range(3000))
     recuts = "electrode,at\n" + "\n".join(f"Q{number:05},2026-01-01T00:00Z" for number in range(3000))
