@@ -12,7 +12,7 @@ from electrolog.units import PLAIN, Unit, parse_quantity
 
 Value = str | float | datetime | date | None
 TEXT_LIMIT, LABEL_LIMIT = 100_000, 200
-LARGEST = 1e300  # what a number may be at most where its column sets no bound
+LARGEST = 1e60  # where a column sets no bound of its own; its fourth power, which a fit may need, is a number still
 
 
 @dataclass(frozen=True)

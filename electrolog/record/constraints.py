@@ -22,7 +22,7 @@ from sqlalchemy.sql.elements import ColumnElement
 
 from electrolog.record import columns as kinds
 from electrolog.record import schema
-from electrolog.record.columns import number_text
+from electrolog.record.columns import LARGEST, number_text
 from electrolog.record.schema import column_name
 from electrolog.record.sheets import POINTS, SHEETS, Sheet
 
@@ -34,7 +34,7 @@ NAMES = {
     "pk": "pk_%(table_name)s",
 }
 _LIVE = text("struck IS NULL")
-_UTC_SHAPE = "____-__-__T__:__:__.______Z"
+_UTC_SHAPE = "0000-00-00T00:00:00.000000Z".replace("0", "[0-9]")
 
 
 def full_metadata() -> MetaData:
@@ -90,7 +90,7 @@ def _checks(column: kinds.Column) -> list[Any]:
 
 def _utc(column: str) -> Any:
     """UTC, held by the database: SQLite would keep any text, PostgreSQL's type already knows its zone."""
-    return CheckConstraint(f"{column} LIKE '{_UTC_SHAPE}'", name=f"{column}_utc").ddl_if("sqlite")
+    return CheckConstraint(f"{column} GLOB '{_UTC_SHAPE}'", name=f"{column}_utc").ddl_if("sqlite")
 
 
 def _rule(column: kinds.Column) -> str:
@@ -99,9 +99,18 @@ def _rule(column: kinds.Column) -> str:
         return f"{name} IN ({', '.join(repr(choice) for choice in column.choices)})"
     if isinstance(column, kinds.Number):
         # Infinity passes a one-sided bound, and NaN is above everything in PostgreSQL: both sides are always held.
-        low = f"{name} > {number_text(column.above)}" if column.above is not None else f"{name} >= -1e300"
+        low = (
+            f"{name} > {number_text(column.above)}"
+            if column.above is not None
+            else f"{name} >= {number_text(-LARGEST)}"
+        )
         low = f"{name} >= {number_text(column.least)}" if column.least is not None else low
-        return f"{low} AND {name} <= {number_text(column.most if column.most is not None else 1e300)}"
+        high = f"{name} <= {number_text(LARGEST if column.most is None else column.most)}"
+        return f"{low} AND {high}" + (f" AND {name} = round({name})" if column.whole else "")
+    if isinstance(column, kinds.Vertices):
+        return f"length({name}) BETWEEN 3 AND {kinds.TEXT_LIMIT}"
+    if isinstance(column, kinds.Day):
+        return f"{name} LIKE '____-__-__'"
     if isinstance(column, kinds.Label) and not isinstance(column, kinds.Link):
         return f"length({name}) BETWEEN 1 AND {kinds.LABEL_LIMIT}"
     if isinstance(column, kinds.Text):

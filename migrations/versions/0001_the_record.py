@@ -15,6 +15,7 @@ depends_on = None
 
 MOMENT = sa.Text().with_variant(sa.TIMESTAMP(timezone=True), "postgresql")
 REAL = sa.REAL().with_variant(sa.DOUBLE_PRECISION(), "postgresql")
+UTC_SHAPE = "0000-00-00T00:00:00.000000Z".replace("0", "[0-9]")
 LIVE = sa.text("struck IS NULL")
 CORRECTIONS = sa.text("action <> 'add' AND sheet <> 'limits'")
 RECORDED = (
@@ -77,7 +78,7 @@ def _create_journal() -> None:
         sa.Column("hash", sa.Text(), nullable=False),
         sa.PrimaryKeyConstraint("seq", name="pk_journal"),
         sa.CheckConstraint("action IN ('add', 'amend', 'strike')", name=op.f("ck_journal_action")),
-        sa.CheckConstraint("at LIKE '____-__-__T__:__:__.______Z'", name=op.f("ck_journal_at_utc")).ddl_if("sqlite"),
+        sa.CheckConstraint(f"at GLOB '{UTC_SHAPE}'", name=op.f("ck_journal_at_utc")).ddl_if("sqlite"),
         sa.CheckConstraint("length(hash) = 64 AND length(previous_hash) = 64", name=op.f("ck_journal_hash")),
         sa.CheckConstraint("seq > 0", name=op.f("ck_journal_seq")),
         sa.UniqueConstraint("hash", name=op.f("uq_journal_hash")),
@@ -145,9 +146,10 @@ def _create_waveforms() -> None:
         sa.Column("note", sa.Text()),
         sa.Column("struck", sa.Integer()),
         sa.PrimaryKeyConstraint("id", name="pk_waveforms"),
-        sa.CheckConstraint("frequency_hz > 0 AND frequency_hz <= 1e+300", name=op.f("ck_waveforms_frequency_hz")),
+        sa.CheckConstraint("frequency_hz > 0 AND frequency_hz <= 1e+60", name=op.f("ck_waveforms_frequency_hz")),
         sa.CheckConstraint("length(note) BETWEEN 1 AND 100000", name=op.f("ck_waveforms_note")),
-        sa.CheckConstraint("scan_rate_v_s > 0 AND scan_rate_v_s <= 1e+300", name=op.f("ck_waveforms_scan_rate_v_s")),
+        sa.CheckConstraint("scan_rate_v_s > 0 AND scan_rate_v_s <= 1e+60", name=op.f("ck_waveforms_scan_rate_v_s")),
+        sa.CheckConstraint("length(vertices_v) BETWEEN 3 AND 100000", name=op.f("ck_waveforms_vertices_v")),
         sa.CheckConstraint("length(waveform) BETWEEN 1 AND 200", name=op.f("ck_waveforms_waveform")),
         sa.ForeignKeyConstraint(["struck"], ["journal.seq"], name=op.f("fk_waveforms_struck")),
         sqlite_strict=True,
@@ -180,6 +182,7 @@ def _create_batches() -> None:
         ),
         sa.CheckConstraint("length(insulation) BETWEEN 1 AND 200", name=op.f("ck_batches_insulation")),
         sa.CheckConstraint("length(made_by) BETWEEN 1 AND 100000", name=op.f("ck_batches_made_by")),
+        sa.CheckConstraint("made_on LIKE '____-__-__'", name=op.f("ck_batches_made_on")),
         sa.CheckConstraint("length(note) BETWEEN 1 AND 100000", name=op.f("ck_batches_note")),
         sa.CheckConstraint("length(seal) BETWEEN 1 AND 200", name=op.f("ck_batches_seal")),
         sa.ForeignKeyConstraint(["struck"], ["journal.seq"], name=op.f("fk_batches_struck")),
@@ -230,14 +233,12 @@ def _create_inspections() -> None:
         sa.Column("note", sa.Text()),
         sa.Column("struck", sa.Integer()),
         sa.PrimaryKeyConstraint("id", name="pk_inspections"),
-        sa.CheckConstraint("at LIKE '____-__-__T__:__:__.______Z'", name=op.f("ck_inspections_at_utc")).ddl_if(
-            "sqlite"
-        ),
-        sa.CheckConstraint("background_na >= 0 AND background_na <= 1e+300", name=op.f("ck_inspections_background_na")),
+        sa.CheckConstraint(f"at GLOB '{UTC_SHAPE}'", name=op.f("ck_inspections_at_utc")).ddl_if("sqlite"),
+        sa.CheckConstraint("background_na >= 0 AND background_na <= 1e+60", name=op.f("ck_inspections_background_na")),
         sa.CheckConstraint(
             "exposed_length_um > 0 AND exposed_length_um <= 100000", name=op.f("ck_inspections_exposed_length_um")
         ),
-        sa.CheckConstraint("noise_na >= 0 AND noise_na <= 1e+300", name=op.f("ck_inspections_noise_na")),
+        sa.CheckConstraint("noise_na >= 0 AND noise_na <= 1e+60", name=op.f("ck_inspections_noise_na")),
         sa.CheckConstraint("length(note) BETWEEN 1 AND 100000", name=op.f("ck_inspections_note")),
         sa.CheckConstraint("seal_ok IN ('yes', 'no')", name=op.f("ck_inspections_seal_ok")),
         sa.ForeignKeyConstraint(["electrode_id"], ["electrodes.id"], name=op.f("fk_inspections_electrode_id")),
@@ -271,16 +272,18 @@ def _create_coatings() -> None:
         sa.Column("note", sa.Text()),
         sa.Column("struck", sa.Integer()),
         sa.PrimaryKeyConstraint("id", name="pk_coatings"),
-        sa.CheckConstraint("at LIKE '____-__-__T__:__:__.______Z'", name=op.f("ck_coatings_at_utc")).ddl_if("sqlite"),
+        sa.CheckConstraint(f"at GLOB '{UTC_SHAPE}'", name=op.f("ck_coatings_at_utc")).ddl_if("sqlite"),
         sa.CheckConstraint(
             "concentration_wt_pct >= 0 AND concentration_wt_pct <= 100", name=op.f("ck_coatings_concentration_wt_pct")
         ),
-        sa.CheckConstraint("cure_min >= 0 AND cure_min <= 1e+300", name=op.f("ck_coatings_cure_min")),
+        sa.CheckConstraint("cure_min >= 0 AND cure_min <= 1e+60", name=op.f("ck_coatings_cure_min")),
         sa.CheckConstraint(
             "cure_temperature_c >= -273.15 AND cure_temperature_c <= 1000", name=op.f("ck_coatings_cure_temperature_c")
         ),
-        sa.CheckConstraint("duration_s > 0 AND duration_s <= 1e+300", name=op.f("ck_coatings_duration_s")),
-        sa.CheckConstraint("layers >= 1 AND layers <= 1000", name=op.f("ck_coatings_layers")),
+        sa.CheckConstraint("duration_s > 0 AND duration_s <= 1e+60", name=op.f("ck_coatings_duration_s")),
+        sa.CheckConstraint(
+            "layers >= 1 AND layers <= 1000 AND layers = round(layers)", name=op.f("ck_coatings_layers")
+        ),
         sa.CheckConstraint("length(material) BETWEEN 1 AND 200", name=op.f("ck_coatings_material")),
         sa.CheckConstraint("length(method) BETWEEN 1 AND 200", name=op.f("ck_coatings_method")),
         sa.CheckConstraint("length(note) BETWEEN 1 AND 100000", name=op.f("ck_coatings_note")),
@@ -311,9 +314,7 @@ def _create_conditionings() -> None:
         sa.Column("note", sa.Text()),
         sa.Column("struck", sa.Integer()),
         sa.PrimaryKeyConstraint("id", name="pk_conditionings"),
-        sa.CheckConstraint("at LIKE '____-__-__T__:__:__.______Z'", name=op.f("ck_conditionings_at_utc")).ddl_if(
-            "sqlite"
-        ),
+        sa.CheckConstraint(f"at GLOB '{UTC_SHAPE}'", name=op.f("ck_conditionings_at_utc")).ddl_if("sqlite"),
         sa.CheckConstraint("duration_min > 0 AND duration_min <= 5000000", name=op.f("ck_conditionings_duration_min")),
         sa.CheckConstraint("length(medium) BETWEEN 1 AND 200", name=op.f("ck_conditionings_medium")),
         sa.CheckConstraint("length(note) BETWEEN 1 AND 100000", name=op.f("ck_conditionings_note")),
@@ -344,7 +345,7 @@ def _create_cleanings() -> None:
         sa.Column("note", sa.Text()),
         sa.Column("struck", sa.Integer()),
         sa.PrimaryKeyConstraint("id", name="pk_cleanings"),
-        sa.CheckConstraint("at LIKE '____-__-__T__:__:__.______Z'", name=op.f("ck_cleanings_at_utc")).ddl_if("sqlite"),
+        sa.CheckConstraint(f"at GLOB '{UTC_SHAPE}'", name=op.f("ck_cleanings_at_utc")).ddl_if("sqlite"),
         sa.CheckConstraint("duration_min > 0 AND duration_min <= 5000000", name=op.f("ck_cleanings_duration_min")),
         sa.CheckConstraint("length(method) BETWEEN 1 AND 200", name=op.f("ck_cleanings_method")),
         sa.CheckConstraint("length(note) BETWEEN 1 AND 100000", name=op.f("ck_cleanings_note")),
@@ -372,7 +373,7 @@ def _create_recuts() -> None:
         sa.Column("note", sa.Text()),
         sa.Column("struck", sa.Integer()),
         sa.PrimaryKeyConstraint("id", name="pk_recuts"),
-        sa.CheckConstraint("at LIKE '____-__-__T__:__:__.______Z'", name=op.f("ck_recuts_at_utc")).ddl_if("sqlite"),
+        sa.CheckConstraint(f"at GLOB '{UTC_SHAPE}'", name=op.f("ck_recuts_at_utc")).ddl_if("sqlite"),
         sa.CheckConstraint(
             "exposed_length_um > 0 AND exposed_length_um <= 100000", name=op.f("ck_recuts_exposed_length_um")
         ),
@@ -401,16 +402,14 @@ def _create_standards() -> None:
         sa.Column("struck", sa.Integer()),
         sa.PrimaryKeyConstraint("id", name="pk_standards"),
         sa.CheckConstraint(
-            "concentration_um > 0 AND concentration_um <= 1e+300", name=op.f("ck_standards_concentration_um")
+            "concentration_um > 0 AND concentration_um <= 1e+60", name=op.f("ck_standards_concentration_um")
         ),
         sa.CheckConstraint("length(diluent) BETWEEN 1 AND 100000", name=op.f("ck_standards_diluent")),
-        sa.CheckConstraint(
-            "expires_at LIKE '____-__-__T__:__:__.______Z'", name=op.f("ck_standards_expires_at_utc")
-        ).ddl_if("sqlite"),
+        sa.CheckConstraint(f"expires_at GLOB '{UTC_SHAPE}'", name=op.f("ck_standards_expires_at_utc")).ddl_if("sqlite"),
         sa.CheckConstraint("length(note) BETWEEN 1 AND 100000", name=op.f("ck_standards_note")),
-        sa.CheckConstraint(
-            "prepared_at LIKE '____-__-__T__:__:__.______Z'", name=op.f("ck_standards_prepared_at_utc")
-        ).ddl_if("sqlite"),
+        sa.CheckConstraint(f"prepared_at GLOB '{UTC_SHAPE}'", name=op.f("ck_standards_prepared_at_utc")).ddl_if(
+            "sqlite"
+        ),
         sa.CheckConstraint(
             "relative_uncertainty >= 0 AND relative_uncertainty <= 1", name=op.f("ck_standards_relative_uncertainty")
         ),
@@ -449,16 +448,14 @@ def _create_calibrations() -> None:
         sa.Column("note", sa.Text()),
         sa.Column("struck", sa.Integer()),
         sa.PrimaryKeyConstraint("id", name="pk_calibrations"),
-        sa.CheckConstraint("at LIKE '____-__-__T__:__:__.______Z'", name=op.f("ck_calibrations_at_utc")).ddl_if(
-            "sqlite"
-        ),
+        sa.CheckConstraint(f"at GLOB '{UTC_SHAPE}'", name=op.f("ck_calibrations_at_utc")).ddl_if("sqlite"),
         sa.CheckConstraint(
-            "background_na >= -1e300 AND background_na <= 1e+300", name=op.f("ck_calibrations_background_na")
+            "background_na >= -1e+60 AND background_na <= 1e+60", name=op.f("ck_calibrations_background_na")
         ),
         sa.CheckConstraint("length(by) BETWEEN 1 AND 100000", name=op.f("ck_calibrations_by")),
         sa.CheckConstraint("length(calibration) BETWEEN 1 AND 200", name=op.f("ck_calibrations_calibration")),
         sa.CheckConstraint("length(medium) BETWEEN 1 AND 200", name=op.f("ck_calibrations_medium")),
-        sa.CheckConstraint("noise_na >= 0 AND noise_na <= 1e+300", name=op.f("ck_calibrations_noise_na")),
+        sa.CheckConstraint("noise_na >= 0 AND noise_na <= 1e+60", name=op.f("ck_calibrations_noise_na")),
         sa.CheckConstraint("length(note) BETWEEN 1 AND 100000", name=op.f("ck_calibrations_note")),
         sa.CheckConstraint(
             "oxidation_peak_v >= -10 AND oxidation_peak_v <= 10", name=op.f("ck_calibrations_oxidation_peak_v")
@@ -468,11 +465,11 @@ def _create_calibrations() -> None:
         ),
         sa.CheckConstraint("length(rig) BETWEEN 1 AND 200", name=op.f("ck_calibrations_rig")),
         sa.CheckConstraint(
-            "sensitivity_na_um >= -1e300 AND sensitivity_na_um <= 1e+300",
+            "sensitivity_na_um >= -1e+60 AND sensitivity_na_um <= 1e+60",
             name=op.f("ck_calibrations_sensitivity_na_um"),
         ),
         sa.CheckConstraint(
-            "sensitivity_se_na_um >= 0 AND sensitivity_se_na_um <= 1e+300",
+            "sensitivity_se_na_um >= 0 AND sensitivity_se_na_um <= 1e+60",
             name=op.f("ck_calibrations_sensitivity_se_na_um"),
         ),
         sa.CheckConstraint("stage IN ('pre', 'interim', 'post')", name=op.f("ck_calibrations_stage")),
@@ -504,10 +501,10 @@ def _create_calibration_points() -> None:
         sa.Column("struck", sa.Integer()),
         sa.PrimaryKeyConstraint("calibration_id", "ordinal", name="pk_calibration_points"),
         sa.CheckConstraint(
-            "concentration_um >= 0 AND concentration_um <= 1e+300", name=op.f("ck_calibration_points_concentration_um")
+            "concentration_um >= 0 AND concentration_um <= 1e+60", name=op.f("ck_calibration_points_concentration_um")
         ),
         sa.CheckConstraint(
-            "current_na >= -1e300 AND current_na <= 1e+300", name=op.f("ck_calibration_points_current_na")
+            "current_na >= -1e+60 AND current_na <= 1e+60", name=op.f("ck_calibration_points_current_na")
         ),
         sa.ForeignKeyConstraint(
             ["calibration_id"], ["calibrations.id"], name=op.f("fk_calibration_points_calibration_id")
@@ -539,9 +536,7 @@ def _create_exposures() -> None:
         sa.CheckConstraint("length(note) BETWEEN 1 AND 100000", name=op.f("ck_exposures_note")),
         sa.CheckConstraint("length(recording) BETWEEN 1 AND 100000", name=op.f("ck_exposures_recording")),
         sa.CheckConstraint("length(setting) BETWEEN 1 AND 200", name=op.f("ck_exposures_setting")),
-        sa.CheckConstraint("start LIKE '____-__-__T__:__:__.______Z'", name=op.f("ck_exposures_start_utc")).ddl_if(
-            "sqlite"
-        ),
+        sa.CheckConstraint(f"start GLOB '{UTC_SHAPE}'", name=op.f("ck_exposures_start_utc")).ddl_if("sqlite"),
         sa.CheckConstraint("length(subject) BETWEEN 1 AND 100000", name=op.f("ck_exposures_subject")),
         sa.ForeignKeyConstraint(["electrode_id"], ["electrodes.id"], name=op.f("fk_exposures_electrode_id")),
         sa.ForeignKeyConstraint(["struck"], ["journal.seq"], name=op.f("fk_exposures_struck")),
@@ -569,9 +564,7 @@ def _create_retirements() -> None:
         sa.Column("note", sa.Text()),
         sa.Column("struck", sa.Integer()),
         sa.PrimaryKeyConstraint("id", name="pk_retirements"),
-        sa.CheckConstraint("at LIKE '____-__-__T__:__:__.______Z'", name=op.f("ck_retirements_at_utc")).ddl_if(
-            "sqlite"
-        ),
+        sa.CheckConstraint(f"at GLOB '{UTC_SHAPE}'", name=op.f("ck_retirements_at_utc")).ddl_if("sqlite"),
         sa.CheckConstraint("length(note) BETWEEN 1 AND 100000", name=op.f("ck_retirements_note")),
         sa.CheckConstraint("length(reason) BETWEEN 1 AND 200", name=op.f("ck_retirements_reason")),
         sa.ForeignKeyConstraint(["electrode_id"], ["electrodes.id"], name=op.f("fk_retirements_electrode_id")),
@@ -599,7 +592,7 @@ def _create_limits() -> None:
         sa.CheckConstraint("origin IN ('lab decision', 'common practice')", name=op.f("ck_limits_origin")),
         sa.CheckConstraint("length(project) BETWEEN 1 AND 200", name=op.f("ck_limits_project")),
         sa.CheckConstraint("length(rule) BETWEEN 1 AND 200", name=op.f("ck_limits_rule")),
-        sa.CheckConstraint("value >= -1e300 AND value <= 1e+300", name=op.f("ck_limits_value")),
+        sa.CheckConstraint("value >= -1e+60 AND value <= 1e+60", name=op.f("ck_limits_value")),
         sa.ForeignKeyConstraint(["analyte_id"], ["analytes.id"], name=op.f("fk_limits_analyte_id")),
         sa.ForeignKeyConstraint(["struck"], ["journal.seq"], name=op.f("fk_limits_struck")),
         sqlite_strict=True,
