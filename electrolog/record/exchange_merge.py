@@ -6,13 +6,12 @@ from collections import defaultdict
 from dataclasses import dataclass, field
 from typing import Any
 
-from sqlalchemy import update
-
 from electrolog.errors import InputError, shortened
 from electrolog.record import columns as kinds
 from electrolog.record import entry, schema, sheets
 from electrolog.record.builtin import WORDS
 from electrolog.record.columns import Column
+from electrolog.record.exchange_amend import Changes, write_amendment
 from electrolog.record.exchange_faults import Faults
 from electrolog.record.exchange_files import CHUNK, Rows
 from electrolog.record.exchange_known import (
@@ -154,7 +153,7 @@ class SheetMerge:
             return True
         return self.all.points.agree(key, (self.stored.live[row_id], self.stored.every[row_id]))
 
-    def _changes(self, values: Values, row_id: int, held: Values) -> dict[str, tuple[Any, Any]]:
+    def _changes(self, values: Values, row_id: int, held: Values) -> Changes:
         """Columns in which the file says something else than the record: column -> (before, after).
 
         An empty cell says nothing, except of a built-in row that nobody has touched: there the lab's file is the
@@ -207,7 +206,7 @@ class SheetMerge:
             return
         self.counts.filled += 1
         if not self.all.faults:
-            self._write_amendment(row_id, changes)
+            write_amendment(self.all.writer, self.sheet, row_id, changes)
 
     def _refuse_other_value(self, index: int, column: Column, before: Any, after: Any) -> None:
         self._fault(
@@ -215,16 +214,6 @@ class SheetMerge:
             f"{column.name}: found {self._written(column, after)}, the record has {self._written(column, before)};"
             " accepted: the same, or an empty cell; correct the record with `electrolog amend`",
         )
-
-    def _write_amendment(self, row_id: int, changes: dict[str, tuple[Any, Any]]) -> None:
-        writer = self.all.writer
-        columns = {name: schema.column_name(self.sheet.by_name[name]) for name in changes}
-        before = {columns[name]: old for name, (old, _) in changes.items()}
-        after = {columns[name]: new for name, (_, new) in changes.items()}
-        writer.flush()  # a link may lead to a row that waits
-        table = schema.tables[self.sheet.name]
-        writer.connection.execute(update(table).where(table.c.id == row_id).values(after))
-        writer.note("amend", self.sheet.name, row_id, {"before": before, "after": after})
 
     def _add(self, index: int, key: Any, values: Values) -> None:
         points = self.all.points.of(key) if self.sheet is sheets.CALIBRATIONS else []

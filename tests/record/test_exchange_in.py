@@ -10,7 +10,7 @@ import pytest
 from sqlalchemy import select
 
 from electrolog.errors import InputError
-from electrolog.record import amend, journal, schema, sheets
+from electrolog.record import amend, journal, queries, schema, sheets
 from electrolog.record.exchange_in import import_folder
 from electrolog.record.store import Record
 from electrolog.record.verify import verify
@@ -112,6 +112,33 @@ def test_a_link_is_filled_in_with_a_row_of_the_same_folder(record: Record, tmp_p
     take(record, tmp_path, {"electrodes.csv": "electrode\nP1\n"})
     take(record, tmp_path, {"electrodes.csv": "electrode,batch\nP1,B7\n", "batches.csv": "batch\nB7\n"})
     assert column(record, "electrodes", "batch_id") == [1]
+
+
+@pytest.mark.parametrize(
+    ("file", "content"),
+    [
+        (
+            "calibrations.csv",
+            LAB["calibrations.csv"].replace("standard\n", "standard,noise_na\n").replace("S1\n", "S1,0.2\n"),
+        ),
+        (
+            "standards.csv",
+            "standard,analyte,prepared_at,concentration_um,relative_uncertainty\n"
+            "S1,dopamine,2026-01-05T08:00:00Z,1000,0.05\n",
+        ),
+    ],
+)
+def test_no_figure_outlives_what_it_was_made_from(record: Record, tmp_path: Path, file: str, content: str) -> None:
+    take(record, tmp_path, dict(LAB))
+    with record.writing() as writer:
+        queries.keep_figures(writer, {1: ("line-0", {"sensitivity_na_um": 1.0})})
+    take(record, tmp_path, {file: LAB[file]})
+    with record.reading() as connection:
+        assert len(connection.execute(select(schema.calibration_figures)).all()) == 1
+    take(record, tmp_path, {file: content})
+    with record.reading() as connection:
+        assert connection.execute(select(schema.calibration_figures)).all() == []
+        assert verify(connection).whole
 
 
 def test_what_the_record_knows_otherwise_is_a_fault_that_names_both(record: Record, tmp_path: Path) -> None:
