@@ -25,6 +25,7 @@ if TYPE_CHECKING:
     from electrolog.answers.correcting import Corrected
     from electrolog.answers.entering import Entered, NewCalibration
     from electrolog.answers.figures import Recomputed
+    from electrolog.answers.fitting import FittedCohort
     from electrolog.answers.forecasting import Forecast
     from electrolog.answers.history import Reading
     from electrolog.answers.limiting import LimitSet
@@ -165,6 +166,12 @@ class Lab:
 
         demands = Demands(needs_um, project, typed_limits(limits or {}))
         return check(self.record, labels, run, demands, moment)
+
+    def cohort_fit(self, analyte: str, *, fresh: bool = False) -> FittedCohort:
+        """How the lab's probes foul, as its record has taught; `fresh` fits again whatever is kept."""
+        from electrolog.answers.fitting import fitted_cohort
+
+        return fitted_cohort(self.record, analyte, fresh)
 
     def limits(self) -> list[LimitSet]:
         """Every limit there can be, with what the lab has set."""

@@ -1,0 +1,113 @@
+"""A cohort's fit for a person and for a program."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from typing import Any
+
+from electrolog.answers.fitting import Estimate, FittedCohort
+from electrolog.clock import shown_moment
+from electrolog.show.machine import plain, print_json
+from electrolog.show.tables import print_lines, print_table
+from electrolog.units import shown_number, shown_percent
+
+
+def answer(found: FittedCohort, json: bool) -> None:
+    if json:
+        print_json(as_dict(found))
+    else:
+        _print(found)
+
+
+def as_dict(found: FittedCohort) -> dict[str, Any]:
+    """An infinite half-life is null beside its `low`, which says from where on it may lie."""
+    answer: dict[str, Any] = plain(found)
+    answer["suspicious_days"] = [plain(day) for day in found.suspicious_days]
+    return answer
+
+
+def _print(found: FittedCohort) -> None:
+    print_lines(*_head(found))
+    _print_half_lives(found)
+    _print_settings(found)
+    _print_recoveries(found)
+    _print_days(found)
+    print_lines(*_spreads(found), *[f"! {flag}" for flag in found.flags], *[f"! {note}" for note in found.notes])
+
+
+def _head(found: FittedCohort) -> list[str]:
+    when = "just now" if found.made_at is None else shown_moment(found.made_at)
+    shapes = ", ".join(f"{name} {shown_percent(weight)}" for name, weight in found.shapes.items() if weight >= 0.01)
+    lines = [
+        f"{found.analyte}: {found.calibrations} calibrations of {found.probes} probes, retired ones too",
+        f"fitted {when} by {found.method}; median and 90 % interval everywhere",
+        f"shape of loss: {shapes}",
+    ]
+    return lines if found.converged else [*lines, f"! did not converge: look at {_suspects(found)}"]
+
+
+def _suspects(found: FittedCohort) -> str:
+    named = [flag.split(" looks")[0] for flag in found.flags]
+    named += [f"{day.date} ({_who(day.standard, day.rig)})" for day in found.suspicious_days]
+    rest = "entries with a slip of a unit, exposures without hours, days that saw one probe alone"
+    return ", ".join([*named, rest]) + "; until then its numbers are not to be relied on"
+
+
+def _print_half_lives(found: FittedCohort) -> None:
+    print_lines("", "half-life in vivo of a typical probe")
+    columns = ("coating", "waveform", "half-life (h)", "probes", "calibrations")
+    rows = [(o.coating, o.waveform, _span(o.hours, _hours), o.probes, o.calibrations) for o in found.half_lives]
+    print_table(columns, rows, columns[2:])
+
+
+def _print_settings(found: FittedCohort) -> None:
+    print_lines("", "how fast a setting fouls beside in vivo")
+    columns = ("setting", "weight", "hours logged", "probes")
+    rows = [(o.setting, _span(o.weight, shown_number), shown_number(o.exposure_h), o.probes) for o in found.settings]
+    print_table(columns, rows, columns[1:])
+
+
+def _print_recoveries(found: FittedCohort) -> None:
+    if not found.recoveries:
+        return
+    print_lines("", "share of the fouling that a renewal undoes")
+    columns = ("renewal", "undone", "times", "probes")
+    rows = [(one.method, _span(one.share, shown_percent), one.times, one.probes) for one in found.recoveries]
+    print_table(columns, rows, columns[1:])
+
+
+def _print_days(found: FittedCohort) -> None:
+    odd = found.suspicious_days
+    if not odd:
+        print_lines("", f"none of {len(found.days)} calibration days is suspicious")
+        return
+    print_lines("", f"{len(odd)} of {len(found.days)} calibration days are suspicious: standard, rig or reference?")
+    columns = ("date", "standard", "rig", "all readings off by", "probes")
+    rows = [(day.date, day.standard, day.rig, _span(day.effect, _signed), day.probes) for day in odd]
+    print_table(columns, rows, columns[3:], least=("rig",))
+
+
+def _spreads(found: FittedCohort) -> list[str]:
+    spreads = found.spreads
+    named = [("probes differ in level by", spreads.level), ("in rate by", spreads.rate), ("days by", spreads.day)]
+    named.append(("one reading strays by", spreads.residual))
+    said = [f"{name} {_span(value, shown_percent)}" for name, value in named if value is not None]
+    return ["", f"spread (standard deviations): {'; '.join(said)}"]
+
+
+def _span(value: Estimate, shown: Callable[[float], str]) -> str:
+    if value.low == value.high:
+        return shown(value.median)
+    return f"{shown(value.median)} [{shown(value.low)}, {shown(value.high)}]"
+
+
+def _hours(hours: float) -> str:
+    return "never" if hours == float("inf") else shown_number(hours)
+
+
+def _signed(share: float) -> str:
+    return f"{share * 100:+.1f} %"
+
+
+def _who(standard: str, rig: str) -> str:
+    return ", ".join(part for part in (standard, rig) if part) or "standard and rig unknown"
