@@ -13,11 +13,13 @@ from electrolog.fouling.batches import make_batches
 from electrolog.fouling.effects import lay_out_effects, layout_for
 from electrolog.fouling.events import READING, Events
 from electrolog.fouling.fit import METHOD, CohortFit, Component, KeptUnits
+from electrolog.fouling.notes import notes_on
 from electrolog.fouling.parameters import read_scales
 from electrolog.fouling.line_error import LineError, learn_line_error
 from electrolog.fouling.points import normal_points
 from electrolog.fouling.propagation import Problem, combine
 from electrolog.fouling.shapes import ALL_SHAPES, SHAPES
+from electrolog.fouling.summary import Fitted, summarise
 
 Floats = NDArray[np.float64]
 DRAWS = 64  # of the hyper-parameters, over all shapes
@@ -27,28 +29,43 @@ LEAST_WEIGHT = 0.01  # a shape with less is named, but not drawn from
 
 
 def fit_cohort(events: Events, *, shapes: tuple[str, ...] = ALL_SHAPES) -> CohortFit:
+    """Fit every shape to all units' events and weigh them. Deterministic.
+
+    Raises DataError for readings, hours or standard errors that are no numbers.
+    """
     check_events(events)
     fits = fit_shapes(events, shapes)
-    log_evidence = np.array([width.log_evidence + np.log(PRIOR_ODDS.get(p.layout.shape.name, 1.0)) for p, _, width in fits])
-    weight = np.exp(log_evidence - log_evidence.max())
-    weight /= weight.sum()
-    drawn = np.where(weight >= LEAST_WEIGHT, weight, 0.0)
+    weights = weigh(fits)
+    drawn = np.where(weights >= LEAST_WEIGHT, weights, 0.0)
     drawn /= drawn.sum()
-    components = tuple(
-        keep(problem, peak, width, float(w)) for (problem, peak, width), w in zip(fits, drawn, strict=True) if w > 0.0
-    )
+    fitted = [
+        Fitted(problem, peak.outcome, keep(problem, peak, width, float(w)))
+        for (problem, peak, width), w in zip(fits, drawn, strict=True)
+        if w > 0.0
+    ]
+    components = tuple(one.part for one in fitted)
+    unsettled = tuple(p.layout.shape.name for (p, peak, _), w in zip(fits, drawn, strict=True) if w and not peak.converged)
+    shape_weights = dict(zip(shapes, weights.tolist(), strict=True))
     return CohortFit(
         METHOD,
         fingerprint(events),
         line_error_of(events),
-        dict(zip(shapes, weight.tolist(), strict=True)),
+        shape_weights,
         components,
         len(events.units),
         int(np.sum(events.kind == READING)),
-        all(peak.converged for (_, peak, _), w in zip(fits, drawn, strict=True) if w > 0.0),
-        (),
-        {},
+        not unsettled,
+        notes_on(events, components, shape_weights, unsettled),
+        summarise(events, fitted, shape_weights),
     )
+
+
+def weigh(fits: list[tuple[Problem, Peak, Width]]) -> Floats:
+    log_weight = np.array(
+        [width.log_evidence + np.log(PRIOR_ODDS.get(p.layout.shape.name, 1.0)) for p, _, width in fits]
+    )
+    weight = np.exp(log_weight - log_weight.max())
+    return np.asarray(weight / weight.sum())
 
 
 def fit_shapes(events: Events, shapes: tuple[str, ...]) -> list[tuple[Problem, Peak, Width]]:
