@@ -28,7 +28,7 @@ from dataclasses import dataclass, replace
 
 from electrolog.judge import facts as last
 from electrolog.judge import words
-from electrolog.judge.facts import CalibrationFacts, Reason
+from electrolog.judge.facts import CalibrationFacts, Measured, Reason
 from electrolog.judge.limits import Limits
 from electrolog.judge.picture import Outlook
 
@@ -65,24 +65,23 @@ class Decision:
 
 
 def decide(at: Situation) -> Decision:
-    decision = _decide(at)
-    return replace(decision, p_breach=_p_breach(at, decision.word))
+    measured = last.measured(at.calibration, at.uses, at.limits)
+    decision = _decide(at, measured)
+    return replace(decision, p_breach=_p_breach(at, measured, decision.word))
 
 
-def _p_breach(at: Situation, word: str) -> float | None:
-    measured = last.measured(at.calibration, at.uses, at.limits) if at.calibration else None
-    if at.too_wide or (measured and (measured.repairable or measured.final)):
+def _p_breach(at: Situation, measured: Measured, word: str) -> float | None:
+    if at.too_wide or measured.repairable or measured.final:
         return 1.0
     # Where some limit can't be told, the odds of the others are a least value, worth saying only if they decide.
     told = at.asked and not at.untold
     return at.p_end if told or (word == RETIRE and at.p_end > 0) else None
 
 
-def _decide(at: Situation) -> Decision:
+def _decide(at: Situation, measured: Measured) -> Decision:
     facts, risk = at.calibration, at.limits.accepted_risk()
-    final = last.measured(facts, at.uses, at.limits).final if facts else last.too_many_uses(at.uses, at.limits)
-    if final:
-        return Decision(RETIRE, final, by_odds=False)
+    if measured.final:
+        return Decision(RETIRE, measured.final, by_odds=False)
     unset = _unset(at) + (last.clocks_disagree(facts) if facts else ())
     if unset or risk is None:
         return Decision(UNDETERMINED, unset, by_odds=False)
@@ -91,7 +90,7 @@ def _decide(at: Situation) -> Decision:
         return Decision(RECALIBRATE, (said,), by_odds=False)
     if at.p_now >= 1 - risk.value:
         return Decision(RETIRE, (words.broken_already(at.p_now),))
-    return _with_calibration(facts, at)
+    return _with_calibration(facts, at, measured)
 
 
 def _unset(at: Situation) -> tuple[Reason, ...]:
@@ -101,8 +100,7 @@ def _unset(at: Situation) -> tuple[Reason, ...]:
     return (*found, *([] if at.asked else [words.nothing_asked()]))
 
 
-def _with_calibration(facts: CalibrationFacts, at: Situation) -> Decision:
-    measured = last.measured(facts, at.uses, at.limits)
+def _with_calibration(facts: CalibrationFacts, at: Situation, measured: Measured) -> Decision:
     unknown = measured.unknown + tuple(words.untold(rule) for rule in at.untold)
     stale = last.stale(facts, at.limits)
     if stale:

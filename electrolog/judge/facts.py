@@ -109,13 +109,15 @@ class Measured:
     unknown: tuple[Reason, ...]
 
 
-def measured(facts: CalibrationFacts, uses: int, limits: Limits) -> Measured:
-    found = [check for check in (_r_squared(facts, limits), _peak_shift(facts, limits), _noise(facts, limits)) if check]
-    found += [("final", reason) for reason in too_many_uses(uses, limits)]
-    return Measured(*(tuple(reason for kind, reason in found if kind == want) for want in _KINDS))
+def measured(facts: CalibrationFacts | None, uses: int, limits: Limits) -> Measured:
+    sorted_out: dict[str, list[Reason]] = {"repairable": [], "final": _too_many_uses(uses, limits), "unknown": []}
+    for check in (_r_squared, _peak_shift, _noise):
+        found = check(facts, limits) if facts else None
+        if found is not None:
+            sorted_out[found[0]].append(found[1])
+    return Measured(**{kind: tuple(reasons) for kind, reasons in sorted_out.items()})
 
 
-_KINDS = ("repairable", "final", "unknown")
 _Check = tuple[str, Reason] | None
 
 
@@ -165,11 +167,11 @@ def _noise(facts: CalibrationFacts, limits: Limits) -> _Check:
     return "repairable", Reason(rule, f"{text}: look at the ground and the seal, and measure again")
 
 
-def too_many_uses(uses: int, limits: Limits) -> tuple[Reason, ...]:
+def _too_many_uses(uses: int, limits: Limits) -> list[Reason]:
     most = limits.value("most-uses")
     if most is None or uses + 1 <= most:
-        return ()
-    return (Reason("most-uses", f"the probe has served {uses} runs; the limit is {most:.0f}, this one included"),)
+        return []
+    return [Reason("most-uses", f"the probe has served {uses} runs; the limit is {most:.0f}, this one included")]
 
 
 def _hours(hours: float) -> str:

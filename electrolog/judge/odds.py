@@ -88,7 +88,10 @@ def any_breach(log_sensitivity: Array, beside: Beside, ends: EndLimits) -> Mask:
 
     What can't be told (None, or NaN for one probe of a shelf) breaks nothing here; who asks names it.
     """
-    least = least_log_sensitivity(beside, ends)
+    return below(log_sensitivity, least_log_sensitivity(beside, ends))
+
+
+def below(log_sensitivity: Array, least: Array | None) -> Mask:
     return np.zeros(log_sensitivity.shape, dtype=bool) if least is None else np.asarray(log_sensitivity < least)
 
 

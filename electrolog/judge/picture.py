@@ -8,7 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from electrolog.judge import odds
-from electrolog.judge.facts import noise_of
+from electrolog.judge.facts import noise_of, stale
 from electrolog.judge.question import Question
 from electrolog.judge.value import ValueOfCalibration, value_of_calibration
 
@@ -96,6 +96,7 @@ def _outlook(
         reading_sd_log=question.reading_sd_log,
         accepted_risk=risk.value,
         widest_interval=ends.widest_interval,
+        stands=question.calibration is not None and not stale(question.calibration, question.limits),
     )
 
     def holds_at(minutes: NDArray[np.int64]) -> NDArray[np.bool_]:

@@ -100,7 +100,8 @@ def _look(shelf: Shelf) -> _Seen:
     log_now, log_end = shelf.log_sensitivity_at(0.0), shelf.log_sensitivity_at(shelf.run_min)
     reference, noise_na = shelf.reference_log_sensitivity, _noise(shelf.calibrations, log_now.shape[1])
     beside, ends = odds.Beside(reference, noise_na), odds.EndLimits.of(shelf.limits, shelf.needs_um)
-    broken_now, broken_end = (odds.any_breach(log, beside, ends) for log in (log_now, log_end))
+    least = odds.least_log_sensitivity(beside, ends)
+    broken_now, broken_end = (odds.below(log, least) for log in (log_now, log_end))
     widest = ends.widest_interval
     middle = np.median(log_end, axis=1)
     return _Seen(

@@ -14,7 +14,8 @@ from numpy.typing import NDArray
 
 Array = NDArray[np.float64]
 
-OUTCOMES = 64
+OUTCOMES = 128
+GOLDEN = (5**0.5 - 1) / 2
 FEWEST_DRAWS = 20  # an outcome explained by fewer draws than this would be judged by chance
 
 
@@ -44,22 +45,29 @@ def value_of_calibration(
     reading_sd_log: float,
     accepted_risk: float,
     widest_interval: float | None = None,
+    stands: bool = True,
     outcomes: int = OUTCOMES,
 ) -> ValueOfCalibration:
-    """From joint draws (D,) of one probe; reading_sd_log: how far one calibration's reading strays from the truth."""
+    """From joint draws (D,) of one probe.
+
+    reading_sd_log: how far one calibration's reading strays from the truth. stands: whether the last calibration still
+    does; where it doesn't, the probe can only be set aside as things are.
+    """
     weights = _weights(log_now, reading_sd_log, outcomes)
     p_after = weights @ broken_at_end
     most_wide = np.inf if widest_interval is None else widest_interval
     fit = (p_after <= accepted_risk) & (_width(weights, log_end) <= most_wide)
     sound = (weights @ broken_now <= accepted_risk) & (_width(weights, log_now) <= most_wide)
     p_before = float(broken_at_end.mean())
+    aside = float(_set_aside(p_before, accepted_risk))
+    loss_now = min(p_before, aside) if stands else aside
     return ValueOfCalibration(
         chance_fit=float(fit.mean()),
         chance_any_run=float(sound.mean()),
         p_breach_if_fit=_mean(p_after[fit]),
         p_breach_if_not=_mean(p_after[~fit]),
         narrowing=_narrowing(p_before, p_after),
-        saved_runs=max(0.0, float(_loss(p_before, accepted_risk) - _loss(p_after, accepted_risk).mean())),
+        saved_runs=max(0.0, loss_now - float(np.minimum(p_after, _set_aside(p_after, accepted_risk)).mean())),
     )
 
 
@@ -67,8 +75,10 @@ def _weights(log_now: Array, reading_sd_log: float, outcomes: int) -> Array:
     """(outcomes, D) weights of the draws after each likely reading; each row sums to 1."""
     from scipy.special import ndtri
 
-    truths = np.sort(log_now)[((np.arange(outcomes) + 0.5) / outcomes * len(log_now)).astype(int)]
-    errors = np.random.default_rng(outcomes).permutation(ndtri((np.arange(outcomes) + 0.5) / outcomes))
+    index = np.arange(outcomes)
+    truths = np.sort(log_now)[((index + 0.5) / outcomes * len(log_now)).astype(int)]
+    # Even in the truths, even in the errors, and by the golden ratio's lattice even in both together.
+    errors = ndtri((index * GOLDEN + 0.5 / outcomes) % 1)
     floor = float(np.std(log_now)) * FEWEST_DRAWS / len(log_now)
     sd = max(reading_sd_log, floor, 1e-9)
     misfit = ((truths + sd * errors)[:, None] - log_now) / sd
@@ -91,13 +101,12 @@ def _narrowing(p_before: float, p_after: Array) -> float:
     return float(np.clip(1 - (p_after * (1 - p_after)).mean() / before, 0.0, 1.0)) if before > 0 else 0.0
 
 
-def _loss(p_breach: Array | float, accepted_risk: float) -> Array:
-    """Expected loss of the better choice: take it (p wasted runs) or set it aside ((1 − p) probes).
+def _set_aside(p_breach: Array | float, accepted_risk: float) -> Array:
+    """Expected loss of setting a probe aside that is good with odds 1 − p, in wasted runs.
 
-    A probe costs risk / (1 − risk) runs: that is what accepting the risk says.
+    A probe costs risk / (1 − risk) runs: that is what accepting the risk says. Taking it loses p runs.
     """
-    p = np.asarray(p_breach, dtype=float)
-    return np.asarray(np.minimum(p, (1 - p) * accepted_risk / (1 - accepted_risk)))
+    return np.asarray((1 - np.asarray(p_breach)) * accepted_risk / (1 - accepted_risk))
 
 
 def _mean(values: Array) -> float | None:

@@ -11,7 +11,7 @@ from electrolog.judge.facts import CalibrationFacts
 from electrolog.judge.limits import LimitRow, Limits, effective
 from electrolog.judge.question import Question
 
-DRAWS = 2000
+DRAWS = 1000
 LEVELS = ndtri((np.arange(DRAWS) + 0.5) / DRAWS)
 # Even alone and, by the golden ratio's lattice, both together: the odds are then exact to about 1 / DRAWS.
 SHUFFLED = ndtri((np.arange(DRAWS) * (np.sqrt(5) - 1) / 2 + 0.5 / DRAWS) % 1)

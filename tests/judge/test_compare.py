@@ -73,10 +73,10 @@ def test_holm_is_that_of_r_and_of_statsmodels():
 def test_groups_that_do_not_differ_are_rarely_called_different_however_many_are_asked():
     rng = np.random.default_rng(5)
     called = 0
-    for _ in range(150):
+    for _ in range(100):
         groups = {name: rng.normal(size=12) for name in "abcde"}
         called += any(difference.clear for difference in compare(Groups(values={"level": groups})).differences)
-    assert called / 150 < 0.05 + 3 * np.sqrt(0.05 * 0.95 / 150)
+    assert called / 100 < 0.05 + 3 * np.sqrt(0.05 * 0.95 / 100)
 
 
 def test_a_real_difference_is_clear():
@@ -134,6 +134,6 @@ def test_with_the_probes_it_asks_for_the_difference_is_found_as_often_as_promise
     count = power.probes_for_mean(0.8)
     found = [
         only(Groups(values={"x": {"a": rng.normal(0.8, 1, count), "b": rng.normal(0, 1, count)}})).clear
-        for _ in range(400)
+        for _ in range(250)
     ]
     assert np.mean(found) == pytest.approx(0.8, abs=0.06)

@@ -6,7 +6,7 @@ from known_probes import Known, limits, question
 
 from electrolog.judge.verdict import judge
 
-PROBES, RISK, RUN_MIN, READING_SD = 1500, 0.05, 240.0, 0.04
+PROBES, RISK, RUN_MIN, READING_SD = 800, 0.05, 240.0, 0.04
 
 
 @pytest.fixture(scope="module")
@@ -44,7 +44,7 @@ def test_the_retired_were_broken_as_often_as_was_said(lab):
     truth, _, _, verdicts = lab
     said = np.array([verdict.p_breach_now for verdict in verdicts if verdict.verdict == "retire"])
     broken = truth[called(verdicts, "retire")] < np.log(0.7)
-    assert len(said) > 30
+    assert len(said) > 20
     assert said.min() > 0.5
     assert abs(broken.mean() - said.mean()) < 2.5 * np.sqrt((said * (1 - said)).sum()) / len(said)
 

@@ -111,6 +111,7 @@ def test_where_a_calibration_could_settle_it_recalibrate_says_its_chance():
     verdict = judge(question(Known(log_share=-0.15, sd=0.15, rate=0.01)))
     assert verdict.verdict == "recalibrate"
     assert verdict.value_of_calibration.chance_fit > 0.5
+    assert rules(verdict) == ["least-share-left"]
     assert any(change.what == "recalibrate" and "chance" in change.text for change in verdict.changes)
 
 
@@ -163,6 +164,15 @@ def test_without_noise_a_detection_limit_is_undetermined():
     }
 
 
+def test_odds_of_some_limits_alone_are_not_the_odds_unless_they_decide():
+    silent = fresh(noise_na=None)
+    worn = judge(question(Known(log_share=-0.33, sd=0.05), calibration=silent, needs_um=0.05))
+    assert (worn.verdict, worn.p_breach) == ("undetermined", None)
+    assert worn.p_by_rule["least-share-left"] > 0.3
+    dead = judge(question(Known(log_share=-1.0), calibration=silent, needs_um=0.05))
+    assert (dead.verdict, dead.p_breach) == ("retire", 1.0)
+
+
 def test_noise_from_few_points_widens_the_detection_limit():
     """s·√(ν/χ²) at ν = 2: the 95 % quantile is s·√(2/0.1026) = 4.42 s (χ² tables, 0.05 quantile 0.1026)."""
     few = fresh(noise_na=None, residual_sd_na=0.05, residual_degrees_of_freedom=2)
@@ -193,6 +203,9 @@ def test_a_set_limit_that_nobody_measured_is_undetermined():
         ({"highest_noise": 0.04}, {"noise_na": 0.05}, "recalibrate"),
         ({"highest_noise": 0.04}, {"noise_na": 0.05, "noise_before_na": 0.06}, "retire"),
         ({"highest_noise": 0.06}, {"noise_na": 0.05, "noise_before_na": 0.08}, "fit"),
+        ({"highest_noise": 0.05}, {"noise_na": 0.05}, "fit"),
+        ({"lowest_r_squared": 0.99}, {"r_squared": 0.99}, "fit"),
+        ({"largest_peak_shift": 0.05}, {"peak_shift_v": -0.05}, "fit"),
     ],
 )
 def test_what_the_last_calibration_itself_broke(limit, measured, word):
