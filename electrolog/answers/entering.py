@@ -2,13 +2,15 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from datetime import tzinfo
+from itertools import count
 from typing import Any
 
 from electrolog.answers import doubts as asked
 from electrolog.answers import figures as made
+from electrolog.answers.handling import split
 from electrolog.answers.labels import expanded, known_labels, numbered
 from electrolog.errors import DoubtfulEntry, InputError, shortened, unknown, with_article
 from electrolog.measure.calibrate import CalibrationFigures
@@ -81,8 +83,14 @@ def log_calibrations(
 ) -> list[Entered]:
     """Calibrations with their points and figures; a label that isn't given is the next free number."""
     with record.writing() as writer:
-        rows = [(_labelled(writer, item.values, zone, place), item.points) for place, item in enumerate(new)]
+        labels = _labels(writer, new)
+        rows = [
+            (_labelled(writer, one.values, label, zone), one.points) for one, label in zip(new, labels, strict=True)
+        ]
         uncertainties = made.standards_uncertainties(writer.connection)
+        for row, points in rows:
+            _, handling = split(row.get("note"))  # type: ignore[arg-type]
+            handling.weights_of(points)  # asked for and not to be had: said before anything is written
         computed = [made.computed(_as_calibration(row, points), uncertainties) for row, points in rows]
         said = _doubts(writer, sheets.CALIBRATIONS, [row for row, _ in rows])
         for (row, points), figures in zip(rows, computed, strict=True):
@@ -139,9 +147,8 @@ def _first_free(stem: str, known: Mapping[str, object]) -> int:
     return max((int(tail) for tail in taken if tail.isdigit()), default=0) + 1
 
 
-def _labelled(writer: Writer, typed: Typed, zone: tzinfo | None, place: int) -> dict[str, Value]:
-    """With its probe's own spelling, and a label if none was given: C0001, C0002, …"""
-    label = typed.get("calibration") or _next_label(writer, place)
+def _labelled(writer: Writer, typed: Typed, label: str, zone: tzinfo | None) -> dict[str, Value]:
+    """With its probe's own spelling, and its label."""
     electrodes = known_labels(writer.connection, [str(typed["electrode"])], writer.names)
     if len(electrodes) > 1:
         raise InputError(
@@ -151,11 +158,18 @@ def _labelled(writer: Writer, typed: Typed, zone: tzinfo | None, place: int) -> 
     return read(sheets.CALIBRATIONS, {**typed, "calibration": label, "electrode": electrodes[0]}, zone)
 
 
-def _next_label(writer: Writer, place: int) -> str:
-    number = queries.newest_id(writer.connection, sheets.CALIBRATIONS) + 1 + place
-    while writer.names.spelled("calibrations", f"C{number:04d}") is not None:
-        number += 1
-    return f"C{number:04d}"
+def _labels(writer: Writer, new: Sequence[NewCalibration]) -> list[str]:
+    given = [str(one.values.get("calibration") or "") for one in new]
+    free = _free_labels(writer, given)
+    return [label or next(free) for label in given]
+
+
+def _free_labels(writer: Writer, taken: Sequence[str]) -> Iterator[str]:
+    """The next numbers that no calibration has: C0001, C0002, …"""
+    for number in count(queries.newest_id(writer.connection, sheets.CALIBRATIONS) + 1):
+        label = f"C{number:04d}"
+        if label not in taken and writer.names.spelled("calibrations", label) is None:
+            yield label
 
 
 def _as_calibration(row: dict[str, Value], points: Points) -> queries.Calibration:

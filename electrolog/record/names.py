@@ -16,6 +16,7 @@ class Names:
     def __init__(self, connection: Connection) -> None:
         self._connection = connection
         self._known: dict[tuple[str, str], int] = {}
+        self._added: dict[tuple[str, str], str] = {}
         self._complete: dict[str, dict[str, tuple[str, int]]] = {}
         self._words: dict[str, dict[str, str]] | None = None
         self._abbreviations: dict[str, int] | None = None
@@ -37,7 +38,8 @@ class Names:
         return found
 
     def add(self, sheet: str, name: str, row_id: int) -> None:
-        """A row inserted in this transaction."""
+        """A row inserted in this transaction, which the database may not have been given yet."""
+        self._added[sheet, name.casefold()] = name
         self._known[sheet, name] = row_id
         if sheet in self._complete:
             self._complete[sheet][name.casefold()] = (name, row_id)
@@ -47,8 +49,9 @@ class Names:
 
     def spelled(self, sheet: str, name: str) -> str | None:
         """How a live row of that name is spelled, if there is one that looks the same."""
-        if (sheet, name) in self._known and sheet in self._complete:
-            return name
+        added = self._added.get((sheet, name.casefold()))
+        if added is not None:
+            return added
         if sheet in self._complete or not name.isascii():  # the database's own lower() knows ASCII only
             found = self.everything(sheet).get(name.casefold())
             return found[0] if found else None

@@ -7,12 +7,13 @@ import sys
 import tempfile
 import warnings
 from collections.abc import Callable, Iterator
+from functools import cache
 from itertools import count
 from pathlib import Path
 from typing import Any
 
 import pytest
-from sqlalchemy import create_engine, text
+from sqlalchemy import create_engine, make_url, text
 
 from electrolog.answers.entering import NewCalibration
 from electrolog.lab import Lab, open_lab, set_up
@@ -93,14 +94,27 @@ def _new_database(base: str, template: str) -> str:
     return base.replace("/postgres?", f"/{name}?")
 
 
+@pytest.fixture(scope="session")
+def lived_in_template(request: pytest.FixtureRequest, tmp_path_factory: pytest.TempPathFactory) -> Callable[[str], str]:
+    """The place of a record with some life in it, by engine; made once, to be copied."""
+
+    @cache
+    def place(engine_name: str) -> str:
+        if engine_name == "sqlite":
+            path = tmp_path_factory.mktemp("lived") / "record.db"
+            where = str(shutil.copy(request.getfixturevalue("empty_file"), path))
+        else:
+            where = _new_database(request.getfixturevalue("postgresql"), "electrolog_empty")
+        live(open_lab(where, who="wren"))
+        return where
+
+    return place
+
+
 @pytest.fixture(scope="session", params=ENGINES)
-def shared(request: pytest.FixtureRequest, tmp_path_factory: pytest.TempPathFactory) -> Lab:
-    """The lived-in record, for the many tests that leave it as it was."""
-    if request.param == "sqlite":
-        place = shutil.copy(request.getfixturevalue("empty_file"), tmp_path_factory.mktemp("shared") / "record.db")
-    else:
-        place = _new_database(request.getfixturevalue("postgresql"), "electrolog_empty")
-    return live(open_lab(str(place), who="wren"))
+def shared(request: pytest.FixtureRequest, lived_in_template: Callable[[str], str]) -> Lab:
+    """The lived-in record itself, for the many tests that leave it as it was."""
+    return open_lab(lived_in_template(request.param), who="wren")
 
 
 @pytest.fixture
@@ -109,9 +123,14 @@ def lab(where: str) -> Lab:
 
 
 @pytest.fixture
-def lived_in(lab: Lab) -> Lab:
+def lived_in(
+    engine_name: str, lived_in_template: Callable[[str], str], request: pytest.FixtureRequest, tmp_path: Path
+) -> Lab:
     """Two probes with a bit of everything that can happen to one."""
-    return live(lab)
+    template = lived_in_template(engine_name)
+    if engine_name == "sqlite":
+        return open_lab(str(shutil.copy(template, tmp_path / "record.db")), who="wren")
+    return open_lab(_new_database(request.getfixturevalue("postgresql"), str(make_url(template).database)), who="wren")
 
 
 def live(lab: Lab) -> Lab:
