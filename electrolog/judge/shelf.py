@@ -98,7 +98,7 @@ class _Seen:
 
 def _look(shelf: Shelf) -> _Seen:
     log_now, log_end = shelf.log_sensitivity_at(0.0), shelf.log_sensitivity_at(shelf.run_min)
-    reference, noise_na = shelf.reference_log_sensitivity, _noise(shelf.calibrations, log_now.shape[1])
+    reference, noise_na = shelf.reference_log_sensitivity, noise_draws(shelf.calibrations, log_now.shape[1])
     beside, ends = odds.Beside(reference, noise_na), odds.EndLimits.of(shelf.limits, shelf.needs_um)
     least = odds.least_log_sensitivity(beside, ends)
     broken_now, broken_end = (odds.below(log, least) for log in (log_now, log_end))
@@ -121,7 +121,7 @@ def _look(shelf: Shelf) -> _Seen:
     )
 
 
-def _noise(calibrations: Sequence[CalibrationFacts | None], draws: int) -> Array:
+def noise_draws(calibrations: Sequence[CalibrationFacts | None], draws: int) -> Array:
     """(U, D), or (U, 1) where every noise is taken as known; rows of NaN where nothing is known."""
     noises = [noise_of(facts) if facts else None for facts in calibrations]
     uncertain = any(noise and noise.degrees_of_freedom for noise in noises)

@@ -83,7 +83,9 @@ def test_a_risk_that_costs_deny_is_a_contradiction():
 
 @pytest.mark.parametrize("alone", ["cost-of-wasted-run", "cost-of-discarded-probe"])
 def test_one_cost_without_the_other_names_the_missing_one(alone):
-    (said,) = contradictions(effective([LimitRow(alone, 3.0, "lab decision")]))
+    limits = effective([LimitRow(alone, 3.0, "lab decision")])
+    assert limits.accepted_risk() is None
+    (said,) = contradictions(limits)
     assert said.startswith(alone)
     assert "cost-of" in said.split("without ")[1]
     assert said.split("without ")[1][:20] != alone[:20]

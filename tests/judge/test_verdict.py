@@ -130,6 +130,23 @@ def test_most_likely_broken_and_beyond_what_a_calibration_tells_is_retired():
     assert verdict.verdict == "retire"
 
 
+@pytest.mark.parametrize(
+    ("probe", "reading_sd_log"),
+    [
+        (
+            Known(log_share=math.log(0.7) - 0.01, sd=0.1, rate=0.2),
+            0.03,
+        ),  # likelier broken than not, but it could read well
+        (Known(log_share=math.log(0.7) + 0.01, sd=0.02, rate=0.05), 0.5),  # hardly to be cleared, but likelier sound
+    ],
+)
+def test_what_may_be_sound_is_not_thrown_away_for_a_run_too_long(probe, reading_sd_log):
+    verdict = judge(question(probe, reading_sd_log=reading_sd_log))
+    assert verdict.value_of_calibration.chance_fit < 0.1
+    assert verdict.p_breach_now > 0.05
+    assert (verdict.verdict, rules(verdict)[0]) == ("recalibrate", "run-length")
+
+
 def test_cleaning_first_is_offered_by_the_labs_own_recovery():
     worn, cleaned = Known(log_share=-0.3, sd=0.05, rate=0.05), Known(log_share=-0.05, sd=0.05, rate=0.05)
     verdict = judge(question(worn, after_cleaning={"ethanol dip": cleaned.log_sensitivity_at}))
