@@ -1,0 +1,118 @@
+"""Migrations on records with rows in them: up, down, and a checked copy before anything is touched."""
+
+from __future__ import annotations
+
+import sqlite3
+from collections.abc import Callable
+from contextlib import closing
+from pathlib import Path
+from typing import Any
+
+import pytest
+from sqlalchemy import inspect
+
+from electrolog.errors import RecordError
+from electrolog.lab import Lab, open_lab, set_up
+from electrolog.record import builtin, migrate, schema
+from electrolog.record.store import open_record
+
+Raw = Callable[..., list[Any]]
+
+
+def revision(lab: Lab, raw: Raw) -> Any:
+    return raw(lab, "SELECT version_num FROM alembic_version")
+
+
+def test_a_record_is_made_once(blank: str) -> None:
+    assert set_up(blank).what == "made"
+    assert set_up(blank).what == "up to date already"
+    lab = open_lab(blank)
+    assert len(lab.rows("analytes")) == len(builtin.ANALYTES)
+    assert {entry.reason for entry in lab.journal()} == {builtin.REASON}
+    assert lab.verify().whole
+
+
+def test_a_populated_record_goes_down_and_up_again(lived_in: Lab, raw: Raw) -> None:
+    migrate.to_revision(lived_in.record, "base")
+    assert set(inspect(lived_in.record.engine).get_table_names()) == {"alembic_version"}
+    migrate.to_revision(lived_in.record, schema.REVISION)
+    assert revision(lived_in, raw) == [(schema.REVISION,)]
+    builtin.add_all(lived_in.record)
+    assert lived_in.verify().whole
+    with pytest.raises(Exception, match="keeps every row"):
+        raw(lived_in, "DELETE FROM analytes")
+
+
+def test_migrating_to_where_it_stands_changes_nothing(lived_in: Lab, raw: Raw) -> None:
+    before = lived_in.verify()
+    migrate.to_revision(lived_in.record, schema.REVISION)
+    assert lived_in.verify() == before
+    assert revision(lived_in, raw) == [(schema.REVISION,)]
+
+
+def test_a_revision_nobody_ever_made_is_refused(lived_in: Lab, raw: Raw) -> None:
+    raw(lived_in, "UPDATE alembic_version SET version_num = '0000'")
+    with pytest.raises(RecordError, match="older version"):
+        open_record(str(lived_in.record.engine.url.render_as_string(False)))
+    with pytest.raises(RecordError, match="has never had"):
+        migrate.to_revision(lived_in.record, schema.REVISION)
+
+
+def test_a_newer_record_is_left_alone(lived_in: Lab, raw: Raw) -> None:
+    raw(lived_in, "UPDATE alembic_version SET version_num = '9999'")
+    where = lived_in.record.engine.url.render_as_string(False)
+    for door in (open_lab, set_up):
+        with pytest.raises(RecordError, match="newer electrolog"):
+            door(where)
+
+
+def test_a_copy_is_whole(lived_in: Lab) -> None:
+    if not lived_in.record.is_file:
+        pytest.skip("a server's database is copied by its own tools")
+    copy = migrate.copy_of_file(lived_in.record)
+    assert copy.parent == Path(lived_in.record.name).parent
+    assert open_lab(str(copy)).verify() == lived_in.verify()
+    with closing(sqlite3.connect(copy)) as connection:
+        assert connection.execute("PRAGMA integrity_check").fetchall() == [("ok",)]
+
+
+def test_a_copy_holds_what_is_still_in_the_write_ahead_log(lived_in: Lab) -> None:
+    if not lived_in.record.is_file:
+        pytest.skip("a file's own matter")
+    with closing(sqlite3.connect(lived_in.record.name)) as keeps_the_log:
+        keeps_the_log.execute("PRAGMA wal_autocheckpoint = 0")
+        keeps_the_log.execute("SELECT count(*) FROM journal").fetchone()
+        lived_in.make_probes(["LATE-1"])
+        copy = migrate.copy_of_file(lived_in.record)
+    assert open_lab(str(copy)).labels(["LATE-1"]) == ["LATE-1"]
+
+
+def test_bringing_an_older_record_up_makes_a_copy_first(lived_in: Lab, raw: Raw) -> None:
+    """There is one revision yet, so the step up is from nothing: the copy holds the record as it was."""
+    before = lived_in.verify()
+    copy = migrate.upgrade(lived_in.record)
+    assert lived_in.verify() == before
+    if lived_in.record.is_file:
+        assert copy is not None
+        assert open_lab(str(copy)).verify() == before
+    else:
+        assert copy is None
+
+
+def test_a_migration_that_would_break_a_link_is_rolled_back(lived_in: Lab, raw: Raw) -> None:
+    if not lived_in.record.is_file:
+        pytest.skip("PostgreSQL checks links itself")
+    with closing(sqlite3.connect(lived_in.record.name)) as connection:  # foreign keys are off here
+        connection.execute("UPDATE exposures SET electrode_id = 999")
+        connection.commit()
+    with pytest.raises(RecordError, match="break 1 links"):
+        migrate.to_revision(lived_in.record, schema.REVISION)
+
+
+def test_a_new_record_is_in_write_ahead_mode(blank: str) -> None:
+    """Readers block nobody, and nobody blocks them."""
+    if "://" in blank:
+        pytest.skip("a file's own matter")
+    set_up(blank)
+    with closing(sqlite3.connect(blank)) as connection:
+        assert connection.execute("PRAGMA journal_mode").fetchone() == ("wal",)
