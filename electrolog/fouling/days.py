@@ -27,12 +27,17 @@ class DayPrior:
     score: Floats  # (days, 3)
 
 
-def day_prior(scales: Scales, mean: Floats, variance: Floats) -> DayPrior:
-    """mean, variance (days,): of each day's effect by its readings alone."""
+def day_prior(scales: Scales, mean: Floats, variance: Floats, lonely: NDArray[np.bool_]) -> DayPrior:
+    """mean, variance (days,): of each day's effect by its readings alone.
+
+    A lonely day saw one unit. There a bad day and a slip would explain the same reading, and two stand-ins that can
+    both give way never settle: its prior is the good days' alone, and what is far off is the unit's own slip.
+    """
     spread = np.stack(np.broadcast_arrays(scales.day_sd**2, scales.bad_day_sd**2))[:, None]
     total = spread + variance
     odds = scales.bad_day_odds
     log_share = np.stack([-np.log1p(odds), np.log(odds) - np.log1p(odds)])[:, None]
+    log_share = np.where(lonely, [[0.0], [-np.inf]], log_share)
     log_each = log_share - 0.5 * (np.log(2.0 * np.pi * total) + mean**2 / total)
     top = log_each.max(axis=0)
     weight = np.exp(log_each - top)
@@ -47,5 +52,5 @@ def day_prior(scales: Scales, mean: Floats, variance: Floats) -> DayPrior:
         gradient,
         curvature,
         weight[1],
-        np.stack([by_variance[0], by_variance[1], weight[1] - odds / (1.0 + odds)], axis=-1),
+        np.stack([by_variance[0], by_variance[1], np.where(lonely, 0.0, weight[1] - odds / (1.0 + odds))], axis=-1),
     )

@@ -24,7 +24,8 @@ LEVEL_MEAN, LEVEL_MEAN_SD = 2.3, 2.5  # log of 10 nA/µM, and 12-fold either way
 class Effects:
     """Columns of psi. `name` per column: (level,), (latent, k), (level | rate, factor, value), (day, name).
 
-    `variance_slot` per column says where its prior variance comes from: -2 a day, whose prior is no Gaussian; -1 fixed; g the g-th group sd.
+    `variance_slot` per column says where its prior variance comes from: -3 a day that saw one unit alone, -2 any
+    other day (the priors of days stand in days.py); -1 fixed; g the g-th group sd.
     """
 
     names: tuple[tuple[str, ...], ...]
@@ -41,7 +42,11 @@ class Effects:
 
     @property
     def is_day(self) -> NDArray[np.bool_]:
-        return self.variance_slot == -2
+        return self.variance_slot <= -2
+
+    @property
+    def lonely(self) -> NDArray[np.bool_]:
+        return self.variance_slot == -3
 
 
 def lay_out_effects(shape: Shape, group_sds: tuple[tuple[str, str], ...], events: Events) -> Effects:
@@ -59,10 +64,17 @@ def lay_out_effects(shape: Shape, group_sds: tuple[tuple[str, str], ...], events
         variances += [0.0] * len(values)
     used = np.unique(events.which[events.kind == READING])
     names += [("day", events.days[k]) for k in used]
-    slots += [-2] * len(used)
+    slots += [-2 if many else -3 for many in units_per_day(events)[used] > 1]
     variances += [np.inf] * len(used)
     means += [0.0] * (len(names) - len(means))
     return Effects(tuple(names), np.array(means), np.array(variances), np.array(slots))
+
+
+def units_per_day(events: Events) -> Integers:
+    """(days,) how many units were measured on each."""
+    read = events.kind == READING
+    pairs = np.unique(np.stack([events.which[read], events.unit[read]]), axis=1)
+    return np.bincount(pairs[0], minlength=len(events.days))
 
 
 def informative_groups(shape: Shape, events: Events) -> tuple[tuple[str, str], ...]:

@@ -176,7 +176,7 @@ def sweep_days(effects: Effects, scales: Scales, state: State) -> tuple[float, F
     site = state.day_site
     cavity = 1.0 / np.maximum(1.0 / variance - site.precision, 1e-6)
     cavity_mean = cavity * (mean / variance - site.shift)
-    found = day_prior(scales, cavity_mean, cavity)
+    found = day_prior(scales, cavity_mean, cavity, effects.lonely[place])
     one = Site(site.precision[:, None, None], site.shift[:, None])
     overlap = log_overlap(one, cavity_mean[:, None], cavity[:, None, None])
     curvature = np.clip(found.curvature, 1e-9, 0.999 / cavity)
