@@ -19,6 +19,7 @@ from electrolog.fouling.line_error import LineError, learn_line_error
 from electrolog.fouling.points import normal_points
 from electrolog.fouling.propagation import Problem, combine
 from electrolog.fouling.shapes import ALL_SHAPES, SHAPES
+from electrolog.fouling.shared import plan_assembly
 from electrolog.fouling.summary import Fitted, summarise
 
 Floats = NDArray[np.float64]
@@ -106,9 +107,8 @@ def pose(events: Events, shape_name: str) -> Problem:
     shape = SHAPES[shape_name]
     layout = layout_for(shape, events)
     effects = lay_out_effects(shape, layout.group_sds, events)
-    return Problem(
-        events, layout, effects, make_batches(events, effects, len(shape.latents), line_error_of(events))
-    )
+    batches = make_batches(events, effects, len(shape.latents), line_error_of(events))
+    return Problem(events, layout, effects, batches, plan_assembly([b.columns for b in batches], len(effects.names)))
 
 
 def keep(problem: Problem, peak: Peak, width: Width, weight: float) -> Component:

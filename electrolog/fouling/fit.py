@@ -8,6 +8,7 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
+from electrolog.fouling.covariance import Covariance
 from electrolog.fouling.effects import Effects
 from electrolog.fouling.line_error import LineError
 from electrolog.fouling.parameters import Layout
@@ -38,7 +39,7 @@ class Component:
     theta_covariance: Floats
     mean: Floats
     mean_draws: Floats
-    covariance: Floats
+    covariance: Covariance
     units: tuple[KeptUnits, ...]
 
 

@@ -13,6 +13,7 @@ from numpy.typing import NDArray
 
 from electrolog.fouling.batches import Batch, pad_units
 from electrolog.fouling.clock import Clock, log_area_changes, run_clock
+from electrolog.fouling.covariance import Covariance, between, extended
 from electrolog.fouling.effects import Effects
 from electrolog.fouling.events import READING, Events
 from electrolog.fouling.fit import CohortFit, Component
@@ -147,7 +148,7 @@ class View:
     effects: Effects
     mean: Floats  # (F + 1,)
     mean_draws: Floats  # (K, F + 1)
-    covariance: Floats
+    covariance: Covariance
     old_columns: Integers  # new place of each of the fit's columns, and of "none"
 
 
@@ -198,9 +199,7 @@ def widen(part: Component, events: Events) -> View:
     new += days
     variances += [float(scales.day_sd) ** 2] * len(days)
     n, more = len(part.effects.names), len(new)
-    covariance = np.zeros((n + more + 1, n + more + 1))
-    covariance[:n, :n] = part.covariance[:n, :n]
-    covariance[range(n, n + more), range(n, n + more)] = variances
+    covariance = extended(part.covariance, np.array(variances))
     names = part.effects.names + tuple(new)
     slots = np.concatenate([part.effects.variance_slot, np.full(more, -1)])
     effects = Effects(names, np.zeros(n + more), np.zeros(n + more), slots)
@@ -250,10 +249,6 @@ def cavities(view: View, batch: Batch, events: Events) -> tuple[Floats, Floats]:
         pull = np.einsum("bij,kbj->kbi", precision, seen) - kept.shift[there]
         means[:, here] += np.einsum("bij,kbj->kbi", gain, pull)
     return means, 0.5 * (joint + joint.transpose(0, 2, 1))
-
-
-def between(covariance: Floats, rows: Integers, columns: Integers) -> Floats:
-    return covariance[rows[:, :, None, :, None], columns[:, None, :, None, :]].sum(axis=(-1, -2))
 
 
 def set_up_pairs(view: View, batch: Batch, cavity: tuple[Floats, Floats], scales: Scales, clock: Clock) -> Setup:

@@ -12,6 +12,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from electrolog.errors import DataError
+from electrolog.fouling.covariance import Covariance, Thin
 from electrolog.fouling.effects import Effects
 from electrolog.fouling.fit import METHOD, CohortFit, Component, KeptUnits
 from electrolog.fouling.line_error import LineError
@@ -20,7 +21,7 @@ from electrolog.fouling.shapes import SHAPES
 
 KINDS = {"f": "<f8", "i": "<i8", "b": "|b1"}
 PLAIN = ("method", "fingerprint", "shape_weights", "n_units", "n_readings", "converged", "notes", "summary")
-ARRAYS = ("theta", "theta_draws", "theta_covariance", "mean", "mean_draws", "covariance")
+ARRAYS = ("theta", "theta_draws", "theta_covariance", "mean", "mean_draws")
 
 
 def to_dict(fit: CohortFit) -> dict[str, Any]:
@@ -51,6 +52,7 @@ def _component(part: Component) -> dict[str, Any]:
         "prior_mean": _packed(effects.prior_mean),
         "fixed_variance": _packed(effects.fixed_variance),
         "variance_slot": _packed(effects.variance_slot),
+        "covariance": _covariance(part.covariance),
         "weight": part.weight,
         "units": [_units(kept) for kept in part.units],
     } | {name: _packed(getattr(part, name)) for name in ARRAYS}
@@ -71,7 +73,19 @@ def _read_component(kept: dict[str, Any]) -> Component:
     )
     units = tuple(_read_units(one) for one in kept["units"])
     arrays = {name: _unpacked(kept[name]) for name in ARRAYS}
-    return Component(layout=layout, effects=effects, weight=float(kept["weight"]), units=units, **arrays)
+    return Component(layout=layout, effects=effects, weight=float(kept["weight"]), units=units, covariance=_read_covariance(kept["covariance"]), **arrays)
+
+
+def _covariance(covariance: Covariance) -> dict[str, Any]:
+    if isinstance(covariance, Thin):
+        return {"diagonal": _packed(covariance.diagonal), "root": _packed(covariance.root)}
+    return {"matrix": _packed(covariance)}
+
+
+def _read_covariance(kept: dict[str, Any]) -> Covariance:
+    if "matrix" in kept:
+        return _unpacked(kept["matrix"])
+    return Thin(_unpacked(kept["diagonal"]), _unpacked(kept["root"]))
 
 
 def _units(kept: KeptUnits) -> dict[str, Any]:

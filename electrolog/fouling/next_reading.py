@@ -22,7 +22,8 @@ def reading_sd(fit: CohortFit, drawn: Posterior) -> Floats:
     parts = [_under(strand, fit.line_error.typical_variance) for strand in drawn.strands]
     ordinary, bad_day, slip, bad_share, slip_share = np.concatenate(parts, axis=1)
     place = (np.arange(len(ordinary)) + 0.5) * GOLDEN % 1.0
-    return np.where(place < slip_share, slip, np.where(place < slip_share + bad_share, bad_day, ordinary))
+    found = np.where(place < slip_share, slip, np.where(place < slip_share + bad_share, bad_day, ordinary))
+    return np.asarray(found, dtype=np.float64)
 
 
 def _under(strand: Strand, line_variance: float) -> Floats:

@@ -15,12 +15,14 @@ from numpy.typing import NDArray
 
 from electrolog.fouling.batches import Batch
 from electrolog.fouling.clock import Clock, run_clock
+from electrolog.fouling.covariance import Covariance, between, variances
 from electrolog.fouling.days import day_prior
 from electrolog.fouling.effects import Effects
 from electrolog.fouling.events import Events
 from electrolog.fouling.evidence import slopes
 from electrolog.fouling.parameters import Layout, Scales, read_scales
 from electrolog.fouling.quadrature import Grid, Setup, Tilted, refit_grid, starting_grid, tilt
+from electrolog.fouling.shared import Assembly, assemble, solve
 
 Floats = NDArray[np.float64]
 
@@ -44,7 +46,7 @@ class State:
     day_site: Site
     grids: list[Grid] | None
     mean: Floats
-    covariance: Floats
+    covariance: Covariance
 
 
 @dataclass(frozen=True)
@@ -63,6 +65,7 @@ class Problem:
     layout: Layout
     effects: Effects
     batches: list[Batch]
+    assembly: Assembly
 
 
 def start(problem: Problem, theta: Floats) -> State:
@@ -115,41 +118,33 @@ def combine(problem: Problem, scales: Scales, state: State) -> float:
     """Mean and covariance of the shared effects from all stand-ins; log of their integral."""
     effects = problem.effects
     n = len(effects.names)
-    precision, shift = np.zeros((n + 1) ** 2), np.zeros(n + 1)
+    pull = np.zeros(n + 1)
     for batch, site in zip(problem.batches, state.sites, strict=True):
-        at = batch.columns
-        pairs = at[:, :, None, :, None] * (n + 1) + at[:, None, :, None, :]
-        weights = np.broadcast_to(site.precision[:, :, :, None, None], pairs.shape)
-        precision += np.bincount(pairs.ravel(), weights=weights.ravel(), minlength=(n + 1) ** 2)
-        pull = np.broadcast_to(site.shift[:, :, None], at.shape)
-        shift += np.bincount(at.ravel(), weights=pull.ravel(), minlength=n + 1)
-    inner, pull = precision.reshape(n + 1, n + 1)[:n, :n], shift[:n]
+        shift = np.broadcast_to(site.shift[:, :, None], batch.columns.shape)
+        pull += np.bincount(batch.columns.ravel(), weights=shift.ravel(), minlength=n + 1)
+    pull = pull[:n]
     prior = 1.0 / effects.prior_variance(scales)
     prior[effects.is_day] = state.day_site.precision
     pull = pull + effects.prior_mean * prior
     pull[effects.is_day] += state.day_site.shift
-    inner = inner + np.diag(prior)
-    factor = np.linalg.cholesky(inner)
-    state.covariance[:n, :n] = np.linalg.inv(inner)
-    state.mean[:n] = state.covariance[:n, :n] @ pull
+    values = assemble(problem.assembly, [site.precision for site in state.sites])
+    solved = solve(effects, problem.assembly, values, prior, pull)
+    state.mean[:n] = solved.mean
+    state.covariance = solved.covariance
     fixed = ~effects.is_day
     known = 0.5 * np.sum(np.log(prior[fixed]) - effects.prior_mean[fixed] ** 2 * prior[fixed])
     days = 0.5 * np.sum(~fixed) * np.log(2.0 * np.pi)
-    return float(known + days + 0.5 * state.mean[:n] @ pull - np.log(np.diag(factor)).sum())
+    return float(known + days + 0.5 * solved.mean @ pull - solved.half_log_det)
 
 
 def cavity_of(columns: NDArray[np.int64], site: Site, state: State) -> tuple[Floats, Floats]:
     """Mean (B, R) and covariance (B, R, R) of what the rows see, without the site's own contribution."""
-    seen_mean, seen = seen_by(columns, state.mean, state.covariance)
+    seen_mean = state.mean[columns].sum(axis=-1)
+    seen = between(state.covariance, columns, columns)
     without = seen @ np.linalg.inv(np.eye(seen.shape[1]) - site.precision @ seen)
     without = 0.5 * (without + without.transpose(0, 2, 1))
     own = np.einsum("bij,bj->bi", site.precision, seen_mean) - site.shift
     return seen_mean + np.einsum("bij,bj->bi", without, own), without
-
-
-def seen_by(columns: NDArray[np.int64], mean: Floats, covariance: Floats) -> tuple[Floats, Floats]:
-    pairs = covariance[columns[:, :, None, :, None], columns[:, None, :, None, :]]
-    return mean[columns].sum(axis=-1), pairs.sum(axis=(-1, -2))
 
 
 def renewed(gradient: Floats, curvature: Floats, mean: Floats, covariance: Floats) -> Site:
@@ -172,7 +167,7 @@ def log_overlap(site: Site, mean: Floats, covariance: Floats) -> Floats:
 
 def sweep_days(effects: Effects, scales: Scales, state: State) -> tuple[float, Floats, Floats]:
     place = np.flatnonzero(effects.is_day)
-    mean, variance = state.mean[place], state.covariance[place, place]
+    mean, variance = state.mean[place], variances(state.covariance)[place]
     site = state.day_site
     cavity = 1.0 / np.maximum(1.0 / variance - site.precision, 1e-6)
     cavity_mean = cavity * (mean / variance - site.shift)
@@ -190,7 +185,7 @@ def sweep_days(effects: Effects, scales: Scales, state: State) -> tuple[float, F
 def group_scores(problem: Problem, scales: Scales, state: State) -> Floats:
     effects, layout = problem.effects, problem.layout
     score = np.zeros(len(layout.priors))
-    second = state.mean[:-1] ** 2 + np.diag(state.covariance)[:-1]
+    second = state.mean[:-1] ** 2 + variances(state.covariance)
     for g in range(len(layout.group_sds)):
         mine = effects.variance_slot == g
         score[layout.group_slots.start + g] = np.sum(second[mine] / scales.group_sds[g] ** 2 - 1.0)

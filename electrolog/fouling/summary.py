@@ -8,6 +8,7 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
+from electrolog.fouling.covariance import between, variances
 from electrolog.fouling.events import EXPOSURE, READING, RENEWAL, Events
 from electrolog.fouling.fit import Component
 from electrolog.fouling.parameters import IN_VIVO, read_scales
@@ -70,15 +71,16 @@ def typical_half_life(part: Component, coating: str, waveform: str) -> Floats:
     """Hours, (K PER_DRAW,): of a probe whose latents are its group's means."""
     names = part.effects.names
     n_latents = len(part.layout.shape.latents)
-    seen = np.zeros((n_latents, len(names)))
+    rows = np.full((1, n_latents, 3), len(names))
     for k in range(n_latents):
-        seen[k, names.index(("latent", str(k)))] = 1.0
-    for factor, value in (("coating", coating), ("waveform", waveform)):
-        if ("rate", factor, value) in names:
-            seen[0, names.index(("rate", factor, value))] = 1.0
-    spread = np.linalg.cholesky(seen @ part.covariance[:-1, :-1] @ seen.T + 1e-12 * np.eye(n_latents))
+        rows[0, k, 0] = names.index(("latent", str(k)))
+    for slot, own in enumerate((("rate", "coating", coating), ("rate", "waveform", waveform)), start=1):
+        if own in names:
+            rows[0, 0, slot] = names.index(own)
+    spread = np.linalg.cholesky(between(part.covariance, rows, rows)[0] + 1e-12 * np.eye(n_latents))
     noise = normal_points(PER_DRAW, max(n_latents, 1))[:, :n_latents] @ spread.T
-    latents = (part.mean_draws @ seen.T)[:, None, :] + noise
+    padded = np.append(part.mean_draws, np.zeros((len(part.mean_draws), 1)), axis=1)
+    latents = padded[:, rows[0]].sum(axis=-1)[:, None, :] + noise
     shape = read_scales(part.layout, part.theta_draws).shape
     hours = part.layout.shape.half_life_hours(latents, shape[:, None, :])
     return np.asarray(np.broadcast_to(hours, latents.shape[:-1])).ravel()
@@ -115,7 +117,7 @@ def days(events: Events, fitted: list[Fitted]) -> list[dict[str, Any]]:
     place = np.flatnonzero(fitted[0].problem.effects.is_day)
     at = [np.flatnonzero(one.problem.effects.is_day) for one in fitted]
     mean = sum(w * one.part.mean[p] for w, one, p in zip(weight, fitted, at, strict=True))
-    variance = sum(w * np.diag(one.part.covariance)[p] for w, one, p in zip(weight, fitted, at, strict=True))
+    variance = sum(w * variances(one.part.covariance)[p] for w, one, p in zip(weight, fitted, at, strict=True))
     bad = sum(w * one.outcome.bad_day for w, one in zip(weight, fitted, strict=True))
     rows = []
     for k, column in enumerate(place):
