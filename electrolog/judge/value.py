@@ -79,7 +79,8 @@ def _weights(log_now: Array, reading_sd_log: float, outcomes: int) -> Array:
     truths = np.sort(log_now)[((index + 0.5) / outcomes * len(log_now)).astype(int)]
     # Even in the truths, even in the errors, and by the golden ratio's lattice even in both together.
     errors = ndtri((index * GOLDEN + 0.5 / outcomes) % 1)
-    floor = float(np.std(log_now)) * FEWEST_DRAWS / len(log_now)
+    low, high = np.quantile(log_now, [0.16, 0.84])  # not the deviation: draws of a dead probe are far out
+    floor = float(high - low) / 2 * FEWEST_DRAWS / len(log_now)
     sd = max(reading_sd_log, floor, 1e-9)
     misfit = ((truths + sd * errors)[:, None] - log_now) / sd
     misfit *= misfit

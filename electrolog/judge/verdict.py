@@ -25,6 +25,8 @@ __all__ = ["Change", "NowAndEnd", "Question", "Verdict", "judge"]
 Array = NDArray[np.float64]
 Spread = tuple[float, float, float]  # 5, 50 and 95 % quantiles
 
+WORTH_CLEANING = 0.1  # a smaller fall of the odds isn't worth the hour and the new calibration
+
 
 @dataclass(frozen=True)
 class NowAndEnd:
@@ -153,11 +155,17 @@ def _changes(question: Question, seen: Picture, outlook: Outlook) -> tuple[Chang
     if outlook.longest_min and outlook.longest_min < question.run_min:
         found.append(Change("shorten", words.shorten(outlook.longest_min), outlook.risk))
     found.append(Change("recalibrate", words.recalibrate(outlook.value), outlook.value.p_breach_if_fit))
+    return (*found, *_cleanings(question, seen, outlook))
+
+
+def _cleanings(question: Question, seen: Picture, outlook: Outlook) -> list[Change]:
+    """Those that would matter, the best first."""
+    found = []
     for method, log_sensitivity_at in question.after_cleaning.items():
         p = float(odds.any_breach(log_sensitivity_at(question.run_min), seen.beside, seen.ends).mean())
-        if p < seen.p_end:
+        if p < seen.p_end and (p <= outlook.risk < seen.p_end or seen.p_end - p >= WORTH_CLEANING):
             found.append(Change("clean", words.clean_first(method, seen.p_end, p), p))
-    return tuple(found)
+    return sorted(found, key=lambda change: change.p_breach or 0.0)
 
 
 def _quantiles(spread: Spread | None) -> dict[str, float | None]:

@@ -19,7 +19,7 @@ def chance(p: float) -> str:
 
 
 def share_left(share: Spread, least: float, p: float) -> Reason:
-    low, middle, high = (shown_percent(value) for value in share)
+    low, middle, high = (_shown_share(value) for value in share)
     text = (
         f"{middle} of the reference sensitivity left at the end (90 % interval {low} to {high}); "
         f"the limit is {shown_percent(least)}: odds of breaking it {chance(p)}"
@@ -27,8 +27,17 @@ def share_left(share: Spread, least: float, p: float) -> Reason:
     return Reason("least-share-left", text)
 
 
+def _shown_share(share: float) -> str:
+    """A share of sensitivity may well be 100 % or more, unlike odds."""
+    return "<1 %" if share < 0.01 else f"{share * 100:.0f} %"
+
+
+def _shown_detection(lod_um: float) -> str:
+    return "over 1 M" if lod_um > 1e6 else shown_concentration(lod_um)
+
+
 def detection_limit(rule: str, lod_um: Spread, most_um: float, p: float, times: float, rests_on: str) -> Reason:
-    low, middle, high = (shown_concentration(value) for value in lod_um)
+    low, middle, high = (_shown_detection(value) for value in lod_um)
     asked = "needed" if rule == NEEDS else "the limit is"
     text = (
         f"detection limit at the end {middle} (90 % interval {low} to {high}; {shown_number(times)} × {rests_on}); "

@@ -18,13 +18,14 @@ def lab():
     reading = truth + rng.normal(0, READING_SD, PROBES)
     keep = prior_sd**2 / (prior_sd**2 + READING_SD**2)
     loss_rate, loss_sd = 0.02, 0.004
-    end = truth - np.maximum(rng.normal(loss_rate, loss_sd, PROBES), 0) * RUN_MIN / 60
+    rate = np.maximum(rng.normal(loss_rate, loss_sd, PROBES), 0)
+    end = truth - rate * RUN_MIN / 60
     known = [
         Known(prior_mean + keep * (y - prior_mean), np.sqrt(keep) * READING_SD, loss_rate, loss_sd) for y in reading
     ]
     asked = limits(accepted_risk=RISK)
     verdicts = [judge(question(k, RUN_MIN, limits=asked, reading_sd_log=READING_SD)) for k in known]
-    return truth, end, known, verdicts
+    return truth, rate, end, known, verdicts
 
 
 def called(verdicts, word):
@@ -32,7 +33,7 @@ def called(verdicts, word):
 
 
 def test_among_fit_no_more_break_than_the_accepted_risk_and_the_oracle_calls_hardly_more_fit(lab):
-    _, end, known, verdicts = lab
+    _, _, end, known, verdicts = lab
     fit, broken = called(verdicts, "fit"), end < np.log(0.7)
     assert fit.sum() > 100
     assert broken[fit].mean() <= RISK + 0.02
@@ -40,8 +41,17 @@ def test_among_fit_no_more_break_than_the_accepted_risk_and_the_oracle_calls_har
     assert (fit & ~broken).sum() >= 0.95 * (oracle & ~broken).sum()
 
 
+def test_after_the_longest_run_as_many_are_broken_as_the_lab_accepts(lab):
+    truth, rate, _, _, verdicts = lab
+    longest_h = np.array([verdict.longest_run_min for verdict in verdicts]) / 60
+    some = longest_h > 0
+    broken = truth - rate * longest_h < np.log(0.7)
+    assert some.sum() > 400
+    assert broken[some].mean() == pytest.approx(RISK, abs=0.02)
+
+
 def test_the_retired_were_broken_as_often_as_was_said(lab):
-    truth, _, _, verdicts = lab
+    truth, _, _, _, verdicts = lab
     said = np.array([verdict.p_breach_now for verdict in verdicts if verdict.verdict == "retire"])
     broken = truth[called(verdicts, "retire")] < np.log(0.7)
     assert len(said) > 20
@@ -50,7 +60,7 @@ def test_the_retired_were_broken_as_often_as_was_said(lab):
 
 
 def test_the_odds_of_a_breach_come_true(lab):
-    _, end, _, verdicts = lab
+    _, _, end, _, verdicts = lab
     said = np.array([verdict.p_breach for verdict in verdicts])
     broken = end < np.log(0.7)
     for low, high in ((0, 0.1), (0.1, 0.5), (0.5, 0.9), (0.9, 1.01)):
@@ -62,7 +72,7 @@ def test_the_odds_of_a_breach_come_true(lab):
 def test_the_chance_that_a_calibration_makes_it_fit_comes_true(lab):
     """Calibrate each undecided probe once more: as many become fit as was said beforehand."""
     rng = np.random.default_rng(3)
-    truth, _, known, verdicts = lab
+    truth, _, _, known, verdicts = lab
     said, became = [], []
     for true, k, before in zip(truth, known, verdicts, strict=True):
         if before.verdict != "recalibrate":

@@ -38,6 +38,8 @@ def test_honest_forecasts_cover_and_narrow_ones_do_not():
     draws = RNG.normal(size=(3000, 400))
     honest, narrow = coverage(draws, truth), coverage(0.5 * draws, truth)
     assert honest.low < 0.9 < honest.high
+    assert honest.low < honest.share < honest.high
+    assert (honest.count, honest.level) == (3000, 0.9)
     assert narrow.high < 0.7
     assert narrow.mean_width == pytest.approx(honest.mean_width / 2)
 

@@ -155,10 +155,20 @@ def test_cleaning_first_is_offered_by_the_labs_own_recovery():
     assert "ethanol dip" in clean.text
 
 
-def test_cleaning_that_does_not_help_is_not_offered():
+def test_cleaning_that_hardly_helps_is_not_offered_and_the_best_comes_first():
     worn = Known(log_share=-0.3, sd=0.05, rate=0.05)
-    verdict = judge(question(worn, after_cleaning={"rinse": worn.log_sensitivity_at}))
-    assert [change for change in verdict.changes if change.what == "clean"] == []
+    gained = {"rinse": -0.295, "dip": -0.2, "cycling": -0.1}
+    cleaned = {method: replace(worn, log_share=share).log_sensitivity_at for method, share in gained.items()}
+    offered = [
+        change.text for change in judge(question(worn, after_cleaning=cleaned)).changes if change.what == "clean"
+    ]
+    assert [text.split(")")[0] for text in offered] == ["clean first (cycling", "clean first (dip"]
+
+
+def test_a_dead_probe_s_sentences_stay_readable():
+    said = texts(judge(question(Known(log_share=-20.0), limits=limits(highest_detection_limit=0.1))))
+    assert "<1 % of the reference sensitivity" in said
+    assert "detection limit at the end over 1 M" in said
 
 
 def test_odds_of_two_limits_are_of_either_not_their_sum():
