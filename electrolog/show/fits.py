@@ -5,11 +5,18 @@ from __future__ import annotations
 from collections.abc import Callable
 from typing import Any
 
-from electrolog.answers.fitting import Estimate, FittedCohort
+from electrolog.answers.fitting import Day, Estimate, FittedCohort
 from electrolog.clock import shown_moment
 from electrolog.show.machine import plain, print_json
 from electrolog.show.tables import print_lines, print_table
 from electrolog.units import shown_number, shown_percent
+
+_SPREADS = {
+    "level_between_probes": "probes differ in level by",
+    "log_rate_between_probes": "in rate by",
+    "day": "days by",
+    "residual": "one reading strays by",
+}
 
 
 def answer(found: FittedCohort, json: bool) -> None:
@@ -20,10 +27,8 @@ def answer(found: FittedCohort, json: bool) -> None:
 
 
 def as_dict(found: FittedCohort) -> dict[str, Any]:
-    """An infinite half-life is null beside its `low`, which says from where on it may lie."""
     answer: dict[str, Any] = plain(found)
-    answer["suspicious_days"] = [plain(day) for day in found.suspicious_days]
-    return answer
+    return answer | {"suspicious_days": plain(found.suspicious_days)}
 
 
 def _print(found: FittedCohort) -> None:
@@ -32,25 +37,24 @@ def _print(found: FittedCohort) -> None:
     _print_settings(found)
     _print_recoveries(found)
     _print_days(found)
-    print_lines(*_spreads(found), *[f"! {flag}" for flag in found.flags], *[f"! {note}" for note in found.notes])
+    print_lines(*_spreads(found), *_odd(found), *[f"! {note}" for note in found.notes])
 
 
 def _head(found: FittedCohort) -> list[str]:
-    when = "just now" if found.made_at is None else shown_moment(found.made_at)
     shapes = ", ".join(f"{name} {shown_percent(weight)}" for name, weight in found.shapes.items() if weight >= 0.01)
     lines = [
         f"{found.analyte}: {found.calibrations} calibrations of {found.probes} probes, retired ones too",
-        f"fitted {when} by {found.method}; median and 90 % interval everywhere",
+        f"fitted {shown_moment(found.made_at)} by {found.method}; median and 90 % interval everywhere",
         f"shape of loss: {shapes}",
     ]
     return lines if found.converged else [*lines, f"! did not converge: look at {_suspects(found)}"]
 
 
 def _suspects(found: FittedCohort) -> str:
-    named = [flag.split(" looks")[0] for flag in found.flags]
-    named += [f"{day.date} ({_who(day.standard, day.rig)})" for day in found.suspicious_days]
-    rest = "entries with a slip of a unit, exposures without hours, days that saw one probe alone"
-    return ", ".join([*named, rest]) + "; until then its numbers are not to be relied on"
+    named = [odd.calibration for odd in (*found.slips, *found.damaged)]
+    named += [f"{day.date} ({_who(day)})" for day in found.suspicious_days]
+    rest = "exposures without a calibration after them, days that saw one probe alone"
+    return f"{', '.join([*dict.fromkeys(named), rest])}; until then these numbers are not to be relied on"
 
 
 def _print_half_lives(found: FittedCohort) -> None:
@@ -82,32 +86,38 @@ def _print_days(found: FittedCohort) -> None:
         print_lines("", f"none of {len(found.days)} calibration days is suspicious")
         return
     print_lines("", f"{len(odd)} of {len(found.days)} calibration days are suspicious: standard, rig or reference?")
-    columns = ("date", "standard", "rig", "all readings off by", "probes")
-    rows = [(day.date, day.standard, day.rig, _span(day.effect, _signed), day.probes) for day in odd]
+    columns = ("date", "standard", "rig", "all readings off by", "calibrations")
+    rows = [(day.date, day.standard, day.rig, _span(day.effect, _off), day.calibrations) for day in odd]
     print_table(columns, rows, columns[3:], least=("rig",))
 
 
 def _spreads(found: FittedCohort) -> list[str]:
-    spreads = found.spreads
-    named = [("probes differ in level by", spreads.level), ("in rate by", spreads.rate), ("days by", spreads.day)]
-    named.append(("one reading strays by", spreads.residual))
-    said = [f"{name} {_span(value, shown_percent)}" for name, value in named if value is not None]
+    said = [f"{_SPREADS[name]} {_span(spread, shown_percent)}" for name, spread in found.spreads.items()]
     return ["", f"spread (standard deviations): {'; '.join(said)}"]
 
 
-def _span(value: Estimate, shown: Callable[[float], str]) -> str:
+def _odd(found: FittedCohort) -> list[str]:
+    slips = [f"! {odd.calibration} of {odd.electrode} looks like a slip of a unit or a decimal" for odd in found.slips]
+    broken = [f"! {odd.electrode} looks suddenly damaged before {odd.calibration}" for odd in found.damaged]
+    return [*slips, *broken]
+
+
+def _span(value: Estimate, shown: Callable[[float | None], str]) -> str:
     if value.low == value.high:
         return shown(value.median)
     return f"{shown(value.median)} [{shown(value.low)}, {shown(value.high)}]"
 
 
-def _hours(hours: float) -> str:
-    return "never" if hours == float("inf") else shown_number(hours)
+def _hours(hours: float | None) -> str:
+    return "never" if hours is None else shown_number(hours)
 
 
-def _signed(share: float) -> str:
+def _off(share: float | None) -> str:
+    """A few percent as percent; a slip of a decimal as the factor that it is."""
+    if share is None or share > 1:
+        return "×?" if share is None else f"×{shown_number(1 + share)}"
     return f"{share * 100:+.1f} %"
 
 
-def _who(standard: str, rig: str) -> str:
-    return ", ".join(part for part in (standard, rig) if part) or "standard and rig unknown"
+def _who(day: Day) -> str:
+    return ", ".join(part for part in (day.standard, day.rig) if part) or "standard and rig unknown"
