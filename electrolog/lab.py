@@ -21,6 +21,7 @@ from electrolog.record.store import Record, default_location, open_record
 
 if TYPE_CHECKING:
     from electrolog.answers.asked import Run
+    from electrolog.answers.backtesting import Backtest
     from electrolog.answers.checking import Checked
     from electrolog.answers.correcting import Corrected
     from electrolog.answers.entering import Entered, NewCalibration
@@ -172,6 +173,12 @@ class Lab:
         from electrolog.answers.fitting import fitted_cohort
 
         return fitted_cohort(self.record, analyte, fresh)
+
+    def backtest(self, analyte: str, *, cuts: int = 4) -> Backtest:
+        """How good forecasts of the lab's own later calibrations would have been, without a look ahead."""
+        from electrolog.answers.backtesting import backtested
+
+        return backtested(self.record, analyte, cuts)
 
     def limits(self) -> list[LimitSet]:
         """Every limit there can be, with what the lab has set."""

@@ -27,6 +27,7 @@ COMMANDS: dict[str, dict[str, str]] = {
         "forecast": "What probes will still see after a run.",
         "check": "Fit, recalibrate, retire or undetermined, before a run.",
         "fit": "How this lab's probes foul, as learned from its record.",
+        "backtest": "Whether forecasts would have been right on this lab's own past.",
         "limits": "What the lab demands of a probe.",
     },
     "Correcting and trusting": {

@@ -1,8 +1,8 @@
 """How good forecasts of a lab's own later readings would have been, beside the simpler ways of a notebook.
 
-Everything is in logs of sensitivity: 0.10 is about ten percent. The rivals are given an honest spread each, learned from
-the same past: robust, because a slip of a decimal in that past would else make them uselessly wide, and Student's t with
-few degrees of freedom, because one in what is forecast would else be charged without bound.
+Everything is in logs of sensitivity: 0.10 is about ten percent. The rivals are given an honest spread each, learned
+from the same past: robust, because a slip of a decimal in that past would else make them uselessly wide, and Student's
+t with few degrees of freedom, because one in what is forecast would else be charged without bound.
 """
 
 from __future__ import annotations
@@ -99,7 +99,7 @@ def own_line(past: Past, targets: Targets) -> Predictive:
     away = targets.hours - lines.centre_hours
     sd = _robust_sd(_residuals_of_lines(past))
     plain = last_value(past, targets)
-    with np.errstate(invalid="ignore"):
+    with np.errstate(invalid="ignore", divide="ignore"):
         reach = np.sqrt(1 + 1 / lines.count + away**2 / lines.spread_hours2)
         drawn = _student(lines.centre + lines.slope * away, sd * reach)
     has_line = (lines.spread_hours2 > 0)[:, None]

@@ -1,0 +1,93 @@
+"""The backtest for a person and for a program."""
+
+from __future__ import annotations
+
+from typing import Any
+
+from electrolog.answers.backtesting import Backtest
+from electrolog.judge.backtest import PIT_CLASSES, FitVerdicts, Scored
+from electrolog.show.machine import plain, print_csv, print_json
+from electrolog.show.tables import print_lines, print_table
+from electrolog.units import shown_number, shown_percent
+
+BAR = 30
+
+
+def answer(found: Backtest, json: bool, csv: bool) -> None:
+    if json:
+        print_json(as_dict(found))
+    elif csv:
+        print_csv([plain(one) for one in found.forecasts])
+    else:
+        _print(found)
+
+
+def as_dict(found: Backtest) -> dict[str, Any]:
+    return {
+        "analyte": found.analyte,
+        "forecasts": len(found.forecasts),
+        "cuts": found.cuts,
+        "methods": [_method(one) for one in found.methods],
+        "verdicts": found.verdicts,
+        "no_verdicts": found.no_verdicts or None,
+        "notes": found.notes,
+    }
+
+
+def _method(scored: Scored) -> dict[str, Any]:
+    return {
+        "method": scored.method,
+        "crps": scored.crps,
+        "crps_median": scored.crps_median,
+        "log_score": scored.log_score,
+        "coverage": {f"{one.level:g}": one.share for one in scored.coverage},
+        "coverage_interval": {f"{one.level:g}": [one.low, one.high] for one in scored.coverage},
+        "mean_width": {f"{one.level:g}": one.mean_width for one in scored.coverage},
+        "pit_counts": scored.pit_counts,
+    }
+
+
+def _print(found: Backtest) -> None:
+    print_lines(
+        f"{found.analyte}: {len(found.forecasts)} calibrations, each forecast from what was known before it"
+        " (scores in log units: 0.10 is about 10 %; less is better)"
+    )
+    columns = ("method", "CRPS", "median", "log score", "50 % hold", "80 % hold", "90 % hold", "90 % width")
+    print_table(columns, [_row(one) for one in found.methods], columns[1:], least=("median", "50 % hold", "80 % hold"))
+    ours = found.methods[0]
+    print_lines("", f"where {ours.method}'s readings fell in its forecasts (even when they are honest)")
+    print_lines(*_bars(ours.pit_counts))
+    print_lines("", *_cuts(found), *_verdicts(found), *[f"! {note}" for note in found.notes])
+
+
+def _row(scored: Scored) -> tuple[str, ...]:
+    held = [shown_percent(one.share) for one in scored.coverage]
+    figures = [f"{value:.3f}" for value in (scored.crps, scored.crps_median)]
+    return (scored.method, *figures, f"{scored.log_score:.2f}", *held, f"{scored.coverage[-1].mean_width:.2f}")
+
+
+def _bars(counts: tuple[int, ...]) -> list[str]:
+    most = max(*counts, 1)
+    ends = [f"{k / PIT_CLASSES:.1f}-{(k + 1) / PIT_CLASSES:.1f}" for k in range(PIT_CLASSES)]
+    return [f"  {span} {'#' * round(BAR * n / most)} {n}" for span, n in zip(ends, counts, strict=True)]
+
+
+def _cuts(found: Backtest) -> list[str]:
+    said = [f"{cut.at.date().isoformat()} ({cut.calibrations} calibrations)" for cut in found.cuts]
+    return [f"fitted anew on {', '.join(said)}"]
+
+
+def _verdicts(found: Backtest) -> list[str]:
+    return [found.no_verdicts] if found.verdicts is None else [_fits(found.verdicts)]
+
+
+def _fits(verdicts: FitVerdicts) -> str:
+    if not verdicts.fit:
+        return f"of {verdicts.runs} runs that were calibrated after, none would have been called fit by its odds"
+    share = shown_percent(verdicts.wrong / verdicts.fit)
+    interval = f"{shown_percent(verdicts.low)} to {shown_percent(verdicts.high)}"
+    return (
+        f"of {verdicts.runs} runs that were calibrated after, {verdicts.fit} would have been called fit by their odds;"
+        f" {verdicts.wrong} of these broke a limit by that calibration ({share}, 95 % interval {interval});"
+        f" expected {shown_number(verdicts.expected)}, a reading's own error included"
+    )
