@@ -178,7 +178,8 @@ def sweep_days(effects: Effects, scales: Scales, state: State) -> tuple[float, F
     # A day between good and bad looks wider than either; without a floor its stand-in would say nothing at all.
     precision = np.maximum(curvature / (1.0 - curvature * cavity), 0.25 / scales.bad_day_sd**2)
     shift = found.gradient + precision * (cavity_mean + cavity * found.gradient)
-    state.day_site = Site(precision, shift)
+    # Half a step: a bad day and a slip can explain the same reading, and whole steps would chase each other for ever.
+    state.day_site = Site(0.5 * (site.precision + precision), 0.5 * (site.shift + shift))
     return float(np.sum(found.log_evidence - overlap)), found.score, found.bad
 
 

@@ -18,6 +18,7 @@ from electrolog.measure.points import curvature_p, lack_of_fit, suspect_point
 from electrolog.measure.remarks import Outcome, all_of, without_response
 from electrolog.measure.saturating import SaturatingFit, fit_saturating
 from electrolog.measure.tails import t_quantile
+from electrolog.measure.uneven import allowance
 from electrolog.measure.version import METHOD
 
 BENT = 0.01  # stricter than usual: a handful of points bends by chance, and a needless curve costs precision
@@ -32,9 +33,11 @@ class CalibrationFigures:
 
     `sensitivity_se_na_um` is from the scatter of this calibration's points alone; the shared one is from the
     standard, the same for every probe measured with it. The 95 % interval `sensitivity_low_na_um` to
-    `sensitivity_high_na_um` holds both. `lod_um` and `loq_um` are 3 and 10 standard deviations over the
-    sensitivity; `lod_route` says of what. `shape` is line, line-through-zero or saturating (then the
-    sensitivity is the slope at low concentration). `suspect_point` counts from 0; that point was kept.
+    `sensitivity_high_na_um` holds both; `interval_route` says where it allows for scatter that grows with the
+    concentration, and `weighting` how the points were weighted, if not alike. `lod_um` and `loq_um` are 3 and 10
+    standard deviations over the sensitivity; `lod_route` says of what. `shape` is line, line-through-zero or
+    saturating (then the sensitivity is the slope at low concentration). `suspect_point` counts from 0; that point
+    was kept.
     """
 
     sensitivity_na_um: float | None = None
@@ -42,6 +45,8 @@ class CalibrationFigures:
     sensitivity_se_shared_na_um: float | None = None
     sensitivity_low_na_um: float | None = None
     sensitivity_high_na_um: float | None = None
+    interval_route: str | None = None
+    weighting: str | None = None
     intercept_na: float | None = None
     intercept_se_na: float | None = None
     residual_sd_na: float | None = None
@@ -93,7 +98,7 @@ def calibrate(
     line = fit_line(x, y, through_zero=through_zero or len(levels_um(x)) == 1, weights=weights)
     curve = _curve_if_asked_for(line)
     found = _line_figures(line) if curve is None else _curve_figures(curve)
-    found |= _interval(found, shared)
+    found |= _interval(found, shared) if curve is not None else _interval_of_line(line, found, shared)
     suspect = suspect_point(line) if curve is None else None
     outcome = Outcome(line, curve, suspect, noise_na)
     if outcome.responds:
@@ -191,6 +196,19 @@ def _curve_figures(curve: SaturatingFit) -> dict[str, Any]:
     }
 
 
+def _interval_of_line(line: LineFit, found: Mapping[str, Any], shared_relative: float | None) -> dict[str, Any]:
+    plain = _interval(found, shared_relative)
+    uneven = allowance(line)
+    if uneven is None or not uneven.half_width_na_um > t_quantile(0.975, line.degrees_of_freedom) * line.slope_se_na_um:
+        return plain
+    half = math.hypot(uneven.half_width_na_um, 1.96 * (plain["sensitivity_se_shared_na_um"] or 0.0))
+    return plain | {
+        "sensitivity_low_na_um": line.slope_na_um - half,
+        "sensitivity_high_na_um": line.slope_na_um + half,
+        "interval_route": "scatter growing with the concentration, as the replicates suggest",
+    }
+
+
 def _interval(found: Mapping[str, Any], shared_relative: float | None) -> dict[str, Any]:
     """95 %: Student's t for the scatter of the points, 1.96 for the standard, joined as root of squares."""
     sensitivity, se = found["sensitivity_na_um"], found["sensitivity_se_na_um"]
@@ -213,10 +231,15 @@ def _limits(found: Mapping[str, Any], noise_na: float | None, line: LineFit | No
     if noise_na is not None:
         limits = from_noise(noise_na, sensitivity)
     elif line is not None and line.degrees_of_freedom > 0 and not line.exact():
-        limits = from_residuals(found["residual_sd_na"], sensitivity)
+        limits = from_residuals(found["residual_sd_na"] / math.sqrt(_lowest_weight(line)), sensitivity)
     else:
         return {}
     return {"lod_um": limits.lod_um, "loq_um": limits.loq_um, "lod_route": limits.route}
+
+
+def _lowest_weight(line: LineFit) -> float:
+    """Weighted points scatter least where they weigh most: a blank scatters as the lowest concentration does."""
+    return float(line.weights[line.concentration_um == line.concentration_um.min()].mean())
 
 
 def _linear_to_um(line: LineFit, curve: SaturatingFit | None) -> float | None:

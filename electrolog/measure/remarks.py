@@ -188,7 +188,7 @@ def _uneven_scatter(outcome: Outcome) -> str | None:
         return None
     return (
         f"the replicates scatter more from {grown.from_um:g} µM on (sd {grown.high_na:.2g} nA, below it "
-        f"{grown.low_na:.2g} nA): as weighted here, the standard errors are too small"
+        f"{grown.low_na:.2g} nA): as weighted here, the standard errors are too small; weights of 1/x² fit such points"
     )
 
 

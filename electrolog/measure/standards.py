@@ -17,6 +17,16 @@ UM_PER_MOL_PER_L = 1e6
 MG_PER_G = 1e3
 ML_PER_L = 1e3
 
+# What a salt or water of crystallisation adds to the free base or acid, in g/mol, from IUPAC's abridged standard
+# atomic weights; sodium takes the place of a hydrogen.
+SALTS_G_MOL = {
+    "hydrochloride": 36.458,
+    "hydrobromide": 80.912,
+    "bitartrate": 150.086,
+    "sodium": 21.982,
+    "hydrate": 18.015,
+}
+
 
 @dataclass(frozen=True)
 class Measured:

@@ -10,7 +10,7 @@ import math
 from functools import lru_cache
 
 
-def two_sided_p(t: float, degrees_of_freedom: int) -> float:
+def two_sided_p(t: float, degrees_of_freedom: float) -> float:
     """P(|T| > |t|). NaN without a degree of freedom."""
     if degrees_of_freedom < 1 or math.isnan(t):
         return math.nan
@@ -27,7 +27,7 @@ def f_p(f: float, freedom_above: int, freedom_below: int) -> float:
 
 
 @lru_cache(maxsize=256)
-def t_quantile(probability: float, degrees_of_freedom: int) -> float:
+def t_quantile(probability: float, degrees_of_freedom: float) -> float:
     """The t that a share `probability` (0.5 to 1) of the distribution lies below."""
     if degrees_of_freedom < 1:
         return math.nan
@@ -40,7 +40,7 @@ def t_quantile(probability: float, degrees_of_freedom: int) -> float:
     return t
 
 
-def _density(t: float, freedom: int) -> float:
+def _density(t: float, freedom: float) -> float:
     half = math.lgamma((freedom + 1) / 2) - math.lgamma(freedom / 2) - 0.5 * math.log(freedom * math.pi)
     return math.exp(half - (freedom + 1) / 2 * math.log1p(t * t / freedom))
 

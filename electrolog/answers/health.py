@@ -1,0 +1,134 @@
+"""What speaks against a calibration beside its own points: its standard, its circumstances, its day, its fellows."""
+
+from __future__ import annotations
+
+import math
+from collections import defaultdict
+from collections.abc import Mapping, Sequence
+from datetime import date
+
+from electrolog.answers import figures as made
+from electrolog.answers import life as lives
+from electrolog.measure.calibrate import CalibrationFigures
+from electrolog.measure.health import Circumstances, day_points_at_the_standard, unhealthy
+from electrolog.measure.line import LineFit, fit_line
+from electrolog.measure.uneven import pooled_growth
+from electrolog.record import queries, sheets
+from electrolog.record.queries import Calibration, Event
+from electrolog.record.readable import Row, rows
+from electrolog.record.store import Record
+
+Figures = Mapping[int, CalibrationFigures]
+Said = dict[int, tuple[str, ...]]
+_MOST_DAYS = 400  # an engine limits the length of one statement
+
+
+def warnings(
+    record: Record, asked: Sequence[Calibration], numbers: Figures, expected_um: tuple[float, float] | None = None
+) -> Said:
+    """By calibration number; `asked` are all calibrations of their probes, oldest first."""
+    if not asked:
+        return {}
+    fellows, lives_of_all, standards = _around(record, asked)
+    figures = {**made.all_figures(record, fellows), **numbers}
+    said: dict[int, list[str]] = defaultdict(list)
+    for one in asked:
+        now, earlier = _circumstances(one, standards), [_circumstances(e, standards) for e in _earlier(one, asked)]
+        said[one.row["id"]] += unhealthy(now, earlier, expected_um=expected_um)
+    for key, text in _of_the_days(fellows, figures, lives_of_all):
+        said[key].append(text)
+    for key, text in _of_the_fellows(asked, fellows, figures):
+        said[key].append(text)
+    return {key: tuple(texts) for key, texts in said.items()}
+
+
+def _around(
+    record: Record, asked: Sequence[Calibration]
+) -> tuple[list[Calibration], dict[str, list[Event]], dict[str, Row]]:
+    """Everything measured on the same days, with the earlier calibrations and lives of those probes."""
+    days = sorted({one.at.date() for one in asked}, reverse=True)[:_MOST_DAYS]
+    with record.reading() as connection:
+        ids = queries.electrodes_calibrated_on(connection, days)
+        standards = {row["standard"]: row for row in rows(connection, sheets.STANDARDS)}
+        of = (sheets.EXPOSURES, *lives.RENEWING)
+        return queries.calibrations(connection, ids), queries.events(connection, ids, of), standards
+
+
+def _earlier(one: Calibration, among: Sequence[Calibration]) -> list[Calibration]:
+    """Of the same probe, analyte and waveform."""
+    keys = ("electrode", "analyte", "waveform")
+    return [other for other in among if other.at < one.at and all(other.row[k] == one.row[k] for k in keys)]
+
+
+def _circumstances(one: Calibration, standards: Mapping[str, Row]) -> Circumstances:
+    row = one.row
+    standard = standards.get(row["standard"] or "", {})
+    above = [concentration for concentration, _ in one.points if concentration > 0]
+    return Circumstances(
+        at=one.at,
+        analyte=row["analyte"],
+        medium=row["medium"],
+        temperature_c=row["temperature_c"],
+        noise_na=row["noise_na"],
+        background_na=row["background_na"],
+        oxidation_peak_v=row["oxidation_peak_v"],
+        reduction_peak_v=row["reduction_peak_v"],
+        highest_um=max(above, default=None),
+        lowest_um=min(above, default=None),
+        standard_prepared_at=standard.get("prepared_at"),
+        standard_expires_at=standard.get("expires_at"),
+        diluent=standard.get("diluent"),
+    )
+
+
+def _of_the_days(
+    fellows: Sequence[Calibration], figures: Figures, life: Mapping[str, Sequence[Event]]
+) -> list[tuple[int, str]]:
+    """Where all probes measured with one standard, or on one rig, moved alike though nothing was done to them."""
+    groups: dict[tuple[date, str, str, str], list[tuple[int, float]]] = defaultdict(list)
+    for one in fellows:
+        shift = _untouched_shift(one, fellows, figures, life.get(one.row["electrode"], []))
+        for what in ("standard", "rig"):
+            if shift is not None and one.row[what]:
+                shared = (one.at.date(), one.row["analyte"], one.row["waveform"], f"{what} {one.row[what]}")
+                groups[shared].append((one.row["id"], shift))
+    said = []
+    for (_, _, _, what), members in groups.items():
+        text = day_points_at_the_standard([shift for _, shift in members], what)
+        said += [(key, text) for key, _ in members if text]
+    return said
+
+
+def _untouched_shift(
+    one: Calibration, fellows: Sequence[Calibration], figures: Figures, life: Sequence[Event]
+) -> float | None:
+    """log of the sensitivity over the one before, where the probe lay untouched in between: it should be the same."""
+    before = next(reversed(_earlier(one, fellows)), None)
+    if before is None or any(before.at <= event.at <= one.at for event in life):
+        return None
+    now, then = figures[one.row["id"]].sensitivity_na_um, figures[before.row["id"]].sensitivity_na_um
+    return math.log(now / then) if now and then and now > 0 and then > 0 else None
+
+
+def _of_the_fellows(
+    asked: Sequence[Calibration], fellows: Sequence[Calibration], figures: Figures
+) -> list[tuple[int, str]]:
+    """Said of the newest calibration: single points can't show by themselves that they scatter more higher up."""
+    newest = asked[-1]
+    own = figures[newest.row["id"]]
+    if own.shape != "line" or own.weighting or own.interval_route or own.sensitivity_low_na_um is None:
+        return []
+    alike = [one for one in fellows if all(one.row[k] == newest.row[k] for k in ("analyte", "waveform"))]
+    growth = pooled_growth([_line(one) for one in alike if figures[one.row["id"]].shape == "line"])
+    if growth is None:
+        return []
+    text = (
+        f"in {growth.lines} calibrations at hand the upper concentrations scatter {growth.times:.2g} times more than "
+        "the lower: this 95 % interval is too narrow; weights of 1/x2 fit such points"
+    )
+    return [(newest.row["id"], text)]
+
+
+def _line(one: Calibration) -> LineFit:
+    concentrations, currents = zip(*one.points, strict=True)
+    return fit_line(concentrations, currents)
