@@ -20,12 +20,14 @@ from electrolog.fouling.points import normal_points
 from electrolog.fouling.propagation import Problem, combine
 from electrolog.fouling.shapes import ALL_SHAPES, SHAPES
 from electrolog.fouling.shared import plan_assembly
+from electrolog.fouling.subset import neighbours_in_time, take_units
 from electrolog.fouling.summary import Fitted, summarise
 
 Floats = NDArray[np.float64]
 DRAWS = 64  # of the hyper-parameters, over all shapes
 HOPELESS = 25.0  # nats behind the best shape
 PRIOR_ODDS = {"none": 0.1}  # against any other shape: a probe in use that doesn't foul at all is rare
+LARGE, PART = 2000, 400  # units of a large cohort, and of the part of it that tells shapes apart
 LEAST_WEIGHT = 0.01  # a shape with less is named, but not drawn from
 
 
@@ -70,7 +72,31 @@ def weigh(fits: list[tuple[Problem, Peak, Width]]) -> Floats:
 
 
 def fit_shapes(events: Events, shapes: tuple[str, ...]) -> list[tuple[Problem, Peak, Width]]:
-    """Every shape at its peak. One starts where the best so far ended, and is given up once it is hopelessly behind."""
+    """Every shape at its peak.
+
+    In a large cohort a part tells the shapes apart; those with weight there go on to all units from where they ended.
+    """
+    if len(np.unique(events.unit[events.kind == READING])) <= LARGE:
+        return fit_each(events, shapes)
+    part = take_units(events, neighbours_in_time(events, PART))
+    fits = fit_each(part, shapes)
+    return [
+        fit_all_units(events, *fit) if weight >= LEAST_WEIGHT else fit
+        for fit, weight in zip(fits, weigh(fits), strict=True)
+    ]
+
+
+def fit_all_units(events: Events, problem: Problem, peak: Peak, width: Width) -> tuple[Problem, Peak, Width]:
+    """What the part has found is where all begin; with so many units the scores' outer product is the curvature."""
+    whole = pose(events, problem.layout.shape.name)
+    known = dict(zip((p.name for p in problem.layout.priors), peak.theta, strict=True))
+    theta = np.array([known.get(prior.name, prior.mean) for prior in whole.layout.priors])
+    top = climb(whole, theta)
+    return whole, top, rough_width(whole, top)
+
+
+def fit_each(events: Events, shapes: tuple[str, ...]) -> list[tuple[Problem, Peak, Width]]:
+    """One starts where the best so far ended, and is given up once it is hopelessly behind."""
     fits: list[tuple[Problem, Peak, Width]] = []
     known: dict[str, float] = {}
     best = -np.inf

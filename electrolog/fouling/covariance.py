@@ -14,17 +14,40 @@ Integers = NDArray[np.int64]
 
 @dataclass(frozen=True)
 class Thin:
-    """diag(diagonal) + root root'; indexed by [rows, columns] like the matrix it stands for."""
+    """diag(diagonal) + root root'; indexed by [rows, columns] like the matrix it stands for.
 
-    diagonal: Floats  # (F + 1,)
+    The diagonal is (1 + couplings) / precision: the inverse of a matrix to second order in its couplings.
+    """
+
+    precision: Floats  # (F + 1,) inf where the effect stands in root alone
+    couplings: Floats  # (F + 1,)
     root: Floats  # (F + 1, p)
 
+    @property
+    def diagonal(self) -> Floats:
+        return (1.0 + self.couplings) / self.precision
+
     def __getitem__(self, key: tuple[Any, Any]) -> Any:
-        rows, columns = (np.arange(len(self.diagonal))[part] for part in key)
+        rows, columns = (np.arange(len(self.precision))[part] for part in key)
         if all(isinstance(part, slice) for part in key):
             rows, columns = rows[:, None], columns[None, :]
         alike = np.where(rows == columns, self.diagonal[rows], 0.0)
         return alike + (self.root[rows] * self.root[columns]).sum(axis=-1)
+
+    def without(self, columns: Integers, own: Floats) -> Floats:
+        """Covariances (B, R, R) of the rows, sums of effects (B, R, e), with their own precision (B, R, R) taken out.
+
+        Taken out effect by effect, so that it stays positive definite whatever the couplings are; what one unit adds
+        to the root is one part in thousands.
+        """
+        same = (columns[:, :, None, :] == columns[:, None, :, :]).transpose(0, 3, 1, 2).astype(np.float64)
+        taken = ((same @ own[:, None]) * same).sum(axis=-1).transpose(0, 2, 1)  # (B, R, e)
+        whole = self.precision[columns]
+        left = np.maximum(whole - np.maximum(taken, 0.0), 1e-3 * np.minimum(whole, 1e300))
+        alone = (1.0 + self.couplings[columns] * np.minimum(left / whole, 1.0)) / left
+        alone = np.where(np.isfinite(whole), alone, 0.0)
+        root = self.root[columns].sum(axis=2)
+        return np.asarray((same * alone.transpose(0, 2, 1)[:, :, :, None]).sum(axis=1) + root @ root.transpose(0, 2, 1))
 
 
 Covariance = Floats | Thin
@@ -50,9 +73,10 @@ def variances(covariance: Covariance) -> Floats:
 def extended(covariance: Covariance, more: Floats) -> Covariance:
     """With further effects of variance `more`, independent of the others, put before the last ("no effect")."""
     if isinstance(covariance, Thin):
-        diagonal = np.concatenate([covariance.diagonal[:-1], more, [0.0]])
+        precision = np.concatenate([covariance.precision[:-1], 1.0 / more, [np.inf]])
+        couplings = np.concatenate([covariance.couplings[:-1], np.zeros(len(more) + 1)])
         root = np.insert(covariance.root, [len(covariance.root) - 1] * len(more), 0.0, axis=0)
-        return Thin(diagonal, root)
+        return Thin(precision, couplings, root)
     n, extra = len(covariance) - 1, len(more)
     wide = np.zeros((n + extra + 1, n + extra + 1))
     wide[:n, :n] = covariance[:n, :n]

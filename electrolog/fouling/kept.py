@@ -78,14 +78,14 @@ def _read_component(kept: dict[str, Any]) -> Component:
 
 def _covariance(covariance: Covariance) -> dict[str, Any]:
     if isinstance(covariance, Thin):
-        return {"diagonal": _packed(covariance.diagonal), "root": _packed(covariance.root)}
+        return {name: _packed(getattr(covariance, name)) for name in ("precision", "couplings", "root")}
     return {"matrix": _packed(covariance)}
 
 
 def _read_covariance(kept: dict[str, Any]) -> Covariance:
     if "matrix" in kept:
         return _unpacked(kept["matrix"])
-    return Thin(_unpacked(kept["diagonal"]), _unpacked(kept["root"]))
+    return Thin(*(_unpacked(kept[name]) for name in ("precision", "couplings", "root")))
 
 
 def _units(kept: KeptUnits) -> dict[str, Any]:

@@ -15,7 +15,7 @@ from numpy.typing import NDArray
 
 from electrolog.fouling.batches import Batch
 from electrolog.fouling.clock import Clock, run_clock
-from electrolog.fouling.covariance import Covariance, between, variances
+from electrolog.fouling.covariance import Covariance, Thin, between, variances
 from electrolog.fouling.days import day_prior
 from electrolog.fouling.effects import Effects
 from electrolog.fouling.events import Events
@@ -140,8 +140,11 @@ def combine(problem: Problem, scales: Scales, state: State) -> float:
 def cavity_of(columns: NDArray[np.int64], site: Site, state: State) -> tuple[Floats, Floats]:
     """Mean (B, R) and covariance (B, R, R) of what the rows see, without the site's own contribution."""
     seen_mean = state.mean[columns].sum(axis=-1)
-    seen = between(state.covariance, columns, columns)
-    without = seen @ np.linalg.inv(np.eye(seen.shape[1]) - site.precision @ seen)
+    if isinstance(state.covariance, Thin):
+        without = state.covariance.without(columns, site.precision)
+    else:
+        seen = between(state.covariance, columns, columns)
+        without = seen @ np.linalg.inv(np.eye(seen.shape[1]) - site.precision @ seen)
     without = 0.5 * (without + without.transpose(0, 2, 1))
     own = np.einsum("bij,bj->bi", site.precision, seen_mean) - site.shift
     return seen_mean + np.einsum("bij,bj->bi", without, own), without
@@ -149,11 +152,31 @@ def cavity_of(columns: NDArray[np.int64], site: Site, state: State) -> tuple[Flo
 
 def renewed(gradient: Floats, curvature: Floats, mean: Floats, covariance: Floats) -> Site:
     """The Gaussian that, beside the cavity, has the tilted distribution's moments; its precision kept from going negative."""
-    freed = np.linalg.solve(np.eye(curvature.shape[1]) - curvature @ covariance, curvature)
-    values, vectors = np.linalg.eigh(0.5 * (freed + freed.transpose(0, 2, 1)))
-    precision = (vectors * np.maximum(values, 0.0)[:, None, :]) @ vectors.transpose(0, 2, 1)
+    precision = np.linalg.solve(np.eye(curvature.shape[1]) - curvature @ covariance, curvature)
+    precision = no_negative(0.5 * (precision + precision.transpose(0, 2, 1)))
     moved = mean + np.einsum("bij,bj->bi", covariance, gradient)
     return Site(precision, gradient + np.einsum("bij,bj->bi", precision, moved))
+
+
+def no_negative(matrices: Floats) -> Floats:
+    """Negative eigenvalues, of units whose posterior has two peaks, set to zero."""
+    doubtful = ~positive_definite(matrices)
+    if doubtful.any():
+        values, vectors = np.linalg.eigh(matrices[doubtful])
+        matrices[doubtful] = (vectors * np.maximum(values, 0.0)[:, None, :]) @ vectors.transpose(0, 2, 1)
+    return matrices
+
+
+def positive_definite(matrices: Floats) -> NDArray[np.bool_]:
+    """By elimination of all at once: a factorisation would stop at the first that isn't, without saying which."""
+    left = matrices.copy()
+    fine = np.ones(len(left), dtype=np.bool_)
+    for k in range(left.shape[1]):
+        pivot = left[:, k, k]
+        fine &= pivot > 0.0
+        scaled = left[:, k, k + 1 :] / np.where(pivot > 0.0, pivot, 1.0)[:, None]
+        left[:, k + 1 :, k + 1 :] -= left[:, k + 1 :, k][:, :, None] * scaled[:, None, :]
+    return fine
 
 
 def log_overlap(site: Site, mean: Floats, covariance: Floats) -> Floats:

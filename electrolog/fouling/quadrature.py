@@ -26,7 +26,7 @@ Floats = NDArray[np.float64]
 SLIP_SD = 2.0  # a slip of the decimal point moves log sensitivity by 2.3
 DAMAGE_MEAN, DAMAGE_SD = -0.9, 0.6  # half of the sensitivity or more is gone at once
 # Of the nodes before they are stretched, in standard deviations, by the number of latents: nothing wrong, something wrong.
-SPACING = {0: (1.0, 1.0), 1: (0.6, 0.8), 2: (0.9, 1.1)}
+SPACING = {0: (1.0, 1.0), 1: (0.8, 0.9), 2: (0.9, 1.1)}
 REACH = 4.3
 STRETCH = 0.45
 

@@ -96,12 +96,12 @@ def solve_thinly(effects: Effects, plan: Assembly, values: Floats, prior: Floats
     mean[few] = of_few @ (pull[few] - cross.T @ alone)
     mean[many] = alone - through @ mean[few]
     squares = couplings(inner, own)
-    diagonal, root = np.zeros(n + 1), np.zeros((n + 1, len(few)))
-    diagonal[many] = (1.0 + squares) / own
+    alone_precision, coupled, root = np.full(n + 1, np.inf), np.zeros(n + 1), np.zeros((n + 1, len(few)))
+    alone_precision[many], coupled[many] = own, squares
     root[few] = np.linalg.cholesky(0.5 * (of_few + of_few.T))
     root[many] = -through @ root[few]
     log_det = np.log(own).sum() - 0.5 * squares.sum() + np.linalg.slogdet(rest)[1]
-    return Solved(mean, Thin(diagonal, root), 0.5 * float(log_det))
+    return Solved(mean, Thin(alone_precision, coupled, root), 0.5 * float(log_det))
 
 
 def couplings(inner: Any, own: Floats) -> Floats:
@@ -125,7 +125,7 @@ def seen_by_most(effects: Effects) -> Integers:
     return np.array(few, dtype=np.int64)
 
 
-def conjugate_gradients(matrix: Any, right: Floats, tolerance: float = 1e-8, most: int = 200) -> Floats:
+def conjugate_gradients(matrix: Any, right: Floats, tolerance: float = 1e-6, most: int = 200) -> Floats:
     """Solves for all right-hand sides at once, preconditioned by the diagonal."""
     inverse = 1.0 / matrix.diagonal()[:, None]
     x = inverse * right
