@@ -17,6 +17,7 @@ from electrolog.measure.calibrate import CalibrationFigures
 from electrolog.record import entry, queries, sheets
 from electrolog.record.columns import Value
 from electrolog.record.journal import Writer
+from electrolog.record.readable import row_by_id
 from electrolog.record.sheets import Sheet
 from electrolog.record.store import Record
 
@@ -68,14 +69,21 @@ def log(
         rows = [read(sheet, {**typed, "electrode": label}, zone) for label in chosen]
         said = _doubts(writer, sheet, rows)
         _confirm(said, confirmed)
-        return [Entered(sheet.name, entry.add(writer, sheet, row), row, tuple(said)) for row in rows]
+        return [_entered(writer, sheet, entry.add(writer, sheet, row), said) for row in rows]
 
 
 def log_plain(record: Record, sheet: Sheet, typed: Typed, zone: tzinfo | None) -> Entered:
     """A row that is no event of a probe: a standard, a waveform, an analyte, a word."""
     values = read(sheet, typed, zone)
     with record.writing() as writer:
-        return Entered(sheet.name, entry.add(writer, sheet, values), values, ())
+        return _entered(writer, sheet, entry.add(writer, sheet, values))
+
+
+def _entered(writer: Writer, sheet: Sheet, row_id: int, doubts: Sequence[str] = ()) -> Entered:
+    """As it now stands in the record, with the record's own spelling of every name."""
+    writer.flush()
+    row = row_by_id(writer.connection, sheet, row_id)
+    return Entered(sheet.name, row_id, {column.name: row[column.name] for column in sheet.columns}, tuple(doubts))
 
 
 def log_calibrations(
@@ -85,7 +93,8 @@ def log_calibrations(
     with record.writing() as writer:
         labels = _labels(writer, new)
         rows = [
-            (_labelled(writer, one.values, label, zone), one.points) for one, label in zip(new, labels, strict=True)
+            (_labelled(writer, one.values, label, zone), _checked(one.points))
+            for one, label in zip(new, labels, strict=True)
         ]
         uncertainties = made.standards_uncertainties(writer.connection)
         for row, points in rows:
@@ -97,7 +106,7 @@ def log_calibrations(
             said += asked.of_calibration(row, points, figures, _earlier(writer, row))
         _confirm(said, confirmed)
         entered = [
-            Entered("calibrations", entry.add(writer, sheets.CALIBRATIONS, row, points), row, tuple(said))
+            _entered(writer, sheets.CALIBRATIONS, entry.add(writer, sheets.CALIBRATIONS, row, points), said)
             for row, points in rows
         ]
         queries.keep_figures(
@@ -145,6 +154,11 @@ def _first_free(stem: str, known: Mapping[str, object]) -> int:
     prefix = f"{stem}-".casefold()
     taken = [name.removeprefix(prefix) for name in known if name.startswith(prefix)]
     return max((int(tail) for tail in taken if tail.isdigit()), default=0) + 1
+
+
+def _checked(points: Points) -> list[tuple[float, float]]:
+    """Points within their columns' bounds. Raises InputError."""
+    return [(sheets.POINT_UM.checked(c, str(c)), sheets.POINT_NA.checked(i, str(i))) for c, i in points]
 
 
 def _labelled(writer: Writer, typed: Typed, label: str, zone: tzinfo | None) -> dict[str, Value]:

@@ -7,6 +7,7 @@ from collections.abc import Iterable, Iterator
 from pathlib import Path
 
 from electrolog.errors import FaultyRows, InputError, shortened
+from electrolog.record.sheets import POINT_NA, POINT_UM
 from electrolog.units import CONCENTRATION_UM, CURRENT_NA, parse_quantity
 
 Point = tuple[float, float]
@@ -29,9 +30,8 @@ def parsed(pairs: Iterable[str]) -> list[Point]:
 
 def _point(concentration: str, current: str) -> Point:
     at_um = parse_quantity(concentration, CONCENTRATION_UM, "concentration")
-    if at_um < 0:
-        raise InputError(f"concentration: '{shortened(concentration)}' lies below zero; accepted: zero or more")
-    return at_um, parse_quantity(current, CURRENT_NA, "current")
+    current_na = parse_quantity(current, CURRENT_NA, "current")
+    return POINT_UM.checked(at_um, concentration), POINT_NA.checked(current_na, current)
 
 
 def from_file(path: Path) -> dict[str, list[Point]]:

@@ -213,14 +213,16 @@ CALIBRATIONS = Sheet(
     ),
     key=("calibration",),
 )
+POINT_UM = Number("concentration_um", "concentration", required=True, unit=units.CONCENTRATION_UM, least=0)
+POINT_NA = Number("current_na", "current", required=True, unit=units.CURRENT_NA)
 POINTS = Sheet(
     "calibration_points",
     "point",
     "the raw points; a repeated concentration is a replicate",
     (
         Link("calibration", "label of the calibration", required=True, to="calibrations"),
-        Number("concentration_um", "concentration", required=True, unit=units.CONCENTRATION_UM, least=0),
-        Number("current_na", "current", required=True, unit=units.CURRENT_NA),
+        POINT_UM,
+        POINT_NA,
     ),
     key=(),
 )
