@@ -43,9 +43,14 @@ def prior_of(problem: Problem) -> tuple[Floats, Floats]:
     )
 
 
+def crowd(problem: Problem) -> float:
+    """Tolerances are for a cohort of some hundred units; a larger one's evidence is a larger number."""
+    return max(1.0, len(problem.events.units) / 500.0)
+
+
 def log_posterior(problem: Problem, theta: Floats, state: State, sweeps: int = 6) -> tuple[float, Floats, Outcome]:
     mean, sd = prior_of(problem)
-    outcome = settle(problem, theta, state, sweeps)
+    outcome = settle(problem, theta, state, sweeps, 0.01 * crowd(problem))
     off = (theta - mean) / sd
     log_prior = -0.5 * float(off @ off) - float(np.log(sd).sum()) - 0.5 * len(sd) * float(np.log(2.0 * np.pi))
     return outcome.log_evidence + log_prior, outcome.score - off / sd, outcome
@@ -64,14 +69,14 @@ def climb(problem: Problem, theta: Floats, hopeless_below: float = -np.inf) -> P
     shrink, converged = 1.0, False
     for count in range(MOST_STEPS):
         step = capped(inverse @ best.slope) * shrink
-        converged = bool(best.slope @ inverse @ best.slope < FLAT)
+        converged = bool(best.slope @ inverse @ best.slope < FLAT * crowd(problem))
         hopeless = best.value + 10.0 * float(best.slope @ step) < hopeless_below
         if converged or (count >= LOOK and hopeless):
             break
         found = try_step(problem, best, step)
-        if found is None or found.value < best.value - NOISE:
+        if found is None or found.value < best.value - NOISE * crowd(problem):
             best = try_step(problem, best, 0.0 * step, 12) or best
-        if found is None or found.value < best.value - NOISE:
+        if found is None or found.value < best.value - NOISE * crowd(problem):
             shrink *= 0.35
             if shrink < 1e-3:
                 break

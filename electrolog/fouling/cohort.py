@@ -27,7 +27,7 @@ Floats = NDArray[np.float64]
 DRAWS = 64  # of the hyper-parameters, over all shapes
 HOPELESS = 25.0  # nats behind the best shape
 PRIOR_ODDS = {"none": 0.1}  # against any other shape: a probe in use that doesn't foul at all is rare
-LARGE, PART = 2000, 400  # units of a large cohort, and of the part of it that tells shapes apart
+LARGE, PART = 2000, 300  # units of a large cohort, and of the part of it that tells shapes apart
 LEAST_WEIGHT = 0.01  # a shape with less is named, but not drawn from
 
 
@@ -79,7 +79,7 @@ def fit_shapes(events: Events, shapes: tuple[str, ...]) -> list[tuple[Problem, P
     if len(np.unique(events.unit[events.kind == READING])) <= LARGE:
         return fit_each(events, shapes)
     part = take_units(events, neighbours_in_time(events, PART))
-    fits = fit_each(part, shapes)
+    fits = fit_each(part, shapes, rough=True)
     return [
         fit_all_units(events, *fit) if weight >= LEAST_WEIGHT else fit
         for fit, weight in zip(fits, weigh(fits), strict=True)
@@ -95,7 +95,7 @@ def fit_all_units(events: Events, problem: Problem, peak: Peak, width: Width) ->
     return whole, top, rough_width(whole, top)
 
 
-def fit_each(events: Events, shapes: tuple[str, ...]) -> list[tuple[Problem, Peak, Width]]:
+def fit_each(events: Events, shapes: tuple[str, ...], rough: bool = False) -> list[tuple[Problem, Peak, Width]]:
     """One starts where the best so far ended, and is given up once it is hopelessly behind."""
     fits: list[tuple[Problem, Peak, Width]] = []
     known: dict[str, float] = {}
@@ -104,7 +104,8 @@ def fit_each(events: Events, shapes: tuple[str, ...]) -> list[tuple[Problem, Pea
         problem = pose(events, name)
         theta = np.array([known.get(prior.name, prior.mean) for prior in problem.layout.priors])
         peak = climb(problem, theta, best - HOPELESS)
-        width = widths(problem, peak) if peak.log_posterior > best - HOPELESS else rough_width(problem, peak)
+        hopeless = peak.log_posterior <= best - HOPELESS
+        width = rough_width(problem, peak) if rough or hopeless else widths(problem, peak)
         if peak.log_posterior > best:
             best = peak.log_posterior
             known.update(zip((p.name for p in problem.layout.priors), peak.theta, strict=True))

@@ -32,13 +32,15 @@ def pulls(tilted: Tilted) -> tuple[Floats, Floats, Floats, Floats]:
     """First and second moments of inverse(J) residual over the posterior, and the expected inverse(J)."""
     weight = tilted.probability
     moved = weight * tilted.shift
-    by_node = weight.sum(axis=2)[..., None] * tilted.pulled - moved @ tilted.bent.transpose(0, 2, 1)
-    gradient = by_node.sum(axis=1)
-    cross = tilted.pulled.transpose(0, 2, 1) @ (moved @ tilted.bent.transpose(0, 2, 1))
-    second = (tilted.pulled * weight.sum(axis=2)[..., None]).transpose(0, 2, 1) @ tilted.pulled
-    second += (tilted.bent * (moved * tilted.shift).sum(1)[:, None, :]) @ tilted.bent.transpose(0, 2, 1)
+    bent_back = moved @ tilted.bent.transpose(0, 2, 1)
+    plain = np.einsum("bgo->bg", weight)[..., None] * tilted.pulled
+    by_node = plain - bent_back
+    gradient = np.einsum("bgr->br", by_node)
+    cross = tilted.pulled.transpose(0, 2, 1) @ bent_back
+    second = plain.transpose(0, 2, 1) @ tilted.pulled
+    second += (tilted.bent * np.einsum("bgo,bgo->bo", moved, tilted.shift)[:, None, :]) @ tilted.bent.transpose(0, 2, 1)
     second -= cross + cross.transpose(0, 2, 1)
-    by_fate = weight.sum(axis=1)
+    by_fate = np.einsum("bgo->bo", weight)
     by_fate = np.where(np.arange(by_fate.shape[1]) == 0, 0.0, by_fate / tilted.stiffness)
     expected = tilted.precision - (tilted.bent * by_fate[:, None, :]) @ tilted.bent.transpose(0, 2, 1)
     return by_node, gradient, second, expected
@@ -56,7 +58,7 @@ def scores(
     score = np.zeros((len(real), len(layout.priors)))
     score[:, 0] = setup.level_variance * np.einsum("bij,bi,bj->b", read, real, real)
     score[:, 1] = setup.residual_variance * (own[:, q:] * real).sum(1)
-    by_fate = tilted.probability.sum(axis=1)
+    by_fate = np.einsum("bgo->bo", tilted.probability)
     score[:, 5] = by_fate[:, 1 : 1 + n].sum(1) - tilted.fates.slip_expected
     score[:, 6] = by_fate[:, 1 + n :].sum(1) - tilted.fates.damage_expected
     score[:, layout.latent_slots] = setup.latent_variance * own[:, :q]

@@ -132,17 +132,17 @@ def tilt(shape: Shape, setup: Setup, grid: Grid) -> Tilted:
     shift = push / stiffness[:, None, :]
     gain = 0.5 * (push * shift - fates.mean**2 / fates.variance - np.log(fates.variance * stiffness)[:, None, :])
     gain[..., 0] = shift[..., 0] = 0.0
-    base = -0.5 * ((pulled * residual).sum(-1) + log_det[:, None] + count_terms(setup) * np.log(2.0 * np.pi))
+    base = -0.5 * (np.einsum("bgr,bgr->bg", pulled, residual) + log_det[:, None] + count_terms(setup) * np.log(2.0 * np.pi))
     cell = np.log(np.abs(np.linalg.det(grid.spread)))[:, standard.grid] + standard.log_volume
     log_weight = (base + cell)[..., None] + gain + fates.log_prior[:, None, :]
     log_weight[:, standard.grid == 0, 1:] = -np.inf
     log_weight[:, standard.grid == 1, 0] = -np.inf
-    top = log_weight.max(axis=(1, 2), keepdims=True)
-    weight = np.exp(log_weight - top)
-    total = weight.sum(axis=(1, 2), keepdims=True)
-    log_evidence = (top + np.log(total))[:, 0, 0]
+    top = log_weight.reshape(len(nodes), -1).max(axis=1)
+    weight = np.exp(log_weight - top[:, None, None])
+    total = weight.reshape(len(nodes), -1).sum(axis=1)
+    log_evidence = top + np.log(total)
     return Tilted(
-        log_evidence, weight / total, nodes, loss, precision, pulled, shift, fates, log_weight, bent, stiffness
+        log_evidence, weight / total[:, None, None], nodes, loss, precision, pulled, shift, fates, log_weight, bent, stiffness
     )
 
 
@@ -223,14 +223,18 @@ def refit_one(tilted: Tilted, grid: Grid, which: int) -> tuple[Floats, Floats]:
     standard = standard_nodes(q)
     mine = standard.grid == which
     by_node = tilted.log_weight[:, mine][:, :, [0] if which == 0 else slice(1, None)]
-    top = by_node.max(axis=(1, 2), keepdims=True)
-    density = np.exp(by_node - top).sum(axis=2)
+    top = by_node.reshape(len(by_node), -1).max(axis=1)
+    possible = np.isfinite(top)  # nothing can be wrong with a unit that has no reading: that grid stays where it is
+    density = np.einsum("bgo->bg", np.exp(by_node - np.where(possible, top, 0.0)[:, None, None]))
+    density[~possible] = 1.0
     squared = density**2 * np.exp(-standard.log_volume[mine])
     mean, spread = moments(squared / squared.sum(axis=1, keepdims=True), tilted.nodes[:, mine])
     floor = (0.5 * np.linalg.norm(grid.spread[:, which], axis=2) * SPACING[q][which]) ** 2
     own = np.diagonal(spread, axis1=1, axis2=2)
     spread[:, np.arange(q), np.arange(q)] += np.where(own < floor, floor, own)
-    return mean, np.linalg.cholesky(spread + off_diagonal(spread))
+    moved = np.linalg.cholesky(spread + off_diagonal(spread))
+    mean = np.where(possible[:, None], mean, grid.centre[:, which])
+    return mean, np.where(possible[:, None, None], moved, grid.spread[:, which])
 
 
 def off_diagonal(matrices: Floats) -> Floats:
