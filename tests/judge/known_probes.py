@@ -10,6 +10,7 @@ from scipy.special import ndtr, ndtri
 from electrolog.judge.facts import CalibrationFacts
 from electrolog.judge.limits import LimitRow, Limits, effective
 from electrolog.judge.question import Question
+from electrolog.judge.shelf import Shelf
 
 DRAWS = 1000
 LEVELS = ndtri((np.arange(DRAWS) + 0.5) / DRAWS)
@@ -66,3 +67,18 @@ def question(probe: Known | None = None, run_min: float = 120.0, **changed: obje
         "reference_log_sensitivity": probe.log_reference,
     }
     return Question(**{**known, **changed})  # type: ignore[arg-type]
+
+
+def shelf_of(kinds: list[tuple[Known, CalibrationFacts | None, int, str]], **changed: object) -> Shelf:
+    """Of (probe, its last calibration, uses, why it is out of use)."""
+    probes = [probe for probe, *_ in kinds]
+    known = {
+        "run_min": 120.0,
+        "log_sensitivity_at": lambda minutes: np.stack([probe.log_sensitivity_at(minutes) for probe in probes]),
+        "limits": limits(highest_detection_limit=0.1, lowest_r_squared=0.9, most_uses=5.0),
+        "calibrations": [facts for _, facts, *_ in kinds],
+        "reference_log_sensitivity": np.stack([probe.log_reference for probe in probes]),
+        "uses": [uses for *_, uses, _ in kinds],
+        "out_of_use": [why for *_, why in kinds],
+    }
+    return Shelf(**{**known, **changed})  # type: ignore[arg-type]

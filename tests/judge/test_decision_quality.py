@@ -2,9 +2,9 @@
 
 import numpy as np
 import pytest
-from known_probes import Known, limits, question
 
 from electrolog.judge.verdict import judge
+from tests.judge.known_probes import Known, limits, question
 
 PROBES, RISK, RUN_MIN, READING_SD = 800, 0.05, 240.0, 0.04
 

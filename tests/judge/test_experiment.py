@@ -4,11 +4,11 @@ import itertools
 
 import numpy as np
 import pytest
-from known_probes import Known, fresh, question
 
 from electrolog.errors import InputError
 from electrolog.judge.experiment import make_next, recalibrate_first
 from electrolog.judge.verdict import judge
+from tests.judge.known_probes import Known, fresh, question
 
 RNG = np.random.default_rng(14)
 

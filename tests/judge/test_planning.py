@@ -4,13 +4,12 @@ from datetime import UTC, datetime, timedelta
 
 import numpy as np
 import pytest
-from known_probes import Known, fresh, limits, question
-from test_shelf import shelf_of
 
 from electrolog.errors import InputError
 from electrolog.judge.assign import PlannedRun, Week, assign
 from electrolog.judge.planning import success_table
 from electrolog.judge.verdict import judge
+from tests.judge.known_probes import Known, fresh, limits, question, shelf_of
 
 GRID = np.arange(0, 1200.0, 60.0)
 PROBES = [Known(rate=0.08, sd=0.03), Known(rate=0.02, sd=0.03)]

@@ -2,11 +2,11 @@
 
 import numpy as np
 import pytest
-from known_probes import Known, fresh, limits, question
 
 from electrolog.errors import InputError
 from electrolog.judge.retirement import breaking_times_min, life, probes_to_make, runs_within
 from electrolog.judge.verdict import judge
+from tests.judge.known_probes import Known, fresh, limits, question
 
 
 def test_a_known_loss_breaks_when_it_must():

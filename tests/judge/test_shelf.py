@@ -4,12 +4,12 @@ import time
 
 import numpy as np
 import pytest
-from known_probes import DRAWS, Known, fresh, limits, question
 
 from electrolog.errors import InputError
 from electrolog.judge.facts import CalibrationFacts
 from electrolog.judge.shelf import Shelf, judge_shelf
 from electrolog.judge.verdict import judge
+from tests.judge.known_probes import DRAWS, Known, fresh, limits, question, shelf_of
 
 KINDS = [
     (Known(rate=0.02), fresh(), 0, ""),
@@ -27,20 +27,6 @@ KINDS = [
     (Known(), fresh(), 0, "retired on 3 May"),
     (Known(), None, 0, ""),
 ]
-
-
-def shelf_of(kinds, **changed):
-    probes = [probe for probe, *_ in kinds]
-    known = {
-        "run_min": 120.0,
-        "log_sensitivity_at": lambda minutes: np.stack([probe.log_sensitivity_at(minutes) for probe in probes]),
-        "limits": limits(highest_detection_limit=0.1, lowest_r_squared=0.9, most_uses=5.0),
-        "calibrations": [facts for _, facts, *_ in kinds],
-        "reference_log_sensitivity": np.stack([probe.log_reference for probe in probes]),
-        "uses": [uses for *_, uses, _ in kinds],
-        "out_of_use": [why for *_, why in kinds],
-    }
-    return Shelf(**{**known, **changed})
 
 
 def test_each_probe_gets_the_verdict_it_would_get_alone():

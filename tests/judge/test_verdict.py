@@ -6,11 +6,11 @@ from dataclasses import replace
 
 import numpy as np
 import pytest
-from known_probes import DRAWS, Known, fresh, limits, question
 
 from electrolog.errors import InputError
 from electrolog.judge.facts import CalibrationFacts
 from electrolog.judge.verdict import judge
+from tests.judge.known_probes import DRAWS, Known, fresh, limits, question
 
 
 def rules(verdict):
