@@ -53,7 +53,11 @@ def test_the_widest_difference_is_then_as_narrow_as_any_split_makes_it():
 
 
 def test_a_new_kind_tried_once_is_taken_to_scatter_as_the_others():
-    assert make_next({"tried": [1.0], "known": RNG.normal(0, 1, 20)}, 3).more == {"tried": 3, "known": 0}
+    known = RNG.normal(5, 1, 20)
+    found = make_next({"tried": [1.0], "known": known}, 3)
+    assert found.more == {"tried": 3, "known": 0}
+    assert found.widest_now == pytest.approx(known.std(ddof=1) * np.sqrt(1 + 1 / 20))
+    assert found.widest_then == pytest.approx(known.std(ddof=1) * np.sqrt(1 / 4 + 1 / 20))
 
 
 @pytest.mark.parametrize(

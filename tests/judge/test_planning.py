@@ -28,6 +28,10 @@ def test_the_table_holds_the_odds_that_the_verdict_gives():
             assert table.p_success[row, column] == pytest.approx(1 - alone.p_breach)
 
 
+def test_two_moments_make_a_table():
+    assert success_table(shelf(fresh(), fresh()), [0.0, 60.0]).p_success.shape == (2, 2)
+
+
 def test_an_old_calibration_is_no_bar_for_next_week_but_none_at_all_is():
     table = success_table(shelf(fresh(age_h=100.0), None), GRID)
     assert table.p_success[0, 0] == pytest.approx(1.0)

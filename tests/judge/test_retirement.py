@@ -88,6 +88,9 @@ def test_enough_on_the_shelf_makes_none():
 
 def test_new_probes_that_never_serve_can_not_be_enough():
     assert probes_to_make(5, np.zeros((0, 0)), np.array([0.0]), good=5, made=10).enough is None
+    mostly_enough = np.where(np.arange(500) < 350, 5.0, 4.0)[None, :]
+    found = probes_to_make(5, mostly_enough, np.array([0.0]), good=5, made=10)
+    assert (found.likely, found.enough) == (0, None)
 
 
 @pytest.mark.parametrize(("good", "made", "runs"), [(3, 2, 1), (-1, 2, 1), (1, 2, -1)])

@@ -51,6 +51,10 @@ def test_pit_is_even_when_the_forecast_is_honest():
     assert ((found > 0) & (found < 1)).all()
 
 
+def test_a_truth_among_equal_draws_stands_in_their_middle():
+    assert pit(np.ones((1, 9)), np.array([1.0]))[0] == pytest.approx(0.5)
+
+
 def test_share_interval_is_wilsons():
     """Newcombe, Stat. Med. 17 (1998) 857, table I: 81 of 263 is 0.2553 to 0.3662; 0 of 20 is 0 to 0.1611."""
     assert share_interval(81, 263) == pytest.approx((0.2553, 0.3662), abs=5e-5)
@@ -66,3 +70,5 @@ def test_odds_that_come_true_are_told_from_odds_that_do_not():
     assert boastful.brier > honest.brier + 0.02
     assert all(abs(said - came) < 0.03 for said, came, _ in honest.classes)
     assert sum(count for *_, count in honest.classes) == 20_000
+    assert [int(said * 5) for said, *_ in honest.classes] == [0, 1, 2, 3, 4]
+    assert odds_score(np.array([1.0, 0.0]), np.array([True, False])).brier == 0.0
