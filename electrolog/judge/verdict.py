@@ -45,7 +45,7 @@ class NowAndEnd:
 
 @dataclass(frozen=True)
 class Change:
-    """Something that would change the verdict: shorten, recalibrate, clean or set-limit."""
+    """Something that would change the verdict: shorten, recalibrate or clean. p_breach: the odds then."""
 
     what: str
     text: str
@@ -144,17 +144,18 @@ def _verdict(question: Question, seen: Picture, decision: Decision, reasons: tup
         lod_um=NowAndEnd.of(*(beside.lod_um(log, times) for log in logs)),
         p_breach_now=seen.p_now if outlook else None,
         p_by_rule=seen.p_by_rule(),
-        changes=_changes(question, seen, outlook) if outlook and decision.word != FIT else (),
+        changes=_changes(question, seen, outlook, decision) if outlook and decision.word != FIT else (),
         value_of_calibration=outlook.value if outlook else None,
     )
 
 
-def _changes(question: Question, seen: Picture, outlook: Outlook) -> tuple[Change, ...]:
-    """What would make the answer another one."""
+def _changes(question: Question, seen: Picture, outlook: Outlook, decision: Decision) -> tuple[Change, ...]:
+    """What would make the answer another one; a calibration isn't offered where the reasons call it hopeless."""
     found = []
     if outlook.longest_min and outlook.longest_min < question.run_min:
         found.append(Change("shorten", words.shorten(outlook.longest_min), outlook.risk))
-    found.append(Change("recalibrate", words.recalibrate(outlook.value), outlook.value.p_breach_if_fit))
+    if decision.word != RETIRE and not any(reason.rule == "run-length" for reason in decision.reasons):
+        found.append(Change("recalibrate", words.recalibrate(outlook.value), outlook.value.p_breach_if_fit))
     return (*found, *_cleanings(question, seen, outlook))
 
 
