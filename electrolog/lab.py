@@ -23,6 +23,7 @@ if TYPE_CHECKING:
     from electrolog.answers.asked import Run
     from electrolog.answers.backtesting import Backtest
     from electrolog.answers.checking import Checked
+    from electrolog.answers.converting import Converted
     from electrolog.answers.correcting import Corrected
     from electrolog.answers.entering import Entered, NewCalibration
     from electrolog.answers.figures import Recomputed
@@ -179,6 +180,22 @@ class Lab:
         from electrolog.answers.backtesting import backtested
 
         return backtested(self.record, analyte, cuts)
+
+    def convert(
+        self,
+        file: Path,
+        label: str,
+        analyte: str,
+        waveform: str,
+        *,
+        exposure: int | None = None,
+        start: datetime | None = None,
+        rate_hz: float | None = None,
+    ) -> Converted:
+        """A recording's currents as concentrations, with a 90 % band and all that they rest on."""
+        from electrolog.answers.converting import Wanted, converted
+
+        return converted(self.record, Wanted(file, label, analyte, waveform, exposure, start, rate_hz))
 
     def limits(self) -> list[LimitSet]:
         """Every limit there can be, with what the lab has set."""

@@ -28,6 +28,7 @@ COMMANDS: dict[str, dict[str, str]] = {
         "check": "Fit, recalibrate, retire or undetermined, before a run.",
         "fit": "How this lab's probes foul, as learned from its record.",
         "backtest": "Whether forecasts would have been right on this lab's own past.",
+        "convert": "A recording's currents into concentrations with a band.",
         "limits": "What the lab demands of a probe.",
     },
     "Correcting and trusting": {
