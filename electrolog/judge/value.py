@@ -74,7 +74,7 @@ def value_of_calibration(
 
 def _weights(log_now: Array, reading_sd_log: float, outcomes: int) -> Array:
     """(outcomes, D) weights of the draws after each likely reading; each row sums to 1."""
-    index = np.arange(outcomes)
+    index = np.arange(outcomes, dtype=np.float64)
     truths = np.sort(log_now)[((index + 0.5) / outcomes * len(log_now)).astype(int)]
     # Even in the truths, even in the errors, and by the golden ratio's lattice even in both together.
     errors = _normal_quantiles((index * GOLDEN + 0.5 / outcomes) % 1)
