@@ -25,7 +25,6 @@ class Batch:
     unit: Integers  # (B,)
     reading: Integers  # (B, n) place among all readings, 0 where padded
     real: NDArray[np.bool_]  # (B, n)
-    flagged: NDArray[np.bool_]  # (B, n) readings already known for slips, whose values count for next to nothing
     log_sensitivity: Floats  # (B, n) less the log area changes so far
     variance: Floats  # (B, n) of the line's own error
     columns: Integers  # (B, q + n, e) of the shared effects: latents first, then readings
@@ -71,4 +70,4 @@ def pad_units(units: Integers, size: int, events: Events, effects: Effects, n_la
         y, variance = np.zeros((len(units), size)), np.zeros((len(units), size))
     widened = np.full((len(units), n_latents, seen.shape[2]), none)
     widened[:, :, : latents.shape[2]] = latents[units]
-    return Batch(units, reading, real, np.zeros_like(real), y, variance, np.concatenate([widened, seen], axis=1), level)
+    return Batch(units, reading, real, y, variance, np.concatenate([widened, seen], axis=1), level)

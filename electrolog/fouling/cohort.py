@@ -13,9 +13,9 @@ from electrolog.fouling.batches import make_batches
 from electrolog.fouling.effects import lay_out_effects, layout_for
 from electrolog.fouling.events import READING, Events
 from electrolog.fouling.fit import METHOD, CohortFit, Component, KeptUnits
+from electrolog.fouling.line_error import LineError, learn_line_error
 from electrolog.fouling.notes import notes_on
 from electrolog.fouling.parameters import read_scales
-from electrolog.fouling.line_error import LineError, learn_line_error
 from electrolog.fouling.points import normal_points
 from electrolog.fouling.propagation import Problem, combine
 from electrolog.fouling.shapes import ALL_SHAPES, SHAPES
@@ -24,7 +24,7 @@ from electrolog.fouling.subset import neighbours_in_time, take_units
 from electrolog.fouling.summary import Fitted, summarise
 
 Floats = NDArray[np.float64]
-DRAWS = 64  # of the hyper-parameters, over all shapes
+DRAWS = (32, 96)  # of the hyper-parameters, over all shapes: in a large cohort, in a young one
 HOPELESS = 25.0  # nats behind the best shape
 PRIOR_ODDS = {"none": 0.1}  # against any other shape: a probe in use that doesn't foul at all is rare
 LARGE, PART = 2000, 300  # units of a large cohort, and of the part of it that tells shapes apart
@@ -47,7 +47,9 @@ def fit_cohort(events: Events, *, shapes: tuple[str, ...] = ALL_SHAPES) -> Cohor
         if w > 0.0
     ]
     components = tuple(one.part for one in fitted)
-    unsettled = tuple(p.layout.shape.name for (p, peak, _), w in zip(fits, drawn, strict=True) if w and not peak.converged)
+    unsettled = tuple(
+        p.layout.shape.name for (p, peak, _), w in zip(fits, drawn, strict=True) if w and not peak.converged
+    )
     shape_weights = dict(zip(shapes, weights.tolist(), strict=True))
     return CohortFit(
         METHOD,
@@ -142,7 +144,8 @@ def keep(problem: Problem, peak: Peak, width: Width, weight: float) -> Component
     # The last sweep has renewed the stand-ins: the shared effects have to be those of the stand-ins that are kept,
     # or a unit taken out again would leave a negative precision behind.
     combine(problem, read_scales(problem.layout, peak.theta), peak.state)
-    count = max(1, round(DRAWS * weight))
+    most = np.clip(10_000 // max(1, len(problem.events.units)), *DRAWS)
+    count = max(1, round(float(most) * weight))
     theta = peak.theta + normal_points(count, len(peak.theta)) @ np.linalg.cholesky(width.covariance).T
     mean = peak.state.mean[:-1]
     labels = problem.events.units

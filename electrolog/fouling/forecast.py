@@ -33,7 +33,7 @@ from electrolog.fouling.quadrature import (
 Floats = NDArray[np.float64]
 Integers = NDArray[np.int64]
 DRAWS = 1024
-CHUNK = 4096  # pairs of unit and hyper-parameter draw worked on at once
+CHUNK = 800  # pairs of unit and hyper-parameter draw worked on at once
 
 
 @dataclass(frozen=True)

@@ -27,7 +27,11 @@ ARRAYS = ("theta", "theta_draws", "theta_covariance", "mean", "mean_draws")
 def to_dict(fit: CohortFit) -> dict[str, Any]:
     plain = {name: getattr(fit, name) for name in PLAIN}
     line = {"typical_variance": fit.line_error.typical_variance, "prior_df": fit.line_error.prior_df}
-    return plain | {"line_error": line, "notes": list(fit.notes), "components": [_component(part) for part in fit.components]}
+    return plain | {
+        "line_error": line,
+        "notes": list(fit.notes),
+        "components": [_component(part) for part in fit.components],
+    }
 
 
 def from_dict(kept: dict[str, Any]) -> CohortFit:
@@ -38,7 +42,9 @@ def from_dict(kept: dict[str, Any]) -> CohortFit:
         )
     parts = tuple(_read_component(part) for part in kept["components"])
     plain = {name: kept[name] for name in PLAIN}
-    return CohortFit(**(plain | {"line_error": LineError(**kept["line_error"]), "notes": tuple(kept["notes"]), "components": parts}))
+    return CohortFit(
+        **(plain | {"line_error": LineError(**kept["line_error"]), "notes": tuple(kept["notes"]), "components": parts})
+    )
 
 
 def _component(part: Component) -> dict[str, Any]:
@@ -73,7 +79,14 @@ def _read_component(kept: dict[str, Any]) -> Component:
     )
     units = tuple(_read_units(one) for one in kept["units"])
     arrays = {name: _unpacked(kept[name]) for name in ARRAYS}
-    return Component(layout=layout, effects=effects, weight=float(kept["weight"]), units=units, covariance=_read_covariance(kept["covariance"]), **arrays)
+    return Component(
+        layout=layout,
+        effects=effects,
+        weight=float(kept["weight"]),
+        units=units,
+        covariance=_read_covariance(kept["covariance"]),
+        **arrays,
+    )
 
 
 def _covariance(covariance: Covariance) -> dict[str, Any]:

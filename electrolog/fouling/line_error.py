@@ -41,7 +41,9 @@ def learn_line_error(se: Floats) -> LineError:
         return LineError(0.0, MOST_PRIOR_DF)
     prior_df = spread_to_df(float(np.var(log_variance)), len(log_variance))
     half_line, half_prior = LINE_DF / 2.0, prior_df / 2.0
-    log_typical = log_variance.mean() - digamma(half_line) + np.log(half_line) + digamma(half_prior) - np.log(half_prior)
+    log_typical = (
+        log_variance.mean() - digamma(half_line) + np.log(half_line) + digamma(half_prior) - np.log(half_prior)
+    )
     return LineError(float(np.exp(log_typical)), prior_df)
 
 

@@ -75,14 +75,20 @@ def fit_mixed(y: Floats, fixed: Floats, terms: tuple[Term, ...], *, reml: bool =
 
     products = cross_products(y, fixed, terms)
     start = np.concatenate([np.eye(t.design.shape[1])[t.slots()] for t in terms])
-    bounds = [(0.0, None) if row == column else (None, None) for t in terms for row, column in zip(*t.slots(), strict=True)]
+    bounds = [
+        (0.0, None) if row == column else (None, None) for t in terms for row, column in zip(*t.slots(), strict=True)
+    ]
 
     def criterion(theta: Floats) -> float:
         return profile(products, terms, theta, reml).deviance
 
     found = minimize(criterion, start, method="L-BFGS-B", jac="3-point", bounds=bounds, options={"ftol": 1e-13})
     polished = minimize(
-        criterion, found.x, method="Nelder-Mead", bounds=bounds, options={"xatol": 1e-8, "fatol": 1e-10, "adaptive": True}
+        criterion,
+        found.x,
+        method="Nelder-Mead",
+        bounds=bounds,
+        options={"xatol": 1e-8, "fatol": 1e-10, "adaptive": True},
     )
     return answer(products, terms, polished.x, reml, bool(polished.success))
 

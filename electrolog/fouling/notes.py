@@ -15,7 +15,12 @@ HARDLY_LEARNED = 0.8  # of a prior's sd still left
 def notes_on(
     events: Events, parts: tuple[Component, ...], shape_weights: dict[str, float], unsettled: tuple[str, ...]
 ) -> tuple[str, ...]:
-    return (*on_readings(events), *on_shapes(shape_weights), *on_hyper_parameters(events, parts), *on_convergence(unsettled))
+    return (
+        *on_readings(events),
+        *on_shapes(shape_weights),
+        *on_hyper_parameters(events, parts),
+        *on_convergence(unsettled),
+    )
 
 
 def on_readings(events: Events) -> list[str]:
@@ -25,9 +30,13 @@ def on_readings(events: Events) -> list[str]:
     notes = []
     pairs = count_informative(events)
     if pairs == 0:
-        notes.append("no probe has calibrations with exposure between them: nothing is known yet of how fast probes foul")
+        notes.append(
+            "no probe has calibrations with exposure between them: nothing is known yet of how fast probes foul"
+        )
     elif pairs < FEW_PAIRS:
-        notes.append(f"only {pairs} probes have calibrations with exposure between them: rates rest mostly on the assumptions")
+        notes.append(
+            f"only {pairs} probes have calibrations with exposure between them: rates rest mostly on the assumptions"
+        )
     if len(np.unique(events.which[read])) == 1:
         notes.append("all calibrations are of one day: that day's error can't be told from the probes' own sensitivity")
     if not np.isfinite(events.se[read]).any():
@@ -59,13 +68,19 @@ def on_hyper_parameters(events: Events, parts: tuple[Component, ...]) -> list[st
         return []
     sd = np.sqrt(np.diag(main.theta_covariance))
     left = sd / np.array([prior.sd for prior in layout.priors])
-    unknown_settings = [n for n, x in zip(layout.free_settings, left[layout.weight_slots], strict=True) if x > HARDLY_LEARNED]
-    unknown_methods = [n for n, x in zip(layout.renewals, left[layout.recovery_slots], strict=True) if x > HARDLY_LEARNED]
+    unknown_settings = [
+        n for n, x in zip(layout.free_settings, left[layout.weight_slots], strict=True) if x > HARDLY_LEARNED
+    ]
+    unknown_methods = [
+        n for n, x in zip(layout.renewals, left[layout.recovery_slots], strict=True) if x > HARDLY_LEARNED
+    ]
     notes = [f"how fast {name} fouls beside {IN_VIVO} can't be told yet" for name in unknown_settings]
     notes += [f"how much {name} brings back can't be told yet" for name in unknown_methods]
     exposed = {events.settings[k] for k in np.unique(events.which[events.kind == EXPOSURE])}
     if exposed and IN_VIVO not in exposed:
-        notes.append(f"no exposure was {IN_VIVO}: how fast probes foul there rests on the other settings and assumed weights")
+        notes.append(
+            f"no exposure was {IN_VIVO}: how fast probes foul there rests on the other settings and assumed weights"
+        )
     return notes
 
 

@@ -132,7 +132,9 @@ def tilt(shape: Shape, setup: Setup, grid: Grid) -> Tilted:
     shift = push / stiffness[:, None, :]
     gain = 0.5 * (push * shift - fates.mean**2 / fates.variance - np.log(fates.variance * stiffness)[:, None, :])
     gain[..., 0] = shift[..., 0] = 0.0
-    base = -0.5 * (np.einsum("bgr,bgr->bg", pulled, residual) + log_det[:, None] + count_terms(setup) * np.log(2.0 * np.pi))
+    base = -0.5 * (
+        np.einsum("bgr,bgr->bg", pulled, residual) + log_det[:, None] + count_terms(setup) * np.log(2.0 * np.pi)
+    )
     cell = np.log(np.abs(np.linalg.det(grid.spread)))[:, standard.grid] + standard.log_volume
     log_weight = (base + cell)[..., None] + gain + fates.log_prior[:, None, :]
     log_weight[:, standard.grid == 0, 1:] = -np.inf
@@ -142,7 +144,17 @@ def tilt(shape: Shape, setup: Setup, grid: Grid) -> Tilted:
     total = weight.reshape(len(nodes), -1).sum(axis=1)
     log_evidence = top + np.log(total)
     return Tilted(
-        log_evidence, weight / total[:, None, None], nodes, loss, precision, pulled, shift, fates, log_weight, bent, stiffness
+        log_evidence,
+        weight / total[:, None, None],
+        nodes,
+        loss,
+        precision,
+        pulled,
+        shift,
+        fates,
+        log_weight,
+        bent,
+        stiffness,
     )
 
 

@@ -122,7 +122,11 @@ def days(events: Events, fitted: list[Fitted]) -> list[dict[str, Any]]:
     rows = []
     for k, column in enumerate(place):
         name = fitted[0].problem.effects.names[column][1]
-        effect, sd, chance = float(np.asarray(mean)[k]), float(np.sqrt(np.asarray(variance)[k])), float(np.asarray(bad)[k])
+        effect, sd, chance = (
+            float(np.asarray(mean)[k]),
+            float(np.sqrt(np.asarray(variance)[k])),
+            float(np.asarray(bad)[k]),
+        )
         rows.append(
             {
                 "day": name,
@@ -154,7 +158,6 @@ def slip_probability(one: Fitted, n_readings: int) -> Floats:
     for batch, tilted in zip(one.problem.batches, one.outcome.tilted, strict=True):
         by_fate = tilted.probability.sum(axis=1)
         chance[batch.reading[batch.real]] = by_fate[:, 1 : 1 + batch.real.shape[1]][batch.real]
-        chance[batch.reading[batch.real & batch.flagged]] = 1.0
     return chance
 
 
