@@ -19,6 +19,10 @@ from electrolog.errors import ElectrologError, FaultyRows, InputError
 from electrolog.show.text import one_line, prepare_streams, safe
 
 
+class ReaderGone(Exception):
+    """Nobody reads what is printed any more, as in `| head`."""
+
+
 class LazyCommands(TyperGroup):
     """Loads a command's module when it is typed; the overview needs none of them."""
 
@@ -36,6 +40,12 @@ class LazyCommands(TyperGroup):
         single = typer.Typer(add_completion=False, rich_markup_mode=None, pretty_exceptions_enable=False)
         single.command(cmd_name, help=_unwrapped(module.command.__doc__))(module.command)
         return typer.main.get_command(single)
+
+    def invoke(self, ctx: Any) -> Any:
+        try:
+            return super().invoke(ctx)
+        except BrokenPipeError:  # the library would end the program with status 1
+            raise ReaderGone from None
 
     def format_commands(self, ctx: typer.Context, formatter: Any) -> None:  # type: ignore[override]
         for section, commands in COMMANDS.items():
@@ -95,8 +105,8 @@ def main(arguments: list[str]) -> int:
     except (typer.Abort, KeyboardInterrupt):
         print("electrolog: stopped; nothing was written", file=sys.stderr)  # noqa: T201
         return 130
-    except BrokenPipeError:
-        # The reader has gone (`| head`); without this the interpreter complains once more at its end.
+    except (BrokenPipeError, ReaderGone):
+        # Without this the interpreter complains once more at its end.
         os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
         return 0
     except Exception as error:

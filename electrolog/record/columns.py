@@ -51,6 +51,8 @@ class Label(Column):
             raise InputError(
                 f"{self.name}: '{shortened(label)}' holds a control character; accepted: printable signs on one line"
             )
+        if label and not any(unicodedata.category(c)[0] in "LNPS" for c in label):
+            raise InputError(f"{self.name}: holds no visible sign; accepted: a name that people can type again")
         return label
 
 

@@ -23,6 +23,7 @@ _SPELLED = {
     "·": "*",
     "²": "^2",
     "σ": "sd",
+    "─": "-",
 }
 _KEPT = "\n\t"
 _BIDI = {"LRE", "RLE", "PDF", "LRO", "RLO", "LRI", "RLI", "FSI", "PDI"}

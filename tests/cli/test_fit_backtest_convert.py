@@ -1,0 +1,272 @@
+"""What the lab has learned, whether to believe it, and a recording turned into concentrations."""
+
+from __future__ import annotations
+
+import csv
+import json
+import shutil
+from pathlib import Path
+from typing import Any
+
+import fouled_lab
+import numpy as np
+import pytest
+from conftest import Terminal
+
+from electrolog.lab import open_lab
+
+ASKED = ("--analyte", "dopamine")
+
+
+@pytest.fixture(scope="module")
+def fitted_record(empty_record: Path, tmp_path_factory: pytest.TempPathFactory) -> Path:
+    """The known lab, imported, with its cohort's fit kept."""
+    folder = tmp_path_factory.mktemp("fouled")
+    path = Path(shutil.copy(empty_record, folder / "fitted.db"))
+    fouled_lab.fouled_lab(folder / "exchange")
+    with pytest.MonkeyPatch.context() as patch:
+        terminal = Terminal(str(path), patch)
+        terminal.ok("import", str(folder / "exchange"))
+        terminal.ok("fit", *ASKED)
+    return path
+
+
+@pytest.fixture
+def lab(fitted_record: Path, tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> Terminal:
+    monkeypatch.chdir(tmp_path)
+    return Terminal(str(shutil.copy(fitted_record, tmp_path / "record.db")), monkeypatch)
+
+
+# --- fit --------------------------------------------------------------------------------------------------
+
+
+def test_a_fit_tells_the_half_life_that_the_lab_was_made_with(lab: Terminal) -> None:
+    (half_life,) = lab.ok("fit", *ASKED, "--json").json["half_lives"]
+    hours = half_life["hours"]
+    true_h = np.log(2) / fouled_lab.RATE
+    assert hours["low"] < true_h < hours["high"]
+    assert hours["high"] / hours["low"] < 2.0
+    assert (half_life["probes"], half_life["calibrations"]) == (34, 132)
+
+
+def test_a_fit_names_the_weak_standards_day_and_no_other(lab: Terminal) -> None:
+    (day,) = lab.ok("fit", *ASKED, "--json").json["suspicious_days"]
+    group, turn = fouled_lab.BAD_DAY
+    made = fouled_lab.FIRST + fouled_lab.timedelta(days=7 * group + turn)
+    assert day["date"] == made.date().isoformat()
+    assert day["effect"]["low"] < -0.15 < day["effect"]["high"]
+    assert day["date"] in lab.ok("fit", *ASKED).out
+
+
+def test_a_kept_fit_is_shown_again_and_a_fresh_one_is_the_same(lab: Terminal) -> None:
+    kept, again, fresh = (lab.ok("fit", *ASKED, *more, "--json").json for more in ((), (), ("--fresh",)))
+    assert kept == again
+    assert fresh["made_at"] > kept["made_at"]
+    assert {**fresh, "made_at": None} == {**kept, "made_at": None}
+
+
+def test_a_fit_says_what_it_rests_on(lab: Terminal) -> None:
+    out = lab.ok("fit", *ASKED).out
+    assert "132 calibrations of 34 probes" in out
+    assert "shape of loss" in out
+    assert "did not converge" not in out
+
+
+def test_a_fit_without_a_calibration_or_with_an_unknown_analyte_is_refused(empty: Terminal) -> None:
+    assert "nothing to fit" in empty.refused("fit", *ASKED, status=1)
+    assert "dopamine" in empty.refused("fit", "--analyte", "dopamin")
+
+
+# --- backtest ---------------------------------------------------------------------------------------------
+
+
+def test_forecasts_of_a_known_lab_hold_and_beat_the_simple_ways(lab: Terminal) -> None:
+    found = lab.ok("backtest", *ASKED, "--cuts", "2", "--json").json
+    ours, *rivals = found["methods"]
+    assert [one["method"] for one in rivals] == ["last value", "own line", "cohort mean"]
+    assert all(ours["crps"] < 0.8 * rival["crps"] for rival in rivals)
+    assert all(ours["log_score"] < rival["log_score"] for rival in rivals)
+    low, high = ours["coverage_interval"]["0.9"]
+    assert low <= 0.9 <= high
+    assert sum(ours["pit_counts"]) == found["forecasts"]
+    assert len(found["cuts"]) == 2
+    assert found["cuts"][0]["calibrations"] < found["cuts"][1]["calibrations"] < 132
+
+
+def test_the_table_names_its_cuts_and_what_no_verdict_needs(lab: Terminal) -> None:
+    out = lab.ok("backtest", *ASKED, "--cuts", "1").out
+    assert "fitted anew on 2026-" in out
+    assert "no verdict to test" in out
+
+
+def test_fit_verdicts_are_counted_once_limits_are_set(lab: Terminal) -> None:
+    lab.ok("limits", "set", "accepted-risk", "10%")
+    lab.ok("limits", "set", "least-share-left", "60%")
+    verdicts = lab.ok("backtest", *ASKED, "--cuts", "1", "--json").json["verdicts"]
+    assert 0 < verdicts["fit"] < verdicts["runs"]
+    assert verdicts["low"] <= 0.1
+    assert verdicts["expected"] < 0.2 * verdicts["fit"]
+
+
+def test_no_forecast_peeks_at_what_came_later(lab: Terminal) -> None:
+    """The last calibration of every probe is made ten times what it was: no other forecast may move."""
+    asked = ("backtest", *ASKED, "--cuts", "1", "--csv")
+    before = rows(lab.ok(*asked).out)
+    last = f"/{fouled_lab.ROUNDS - 1}"
+    latest = max(row["calibration"] for row in before if row["calibration"].endswith(last))
+    value = next(row["reading_na_um"] for row in before if row["calibration"] == latest)
+    lab.ok("amend", "calibration", latest, f"sensitivity_na_um={10 * float(value)}", "--why", "to see who peeks")
+    after = rows(lab.ok(*asked).out)
+    told = ("calibration", "cut", "low_na_um", "median_na_um", "high_na_um")
+    assert [[row[name] for name in told] for row in before] == [[row[name] for name in told] for row in after]
+    changed = [row["calibration"] for row, now in zip(before, after, strict=True) if row["crps"] != now["crps"]]
+    assert changed == [latest]
+
+
+def test_a_lab_with_too_little_says_so(cli: Terminal) -> None:
+    said = cli.refused("backtest", *ASKED, status=1)
+    assert "too little to test on: 1 calibrations follow an earlier one" in said
+
+
+def test_an_impossible_count_of_cuts_is_refused(lab: Terminal) -> None:
+    assert "accepted: 1 to 50" in lab.refused("backtest", *ASKED, "--cuts", "0")
+
+
+def rows(text: str) -> list[dict[str, str]]:
+    return list(csv.DictReader(text.splitlines()))
+
+
+# --- convert ----------------------------------------------------------------------------------------------
+
+TIME_S = np.arange(0.0, 4 * 3600.0, 2.0)
+TRUE_UM = 1.0 + 0.5 * np.sin(TIME_S / 600)
+
+
+def sensitivity_na_um(time_s: np.ndarray) -> np.ndarray:
+    return np.exp(fouled_lab.LEVEL - fouled_lab.RATE * time_s / 3600)
+
+
+def currents_na(affinity_per_um: float = 0.0) -> np.ndarray:
+    return sensitivity_na_um(TIME_S) * TRUE_UM / (1 + affinity_per_um * TRUE_UM)
+
+
+def write_csv(path: Path, time_s: np.ndarray, current_na: np.ndarray, names: str = "time_s,current_na") -> str:
+    lines = [f"{t:.6g},{'' if np.isnan(i) else f'{i:.8g}'}" for t, i in zip(time_s, current_na, strict=True)]
+    path.write_text("\n".join([names, *lines]) + "\n", encoding="utf-8")
+    return str(path)
+
+
+def converted(path: Path) -> dict[str, np.ndarray]:
+    with path.open(encoding="utf-8", newline="") as file:
+        found = list(csv.DictReader(file))
+    return {name: np.array([float(row[name] or "nan") for row in found]) for name in found[0]}
+
+
+def convert(lab: Terminal, file: str, probe: str = "R1", *more: str) -> Any:
+    return lab.ok("convert", file, "--probe", probe, *ASKED, *more, "--json").json
+
+
+@pytest.mark.parametrize(("probe", "affinity_per_um"), [("R1", 0.0), ("R2", fouled_lab.AFFINITY_PER_UM)])
+def test_a_recording_becomes_the_concentrations_it_was_made_from(
+    probe: str, affinity_per_um: float, lab: Terminal, tmp_path: Path
+) -> None:
+    """The straight and the saturating calibration; found by the recording's own name."""
+    convert(lab, write_csv(tmp_path / f"rec-{probe}.csv", TIME_S, currents_na(affinity_per_um)), probe)
+    found = converted(tmp_path / f"rec-{probe}.concentration.csv")
+    inside = (found["low_um"] < TRUE_UM) & (TRUE_UM < found["high_um"])
+    assert inside.mean() > 0.9
+    assert np.abs(found["concentration_um"] / TRUE_UM - 1).max() < 0.06
+    assert (found["high_um"] / found["low_um"]).max() < 1.5
+
+
+def test_a_fixed_factor_is_said_to_be_off_by_what_it_is(lab: Terminal, tmp_path: Path) -> None:
+    found = convert(lab, write_csv(tmp_path / "a.csv", TIME_S, currents_na()))
+    pre, post = found["fixed_factors"]
+    assert (pre["calibration"], post["calibration"]) == ("R1/0", "R1/1")
+    assert pre["off_at_end"]["median"] == pytest.approx(np.exp(-4 * fouled_lab.RATE) - 1, abs=0.04)
+    assert post["off_at_end"]["median"] == pytest.approx(0.0, abs=0.04)
+    assert post["off_on_average"]["median"] == pytest.approx(np.exp(2 * fouled_lab.RATE) - 1, abs=0.04)
+
+
+def test_what_it_rests_on_stands_beside_it(lab: Terminal, tmp_path: Path) -> None:
+    found = convert(lab, write_csv(tmp_path / "a.csv", TIME_S, currents_na()))
+    account = json.loads(Path(found["account"]).read_text(encoding="utf-8"))
+    assert (account["before"]["calibration"], account["after"]["calibration"]) == ("R1/0", "R1/1")
+    assert len(account["sensitivity"]) == 241
+    assert len(account["sha256"]) == 64
+    assert account["warnings"] == list(found["warnings"])
+
+
+def test_without_a_post_calibration_it_goes_forward_and_wider(lab: Terminal, tmp_path: Path) -> None:
+    file = write_csv(tmp_path / "a.csv", TIME_S, currents_na())
+    both = convert(lab, file, "R1", "--out", "both.csv")
+    lab.ok("strike", "calibration", "R1/1", "--why", "to see what it was worth")
+    alone = convert(lab, file, "R1", "--out", "alone.csv")
+    assert alone["after"] is None
+    assert any("no calibration after the run" in warning for warning in alone["warnings"])
+    assert width(alone["sensitivity_na_um"]["end"]) > 1.5 * width(both["sensitivity_na_um"]["end"])
+    lab.ok("strike", "calibration", "R1/0", "--why", "and without any")
+    assert "can't become a number" in lab.refused("convert", file, "-p", "R1", *ASKED, "-w", "triangle", status=1)
+
+
+def width(spread: dict[str, float]) -> float:
+    return float(np.log(spread["high"] / spread["low"]))
+
+
+def test_gaps_and_missing_samples_are_borne_and_said(lab: Terminal, tmp_path: Path) -> None:
+    current = currents_na()
+    current[100:120] = np.nan
+    kept = np.r_[0:3000, 3100 : len(TIME_S)]
+    found = convert(lab, write_csv(tmp_path / "a.csv", TIME_S[kept], current[kept]))
+    assert any("20 of 7100 samples have no current" in warning for warning in found["warnings"])
+    assert any("gap of 202 s" in warning for warning in found["warnings"])
+    result = converted(tmp_path / "a.concentration.csv")
+    assert np.flatnonzero(np.isnan(result["concentration_um"])).tolist() == list(range(100, 120))
+
+
+def test_units_are_read_from_the_columns_names(lab: Terminal, tmp_path: Path) -> None:
+    plain = write_csv(tmp_path / "plain.csv", TIME_S, currents_na())
+    other = write_csv(tmp_path / "other.csv", TIME_S / 60, currents_na() * 1e3, "time_min,current_pa")
+    convert(lab, plain)
+    convert(lab, other)
+    found, same = (converted(tmp_path / f"{name}.concentration.csv") for name in ("plain", "other"))
+    assert np.allclose(found["concentration_um"], same["concentration_um"], rtol=1e-4)
+    unknown = write_csv(tmp_path / "unknown.csv", TIME_S, currents_na(), "seconds,nanoamperes")
+    assert "time_s" in lab.refused("convert", unknown, "-p", "R1", *ASKED)
+
+
+def test_npy_and_hdf5_are_read_like_csv(lab: Terminal, tmp_path: Path) -> None:
+    h5py = pytest.importorskip("h5py")
+    np.save(tmp_path / "a.npy", np.column_stack([TIME_S, currents_na()]))
+    with h5py.File(tmp_path / "b.h5", "w") as file:
+        file["time_s"], file["current_na"] = TIME_S, currents_na()
+    for name in ("a.npy", "b.h5"):
+        convert(lab, name)
+    first, second = (converted(tmp_path / f"{name}.concentration.csv") for name in "ab")
+    assert np.array_equal(first["concentration_um"], second["concentration_um"])
+
+
+def test_a_recording_that_can_not_be_of_the_run_is_refused(lab: Terminal, tmp_path: Path) -> None:
+    long = write_csv(tmp_path / "long.csv", TIME_S * 1.5, currents_na())
+    assert "the recording runs from 0 to" in lab.refused("convert", long, "-p", "R1", *ASKED)
+    backwards = write_csv(tmp_path / "back.csv", TIME_S[::-1], currents_na())
+    assert "runs backwards" in lab.refused("convert", backwards, "-p", "R1", *ASKED)
+    several = write_csv(tmp_path / "several.csv", TIME_S, currents_na())
+    assert "which exposure is it" in lab.refused("convert", several, "-p", "G0-0", *ASKED)
+    assert not list(tmp_path.glob("*.concentration.*"))
+
+
+def test_nothing_is_overwritten(lab: Terminal, tmp_path: Path) -> None:
+    file = write_csv(tmp_path / "a.csv", TIME_S, currents_na())
+    convert(lab, file)
+    first = (tmp_path / "a.concentration.csv").read_bytes()
+    assert "nothing is overwritten" in lab.refused("convert", file, "-p", "R1", *ASKED)
+    assert "nothing is overwritten" in lab.refused("convert", file, "-p", "R1", *ASKED, "--out", file)
+    assert (tmp_path / "a.concentration.csv").read_bytes() == first
+
+
+def test_the_door_gives_arrays(lab: Terminal, tmp_path: Path) -> None:
+    file = write_csv(tmp_path / "a.csv", TIME_S, currents_na())
+    found = open_lab(lab.db).convert(Path(file), "R1", "dopamine", "triangle")
+    assert found.concentration_um.shape == found.low_um.shape == found.high_um.shape == TIME_S.shape
+    assert found.sensitivity_start.low < sensitivity_na_um(np.zeros(1))[0] < found.sensitivity_start.high
