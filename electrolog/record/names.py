@@ -137,7 +137,7 @@ def find_row(connection: Connection, one: str, name: str) -> tuple[Sheet, int]:
         return sheet, Names(connection).row_id(sheet.name, name)
     if sheet is TERMS:
         return sheet, _term_id(connection, name)
-    number = int(name) if name.isascii() and name.isdigit() else -1
+    number = _row_number(name)
     if connection.execute(select(table.c.id).where(table.c.id == number)).first() is None:
         raise UnknownName(
             f"no {sheet.one} has the number '{shortened(name)}'",
@@ -173,8 +173,13 @@ def sheet_called(one: str) -> Sheet:
 def point_place(name: str) -> tuple[str, int]:
     """`C0012/3`: the third point of calibration C0012."""
     label, slash, place = name.rpartition("/")
-    if not slash or not (place.isascii() and place.isdigit()) or int(place) < 1:
+    if not slash or _row_number(place) < 1:
         raise InputError(
             f"point: '{shortened(name)}' names no point; accepted: the calibration and the point's place, as in C0012/3"
         )
-    return label, int(place)
+    return label, _row_number(place)
+
+
+def _row_number(text: str) -> int:
+    """-1 for what is no number, or one that no table ever reaches."""
+    return int(text) if text.isascii() and text.isdigit() and len(text) < 10 else -1
