@@ -240,21 +240,19 @@ def refit_one(tilted: Tilted, grid: Grid, which: int) -> tuple[Floats, Floats]:
     density = np.einsum("bgo->bg", np.exp(by_node - np.where(possible, top, 0.0)[:, None, None]))
     density[~possible] = 1.0
     squared = density**2 * np.exp(-standard.log_volume[mine])
-    mean, spread = moments(squared / squared.sum(axis=1, keepdims=True), tilted.nodes[:, mine])
-    floor = (0.5 * np.linalg.norm(grid.spread[:, which], axis=2) * SPACING[q][which]) ** 2
-    own = np.diagonal(spread, axis1=1, axis2=2)
-    spread[:, np.arange(q), np.arange(q)] += np.where(own < floor, floor, own)
-    moved = np.linalg.cholesky(spread + off_diagonal(spread))
+    off, spread = moments(squared / squared.sum(axis=1, keepdims=True), standard.place[mine])
+    values, axes = np.linalg.eigh(2.0 * spread)
+    floor = (0.5 * SPACING[q][which]) ** 2
+    values = np.where(values < floor, values + floor, values)
+    before = grid.spread[:, which]
+    moved = before @ (axes * np.sqrt(values)[:, None, :])
+    mean = grid.centre[:, which] + np.einsum("bij,bj->bi", before, off)
     mean = np.where(possible[:, None], mean, grid.centre[:, which])
-    return mean, np.where(possible[:, None, None], moved, grid.spread[:, which])
-
-
-def off_diagonal(matrices: Floats) -> Floats:
-    return matrices * (1.0 - np.eye(matrices.shape[1]))
+    return mean, np.where(possible[:, None, None], moved, before)
 
 
 def moments(weight: Floats, nodes: Floats) -> tuple[Floats, Floats]:
-    """Mean (B, q) and covariance (B, q, q) of nodes (B, G, q) by weight (B, G)."""
-    mean = np.einsum("bg,bgi->bi", weight, nodes)
+    """Mean (B, q) and covariance (B, q, q) of nodes (G, q) by weight (B, G)."""
+    mean = weight @ nodes
     off = nodes - mean[:, None, :]
     return mean, (weight[..., None] * off).transpose(0, 2, 1) @ off
