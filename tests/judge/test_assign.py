@@ -107,6 +107,12 @@ def test_runs_at_the_same_time_never_share_a_probe():
     assert [place.probe for place in places].count(None) == 1
 
 
+def test_a_long_run_keeps_its_probe_from_whatever_starts_before_it_ends():
+    runs = [run("long", 0, 6), run("early", 0, 1, hour=1), run("late", 0, 1, hour=5)]
+    long, early, late = assign(week(runs, [0.01], uses_left=np.array([5])))
+    assert (long.probe, early.probe, late.probe) == (None, 0, 0)
+
+
 def test_turnaround_keeps_two_runs_of_one_day_apart():
     runs = [run("a", 0), run("b", 0, hour=2.5)]
     assert all(place.probe == 0 for place in assign(week(runs, [0.01], uses_left=np.array([5]))))

@@ -129,6 +129,21 @@ def test_more_probes_are_for_what_matters_if_the_lab_says_what_does():
     assert "2" in asked.power_for
 
 
+def test_more_probes_count_in_the_groups_own_scatter():
+    """A difference of 5 where probes scatter by 10 is half a deviation: 64 per group (Cohen 1988, table 2.4.1)."""
+    spread = 10 * np.sqrt(3 / 4) * np.array([-1.0, -1.0, 1.0, 1.0])  # sample standard deviation 10
+    found = only(Groups(values={"level": {"a": 105 + spread, "b": 100 + spread}}))
+    assert found.more_probes == 64 - 4
+
+
+def test_more_probes_for_lives_bring_the_losses_that_are_missing():
+    """Schoenfeld: a ratio of 2 takes 66 losses; 8 probes of each kind gave 16, so 4.1 times as many are needed."""
+    hours = np.arange(1.0, 9.0)
+    lives = {"a": (hours, [True] * 8), "b": (hours + 0.5, [True] * 8)}
+    found = only(Groups(lives=lives, matters={"survival": 2.0}))
+    assert found.more_probes == int(np.ceil((66 - 16) / 16 * 8))
+
+
 def test_with_the_probes_it_asks_for_the_difference_is_found_as_often_as_promised():
     rng = np.random.default_rng(9)
     count = power.probes_for_mean(0.8)
