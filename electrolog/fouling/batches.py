@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from itertools import pairwise
 
 import numpy as np
 from numpy.typing import NDArray
@@ -30,6 +31,19 @@ class Batch:
     columns: Integers  # (B, q + n, e) of the shared effects: latents first, then readings
     level_columns: Integers  # (B, e)
 
+    def repeated(self, times: int) -> Batch:
+        """Every unit so many times, one after the other."""
+        rows = np.repeat(np.arange(len(self.unit)), times)
+        return Batch(
+            self.unit[rows],
+            self.reading[rows],
+            self.real[rows],
+            self.log_sensitivity[rows],
+            self.variance[rows],
+            self.columns[rows],
+            self.level_columns[rows],
+        )
+
 
 def make_batches(events: Events, effects: Effects, n_latents: int, line: LineError) -> list[Batch]:
     """Every unit that has a reading, in batches by number of readings."""
@@ -39,7 +53,7 @@ def make_batches(events: Events, effects: Effects, n_latents: int, line: LineErr
     sizes = [s for s in SIZES if s < counts.max(initial=1)]
     edges = np.array([0, *sizes, counts.max(initial=1)])
     batches = []
-    for low, high in zip(edges[:-1], edges[1:], strict=True):
+    for low, high in pairwise(edges):
         units = np.flatnonzero((counts > low) & (counts <= high))
         chunks = np.array_split(units, -(-len(units) // CHUNK)) if len(units) else []
         batches += [pad_units(chunk, int(high), events, effects, n_latents, line) for chunk in chunks]

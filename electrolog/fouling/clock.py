@@ -71,4 +71,4 @@ def log_area_changes(events: Events) -> tuple[Floats, Floats]:
     before = np.concatenate([[0.0], total])[first]
     within = total - before[events.unit]
     at_end = np.bincount(events.unit, weights=change, minlength=len(events.units))
-    return within[events.kind == READING], at_end
+    return within[events.kind == READING], at_end.astype(np.float64)

@@ -12,8 +12,9 @@ import numpy as np
 from numpy.typing import NDArray
 
 from electrolog.fouling.clock import log_area_changes, run_clock
+from electrolog.fouling.draws import Posterior, Strand, joined, loss_at
 from electrolog.fouling.events import READING, Events
-from electrolog.fouling.forecast import Posterior, Strand, joined, known_scales, loss_at
+from electrolog.fouling.forecast import known_scales
 from electrolog.fouling.points import even_points
 
 Floats = NDArray[np.float64]

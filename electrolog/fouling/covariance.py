@@ -66,8 +66,8 @@ def between(covariance: Covariance, rows: Integers, columns: Integers) -> Floats
 def variances(covariance: Covariance) -> Floats:
     """(F,)."""
     if isinstance(covariance, Thin):
-        return (covariance.diagonal + (covariance.root**2).sum(axis=1))[:-1]
-    return np.diag(covariance)[:-1]
+        return np.asarray((covariance.diagonal + (covariance.root**2).sum(axis=1))[:-1])
+    return np.asarray(np.diag(covariance)[:-1])
 
 
 def extended(covariance: Covariance, more: Floats) -> Covariance:

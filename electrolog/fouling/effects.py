@@ -42,11 +42,11 @@ class Effects:
 
     @property
     def is_day(self) -> NDArray[np.bool_]:
-        return self.variance_slot <= -2
+        return np.asarray(self.variance_slot <= -2)
 
     @property
     def lonely(self) -> NDArray[np.bool_]:
-        return self.variance_slot == -3
+        return np.asarray(self.variance_slot == -3)
 
 
 def lay_out_effects(shape: Shape, group_sds: tuple[tuple[str, str], ...], events: Events) -> Effects:

@@ -6,7 +6,7 @@ put on top. Draws are deterministic, equally weighted, and joint over shape, hyp
 
 from __future__ import annotations
 
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
@@ -14,117 +14,20 @@ from numpy.typing import NDArray
 from electrolog.fouling.batches import Batch, pad_units
 from electrolog.fouling.clock import Clock, log_area_changes, run_clock
 from electrolog.fouling.covariance import Covariance, between, extended
+from electrolog.fouling.draws import Posterior, Strand
 from electrolog.fouling.effects import Effects
 from electrolog.fouling.events import READING, Events
 from electrolog.fouling.fit import CohortFit, Component
 from electrolog.fouling.line_error import LineError
 from electrolog.fouling.parameters import Scales, prior_draws, read_scales
-from electrolog.fouling.points import even_points
-from electrolog.fouling.quadrature import (
-    Grid,
-    Setup,
-    Tilted,
-    refit_grid,
-    standard_nodes,
-    starting_grid,
-    tilt,
-)
+from electrolog.fouling.quadrature import Grid, Setup, Tilted, refit_grid, starting_grid, tilt
+from electrolog.fouling.sampling import sample
 
 Floats = NDArray[np.float64]
 Integers = NDArray[np.int64]
+__all__ = ["Posterior", "posterior"]
 DRAWS = 1024
 CHUNK = 800  # pairs of unit and hyper-parameter draw worked on at once
-
-
-@dataclass(frozen=True)
-class Strand:
-    """The draws under one shape: K draws of hyper-parameters, S of each unit under each; K S = D_shape."""
-
-    component: Component
-    shape_parameters: Floats  # (K, p)
-    weight: Floats  # (K, S) settings' weights
-    hours_at_end: Floats  # (K, U)
-    hours_at_readings: Floats  # (K, M)
-    latents: Floats  # (U, K, S, q)
-    level: Floats  # (U, K, S) as it was before any damage
-    damage: Floats  # (U, K, S) shift, 0 where none
-    damaged_from: Integers  # (U, K, S) place of the first reading after the damage
-
-
-@dataclass(frozen=True)
-class Posterior:
-    """D equally weighted joint draws per unit; see the methods. `slipped` (M,) and `damaged` (U,) are probabilities."""
-
-    strands: tuple[Strand, ...]
-    first_reading: Integers  # (U,)
-    n_readings: Integers  # (U,)
-    log_area_at_end: Floats
-    log_area_at_readings: Floats
-    slipped: Floats
-    damaged: Floats
-
-    def log_sensitivity(self, extra_hours: Floats) -> Floats:
-        """True log sensitivity (log nA/µM) after extra_hours (U, S) more in each setting: (U, D)."""
-        parts = [later(strand, extra_hours) + strand.level + strand.damage for strand in self.strands]
-        return joined(parts) + self.log_area_at_end[:, None]
-
-    def log_sensitivity_at_reading(self, which: Integers) -> Floats:
-        """True log sensitivity when reading which (U,) of each unit (0 is its first) was taken: (U, D)."""
-        return joined([self._at(strand, which) for strand in self.strands]) + self._area(which)[:, None]
-
-    def log_fraction_left(self, extra_hours: Floats, reference_reading: Integers) -> Floats:
-        """Log of the sensitivity after extra_hours (U, S) over that at the reference reading (U,): (U, D)."""
-        return self.log_sensitivity(extra_hours) - self.log_sensitivity_at_reading(reference_reading)
-
-    def only(self, places: Integers) -> Posterior:
-        """The same draws for some of the units."""
-        strands = tuple(
-            replace(
-                strand,
-                hours_at_end=strand.hours_at_end[:, places],
-                latents=strand.latents[places],
-                level=strand.level[places],
-                damage=strand.damage[places],
-                damaged_from=strand.damaged_from[places],
-            )
-            for strand in self.strands
-        )
-        return replace(
-            self,
-            strands=strands,
-            first_reading=self.first_reading[places],
-            n_readings=self.n_readings[places],
-            log_area_at_end=self.log_area_at_end[places],
-            damaged=self.damaged[places],
-        )
-
-    def _rows(self, which: Integers) -> Integers:
-        if np.any((which < 0) | (which >= self.n_readings)):
-            raise IndexError("a unit has no such reading")
-        return self.first_reading + which
-
-    def _area(self, which: Integers) -> Floats:
-        return self.log_area_at_readings[self._rows(which)]
-
-    def _at(self, strand: Strand, which: Integers) -> Floats:
-        hours = strand.hours_at_readings[:, self._rows(which)].T[:, :, None]
-        broken = strand.damaged_from <= which[:, None, None]
-        return strand.level + np.where(broken, strand.damage, 0.0) - loss_at(strand, hours)
-
-
-def joined(parts: list[Floats]) -> Floats:
-    return np.concatenate([part.reshape(len(part), -1) for part in parts], axis=1)
-
-
-def later(strand: Strand, extra_hours: Floats) -> Floats:
-    hours = strand.hours_at_end.T + extra_hours @ strand.weight.T
-    return -loss_at(strand, hours[:, :, None])
-
-
-def loss_at(strand: Strand, hours: Floats) -> Floats:
-    """hours (U, K, 1) -> (U, K, S)."""
-    value = strand.component.layout.shape.loss(hours, strand.latents, strand.shape_parameters[None, :, None, :]).value
-    return np.broadcast_to(value, strand.level.shape)
 
 
 def posterior(fit: CohortFit, events: Events) -> Posterior:
@@ -264,7 +167,10 @@ def set_up_pairs(view: View, batch: Batch, cavity: tuple[Floats, Floats], scales
 
     hours = clock.at_readings[:, batch.reading].transpose(1, 0, 2) if clock.at_readings.shape[1] else None
     shown = np.zeros((b, k, batch.real.shape[1])) if hours is None else hours
-    pairs = Batch(*(per_unit(getattr(batch, name)) for name in Batch.__dataclass_fields__))
+    pairs = batch.repeated(k)
+    # A reading on a day that the fit never saw may be off because that day was bad: beside a slip, one more chance.
+    new_day = pairs.real & (pairs.columns[:, len(view.part.layout.shape.latents) :, -1] >= len(view.part.effects.names))
+    slip_odds = per_draw(scales.slip_odds)[:, None] + new_day * per_draw(scales.bad_day_odds)[:, None]
     return Setup(
         pairs,
         shown.reshape(b * k, -1) * pairs.real,
@@ -273,7 +179,7 @@ def set_up_pairs(view: View, batch: Batch, cavity: tuple[Floats, Floats], scales
         per_draw(scales.level_sd**2),
         per_draw(scales.residual_sd**2),
         per_draw(scales.latent_sds**2),
-        per_draw(scales.slip_odds),
+        slip_odds,
         per_draw(scales.damage_odds),
         per_draw(scales.shape),
     )
@@ -300,36 +206,3 @@ def cavity_of_level(cavity: tuple[Floats, Floats], batch: Batch, view: View) -> 
     means, joint = cavity
     k = len(means)
     return means[:, :, -1].T.ravel(), np.repeat(joint[:, -1, :], k, axis=0)
-
-
-def sample(
-    tilted: Tilted, grid: Grid, setup: Setup, level: tuple[Floats, Floats], per_theta: int
-) -> tuple[Floats, Floats, Floats, Integers]:
-    """S draws per pair: latents (B, S, q), level before damage (B, S), damage (B, S), and the reading it came before."""
-    from scipy.special import ndtri
-
-    n_pairs, n_nodes, n_fates = tilted.probability.shape
-    q, n = tilted.nodes.shape[2], setup.batch.real.shape[1]
-    points = even_points(n_pairs * per_theta, 3 + q).reshape(n_pairs, per_theta, 3 + q)
-    ranks = (np.arange(per_theta) + points[:, :, 0]) / per_theta
-    steps = np.cumsum(tilted.probability.reshape(n_pairs, -1), axis=1)
-    cell = np.minimum((ranks[:, :, None] * steps[:, -1:, None] > steps[:, None, :]).sum(axis=2), n_nodes * n_fates - 1)
-    node, fate = cell // n_fates, cell % n_fates
-    pair = np.arange(n_pairs)[:, None]
-    standard = standard_nodes(q)
-    within = standard.place[node] + (points[:, :, 3:] - 0.5) * standard.sides[node]
-    which = standard.grid[node]
-    latents = grid.centre[pair, which] + np.einsum("bsij,bsj->bsi", grid.spread[pair, which], within)
-    z = ndtri(points[:, :, 1:3])
-    shift = tilted.shift[pair, node, fate] + z[:, :, 0] / np.sqrt(tilted.stiffness[pair, fate])
-    shift = np.where(fate > 0, shift, 0.0)
-    mean, with_rows = level
-    seen = with_rows[:, :-1].copy()
-    seen[:, q:] += setup.level_variance[:, None] * setup.batch.real
-    gain = np.einsum("bij,bj->bi", tilted.precision, seen)
-    left = with_rows[:, -1] + setup.level_variance - np.einsum("bi,bi->b", gain, seen)
-    by_node = np.einsum("bi,bgi->bg", seen, tilted.pulled)[pair, node]
-    by_fate = np.einsum("bi,bio->bo", seen, tilted.bent)[pair, fate]
-    drawn = mean[:, None] + by_node - by_fate * shift + np.sqrt(np.maximum(left, 0.0))[:, None] * z[:, :, 1]
-    is_damage = fate > n
-    return latents, drawn, np.where(is_damage, shift, 0.0), np.where(is_damage, fate - 1 - n, 0)

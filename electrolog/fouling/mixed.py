@@ -127,7 +127,7 @@ def profile(products: Products, terms: tuple[Term, ...], theta: Floats, reml: bo
     if reml:
         log_det += 2.0 * np.log(diagonal[q:-1]).sum()
     deviance = log_det + free * (1.0 + np.log(2.0 * np.pi * diagonal[-1] ** 2 / free))
-    return Profile(float(deviance), root, solved)
+    return Profile(float(deviance), root.astype(np.float64), solved.astype(np.float64))
 
 
 def split(terms: tuple[Term, ...], theta: Floats) -> list[Floats]:
@@ -154,14 +154,15 @@ def answer(products: Products, terms: tuple[Term, ...], theta: Floats, reml: boo
     free = products.n - (p if reml else 0)
     variance = best.factor[-1, -1] ** 2 / free
     # [other terms, fixed] solve the triangle against the last row; the first term follows from them.
-    rest = np.linalg.solve(best.factor[:-1, :-1].T, best.factor[-1, :-1])
+    rest = np.asarray(np.linalg.solve(best.factor[:-1, :-1].T, best.factor[-1, :-1]), dtype=np.float64)
     inverse = np.linalg.inv(best.factor[:-1, :-1])
-    covariance = variance * (inverse.T @ inverse)[-p:, -p:]
+    covariance = np.asarray(variance * (inverse.T @ inverse)[-p:, -p:], dtype=np.float64)
     first = best.solved[:, :, -1] - best.solved[:, :, :-1] @ rest
-    spherical, at = [first], 0
+    spherical: list[Floats] = [first]
+    at = 0
     for term in terms[1:]:
         r = term.design.shape[1]
-        spherical.append(rest[at : at + term.n_groups * r].reshape(-1, r))
+        spherical.append(rest[at : at + term.n_groups * r].reshape(-1, r).astype(np.float64))
         at += term.n_groups * r
     effects = tuple(b @ factor.T for b, factor in zip(spherical, factors, strict=True))
     covariances = tuple(variance * factor @ factor.T for factor in factors)

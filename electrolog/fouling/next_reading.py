@@ -5,8 +5,8 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 
+from electrolog.fouling.draws import Posterior, Strand
 from electrolog.fouling.fit import CohortFit
-from electrolog.fouling.forecast import Posterior, Strand
 from electrolog.fouling.parameters import read_scales
 from electrolog.fouling.quadrature import SLIP_SD
 

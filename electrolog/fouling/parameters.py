@@ -103,8 +103,15 @@ def read_scales(layout: Layout, theta: Floats) -> Scales:
     weight = np.ones((*theta.shape[:-1], len(layout.settings)))
     free = [k for k, name in enumerate(layout.settings) if name != IN_VIVO]
     weight[..., free] = np.exp(theta[..., layout.weight_slots])
+    level, residual, day, bad_day, bad_odds, slips, damage = np.moveaxis(common, -1, 0)
     return Scales(
-        *(common[..., k] for k in range(COMMON)),
+        level,
+        residual,
+        day,
+        bad_day,
+        bad_odds,
+        slips,
+        damage,
         np.exp(theta[..., layout.latent_slots]),
         np.exp(theta[..., layout.group_slots]),
         weight,

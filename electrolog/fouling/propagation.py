@@ -185,7 +185,7 @@ def log_overlap(site: Site, mean: Floats, covariance: Floats) -> Floats:
     pull = site.shift - np.einsum("bij,bj->bi", site.precision, mean)
     moved = np.linalg.solve(ratio, np.einsum("bij,bj->bi", covariance, pull)[..., None])[..., 0]
     linear = np.einsum("bi,bi->b", site.shift + pull, mean) * 0.5
-    return linear + 0.5 * np.einsum("bi,bi->b", pull, moved) - 0.5 * np.linalg.slogdet(ratio)[1]
+    return np.asarray(linear + 0.5 * np.einsum("bi,bi->b", pull, moved) - 0.5 * np.linalg.slogdet(ratio)[1])
 
 
 def sweep_days(effects: Effects, scales: Scales, state: State) -> tuple[float, Floats, Floats]:
@@ -228,7 +228,7 @@ def set_up(batch: Batch, scales: Scales, clock: Clock, mean: Floats, covariance:
         each(scales.level_sd**2),
         each(scales.residual_sd**2),
         each(scales.latent_sds**2),
-        each(scales.slip_odds),
+        np.broadcast_to(scales.slip_odds, batch.real.shape),
         each(scales.damage_odds),
         each(scales.shape),
     )

@@ -60,7 +60,7 @@ class Setup:
     level_variance: Floats  # (B,)
     residual_variance: Floats  # (B,)
     latent_variance: Floats  # (B, q)
-    slip_odds: Floats  # (B,)
+    slip_odds: Floats  # (B, n) of each reading
     damage_odds: Floats  # (B,)
     shape_parameters: Floats  # (B, p)
 
@@ -109,12 +109,13 @@ def even_nodes(n_latents: int, spacing: float) -> Floats:
     half = int(REACH / spacing)
     line = np.arange(-half, half + 1) * spacing
     even = np.stack(np.meshgrid(*[line] * n_latents, indexing="ij"), axis=-1).reshape(-1, n_latents)
-    return even[np.linalg.norm(even, axis=1) <= REACH]
+    return np.asarray(even[np.linalg.norm(even, axis=1) <= REACH])
 
 
 def place_nodes(grid: Grid, nodes: Nodes) -> Floats:
     """(B, G, q)."""
-    return grid.centre[:, nodes.grid] + np.einsum("bgij,gj->bgi", grid.spread[:, nodes.grid], nodes.place)
+    moved = np.einsum("bgij,gj->bgi", grid.spread[:, nodes.grid], nodes.place)
+    return np.asarray(grid.centre[:, nodes.grid] + moved)
 
 
 def tilt(shape: Shape, setup: Setup, grid: Grid) -> Tilted:
@@ -187,7 +188,7 @@ def invert(matrices: Floats) -> tuple[Floats, Floats]:
 
 
 def count_terms(setup: Setup) -> Floats:
-    return setup.batch.real.sum(axis=1, keepdims=True) + setup.latent_variance.shape[1]
+    return np.asarray(setup.batch.real.sum(axis=1, keepdims=True) + setup.latent_variance.shape[1], dtype=np.float64)
 
 
 def possible_fates(setup: Setup, q: int) -> Fates:
@@ -198,7 +199,7 @@ def possible_fates(setup: Setup, q: int) -> Fates:
     along[:, q + places, 1 + places] = real
     along[:, q:, 1 + n :] = (places[:, None] >= places[None, :]) * real[:, :, None] * real[:, None, :]
     can_break = real & (places > 0)
-    slips, damages = setup.slip_odds[:, None] * real, setup.damage_odds[:, None] * can_break
+    slips, damages = setup.slip_odds * real, setup.damage_odds[:, None] * can_break
     total = 1.0 + slips.sum(1) + damages.sum(1)
     odds = np.concatenate([np.ones((n_units, 1)), slips, damages], axis=1) / total[:, None]
     with np.errstate(divide="ignore"):

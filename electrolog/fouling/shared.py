@@ -43,7 +43,7 @@ def plan_assembly(columns: list[Integers], n_effects: int) -> Assembly:
     """columns: (B, R, e) of every batch."""
     sources, keys, before = [], [], 0
     for at in columns:
-        b, r, e = at.shape
+        b, r, _ = at.shape
         entry = before + np.arange(b * r * r).reshape(b, r, r, 1, 1)
         row, column = at[:, :, None, :, None], at[:, None, :, None, :]
         real = (row < n_effects) & (column < n_effects)
@@ -58,7 +58,7 @@ def plan_assembly(columns: list[Integers], n_effects: int) -> Assembly:
 def assemble(plan: Assembly, precisions: list[Floats]) -> Floats:
     """Value of every slot."""
     flat = np.concatenate([np.zeros(0), *(p.ravel() for p in precisions)])
-    return np.bincount(plan.slot, weights=flat[plan.source], minlength=len(plan.row))
+    return np.bincount(plan.slot, weights=flat[plan.source], minlength=len(plan.row)).astype(np.float64)
 
 
 def solve(effects: Effects, plan: Assembly, values: Floats, prior: Floats, pull: Floats) -> Solved:
@@ -109,7 +109,9 @@ def couplings(inner: Any, own: Floats) -> Floats:
     entries = inner.tocoo()
     off = entries.row != entries.col
     row, column = entries.row[off], entries.col[off]
-    return np.bincount(row, weights=entries.data[off] ** 2 / (own[row] * own[column]), minlength=len(own))
+    return np.bincount(row, weights=entries.data[off] ** 2 / (own[row] * own[column]), minlength=len(own)).astype(
+        np.float64
+    )
 
 
 def seen_by_most(effects: Effects) -> Integers:
@@ -142,4 +144,4 @@ def conjugate_gradients(matrix: Any, right: Floats, tolerance: float = 1e-6, mos
         z = inverse * left
         renewed = (left * z).sum(axis=0)
         direction, size = z + renewed / np.maximum(size, 1e-300) * direction, renewed
-    return x
+    return np.asarray(x)

@@ -36,4 +36,4 @@ class FastThenSlow:
             middle = 0.5 * (low + high)
             below = self.loss(np.exp(middle), unit_rate, parameters).value < np.log(2.0)
             low, high = np.where(below, middle, low), np.where(below, high, middle)
-        return np.exp(0.5 * (low + high) - latents[..., 0])
+        return np.asarray(np.exp(0.5 * (low + high) - latents[..., 0]))

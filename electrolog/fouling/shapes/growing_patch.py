@@ -30,4 +30,4 @@ class GrowingPatch:
         return Loss(value, exponent * value / positive, ())
 
     def half_life_hours(self, latents: Floats, parameters: Floats) -> Floats:
-        return np.exp(np.log(LOG_TWO) * np.exp(-latents[..., 1]) - latents[..., 0])
+        return np.asarray(np.exp(np.log(LOG_TWO) * np.exp(-latents[..., 1]) - latents[..., 0]))
