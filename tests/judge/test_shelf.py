@@ -38,6 +38,9 @@ def test_each_probe_gets_the_verdict_it_would_get_alone():
         if not why:
             assert standings[index].p_breach == (None if alone.p_breach is None else pytest.approx(alone.p_breach))
             assert standings[index].sensitivity_na_um == pytest.approx(alone.sensitivity_na_um.end[1], rel=1e-3)
+            assert standings[index].fraction_left == pytest.approx(alone.fraction_left.end[1], rel=1e-3)
+            if facts and facts.noise_na:
+                assert standings[index].lod_um == pytest.approx(alone.lod_um.end[1], rel=1e-3)
     assert {standing.verdict for standing in standings.values()} == {"fit", "recalibrate", "undetermined", "retire"}
 
 
