@@ -1,7 +1,8 @@
 """An invented lab whose probes foul by a law that is known, as an exchange folder.
 
-log sensitivity = level - rate * hours in vivo; four probes share each day of calibration; one standard of the lab's is
-15 % too weak; level, rate, day and reading scatter as stated. R1 and R2 keep raw points, one straight, one saturating.
+log sensitivity = level - rate * hours in vivo; a day of calibration is shared by probes early and late in their lives,
+so that a weak standard, as on one day, can be told from fouling. Level, rate, day and reading scatter as stated. R1 and
+R2 keep raw points, one straight, one saturating.
 """
 
 from __future__ import annotations
@@ -17,26 +18,29 @@ LEVEL, LEVEL_SD = float(np.log(10.0)), 0.25
 RATE, RATE_SD = 0.06, 0.3
 DAY_SD, READING_SD, LINE_SE = 0.02, 0.03, 0.01
 GROUPS, PER_GROUP, ROUNDS = 8, 4, 4
-BAD_DAY = (3, 1)  # group, round
-WEAK = float(np.log(0.85))
+BAD_DAY, WEAK = 7, float(np.log(0.85))
+DAYS = 2 * GROUPS + ROUNDS - 2
 FIRST = datetime(2026, 1, 5, 9, tzinfo=UTC)
+BETWEEN_DAYS = timedelta(days=3)
 LEVELS_UM = (0.0, 0.25, 0.5, 1.0, 2.0, 4.0)
 AFFINITY_PER_UM = 0.25
 
 Rows = dict[str, list[dict[str, Any]]]
 
 
-def fouled_lab(folder: Path, seed: int = 5) -> dict[str, tuple[float, float]]:
+def fouled_lab(folder: Path, seed: int = 6) -> dict[str, tuple[float, float]]:
     """Writes the folder; returns each probe's true level and rate."""
     rng = np.random.default_rng(seed)
     rows: Rows = {name: [] for name in ("electrodes", "calibrations", "exposures", "calibration_points")}
     truth = {}
+    days = rng.normal(0.0, DAY_SD, DAYS)
+    days[BAD_DAY] = WEAK
     for group in range(GROUPS):
         names = [f"G{group}-{k}" for k in range(PER_GROUP)]
         for name in names:
             truth[name] = (rng.normal(LEVEL, LEVEL_SD), RATE * np.exp(rng.normal(0.0, RATE_SD)))
             rows["electrodes"].append({"electrode": name})
-        _write_group(rows, group, names, truth, rng)
+        _write_group(rows, 2 * group, days, {name: truth[name] for name in names}, rng)
     for name, affinity in (("R1", 0.0), ("R2", AFFINITY_PER_UM)):
         truth[name] = (LEVEL, RATE)
         rows["electrodes"].append({"electrode": name})
@@ -51,15 +55,13 @@ def fouled_lab(folder: Path, seed: int = 5) -> dict[str, tuple[float, float]]:
 
 
 def _write_group(
-    rows: Rows, group: int, names: list[str], truth: dict[str, tuple[float, float]], rng: np.random.Generator
+    rows: Rows, first_day: int, days: np.ndarray, truth: dict[str, tuple[float, float]], rng: np.random.Generator
 ) -> None:
-    hours = dict.fromkeys(names, 0.0)
+    hours = dict.fromkeys(truth, 0.0)
     for turn in range(ROUNDS):
-        day = rng.normal(0.0, DAY_SD) + (WEAK if (group, turn) == BAD_DAY else 0.0)
-        at = FIRST + timedelta(days=7 * group + turn)
-        for name in names:
-            level, rate = truth[name]
-            reading = level - rate * hours[name] + day + rng.normal(0.0, READING_SD)
+        at = FIRST + (first_day + turn) * BETWEEN_DAYS
+        for name, (level, rate) in truth.items():
+            reading = level - rate * hours[name] + days[first_day + turn] + rng.normal(0.0, READING_SD)
             rows["calibrations"].append(
                 calibration(name, turn, at, sensitivity_na_um=np.exp(reading), standard_error=LINE_SE * np.exp(reading))
             )
@@ -71,7 +73,7 @@ def _write_group(
 
 def _write_with_points(rows: Rows, name: str, affinity_per_um: float) -> None:
     """Calibrated, four hours in vivo, calibrated: without a scatter that a test would have to allow for."""
-    start = FIRST + timedelta(days=70)
+    start = FIRST + DAYS * BETWEEN_DAYS
     for turn, (hours_on, sensitivity) in enumerate(((0, np.exp(LEVEL)), (8, np.exp(LEVEL - 4 * RATE)))):
         row = calibration(name, turn, start + timedelta(hours=hours_on))
         rows["calibrations"].append({**row, "noise_na": 0.05, "stage": ("pre", "post")[turn]})

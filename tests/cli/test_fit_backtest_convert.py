@@ -8,12 +8,12 @@ import shutil
 from pathlib import Path
 from typing import Any
 
-import fouled_lab
 import numpy as np
 import pytest
-from conftest import Terminal
 
 from electrolog.lab import open_lab
+from tests.cli import fouled_lab
+from tests.cli.conftest import Terminal
 
 ASKED = ("--analyte", "dopamine")
 
@@ -51,8 +51,7 @@ def test_a_fit_tells_the_half_life_that_the_lab_was_made_with(lab: Terminal) -> 
 
 def test_a_fit_names_the_weak_standards_day_and_no_other(lab: Terminal) -> None:
     (day,) = lab.ok("fit", *ASKED, "--json").json["suspicious_days"]
-    group, turn = fouled_lab.BAD_DAY
-    made = fouled_lab.FIRST + fouled_lab.timedelta(days=7 * group + turn)
+    made = fouled_lab.FIRST + fouled_lab.BAD_DAY * fouled_lab.BETWEEN_DAYS
     assert day["date"] == made.date().isoformat()
     assert day["effect"]["low"] < -0.15 < day["effect"]["high"]
     assert day["date"] in lab.ok("fit", *ASKED).out
@@ -173,7 +172,7 @@ def test_a_recording_becomes_the_concentrations_it_was_made_from(
     """The straight and the saturating calibration; found by the recording's own name."""
     convert(lab, write_csv(tmp_path / f"rec-{probe}.csv", TIME_S, currents_na(affinity_per_um)), probe)
     found = converted(tmp_path / f"rec-{probe}.concentration.csv")
-    inside = (found["low_um"] < TRUE_UM) & (TRUE_UM < found["high_um"])
+    inside = (found["low_um"] < TRUE_UM) & (found["high_um"] > TRUE_UM)
     assert inside.mean() > 0.9
     assert np.abs(found["concentration_um"] / TRUE_UM - 1).max() < 0.06
     assert (found["high_um"] / found["low_um"]).max() < 1.5
