@@ -15,9 +15,11 @@ from datetime import datetime, tzinfo
 from pathlib import Path
 from typing import TYPE_CHECKING
 
+from electrolog.answers.judging import Judging, demands
+from electrolog.answers.measuring import Measuring
 from electrolog.record import sheets
 from electrolog.record.columns import Value
-from electrolog.record.store import Record, default_location, open_record
+from electrolog.record.store import default_location, open_record
 
 if TYPE_CHECKING:
     from electrolog.answers.asked import Run
@@ -25,11 +27,9 @@ if TYPE_CHECKING:
     from electrolog.answers.checking import Checked
     from electrolog.answers.converting import Converted
     from electrolog.answers.correcting import Corrected
-    from electrolog.answers.entering import Entered, NewCalibration
-    from electrolog.answers.figures import Recomputed
+    from electrolog.answers.entering import Entered
     from electrolog.answers.fitting import FittedCohort
     from electrolog.answers.forecasting import Forecast
-    from electrolog.answers.history import Reading
     from electrolog.answers.limiting import LimitSet
     from electrolog.answers.shelf import Filter, Shelved
     from electrolog.record.exchange_in import ImportReport
@@ -41,11 +41,8 @@ if TYPE_CHECKING:
 
 
 @dataclass(frozen=True)
-class Lab:
+class Lab(Measuring, Judging):
     """A record and the time zone in which times without an offset are read (None: the machine's)."""
-
-    record: Record
-    zone: tzinfo | None = None
 
     # --- at the bench -------------------------------------------------------------------------------------
 
@@ -76,12 +73,6 @@ class Lab:
 
         return log_plain(self.record, sheets.BY_NAME[sheet], values, self.zone)
 
-    def calibrate(self, new: Sequence[NewCalibration], *, confirmed: bool = False) -> list[Entered]:
-        """Logs calibrations with their raw points and keeps what was computed from them."""
-        from electrolog.answers.entering import log_calibrations
-
-        return log_calibrations(self.record, new, self.zone, confirmed)
-
     # --- asking back --------------------------------------------------------------------------------------
 
     def rows(self, sheet: str) -> list[Row]:
@@ -107,24 +98,10 @@ class Lab:
             probe = queries.probes(connection, [label])[0]
             return probe, queries.events(connection, [probe["id"]]).get(label, [])
 
-    def readings(
-        self, labels: Sequence[str], *, analyte: str | None = None, waveform: str | None = None
-    ) -> list[Reading]:
-        """The sensitivity history of the named probes, oldest first."""
-        from electrolog.answers.history import readings
-
-        return readings(self.record, labels, analyte, waveform)
-
     def shelf(self, wanted: Filter, moment: datetime | None = None) -> list[Shelved]:
         from electrolog.answers.shelf import shelf
 
         return shelf(self.record, wanted, moment)
-
-    def usual_waveform(self, label: str, analyte: str) -> str:
-        """The waveform this probe was last calibrated with for the analyte. Raises InputError if it never was."""
-        from electrolog.answers.history import usual_waveform
-
-        return usual_waveform(self.record, label, analyte)
 
     def words(self, kind: str) -> list[str]:
         from electrolog.record.names import Names
@@ -163,11 +140,9 @@ class Lab:
         moment: datetime | None = None,
     ) -> list[Checked]:
         """The verdict on each probe for a run; `limits` override the lab's for this run, with their units."""
-        from electrolog.answers.checking import Demands, check
-        from electrolog.answers.limiting import typed_limits
+        from electrolog.answers.checking import check
 
-        demands = Demands(needs_um, project, typed_limits(limits or {}))
-        return check(self.record, labels, run, demands, moment)
+        return check(self.record, labels, run, demands(needs_um, project, limits), moment)
 
     def cohort_fit(self, analyte: str, *, fresh: bool = False) -> FittedCohort:
         """How the lab's probes foul, as its record has taught; `fresh` fits again whatever is kept."""
@@ -246,11 +221,6 @@ class Lab:
 
         with self.record.reading() as connection:
             return verify(connection)
-
-    def recompute(self) -> list[Recomputed]:
-        from electrolog.answers.figures import recompute
-
-        return recompute(self.record)
 
     # --- in and out ---------------------------------------------------------------------------------------
 

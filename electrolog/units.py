@@ -51,6 +51,8 @@ WEIGHT_PERCENT = Unit("wt%", {"%": 1.0, "wt%": 1.0}, "5%")
 FRACTION = Unit("", {"%": 0.01}, "0.7, 70%")
 SENSITIVITY_NA_UM = Unit("nA/µM", {"nA/uM": 1.0, "pA/nM": 1.0, "nA/nM": 1e3, "pA/uM": 1e-3, "nA/mM": 1e-3}, "12.5nA/uM")
 MOLAR_MASS_G_MOL = Unit("g/mol", {"g/mol": 1.0, "kg/mol": 1e3}, "153.18g/mol")
+MASS_MG = Unit("mg", {"ug": 1e-3, "mg": 1.0, "g": 1e3}, "18.96mg, 0.5g")
+VOLUME_ML = Unit("mL", {"ul": 1e-3, "ml": 1.0, "l": 1e3}, "10mL, 50uL, 1L")
 COUNT = Unit("", {}, "3")
 PLAIN = Unit("", {}, "0.95")
 

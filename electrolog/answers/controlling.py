@@ -7,9 +7,9 @@ from collections import defaultdict
 from collections.abc import Sequence
 from dataclasses import dataclass
 from datetime import datetime
-from enum import StrEnum
 
 from electrolog.answers.history import Reading, readings
+from electrolog.answers.quantities import Quantity
 from electrolog.errors import DataError, InputError
 from electrolog.measure import control as charts
 from electrolog.measure.control import Chart, Cusum
@@ -17,14 +17,6 @@ from electrolog.record.names import Names
 from electrolog.record.store import Record
 
 FEWEST = 4  # three ranges are little enough to set limits by
-
-
-class Quantity(StrEnum):
-    SENSITIVITY = "sensitivity"
-    NOISE = "noise"
-    BACKGROUND = "background"
-    OXIDATION = "oxidation-peak"
-    REDUCTION = "reduction-peak"
 
 
 _COLUMNS = {

@@ -8,6 +8,7 @@ from datetime import tzinfo
 from typing import Any
 
 from electrolog.answers import figures as made
+from electrolog.answers import handling
 from electrolog.errors import unknown
 from electrolog.record import amend, names, queries, sheets
 from electrolog.record.columns import Value
@@ -32,12 +33,17 @@ def amend_row(
     """Amends `calibration C0012`, `coating 17` or `point C0012/3`. An empty text makes a column unknown."""
     with record.writing(reason) as writer:
         sheet, row_id, ordinal = _place(writer, one, name)
-        values = {column: _read(sheet, column, text, zone) for column, text in typed.items()}
         before = {} if ordinal else row_by_id(writer.connection, sheet, row_id) if _live(writer, sheet, row_id) else {}
+        if sheet is sheets.CALIBRATIONS:
+            typed = handling.amended(before.get("note"), typed)
+        values = {column: _read(sheet, column, text, zone) for column, text in typed.items()}
         changed = amend.amend(writer, sheet, row_id, values, ordinal)
         _make_figures_anew(writer, sheet, row_id)
         plain = {column.removesuffix("_id"): pair for column, pair in changed.items()}
         named = {column: (before.get(column, old), values.get(column, new)) for column, (old, new) in plain.items()}
+        if sheet is sheets.CALIBRATIONS and "note" in named:
+            old, new = named.pop("note")
+            named |= handling.changes(old, str(new) if new else None)
         return Corrected(f"{sheet.one} {name}", sheet.name, named)
 
 

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -26,18 +26,22 @@ def routes(reading: Reading) -> Routes:
         return Routes((), {"every route": "there is no sensitivity above zero"})
     blanks = [current for concentration, current in reading.points if concentration == 0]
     tried: dict[str, Callable[[], Limits]] = {
-        "the signal's noise": lambda: detection.from_noise(_measured(noise_na), sensitivity),
+        "3 × the signal's noise / sensitivity": lambda: detection.from_noise(_measured(noise_na), sensitivity),
         "IUPAC 1995 (Currie), the signal's noise": lambda: detection.currie(_measured(noise_na), sensitivity),
-        "the blanks": lambda: detection.from_blanks(blanks, sensitivity),
+        f"3 × standard deviation of the {len(blanks)} blanks / sensitivity": lambda: detection.from_blanks(
+            blanks, sensitivity
+        ),
         "IUPAC 1995 (Currie), the blanks": lambda: detection.currie(_sd(blanks), sensitivity, len(blanks) - 1),
-        "the residuals": lambda: detection.from_residuals(_line(reading).residual_sd_na, sensitivity),
+        "3 × residual standard deviation / sensitivity": lambda: detection.from_residuals(
+            _line(reading).residual_sd_na, sensitivity
+        ),
         "ISO 11843-2": lambda: detection.iso_11843(_line(reading)),
-        "Hubaux–Vos": lambda: detection.hubaux_vos(_line(reading)),
+        "Hubaux–Vos prediction bands": lambda: detection.hubaux_vos(_line(reading)),
     }
     found, why_not = [], {}
     for name, route in tried.items():
         try:
-            found.append(route())
+            found.append(replace(route(), route=name))
         except ElectrologError as why:
             why_not[name] = why.message
     return Routes(tuple(found), why_not)

@@ -2,9 +2,12 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable
-from dataclasses import dataclass
+from collections.abc import Iterable, Sequence
+from dataclasses import dataclass, replace
+from typing import Any
 
+from electrolog.answers.handling import Handling, split, with_handling
+from electrolog.errors import DataError
 from electrolog.measure.calibrate import CalibrationFigures, calibrate, factor_only
 from electrolog.measure.version import METHOD
 from electrolog.record import queries, sheets
@@ -17,13 +20,14 @@ NO_CONTENT = "neither points nor a factor were kept: there is nothing to compute
 
 @dataclass(frozen=True)
 class Recomputed:
-    """A calibration whose figures a new method, or a correction, has changed."""
+    """A calibration whose figures a new method, or a correction, has changed: figure -> (before, after)."""
 
     calibration: str
     sensitivity_na_um_before: float | None
     sensitivity_na_um: float | None
     method_before: str | None
     method: str
+    changes: dict[str, tuple[Any, Any]]
 
 
 def figures_of(calibration: Calibration, uncertainties: dict[str, float | None]) -> CalibrationFigures:
@@ -38,8 +42,7 @@ def computed(calibration: Calibration, uncertainties: dict[str, float | None]) -
     row = calibration.row
     shared = uncertainties.get(row["standard"]) if row["standard"] else None
     if calibration.points:
-        concentrations, currents = zip(*calibration.points, strict=True)
-        return calibrate(concentrations, currents, noise_na=row["noise_na"], standard_relative_uncertainty=shared)
+        return _from_points(calibration, shared)
     if row["sensitivity_na_um"] is not None:
         return factor_only(
             row["sensitivity_na_um"],
@@ -48,6 +51,38 @@ def computed(calibration: Calibration, uncertainties: dict[str, float | None]) -
             standard_relative_uncertainty=shared,
         )
     return CalibrationFigures(warnings=(NO_CONTENT,))
+
+
+def _from_points(calibration: Calibration, shared: float | None) -> CalibrationFigures:
+    """As the note's handling says; where a later correction left it impossible, with equal weights, and said."""
+    concentrations, currents = zip(*calibration.points, strict=True)
+    _, chosen = split(calibration.row["note"])
+    said = [chosen.unreadable] if chosen.unreadable else []
+    try:
+        weights = chosen.weights_of(calibration.points)
+    except DataError as why:
+        weights = None
+        said.append(f"weights by {chosen.weights} can't be had ({why.message}): equal ones were used")
+    made = calibrate(
+        concentrations,
+        currents,
+        noise_na=calibration.row["noise_na"],
+        standard_relative_uncertainty=shared,
+        weights=weights,
+        through_zero=chosen.through_zero,
+    )
+    weighting = None if weights is None else chosen.weights
+    return replace(made, weighting=weighting, warnings=(*made.warnings, *said))
+
+
+def figures_of_points(
+    points: Sequence[tuple[float, float]], handling: Handling, noise_na: float | None
+) -> CalibrationFigures:
+    """Of points that aren't logged yet. Raises DataError where the handling's weights can't be had."""
+    handling.weights_of(points)
+    note = with_handling(None, Handling(handling.weights, handling.through_zero))
+    row = {"standard": None, "sensitivity_na_um": None, "noise_na": noise_na, "note": note}
+    return computed(Calibration(row, tuple(points), None), {})
 
 
 def all_figures(record: Record, calibrations: Iterable[Calibration]) -> dict[int, CalibrationFigures]:
@@ -76,12 +111,15 @@ def _changed(calibration: Calibration, made: CalibrationFigures) -> list[Recompu
     kept = calibration.figures
     if kept is None or CalibrationFigures.from_dict(kept) == made:
         return []
+    before, after = CalibrationFigures.from_dict(kept).to_dict(), made.to_dict()
+    changes = {name: (before[name], after[name]) for name in after if before[name] != after[name]}
     return [
         Recomputed(
             calibration.row["calibration"],
-            kept.get("sensitivity_na_um"),
+            before["sensitivity_na_um"],
             made.sensitivity_na_um,
             kept.get("method"),
             made.method,
+            changes,
         )
     ]

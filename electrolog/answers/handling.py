@@ -8,10 +8,10 @@ from __future__ import annotations
 
 import json
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any
 
-from electrolog.errors import ElectrologError
+from electrolog.errors import ElectrologError, InputError, shortened
 from electrolog.measure import weights
 
 MARK = "handling: "
@@ -57,6 +57,46 @@ def split(note: str | None) -> tuple[str | None, Handling]:
     except (ValueError, TypeError, AttributeError, ElectrologError):
         said = "the note's line on its handling can't be read: the points were taken as they stand, with equal weights"
         return note, Handling(unreadable=said)
+
+
+def amended(note: str | None, typed: Mapping[str, str]) -> dict[str, str]:
+    """Corrections as typed, with the note as it is to be kept: a new text leaves the handling as it is.
+
+    `weights` and `through_zero` are corrected under their own names, though they stand in the note.
+    """
+    rest = {name: value for name, value in typed.items() if name not in ("note", "weights", "through_zero")}
+    if len(rest) == len(typed):
+        return rest
+    text, known = split(note)
+    new_text, given = split(typed.get("note", text or ""))
+    known = given if given.to_dict() else known
+    known = replace(
+        known,
+        weights=weights.scheme(typed["weights"] or weights.EQUAL) if "weights" in typed else known.weights,
+        through_zero=_yes(typed["through_zero"]) if "through_zero" in typed else known.through_zero,
+    )
+    return rest | {"note": with_handling(new_text, known) or ""}
+
+
+def changes(before: str | None, after: str | None) -> dict[str, tuple[Any, Any]]:
+    """What two kept notes differ in, under the names a person uses."""
+    (old_text, old), (new_text, new) = split(before), split(after)
+    pairs = {
+        "note": (old_text, new_text),
+        "weights": (old.weights, new.weights),
+        "through_zero": (_yes_or_no(old.through_zero), _yes_or_no(new.through_zero)),
+    }
+    return {name: pair for name, pair in pairs.items() if pair[0] != pair[1]}
+
+
+def _yes_or_no(value: bool) -> str:
+    return "yes" if value else "no"
+
+
+def _yes(text: str) -> bool:
+    if text.strip().casefold() not in ("yes", "no", ""):
+        raise InputError(f"through_zero: '{shortened(text)}' is neither; accepted: yes, no")
+    return text.strip().casefold() == "yes"
 
 
 def _read(said: Mapping[str, Any]) -> Handling:

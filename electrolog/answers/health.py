@@ -6,6 +6,7 @@ import math
 from collections import defaultdict
 from collections.abc import Mapping, Sequence
 from datetime import date
+from typing import Any
 
 from electrolog.answers import figures as made
 from electrolog.answers import life as lives
@@ -92,11 +93,20 @@ def _of_the_days(
             if shift is not None and one.row[what]:
                 shared = (one.at.date(), one.row["analyte"], one.row["waveform"], f"{what} {one.row[what]}")
                 groups[shared].append((one.row["id"], shift))
-    said = []
-    for (_, _, _, what), members in groups.items():
-        text = day_points_at_the_standard([shift for _, shift in members], what)
-        said += [(key, text) for key, _ in members if text]
-    return said
+    return [(key, text) for members, what in _told_apart(groups) for key, text in _said_of(members, what)]
+
+
+def _told_apart(groups: Mapping[Any, list[tuple[int, float]]]) -> list[tuple[list[tuple[int, float]], str]]:
+    """Where the same probes share both a standard and a rig, the two can't be told apart: they are named together."""
+    named: dict[tuple[int, ...], tuple[list[tuple[int, float]], list[str]]] = {}
+    for (*_, what), members in groups.items():
+        named.setdefault(tuple(key for key, _ in members), (members, []))[1].append(what)
+    return [(members, " or ".join(whats)) for members, whats in named.values()]
+
+
+def _said_of(members: Sequence[tuple[int, float]], what: str) -> list[tuple[int, str]]:
+    text = day_points_at_the_standard([shift for _, shift in members], what)
+    return [(key, text) for key, _ in members] if text else []
 
 
 def _untouched_shift(

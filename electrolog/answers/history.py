@@ -9,12 +9,17 @@ from datetime import datetime
 from typing import Any
 
 from electrolog.answers import figures as made
+from electrolog.answers import health
 from electrolog.answers import life as lives
+from electrolog.answers.carbon import Carbon, carbon_at
+from electrolog.answers.handling import Handling, split
 from electrolog.errors import InputError, shortened
 from electrolog.measure.calibrate import CalibrationFigures
+from electrolog.measure.geometry import Specific, area_um2, per_area, per_length
 from electrolog.record import queries, sheets
 from electrolog.record.names import Names
 from electrolog.record.queries import Calibration, Event
+from electrolog.record.readable import Row
 from electrolog.record.store import Record
 
 
@@ -35,13 +40,22 @@ class Reading:
     share_left: float | None
     share_left_se: float | None
     is_reference: bool
+    handling: Handling
+    specific: tuple[Specific, ...]
     warnings: tuple[str, ...]
 
 
 def readings(
-    record: Record, labels: Sequence[str], analyte: str | None = None, waveform: str | None = None
+    record: Record,
+    labels: Sequence[str],
+    analyte: str | None = None,
+    waveform: str | None = None,
+    expected_um: tuple[float, float] | None = None,
 ) -> list[Reading]:
-    """Calibrations of the named probes, oldest first; of one analyte or waveform if named. Raises UnknownName."""
+    """Calibrations of the named probes, oldest first; of one analyte or waveform if named. Raises UnknownName.
+
+    expected_um: the lowest and highest concentration that a recording is expected to hold.
+    """
     with record.reading() as connection:
         names = Names(connection)
         wanted_analyte = None if analyte is None else names.row_id("analytes", analyte)
@@ -51,7 +65,22 @@ def readings(
         found = queries.calibrations(connection, ids, wanted_analyte, wanted_waveform)
         life = queries.events(connection, ids)
     numbers = made.all_figures(record, found)
-    return [_reading(one, life[one.row["electrode"]], numbers) for one in found]
+    said = health.warnings(record, found, numbers, expected_um)
+    by_label = {probe["electrode"]: probe for probe in probes}
+    return [
+        _reading(one, by_label[one.row["electrode"]], life[one.row["electrode"]], numbers, said.get(one.row["id"], ()))
+        for one in found
+    ]
+
+
+def readings_of(record: Record, calibrations: Sequence[str]) -> list[Reading]:
+    """The named calibrations, in the order of time. Raises UnknownName."""
+    with record.reading() as connection:
+        names = Names(connection)
+        ids = [names.row_id("calibrations", name) for name in calibrations]
+        found = queries.calibrations_by_id(connection, ids)
+    labels = list(dict.fromkeys(one.row["electrode"] for one in found))
+    return [one for one in readings(record, labels) if one.row["id"] in ids] if labels else []
 
 
 def usual_waveform(record: Record, label: str, analyte: str) -> str:
@@ -69,8 +98,15 @@ def usual_waveform(record: Record, label: str, analyte: str) -> str:
     return str(found[-1].row["waveform"])
 
 
-def _reading(calibration: Calibration, life: list[Event], numbers: dict[int, CalibrationFigures]) -> Reading:
+def _reading(
+    calibration: Calibration,
+    probe: Row,
+    life: list[Event],
+    numbers: dict[int, CalibrationFigures],
+    health_warnings: Sequence[str],
+) -> Reading:
     row = calibration.row
+    _, handling = split(row["note"])
     own = numbers[row["id"]]
     first = lives.reference(life, row["analyte"], row["waveform"], calibration.at)
     share, share_se = _share(own, numbers[first.row["id"]]) if first else (None, None)
@@ -89,8 +125,28 @@ def _reading(calibration: Calibration, life: list[Event], numbers: dict[int, Cal
         share_left=share,
         share_left_se=None if is_reference else share_se,
         is_reference=is_reference,
-        warnings=own.warnings + tuple(_said_of_order(calibration, life)),
+        handling=handling,
+        specific=_per_size(own, carbon_at(probe, life, calibration.at)),
+        warnings=(*own.warnings, *_said_of_signal(handling), *_said_of_order(calibration, life), *health_warnings),
     )
+
+
+def _per_size(own: CalibrationFigures, carbon: Carbon) -> tuple[Specific, ...]:
+    """Per exposed length and per area, where the probe's size was known at that time."""
+    if own.sensitivity_na_um is None:
+        return ()
+    sized = []
+    if carbon.geometry == "cylinder" and carbon.exposed_length_um:
+        sized.append(per_length(own.sensitivity_na_um, own.sensitivity_se_na_um, carbon.exposed_length_um))
+    area = area_um2(carbon.geometry, carbon.diameter_um, carbon.exposed_length_um)
+    if area:
+        sized.append(per_area(own.sensitivity_na_um, own.sensitivity_se_na_um, area))
+    return tuple(sized)
+
+
+def _said_of_signal(handling: Handling) -> list[str]:
+    said = (handling.signal or {}).get("warnings", [])
+    return [str(text) for text in said] if isinstance(said, list) else []
 
 
 def _share(now: CalibrationFigures, reference: CalibrationFigures) -> tuple[float | None, float | None]:

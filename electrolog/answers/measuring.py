@@ -10,13 +10,14 @@ from typing import TYPE_CHECKING
 from electrolog.record.store import Record
 
 if TYPE_CHECKING:
-    from electrolog.answers.controlling import Controlled, Quantity, Wanted
+    from electrolog.answers.controlling import Controlled, Wanted
     from electrolog.answers.detecting import Routes
     from electrolog.answers.entering import Entered, NewCalibration
     from electrolog.answers.figures import Recomputed
     from electrolog.answers.handling import Handling
     from electrolog.answers.history import Reading
     from electrolog.answers.preparing import Preparation, PreparedStandard
+    from electrolog.answers.quantities import Quantity
     from electrolog.answers.reading_off import ReadOff
     from electrolog.answers.signals import Sweep
     from electrolog.measure.calibrate import CalibrationFigures

@@ -7,6 +7,7 @@ import typer
 
 from electrolog.cli.options import At, By, Json, Medium, Note, Waveform, Yes
 from electrolog.cli.points import from_file, parsed
+from electrolog.cli.recording import FigureFile, Name, ThroughZero, Weights
 from electrolog.cli.session import lab_of, once_confirmed
 from electrolog.errors import InputError
 
@@ -38,9 +39,10 @@ def command(
     reduction: Annotated[str | None, typer.Option("--reduction", help="Reduction peak: -200mV")] = None,
     factor: Annotated[str | None, typer.Option("--factor", help="Only the factor was kept: 12.4nA/uM")] = None,
     factor_se: Annotated[str | None, typer.Option("--factor-se", help="Its standard error.")] = None,
-    name: Annotated[
-        str | None, typer.Option("--label", help="Label of the calibration (default: the next C…).")
-    ] = None,
+    weights: Weights = "equal",
+    through_zero: ThroughZero = False,
+    figure: FigureFile = None,
+    name: Name = None,
     note: Note = None,
     yes: Yes = False,
     json: Json = False,
@@ -49,6 +51,9 @@ def command(
 
     electrolog calibrate B9-01 pre DA 0:0.1 0.25uM:3.2 0.5uM:6.1,6.3 1uM:12.2 2uM:24.0 -w triangle --standard S-48-DA
     """
+    from electrolog.answers.handling import Handling, with_handling
+    from electrolog.measure.weights import scheme
+
     values = {
         "stage": stage,
         "analyte": analyte,
@@ -66,7 +71,7 @@ def command(
         "sensitivity_na_um": factor,
         "sensitivity_se_na_um": factor_se,
         "calibration": name,
-        "note": note,
+        "note": with_handling(note, Handling(scheme(weights), through_zero)),
     }
     lab = lab_of(ctx)
     known = {column: text for column, text in values.items() if text is not None}
@@ -74,8 +79,11 @@ def command(
     entered = once_confirmed(lambda confirmed: lab.calibrate(new, confirmed=confirmed), yes)
     from electrolog.show import calibrations
 
-    chosen = {str(one.values["calibration"]) for one in entered}
-    found = [r for r in lab.readings([str(one.values["electrode"]) for one in entered]) if r.calibration in chosen]
+    found = lab.readings_of([str(one.values["calibration"]) for one in entered])
+    if figure is not None:
+        from electrolog.show.signal_figures import draw_calibrations
+
+        draw_calibrations(figure, found)
     calibrations.answer(found, json)
 
 

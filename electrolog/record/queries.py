@@ -6,10 +6,10 @@ import json
 from collections import defaultdict
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
-from datetime import datetime
+from datetime import UTC, date, datetime, timedelta
 from typing import Any
 
-from sqlalchemy import Connection, Select, delete, func, insert, select
+from sqlalchemy import Connection, Select, delete, func, insert, or_, select
 
 from electrolog.record import schema, sheets
 from electrolog.record.journal import Writer
@@ -103,6 +103,17 @@ def calibrations(
 
 def calibrations_by_id(connection: Connection, ids: Sequence[int]) -> list[Calibration]:
     return _with_points(connection, readable(sheets.CALIBRATIONS).where(schema.tables["calibrations"].c.id.in_(ids)))
+
+
+def electrodes_calibrated_on(connection: Connection, days: Iterable[date]) -> list[int]:
+    """Which probes were calibrated on any of these days (UTC), by number."""
+    table = schema.tables["calibrations"]
+    spans = [datetime(day.year, day.month, day.day, tzinfo=UTC) for day in days]
+    on = [table.c.at.between(start, start + timedelta(days=1)) for start in spans]
+    if not on:
+        return []
+    found = connection.execute(select(table.c.electrode_id).where(or_(*on), table.c.struck.is_(None)).distinct())
+    return [row.electrode_id for row in found]
 
 
 def calibrations_on_standard(connection: Connection, standard_id: int) -> list[Calibration]:

@@ -3,12 +3,13 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from typing import Any
 
 from electrolog.answers.correcting import Corrected
 from electrolog.answers.figures import Recomputed
 from electrolog.show.entries import plain_name, shown
 from electrolog.show.machine import plain, print_csv, print_json
-from electrolog.show.tables import print_lines, print_table
+from electrolog.show.tables import print_lines
 from electrolog.units import shown_number
 
 
@@ -32,15 +33,16 @@ def answer_recomputed(changed: Sequence[Recomputed], json: bool, csv: bool) -> N
     elif not changed:
         print_lines("nothing changed: every kept figure is what its raw points give")
     else:
-        columns = ("calibration", "was (nA/µM)", "is (nA/µM)", "method was", "method is")
-        rows = [
-            (
-                one.calibration,
-                shown_number(one.sensitivity_na_um_before, 4),
-                shown_number(one.sensitivity_na_um, 4),
-                one.method_before,
-                one.method,
-            )
-            for one in changed
-        ]
-        print_table(columns, rows, numeric=columns[1:3])
+        for one in changed:
+            made_by = f" (method {one.method_before}, now {one.method})" if one.method_before != one.method else ""
+            told = [_change(name, pair) for name, pair in one.changes.items() if name != "method"]
+            print_lines(f"{one.calibration}{made_by}: {'; '.join(told) or 'the same figures'}")
+        print_lines(f"{len(changed)} calibrations changed")
+
+
+def _change(name: str, pair: tuple[Any, Any]) -> str:
+    if name == "warnings":
+        gone, new = ([text for text in one if text not in other] for one, other in (pair, pair[::-1]))
+        return ", ".join([*[f"no longer said: {text}" for text in gone], *[f"now said: {text}" for text in new]])
+    before, after = (shown_number(value, 6) if isinstance(value, float) else value for value in pair)
+    return f"{name} {before} -> {after}"

@@ -8,6 +8,7 @@ from typing import Any
 
 from electrolog import units
 from electrolog.answers.entering import Entered
+from electrolog.answers.handling import split
 from electrolog.clock import shown_moment
 from electrolog.record.columns import Number, Value
 from electrolog.record.sheets import BY_NAME
@@ -39,7 +40,11 @@ def sentence(one: Entered) -> str:
 
 
 def said(one: Entered) -> dict[str, Value]:
-    return {name: value for name, value in one.values.items() if value is not None and name not in _LEFT_OUT}
+    return {
+        name: value
+        for name, value in one.values.items()
+        if value is not None and name not in _LEFT_OUT and not (name == "note" and split(str(value))[0] is None)
+    }
 
 
 def plain_name(column: str) -> str:
@@ -55,6 +60,8 @@ def plain_name(column: str) -> str:
 def shown(sheet: str, name: str, value: object) -> str:
     """A value of a column, with its unit."""
     column = BY_NAME[sheet].by_name.get(name)
+    if name == "note" and isinstance(value, str):
+        value, _ = split(value)
     if value is None:
         return "unknown"
     if isinstance(value, datetime):

@@ -6,6 +6,7 @@ from collections.abc import Sequence
 from typing import Any
 
 from electrolog.answers import life as lives
+from electrolog.answers.handling import split
 from electrolog.clock import shown_moment, utc_now
 from electrolog.record import sheets
 from electrolog.record.queries import Event
@@ -58,7 +59,9 @@ def _state_line(state: lives.State) -> str:
 def _what(event: Event) -> str:
     if event.sheet is sheets.CALIBRATIONS:
         row = event.row
-        rest = {name: row[name] for name in ("standard", "rig", "by", "note") if row[name] is not None}
+        note, _ = split(row["note"])
+        said = {**{name: row[name] for name in ("standard", "rig", "by")}, "note": note}
+        rest = {name: value for name, value in said.items() if value is not None}
         return ", ".join([row["stage"], row["analyte"], row["waveform"], *_said(event, rest)])
     return ", ".join(_said(event, event.row))
 

@@ -25,6 +25,7 @@ if TYPE_CHECKING:
     Array = NDArray[np.float64]
 
 Points = Sequence[tuple[float, float]]
+MOST_LINES = 30
 _MOST_DRAWN = 20_000
 
 
@@ -50,6 +51,11 @@ def draw_calibrations(path: Path, readings: Sequence[Reading]) -> None:
     drawn = [one for one in readings if one.points]
     if not drawn:
         raise InputError("figure: no points were kept, so that there is no line to draw")
+    if len(drawn) > MOST_LINES:
+        raise InputError(
+            f"figure: {len(drawn)} calibrations are too many for one picture; accepted: up to {MOST_LINES}",
+            "name fewer probes, or choose with --analyte and --waveform",
+        )
     columns = min(3, len(drawn))
     rows = -(-len(drawn) // columns)
     with figure(path, 3.6 * columns + 0.6, 3.4 * rows) as paper:
