@@ -130,7 +130,7 @@ def converted(record: Record, wanted: Wanted) -> Converted:
     fixed = tuple(_fixed(event, known, np.exp(log_s)) for event in calibrations)
     warnings = (
         *remarks.of_recording(time_s, current_na, run_s),
-        *remarks.of_range(middle, read),
+        *remarks.of_range(current_na, middle, read),
         *read.said,
         *remarks.of_calibrations(known.life, known.run, known.pre, known.post, known.assay.waveform),
         *([] if fit.converged else ["the cohort's fit did not converge: look at `electrolog fit`"]),

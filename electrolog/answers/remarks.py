@@ -33,8 +33,8 @@ def of_recording(time_s: Floats, current_na: Floats, run_s: tuple[float, float])
         yield "the recording outlasts the exposure as logged: outside it no fouling is counted"
 
 
-def of_range(concentration_um: Floats, read: ReadBy) -> Iterator[str]:
-    flat = np.isinf(concentration_um).mean()
+def of_range(current_na: Floats, concentration_um: Floats, read: ReadBy) -> Iterator[str]:
+    flat = (np.isfinite(current_na) & ~np.isfinite(concentration_um)).mean()
     if flat > 0:
         yield f"{shown_percent(float(flat))} of the samples lie where the calibration is flat: no number is given there"
     if read.highest_um is not None:

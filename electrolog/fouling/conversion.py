@@ -86,8 +86,8 @@ class Curve:
 def band(current_na: Floats, moment: Integers, log_sensitivity: Floats, curve: Curve) -> Floats:
     """(3, N) 5, 50 and 95 % quantiles of the concentration (µM) behind each sample.
 
-    current_na (N,), NaN where unknown; moment (N,): which row of log_sensitivity (T, D) holds for it. inf: the sample
-    lies where the curve is flat.
+    current_na (N,), NaN where unknown; moment (N,): which row of log_sensitivity (T, D) holds for it. Not finite:
+    the current is unknown, or lies where the curve is flat.
     """
     found = np.full((3, len(current_na)), np.nan)
     offset_na = _offsets(curve, log_sensitivity.shape[1])
@@ -110,9 +110,18 @@ def _offsets(curve: Curve, count: int) -> Floats:
 
 
 def _quantiles(current_na: Floats, sensitivity_na_um: Floats, offset_na: Floats, curve: Curve) -> Floats:
-    few = len(current_na) <= NODES
-    nodes = current_na if few else np.linspace(current_na.min(), current_na.max(), NODES)
+    nodes, back = np.unique(current_na, return_inverse=True)
+    many = len(nodes) > NODES
+    nodes = _nodes(nodes, offset_na) if many else nodes
     drawn = curve.concentration_um(nodes[:, None] - offset_na, sensitivity_na_um)
     # Quantiles that are draws themselves: between a number and infinity there is no middle.
     at_nodes = np.quantile(drawn, BAND, axis=1, method="inverted_cdf")
-    return at_nodes if few else np.stack([np.interp(current_na, nodes, row) for row in at_nodes])
+    return np.stack([np.interp(current_na, nodes, row) for row in at_nodes]) if many else at_nodes[:, back]
+
+
+def _nodes(current_na: Floats, offset_na: Floats) -> Floats:
+    """Dense about the offset: there the quantiles bend, from the noise's to the sensitivity's own. (n,) rising."""
+    centre = float(offset_na.mean())
+    scale = max(float(offset_na.std()), 1e-3 * float(current_na[-1] - current_na[0]))
+    ends = np.arcsinh((current_na[[0, -1]] - centre) / scale)
+    return np.asarray(centre + scale * np.sinh(np.linspace(ends[0], ends[1], NODES)))
