@@ -197,7 +197,7 @@ def sweep_days(effects: Effects, scales: Scales, state: State) -> tuple[float, F
     found = day_prior(scales, cavity_mean, cavity, effects.lonely[place])
     one = Site(site.precision[:, None, None], site.shift[:, None])
     overlap = log_overlap(one, cavity_mean[:, None], cavity[:, None, None])
-    curvature = np.clip(found.curvature, 1e-9, 0.999 / cavity)
+    curvature = np.clip(found.curvature, 1e-9, (1.0 - 1e-10) / cavity)
     # A day between good and bad looks wider than either; without a floor its stand-in would say nothing at all.
     precision = np.maximum(curvature / (1.0 - curvature * cavity), 0.25 / scales.bad_day_sd**2)
     shift = found.gradient + precision * (cavity_mean + cavity * found.gradient)

@@ -44,7 +44,7 @@ def slope(group: np.ndarray, x: np.ndarray) -> Term:
 
 def model(name: str) -> tuple[np.ndarray, np.ndarray, tuple[Term, ...]]:
     """y, fixed effects' design and random terms of one reference fit."""
-    data = table(name.split("_")[0].replace("OrthodontF", "Orthodont"))
+    data = table(name.split("_", maxsplit=1)[0].replace("OrthodontF", "Orthodont"))
     if name.startswith("sleepstudy"):
         x, who = numbers(data, "Days"), data["Subject"]
         apart = (one(who), Term(codes(who), x[:, None]))
@@ -66,7 +66,9 @@ def model(name: str) -> tuple[np.ndarray, np.ndarray, tuple[Term, ...]]:
         fixed = np.column_stack([np.ones(len(pair)), data["Machine"] == "B", data["Machine"] == "C"]).astype(float)
         return numbers(data, "score"), fixed, (one(pair), one(data["Worker"]))
     if name == "ergoStool":
-        fixed = np.column_stack([np.ones(len(data["Type"])), *(data["Type"] == t for t in ("T2", "T3", "T4"))]).astype(float)
+        fixed = np.column_stack([np.ones(len(data["Type"])), *(data["Type"] == t for t in ("T2", "T3", "T4"))]).astype(
+            float
+        )
         return numbers(data, "effort"), fixed, (one(data["Subject"]),)
     y, groups = {
         "Penicillin_crossed": ("diameter", ("plate", "sample")),
@@ -81,7 +83,8 @@ def model(name: str) -> tuple[np.ndarray, np.ndarray, tuple[Term, ...]]:
 NAMES = [
     name
     for name in RESULTS
-    if not name.startswith(("_", "xcheck")) and name != "Orthodont_lme_het"  # a residual sd per sex is no part of the core
+    if not name.startswith(("_", "xcheck"))
+    and name != "Orthodont_lme_het"  # a residual sd per sex is no part of the core
 ]
 
 
@@ -120,7 +123,7 @@ def check_predictions(name: str, fit: MixedFit, wanted: dict) -> None:
     if name not in ("sleepstudy_corr", "Penicillin_crossed", "Dyestuff", "Rail", "Orthodont_slope"):
         return
     grouping = {"Penicillin_crossed": "plate", "Dyestuff": "Batch", "Rail": "Rail"}.get(name, "Subject")
-    data = table(name.split("_")[0])
+    data = table(name.split("_", maxsplit=1)[0])
     levels = list(np.unique(data[grouping]))
     for row in wanted["blup"][grouping]:
         values = [v for key, v in row.items() if key not in ("level", "_row")]
