@@ -13,7 +13,7 @@ from numpy.typing import NDArray
 from electrolog.answers import figures as made
 from electrolog.answers import fits
 from electrolog.answers import life as lives
-from electrolog.answers.cohorts import REFERENCE_SETTING, Cohort, gather
+from electrolog.answers.cohorts import REFERENCE_SETTING, Cohort, coating, gather
 from electrolog.answers.fits import Assay
 from electrolog.clock import utc_now
 from electrolog.errors import InputError
@@ -22,7 +22,7 @@ from electrolog.record import queries, sheets
 from electrolog.record.names import Names
 from electrolog.record.queries import Event
 from electrolog.record.readable import Row
-from electrolog.record.store import Record
+from electrolog.record.store import Connection, Record
 
 if TYPE_CHECKING:
     from electrolog.fouling.fit import CohortFit
@@ -47,7 +47,10 @@ class Run:
 
 @dataclass(frozen=True)
 class Asked:
-    """Probes asked about, with the posterior of each: rows of its draws are in the order of `labels`."""
+    """Probes asked about, with the posterior of each: rows of its draws are in the order of `labels`.
+
+    `life` is what had happened by the moment asked, `ahead` what the record holds after it.
+    """
 
     assay: Assay
     setting: str
@@ -59,6 +62,7 @@ class Asked:
     labels: tuple[str, ...]
     probes: dict[str, Row]
     life: dict[str, list[Event]]
+    ahead: dict[str, list[Event]]
     moment: datetime
 
     def extra_hours(self, run_min: float) -> Floats:
@@ -83,6 +87,30 @@ class Asked:
         found: Floats = np.exp(alone.log_sensitivity_at_reading(np.array([which]))[0])
         return found
 
+    def log_references(self) -> Floats:
+        """(U, D) true log sensitivity of every unit at its reference calibration; rows of NaN where it has none."""
+        which = [self.reference_reading(label) for label in self.labels]
+        has = np.array([place for place, reading in enumerate(which) if reading is not None], dtype=np.int64)
+        readings = np.array([reading for reading in which if reading is not None], dtype=np.int64)
+        found = np.full(self.posterior.log_sensitivity(self.extra_hours(0.0)).shape, np.nan)
+        if has.size:
+            found[has] = self.posterior.only(has).log_sensitivity_at_reading(readings)
+        return found
+
+    def unseen(self, label: str) -> tuple[str, ...]:
+        """What the fit has never seen, so that the forecast takes its widest assumption; in words."""
+        seen = self.fit.summary["half_lives"]
+        film = coating(self.life[label])
+        said = []
+        if self.setting not in self.fit.components[0].layout.settings and self.setting != REFERENCE_SETTING:
+            said.append(f"nothing was ever logged in {self.setting}: how fast it fouls there is the widest assumption")
+        if self.assay.waveform not in {row["waveform"] for row in seen}:
+            said.append(f"no probe was ever calibrated with {self.assay.waveform}: what it does is assumed")
+        if film not in {row["coating"] for row in seen}:
+            bare = "no bare probe" if film == "none" else f"no probe coated with {film}"
+            said.append(f"{bare} was ever calibrated with {self.assay.analyte}: how fast it fouls is assumed")
+        return tuple(said)
+
     def blanks_na(self, calibration: Event) -> list[float]:
         """Currents at zero concentration of one calibration."""
         return [current for concentration, current in self.points[calibration.row["id"]] if concentration == 0]
@@ -93,25 +121,45 @@ class Asked:
         return tuple(f"{name} is left out: {why}" for name, why in self.cohort.left_out.items() if name in own)
 
 
-def ask(record: Record, labels: Sequence[str], run: Run, moment: datetime | None = None) -> Asked:
-    """Reads what is known of the probes and brings the kept fit up to each. Raises UnknownName."""
+def ask(
+    record: Record,
+    labels: Sequence[str] | None,
+    run: Run,
+    moment: datetime | None = None,
+    more_settings: Sequence[str] = (),
+) -> Asked:
+    """Reads what is known of the probes (None: of all that aren't retired) and brings the kept fit up to each.
+
+    more_settings: others that will be asked about, as the record spells them. Raises UnknownName.
+    """
     moment = moment or utc_now()
     with record.reading() as connection:
         chosen = fits.assay(connection, run.analyte, run.waveform)
         setting = Names(connection).word("setting", run.setting)
-        probes = queries.probes(connection, labels)
+        probes = _usable(connection, moment) if labels is None else _named(connection, labels)
         ids = [probe["id"] for probe in probes]
         found = queries.calibrations(connection, ids, chosen.analyte_id)
-        life = {label: lives.until(events, moment) for label, events in queries.events(connection, ids).items()}
+        told = queries.events(connection, ids)
     order = tuple(probe["electrode"] for probe in probes)
-    story = {label: life.get(label, []) for label in order}
+    story = {label: lives.until(told.get(label, ()), moment) for label in order}
+    ahead = {label: told.get(label, [])[len(story[label]) :] for label in order}
     fit = fits.fit_for(record, chosen)
     figures = made.all_figures(record, found)
     units = [(label, chosen.waveform) for label in order]
-    cohort = gather(probes, story, figures, chosen.analyte, units, (REFERENCE_SETTING, setting))
+    cohort = gather(probes, story, figures, chosen.analyte, units, (REFERENCE_SETTING, setting, *more_settings))
     from electrolog.fouling.forecast import posterior
 
     by_label = {probe["electrode"]: probe for probe in probes}
     drawn = posterior(fit, cohort.events)
     points = {one.row["id"]: one.points for one in found}
-    return Asked(chosen, setting, fit, cohort, drawn, figures, points, order, by_label, story, moment)
+    return Asked(chosen, setting, fit, cohort, drawn, figures, points, order, by_label, story, ahead, moment)
+
+
+def _named(connection: Connection, labels: Sequence[str]) -> list[Row]:
+    return queries.probes(connection, labels) if labels else []
+
+
+def _usable(connection: Connection, moment: datetime) -> list[Row]:
+    ended = queries.events(connection, None, (sheets.RETIREMENTS,))
+    gone = {label for label, life in ended.items() if life[0].at <= moment}
+    return [probe for probe in queries.probes(connection) if probe["electrode"] not in gone]

@@ -13,8 +13,10 @@ from electrolog.answers import fits
 from electrolog.answers import life as lives
 from electrolog.answers.asked import Asked, Floats, Run, ask
 from electrolog.answers.cohorts import unit_after
-from electrolog.clock import shown_moment
+from electrolog.answers.standing import notes, out_of_use, unanswerable
+from electrolog.errors import unknown
 from electrolog.fouling.forecast import posterior
+from electrolog.judge.decision import UNDETERMINED
 from electrolog.judge.facts import CalibrationFacts
 from electrolog.judge.limits import LimitRow, Limits, effective
 from electrolog.judge.question import Question
@@ -39,6 +41,7 @@ class Checked:
     electrode: str
     verdict: Verdict
     notes: tuple[str, ...]
+    limits: Limits
 
 
 def check(
@@ -46,23 +49,48 @@ def check(
 ) -> list[Checked]:
     """One verdict per probe, in the order of labels."""
     asked = ask(record, labels, run, moment)
-    with record.reading() as connection:
-        limits = limits_in_force(queries.limits(connection), asked, demands)
-        standards = {row["standard"]: row for row in rows(connection, sheets.STANDARDS)}
+    limits, standards = rules_of_the_lab(record, asked, demands)
     return [
-        Checked(label, judge(_question(asked, place, run, limits, demands, standards)), _notes(asked, label))
+        Checked(
+            label,
+            _verdict(question_of(asked, place, run, limits, demands, standards), asked, label),
+            notes(asked, label),
+            limits,
+        )
         for place, label in enumerate(asked.labels)
     ]
 
 
+def rules_of_the_lab(record: Record, asked: Asked, demands: Demands) -> tuple[Limits, dict[str, Row]]:
+    """The limits in force, and the standards by label."""
+    with record.reading() as connection:
+        limits = limits_in_force(queries.limits(connection), asked, demands)
+        return limits, {row["standard"]: row for row in rows(connection, sheets.STANDARDS)}
+
+
+def _verdict(question: Question, asked: Asked, label: str) -> Verdict:
+    reason = unanswerable(asked, label)
+    return judge(question) if reason is None else Verdict(UNDETERMINED, (reason,))
+
+
 def limits_in_force(stored: Sequence[Row], asked: Asked, demands: Demands) -> Limits:
+    """Raises UnknownName for a project without a limit: a typing error there would quietly judge by the lab's own."""
     found = [
         LimitRow(row["rule"], row["value"], row["origin"], row["analyte"] or "", row["project"] or "") for row in stored
     ]
-    return effective(found, analyte=asked.assay.analyte, project=demands.project, per_run=demands.limits)
+    project = _project_spelled(demands.project, {row.project for row in found if row.project})
+    return effective(found, analyte=asked.assay.analyte, project=project, per_run=demands.limits)
 
 
-def _question(
+def _project_spelled(typed: str, known: set[str]) -> str:
+    spelled = {name.casefold(): name for name in known}.get(typed.casefold(), typed)
+    if spelled and spelled not in known:
+        hint = "without --project the lab's own limits hold; `electrolog limits set RULE VALUE --project NAME` adds one"
+        raise unknown("project", typed, known, hint)
+    return spelled
+
+
+def question_of(
     asked: Asked, place: int, run: Run, limits: Limits, demands: Demands, standards: Mapping[str, Row]
 ) -> Question:
     label = asked.labels[place]
@@ -78,7 +106,7 @@ def _question(
         needs_um=demands.needs_um,
         uses=lives.state(life, asked.moment).uses,
         assay=asked.assay.said,
-        out_of_use=_out_of_use(label, life, asked.moment),
+        out_of_use=out_of_use(label, life, asked.moment),
         after_cleaning=_after_cleaning(asked, place),
     )
 
@@ -143,18 +171,3 @@ def _peak_shift(asked: Asked, label: str, last: Event) -> float | None:
     if len(peaks) < 2 or None in peaks:
         return None
     return float(peaks[1] - peaks[0])
-
-
-def _out_of_use(label: str, life: Sequence[Event], moment: datetime) -> str:
-    state = lives.state(life, moment)
-    if state.retired_at is None:
-        return ""
-    return f"{label} was retired on {shown_moment(state.retired_at)}: {state.reason}"
-
-
-def _notes(asked: Asked, label: str) -> tuple[str, ...]:
-    own = len(asked.cohort.readings[label, asked.assay.waveform])
-    said = [] if asked.fit.converged else ["the cohort's fit did not converge: its odds are not to be relied on"]
-    if own < 2:
-        said.append(f"the forecast rests on {own} calibration{'s' if own != 1 else ''} of its own and on its cohort")
-    return (*said, *asked.fit.notes, *asked.said_of(label))

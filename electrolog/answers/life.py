@@ -7,6 +7,7 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 from datetime import datetime, timedelta
 
+from electrolog.clock import shown_moment
 from electrolog.record import sheets
 from electrolog.record.queries import Event
 
@@ -105,10 +106,21 @@ def voided_by(life: Sequence[Event], calibration: Event, moment: datetime) -> li
     said = []
     for event in until(life, moment):
         if event.sheet is sheets.EXPOSURES and end_of(event) > calibration.at:
-            said.append(
-                f"{event.row['duration_min'] / 60:.3g} h in {event.row['setting']} (exposure {event.row['id']})"
-            )
+            said.append(_run(event, moment))
         elif event.sheet in RENEWING and event.at > calibration.at:
             what = event.row.get("method") if event.sheet is sheets.CLEANINGS else event.row.get("material")
             said.append(f"{event.sheet.one}{f' with {what}' if what else ''}")
     return said
+
+
+def _run(exposure: Event, moment: datetime) -> str:
+    where, number = exposure.row["setting"], exposure.row["id"]
+    if end_of(exposure) > moment:
+        return f"in use right now, in {where} until {shown_moment(end_of(exposure))} (exposure {number})"
+    return f"{exposure.row['duration_min'] / 60:.3g} h in {where} (exposure {number})"
+
+
+def in_use_until(life: Sequence[Event], moment: datetime) -> datetime | None:
+    """The end of an exposure that is under way; None when there is none."""
+    under_way = [end_of(event) for event in of(until(life, moment), sheets.EXPOSURES) if end_of(event) > moment]
+    return max(under_way, default=None)

@@ -20,7 +20,7 @@ COMMANDS: dict[str, dict[str, str]] = {
         "dilutions": "Plan the dilutions of a calibration from a stock.",
     },
     "Asking back": {
-        "shelf": "Every probe with state, age, exposure, last calibration and share left.",
+        "shelf": "Every probe with its state; or, for a planned run, the usable ones best first.",
         "life": "One probe's life as a timeline.",
         "history": "A probe's sensitivity against its exposure.",
         "calibrations": "Calibrations with all their figures.",
@@ -31,6 +31,7 @@ COMMANDS: dict[str, dict[str, str]] = {
     "Judging": {
         "forecast": "What probes will still see after a run.",
         "check": "Fit, recalibrate, retire or undetermined, before a run.",
+        "assign": "Which probe for which of the week's planned runs.",
         "fit": "How this lab's probes foul, as learned from its record.",
         "backtest": "Whether forecasts would have been right on this lab's own past.",
         "convert": "A recording's currents into concentrations with a band.",

@@ -1,12 +1,25 @@
 from __future__ import annotations
 
+from pathlib import Path
 from typing import Annotated
 
 import typer
 
-from electrolog.cli.add import split
 from electrolog.cli.options import Csv, Json
-from electrolog.cli.planned import AnalyteOfRun, AsOf, Labels, RunLength, Setting, WaveformOfRun, chosen, run_of
+from electrolog.cli.planned import (
+    AnalyteOfRun,
+    AsOf,
+    Labels,
+    Needs,
+    Project,
+    RunLength,
+    RunLimits,
+    Setting,
+    WaveformOfRun,
+    asking,
+    chosen,
+    run_of,
+)
 from electrolog.cli.session import lab_of
 
 EXIT_STATUS = {"fit": 0, "recalibrate": 10, "retire": 20, "undetermined": 30}
@@ -20,9 +33,12 @@ def command(
     run: RunLength,
     labels: Labels = None,
     everything: Annotated[bool, typer.Option("--all", help="Every probe that isn't retired.")] = False,
-    needs: Annotated[str | None, typer.Option("--needs", help="The smallest signal to be seen: 50nM")] = None,
-    project: Annotated[str, typer.Option("--project", help="Whose limits hold.")] = "",
-    limit: Annotated[list[str] | None, typer.Option("--limit", help="For this run only: RULE=VALUE")] = None,
+    needs: Needs = None,
+    project: Project = "",
+    limit: RunLimits = None,
+    page: Annotated[
+        Path | None, typer.Option("--page", metavar="FILE.html", help="Write a page to pin at the rig as well.")
+    ] = None,
     at: AsOf = "now",
     json: Json = False,
     csv: Csv = False,
@@ -34,18 +50,15 @@ def command(
     electrolog check B07-01 --analyte dopamine --waveform triangle --setting in-vivo --run 4h --needs 50nM
     """
     from electrolog.show import checks
-    from electrolog.units import CONCENTRATION_UM, parse_quantity
 
     lab = lab_of(ctx)
     moment = lab.moment(at)
     planned = run_of(analyte, waveform, setting, run)
-    found = lab.check(
-        chosen(lab, labels, everything, moment),
-        planned,
-        needs_um=None if needs is None else parse_quantity(needs, CONCENTRATION_UM, "needs"),
-        project=project,
-        limits=dict(split(text) for text in limit or []),
-        moment=moment,
-    )
+    demands = asking(needs, project, limit)
+    found = lab.check(chosen(lab, labels, everything, moment), planned, **demands, moment=moment)
+    if page is not None:
+        from electrolog.show.page import write_page
+
+        write_page(page, found, planned, dict(demands), moment)
     checks.answer(found, planned, json, csv)
     raise typer.Exit(max((EXIT_STATUS[one.verdict.verdict] for one in found), default=0))

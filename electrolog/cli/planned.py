@@ -3,10 +3,11 @@
 from __future__ import annotations
 
 from datetime import datetime
-from typing import TYPE_CHECKING, Annotated
+from typing import TYPE_CHECKING, Annotated, TypedDict
 
 import typer
 
+from electrolog.cli.add import split
 from electrolog.errors import InputError
 
 if TYPE_CHECKING:
@@ -19,6 +20,24 @@ WaveformOfRun = Annotated[str, typer.Option("--waveform", "-w", help="With which
 Setting = Annotated[str, typer.Option("--setting", "-s", help="Where: in-vivo, slice, flow-cell, …")]
 RunLength = Annotated[str, typer.Option("--run", help="For how long: 4h, 90min")]
 AsOf = Annotated[str, typer.Option("--at", metavar="TIME", help="As of which moment (default: now).")]
+Needs = Annotated[str | None, typer.Option("--needs", help="The smallest signal to be seen: 50nM")]
+Project = Annotated[str, typer.Option("--project", help="Whose limits hold.")]
+RunLimits = Annotated[list[str] | None, typer.Option("--limit", help="For this run only: RULE=VALUE")]
+
+
+class Asking(TypedDict):
+    """What the run asks beyond the lab's limits, as the lab's methods take it."""
+
+    needs_um: float | None
+    project: str
+    limits: dict[str, str]
+
+
+def asking(needs: str | None, project: str, limit: list[str] | None) -> Asking:
+    from electrolog.units import CONCENTRATION_UM, parse_quantity
+
+    needs_um = None if needs is None else parse_quantity(needs, CONCENTRATION_UM, "needs")
+    return {"needs_um": needs_um, "project": project, "limits": dict(split(text) for text in limit or [])}
 
 
 def run_of(analyte: str, waveform: str, setting: str, run: str) -> Run:

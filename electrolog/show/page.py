@@ -1,0 +1,95 @@
+"""The verdicts as one page to pin at the rig: nothing in it is loaded from elsewhere, and it prints on A4."""
+
+from __future__ import annotations
+
+import base64
+import hashlib
+from collections.abc import Sequence
+from datetime import datetime
+from pathlib import Path
+from typing import Any
+
+from electrolog.answers.asked import Run
+from electrolog.answers.checking import Checked
+from electrolog.clock import shown_moment
+from electrolog.judge.limits import Limit, rule_named
+from electrolog.judge.verdict import Spread
+from electrolog.show.checks import CAUTION, FIGURES, SIGNS, odds_shown, spread_shown
+from electrolog.show.limits import shown
+from electrolog.show.text import safe
+from electrolog.units import shown_concentration, shown_duration
+
+_CAUTIONS = (CAUTION, "An explanted probe is a biohazard and a sharp: handle and discard it by the local rules.")
+_STYLE = """
+@page { size: A4; margin: 15mm }
+body { font: 11pt/1.4 sans-serif; color: #000; background: #fff; max-width: 180mm; margin: 8mm auto; padding: 0 4mm }
+h1 { font-size: 17pt; margin: 0 } h2 { font-size: 14pt; margin: 0 0 2mm } h3 { font-size: 11pt; margin: 2mm 0 0 }
+section { border-left: 2mm solid #777; padding: 0 0 0 4mm; margin: 6mm 0; break-inside: avoid }
+section.fit { border-left-style: double } section.retire { border-left-color: #000 }
+strong { text-transform: uppercase } ul { margin: 1mm 0; padding-left: 5mm }
+table { border-collapse: collapse; width: 100%; margin: 2mm 0 }
+th, td { text-align: left; padding: 0.5mm 2mm; border-bottom: 0.2mm solid #999; overflow-wrap: anywhere }
+.note { margin: 1mm 0; font-style: italic } footer { margin-top: 8mm; border-top: 0.4mm solid #000; font-size: 9pt }
+"""
+
+
+def write_page(path: Path, found: Sequence[Checked], run: Run, asked: dict[str, Any], moment: datetime) -> None:
+    """`asked`: what the run demands beyond the lab's limits, as it was asked."""
+    path.write_text(page(found, run, asked, moment), encoding="utf-8", newline="\n")
+
+
+def page(found: Sequence[Checked], run: Run, asked: dict[str, Any], moment: datetime) -> str:
+    from jinja2 import Environment
+
+    template = Path(__file__).with_name("page.html").read_text(encoding="utf-8")
+    # Every text of the record goes through `safe` and is then escaped; the style is ours alone.
+    made = Environment(autoescape=True, finalize=lambda value: value if isinstance(value, _Style) else safe(value))
+    return made.from_string(template).render(
+        title=f"Before the run: {shown_duration(run.run_min)} {run.setting}",
+        run=run,
+        needs=None if asked["needs_um"] is None else shown_concentration(asked["needs_um"]),
+        project=asked["project"],
+        moment=shown_moment(moment),
+        probes=[_probe(one) for one in found],
+        limits=[_limit(limit) for limit in found[0].limits.by_rule.values()] if found else [],
+        cautions=_CAUTIONS,
+        style=_Style(_STYLE),
+        style_hash=base64.b64encode(hashlib.sha256(_STYLE.encode()).digest()).decode(),
+    )
+
+
+class _Style(str):
+    """Text that stands in the page as it is."""
+
+    __slots__ = ()
+
+    def __html__(self) -> str:
+        return str(self)
+
+
+def _probe(one: Checked) -> dict[str, Any]:
+    verdict = one.verdict
+    return {
+        "name": one.electrode,
+        "verdict": verdict.verdict,
+        "sign": SIGNS[verdict.verdict],
+        "odds": odds_shown(verdict.p_breach) or "can't be told",
+        "longest": "can't be told" if verdict.longest_run_min is None else shown_duration(verdict.longest_run_min),
+        "because": [reason.text for reason in verdict.reasons],
+        "changes": [change.text for change in verdict.changes],
+        "numbers": [
+            (name, _cell(getattr(verdict, field).now, show), _cell(getattr(verdict, field).end, show))
+            for name, field, show in FIGURES
+            if getattr(verdict, field).now
+        ],
+        "notes": one.notes,
+    }
+
+
+def _cell(spread: Spread | None, show: Any) -> str:
+    return "" if spread is None else spread_shown(spread, show)
+
+
+def _limit(limit: Limit) -> tuple[str, str, str, str]:
+    rule = rule_named(limit.rule)
+    return limit.rule, f"{rule.direction} {shown(rule, limit.value)}", limit.scope, limit.origin

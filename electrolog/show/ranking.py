@@ -1,0 +1,58 @@
+"""The shelf before a planned run: best first, one line per probe."""
+
+from __future__ import annotations
+
+from collections import Counter
+from typing import Any
+
+from electrolog.answers.asked import Run
+from electrolog.answers.ranking import Ranked, Ranking
+from electrolog.show.checks import CAUTION, SIGNS, odds_shown
+from electrolog.show.machine import plain, print_csv, print_json
+from electrolog.show.tables import print_lines, print_table
+from electrolog.units import shown_concentration, shown_duration, shown_number, shown_percent
+
+_COLUMNS = ("probe", "verdict", "odds", "left at end", "detects", "nA/µM", "batch", "coating", "because")
+_LEAST = ("batch", "coating", "nA/µM", "detects", "left at end")
+
+
+def answer(found: Ranking, run: Run, json: bool, csv: bool) -> None:
+    if json:
+        print_json(found)
+    elif csv:
+        print_csv([plain(_as_dict(one)) for one in found.probes])
+    elif not found.probes:
+        print_lines("no usable probe on the shelf")
+    else:
+        print_lines(f"{shown_duration(run.run_min)} {run.setting}, {run.analyte}, {run.waveform}: best first")
+        print_table(_COLUMNS, [_row(one) for one in found.probes], ("odds", "left at end"), _LEAST, "because")
+        print_lines(_counted(found), *[f"! {note}" for note in found.notes], CAUTION)
+
+
+def _as_dict(one: Ranked) -> dict[str, Any]:
+    return {**vars(one), "reasons": [vars(reason) for reason in one.reasons]}
+
+
+def _counted(found: Ranking) -> str:
+    counts = Counter(one.verdict for one in found.probes)
+    said = ", ".join(f"{count} {word}" for word, count in counts.items())
+    return f"{said}; odds: of breaking a limit by the end; `electrolog check PROBE` says more of one"
+
+
+def _row(one: Ranked) -> tuple[object, ...]:
+    return (
+        one.electrode,
+        f"{SIGNS[one.verdict]} {one.verdict}",
+        odds_shown(one.p_breach),
+        "" if one.end_fraction_left is None else shown_percent(one.end_fraction_left),
+        "" if one.end_lod_um is None else shown_concentration(one.end_lod_um),
+        "" if one.end_sensitivity_na_um is None else shown_number(one.end_sensitivity_na_um),
+        one.batch,
+        one.coating,
+        "" if one.verdict == "fit" else _because(one),
+    )
+
+
+def _because(one: Ranked) -> str:
+    first, *others = [reason.text for reason in one.reasons]
+    return f"{first} (and {len(others)} more)" if others else first
