@@ -5,6 +5,7 @@ from __future__ import annotations
 import getpass
 import os
 import sqlite3
+import weakref
 from collections.abc import Iterator
 from contextlib import contextmanager
 from pathlib import Path
@@ -13,7 +14,7 @@ from typing import Any
 from sqlalchemy import Connection, Engine, create_engine, event, select, text
 from sqlalchemy.engine import URL, make_url
 from sqlalchemy.exc import ArgumentError, DBAPIError
-from sqlalchemy.pool import NullPool
+from sqlalchemy.pool import NullPool, QueuePool
 
 from electrolog.errors import InputError, RecordError, shortened
 from electrolog.record import journal, schema
@@ -34,10 +35,11 @@ LEAST_SQLITE = (3, 37, 0)  # STRICT tables
 
 
 class Record:
-    """One database. Build it with open_record(); nothing is kept open between two questions."""
+    """One database. Build it with open_record()."""
 
     def __init__(self, engine: Engine, who: str) -> None:
         self.engine = engine
+        weakref.finalize(self, engine.dispose)  # a connection left open would keep the file in use on Windows
         self.who = who
 
     @property
@@ -135,7 +137,8 @@ def _url(where: str) -> URL:
 
 def _engine(url: URL) -> Engine:
     try:
-        engine = create_engine(url, poolclass=NullPool)
+        # Opening a file anew for each question costs more than the question; a server's connections are not ours to hoard.
+        engine = create_engine(url, poolclass=QueuePool if url.get_backend_name() == "sqlite" else NullPool)
     except ModuleNotFoundError as missing:
         raise RecordError(
             f"the driver for {url.drivername} is not installed ({missing})",
