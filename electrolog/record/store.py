@@ -137,7 +137,7 @@ def _url(where: str) -> URL:
 
 def _engine(url: URL) -> Engine:
     try:
-        # Opening a file anew for each question costs more than the question; a server's connections are not ours to hoard.
+        # To open a file anew for each question costs more than the question; a server's connections aren't ours to keep.
         engine = create_engine(url, poolclass=QueuePool if url.get_backend_name() == "sqlite" else NullPool)
     except ModuleNotFoundError as missing:
         raise RecordError(
