@@ -72,7 +72,8 @@ def adopt(record: Record, names: Sequence[str]) -> list[LimitSet]:
 
 def typed_limits(texts: Mapping[str, str]) -> dict[str, float]:
     """Limits as typed, by rule, in the rule's unit."""
-    return {name: parse_quantity(text, rule_named(name).unit, name) for name, text in texts.items()}
+    rules = {name: rule_named(name) for name in texts}
+    return {name: rule.checked(parse_quantity(texts[name], rule.unit, name)) for name, rule in rules.items()}
 
 
 def unset(record: Record, name: str, scope: Scope, reason: str) -> None:

@@ -65,6 +65,7 @@ def is_live(connection: Connection, sheet: Sheet, row_id: int) -> bool:
 def _require_reason(writer: Writer) -> None:
     if not writer.reason.strip():
         raise InputError("a correction needs its reason; accepted: --why 'unit slip, read as uM'")
+    kinds.checked_text(writer.reason, "reason", kinds.TEXT_LIMIT)
 
 
 def _place(sheet: Sheet, row_id: int, ordinal: int | None) -> ColumnElement[bool]:

@@ -98,24 +98,29 @@ def _rule(column: kinds.Column) -> str:
     if isinstance(column, kinds.Choice):
         return f"{name} IN ({', '.join(repr(choice) for choice in column.choices)})"
     if isinstance(column, kinds.Number):
-        # Infinity passes a one-sided bound, and NaN is above everything in PostgreSQL: both sides are always held.
-        low = (
-            f"{name} > {number_text(column.above)}"
-            if column.above is not None
-            else f"{name} >= {number_text(-LARGEST)}"
-        )
-        low = f"{name} >= {number_text(column.least)}" if column.least is not None else low
-        high = f"{name} <= {number_text(LARGEST if column.most is None else column.most)}"
-        return f"{low} AND {high}" + (f" AND {name} = round({name})" if column.whole else "")
-    if isinstance(column, kinds.Vertices):
-        return f"length({name}) BETWEEN 3 AND {kinds.TEXT_LIMIT}"
+        return _number_rule(column)
     if isinstance(column, kinds.Day):
         return f"{name} LIKE '____-__-__'"
+    least, most = _length(column)
+    return f"length({name}) BETWEEN {least} AND {most}" if most else ""
+
+
+def _number_rule(column: kinds.Number) -> str:
+    """Infinity passes a one-sided bound, and NaN is above everything in PostgreSQL: both sides are always held."""
+    name = column.name
+    low = f"{name} >= {number_text(-LARGEST if column.least is None else column.least)}"
+    low = low if column.above is None else f"{name} > {number_text(column.above)}"
+    high = f"{name} <= {number_text(LARGEST if column.most is None else column.most)}"
+    return f"{low} AND {high}" + (f" AND {name} = round({name})" if column.whole else "")
+
+
+def _length(column: kinds.Column) -> tuple[int, int]:
+    """Least and most characters; zeros where the column holds no text of its own."""
+    if isinstance(column, kinds.Vertices):
+        return 3, kinds.TEXT_LIMIT
     if isinstance(column, kinds.Label) and not isinstance(column, kinds.Link):
-        return f"length({name}) BETWEEN 1 AND {kinds.LABEL_LIMIT}"
-    if isinstance(column, kinds.Text):
-        return f"length({name}) BETWEEN 1 AND {kinds.TEXT_LIMIT}"
-    return ""
+        return 1, kinds.LABEL_LIMIT
+    return (1, kinds.TEXT_LIMIT) if isinstance(column, kinds.Text) else (0, 0)
 
 
 def _index(sheet: Sheet, table: Table) -> None:

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import shutil
-import sys
 import tempfile
 import warnings
 from collections.abc import Callable, Iterator
@@ -17,8 +16,6 @@ from sqlalchemy import create_engine, make_url, text
 
 from electrolog.answers.entering import NewCalibration
 from electrolog.lab import Lab, open_lab, set_up
-
-sys.path.insert(0, str(Path(__file__).parent))  # helpers of this room, by name
 
 ENGINES = ("sqlite", "postgresql")
 POINTS = ((0.0, 0.1), (0.25, 3.2), (0.5, 6.1), (0.5, 6.3), (1.0, 12.2), (2.0, 24.0))

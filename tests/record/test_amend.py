@@ -101,6 +101,12 @@ def test_a_correction_needs_its_reason(shared: Lab, reason: str) -> None:
         shared.strike("exposure", "1", reason)
 
 
+@pytest.mark.parametrize(("reason", "said"), [("a\0b", "NUL"), ("a\ud800", "UTF-8"), ("x" * 100_001, "too many")])
+def test_a_reason_is_text_like_any_other(shared: Lab, reason: str, said: str) -> None:
+    with pytest.raises(InputError, match=said):
+        shared.amend("exposure", "1", {"duration_min": "3h"}, reason)
+
+
 def test_a_case_of_its_own_label_can_be_amended(lived_in: Lab) -> None:
     lived_in.amend("probe", "B1-02", {"electrode": "b1-02"}, "as engraved")
     assert lived_in.labels(["B1-02"]) == ["b1-02"]
