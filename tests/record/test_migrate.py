@@ -10,6 +10,7 @@ from typing import Any
 
 import pytest
 from sqlalchemy import inspect
+from sqlalchemy.exc import IntegrityError
 
 from electrolog.errors import RecordError
 from electrolog.lab import Lab, open_lab, set_up
@@ -107,6 +108,12 @@ def test_a_migration_that_would_break_a_link_is_rolled_back(lived_in: Lab, raw: 
         connection.commit()
     with pytest.raises(RecordError, match="break 1 links"):
         migrate.to_revision(lived_in.record, schema.REVISION)
+
+
+def test_links_are_held_by_the_very_process_that_made_the_record(blank: str) -> None:
+    lab = open_lab(blank, create=True)
+    with pytest.raises(IntegrityError), lab.record.engine.begin() as connection:
+        connection.exec_driver_sql("INSERT INTO electrodes (id, electrode, batch_id) VALUES (1, 'P1', 999)")
 
 
 def test_a_new_record_is_in_write_ahead_mode(blank: str) -> None:
