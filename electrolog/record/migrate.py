@@ -125,7 +125,7 @@ def _migrating(record: Record) -> Iterator[Connection]:
     with record.engine.connect().execution_options(electrolog_writes=True) as connection:
         if record.is_file:
             connection.detach()  # never back to the pool: whoever got it next would write with foreign keys off
-            connection.connection.driver_connection.execute("PRAGMA foreign_keys = OFF")  # type: ignore[union-attr]
+            connection.connection.dbapi_connection.execute("PRAGMA foreign_keys = OFF")  # type: ignore[union-attr]
         with connection.begin():
             yield connection
             if record.is_file:
