@@ -21,6 +21,9 @@ if TYPE_CHECKING:
     from electrolog.record.store import Record
 
 
+MIGRATING = 0x656C6563  # any number that all who migrate agree on
+
+
 def create(record: Record) -> None:
     """An empty record with the trade's analytes and waveforms in it."""
     from electrolog.record import builtin
@@ -122,11 +125,15 @@ def _migrating(record: Record) -> Iterator[Connection]:
 
     The pragma does nothing inside a transaction, so it stands before BEGIN; every key is checked before COMMIT.
     """
-    with record.engine.connect().execution_options(electrolog_writes=True) as connection:
+    from electrolog.record.store import translated
+
+    with translated(record.name), record.engine.connect().execution_options(electrolog_writes=True) as connection:
         if record.is_file:
             connection.detach()  # never back to the pool: whoever got it next would write with foreign keys off
             connection.connection.dbapi_connection.execute("PRAGMA foreign_keys = OFF")  # type: ignore[union-attr]
         with connection.begin():
+            if not record.is_file:  # two that migrate at once would both make the same tables
+                connection.exec_driver_sql(f"SELECT pg_advisory_xact_lock({MIGRATING})")
             yield connection
             if record.is_file:
                 broken = connection.exec_driver_sql("PRAGMA foreign_key_check").all()

@@ -54,14 +54,14 @@ class Record:
 
     @contextmanager
     def reading(self) -> Iterator[Connection]:
-        with _translated(self.name), self.engine.connect() as connection, connection.begin():
+        with translated(self.name), self.engine.connect() as connection, connection.begin():
             yield connection
 
     @contextmanager
     def writing(self, reason: str = "") -> Iterator[journal.Writer]:
         """One transaction: the rows and their journal entries are both there, or neither is."""
         engine = self.engine.execution_options(electrolog_writes=True)
-        with _translated(self.name), engine.begin() as connection:
+        with translated(self.name), engine.begin() as connection:
             if not self.is_file:
                 connection.execute(text("LOCK TABLE journal IN EXCLUSIVE MODE"))
             writer = journal.Writer(connection, self.who, reason)
@@ -137,7 +137,7 @@ def _url(where: str) -> URL:
 
 def _engine(url: URL) -> Engine:
     try:
-        # To open a file anew for each question costs more than the question; a server's connections aren't ours to keep.
+        # Opening a file anew costs more than a question does; a server's connections aren't ours to keep.
         engine = create_engine(url, poolclass=QueuePool if url.get_backend_name() == "sqlite" else NullPool)
     except ModuleNotFoundError as missing:
         raise RecordError(
@@ -207,7 +207,7 @@ def refuse_newer(record: Record, found: str) -> None:
 def revision_of(record: Record) -> str | None:
     """The newest migration the database has seen; None for an empty one. Raises RecordError for one that isn't ours."""
     version = schema.alembic_version
-    with _translated(record.name), record.engine.connect() as connection:
+    with translated(record.name), record.engine.connect() as connection:
         tables = set(record.engine.dialect.get_table_names(connection))
         found = connection.execute(select(version.c.version_num)).scalar() if version.name in tables else None
         if schema.journal.name in tables and found is not None:
@@ -226,7 +226,7 @@ def _refuse_foreign(record: Record, tables: set[str]) -> None:
 
 
 @contextmanager
-def _translated(name: str) -> Iterator[None]:
+def translated(name: str) -> Iterator[None]:
     """The driver's words into ours; the database's own name is all that is said of where."""
     try:
         yield

@@ -151,6 +151,49 @@ def test_an_error_of_our_own_is_one_line_too(cli: Any, monkeypatch: pytest.Monke
         cli("verify")
 
 
+RUN = ("-a", "DA", "-w", "triangle", "-s", "in-vivo", "--run", "4h")
+
+
+@pytest.mark.parametrize("command", ["forecast", "check"])
+@pytest.mark.parametrize(
+    "arguments",
+    [
+        RUN,
+        ("--all", "B07-01", *RUN),
+        ("nobody", *RUN),
+        ("B07-01", *RUN[:-1], "0"),
+        ("B07-01", *RUN[:-1], "-4h"),
+        ("B07-01", *RUN[:-1], "long"),
+        ("B07-01", *RUN[:-2]),
+        ("B07-01", "-a", "gold", *RUN[2:]),
+        ("B07-01", *RUN[:2], "-w", "sine", *RUN[4:]),
+        ("B07-01", *RUN[:4], "-s", "moon", *RUN[6:]),
+        ("B07-01", *RUN, "--at", "yesterday"),
+    ],
+    ids=" ".join,
+)
+def test_a_run_that_cannot_be_planned_is_refused(cli: Any, command: str, arguments: tuple[str, ...]) -> None:
+    cli.refused(command, *arguments)
+
+
+@pytest.mark.parametrize(
+    "arguments",
+    [
+        ("forecast", "--quantiles", "0,1"),
+        ("forecast", "--quantiles", "0.5,x"),
+        ("forecast", "--quantiles", ""),
+        ("check", "--limit", "nonsense=1"),
+        ("check", "--limit", "least-share-left"),
+        ("check", "--limit", "least-share-left=160%"),
+        ("check", "--needs", "5nA"),
+        ("check", "--needs", "-5nM"),
+    ],
+    ids=" ".join,
+)
+def test_a_demand_that_cannot_be_met_is_refused(cli: Any, arguments: tuple[str, ...]) -> None:
+    cli.refused(arguments[0], "B07-01", *RUN, *arguments[1:])
+
+
 def test_a_process_exits_as_the_command_says(cli: Any) -> None:
     for arguments, status in ((("shelf",), 0), (("life", "X"), 2), (("--db", "nowhere.db", "shelf"), 1)):
         done = cli.process(*arguments)

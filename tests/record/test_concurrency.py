@@ -4,11 +4,11 @@ from __future__ import annotations
 
 import subprocess
 import sys
-from pathlib import Path
 
 import pytest
 
-from electrolog.lab import Lab
+from electrolog.lab import Lab, open_lab
+from electrolog.record.builtin import ANALYTES
 
 PROCESSES, ENTRIES = 8, 25
 RIG = """
@@ -48,15 +48,14 @@ def test_two_rigs_making_one_probe_make_it_once(lived_in: Lab) -> None:
     assert lived_in.verify().whole
 
 
-def test_two_at_once_make_one_record(tmp_path: Path) -> None:
-    path = tmp_path / "new.db"
-    code = "import sys; from electrolog.lab import set_up, open_lab; set_up(sys.argv[1]); open_lab(sys.argv[1])"
-    rigs = [subprocess.Popen([sys.executable, "-c", code, str(path)], stderr=subprocess.PIPE) for _ in range(3)]
+def test_three_at_once_make_one_record(blank: str) -> None:
+    code = "import sys; from electrolog.lab import open_lab; open_lab(sys.argv[1], create=True).rows('analytes')"
+    rigs = [subprocess.Popen([sys.executable, "-c", code, blank], stderr=subprocess.PIPE) for _ in range(3)]
     said = [rig.communicate(timeout=120)[1].decode() for rig in rigs]
-    lab = __import__("electrolog.lab", fromlist=["open_lab"]).open_lab(str(path))
+    assert [rig.returncode for rig in rigs] == [0, 0, 0], said
+    lab = open_lab(blank)
     assert lab.verify().whole
-    assert len(lab.rows("analytes")) == 16, said
-    assert any(rig.returncode == 0 for rig in rigs), said
+    assert len(lab.rows("analytes")) == len(ANALYTES)
 
 
 @pytest.mark.parametrize("reader_sees", ["before", "after"])
