@@ -166,11 +166,17 @@ class Lab(Measuring, Judging):
         exposure: int | None = None,
         start: datetime | None = None,
         rate_hz: float | None = None,
+        background_na: tuple[float, float] | None = None,
     ) -> Converted:
-        """A recording's currents as concentrations, with a 90 % band and all that they rest on."""
+        """A recording's currents as concentrations, with a 90 % band and all that they rest on.
+
+        background_na: the charging current at the recording's start and end; used where it helps in this lab.
+        """
+        from electrolog.answers.background import Background
         from electrolog.answers.converting import Wanted, converted
 
-        return converted(self.record, Wanted(file, label, analyte, waveform, exposure, start, rate_hz))
+        background = None if background_na is None else Background(*background_na)
+        return converted(self.record, Wanted(file, label, analyte, waveform, exposure, start, rate_hz, background))
 
     def limits(self) -> list[LimitSet]:
         """Every limit there can be, with what the lab has set."""

@@ -100,6 +100,7 @@ def _check_amended(writer: Writer, sheet: Sheet, row_id: int, before: dict[str, 
         raise InputError(
             "calibration: a point stays with its calibration; accepted: strike it, and log it where it belongs"
         )
+    entry.refuse_shared_name(sheet, after, writer.names, itself=row_id)
     key = [schema.column_name(sheet.by_name[name]) for name in sheet.key]
     if any(after[name] != before[name] for name in key):
         _refuse_word_in_use(writer, sheet, before)

@@ -30,6 +30,7 @@ def add(writer: Writer, sheet: Sheet, values: Mapping[str, Value], points: Point
     check_row(sheet, row, bool(points))
     refuse_double(writer, sheet, row)
     refuse_lookalike(sheet, row, writer.names)
+    refuse_shared_name(sheet, row, writer.names)
     return insert(writer, sheet, row, points)
 
 
@@ -126,6 +127,18 @@ def refuse_lookalike(sheet: Sheet, row: Row, names: Names, itself: str | None = 
             f"{what}: '{shortened(row[what])}' can't be told from '{shortened(twin)}', which is there already;"
             " accepted: a name that can't be mistaken for another"
         )
+
+
+def refuse_shared_name(sheet: Sheet, row: Row, names: Names, itself: int | None = None) -> None:
+    """An analyte goes by its name and its abbreviation, so neither may be another's."""
+    if sheet is not sheets.ANALYTES:
+        return
+    for column in ("analyte", "abbreviation"):
+        found = names.find(sheet.name, row[column]) if row[column] else None
+        if found not in (None, itself):
+            raise InputError(
+                f"{column}: '{shortened(row[column])}' is what another analyte is called; accepted: one of its own"
+            )
 
 
 def described(sheet: Sheet, row: Row, row_id: int) -> str:

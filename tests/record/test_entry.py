@@ -61,6 +61,26 @@ def test_a_word_that_is_there_already_is_refused(lab: Lab, word: str) -> None:
         lab.log_plain("terms", {"kind": "setting", "term": word})
 
 
+@pytest.mark.parametrize(
+    "values",
+    [
+        {"analyte": "dopamine hydrochloride", "abbreviation": "DA"},
+        {"analyte": "da"},
+        {"analyte": "new", "abbreviation": "Serotonin"},
+    ],
+)
+def test_an_analytes_names_are_its_own(shared: Lab, values: dict[str, str]) -> None:
+    with pytest.raises(InputError, match="another analyte"):
+        shared.log_plain("analytes", values)
+    with pytest.raises(InputError, match="another analyte"):
+        shared.amend("analyte", "histamine", {name: values[name] for name in list(values)[-1:]}, "shorter")
+
+
+def test_an_analyte_may_keep_its_names(lived_in: Lab) -> None:
+    lived_in.amend("analyte", "HA", {"abbreviation": "HIS"}, "as the lab says")
+    lived_in.amend("analyte", "his", {"note": "keeps"}, "a remark")
+
+
 def test_a_word_may_stand_in_two_lists(lab: Lab) -> None:
     lab.log_plain("terms", {"kind": "medium", "term": "slice"})
     assert "slice" in lab.words("medium")

@@ -146,3 +146,20 @@ def test_all_faults_are_named_at_once(unguarded: Lab, raw: Raw) -> None:
     raw(unguarded, "DELETE FROM recuts")
     raw(unguarded, "INSERT INTO electrodes (id, electrode) VALUES (77, 'X')")
     assert len(faults(unguarded)) == 3
+
+
+@pytest.mark.parametrize(("figure", "value"), [("sensitivity_na_um", 99.0), ("lod_um", None), ("n_points", 7)])
+def test_forged_figures_are_named(lived_in: Lab, raw: Raw, figure: str, value: Any) -> None:
+    """They are no part of the journal, and what everybody looks at."""
+    ((kept,),) = raw(lived_in, "SELECT figures FROM calibration_figures WHERE calibration_id = 1")
+    forged = json.dumps({**json.loads(kept), figure: value})
+    raw(lived_in, "UPDATE calibration_figures SET figures = :forged WHERE calibration_id = 1", forged=forged)
+    (fault,) = faults(lived_in)
+    assert f"calibration C0001: its kept {figure} is {value}" in fault
+    lived_in.recompute()
+    assert lived_in.verify().whole
+
+
+def test_figures_that_are_not_there_are_no_fault(lived_in: Lab, raw: Raw) -> None:
+    raw(lived_in, "DELETE FROM calibration_figures")
+    assert lived_in.verify().whole
