@@ -120,7 +120,8 @@ def updated(inverse: Floats, moved: Floats, turned: Floats) -> Floats:
 
 def rough_covariance(problem: Problem, outcome: Outcome) -> Floats:
     sd = prior_of(problem)[1]
-    scores = outcome.unit_scores - outcome.unit_scores.mean(axis=0)
+    scores = outcome.unit_scores
+    scores = scores - scores.sum(axis=0) / max(1, len(scores))
     information = scores.T @ scores + np.diag(1.0 / sd**2)
     information[2:5, 2:5] += outcome.day_information
     for g in range(len(problem.layout.group_sds)):

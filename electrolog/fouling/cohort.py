@@ -11,7 +11,7 @@ from electrolog.errors import DataError
 from electrolog.fouling.ascend import Peak, Width, climb, rough_width, widths
 from electrolog.fouling.batches import make_batches
 from electrolog.fouling.effects import lay_out_effects, layout_for
-from electrolog.fouling.events import READING, Events
+from electrolog.fouling.events import EXPOSURE, READING, Events
 from electrolog.fouling.fit import METHOD, CohortFit, Component, KeptUnits
 from electrolog.fouling.line_error import LineError, learn_line_error
 from electrolog.fouling.notes import notes_on
@@ -22,12 +22,14 @@ from electrolog.fouling.shapes import ALL_SHAPES, SHAPES
 from electrolog.fouling.shared import plan_assembly
 from electrolog.fouling.subset import neighbours_in_time, take_units
 from electrolog.fouling.summary import Fitted, summarise
+from electrolog.fouling.young import settled_draws
 
 Floats = NDArray[np.float64]
 DRAWS = (32, 96)  # of the hyper-parameters, over all shapes: in a large cohort, in a young one
 HOPELESS = 25.0  # nats behind the best shape
 PRIOR_ODDS = {"none": 0.1}  # against any other shape: a probe in use that doesn't foul at all is rare
 LARGE, PART = 2000, 300  # units of a large cohort, and of the part of it that tells shapes apart
+YOUNG, YOUNG_DRAWS = 60, 48
 LEAST_WEIGHT = 0.01  # a shape with less is named, but not drawn from
 
 
@@ -41,11 +43,7 @@ def fit_cohort(events: Events, *, shapes: tuple[str, ...] = ALL_SHAPES) -> Cohor
     weights = weigh(fits)
     drawn = np.where(weights >= LEAST_WEIGHT, weights, 0.0)
     drawn /= drawn.sum()
-    fitted = [
-        Fitted(problem, peak.outcome, keep(problem, peak, width, float(w)))
-        for (problem, peak, width), w in zip(fits, drawn, strict=True)
-        if w > 0.0
-    ]
+    fitted = [one for fit, w in zip(fits, drawn, strict=True) if w > 0.0 for one in kept(*fit, float(w))]
     components = tuple(one.part for one in fitted)
     unsettled = tuple(
         p.layout.shape.name for (p, peak, _), w in zip(fits, drawn, strict=True) if w and not peak.converged
@@ -122,6 +120,8 @@ def check_events(events: Events) -> None:
             "an exposure, a renewal or a reading has no finite number",
             "leave out calibrations whose slope has no logarithm, and give every exposure its hours",
         )
+    if np.any(events.amount[events.kind == EXPOSURE] < 0.0):
+        raise DataError("an exposure has negative hours", "give every exposure the hours that it lasted")
     if np.any(np.diff(events.unit) < 0):
         raise DataError("events aren't sorted by unit", "sort them by unit, then by time")
     if np.any(events.se[read] < 0.0):
@@ -140,12 +140,21 @@ def pose(events: Events, shape_name: str) -> Problem:
     return Problem(events, layout, effects, batches, plan_assembly([b.columns for b in batches], len(effects.names)))
 
 
+def kept(problem: Problem, peak: Peak, width: Width, weight: float) -> list[Fitted]:
+    if len(problem.events.units) > YOUNG:
+        return [Fitted(problem, peak.outcome, keep(problem, peak, width, weight))]
+    draws = settled_draws(problem, peak, width, max(4, round(YOUNG_DRAWS * weight)))
+    return [Fitted(problem, one.outcome, keep(problem, one, width, weight / len(draws))) for one in draws]
+
+
 def keep(problem: Problem, peak: Peak, width: Width, weight: float) -> Component:
     # The last sweep has renewed the stand-ins: the shared effects have to be those of the stand-ins that are kept,
     # or a unit taken out again would leave a negative precision behind.
     combine(problem, read_scales(problem.layout, peak.theta), peak.state)
     most = np.clip(10_000 // max(1, len(problem.events.units)), *DRAWS)
     count = max(1, round(float(most) * weight))
+    if len(problem.events.units) <= YOUNG:
+        count = 1
     theta = peak.theta + normal_points(count, len(peak.theta)) @ np.linalg.cholesky(width.covariance).T
     mean = peak.state.mean[:-1]
     labels = problem.events.units

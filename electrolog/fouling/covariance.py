@@ -42,10 +42,9 @@ class Thin:
         """
         same = (columns[:, :, None, :] == columns[:, None, :, :]).transpose(0, 3, 1, 2).astype(np.float64)
         taken = ((same @ own[:, None]) * same).sum(axis=-1).transpose(0, 2, 1)  # (B, R, e)
-        whole = self.precision[columns]
-        left = np.maximum(whole - np.maximum(taken, 0.0), 1e-3 * np.minimum(whole, 1e300))
-        alone = (1.0 + self.couplings[columns] * np.minimum(left / whole, 1.0)) / left
-        alone = np.where(np.isfinite(whole), alone, 0.0)
+        whole = np.minimum(self.precision[columns], 1e300)
+        left = np.maximum(whole - np.maximum(taken, 0.0), 1e-3 * whole)
+        alone = (1.0 + self.couplings[columns] * (left / whole)) / left
         root = self.root[columns].sum(axis=2)
         return np.asarray((same * alone.transpose(0, 2, 1)[:, :, :, None]).sum(axis=1) + root @ root.transpose(0, 2, 1))
 

@@ -35,9 +35,10 @@ def posterior(fit: CohortFit, events: Events) -> Posterior:
     at_readings, at_end = log_area_changes(events)
     counts = np.bincount(events.unit[is_reading], minlength=len(events.units))
     slipped, damaged = np.zeros(int(is_reading.sum())), np.zeros(len(events.units))
-    strands, total = [], sum(len(part.theta_draws) for part in fit.components)
+    strands = []
     for part in fit.components:
-        strand = draw_strand(part, events, fit.line_error, max(1, round(DRAWS / total)), slipped, damaged)
+        per_theta = max(1, round(DRAWS * part.weight / len(part.theta_draws)))
+        strand = draw_strand(part, events, fit.line_error, per_theta, slipped, damaged)
         strands.append(strand)
     first = np.cumsum(counts) - counts
     return Posterior(tuple(strands), first, counts, at_end, at_readings, slipped, damaged)

@@ -17,7 +17,7 @@ IN_VIVO = "in-vivo"
 
 LEVEL_SD = Prior("log sd of level between units", float(np.log(0.35)), 0.5)
 RESIDUAL_SD = Prior("log sd of a reading beyond its line's own error", float(np.log(0.03)), 0.7)
-DAY_SD = Prior("log sd of day effects", float(np.log(0.05)), 0.8)
+DAY_SD = Prior("log sd of day effects", float(np.log(0.05)), 0.5)
 GROUP_SD = float(np.log(0.15)), 0.8
 BAD_DAY_SD = Prior("log sd of a bad day's effect", float(np.log(0.35)), 0.5)
 BAD_DAY = Prior("log odds of a bad day", float(np.log(0.03)), 1.0)

@@ -173,8 +173,8 @@ def positive_definite(matrices: Floats) -> NDArray[np.bool_]:
     fine = np.ones(len(left), dtype=np.bool_)
     for k in range(left.shape[1]):
         pivot = left[:, k, k]
-        fine &= pivot > 0.0
-        scaled = left[:, k, k + 1 :] / np.where(pivot > 0.0, pivot, 1.0)[:, None]
+        fine &= pivot > 1e-12
+        scaled = np.where(fine[:, None], left[:, k, k + 1 :] / np.where(fine, pivot, 1.0)[:, None], 0.0)
         left[:, k + 1 :, k + 1 :] -= left[:, k + 1 :, k][:, :, None] * scaled[:, None, :]
     return fine
 

@@ -9,7 +9,8 @@ import numpy as np
 
 from electrolog.fouling.shapes.shape import LOG_RATE, LOG_RATE_SD, LOG_TWO, Floats, Loss, Prior
 
-MOST_LOG_LOSS = 7.0  # of a grid's outermost nodes, far from any posterior: keeps squares finite
+# Of a grid's outermost nodes, far from any posterior: keeps squares finite.
+MOST_LOG_LOSS, MOST_LOG_EXPONENT = 7.0, 4.0
 
 
 class GrowingPatch:
@@ -23,7 +24,7 @@ class GrowingPatch:
     parameters: tuple[Prior, ...] = ()
 
     def loss(self, hours: Floats, latents: Floats, parameters: Floats) -> Loss:
-        exponent = np.exp(latents[..., 1])
+        exponent = np.exp(np.minimum(latents[..., 1], MOST_LOG_EXPONENT))
         positive = np.maximum(hours, 1e-12)
         value = np.exp(np.minimum(exponent * (np.log(positive) + latents[..., 0]), MOST_LOG_LOSS))
         value = np.where(hours > 0.0, value, 0.0)

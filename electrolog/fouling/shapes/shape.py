@@ -52,7 +52,7 @@ class Shape(Protocol):
         ...
 
 
-# The log of loss per hour in vivo: a half-life of 14 hours, with 1.3 hours and 6 days two standard deviations away.
-LOG_RATE = Prior("log rate per hour in vivo", float(np.log(0.05)), 1.2)
+# The log of loss per hour in vivo: a half-life of 14 hours, with 2 hours and 4 days two standard deviations away.
+LOG_RATE = Prior("log rate per hour in vivo", float(np.log(0.05)), 1.0)
 LOG_RATE_SD = Prior("log sd of log rate between units", float(np.log(0.4)), 0.6)
 LOG_TWO = float(np.log(2.0))
