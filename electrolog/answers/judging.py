@@ -13,6 +13,10 @@ if TYPE_CHECKING:
     from electrolog.answers.asked import Run
     from electrolog.answers.assigning import Assignment
     from electrolog.answers.checking import Demands
+    from electrolog.answers.comparing import Compared
+    from electrolog.answers.diagnosing import Diagnosed
+    from electrolog.answers.kinds import By
+    from electrolog.answers.outlook import Outlook
     from electrolog.answers.plan import PlanRow
     from electrolog.answers.ranking import Ranking
 
@@ -53,3 +57,48 @@ class Judging:
         from electrolog.answers.assigning import assigned
 
         return assigned(self.record, plan, turnaround_min=turnaround_min, moment=moment)
+
+    def outlook(
+        self,
+        run: Run,
+        labels: Sequence[str] | None = None,
+        *,
+        planned_runs: int | None = None,
+        needs_um: float | None = None,
+        project: str = "",
+        limits: Mapping[str, str] | None = None,
+        moment: datetime | None = None,
+    ) -> Outlook:
+        """How long the probes (None: every usable one) will last and, for all, how many to make for a month's runs."""
+        from electrolog.answers.outlook import outlook
+
+        asked = demands(needs_um, project, limits)
+        return outlook(self.record, labels, run, asked, planned_runs, moment)
+
+    def diagnose(
+        self,
+        label: str,
+        analyte: str,
+        waveform: str | None = None,
+        *,
+        first: bool = False,
+        moment: datetime | None = None,
+    ) -> Diagnosed:
+        """Why the probe's last calibration differs from the one before it (`first`: from its first).
+
+        waveform: None for the one it was last calibrated with.
+        """
+        from electrolog.answers.diagnosing import diagnosed
+
+        return diagnosed(self.record, label, analyte, waveform, first=first, moment=moment)
+
+    def compare(
+        self, by: By, analyte: str, waveform: str | None = None, *, after_h: float = 10.0, more: int = 6
+    ) -> Compared:
+        """Whether kinds of probes differ, and where `more` probes would tell most.
+
+        waveform: None for the most used one; waveforms themselves are compared over all.
+        """
+        from electrolog.answers.comparing import compared
+
+        return compared(self.record, by, analyte, waveform, after_h=after_h, more=more)

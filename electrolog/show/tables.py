@@ -91,3 +91,9 @@ def with_error(value: float | None, error: float | None, digits: int = 3) -> str
 
 def day_or_never(moment: datetime | None) -> str:
     return "never" if moment is None else shown_moment(moment)[:10]
+
+
+def named(labels: Sequence[str], most: int = 12) -> str:
+    """`P1, P2 and 7 more`."""
+    rest = len(labels) - most
+    return ", ".join(labels[:most]) + (f" and {rest} more" if rest > 0 else "")

@@ -1,0 +1,30 @@
+from __future__ import annotations
+
+from typing import Annotated
+
+import typer
+
+from electrolog.answers.kinds import By
+from electrolog.cli.options import Csv, Json, Waveform
+from electrolog.cli.session import lab_of
+
+
+def command(
+    ctx: typer.Context,
+    by: Annotated[By, typer.Option("--by", help="What distinguishes the groups.")],
+    analyte: Annotated[str, typer.Option("--analyte", "-a", help="By which analyte's calibrations.")],
+    waveform: Waveform = None,
+    after: Annotated[str, typer.Option("--after", help="Hours in vivo of the share left.")] = "10h",
+    more: Annotated[int, typer.Option("--more", help="How many more probes to deal out over the groups.")] = 6,
+    json: Json = False,
+    csv: Csv = False,
+) -> None:
+    """Do kinds of probes differ, how surely, how many more would tell, and where they would tell most.
+
+    electrolog compare --by coating --analyte dopamine
+    """
+    from electrolog.show import comparison
+    from electrolog.units import HOURS, parse_quantity
+
+    after_h = parse_quantity(after, HOURS, "after")
+    comparison.answer(lab_of(ctx).compare(by, analyte, waveform, after_h=after_h, more=more), json, csv)
