@@ -16,10 +16,12 @@ from numpy.typing import NDArray
 from electrolog.answers import curves, exposed, fits, remarks, signal_files
 from electrolog.answers import figures as made
 from electrolog.answers import life as lives
+from electrolog.answers.background import Background, trial
 from electrolog.answers.cohorts import Cohort, gather
 from electrolog.answers.fits import Assay
 from electrolog.clock import iso_utc
 from electrolog.errors import DataError, InputError
+from electrolog.fouling.background import Trial, resampled
 from electrolog.fouling.conversion import band, log_sensitivity_along
 from electrolog.fouling.fit import CohortFit
 from electrolog.fouling.forecast import posterior
@@ -45,6 +47,7 @@ class Wanted:
     exposure: int | None = None
     start: datetime | None = None
     rate_hz: float | None = None
+    background: Background | None = None
 
 
 @dataclass(frozen=True)
@@ -123,6 +126,8 @@ def converted(record: Record, wanted: Wanted) -> Converted:
     fit = fits.fit_for(record, known.assay)
     grid_s = _grid(time_s)
     log_s = _along(fit, known, grid_s)
+    tried = None if wanted.background is None else trial(record, known.assay, fit)
+    log_s = _sharpened(log_s, wanted.background, tried)
     calibrations = [event for event in (known.pre, known.post) if event is not None]
     read = curves.read_by(*_with_figures(known, calibrations))
     step = np.round((time_s - grid_s[0]) / (grid_s[1] - grid_s[0])).astype(np.int64)
@@ -133,6 +138,7 @@ def converted(record: Record, wanted: Wanted) -> Converted:
         *remarks.of_range(current_na, middle, read),
         *read.said,
         *remarks.of_calibrations(known.life, known.run, known.pre, known.post, known.assay.waveform),
+        *([] if tried is None else [tried.said]),
         *([] if fit.converged else ["the cohort's fit did not converge: look at `electrolog fit`"]),
     )
     return Converted(
@@ -146,6 +152,8 @@ def converted(record: Record, wanted: Wanted) -> Converted:
         fixed=fixed,
         account={
             **_account(wanted, known, fit, read),
+            "background": None if wanted.background is None else asdict(wanted.background),
+            "background_trial": None if tried is None else asdict(tried),
             "sensitivity": _by_minute(grid_s, log_s),
             "fixed_factors": [asdict(one) for one in fixed],
             "warnings": list(warnings),
@@ -190,6 +198,13 @@ def _along(fit: CohortFit, known: Known, grid_s: Floats) -> Floats:
     unit = (known.assay.analyte, known.assay.waveform)
     cut = exposed.cut_at(moments, known.probe, known.life, known.figures, unit, known.cohort.events)
     return log_sensitivity_along(posterior(fit, known.cohort.events), cut.events, cut.passed)
+
+
+def _sharpened(log_s: Floats, background: Background | None, tried: Trial | None) -> Floats:
+    """The draws that go with how the background changed, where this lab has found that it tells."""
+    if background is None or tried is None or tried.law is None:
+        return log_s
+    return log_s[:, resampled(tried.law, log_s[-1] - log_s[0], background.log_change)]
 
 
 def _with_figures(known: Known, events: Sequence[Event]) -> tuple[list[Calibration], list[CalibrationFigures]]:

@@ -7,6 +7,7 @@ import typer
 
 from electrolog.cli.options import Json, Waveform
 from electrolog.cli.session import lab_of
+from electrolog.errors import InputError, shortened
 
 
 def command(
@@ -18,6 +19,9 @@ def command(
     exposure: Annotated[int | None, typer.Option("--exposure", help="The run's number, as `life` shows it.")] = None,
     start: Annotated[str | None, typer.Option("--start", metavar="TIME", help="When its time is zero.")] = None,
     rate: Annotated[float | None, typer.Option("--rate", help="Samples per second, of a file without times.")] = None,
+    background: Annotated[
+        str | None, typer.Option("--background", metavar="START,END", help="Charging current then: 160nA,151nA")
+    ] = None,
     out: Annotated[Path | None, typer.Option("--out", help="The result, a CSV file.")] = None,
     json: Json = False,
 ) -> None:
@@ -40,6 +44,17 @@ def command(
         exposure=exposure,
         start=None if start is None else lab.moment(start),
         rate_hz=rate,
+        background_na=None if background is None else pair_of(background),
     )
     conversions.write(found, result, account)
     conversions.answer(found, result, account, json)
+
+
+def pair_of(text: str) -> tuple[float, float]:
+    """`160nA,151nA`: at the recording's start and at its end."""
+    from electrolog.units import CURRENT_NA, parse_quantity
+
+    parts = text.split(",")
+    if len(parts) != 2:
+        raise InputError(f"background: '{shortened(text)}' is no pair; accepted: at start and end, such as 160nA,151nA")
+    return parse_quantity(parts[0], CURRENT_NA, "background"), parse_quantity(parts[1], CURRENT_NA, "background")

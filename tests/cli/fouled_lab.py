@@ -21,6 +21,7 @@ GROUPS, PER_GROUP, ROUNDS = 8, 4, 4
 BAD_DAY, WEAK = 7, float(np.log(0.85))
 DAYS = 2 * GROUPS + ROUNDS - 2
 FIRST = datetime(2026, 1, 5, 9, tzinfo=UTC)
+BACKGROUND_NA, FOLLOWS, BACKGROUND_SD = 150.0, 0.5, 0.01  # log background falls by this share of the log sensitivity
 BETWEEN_DAYS = timedelta(days=3)
 LEVELS_UM = (0.0, 0.25, 0.5, 1.0, 2.0, 4.0)
 AFFINITY_PER_UM = 0.25
@@ -34,13 +35,14 @@ def fouled_lab(folder: Path, seed: int = 6) -> dict[str, tuple[float, float]]:
     rows: Rows = {name: [] for name in ("electrodes", "calibrations", "exposures", "calibration_points")}
     truth = {}
     days = rng.normal(0.0, DAY_SD, DAYS)
+    other = np.random.default_rng(seed + 1)
     days[BAD_DAY] = WEAK
     for group in range(GROUPS):
         names = [f"G{group}-{k}" for k in range(PER_GROUP)]
         for name in names:
             truth[name] = (rng.normal(LEVEL, LEVEL_SD), RATE * np.exp(rng.normal(0.0, RATE_SD)))
             rows["electrodes"].append({"electrode": name})
-        _write_group(rows, 2 * group, days, {name: truth[name] for name in names}, rng)
+        _write_group(rows, 2 * group, days, {name: truth[name] for name in names}, rng, other)
     for name, affinity in (("R1", 0.0), ("R2", AFFINITY_PER_UM)):
         truth[name] = (LEVEL, RATE)
         rows["electrodes"].append({"electrode": name})
@@ -55,16 +57,24 @@ def fouled_lab(folder: Path, seed: int = 6) -> dict[str, tuple[float, float]]:
 
 
 def _write_group(
-    rows: Rows, first_day: int, days: np.ndarray, truth: dict[str, tuple[float, float]], rng: np.random.Generator
+    rows: Rows,
+    first_day: int,
+    days: np.ndarray,
+    truth: dict[str, tuple[float, float]],
+    rng: np.random.Generator,
+    other: np.random.Generator,
 ) -> None:
     hours = dict.fromkeys(truth, 0.0)
     for turn in range(ROUNDS):
         at = FIRST + (first_day + turn) * BETWEEN_DAYS
         for name, (level, rate) in truth.items():
             reading = level - rate * hours[name] + days[first_day + turn] + rng.normal(0.0, READING_SD)
-            rows["calibrations"].append(
-                calibration(name, turn, at, sensitivity_na_um=np.exp(reading), standard_error=LINE_SE * np.exp(reading))
+            row = calibration(
+                name, turn, at, sensitivity_na_um=np.exp(reading), standard_error=LINE_SE * np.exp(reading)
             )
+            strays = other.normal(0.0, BACKGROUND_SD)
+            background_na = BACKGROUND_NA * np.exp(-FOLLOWS * rate * hours[name] + strays)
+            rows["calibrations"].append({**row, "background_na": round(background_na, 3)})
             length = float(rng.uniform(1.5, 5.0))
             hours[name] += length
             if turn < ROUNDS - 1:

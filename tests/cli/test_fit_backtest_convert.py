@@ -208,6 +208,23 @@ def test_without_a_post_calibration_it_goes_forward_and_wider(lab: Terminal, tmp
     assert "can't become a number" in lab.refused("convert", file, "-p", "R1", *ASKED, "-w", "triangle", status=1)
 
 
+def test_a_background_that_tells_in_this_lab_sharpens_what_no_post_calibration_did(
+    lab: Terminal, tmp_path: Path
+) -> None:
+    lab.ok("strike", "calibration", "R1/1", "--why", "to see what the background is worth")
+    file = write_csv(tmp_path / "a.csv", TIME_S, currents_na())
+    fallen = 160 * np.exp(-fouled_lab.FOLLOWS * 4 * fouled_lab.RATE)
+    alone = convert(lab, file, "R1", "--out", "alone.csv")["sensitivity_na_um"]["end"]
+    found = convert(lab, file, "R1", "--background", f"160nA,{fallen}nA", "--out", "both.csv")
+    sharpened = found["sensitivity_na_um"]["end"]
+    assert width(sharpened) < 0.8 * width(alone)
+    assert sharpened["low"] < sensitivity_na_um(TIME_S[-1:])[0] < sharpened["high"]
+    assert any("the background sharpens it" in warning for warning in found["warnings"])
+    account = json.loads((tmp_path / "both.json").read_text(encoding="utf-8"))
+    assert account["background_trial"]["law"]["slope"] == pytest.approx(fouled_lab.FOLLOWS, abs=0.1)
+    assert "two currents above zero" in lab.refused("convert", file, "-p", "R1", *ASKED, "--background", "160,0")
+
+
 def width(spread: dict[str, float]) -> float:
     return float(np.log(spread["high"] / spread["low"]))
 
