@@ -11,7 +11,7 @@ from electrolog.units import CURRENT_NA, parse_quantity
 
 def command(
     ctx: typer.Context,
-    calibration: Annotated[str, typer.Argument(metavar="CALIBRATION", help="By which calibration: C0012")],
+    calibration: Annotated[str, typer.Argument(metavar="CALIBRATION", help="By which calibration: C0042")],
     currents: Annotated[
         list[str], typer.Argument(metavar="CURRENT...", help="Of the unknown; replicates: 5.2nA 5.4nA or 5.2nA,5.4nA")
     ],
@@ -20,7 +20,7 @@ def command(
 ) -> None:
     """Read the concentration of an unknown off a calibration, with its interval.
 
-    electrolog concentration C0012 5.2nA,5.4nA
+    electrolog concentration C0042 5.2nA,5.4nA
     """
     from electrolog.show import concentrations
 

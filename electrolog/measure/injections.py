@@ -94,8 +94,11 @@ def spread(values: Array) -> float:
 
 
 def _contrast(level: Array, width: int) -> Array:
-    """Without its median: that is the drift."""
-    found = contrast_over(level - level.mean(), width)
+    """Without its median, which is the drift. Beyond its ends the recording is mirrored in them: it drifts on."""
+    before = 2 * level[:5].mean() - level[width:0:-1]
+    after = 2 * level[-5:].mean() - level[-2 : -width - 2 : -1]
+    drifting = np.concatenate([before, level, after]) - level.mean()
+    found = contrast_over(drifting, width)[width:-width]
     return found - float(np.median(found))
 
 
