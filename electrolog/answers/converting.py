@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Sequence
 from dataclasses import asdict, dataclass
 from datetime import datetime, timedelta
 from importlib.metadata import version
@@ -114,25 +113,25 @@ class Known:
     def post(self) -> Event | None:
         return next((event for event in self.readings if event.at >= lives.end_of(self.run)), None)
 
+    @property
+    def around(self) -> list[Event]:
+        """Those before and after the run, as far as there are; else one made during it."""
+        return [event for event in (self.pre, self.post) if event is not None] or self.readings[:1]
+
 
 def converted(record: Record, wanted: Wanted) -> Converted:
     """Raises UnknownName; InputError for a recording or an exposure that can't be; DataError without a calibration."""
-    time_s, current_na = signal_files.trace_from(wanted.file, wanted.rate_hz)
-    time_s = checked_clock(time_s)
-    if len(current_na) != len(time_s) or not np.isfinite(current_na).any():
-        raise InputError(f"{wanted.file.name}: {len(time_s)} times go with no current at all; each sample needs one")
+    time_s, current_na = _recording(wanted)
     known = _known(record, wanted)
     run_s = exposed.span_s(known.run, known.start, time_s)
     fit = fits.fit_for(record, known.assay)
-    grid_s = _grid(time_s)
-    log_s = _along(fit, known, grid_s)
     tried = None if wanted.background is None else trial(record, known.assay, fit)
-    log_s = _sharpened(log_s, wanted.background, tried)
-    calibrations = [event for event in (known.pre, known.post) if event is not None]
-    read = curves.read_by(*_with_figures(known, calibrations))
+    grid_s = _grid(time_s)
+    log_s = _sharpened(_along(fit, known, grid_s), wanted.background, tried)
+    read = curves.read_by(*_with_figures(known))
     step = np.round((time_s - grid_s[0]) / (grid_s[1] - grid_s[0])).astype(np.int64)
     low, middle, high = band(current_na, step, log_s, read.curve)
-    fixed = tuple(_fixed(event, known, np.exp(log_s)) for event in calibrations)
+    fixed = tuple(_fixed(event, known, np.exp(log_s)) for event in known.around)
     warnings = (
         *remarks.of_recording(time_s, current_na, run_s),
         *remarks.of_range(current_na, middle, read),
@@ -141,25 +140,22 @@ def converted(record: Record, wanted: Wanted) -> Converted:
         *([] if tried is None else [tried.said]),
         *([] if fit.converged else ["the cohort's fit did not converge: look at `electrolog fit`"]),
     )
-    return Converted(
-        time_s=time_s,
-        current_na=current_na,
-        concentration_um=_told(middle),
-        low_um=_told(low),
-        high_um=_told(high),
-        sensitivity_start=_spread(np.exp(log_s[0])),
-        sensitivity_end=_spread(np.exp(log_s[-1])),
-        fixed=fixed,
-        account={
-            **_account(wanted, known, fit, read),
-            "background": None if wanted.background is None else asdict(wanted.background),
-            "background_trial": None if tried is None else asdict(tried),
-            "sensitivity": _by_minute(grid_s, log_s),
-            "fixed_factors": [asdict(one) for one in fixed],
-            "warnings": list(warnings),
-        },
-        warnings=warnings,
-    )
+    account = _account(wanted, known, fit, read) | {
+        "background_trial": None if tried is None else asdict(tried),
+        "sensitivity": _by_minute(grid_s, log_s),
+        "fixed_factors": [asdict(one) for one in fixed],
+        "warnings": list(warnings),
+    }
+    start, end = _spread(np.exp(log_s[0])), _spread(np.exp(log_s[-1]))
+    return Converted(time_s, current_na, _told(middle), _told(low), _told(high), start, end, fixed, account, warnings)
+
+
+def _recording(wanted: Wanted) -> tuple[Floats, Floats]:
+    time_s, current_na = signal_files.trace_from(wanted.file, wanted.rate_hz)
+    time_s = checked_clock(time_s)
+    if len(current_na) != len(time_s) or not np.isfinite(current_na).any():
+        raise InputError(f"{wanted.file.name}: {len(time_s)} times go with no current at all; each sample needs one")
+    return time_s, current_na
 
 
 def _told(concentration_um: Floats) -> Floats:
@@ -196,7 +192,8 @@ def _along(fit: CohortFit, known: Known, grid_s: Floats) -> Floats:
     """(T, D) log sensitivity, given the probe's whole life, what came after the run too."""
     moments = [known.start + timedelta(seconds=second) for second in grid_s.tolist()]
     unit = (known.assay.analyte, known.assay.waveform)
-    cut = exposed.cut_at(moments, known.probe, known.life, known.figures, unit, known.cohort.events)
+    story = exposed.Story(known.probe, known.life, known.figures, known.readings)
+    cut = exposed.cut_at(moments, story, unit, known.cohort.events)
     return log_sensitivity_along(posterior(fit, known.cohort.events), cut.events, cut.passed)
 
 
@@ -207,8 +204,8 @@ def _sharpened(log_s: Floats, background: Background | None, tried: Trial | None
     return log_s[:, resampled(tried.law, log_s[-1] - log_s[0], background.log_change)]
 
 
-def _with_figures(known: Known, events: Sequence[Event]) -> tuple[list[Calibration], list[CalibrationFigures]]:
-    ids = [event.row["id"] for event in events]
+def _with_figures(known: Known) -> tuple[list[Calibration], list[CalibrationFigures]]:
+    ids = [event.row["id"] for event in known.around]
     return [known.calibrations[key] for key in ids], [known.figures[key] for key in ids]
 
 
@@ -249,6 +246,7 @@ def _account(wanted: Wanted, known: Known, fit: CohortFit, read: curves.ReadBy) 
         "curve": asdict(read.curve),
         "calibrated_to_um": read.highest_um,
         "band": 0.9,
+        "background": None if wanted.background is None else asdict(wanted.background),
         "fit": {"method": fit.method, "fingerprint": fit.fingerprint, "converged": fit.converged},
         "electrolog": version("electrolog"),
     }

@@ -82,22 +82,25 @@ class Moments:
     passed: Floats
 
 
-def cut_at(
-    moments: Sequence[datetime],
-    probe: Row,
-    life: Sequence[Event],
-    figures: Mapping[int, CalibrationFigures],
-    unit: tuple[str, str],
-    known: Events,
-) -> Moments:
+@dataclass(frozen=True)
+class Story:
+    """One probe; `readings` are the calibrations of its life that the fit can use."""
+
+    probe: Row
+    life: Sequence[Event]
+    figures: Mapping[int, CalibrationFigures]
+    readings: Sequence[Event]
+
+
+def cut_at(moments: Sequence[datetime], story: Story, unit: tuple[str, str], known: Events) -> Moments:
     """unit: analyte, waveform. known: the events of the whole life, whose order of settings is kept."""
     analyte, waveform = unit
-    alone = [{**probe, "electrode": str(k)} for k in range(len(moments))]
-    cut = {str(k): _until(life, moment) for k, moment in enumerate(moments)}
+    alone = [{**story.probe, "electrode": str(k)} for k in range(len(moments))]
+    cut = {str(k): _until(story.life, moment) for k, moment in enumerate(moments)}
     units = [(row["electrode"], waveform) for row in alone]
-    events = gather(alone, cut, figures, analyte, units, known.settings).events
-    readings = [e.at for e in lives.comparable_calibrations(life, analyte, waveform) if e.row["id"] in figures]
-    return Moments(events, np.array([_passed(moment, life, readings) for moment in moments]))
+    events = gather(alone, cut, story.figures, analyte, units, known.settings).events
+    readings = [event.at for event in story.readings]
+    return Moments(events, np.array([_passed(moment, story.life, readings) for moment in moments]))
 
 
 def _until(life: Sequence[Event], moment: datetime) -> list[Event]:
