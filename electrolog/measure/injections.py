@@ -48,6 +48,7 @@ def find_injections(time_s: Array, current_na: Array, edge_s: float = EDGE_S) ->
     downward = _first_is_a_fall(rises, falls)
     begins, ends = (falls, rises) if downward else (rises, falls)
     upright = -level if downward else level
+    ends = _with_faint_ends(begins, ends, upright, -contrast if downward else contrast)
     onsets, stops = [_onset(at, upright) for at in begins], [_stop(at, upright) for at in ends]
     spans, warnings = _paired(onsets, stops, len(time) - 1)
     return Found(tuple(Span(float(time[a]), float(time[b])) for a, b in spans), downward, tuple(warnings))
@@ -144,6 +145,19 @@ def _stop(steepest: int, level: Array) -> int:
     while at > first and level[at] < top - ONSET_SHARE * (top - low):
         at -= 1
     return at
+
+
+def _with_faint_ends(begins: list[int], ends: list[int], level: Array, contrast: Array) -> list[int]:
+    """A slow tail may end an injection without an edge: where the current is back at rest, the steepest fall is it."""
+    found = list(ends)
+    for begin, following in pairwise(begins):
+        first, last = begin + _PER_EDGE, following - _PER_EDGE
+        if first >= last or any(begin < end < following for end in ends):
+            continue
+        rest, top = level[max(0, begin - 2 * _PER_EDGE) : begin - _PER_EDGE // 2], level[begin + 5 : first + 5]
+        if rest.size and level[last - _PER_EDGE // 2 : last].mean() < (rest.mean() + top.mean()) / 2:
+            found.append(first + int(np.argmin(contrast[first:last])))
+    return sorted(found)
 
 
 def _paired(begins: list[int], ends: list[int], last: int) -> tuple[list[tuple[int, int]], list[str]]:

@@ -75,7 +75,7 @@ def draw_trace(axes: Axes, reading: TraceReading, concentration_um: Sequence[flo
     axes.plot([], [], color=BLUE, linewidth=2, linestyle="--", label="at rest, drift taken off")
     levels = [one.level_na for one in reading.plateaus]
     _plateaus(axes, [one.window for one in reading.plateaus], levels)
-    _injections(axes, [one.injection for one in reading.plateaus], levels, concentration_um)
+    _injections(axes, [one.injection for one in reading.plateaus], _clear(levels, reading.noise_na), concentration_um)
     _legend_above(axes)
     return labelled(axes, "Recording", "time (s)", "current (nA)")
 
@@ -90,7 +90,7 @@ def draw_scan_trace(axes: Axes, reading: ScanReading, concentration_um: Sequence
     axes.plot([], [], color=BLUE, linewidth=2, linestyle="--", label="background")
     tops = [float(reading.trace_na[one.window.within(reading.time_s)].mean()) for one in graphs]
     _plateaus(axes, [one.window for one in graphs], tops)
-    _injections(axes, [one.injection for one in graphs], tops, concentration_um)
+    _injections(axes, [one.injection for one in graphs], _clear(tops, reading.noise_na), concentration_um)
     _legend_above(axes)
     return labelled(axes, f"Current at {_volts(reading.trace_v)} V", "time (s)", "current (nA)")
 
@@ -146,7 +146,7 @@ def draw_line(axes: Axes, points: Points, figures: CalibrationFigures) -> Axes:
         style = "--" if figures.shape == "saturating" else "-"
         label = f"{shown_number(slope)} nA/µM"
         axes.plot([0, top], [offset, offset + slope * top], color=BLUE, linestyle=style, label=label, zorder=1)
-    axes.legend(loc="upper left")
+    axes.legend(loc="best")
     return labelled(axes, "Calibration", "concentration (µM)", "current (nA)")
 
 
@@ -186,6 +186,11 @@ def _injections(axes: Axes, spans: Sequence[Span], levels: Sequence[float], conc
             fontsize=7,
             color=INK,
         )
+
+
+def _clear(levels: Sequence[float], noise_na: float) -> list[float]:
+    """Beyond the noise, so that a name stands beside the signal and not in it."""
+    return [level + (3 if level >= 0 else -3) * noise_na for level in levels]
 
 
 def _potentials_along(axes: Axes, reading: ScanReading) -> None:
