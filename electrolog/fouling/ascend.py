@@ -48,9 +48,11 @@ def crowd(problem: Problem) -> float:
     return max(1.0, len(problem.events.units) / 500.0)
 
 
-def log_posterior(problem: Problem, theta: Floats, state: State, sweeps: int = 6) -> tuple[float, Floats, Outcome]:
+def log_posterior(
+    problem: Problem, theta: Floats, state: State, sweeps: int = 6, tolerance: float = 0.01
+) -> tuple[float, Floats, Outcome]:
     mean, sd = prior_of(problem)
-    outcome = settle(problem, theta, state, sweeps, 0.01 * crowd(problem))
+    outcome = settle(problem, theta, state, sweeps, tolerance * crowd(problem))
     off = (theta - mean) / sd
     log_prior = -0.5 * float(off @ off) - float(np.log(sd).sum()) - 0.5 * len(sd) * float(np.log(2.0 * np.pi))
     return outcome.log_evidence + log_prior, outcome.score - off / sd, outcome
@@ -132,15 +134,17 @@ def rough_covariance(problem: Problem, outcome: Outcome) -> Floats:
 
 
 def widths(problem: Problem, peak: Peak) -> Width:
+    """Differences of slopes. Grids stay where they are: one that moved would add its own jump to a small difference."""
     n = len(peak.theta)
     sd = np.sqrt(np.diag(peak.rough_covariance))
     base_state = deepcopy(peak.state)
-    base = log_posterior(problem, peak.theta, base_state, 8)[1]
+    base_state.grids_stay = True
+    base = log_posterior(problem, peak.theta, base_state, 15, 1e-4)[1]
     hessian, moved = np.zeros((n, n)), np.zeros((len(base_state.mean) - 1, n))
     for k in range(n):
         theta, state = peak.theta.copy(), deepcopy(base_state)
         theta[k] += STEP * sd[k]
-        slope = log_posterior(problem, theta, state, 8)[1]
+        slope = log_posterior(problem, theta, state, 12, 1e-4)[1]
         hessian[:, k] = (base - slope) / (STEP * sd[k])
         moved[:, k] = (state.mean - base_state.mean)[:-1] / (STEP * sd[k])
     values, vectors = np.linalg.eigh(0.5 * (hessian + hessian.T))

@@ -26,7 +26,8 @@ from electrolog.fouling.young import settled_draws
 
 Floats = NDArray[np.float64]
 DRAWS = (32, 96)  # of the hyper-parameters, over all shapes: in a large cohort, in a young one
-HOPELESS = 25.0  # nats behind the best shape
+HOPELESS = 25.0  # nats behind the best shape: not climbed to its end
+CLOSE = 10.0  # nats behind the best shape: its evidence is worth a closer look
 PRIOR_ODDS = {"none": 0.1}  # against any other shape: a probe in use that doesn't foul at all is rare
 LARGE, PART = 2000, 300  # units of a large cohort, and of the part of it that tells shapes apart
 YOUNG, YOUNG_DRAWS = 60, 48
@@ -97,20 +98,22 @@ def fit_all_units(events: Events, problem: Problem, peak: Peak, width: Width) ->
 
 def fit_each(events: Events, shapes: tuple[str, ...], rough: bool = False) -> list[tuple[Problem, Peak, Width]]:
     """One starts where the best so far ended, and is given up once it is hopelessly behind."""
-    fits: list[tuple[Problem, Peak, Width]] = []
+    climbed: list[tuple[Problem, Peak]] = []
     known: dict[str, float] = {}
     best = -np.inf
     for name in shapes:
         problem = pose(events, name)
         theta = np.array([known.get(prior.name, prior.mean) for prior in problem.layout.priors])
         peak = climb(problem, theta, best - HOPELESS)
-        hopeless = peak.log_posterior <= best - HOPELESS
-        width = rough_width(problem, peak) if rough or hopeless else widths(problem, peak)
         if peak.log_posterior > best:
             best = peak.log_posterior
             known.update(zip((p.name for p in problem.layout.priors), peak.theta, strict=True))
-        fits.append((problem, peak, width))
-    return fits
+        climbed.append((problem, peak))
+    guesses = [(problem, peak, rough_width(problem, peak)) for problem, peak in climbed]
+    if rough:
+        return guesses
+    least = max(width.log_evidence for _, _, width in guesses) - CLOSE
+    return [(p, peak, widths(p, peak) if guess.log_evidence > least else guess) for p, peak, guess in guesses]
 
 
 def check_events(events: Events) -> None:

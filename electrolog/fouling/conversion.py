@@ -31,13 +31,13 @@ def log_sensitivity_along(drawn: Posterior, moments: Events, passed: Floats) -> 
     the reading after each moment, the share that lies before it; sudden damage falls anywhere in it alike.
     """
     counts = np.bincount(moments.unit[moments.kind == READING], minlength=len(moments.units))
-    parts = [_of_strand(strand, moments, counts, passed) for strand in drawn.strands]
+    parts = [_of_strand(place, strand, moments, counts, passed) for place, strand in enumerate(drawn.strands)]
     return joined(parts) + log_area_changes(moments)[1][:, None]
 
 
-def _of_strand(strand: Strand, moments: Events, counts: Integers, passed: Floats) -> Floats:
+def _of_strand(place: int, strand: Strand, moments: Events, counts: Integers, passed: Floats) -> Floats:
     """(T, K, S)"""
-    scales = known_scales(strand.component, moments)
+    scales = known_scales(strand.component, moments, place)
     hours = run_clock(moments, scales.weight, scales.recovery).at_end.T
     shape = (len(counts), *strand.level.shape[1:])
     alike = Strand(

@@ -36,10 +36,9 @@ def posterior(fit: CohortFit, events: Events) -> Posterior:
     counts = np.bincount(events.unit[is_reading], minlength=len(events.units))
     slipped, damaged = np.zeros(int(is_reading.sum())), np.zeros(len(events.units))
     strands = []
-    for part in fit.components:
+    for place, part in enumerate(fit.components):
         per_theta = max(1, round(DRAWS * part.weight / len(part.theta_draws)))
-        strand = draw_strand(part, events, fit.line_error, per_theta, slipped, damaged)
-        strands.append(strand)
+        strands.append(draw_strand(part, place, events, fit.line_error, per_theta, slipped, damaged))
     first = np.cumsum(counts) - counts
     return Posterior(tuple(strands), first, counts, at_end, at_readings, slipped, damaged)
 
@@ -57,11 +56,11 @@ class View:
 
 
 def draw_strand(
-    part: Component, events: Events, line: LineError, per_theta: int, slipped: Floats, damaged: Floats
+    part: Component, place: int, events: Events, line: LineError, per_theta: int, slipped: Floats, damaged: Floats
 ) -> Strand:
     view = widen(part, events)
-    scales = known_scales(part, events)
-    peak = known_scales(part, events, at_peak=True)
+    scales = known_scales(part, events, place)
+    peak = known_scales(part, events, place, at_peak=True)
     clock = run_clock(events, scales.weight, scales.recovery)
     peak_clock = run_clock(events, peak.weight, peak.recovery)
     n_units, k, q = len(events.units), len(part.theta_draws), len(part.layout.shape.latents)
@@ -112,22 +111,27 @@ def widen(part: Component, events: Events) -> View:
     return View(part, effects, padded, draws, covariance, np.append(np.arange(n), n + more))
 
 
-def known_scales(part: Component, events: Events, at_peak: bool = False) -> Scales:
-    """Hyper-parameters with the settings and renewals in the events' own order; unknown ones drawn from their priors."""
+def known_scales(part: Component, events: Events, place: int, at_peak: bool = False) -> Scales:
+    """Hyper-parameters with the settings and renewals in the events' own order; unknown ones drawn from their priors.
+
+    place: of the component in its fit; a component may hold one draw only, and each is to get another one of the prior.
+    """
     theta = part.theta[None] if at_peak else part.theta_draws
     scales = read_scales(part.layout, theta)
-    weight = reorder(scales.weight, part.layout.settings, events.settings, "weight", at_peak)
-    recovery = reorder(scales.recovery, part.layout.renewals, events.renewals, "recovery", at_peak)
+    spin = None if at_peak else place
+    weight = reorder(scales.weight, part.layout.settings, events.settings, "weight", spin)
+    recovery = reorder(scales.recovery, part.layout.renewals, events.renewals, "recovery", spin)
     return Scales(**{**scales.__dict__, "weight": weight, "recovery": recovery})
 
 
-def reorder(values: Floats, known: tuple[str, ...], asked: tuple[str, ...], what: str, at_peak: bool) -> Floats:
+def reorder(values: Floats, known: tuple[str, ...], asked: tuple[str, ...], what: str, spin: int | None) -> Floats:
+    """spin None: unknown ones at their prior's median."""
     columns = []
     for k, name in enumerate(asked):
         if name in known:
             columns.append(values[:, known.index(name)])
         else:
-            columns.append(prior_draws(what, name, 1 if at_peak else len(values), k))
+            columns.append(prior_draws(what, name, len(values), None if spin is None else spin + k))
     return np.stack(columns, axis=-1) if columns else np.zeros((len(values), 0))
 
 

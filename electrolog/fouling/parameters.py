@@ -120,13 +120,14 @@ def read_scales(layout: Layout, theta: Floats) -> Scales:
     )
 
 
-def prior_draws(what: str, name: str, count: int, spin: int) -> Floats:
-    """Draws of a setting's weight or a method's recovery that no fit has seen, from its prior; one: the median."""
+def prior_draws(what: str, name: str, count: int, spin: int | None) -> Floats:
+    """Draws of a setting's weight or a method's recovery that no fit has seen, from its prior; spin None: its median."""
     from scipy.special import ndtri
 
     mean, sd = WEIGHT if what == "weight" else _recovery(name)
     if what == "weight" and name == IN_VIVO:
         return np.ones(count)
     golden = 0.6180339887498949
-    at = mean + sd * ndtri((0.5 + (np.arange(count) + spin) * golden) % 1.0) * (count > 1)
+    level = np.full(count, 0.5) if spin is None else (0.5 + (np.arange(count) + spin) * golden) % 1.0
+    at = mean + sd * ndtri(level)
     return np.exp(at) if what == "weight" else 1.0 / (1.0 + np.exp(-at))

@@ -47,6 +47,7 @@ class State:
     grids: list[Grid] | None
     mean: Floats
     covariance: Covariance
+    grids_stay: bool = False
 
 
 @dataclass(frozen=True)
@@ -103,7 +104,7 @@ def sweep(problem: Problem, scales: Scales, clock: Clock, state: State) -> Outco
         found = slopes(problem.layout, setup, tilted, clock.reading_slopes[batch.reading])
         log_evidence += float(np.sum(tilted.log_evidence - log_overlap(site, cavity_mean, cavity)))
         state.sites[k] = renewed(found.gradient, found.curvature, cavity_mean, cavity)
-        grids.append(refit_grid(tilted, grid))
+        grids.append(grid if state.grids_stay else refit_grid(tilted, grid))
         all_scores.append(found.score)
         all_tilted.append(tilted)
     state.grids = grids
@@ -201,8 +202,12 @@ def sweep_days(effects: Effects, scales: Scales, state: State) -> tuple[float, F
     # A day between good and bad looks wider than either; without a floor its stand-in would say nothing at all.
     precision = np.maximum(curvature / (1.0 - curvature * cavity), 0.25 / scales.bad_day_sd**2)
     shift = found.gradient + precision * (cavity_mean + cavity * found.gradient)
-    # Half a step: a bad day and a slip can explain the same reading, and whole steps would chase each other for ever.
-    state.day_site = Site(0.5 * (site.precision + precision), 0.5 * (site.shift + shift))
+    # Half a step where in doubt: a bad day and a slip can explain the same reading, and whole steps would chase each
+    # other for ever.
+    step = np.where(np.abs(found.bad - 0.5) < 0.49, 0.5, 1.0)
+    state.day_site = Site(
+        site.precision + step * (precision - site.precision), site.shift + step * (shift - site.shift)
+    )
     return float(np.sum(found.log_evidence - overlap)), found.score, found.bad
 
 
