@@ -121,7 +121,7 @@ def read_scales(layout: Layout, theta: Floats) -> Scales:
 
 
 def prior_draws(what: str, name: str, count: int, spin: int | None) -> Floats:
-    """Draws of a setting's weight or a method's recovery that no fit has seen, from its prior; spin None: its median."""
+    """Draws of a setting's weight or a method's recovery that no fit has seen, from its prior; spin None: the median."""
     from scipy.special import ndtri
 
     mean, sd = WEIGHT if what == "weight" else _recovery(name)
