@@ -10,6 +10,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from electrolog.fouling.points import normal_quantiles
 from electrolog.fouling.shapes.shape import Prior, Shape
 
 Floats = NDArray[np.float64]
@@ -122,12 +123,10 @@ def read_scales(layout: Layout, theta: Floats) -> Scales:
 
 def prior_draws(what: str, name: str, count: int, spin: int | None) -> Floats:
     """Draws of a setting's weight or a method's recovery that no fit has seen, from its prior; spin None: the median."""
-    from scipy.special import ndtri
-
     mean, sd = WEIGHT if what == "weight" else _recovery(name)
     if what == "weight" and name == IN_VIVO:
         return np.ones(count)
     golden = 0.6180339887498949
     level = np.full(count, 0.5) if spin is None else (0.5 + (np.arange(count) + spin) * golden) % 1.0
-    at = mean + sd * ndtri(level)
+    at = mean + sd * normal_quantiles(level)
     return np.exp(at) if what == "weight" else 1.0 / (1.0 + np.exp(-at))

@@ -2,10 +2,13 @@
 
 from __future__ import annotations
 
+from statistics import NormalDist
+
 import numpy as np
 from numpy.typing import NDArray
 
 Floats = NDArray[np.float64]
+FEW = 50_000
 
 
 def even_points(count: int, dimensions: int) -> Floats:
@@ -17,11 +20,22 @@ def even_points(count: int, dimensions: int) -> Floats:
     return np.asarray((0.5 + np.arange(1, count + 1)[:, None] * steps) % 1.0)
 
 
+def normal_quantiles(probability: Floats) -> Floats:
+    """Quantiles of the standard normal, of probability's shape.
+
+    One probe's draws are few: the standard library (Wichura 1988, AS 241) has them sooner than scipy is imported.
+    """
+    if probability.size > FEW:
+        from scipy.special import ndtri
+
+        return np.asarray(ndtri(probability))
+    inverse = NormalDist().inv_cdf
+    return np.array([inverse(p) for p in probability.ravel().tolist()]).reshape(probability.shape)
+
+
 def normal_points(count: int, dimensions: int) -> Floats:
     """(count, dimensions) standard normal numbers in pairs of opposite sign, each dimension of variance one."""
-    from scipy.special import ndtri
-
-    half = ndtri(even_points(count - count // 2, dimensions))
+    half = normal_quantiles(even_points(count - count // 2, dimensions))
     points = np.concatenate([half, -half])[:count]
     if count < 4:
         return np.zeros((count, dimensions))

@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 
-from electrolog.fouling.points import even_points
+from electrolog.fouling.points import even_points, normal_quantiles
 from electrolog.fouling.quadrature import Grid, Setup, Tilted, standard_nodes
 
 Floats = NDArray[np.float64]
@@ -16,8 +16,6 @@ def sample(
     tilted: Tilted, grid: Grid, setup: Setup, level: tuple[Floats, Floats], per_theta: int
 ) -> tuple[Floats, Floats, Floats, Integers]:
     """S draws per pair: latents (B, S, q), level before damage (B, S), damage (B, S), and the reading it came before."""
-    from scipy.special import ndtri
-
     n_pairs, n_nodes, n_fates = tilted.probability.shape
     q, n = tilted.nodes.shape[2], setup.batch.real.shape[1]
     points = even_points(n_pairs * per_theta, 3 + q).reshape(n_pairs, per_theta, 3 + q)
@@ -30,7 +28,7 @@ def sample(
     within = standard.place[node] + (points[:, :, 3:] - 0.5) * standard.sides[node]
     which = standard.grid[node]
     latents = grid.centre[pair, which] + np.einsum("bsij,bsj->bsi", grid.spread[pair, which], within)
-    z = ndtri(points[:, :, 1:3])
+    z = normal_quantiles(points[:, :, 1:3])
     shift = tilted.shift[pair, node, fate] + z[:, :, 0] / np.sqrt(tilted.stiffness[pair, fate])
     shift = np.where(fate > 0, shift, 0.0)
     mean, with_rows = level
