@@ -113,8 +113,8 @@ def _windows(targets: Sequence[Target], cuts: int) -> list[tuple[datetime, list[
     first = round(FIRST_SHARE * len(targets))
     if len(targets) - first < FEWEST_TARGETS:
         raise DataError(
-            f"too little to test on: {len(targets)} calibrations follow an earlier one of the same probe and waveform;"
-            f" needed are {round(FEWEST_TARGETS / (1 - FIRST_SHARE))} or more",
+            f"too little to test on: calibrations that follow an earlier one of the same probe and waveform:"
+            f" {len(targets)}; needed are {round(FEWEST_TARGETS / (1 - FIRST_SHARE))} or more",
             "calibrate after every run: each adds one",
         )
     places = {first + k * (len(targets) - first) // cuts for k in range(cuts)}

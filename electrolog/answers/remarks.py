@@ -58,6 +58,9 @@ def of_calibrations(
         yield "no calibration after the run: the loss is forecast from the probe's cohort, and the band is wider for it"
     else:
         yield from _between(life, run, post)
+    for other in lives.of(life, sheets.EXPOSURES):
+        if other is not run and other.at < lives.end_of(run) and lives.end_of(other) > run.at:
+            yield f"{other.name} is logged for a part of the same time: both count as fouling; is one of them a slip?"
     if run.row["waveform"] and run.row["waveform"] != waveform:
         yield f"the exposure was logged with {run.row['waveform']}, and is read by calibrations with {waveform}"
 

@@ -34,7 +34,10 @@ def command(
     from electrolog.show import conversions
 
     lab = lab_of(ctx)
-    (label,) = lab.labels([probe])
+    labels = lab.labels([probe])
+    if len(labels) != 1:
+        raise InputError(f"probe: '{shortened(probe)}' names {len(labels)} probes; accepted: the one that recorded it")
+    label = labels[0]
     result, account = conversions.targets(file, out)
     found = lab.convert(
         file,

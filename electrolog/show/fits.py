@@ -43,7 +43,8 @@ def _print(found: FittedCohort) -> None:
 def _head(found: FittedCohort) -> list[str]:
     shapes = ", ".join(f"{name} {shown_percent(weight)}" for name, weight in found.shapes.items() if weight >= 0.01)
     lines = [
-        f"{found.analyte}: {found.calibrations} calibrations of {found.probes} probes, retired ones too",
+        f"{found.analyte}: {_count(found.calibrations, 'calibration')} of {_count(found.probes, 'probe')},"
+        " retired ones too",
         f"fitted {shown_moment(found.made_at)} by {found.method}; median and 90 % interval everywhere",
         f"shape of loss: {shapes}",
     ]
@@ -83,9 +84,10 @@ def _print_recoveries(found: FittedCohort) -> None:
 def _print_days(found: FittedCohort) -> None:
     odd = found.suspicious_days
     if not odd:
-        print_lines("", f"none of {len(found.days)} calibration days is suspicious")
+        print_lines("", f"suspicious: none of {_count(len(found.days), 'calibration day')}")
         return
-    print_lines("", f"{len(odd)} of {len(found.days)} calibration days are suspicious: standard, rig or reference?")
+    which = f"{len(odd)} of {_count(len(found.days), 'calibration day')}"
+    print_lines("", f"suspicious: {which}; is it the standard, the rig or the reference electrode?")
     columns = ("date", "standard", "rig", "all readings off by", "calibrations")
     rows = [(day.date, day.standard, day.rig, _span(day.effect, _off), day.calibrations) for day in odd]
     print_table(columns, rows, columns[3:], least=("rig",))
@@ -121,3 +123,7 @@ def _off(share: float | None) -> str:
 
 def _who(day: Day) -> str:
     return ", ".join(part for part in (day.standard, day.rig) if part) or "standard and rig unknown"
+
+
+def _count(number: int, what: str) -> str:
+    return f"{number} {what}{'' if number == 1 else 's'}"

@@ -124,7 +124,8 @@ def test_no_forecast_peeks_at_what_came_later(lab: Terminal) -> None:
 
 def test_a_lab_with_too_little_says_so(cli: Terminal) -> None:
     said = cli.refused("backtest", *ASKED, status=1)
-    assert "too little to test on: 1 calibrations follow an earlier one" in said
+    assert "too little to test on" in said
+    assert "of the same probe and waveform: 1; needed are 17" in said
 
 
 def test_an_impossible_count_of_cuts_is_refused(lab: Terminal) -> None:
@@ -267,9 +268,53 @@ def test_a_recording_that_can_not_be_of_the_run_is_refused(lab: Terminal, tmp_pa
     assert "the recording runs from 0 to" in lab.refused("convert", long, "-p", "R1", *ASKED)
     backwards = write_csv(tmp_path / "back.csv", TIME_S[::-1], currents_na())
     assert "runs backwards" in lab.refused("convert", backwards, "-p", "R1", *ASKED)
+    assert "names 2 probes" in lab.refused("convert", long, "-p", "R1,R2", *ASKED)
+    assert "no probe is called 'R9'" in lab.refused("convert", long, "-p", "R9", *ASKED)
     several = write_csv(tmp_path / "several.csv", TIME_S, currents_na())
     assert "which exposure is it" in lab.refused("convert", several, "-p", "G0-0", *ASKED)
     assert not list(tmp_path.glob("*.concentration.*"))
+
+
+@pytest.mark.parametrize(
+    ("name", "text", "said"),
+    [
+        ("empty.csv", "time_s,current_na\n", "0 samples are no recording"),
+        ("words.csv", "time_s,current_na\n" + "1,2\n" * 3 + "2,much\n", "line 5, column 2: 'much' is not a number"),
+        ("silent.csv", "time_s,current_na\n" + "".join(f"{k},\n" for k in range(30)), "no current at all"),
+        ("recording.txt", "time_s,current_na\n1,2\n", "is no kind of recording"),
+    ],
+)
+def test_a_file_that_is_no_recording_is_refused(name: str, text: str, said: str, lab: Terminal, tmp_path: Path) -> None:
+    (tmp_path / name).write_text(text, encoding="utf-8")
+    assert said in lab.refused("convert", name, "-p", "R1", *ASKED)
+    assert "no such file" in lab.refused("convert", f"not-{name}", "-p", "R1", *ASKED)
+
+
+def test_an_exposure_logged_twice_is_pointed_at(lab: Terminal, tmp_path: Path) -> None:
+    """Both are counted, so the sensitivity would come out too low without a word."""
+    start = fouled_lab.FIRST + fouled_lab.DAYS * fouled_lab.BETWEEN_DAYS + fouled_lab.timedelta(hours=3)
+    run = ("-s", "in-vivo", "-w", "triangle", "--for", "1h", "--start", start.isoformat(), "--yes")
+    lab.ok("expose", "R1", *run)
+    found = convert(lab, write_csv(tmp_path / "rec-R1.csv", TIME_S, currents_na()))
+    assert any("is logged for a part of the same time" in warning for warning in found["warnings"])
+
+
+def test_a_lab_of_one_calibration_gets_a_wide_answer_that_says_what_it_rests_on(empty: Terminal) -> None:
+    empty.ok("new", "A1")
+    at = ("-w", "triangle", "--at", "2026-01-07T09:00Z")
+    empty.ok("calibrate", "A1", "pre", "DA", "0:0", "0.5uM:5", "1uM:10.1", *at)
+    found = empty.ok("fit", *ASKED, "--json").json
+    assert found["calibrations"] == 1
+    hours = found["half_lives"][0]["hours"]
+    assert hours["high"] is None or hours["high"] > 10 * hours["low"]
+    assert any("no probe has calibrations with exposure between them" in note for note in found["notes"])
+
+
+def test_a_calibration_without_a_logarithm_is_left_out_by_name(lab: Terminal) -> None:
+    lab.ok("amend", "calibration", "G0-0/1", "sensitivity_na_um=-3", "--why", "to see it named")
+    found = lab.ok("fit", *ASKED, "--json").json
+    assert found["calibrations"] == 131
+    assert any(note.startswith("G0-0/1 is left out") for note in found["notes"])
 
 
 def test_nothing_is_overwritten(lab: Terminal, tmp_path: Path) -> None:
