@@ -43,11 +43,12 @@ def find_injections(time_s: Array, current_na: Array, edge_s: float = EDGE_S) ->
             f"the recording lasts {time_s[-1] - time_s[0]:.3g} s, too short to find edges of {edge_s:g} s",
             "give the injections as a table, or a shorter --edge",
         )
-    contrast = _contrast(level, _PER_EDGE)
+    contrast, drift = _contrast(level, _PER_EDGE)
     rises, falls = _edges(contrast, _noise_of_contrast(level))
     downward = _first_is_a_fall(rises, falls)
     begins, ends = (falls, rises) if downward else (rises, falls)
-    upright = -level if downward else level
+    steady = level - drift * np.arange(len(level))
+    upright = -steady if downward else steady
     ends = _with_faint_ends(begins, ends, upright, -contrast if downward else contrast)
     onsets, stops = [_onset(at, upright) for at in begins], [_stop(at, upright) for at in ends]
     spans, warnings = _paired(onsets, stops, len(time) - 1)
@@ -94,13 +95,17 @@ def spread(values: Array) -> float:
     return float(1.4826 * np.median(np.abs(values - np.median(values))))
 
 
-def _contrast(level: Array, width: int) -> Array:
-    """Without its median, which is the drift. Beyond its ends the recording is mirrored in them: it drifts on."""
+def _contrast(level: Array, width: int) -> tuple[Array, float]:
+    """Without its median, which is the drift; and that drift per block.
+
+    Beyond its ends the recording is mirrored in them, so that it drifts on there.
+    """
     before = 2 * level[:5].mean() - level[width:0:-1]
     after = 2 * level[-5:].mean() - level[-2 : -width - 2 : -1]
     drifting = np.concatenate([before, level, after]) - level.mean()
     found = contrast_over(drifting, width)[width:-width]
-    return found - float(np.median(found))
+    drift = float(np.median(found))
+    return found - drift, drift / width
 
 
 def _noise_of_contrast(level: Array) -> float:
@@ -148,15 +153,20 @@ def _stop(steepest: int, level: Array) -> int:
 
 
 def _with_faint_ends(begins: list[int], ends: list[int], level: Array, contrast: Array) -> list[int]:
-    """A slow tail may end an injection without an edge: where the current is back at rest, the steepest fall is it."""
+    """A slow tail may end an injection without a clear edge: where the current came down, the steepest fall is it.
+
+    Both must be so: a fall of a third of the rise, and a level a quarter down; a drift upwards hides part of it.
+    """
     found = list(ends)
     for begin, following in pairwise(begins):
         first, last = begin + _PER_EDGE, following - _PER_EDGE
         if first >= last or any(begin < end < following for end in ends):
             continue
-        rest, top = level[max(0, begin - 2 * _PER_EDGE) : begin - _PER_EDGE // 2], level[begin + 5 : first + 5]
-        if rest.size and level[last - _PER_EDGE // 2 : last].mean() < (rest.mean() + top.mean()) / 2:
-            found.append(first + int(np.argmin(contrast[first:last])))
+        steepest = first + int(np.argmin(contrast[first:last]))
+        rest = float(level[max(0, begin - _PER_EDGE) : max(1, begin - 5)].mean())
+        top, later = float(level[begin + 5 : first + 5].mean()), float(level[last - 10 : last].mean())
+        if contrast[steepest] < -contrast[begin] / 3 and later < rest + 0.75 * (top - rest):
+            found.append(steepest)
     return sorted(found)
 
 

@@ -162,6 +162,19 @@ def test_overlapping_injections_are_named():
         read_trace(time, current, TraceSettings(injections=(Span(60, 120), Span(110, 160))))
 
 
+def test_a_tail_too_slow_for_an_edge_mostly_ends_its_injection_and_else_is_warned_of():
+    """The first fall is hidden in the noise, a third of its height, and in a drift upwards."""
+    right = 0
+    for seed in range(30):
+        made = {"noise_na": 0.9, "rise_s": 1, "fall_s": 9, "lasts": 35, "pause": 90, "drift": (0, 0.02, 0)}
+        time, current, starts = trace((0.25, 2.0), **made, seed=seed)
+        reading = read_trace(time, current)
+        near = abs(reading.plateaus[0].injection.end_s - starts[0] - 35) < 8
+        assert near or said(reading, "injections 1 and 2 overlap")
+        right += near
+    assert right >= 20
+
+
 def test_a_recording_that_ends_within_an_injection_says_so():
     time, current, starts = trace()
     kept = time < starts[-1] + 25
