@@ -62,7 +62,8 @@ def climb(problem: Problem, theta: Floats, hopeless_below: float = -np.inf) -> P
     """Quasi-Newton ascent (BFGS), started from the outer product of the units' scores (Berndt et al. 1974).
 
     The stand-ins are carried from step to step, so most steps need two sweeps. Gives up, unconverged, once its slope
-    promises to leave it below `hopeless_below`: a shape that far behind another has no weight, however well its peak is found.
+    promises to leave it below `hopeless_below`: a shape that far behind another has no weight, however well its
+    peak is found.
     """
     state = start(problem, theta)
     value, slope, outcome = log_posterior(problem, theta, state, 15)

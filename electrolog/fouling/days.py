@@ -1,6 +1,7 @@
 """The prior of a day's effect: most days are good ones, N(0, day_sd^2); a few are bad, N(0, bad_day_sd^2).
 
-It is no Gaussian, so each day keeps a Gaussian stand-in with the moments that the mixture has beside all readings of the
+It is no Gaussian, so each day keeps a Gaussian stand-in with the moments that the mixture has beside all readings
+of the
 day (expectation propagation, Minka 2001).
 """
 

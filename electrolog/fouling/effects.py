@@ -1,7 +1,8 @@
 """Effects that units share: the cohort's mean level and latents, group effects on level and rate, and the days.
 
 They are one Gaussian vector psi. A reading of a unit sees a sum of some of its columns, a unit's latent (log rate, log
-exponent) sees others; which ones stands here. psi's prior: wide for the means, N(0, sd^2) for group effects; a day's is a mixture, see days.py.
+exponent) sees others; which ones stands here. psi's prior: wide for the means, N(0, sd^2) for group effects; a
+day's is a mixture, see days.py.
 """
 
 from __future__ import annotations

@@ -1,7 +1,9 @@
 """From a kept fit to one unit's, or many units', distribution of the true sensitivity: no refit, numpy only.
 
-Every unit sees the shared effects without its own old contribution (its cavity), then all of its readings, old and new, are
-put on top. Draws are deterministic, equally weighted, and joint over shape, hyper-parameters, latents, level and damage.
+Every unit sees the shared effects without its own old contribution (its cavity), then all of its readings, old and
+new, are
+put on top. Draws are deterministic, equally weighted, and joint over shape, hyper-parameters, latents, level and
+damage.
 """
 
 from __future__ import annotations
@@ -136,7 +138,8 @@ def reorder(values: Floats, known: tuple[str, ...], asked: tuple[str, ...], what
 
 
 def cavities(view: View, batch: Batch, events: Events) -> tuple[Floats, Floats]:
-    """What each unit's rows and its level see of the shared effects: means (K, B, R + 1), covariances (B, R + 1, R + 1)."""
+    """What each unit's rows and its level see of the shared effects: means (K, B, R + 1), covariances (B, R + 1, R
+    + 1)."""
     level = np.full((len(batch.unit), 1, batch.columns.shape[2]), len(view.effects.names))
     level[:, 0, : batch.level_columns.shape[1]] = batch.level_columns
     rows = np.concatenate([batch.columns, level], axis=1)

@@ -19,7 +19,8 @@ MOST_PRIOR_DF = 100.0
 
 @dataclass(frozen=True)
 class LineError:
-    """The lab's typical variance of log sensitivity from a line's own error, and how many degrees of freedom that is worth."""
+    """The lab's typical variance of log sensitivity from a line's own error, and how many degrees of freedom that
+    is worth."""
 
     typical_variance: float
     prior_df: float

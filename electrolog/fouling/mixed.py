@@ -1,7 +1,9 @@
 """Linear mixed models with crossed random effects, by maximum likelihood or REML.
 
-y = X beta + sum over terms of Z b + e, b ~ N(0, sigma^2 Lambda Lambda'), e ~ N(0, sigma^2). beta and sigma are profiled out
-and the relative factors Lambda searched (Bates et al. 2015, doi:10.18637/jss.v067.i01, eq. 18-41). The first term's groups
+y = X beta + sum over terms of Z b + e, b ~ N(0, sigma^2 Lambda Lambda'), e ~ N(0, sigma^2). beta and sigma are
+profiled out
+and the relative factors Lambda searched (Bates et al. 2015, doi:10.18637/jss.v067.i01, eq. 18-41). The first
+term's groups
 are eliminated as small blocks, so a cohort with many units and some hundred days stays cheap.
 """
 

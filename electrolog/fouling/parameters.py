@@ -1,4 +1,5 @@
-"""The hyper-parameters of a cohort under one shape: which there are, their wide priors, and what a vector of them means.
+"""The hyper-parameters of a cohort under one shape: which there are, their wide priors, and what a vector of them
+means.
 
 Every one lives on an unbounded scale (log, logit) and has a normal prior there; a fit starts at the priors' means.
 """
@@ -122,7 +123,8 @@ def read_scales(layout: Layout, theta: Floats) -> Scales:
 
 
 def prior_draws(what: str, name: str, count: int, spin: int | None) -> Floats:
-    """Draws of a setting's weight or a method's recovery that no fit has seen, from its prior; spin None: the median."""
+    """Draws of a setting's weight or a method's recovery that no fit has seen, from its prior; spin None: the
+    median."""
     mean, sd = WEIGHT if what == "weight" else _recovery(name)
     if what == "weight" and name == IN_VIVO:
         return np.ones(count)

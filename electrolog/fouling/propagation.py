@@ -152,7 +152,8 @@ def cavity_of(columns: NDArray[np.int64], site: Site, state: State) -> tuple[Flo
 
 
 def renewed(gradient: Floats, curvature: Floats, mean: Floats, covariance: Floats) -> Site:
-    """The Gaussian that, beside the cavity, has the tilted distribution's moments; its precision kept from going negative."""
+    """The Gaussian that, beside the cavity, has the tilted distribution's moments; its precision kept from going
+    negative."""
     precision = np.linalg.solve(np.eye(curvature.shape[1]) - curvature @ covariance, curvature)
     precision = no_negative(0.5 * (precision + precision.transpose(0, 2, 1)))
     moved = mean + np.einsum("bij,bj->bi", covariance, gradient)

@@ -5,7 +5,8 @@ latents it is Gaussian with one covariance J, so the level, the shared effects a
 exactly; the latents (log rate, log exponent) by the trapezoid rule on a grid laid on the unit's own posterior: for a
 smooth density that converges faster than any power of the spacing (Trefethen & Weideman 2014, doi:10.1137/130932132).
 Nodes are dense on the main peak and reach far beyond it (a sinh map), for a peak may stand on a broad foot. There are
-two grids: one for nothing having gone wrong, one for something having, for the second leaves the latents far less certain.
+two grids: one for nothing having gone wrong, one for something having, for the second leaves the latents far less
+certain.
 
 At most one thing goes wrong with a unit: nothing; a slip at one reading; sudden damage that stays, before one reading
 but the first. A slip or a damage adds a Gaussian shift along one vector u, so J changes by rank one.
@@ -25,7 +26,8 @@ from electrolog.fouling.shapes.shape import Loss, Shape
 Floats = NDArray[np.float64]
 SLIP_SD = 2.0  # a slip of the decimal point moves log sensitivity by 2.3
 DAMAGE_MEAN, DAMAGE_SD = -0.9, 0.6  # half of the sensitivity or more is gone at once
-# Of the nodes before they are stretched, in standard deviations, by the number of latents: nothing wrong, something wrong.
+# Of the nodes before they are stretched, in standard deviations, by the number of latents: nothing wrong,
+# something wrong.
 SPACING = {0: (1.0, 1.0), 1: (0.8, 0.9), 2: (0.9, 1.1)}
 REACH = 4.3
 STRETCH = 0.45
@@ -33,7 +35,8 @@ STRETCH = 0.45
 
 @dataclass(frozen=True)
 class Grid:
-    """A unit's nodes: centre (B, 2, q) + spread (B, 2, q, q) @ standard nodes, for nothing wrong and for something wrong."""
+    """A unit's nodes: centre (B, 2, q) + spread (B, 2, q, q) @ standard nodes, for nothing wrong and for something
+    wrong."""
 
     centre: Floats
     spread: Floats
@@ -41,7 +44,8 @@ class Grid:
 
 @dataclass(frozen=True)
 class Nodes:
-    """Standard nodes (G, q) of both grids, log volumes (G,) and sides (G, q) of their cells, and each one's grid (G,)."""
+    """Standard nodes (G, q) of both grids, log volumes (G,) and sides (G, q) of their cells, and each one's grid
+    (G,)."""
 
     place: Floats
     log_volume: Floats

@@ -15,7 +15,8 @@ Integers = NDArray[np.int64]
 def sample(
     tilted: Tilted, grid: Grid, setup: Setup, level: tuple[Floats, Floats], per_theta: int
 ) -> tuple[Floats, Floats, Floats, Integers]:
-    """S draws per pair: latents (B, S, q), level before damage (B, S), damage (B, S), and the reading it came before."""
+    """S draws per pair: latents (B, S, q), level before damage (B, S), damage (B, S), and the reading it came
+    before."""
     n_pairs, n_nodes, n_fates = tilted.probability.shape
     q, n = tilted.nodes.shape[2], setup.batch.real.shape[1]
     points = even_points(n_pairs * per_theta, 3 + q).reshape(n_pairs, per_theta, 3 + q)

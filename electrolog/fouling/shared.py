@@ -1,6 +1,7 @@
 """Mean and covariance of the shared effects from all stand-ins: precision assembled once per sweep, then solved.
 
-Up to MOST_DENSE effects the solution is exact. Beyond, the few effects that nearly every unit sees (the means, groups of
+Up to MOST_DENSE effects the solution is exact. Beyond, the few effects that nearly every unit sees (the means,
+groups of
 few values) are eliminated exactly, by conjugate gradients over the many (days, batches); among the many, the inverse is
 taken to second order in their couplings, which are weak when each day sees many probes.
 """
@@ -24,7 +25,8 @@ MOST_FEW = 60
 
 @dataclass(frozen=True)
 class Assembly:
-    """Where each entry of the stand-ins' precisions goes: entry `source` of all of them laid end to end adds to slot `slot`."""
+    """Where each entry of the stand-ins' precisions goes: entry `source` of all of them laid end to end adds to
+    slot `slot`."""
 
     source: Integers
     slot: Integers

@@ -1,4 +1,5 @@
-"""What the fit tells of the cohort, as plain data: shapes, half-lives, settings, renewals, days, slips, and what each rests on."""
+"""What the fit tells of the cohort, as plain data: shapes, half-lives, settings, renewals, days, slips, and what
+each rests on."""
 
 from __future__ import annotations
 
@@ -31,7 +32,8 @@ class Fitted:
 
 
 def summarise(events: Events, fitted: list[Fitted], shape_weights: dict[str, float]) -> dict[str, Any]:
-    """Intervals are 90 %; half-lives are those of the typical probe of a group, in hours in vivo (None: never halves)."""
+    """Intervals are 90 %; half-lives are those of the typical probe of a group, in hours in vivo (None: never
+    halves)."""
     return {
         "shapes": [
             {"shape": name, "weight": weight, "formula": SHAPES[name].formula} for name, weight in shape_weights.items()

@@ -1,6 +1,7 @@
 """A young cohort hardly knows its hyper-parameters, and what its days and means are depends on them.
 
-So each draw of theta is settled by itself, with shared effects of its own, and kept as a fit of its own. Draws come from
+So each draw of theta is settled by itself, with shared effects of its own, and kept as a fit of its own. Draws
+come from
 Laplace's approximation made a little wider, for its tails are too thin. Weighing them by importance was tried: with a
 dozen hyper-parameters and some fifty draws the weights were noise, and intervals held less.
 """

@@ -1,6 +1,7 @@
 """The linear mixed core beside lme4 and nlme.
 
-Numbers: R 4.2.2 with lme4 1.1-31 (bobyqa) and nlme 3.1-162; standard errors of ML fits are the raw ones. Each data set's own
+Numbers: R 4.2.2 with lme4 1.1-31 (bobyqa) and nlme 3.1-162; standard errors of ML fits are the raw ones. Each data
+set's own
 source stands at the head of its CSV.
 """
 

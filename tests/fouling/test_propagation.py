@@ -188,7 +188,8 @@ class TestBesideBruteForce:
 
     def test_shared_effects_are_the_posterior_of_many_draws(self):
         """Ten units, three days; the hyper-parameters held. Rao-Blackwell importance sampling over rate mean and rates:
-        given the units' rates all else is Gaussian, so that each draw integrates level mean, levels and days exactly."""
+        given the units' rates all else is Gaussian, so that each draw integrates level mean, levels and days
+        exactly."""
         rng = np.random.default_rng(5)
         events = small_cohort(rng, 10, 3)
         problem = problem_of(events, SHAPES["exponential"], flat=False)

@@ -48,7 +48,7 @@ def cracks():
 @pytest.mark.parametrize(
     "data",
     [
-        pytest.param(resistors, marks=UNSETTLED),
+        resistors,
         pytest.param(voltages, marks=TOO_LATE),
         pytest.param(cracks, marks=UNSETTLED),
     ],

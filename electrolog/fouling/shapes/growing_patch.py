@@ -1,4 +1,5 @@
-"""Growing patches: covered area spreads from seeds, so the loss is a power of exposure (Avrami; stretched exponential below 1).
+"""Growing patches: covered area spreads from seeds, so the loss is a power of exposure (Avrami; stretched
+exponential below 1).
 
 The exponent may differ from unit to unit: its log has a mean and a standard deviation in the cohort, like the log rate.
 """

@@ -1,4 +1,5 @@
-"""Exponential loss to a plateau: a fraction f of the sensitivity cannot foul (adsorption that saturates, Langmuir kinetics)."""
+"""Exponential loss to a plateau: a fraction f of the sensitivity cannot foul (adsorption that saturates, Langmuir
+kinetics)."""
 
 from __future__ import annotations
 

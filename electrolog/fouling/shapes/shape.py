@@ -32,8 +32,10 @@ class Loss:
 class Shape(Protocol):
     """One shape of loss: how log sensitivity falls with hours on the clock.
 
-    `latents` differ from unit to unit: the prior of each one's cohort mean; the first, if there is one, is the log rate per
-    hour in vivo. `latent_sds` are the priors of the log of their standard deviations between units. `parameters` are shared
+    `latents` differ from unit to unit: the prior of each one's cohort mean; the first, if there is one, is the log
+    rate per
+    hour in vivo. `latent_sds` are the priors of the log of their standard deviations between units. `parameters`
+    are shared
     by the cohort.
     """
 
