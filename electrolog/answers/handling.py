@@ -54,7 +54,7 @@ def split(note: str | None) -> tuple[str | None, Handling]:
         return note, Handling()
     try:
         return text or None, _read(json.loads(last.removeprefix(MARK)))
-    except (ValueError, TypeError, AttributeError, ElectrologError):
+    except (ValueError, TypeError, AttributeError, RecursionError, ElectrologError):
         said = "the note's line on its handling can't be read: the points were taken as they stand, with equal weights"
         return note, Handling(unreadable=said)
 
@@ -100,8 +100,11 @@ def _yes(text: str) -> bool:
 
 
 def _read(said: Mapping[str, Any]) -> Handling:
+    signal = said.get("signal")
+    if not isinstance(signal, dict | None):
+        raise ValueError("a signal is told as an object")
     return Handling(
         weights=weights.scheme(said.get("weights", weights.EQUAL)),
         through_zero=bool(said.get("through_zero", False)),
-        signal=said.get("signal"),
+        signal=signal,
     )

@@ -54,6 +54,11 @@ def command(
     from electrolog.answers.handling import Handling, with_handling
     from electrolog.measure.weights import scheme
 
+    if figure is not None:
+        from electrolog.show.figures import refuse_undrawable
+
+        refuse_undrawable(figure)
+
     values = {
         "stage": stage,
         "analyte": analyte,

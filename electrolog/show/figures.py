@@ -54,13 +54,20 @@ _LOOK: dict[str, Any] = {
 }
 
 
-@contextmanager
-def figure(path: Path, width_in: float, height_in: float) -> Iterator[Figure]:
-    """A figure to draw on, written to `path` at the end. Raises InputError for an ending that is no picture's."""
+def refuse_undrawable(path: Path) -> None:
+    """Before anything is logged: an ending that is no picture's, a folder that isn't there, no matplotlib."""
     if path.suffix.casefold() not in FORMATS:
         raise InputError(f"figure: '{shortened(path.name)}' has no ending of a picture; accepted: {', '.join(FORMATS)}")
-    matplotlib = _matplotlib()
-    with matplotlib.rc_context(_LOOK):
+    if not path.absolute().parent.is_dir():
+        raise InputError(f"figure: the folder '{shortened(str(path.parent))}' isn't there; accepted: one that is")
+    _matplotlib()
+
+
+@contextmanager
+def figure(path: Path, width_in: float, height_in: float) -> Iterator[Figure]:
+    """A figure to draw on, written to `path` at the end. Raises InputError where it can't be written there."""
+    refuse_undrawable(path)
+    with _matplotlib().rc_context(_LOOK):
         from matplotlib.figure import Figure
 
         drawn = Figure(figsize=(width_in, height_in), layout="constrained")

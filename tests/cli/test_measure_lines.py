@@ -204,6 +204,12 @@ def test_recompute_lists_what_a_correction_behind_it_changed(cli: Any) -> None:
     assert "nothing changed" in cli.ok("recompute").out
 
 
+@pytest.mark.parametrize("name", ["line.bmp", "line", "nowhere/line.png"])
+def test_a_picture_that_cant_be_drawn_is_refused_before_the_calibration_is_logged(cli: Any, name: str) -> None:
+    said = cli.refused("calibrate", "B9-01", "pre", "DA", *POINTS, "-w", "triangle", "--figure", name)
+    assert said.startswith("electrolog: figure: ")
+
+
 def test_the_line_is_drawn(cli: Any, tmp_path: Path) -> None:
     picture = tmp_path / "line.png"
     logged(cli, "--figure", str(picture))

@@ -182,3 +182,14 @@ def test_a_peak_must_stand_clear_of_the_noise():
     for _ in range(50):
         peaks = find_peaks(potential, random.normal(0, 1, 500), 1.0)
         assert peaks.oxidation is peaks.reduction is peaks.separation_v is None
+
+
+def test_a_sheet_beyond_all_measure_is_refused_before_it_is_read(made):
+    class Endless:
+        shape = (2_000_000, 1000)
+
+        def __getitem__(self, rows):
+            raise AssertionError("nothing may be read")
+
+    with pytest.raises(InputError, match="2000000000 samples are too many at once"):
+        read_scans(Endless(), made[1], made[2])
