@@ -9,6 +9,7 @@ import pytest
 
 from electrolog.fouling.cohort import fit_cohort
 from electrolog.fouling.conversion import Curve, band, log_sensitivity_along
+from electrolog.fouling.draws import Posterior
 from electrolog.fouling.events import EXPOSURE, READING, Events
 from electrolog.fouling.fit import CohortFit
 from electrolog.fouling.forecast import posterior
@@ -109,17 +110,24 @@ def fleet() -> tuple[CohortFit, list[list[tuple[int, int, float]]], np.ndarray]:
     return fit, list(lives), np.array(truth)
 
 
-def along(fit: CohortFit, rows: list[tuple[int, int, float]], label: str, known: int) -> np.ndarray:
-    """(5, D) at SHARES of the second run, given the first `known` rows of the life."""
-    drawn = posterior(fit, events_of([rows[:known]], [label]))
+def along(drawn: Posterior, rows: list[tuple[int, int, float]], label: str) -> np.ndarray:
+    """(5, D) at SHARES of the second run of the one unit drawn."""
     cut = [[*rows[:3], (EXPOSURE, 0, HOURS * share)] for share in SHARES]
     return log_sensitivity_along(drawn, events_of(cut, [label] * len(cut)), SHARES)
+
+
+def along_all(fit: CohortFit, lives: list[list[tuple[int, int, float]]], known: int) -> np.ndarray:
+    """(U, 5, D) given the first `known` rows of every life."""
+    labels = [f"u{k}" for k in range(len(lives))]
+    drawn = posterior(fit, events_of([rows[:known] for rows in lives], labels))
+    each = zip(lives, labels, strict=True)
+    return np.array([along(drawn.only(np.array([k])), rows, label) for k, (rows, label) in enumerate(each)])
 
 
 def test_at_its_ends_the_run_meets_the_calibrations_own_draws(fleet: tuple) -> None:
     fit, lives, _ = fleet
     drawn = posterior(fit, events_of([lives[0]], ["u0"]))
-    found = along(fit, lives[0], "u0", known=5)
+    found = along(drawn, lives[0], "u0")
     for place, reading in ((0, 1), (-1, 2)):
         expected = drawn.log_sensitivity_at_reading(np.array([reading]))[0]
         assert found[place] == pytest.approx(expected, abs=1e-9)
@@ -128,7 +136,7 @@ def test_at_its_ends_the_run_meets_the_calibrations_own_draws(fleet: tuple) -> N
 def test_without_a_reading_after_it_the_run_is_the_forecast(fleet: tuple) -> None:
     fit, lives, _ = fleet
     drawn = posterior(fit, events_of([lives[0][:3]], ["u0"]))
-    found = along(fit, lives[0], "u0", known=3)
+    found = along(drawn, lives[0], "u0")
     for place, share in enumerate(SHARES):
         expected = drawn.log_sensitivity(np.array([[HOURS * share]]))[0]
         assert found[place] == pytest.approx(expected, abs=1e-9)
@@ -136,7 +144,7 @@ def test_without_a_reading_after_it_the_run_is_the_forecast(fleet: tuple) -> Non
 
 def test_truths_lie_in_their_bands_and_both_calibrations_narrow_them(fleet: tuple) -> None:
     fit, lives, truth = fleet
-    both, forward = (np.array([along(fit, rows, f"u{k}", known) for k, rows in enumerate(lives)]) for known in (5, 3))
+    both, forward = (along_all(fit, lives, known) for known in (5, 3))
     low, high = np.quantile(both, [0.05, 0.95], axis=2)
     held = ((low < truth) & (truth < high)).mean()
     assert 0.83 < held < 0.97
@@ -155,7 +163,7 @@ def test_sudden_damage_between_two_readings_falls_anywhere_in_the_run(fleet: tup
     broken = [*lives[0][:4], (READING, 2, lives[0][4][2] - 0.9)]
     drawn = posterior(fit, events_of([broken], ["other"]))
     assert drawn.damaged[0] > 0.5
-    found = along(fit, broken, "other", known=5)
+    found = along(drawn, broken, "other")
     lost = (found < found[0].mean() - 0.6).mean(axis=1)
     assert lost[0] < 0.05
     assert lost[-1] > 0.6
