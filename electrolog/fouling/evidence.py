@@ -7,6 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from electrolog.fouling.fates import damage_chances, slip_chances
 from electrolog.fouling.parameters import Layout
 from electrolog.fouling.quadrature import Setup, Tilted
 
@@ -59,8 +60,8 @@ def scores(
     score[:, 0] = setup.level_variance * np.einsum("bij,bi,bj->b", read, real, real)
     score[:, 1] = setup.residual_variance * (own[:, q:] * real).sum(1)
     by_fate = np.einsum("bgo->bo", tilted.probability)
-    score[:, 5] = by_fate[:, 1 : 1 + n].sum(1) - tilted.fates.slip_expected
-    score[:, 6] = by_fate[:, 1 + n :].sum(1) - tilted.fates.damage_expected
+    score[:, 5] = slip_chances(by_fate, n).sum(1) - tilted.fates.slip_expected
+    score[:, 6] = damage_chances(by_fate, n).sum(1) - tilted.fates.damage_expected
     score[:, layout.latent_slots] = setup.latent_variance * own[:, :q]
     pull = by_node[..., q:]
     per_hour = np.einsum("bgn,bgn->bn", pull, tilted.loss.per_hour)

@@ -19,6 +19,7 @@ from electrolog.fouling.covariance import Covariance, between, extended
 from electrolog.fouling.draws import Posterior, Strand
 from electrolog.fouling.effects import Effects
 from electrolog.fouling.events import READING, Events
+from electrolog.fouling.fates import damage_chances, slip_chances
 from electrolog.fouling.fit import CohortFit, Component
 from electrolog.fouling.line_error import LineError
 from electrolog.fouling.parameters import Scales, prior_draws, read_scales
@@ -78,8 +79,8 @@ def draw_strand(
         at = units
         latents[at], level[at], damage[at], since[at] = (x.reshape(len(units), k, *x.shape[1:]) for x in found)
         by_fate = tilted.probability.sum(axis=1).reshape(len(units), k, -1).mean(axis=1)
-        slipped[batch.reading[batch.real]] += part.weight * by_fate[:, 1 : 1 + size][batch.real]
-        damaged[at] += part.weight * by_fate[:, 1 + size :].sum(axis=1)
+        slipped[batch.reading[batch.real]] += part.weight * slip_chances(by_fate, size)[batch.real]
+        damaged[at] += part.weight * damage_chances(by_fate, size).sum(axis=1)
     return Strand(part, scales.shape, scales.weight, clock.at_end, clock.at_readings, latents, level, damage, since)
 
 

@@ -6,9 +6,9 @@ import numpy as np
 from numpy.typing import NDArray
 
 from electrolog.fouling.draws import Posterior, Strand
+from electrolog.fouling.fates import SLIP_SD
 from electrolog.fouling.fit import CohortFit
 from electrolog.fouling.parameters import read_scales
-from electrolog.fouling.quadrature import SLIP_SD
 
 Floats = NDArray[np.float64]
 GOLDEN = 0.6180339887498949

@@ -8,8 +8,7 @@ Nodes are dense on the main peak and reach far beyond it (a sinh map), for a pea
 two grids: one for nothing having gone wrong, one for something having, for the second leaves the latents far less
 certain.
 
-At most one thing goes wrong with a unit: nothing; a slip at one reading; sudden damage that stays, before one reading
-but the first. A slip or a damage adds a Gaussian shift along one vector u, so J changes by rank one.
+What else may have happened to a unit (fates.py) shifts its readings along one vector u, so J changes by rank one.
 """
 
 from __future__ import annotations
@@ -21,11 +20,10 @@ import numpy as np
 from numpy.typing import NDArray
 
 from electrolog.fouling.batches import Batch
+from electrolog.fouling.fates import Fates, possible_fates
 from electrolog.fouling.shapes.shape import Loss, Shape
 
 Floats = NDArray[np.float64]
-SLIP_SD = 2.0  # a slip of the decimal point moves log sensitivity by 2.3
-DAMAGE_MEAN, DAMAGE_SD = -0.9, 0.6  # half of the sensitivity or more is gone at once
 # Of the nodes before they are stretched, in standard deviations, by the number of latents: nothing wrong,
 # something wrong.
 SPACING = {0: (1.0, 1.0), 1: (0.8, 0.9), 2: (0.9, 1.1)}
@@ -67,18 +65,6 @@ class Setup:
     slip_odds: Floats  # (B, n) of each reading
     damage_odds: Floats  # (B,)
     shape_parameters: Floats  # (B, p)
-
-
-@dataclass(frozen=True)
-class Fates:
-    """The O = 1 + n + n things that may have happened to each unit, in the order none, slips, damages."""
-
-    along: Floats  # (B, q + n, O) vectors u
-    log_prior: Floats  # (B, O)
-    mean: Floats  # (O,)
-    variance: Floats  # (O,)
-    slip_expected: Floats  # (B,) prior probability of any slip
-    damage_expected: Floats  # (B,)
 
 
 @dataclass(frozen=True)
@@ -130,7 +116,7 @@ def tilt(shape: Shape, setup: Setup, grid: Grid) -> Tilted:
     residual = residuals(setup, nodes, loss)
     precision, log_det = invert(covariance(setup))
     pulled = residual @ precision
-    fates = possible_fates(setup, q)
+    fates = possible_fates(setup.batch.real, setup.slip_odds, setup.damage_odds, q)
     bent = precision @ fates.along
     stiffness = np.einsum("bro,bro->bo", fates.along, bent) + 1.0 / fates.variance
     push = pulled @ fates.along + fates.mean / fates.variance
@@ -193,24 +179,6 @@ def invert(matrices: Floats) -> tuple[Floats, Floats]:
 
 def count_terms(setup: Setup) -> Floats:
     return np.asarray(setup.batch.real.sum(axis=1, keepdims=True) + setup.latent_variance.shape[1], dtype=np.float64)
-
-
-def possible_fates(setup: Setup, q: int) -> Fates:
-    real = setup.batch.real
-    n_units, n = real.shape
-    along = np.zeros((n_units, q + n, 1 + 2 * n))
-    places = np.arange(n)
-    along[:, q + places, 1 + places] = real
-    along[:, q:, 1 + n :] = (places[:, None] >= places[None, :]) * real[:, :, None] * real[:, None, :]
-    can_break = real & (places > 0)
-    slips, damages = setup.slip_odds * real, setup.damage_odds[:, None] * can_break
-    total = 1.0 + slips.sum(1) + damages.sum(1)
-    odds = np.concatenate([np.ones((n_units, 1)), slips, damages], axis=1) / total[:, None]
-    with np.errstate(divide="ignore"):
-        log_prior = np.log(odds)
-    mean = np.concatenate([[0.0], np.zeros(n), np.full(n, DAMAGE_MEAN)])
-    variance = np.concatenate([[1.0], np.full(n, SLIP_SD**2), np.full(n, DAMAGE_SD**2)])
-    return Fates(along, log_prior, mean, variance, slips.sum(1) / total, damages.sum(1) / total)
 
 
 def starting_grid(setup: Setup) -> Grid:

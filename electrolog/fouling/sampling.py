@@ -40,5 +40,5 @@ def sample(
     by_node = np.einsum("bi,bgi->bg", seen, tilted.pulled)[pair, node]
     by_fate = np.einsum("bi,bio->bo", seen, tilted.bent)[pair, fate]
     drawn = mean[:, None] + by_node - by_fate * shift + np.sqrt(np.maximum(left, 0.0))[:, None] * z[:, :, 1]
-    is_damage = fate > n
-    return latents, drawn, np.where(is_damage, shift, 0.0), np.where(is_damage, fate - 1 - n, 0)
+    is_damage = (fate > 0) & (fate <= n)
+    return latents, drawn, np.where(is_damage, shift, 0.0), np.where(is_damage, fate - 1, 0)

@@ -11,6 +11,7 @@ from numpy.typing import NDArray
 
 from electrolog.fouling.covariance import between, variances
 from electrolog.fouling.events import EXPOSURE, READING, RENEWAL, Events
+from electrolog.fouling.fates import damage_chances, slip_chances
 from electrolog.fouling.fit import Component
 from electrolog.fouling.parameters import IN_VIVO, read_scales
 from electrolog.fouling.points import normal_points
@@ -159,7 +160,7 @@ def slip_probability(one: Fitted, n_readings: int) -> Floats:
     chance = np.zeros(n_readings)
     for batch, tilted in zip(one.problem.batches, one.outcome.tilted, strict=True):
         by_fate = tilted.probability.sum(axis=1)
-        chance[batch.reading[batch.real]] = by_fate[:, 1 : 1 + batch.real.shape[1]][batch.real]
+        chance[batch.reading[batch.real]] = slip_chances(by_fate, batch.real.shape[1])[batch.real]
     return chance
 
 
@@ -168,8 +169,8 @@ def damaged(events: Events, fitted: list[Fitted]) -> list[dict[str, Any]]:
     chance: dict[int, Floats] = {}
     for one in fitted:
         for batch, tilted in zip(one.problem.batches, one.outcome.tilted, strict=True):
-            by_fate = tilted.probability.sum(axis=1)[:, 1 + batch.real.shape[1] :]
-            for unit, row in zip(batch.unit, by_fate, strict=True):
+            rows = damage_chances(tilted.probability.sum(axis=1), batch.real.shape[1])
+            for unit, row in zip(batch.unit, rows, strict=True):
                 chance[unit] = chance.get(unit, 0.0) + one.part.weight * row
     return [
         {"unit": events.units[unit], "before_reading": int(row.argmax()), "probability": float(row.sum())}

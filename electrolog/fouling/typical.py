@@ -1,0 +1,85 @@
+"""What is left of a typical probe after hours in vivo, by each shape of loss and by all of them together."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from electrolog.fouling.covariance import between
+from electrolog.fouling.fit import CohortFit, Component
+from electrolog.fouling.parameters import read_scales
+from electrolog.fouling.points import normal_points
+
+Floats = NDArray[np.float64]
+QUANTILES = (0.05, 0.5, 0.95)
+PER_DRAW = 32  # draws of the shared effects under each draw of the hyper-parameters
+
+
+@dataclass(frozen=True)
+class TypicalLoss:
+    """Shares left (H,) after hours in vivo (H,) of a probe whose level and rate are its group's means.
+
+    low, median, high: 5, 50 and 95 % over all shapes, each by its weight. by_shape: each shape's own median.
+    """
+
+    coating: str
+    waveform: str
+    hours: Floats
+    low: Floats
+    median: Floats
+    high: Floats
+    by_shape: dict[str, Floats]
+
+
+@dataclass(frozen=True)
+class _Drawn:
+    """Shares left (D, H) under one component, each draw with its weight."""
+
+    shape: str
+    share: Floats
+    weight: Floats
+
+
+def typical_loss(fit: CohortFit, coating: str, waveform: str, hours: Floats) -> TypicalLoss:
+    """A coating or waveform that the fit never saw is taken for its cohort's mean."""
+    drawn = [_drawn(part, coating, waveform, hours) for part in fit.components]
+    low, median, high = _quantiles(drawn)
+    shapes = dict.fromkeys(one.shape for one in drawn)
+    by_shape = {name: _quantiles([one for one in drawn if one.shape == name])[1] for name in shapes}
+    return TypicalLoss(coating, waveform, hours, low, median, high, by_shape)
+
+
+def _drawn(part: Component, coating: str, waveform: str, hours: Floats) -> _Drawn:
+    latents, parameters = typical_latents(part, coating, waveform)
+    loss = part.layout.shape.loss(hours[:, None, None], latents[None], parameters[None]).value
+    share = np.exp(-np.broadcast_to(loss, (len(hours), *latents.shape[:-1])).reshape(len(hours), -1).T)
+    return _Drawn(part.layout.shape.name, share, np.full(len(share), part.weight / len(share)))
+
+
+def typical_latents(part: Component, coating: str, waveform: str) -> tuple[Floats, Floats]:
+    """Draws of a group's mean latents (K, PER_DRAW, q), and of the shape's parameters (K, 1, p)."""
+    names = part.effects.names
+    n_latents = len(part.layout.shape.latents)
+    rows = np.full((1, n_latents, 3), len(names))
+    for k in range(n_latents):
+        rows[0, k, 0] = names.index(("latent", str(k)))
+    for slot, own in enumerate((("rate", "coating", coating), ("rate", "waveform", waveform)), start=1):
+        if own in names:
+            rows[0, 0, slot] = names.index(own)
+    spread = np.linalg.cholesky(between(part.covariance, rows, rows)[0] + 1e-12 * np.eye(n_latents))
+    noise = normal_points(PER_DRAW, max(n_latents, 1))[:, :n_latents] @ spread.T
+    padded = np.append(part.mean_draws, np.zeros((len(part.mean_draws), 1)), axis=1)
+    latents = padded[:, rows[0]].sum(axis=-1)[:, None, :] + noise
+    return latents, read_scales(part.layout, part.theta_draws).shape[:, None, :]
+
+
+def _quantiles(drawn: list[_Drawn]) -> Floats:
+    """(3, H), weighted."""
+    share, weight = np.concatenate([one.share for one in drawn]), np.concatenate([one.weight for one in drawn])
+    order = np.argsort(share, axis=0)
+    ranked = np.take_along_axis(share, order, axis=0)
+    reached = np.cumsum(weight[order], axis=0)
+    places = [(reached < q * reached[-1]).sum(axis=0).clip(max=len(share) - 1) for q in QUANTILES]
+    return np.stack([np.take_along_axis(ranked, place[None], axis=0)[0] for place in places])
