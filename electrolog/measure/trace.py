@@ -185,6 +185,8 @@ def _said_of(one: Plateau, place: int, time: Array, held: Sequence[Span]) -> lis
     said = said_of_window(one.window, place, time, held)
     if abs(one.moves_na) > max(UNSETTLED_SHARE * abs(one.level_na), 3 * one.noise_na):
         said.append(f"injection {place}: no plateau yet, the current still moves by {one.moves_na:.2g} nA on it")
+    if any("at its limit" in text for text in said):
+        return said  # how fast a cut-off signal rose and fell can't be said
     if one.fall_s is None:
         said.append(f"injection {place}: the current doesn't come back to a tenth before the recording goes on")
     elif one.tailing is not None and one.tailing > LONG_TAIL:

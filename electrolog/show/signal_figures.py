@@ -172,7 +172,7 @@ def _plateaus(axes: Axes, windows: Sequence[Span], levels: Sequence[float]) -> N
 def _injections(axes: Axes, spans: Sequence[Span], levels: Sequence[float], concentration_um: Sequence[float]) -> None:
     """Shaded; numbered and named above the plateau, where there is room beside each other."""
     names = [shown_concentration(value) for value in concentration_um] or [""] * len(spans)
-    axes.margins(y=0.14)
+    axes.margins(y=0.2)
     for place, (span, level, name) in enumerate(zip(spans, levels, names, strict=True), 1):
         axes.axvspan(span.start_s, span.end_s, color=QUIET, alpha=0.12, linewidth=0)
         text = f"{place}\n{name}" if name else f"{place}"

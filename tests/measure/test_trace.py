@@ -147,6 +147,7 @@ def test_an_amplifier_at_its_limit_is_named_at_its_injection():
     reading = read_trace(time, np.minimum(current, 20))
     assert said(reading, "injection 4", "amplifier was at its limit")
     assert not said(reading, "injection 3")
+    assert not said(reading, "clings")
     assert not said(read_trace(time, current), "amplifier")
 
 
