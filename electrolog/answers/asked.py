@@ -156,7 +156,9 @@ def ask(
 
 
 def _named(connection: Connection, labels: Sequence[str]) -> list[Row]:
-    return queries.probes(connection, labels) if labels else []
+    """In the order named."""
+    found = {probe["electrode"]: probe for probe in queries.probes(connection, labels)} if labels else {}
+    return [found[label] for label in dict.fromkeys(labels) if label in found]
 
 
 def _usable(connection: Connection, moment: datetime) -> list[Row]:

@@ -6,6 +6,7 @@ import statistics
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, field
 from datetime import datetime, timedelta
+from typing import Protocol
 
 import numpy as np
 
@@ -13,6 +14,7 @@ from electrolog.answers import fits
 from electrolog.answers import life as lives
 from electrolog.answers.asked import Asked, Floats, Run, ask
 from electrolog.answers.cohorts import unit_after
+from electrolog.answers.fits import Assay
 from electrolog.answers.standing import notes, out_of_use, unanswerable
 from electrolog.errors import unknown
 from electrolog.fouling.forecast import posterior
@@ -34,6 +36,11 @@ class Demands:
     needs_um: float | None = None
     project: str = ""
     limits: Mapping[str, float] = field(default_factory=dict)
+
+
+class OfAnAssay(Protocol):
+    @property
+    def assay(self) -> Assay: ...
 
 
 @dataclass(frozen=True)
@@ -73,7 +80,7 @@ def _verdict(question: Question, asked: Asked, label: str) -> Verdict:
     return judge(question) if reason is None else Verdict(UNDETERMINED, (reason,))
 
 
-def limits_in_force(stored: Sequence[Row], asked: Asked, demands: Demands) -> Limits:
+def limits_in_force(stored: Sequence[Row], asked: OfAnAssay, demands: Demands) -> Limits:
     """Raises UnknownName for a project without a limit: a typing error there would quietly judge by the lab's own."""
     found = [
         LimitRow(row["rule"], row["value"], row["origin"], row["analyte"] or "", row["project"] or "") for row in stored

@@ -6,6 +6,7 @@ hour in vivo (hours elsewhere weighed as the lab's fit has learned). The wavefor
 
 from __future__ import annotations
 
+import itertools
 import math
 from collections import Counter, defaultdict
 from collections.abc import Mapping, Sequence
@@ -81,7 +82,7 @@ class _Lab:
 def compared(
     record: Record, by: By, analyte: str, waveform: str | None = None, *, after_h: float = 10.0, more: int = 6
 ) -> Compared:
-    """`more` probes are dealt out over the groups. Raises UnknownName, InputError; DataError for fewer than two groups."""
+    """`more` probes are dealt out over the groups. Raises UnknownName, InputError, DataError for fewer than two."""
     if not after_h > 0 or more < 0:
         raise InputError(f"{after_h:g} hours, {more} more probes; accepted: hours above zero, probes none or more")
     lab = _lab(record, by, analyte, waveform)
@@ -204,7 +205,7 @@ def _cleanings(lab: _Lab) -> Groups:
     for probe in lab.probes:
         story = lab.life.get(probe["electrode"], [])
         readings = lab.readings(probe, lab.waveform)
-        for before, after in zip(readings, readings[1:], strict=False):
+        for before, after in itertools.pairwise(readings):
             between = [event for event in story if before.at < event.at < after.at]
             changing = [event for event in between if event.sheet in (sheets.EXPOSURES, *lives.RENEWING)]
             if len(changing) == 1 and changing[0].sheet is sheets.CLEANINGS:

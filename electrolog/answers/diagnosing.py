@@ -88,8 +88,8 @@ def diagnosed(
 ) -> Diagnosed:
     """The last calibration against the one before it, or (`first`) against the first.
 
-    waveform: None for the one it was last calibrated with. Raises UnknownName, InputError, and DataError where there are no two to
-    compare.
+    waveform: None for the one it was last calibrated with.
+    Raises UnknownName, InputError, and DataError where there are no two to compare.
     """
     moment = moment or utc_now()
     with record.reading() as connection:

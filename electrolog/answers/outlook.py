@@ -21,8 +21,8 @@ from electrolog.clock import utc_now
 from electrolog.errors import InputError
 from electrolog.fouling.events import Events
 from electrolog.fouling.forecast import posterior
-from electrolog.judge.facts import CalibrationFacts
 from electrolog.judge.experiment import Recalibration, recalibrate_first
+from electrolog.judge.facts import CalibrationFacts
 from electrolog.judge.picture import look
 from electrolog.judge.question import Question
 from electrolog.judge.retirement import ToMake, breaking_times_min, life, probes_to_make, runs_within
@@ -68,7 +68,10 @@ class Making:
 
 @dataclass(frozen=True)
 class Outlook:
-    """recalibrate_first: where a calibration now would save most, the best first. pace_h_per_day: run hours per day of a probe in use, over the last month; None: there was none."""
+    """recalibrate_first: where a calibration now would save most, the best first.
+
+    pace_h_per_day: run hours per day of a probe in use, over the last month; None: there was none.
+    """
 
     probes: tuple[Lasting, ...]
     making: Making | None

@@ -8,13 +8,17 @@ from datetime import datetime
 
 from electrolog.answers import fits
 from electrolog.answers import life as lives
-from electrolog.answers.asked import Asked, Floats, Run, ask
-from electrolog.answers.checking import Demands, calibration_facts, rules_of_the_lab
-from electrolog.answers.cohorts import coating
-from electrolog.answers.standing import out_of_use, unanswerable
+from electrolog.answers.asked import Asked, Floats, Run
+from electrolog.answers.board import Board, board
+from electrolog.answers.cards import Card
+from electrolog.answers.checking import Demands, calibration_facts, limits_in_force, rules_of_the_lab
+from electrolog.answers.standing import out_of_use
+from electrolog.clock import utc_now
 from electrolog.judge.decision import UNDETERMINED
 from electrolog.judge.facts import Reason
+from electrolog.judge.limits import Limits
 from electrolog.judge.shelf import Shelf, Standing, judge_shelf
+from electrolog.record import queries
 from electrolog.record.store import Record
 
 
@@ -46,14 +50,30 @@ def ranking(
     record: Record, labels: Sequence[str] | None, run: Run, demands: Demands, moment: datetime | None = None
 ) -> Ranking:
     """The named probes (None: every one that isn't retired), best first: by verdict, then by odds."""
-    asked = ask(record, labels, run, moment)
-    shelf = shelf_of(record, asked, run, demands)
-    why = {label: reason for label in asked.labels if (reason := unanswerable(asked, label)) is not None}
-    standings = judge_shelf(shelf) if asked.labels else []
-    ranked = [_ranked(asked, standing) for standing in standings if asked.labels[standing.probe] not in why]
-    aside = [_unanswered(asked, label, reason) for label, reason in why.items()]
-    draws = shelf.reference_log_sensitivity.shape[1]
-    return Ranking((*ranked, *aside), asked.fit.notes, draws)
+    there = board(record, labels, run, moment or utc_now())
+    with record.reading() as connection:
+        limits = limits_in_force(queries.limits(connection), there, demands)
+    standings = judge_shelf(_shelf(there, run, limits, demands)) if there.cards else []
+    known = ((there.cards[standing.probe], standing) for standing in standings)
+    ranked = [_ranked(card, standing) for card, standing in known if card.aside is None]
+    aside = [_unanswered(card, card.aside) for card in there.cards if card.aside is not None]
+    return Ranking((*ranked, *aside), there.fit.notes, there.log_references.shape[1])
+
+
+def _shelf(there: Board, run: Run, limits: Limits, demands: Demands) -> Shelf:
+    drawn = there.drawn()
+    return Shelf(
+        run_min=run.run_min,
+        log_sensitivity_at=lambda run_min: there.log_sensitivity_at(drawn, run_min),
+        limits=limits,
+        calibrations=[card.at(there.moment) for card in there.cards],
+        reference_log_sensitivity=there.log_references,
+        uses=[card.uses for card in there.cards],
+        out_of_use=[card.out_of_use for card in there.cards],
+        reading_sd_log=fits.reading_sd_log(there.fit),
+        needs_um=demands.needs_um,
+        assay=there.assay.said,
+    )
 
 
 def shelf_of(record: Record, asked: Asked, run: Run, demands: Demands) -> Shelf:
@@ -77,21 +97,19 @@ def shelf_of(record: Record, asked: Asked, run: Run, demands: Demands) -> Shelf:
     )
 
 
-def _ranked(asked: Asked, standing: Standing) -> Ranked:
-    label = asked.labels[standing.probe]
+def _ranked(card: Card, standing: Standing) -> Ranked:
     return Ranked(
-        label,
+        card.electrode,
         standing.verdict,
         standing.reasons,
         standing.p_breach,
         standing.sensitivity_na_um,
         standing.fraction_left,
         standing.lod_um,
-        asked.probes[label]["batch"],
-        coating(asked.life[label]),
+        card.batch,
+        card.coating,
     )
 
 
-def _unanswered(asked: Asked, label: str, reason: Reason) -> Ranked:
-    film = coating(asked.life[label])
-    return Ranked(label, UNDETERMINED, (reason,), None, None, None, None, asked.probes[label]["batch"], film)
+def _unanswered(card: Card, reason: Reason) -> Ranked:
+    return Ranked(card.electrode, UNDETERMINED, (reason,), None, None, None, None, card.batch, card.coating)

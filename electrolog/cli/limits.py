@@ -33,7 +33,7 @@ def command(
 
     lab = lab_of(ctx)
     if action == "list":
-        limits.answer(lab.limits(), json, csv)
+        limits.answer_all(lab.limits(), json, csv)
     elif action == "set":
         if rule is None or value is None:
             raise InputError("which limit, and what value? accepted: such as `limits set least-share-left 60%`")

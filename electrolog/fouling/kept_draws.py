@@ -1,4 +1,4 @@
-"""A posterior's draws thinned and laid out as plain arrays, so that they can be kept and asked again without a forecast.
+"""A posterior's draws, thinned and laid out as plain arrays: to be kept, and asked again without another forecast.
 
 Everything is single precision, 1e-7 of a log sensitivity, and has the units on its first axis.
 """
@@ -6,6 +6,7 @@ Everything is single precision, 1e-7 of a log sensitivity, and has the units on 
 from __future__ import annotations
 
 from collections.abc import Mapping
+from typing import Any, cast
 
 import numpy as np
 from numpy.typing import NDArray
@@ -58,7 +59,8 @@ def unpacked(fit: CohortFit, arrays: Mapping[str, NDArray[np.float32]], settings
     strands = []
     for place, part in enumerate(fit.components):
         scales = known_scales(part, nothing, place)
-        hours, latents, level = (np.asarray(arrays[f"{name} {place}"]) for name in ("hours", "latents", "level"))
+        # Any: single precision does as well for what is asked of them here
+        hours, latents, level = (cast(Any, arrays[f"{name} {place}"]) for name in ("hours", "latents", "level"))
         without = np.zeros((1, 1, 1))
         strands.append(
             Strand(

@@ -232,3 +232,21 @@ def keep_fit(
         "fit": json.dumps(fit, allow_nan=False),
     }
     writer.connection.execute(insert(table), [row])
+
+
+def lives_seen(connection: Connection, moment: datetime) -> dict[str, str]:
+    """Per probe that isn't retired by then, by label: how many events of each kind it has, and the newest's number."""
+    electrodes = schema.tables["electrodes"]
+    live = select(electrodes.c.id, electrodes.c.electrode).where(electrodes.c.struck.is_(None))
+    labels = {row.id: row.electrode for row in connection.execute(live.order_by(electrodes.c.electrode))}
+    found: dict[int, list[str]] = {row_id: [] for row_id in labels}
+    for sheet in EVENTS:
+        table = schema.tables[sheet.name]
+        counted = select(table.c.electrode_id, func.count(), func.max(table.c.id)).where(table.c.struck.is_(None))
+        for electrode_id, count, newest in connection.execute(counted.group_by(table.c.electrode_id)):
+            if electrode_id in found:
+                found[electrode_id].append(f"{sheet.name} {count} {newest}")
+    table = schema.tables[sheets.RETIREMENTS.name]
+    ended = select(table.c.electrode_id).where(table.c.struck.is_(None), table.c.at <= moment)
+    gone = set(connection.execute(ended).scalars())
+    return {labels[row_id]: ", ".join(said) for row_id, said in found.items() if row_id not in gone}

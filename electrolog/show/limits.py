@@ -7,9 +7,10 @@ from typing import Any
 
 from electrolog import units
 from electrolog.answers.limiting import LimitSet
+from electrolog.judge.limits import LimitRow, contradictions, effective
 from electrolog.judge.rules import Rule
 from electrolog.show.machine import print_csv, print_json
-from electrolog.show.tables import print_table
+from electrolog.show.tables import print_lines, print_table
 
 
 def answer(limits: Sequence[LimitSet], json: bool, csv: bool) -> None:
@@ -26,6 +27,19 @@ def answer(limits: Sequence[LimitSet], json: bool, csv: bool) -> None:
             least=("meaning", "common practice", "for", "origin"),
             wrapped="meaning",
         )
+
+
+def answer_all(limits: Sequence[LimitSet], json: bool, csv: bool) -> None:
+    """Every limit; and, for a person, which of those for everyone can't hold together."""
+    answer(limits, json, csv)
+    if not (json or csv):
+        print_lines(*[f"! {text}" for text in at_odds(limits)])
+
+
+def at_odds(limits: Sequence[LimitSet]) -> tuple[str, ...]:
+    for_everyone = [one for one in limits if not one.analyte and not one.project]
+    rows = [LimitRow(one.rule.name, one.value, one.origin or "") for one in for_everyone if one.value is not None]
+    return contradictions(effective(rows))
 
 
 def as_dict(limit: LimitSet) -> dict[str, Any]:

@@ -10,6 +10,7 @@ import subprocess
 import sys
 from collections.abc import Callable
 from dataclasses import dataclass
+from datetime import timedelta
 from pathlib import Path
 from typing import Any
 
@@ -17,7 +18,9 @@ import pytest
 
 from electrolog.cli.main import main
 from electrolog.lab import open_lab, set_up
+from tests.cli.fouled_lab import BETWEEN_DAYS, DAYS, FIRST, fouled_lab
 
+JUDGED_AT = (FIRST + DAYS * BETWEEN_DAYS + timedelta(hours=9)).isoformat()
 POINTS = ("0:0.1", "0.25uM:3.2", "0.5uM:6.1,6.3", "1uM:12.2", "2uM:24.0")
 
 
@@ -141,6 +144,30 @@ def empty(empty_record: Path, tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -
     """With a record just made."""
     monkeypatch.chdir(tmp_path)
     return Terminal(str(shutil.copy(empty_record, tmp_path / "record.db")), monkeypatch)
+
+
+@pytest.fixture(scope="session")
+def judged_record(empty_record: Path, tmp_path_factory: pytest.TempPathFactory) -> Path:
+    """A lab whose fouling is known, its cohort's fit kept and the limits that a question needs set."""
+    folder = tmp_path_factory.mktemp("judged")
+    path = Path(shutil.copy(empty_record, folder / "judged.db"))
+    fouled_lab(folder / "exchange")
+    with pytest.MonkeyPatch.context() as patch:
+        patch.setenv("ELECTROLOG_NOW", JUDGED_AT)
+        cli = Terminal(str(path), patch)
+        cli.ok("import", str(folder / "exchange"))
+        for rule, value in (("least-share-left", "60%"), ("accepted-risk", "5%"), ("oldest-calibration", "2400h")):
+            cli.ok("limits", "set", rule, value)
+        cli.ok("fit", "--analyte", "dopamine")
+    return path
+
+
+@pytest.fixture
+def judged(judged_record: Path, tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> Terminal:
+    """With a copy of the judged lab; the clock stands an hour after its last entry."""
+    monkeypatch.chdir(tmp_path)
+    monkeypatch.setenv("ELECTROLOG_NOW", JUDGED_AT)
+    return Terminal(str(shutil.copy(judged_record, tmp_path / "record.db")), monkeypatch)
 
 
 @pytest.fixture

@@ -1,0 +1,174 @@
+"""All probes asked about at once: their cards, and thinned draws of their forecasts; large shelves are kept on disk.
+
+What is kept is a cache and no part of the record: it can be thrown away at any time. A probe's part holds as long as
+the cohort's fit is the same, nothing was corrected, and nothing more was logged of the probe.
+"""
+
+from __future__ import annotations
+
+import hashlib
+import io
+import json
+import os
+from collections.abc import Sequence
+from dataclasses import dataclass
+from datetime import datetime
+from pathlib import Path
+
+import numpy as np
+from numpy.typing import NDArray
+
+from electrolog.answers import cards, fits
+from electrolog.answers.asked import Asked, Floats, Run, ask
+from electrolog.answers.cards import Card, card_of
+from electrolog.answers.cohorts import REFERENCE_SETTING
+from electrolog.answers.fits import Assay
+from electrolog.fouling.draws import Posterior
+from electrolog.fouling.fit import CohortFit
+from electrolog.fouling.kept_draws import Arrays, packed, thinned, unpacked
+from electrolog.record import queries, sheets
+from electrolog.record.names import Names
+from electrolog.record.readable import rows
+from electrolog.record.store import Record
+
+ALL_DRAWS, FEWER_DRAWS = 1024, 256
+LARGE = 400  # probes; below, a forecast is made as fast as it would be read
+VERSION = 1
+REFERENCE = "reference"
+
+
+@dataclass(frozen=True)
+class Board:
+    assay: Assay
+    setting: str
+    fit: CohortFit
+    cards: tuple[Card, ...]
+    arrays: Arrays
+    moment: datetime
+
+    @property
+    def log_references(self) -> Floats:
+        return np.asarray(self.arrays[REFERENCE])
+
+    def log_sensitivity_at(self, drawn: Posterior, run_min: float) -> Floats:
+        hours = np.zeros((len(self.cards), len(_settings(self.setting))))
+        hours[:, _settings(self.setting).index(self.setting)] = run_min / 60
+        return drawn.log_sensitivity(hours)
+
+    def drawn(self) -> Posterior:
+        return unpacked(self.fit, self.arrays, _settings(self.setting))
+
+
+@dataclass(frozen=True)
+class _Kept:
+    """keys: per probe, how much of its life was seen."""
+
+    stamp: str
+    keys: dict[str, str]
+    cards: dict[str, Card]
+    arrays: Arrays
+
+
+def board(record: Record, labels: Sequence[str] | None, run: Run, moment: datetime) -> Board:
+    """The named probes, or all that aren't retired. Raises UnknownName."""
+    with record.reading() as connection:
+        assay = fits.assay(connection, run.analyte, run.waveform)
+        setting = Names(connection).word("setting", run.setting)
+        seen = queries.lives_seen(connection, moment)
+        correction = queries.to_be_seen(connection, assay.analyte_id).correction
+    wanted = list(seen) if labels is None else list(dict.fromkeys(labels))
+    fit = fits.fit_for(record, assay)
+    if labels is not None or len(wanted) < LARGE:
+        return Board(assay, setting, fit, *_fresh(record, wanted, run, moment, ALL_DRAWS), moment)
+    path = _path(record, assay)
+    stamp = f"{VERSION} {fit.method} {fit.fingerprint} {correction}"
+    kept = _read(path, stamp)
+    good = [label for label in wanted if _holds(kept, label, seen[label], moment)]
+    missing = [label for label in wanted if label not in set(good)]
+    made_cards, made = _fresh(record, missing, run, moment, FEWER_DRAWS) if missing else ((), {})
+    known = [kept.cards[label] for label in good] if kept else []
+    arrays = _together(kept, good, made)
+    found = Board(assay, setting, fit, (*known, *made_cards), arrays, moment)
+    if len(missing) > len(good) / 20:
+        _write(path, stamp, seen, found)
+    return found
+
+
+def _settings(setting: str) -> tuple[str, ...]:
+    return tuple(dict.fromkeys((REFERENCE_SETTING, setting)))
+
+
+def _fresh(
+    record: Record, labels: Sequence[str], run: Run, moment: datetime, draws: int
+) -> tuple[tuple[Card, ...], Arrays]:
+    asked: Asked = ask(record, labels, run, moment)
+    with record.reading() as connection:
+        standards = {row["standard"]: row for row in rows(connection, sheets.STANDARDS)}
+    arrays = packed(asked.posterior, draws) | {REFERENCE: thinned(asked.posterior, asked.log_references(), draws)}
+    return tuple(card_of(asked, label, standards) for label in asked.labels), arrays
+
+
+def _holds(kept: _Kept | None, label: str, seen: str, moment: datetime) -> bool:
+    if kept is None or kept.keys.get(label) != seen:
+        return False
+    card = kept.cards[label]
+    return card.lasts and (card.last_event_at is None or card.last_event_at <= moment)
+
+
+def _together(kept: _Kept | None, good: Sequence[str], made: Arrays) -> Arrays:
+    if kept is None or not good:
+        return made
+    places = {label: place for place, label in enumerate(kept.cards)}
+    chosen = np.array([places[label] for label in good], dtype=np.int64)
+    whole = len(chosen) == len(places)
+    found = {name: values if whole else values[chosen] for name, values in kept.arrays.items()}
+    return {name: np.concatenate([values, made[name]]) for name, values in found.items()} if made else found
+
+
+def _path(record: Record, assay: Assay) -> Path:
+    where = str(Path(record.name).resolve()) if record.is_file else record.name
+    name = hashlib.sha256(f"{where}\n{assay.analyte}\n{assay.waveform}".encode()).hexdigest()[:24]
+    return _folder() / f"shelf-{name}.npz"
+
+
+def _folder() -> Path:
+    """ELECTROLOG_CACHE, or where this platform keeps what may be thrown away."""
+    named = os.environ.get("ELECTROLOG_CACHE")
+    if named:
+        return Path(named)
+    import platformdirs
+
+    return platformdirs.user_cache_path("electrolog", appauthor=False)
+
+
+def _read(path: Path, stamp: str) -> _Kept | None:
+    """None where there is nothing, or nothing that can be read: it is made again then."""
+    try:
+        with np.load(path, allow_pickle=False) as file:
+            told = json.loads(file["told"].tobytes())
+            if told["stamp"] != stamp:
+                return None
+            arrays = {name: file[name] for name in file.files if name != "told"}
+    except (OSError, ValueError, KeyError):
+        return None
+    read = {kept["electrode"]: cards.from_dict(kept) for kept in told["cards"]}
+    return _Kept(stamp, told["keys"], read, arrays)
+
+
+def _write(path: Path, stamp: str, seen: dict[str, str], found: Board) -> None:
+    told = {
+        "stamp": stamp,
+        "keys": {card.electrode: seen[card.electrode] for card in found.cards},
+        "cards": [cards.to_dict(card) for card in found.cards],
+    }
+    text = np.frombuffer(json.dumps(told).encode(), dtype=np.uint8)
+    arrays: dict[str, NDArray[np.uint8] | NDArray[np.float32]] = {"told": text, **found.arrays}
+    packed_file = io.BytesIO()
+    np.savez(packed_file, **arrays)  # type: ignore[arg-type]
+    try:
+        path.parent.mkdir(parents=True, exist_ok=True)
+        waiting = path.with_suffix(f".{os.getpid()}")
+        waiting.write_bytes(packed_file.getvalue())
+        waiting.replace(path)  # at once: another rig may be reading it
+    except OSError:
+        return  # a cache that can't be written costs time, not the answer
