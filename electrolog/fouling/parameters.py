@@ -129,6 +129,7 @@ def prior_draws(what: str, name: str, count: int, spin: int | None) -> Floats:
     if what == "weight" and name == IN_VIVO:
         return np.ones(count)
     golden = 0.6180339887498949
-    level = np.full(count, 0.5) if spin is None else (0.5 + (np.arange(count) + spin) * golden) % 1.0
+    spread = (0.5 + (np.arange(count) + (spin or 0)) * golden) % 1.0
+    level = np.full(count, 0.5) if spin is None else np.asarray(spread, dtype=np.float64)
     at = mean + sd * normal_quantiles(level)
     return np.exp(at) if what == "weight" else 1.0 / (1.0 + np.exp(-at))

@@ -51,13 +51,23 @@ class State:
 
 
 @dataclass(frozen=True)
+class UnitsSeen:
+    """What a sweep found of one batch's units: the whole of Tilted for every unit would fill the memory."""
+
+    log_evidence: Floats  # (B,)
+    by_fate: Floats  # (B, O) probabilities, see fates.py
+    latent_mean: Floats  # (B, q)
+    latent_variance: Floats  # (B, q)
+
+
+@dataclass(frozen=True)
 class Outcome:
     log_evidence: float
     score: Floats  # (P,)
     unit_scores: Floats  # (units, P)
     bad_day: Floats
     day_information: Floats  # (3, 3) outer product of the days' scores in theta[2:5]
-    tilted: list[Tilted]
+    units: list[UnitsSeen]
 
 
 @dataclass(frozen=True)
@@ -95,7 +105,7 @@ def sweep(problem: Problem, scales: Scales, clock: Clock, state: State) -> Outco
     """Judge every factor beside the others at once, then renew all stand-ins."""
     log_evidence = combine(problem, scales, state)
     score = np.zeros(len(problem.layout.priors))
-    all_scores, all_tilted, grids = [], [], []
+    all_scores, all_seen, grids = [], [], []
     for k, (batch, site) in enumerate(zip(problem.batches, state.sites, strict=True)):
         cavity_mean, cavity = cavity_of(batch.columns, site, state)
         setup = set_up(batch, scales, clock, cavity_mean, cavity)
@@ -106,13 +116,20 @@ def sweep(problem: Problem, scales: Scales, clock: Clock, state: State) -> Outco
         state.sites[k] = renewed(found.gradient, found.curvature, cavity_mean, cavity)
         grids.append(grid if state.grids_stay else refit_grid(tilted, grid))
         all_scores.append(found.score)
-        all_tilted.append(tilted)
+        all_seen.append(units_seen(tilted))
     state.grids = grids
     by_days, day_scores, bad = sweep_days(problem.effects, scales, state)
     unit_scores = np.concatenate(all_scores) if all_scores else np.zeros((0, len(score)))
     score += unit_scores.sum(axis=0) + group_scores(problem, scales, state)
     score[2:5] += day_scores.sum(axis=0)
-    return Outcome(log_evidence + by_days, score, unit_scores, bad, day_scores.T @ day_scores, all_tilted)
+    return Outcome(log_evidence + by_days, score, unit_scores, bad, day_scores.T @ day_scores, all_seen)
+
+
+def units_seen(tilted: Tilted) -> UnitsSeen:
+    weight = np.einsum("bgo->bg", tilted.probability)
+    mean = np.einsum("bg,bgi->bi", weight, tilted.nodes)
+    square = np.einsum("bg,bgi->bi", weight, (tilted.nodes - mean[:, None, :]) ** 2)
+    return UnitsSeen(tilted.log_evidence, np.einsum("bgo->bo", tilted.probability), mean, square)
 
 
 def combine(problem: Problem, scales: Scales, state: State) -> float:

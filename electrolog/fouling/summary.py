@@ -158,9 +158,8 @@ def slips(events: Events, fitted: list[Fitted]) -> list[dict[str, Any]]:
 
 def slip_probability(one: Fitted, n_readings: int) -> Floats:
     chance = np.zeros(n_readings)
-    for batch, tilted in zip(one.problem.batches, one.outcome.tilted, strict=True):
-        by_fate = tilted.probability.sum(axis=1)
-        chance[batch.reading[batch.real]] = slip_chances(by_fate, batch.real.shape[1])[batch.real]
+    for batch, seen in zip(one.problem.batches, one.outcome.units, strict=True):
+        chance[batch.reading[batch.real]] = slip_chances(seen.by_fate, batch.real.shape[1])[batch.real]
     return chance
 
 
@@ -168,8 +167,8 @@ def damaged(events: Events, fitted: list[Fitted]) -> list[dict[str, Any]]:
     """Probes that look suddenly damaged rather than fouled, and before which reading (0 the first)."""
     chance: dict[int, Floats] = {}
     for one in fitted:
-        for batch, tilted in zip(one.problem.batches, one.outcome.tilted, strict=True):
-            rows = damage_chances(tilted.probability.sum(axis=1), batch.real.shape[1])
+        for batch, seen in zip(one.problem.batches, one.outcome.units, strict=True):
+            rows = damage_chances(seen.by_fate, batch.real.shape[1])
             for unit, row in zip(batch.unit, rows, strict=True):
                 chance[unit] = chance.get(unit, 0.0) + one.part.weight * row
     return [

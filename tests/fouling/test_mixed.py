@@ -43,7 +43,7 @@ def slope(group: np.ndarray, x: np.ndarray) -> Term:
     return Term(codes(group), np.column_stack([np.ones(len(x)), x]))
 
 
-def model(name: str) -> tuple[np.ndarray, np.ndarray, tuple[Term, ...]]:
+def model(name: str) -> tuple[np.ndarray, np.ndarray, tuple[Term, ...]]:  # noqa: PLR0911
     """y, fixed effects' design and random terms of one reference fit."""
     data = table(name.split("_", maxsplit=1)[0].replace("OrthodontF", "Orthodont"))
     if name.startswith("sleepstudy"):

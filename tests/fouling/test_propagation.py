@@ -182,7 +182,7 @@ class TestBesideBruteForce:
         known = replace(problem.effects, fixed_variance=np.where(problem.effects.is_day, np.inf, 1e-16))
         problem = replace(problem, effects=known)
         _, outcome = settled(problem, theta)
-        found = np.concatenate([tilted.log_evidence for tilted in outcome.tilted])
+        found = np.concatenate([seen.log_evidence for seen in outcome.units])
         wanted = [brute_force(events, unit, problem, theta) for unit in range(4)]
         np.testing.assert_allclose(found, wanted, rtol=0, atol=2e-4 if len(sds) == 1 else 3e-3)
 
@@ -195,7 +195,7 @@ class TestBesideBruteForce:
         problem = problem_of(events, SHAPES["exponential"], flat=False)
         theta = theta_of(problem, level=-0.9, residual=-3.0, day=-2.3, latents=(-0.7,))
         state, outcome = settled(problem, theta)
-        mean, sd, log_evidence = importance_sampled(events, problem, theta, state, outcome, rng)
+        mean, sd, log_evidence = importance_sampled(events, problem, theta, outcome, rng)
         np.testing.assert_allclose(state.mean[[0, 2, 3, 4]], mean, atol=0.01)
         np.testing.assert_allclose(np.sqrt(np.diag(state.covariance))[[0, 2, 3, 4]], sd, rtol=0.05)
         assert outcome.log_evidence == pytest.approx(log_evidence, abs=0.1)
@@ -224,7 +224,7 @@ def brute_force(events: Events, unit: int, problem: Problem, theta: np.ndarray) 
     return float(np.log(np.sum(np.exp(log_likelihood + log_prior)) * cell))
 
 
-def importance_sampled(events, problem, theta, state, outcome, rng, count=100_000):
+def importance_sampled(events, problem, theta, outcome, rng, count=100_000):
     """Posterior mean and sd of level mean and days, and log evidence; proposals near each unit's own posterior."""
     read = events.kind == READING
     unit, day, y = events.unit[read], events.which[read], events.amount[read]
@@ -238,7 +238,7 @@ def importance_sampled(events, problem, theta, state, outcome, rng, count=100_00
     marginal = noise + (design * prior) @ design.T
     gain = np.linalg.solve(marginal, design * prior).T
     leftover = np.diag(prior) - gain @ design * prior
-    centre, spread = posterior_of_rates(problem, outcome, state)
+    centre, spread = posterior_of_rates(problem, outcome)
     t = 5.0
     rates = centre + 1.3 * spread * rng.standard_t(t, (count, 10))
     log_q = np.sum(t_logpdf((rates - centre) / (1.3 * spread), t) - np.log(1.3 * spread), axis=1)
@@ -260,11 +260,9 @@ def t_logpdf(x: np.ndarray, df: float) -> np.ndarray:
     return t(df).logpdf(x)
 
 
-def posterior_of_rates(problem, outcome, state):
+def posterior_of_rates(problem, outcome):
     centre, spread = np.zeros(10), np.zeros(10)
-    for batch, tilted in zip(problem.batches, outcome.tilted, strict=True):
-        weight = tilted.probability.sum(axis=2)
-        assert weight.shape[1] == len(standard_nodes(1).grid)
-        centre[batch.unit] = (weight * tilted.nodes[..., 0]).sum(axis=1)
-        spread[batch.unit] = np.sqrt((weight * (tilted.nodes[..., 0] - centre[batch.unit][:, None]) ** 2).sum(axis=1))
+    for batch, seen in zip(problem.batches, outcome.units, strict=True):
+        centre[batch.unit] = seen.latent_mean[:, 0]
+        spread[batch.unit] = np.sqrt(seen.latent_variance[:, 0])
     return centre, spread

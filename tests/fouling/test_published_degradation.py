@@ -13,7 +13,10 @@ from scipy.stats import binomtest
 from tests.fouling.published import Forecast, halves
 from tests.reference.degradation import alloy_a, drifts
 
-UNSETTLED = pytest.mark.xfail(strict=True, reason="the cohort fit does not settle where a day holds one reading only")
+RUNS_AWAY = pytest.mark.xfail(
+    strict=True,
+    reason="a long crack grows ever faster, as no shape of fouling does: the forecast is too slow",
+)
 TOO_LATE = pytest.mark.xfail(
     strict=True,
     reason="from five specimens read twice the book's time to failure lies in one of five intervals; why is open",
@@ -50,7 +53,7 @@ def cracks():
     [
         resistors,
         pytest.param(voltages, marks=TOO_LATE),
-        pytest.param(cracks, marks=UNSETTLED),
+        pytest.param(cracks, marks=RUNS_AWAY),
     ],
 )
 def test_the_second_half_and_the_time_to_the_threshold_lie_where_the_first_half_said(data):

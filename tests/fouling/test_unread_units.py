@@ -3,11 +3,11 @@
 from dataclasses import replace
 
 import numpy as np
-from tests.fouling.test_lonely_days import UNITS, lonely_lab
 
 from electrolog.fouling.cohort import fit_cohort
 from electrolog.fouling.events import EXPOSURE
 from electrolog.fouling.forecast import posterior
+from tests.fouling.test_lonely_days import UNITS, lonely_lab
 
 
 def test_an_unread_unit_fouls_as_its_cohort_does() -> None:
@@ -43,6 +43,6 @@ def test_a_unit_without_any_event_is_a_fresh_probe() -> None:
         amount=np.zeros(0),
         se=np.zeros(0),
         units=("new",),
-        groups={name: ("",) for name in events.groups},
+        groups=dict.fromkeys(events.groups, ("",)),
     )
     assert np.isfinite(posterior(fit, nothing).log_sensitivity(np.array([[4.0]]))).all()
