@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import hashlib
+from dataclasses import replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -82,12 +83,17 @@ def fit_shapes(events: Events, shapes: tuple[str, ...]) -> list[tuple[Problem, P
     part = take_units(events, neighbours_in_time(events, PART))
     fits = fit_each(part, shapes, rough=True)
     return [
-        fit_all_units(events, *fit) if weight >= LEAST_WEIGHT else fit
-        for fit, weight in zip(fits, weigh(fits), strict=True)
+        fit_all_units(events, problem, peak) if weight >= LEAST_WEIGHT else (problem, peak, out_of_the_running(width))
+        for (problem, peak, width), weight in zip(fits, weigh(fits), strict=True)
     ]
 
 
-def fit_all_units(events: Events, problem: Problem, peak: Peak, width: Width) -> tuple[Problem, Peak, Width]:
+def out_of_the_running(width: Width) -> Width:
+    """A part's evidence is no match for that of all units."""
+    return replace(width, log_evidence=-np.inf)
+
+
+def fit_all_units(events: Events, problem: Problem, peak: Peak) -> tuple[Problem, Peak, Width]:
     """What the part has found is where all begin; with so many units the scores' outer product is the curvature."""
     whole = pose(events, problem.layout.shape.name)
     known = dict(zip((p.name for p in problem.layout.priors), peak.theta, strict=True))
@@ -154,10 +160,7 @@ def keep(problem: Problem, peak: Peak, width: Width, weight: float) -> Component
     # The last sweep has renewed the stand-ins: the shared effects have to be those of the stand-ins that are kept,
     # or a unit taken out again would leave a negative precision behind.
     combine(problem, read_scales(problem.layout, peak.theta), peak.state)
-    most = np.clip(10_000 // max(1, len(problem.events.units)), *DRAWS)
-    count = max(1, round(float(most) * weight))
-    if len(problem.events.units) <= YOUNG:
-        count = 1
+    count = number_of_draws(len(problem.events.units), weight)
     theta = peak.theta + normal_points(count, len(peak.theta)) @ np.linalg.cholesky(width.covariance).T
     mean = peak.state.mean[:-1]
     labels = problem.events.units
@@ -178,6 +181,12 @@ def keep(problem: Problem, peak: Peak, width: Width, weight: float) -> Component
         peak.state.covariance,
         units,
     )
+
+
+def number_of_draws(n_units: int, weight: float) -> int:
+    if n_units <= YOUNG:  # its draws are components, each at its own theta
+        return 1
+    return max(1, round(float(np.clip(10_000 // n_units, *DRAWS)) * weight))
 
 
 def fingerprint(events: Events) -> str:

@@ -34,8 +34,9 @@ def on_readings(events: Events) -> list[str]:
             "no probe has calibrations with exposure between them: nothing is known yet of how fast probes foul"
         )
     elif pairs < FEW_PAIRS:
+        have = "1 probe has" if pairs == 1 else f"{pairs} probes have"
         notes.append(
-            f"only {pairs} probes have calibrations with exposure between them: rates rest mostly on the assumptions"
+            f"only {have} calibrations with exposure between them: rates rest mostly on the starting assumptions"
         )
     if len(np.unique(events.which[read])) == 1:
         notes.append("all calibrations are of one day: that day's error can't be told from the probes' own sensitivity")
