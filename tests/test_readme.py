@@ -26,7 +26,8 @@ def test_every_block_shows_what_its_command_prints(tmp_path: Path) -> None:
 
 def test_the_guide_covers_a_probes_life() -> None:
     text = readme.README.read_text(encoding="utf-8")
-    for command in ("new", "coat", "condition", "standard", "calibrate", "expose", "clean", "check", "history", "retire"):
+    commands = ("new", "coat", "condition", "standard", "calibrate", "expose", "clean", "check", "history", "retire")
+    for command in commands:
         assert f"$ electrolog {command} " in text
 
 

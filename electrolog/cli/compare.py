@@ -11,7 +11,7 @@ from electrolog.cli.session import lab_of
 
 def command(
     ctx: typer.Context,
-    by: Annotated[By, typer.Option("--by", help="What distinguishes the groups.")],
+    by: Annotated[By, typer.Option("--between", help="What distinguishes the groups.")],
     analyte: Annotated[str, typer.Option("--analyte", "-a", help="By which analyte's calibrations.")],
     waveform: Waveform = None,
     after: Annotated[str, typer.Option("--after", help="Hours in vivo of the share left.")] = "10h",
@@ -21,7 +21,7 @@ def command(
 ) -> None:
     """Do kinds of probes differ, how surely, how many more would tell, and where they would tell most.
 
-    electrolog compare --by coating --analyte dopamine
+    electrolog compare --between coating --analyte dopamine
     """
     from electrolog.show import comparison
     from electrolog.units import HOURS, parse_quantity

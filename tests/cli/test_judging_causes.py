@@ -108,7 +108,7 @@ def test_one_calibration_shows_no_change(judged: Terminal) -> None:
 
 
 def test_groups_that_are_alike_are_not_called_different(grouped: Terminal) -> None:
-    found = grouped.ok("compare", "--by", "maker", *ASKED, "--json").json["comparison"]
+    found = grouped.ok("compare", "--between", "maker", *ASKED, "--json").json["comparison"]
     assert {one["group"] for one in found["estimates"]} == {"finch", "wren"}
     assert all(one["p_holm"] is None or one["p_holm"] > 0.01 for one in found["differences"])
     losses = [one for one in found["estimates"] if one["measure"] == "loss per hour in vivo"]
@@ -118,14 +118,14 @@ def test_groups_that_are_alike_are_not_called_different(grouped: Terminal) -> No
 def test_retired_probes_count_and_those_in_use_are_censored(grouped: Terminal) -> None:
     for probe in ("G0-0", "G0-1", "G0-2"):
         grouped.ok("retire", probe, "-r", "fouled", "--at", "now")
-    found = grouped.ok("compare", "--by", "maker", *ASKED, "--json").json["comparison"]
+    found = grouped.ok("compare", "--between", "maker", *ASKED, "--json").json["comparison"]
     lives = {one["group"]: one for one in found["estimates"] if one["measure"] == "survival"}
     assert sum(one["count"] for one in lives.values()) == 34
     assert lives["wren"]["value"] is None  # the others still live: the curve doesn't come down to one half
 
 
 def test_the_share_left_is_no_test_of_its_own(grouped: Terminal) -> None:
-    found = grouped.ok("compare", "--by", "maker", *ASKED, "--after", "5h", "--json").json["comparison"]
+    found = grouped.ok("compare", "--between", "maker", *ASKED, "--after", "5h", "--json").json["comparison"]
     p = {one["measure"]: one["p"] for one in found["differences"]}
     assert p["share left after 5 h"] == p["loss per hour in vivo"]
     tested = len([one for one in found["differences"] if one["p"] is not None])
@@ -133,7 +133,7 @@ def test_the_share_left_is_no_test_of_its_own(grouped: Terminal) -> None:
 
 
 def test_the_next_probes_go_where_they_tell_most(grouped: Terminal) -> None:
-    found = grouped.ok("compare", "--by", "maker", *ASKED, "--more", "4", "--json").json["next"]
+    found = grouped.ok("compare", "--between", "maker", *ASKED, "--more", "4", "--json").json["next"]
     assert sum(found["more"].values()) == 4
     assert found["widest_then"] < found["widest_now"]
 
@@ -141,10 +141,10 @@ def test_the_next_probes_go_where_they_tell_most(grouped: Terminal) -> None:
 @pytest.mark.parametrize(
     ("asked", "said"),
     [
-        (("--by", "coating"), "1 groups by coating (none)"),
-        (("--by", "colour"), "is not one of"),
-        (("--by", "maker", "--after", "0h"), "hours above zero"),
-        (("--by", "maker", "--more", "-1"), "none or more"),
+        (("--between", "coating"), "1 groups by coating (none)"),
+        (("--between", "colour"), "is not one of"),
+        (("--between", "maker", "--after", "0h"), "hours above zero"),
+        (("--between", "maker", "--more", "-1"), "none or more"),
     ],
 )
 def test_what_can_not_be_compared_is_said(judged: Terminal, asked: tuple[str, ...], said: str) -> None:

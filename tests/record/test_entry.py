@@ -79,6 +79,8 @@ def test_an_analytes_names_are_its_own(shared: Lab, values: dict[str, str]) -> N
 def test_an_analyte_may_keep_its_names(lived_in: Lab) -> None:
     lived_in.amend("analyte", "HA", {"abbreviation": "HIS"}, "as the lab says")
     lived_in.amend("analyte", "his", {"note": "keeps"}, "a remark")
+    histamine = next(row for row in lived_in.rows("analytes") if row["analyte"] == "histamine")
+    assert (histamine["abbreviation"], histamine["note"]) == ("HIS", "keeps")
 
 
 def test_a_word_may_stand_in_two_lists(lab: Lab) -> None:
