@@ -16,6 +16,7 @@ from pathlib import Path
 from typing import TYPE_CHECKING
 
 from electrolog.answers.judging import Judging, demands
+from electrolog.answers.looking import Looking
 from electrolog.answers.measuring import Measuring
 from electrolog.record import sheets
 from electrolog.record.columns import Value
@@ -32,6 +33,7 @@ if TYPE_CHECKING:
     from electrolog.answers.forecasting import Forecast
     from electrolog.answers.limiting import LimitSet
     from electrolog.answers.shelf import Filter, Shelved
+    from electrolog.record.exchange_files import Progress
     from electrolog.record.exchange_in import ImportReport
     from electrolog.record.exchange_out import ExportReport
     from electrolog.record.journal import Entry
@@ -41,7 +43,7 @@ if TYPE_CHECKING:
 
 
 @dataclass(frozen=True)
-class Lab(Measuring, Judging):
+class Lab(Measuring, Judging, Looking):
     """A record and the time zone in which times without an offset are read (None: the machine's)."""
 
     # --- at the bench -------------------------------------------------------------------------------------
@@ -223,17 +225,17 @@ class Lab(Measuring, Judging):
             return list(journal.entries(connection, sheet, row_id))
 
     def verify(self) -> Verification:
-        from electrolog.record.verify import verify
+        """The journal replayed against the rows, and the kept figures against the raw points."""
+        from electrolog.answers.trust import verified
 
-        with self.record.reading() as connection:
-            return verify(connection)
+        return verified(self.record)
 
     # --- in and out ---------------------------------------------------------------------------------------
 
-    def import_folder(self, folder: Path) -> ImportReport:
+    def import_folder(self, folder: Path, progress: Progress | None = None) -> ImportReport:
         from electrolog.record.exchange_in import import_folder
 
-        return import_folder(self.record, folder, self.zone)
+        return import_folder(self.record, folder, self.zone, progress)
 
     def export_folder(self, folder: Path) -> ExportReport:
         from electrolog.record.exchange_out import export_folder

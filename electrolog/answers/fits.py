@@ -52,6 +52,15 @@ def gathered(record: Record, asked: Assay) -> Cohort:
     return cohorts.gather(probes, life, made.all_figures(record, found), asked.analyte)
 
 
+def is_kept(record: Record, analyte: str, waveform: str) -> bool:
+    """Whether a fit is kept that `fit_for` would use, so that asking costs nothing."""
+    with record.reading() as connection:
+        asked = assay(connection, analyte, waveform)
+        kept = queries.kept_fit(connection, asked.analyte_id)
+        seen = queries.to_be_seen(connection, asked.analyte_id)
+    return kept is not None and kept.method == METHOD and not _changed(kept.seen, seen)
+
+
 def fit_for(record: Record, asked: Assay, fresh: bool = False) -> CohortFit:
     """The cohort's fit, from the record if what it saw is still nearly all there is."""
     with record.reading() as connection:

@@ -22,7 +22,10 @@ STATES = ("untested", "calibrated", "used", "renewed", "retired")
 
 @dataclass(frozen=True)
 class Shelved:
-    """One probe as it lies on the shelf at the moment asked."""
+    """One probe as it lies on the shelf at the moment asked.
+
+    trend_na_um: every reading that is comparable with the last one, oldest first.
+    """
 
     electrode: str
     state: str
@@ -42,6 +45,7 @@ class Shelved:
     share_left: float | None
     reason: str | None
     exposure_by_setting_h: dict[str, float] = field(default_factory=dict)
+    trend_na_um: tuple[float | None, ...] = ()
 
 
 @dataclass(frozen=True)
@@ -108,7 +112,16 @@ def _shelved(
         share_left=_share_left(past, last, figures),
         reason=state.reason,
         exposure_by_setting_h=state.exposure_h,
+        trend_na_um=_trend(calibrations, figures),
     )
+
+
+def _trend(calibrations: list[Event], figures: Mapping[int, CalibrationFigures]) -> tuple[float | None, ...]:
+    if not calibrations:
+        return ()
+    last = calibrations[-1].row
+    comparable = lives.comparable_calibrations(calibrations, last["analyte"], last["waveform"])
+    return tuple(figures[event.row["id"]].sensitivity_na_um for event in comparable)
 
 
 def _age_days(made_on: date | None, moment: datetime) -> int | None:

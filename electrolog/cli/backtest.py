@@ -5,6 +5,7 @@ from typing import Annotated
 import typer
 
 from electrolog.cli.options import Csv, Json
+from electrolog.cli.recording import FigureFile
 from electrolog.cli.session import lab_of
 
 
@@ -12,6 +13,7 @@ def command(
     ctx: typer.Context,
     analyte: Annotated[str, typer.Option("--analyte", "-a", help="Whose cohort.")],
     cuts: Annotated[int, typer.Option("--cuts", help="How often the cohort is fitted anew on the way.")] = 4,
+    figure: FigureFile = None,
     json: Json = False,
     csv: Csv = False,
 ) -> None:
@@ -22,5 +24,12 @@ def command(
     electrolog backtest --analyte dopamine
     """
     from electrolog.show import backtests
+    from electrolog.show.progress import working
 
-    backtests.answer(lab_of(ctx).backtest(analyte, cuts=cuts), json, csv)
+    with working("forecasting the lab's own past"):
+        found = lab_of(ctx).backtest(analyte, cuts=cuts)
+    if figure is not None:
+        from electrolog.show.backtest_figure import draw
+
+        draw(figure, found)
+    backtests.answer(found, json, csv)

@@ -19,5 +19,8 @@ def command(
     electrolog --db lab.db import demo/lab
     """
     from electrolog.show import exchange
+    from electrolog.show.progress import working
 
-    exchange.answer_import(lab_of(ctx, create=True).import_folder(folder), json)
+    with working("reading the folder") as tell:
+        report = lab_of(ctx, create=True).import_folder(folder, tell)
+    exchange.answer_import(report, json)

@@ -19,3 +19,5 @@ Why = Annotated[str, typer.Option("--why", help="The reason, kept in the journal
 Waveform = Annotated[str | None, typer.Option("--waveform", "-w", help="Waveform applied.")]
 Medium = Annotated[str | None, typer.Option("--medium", help="What it was in.")]
 Analyte = Annotated[str | None, typer.Option("--analyte", "-a", help="Analyte, by name or abbreviation.")]
+ChartOption = Annotated[bool, typer.Option("--chart", help="Draw even where nobody sits at a terminal.")]
+Plain = Annotated[bool, typer.Option("--plain", help="Sentences in place of a drawing, for a screen reader.")]

@@ -4,7 +4,7 @@ from typing import TYPE_CHECKING, Annotated
 
 import typer
 
-from electrolog.cli.options import Analyte, Csv, Json
+from electrolog.cli.options import Analyte, ChartOption, Csv, Json, Plain
 from electrolog.cli.planned import AsOf, Needs, Project, RunLimits, asking, run_of
 from electrolog.cli.session import lab_of
 from electrolog.errors import InputError
@@ -30,6 +30,8 @@ def command(
     project: Project = "",
     limit: RunLimits = None,
     at: AsOf = "now",
+    chart: ChartOption = False,
+    plain: Plain = False,
     json: Json = False,
     csv: Csv = False,
 ) -> None:
@@ -49,8 +51,9 @@ def command(
     )
     if planned is None:
         from electrolog.show import shelf
+        from electrolog.show.terminal import drawing
 
-        shelf.answer(lab.shelf(wanted, moment), json, csv)
+        shelf.answer(lab.shelf(wanted, moment), json, csv, drawing(chart, plain))
         return
     from electrolog.show import ranking
 

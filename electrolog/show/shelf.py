@@ -7,23 +7,41 @@ from collections.abc import Sequence
 from electrolog.answers.shelf import Shelved
 from electrolog.show.machine import plain, print_csv, print_json
 from electrolog.show.tables import day_or_never, print_lines, print_table, with_error
+from electrolog.show.terminal import Drawing, trend
 from electrolog.units import shown_number, shown_percent
 
 _COLUMNS = ("probe", "state", "batch", "coating", "age (d)", "exposed (h)", "uses", "calibrated", "nA/µM", "left")
 _LEAST = ("batch", "age (d)", "uses", "coating", "calibrated", "exposed (h)")
+_TREND = "trend"
 
 
-def answer(probes: Sequence[Shelved], json: bool, csv: bool) -> None:
+def answer(probes: Sequence[Shelved], json: bool, csv: bool, how: Drawing = Drawing.NONE) -> None:
     if json:
         print_json(probes)
     elif csv:
         print_csv([plain(probe) for probe in probes])
     elif not probes:
         print_lines("no probe matches")
+    elif how is Drawing.PLAIN:
+        print_lines(*[_sentence(probe) for probe in probes], f"{len(probes)} probes")
     else:
-        numeric = ("age (d)", "exposed (h)", "uses", "left")
-        print_table(_COLUMNS, [_row(probe) for probe in probes], numeric, _LEAST)
-        print_lines(f"{len(probes)} probes")
+        _print(probes, how)
+
+
+def _print(probes: Sequence[Shelved], how: Drawing) -> None:
+    numeric = ("age (d)", "exposed (h)", "uses", "left")
+    drawn = how is Drawing.CHART
+    rows = [(*_row(probe), trend(probe.trend_na_um)) if drawn else _row(probe) for probe in probes]
+    print_table((*_COLUMNS, _TREND) if drawn else _COLUMNS, rows, numeric, _LEAST)
+    print_lines(f"{len(probes)} probes")
+    if drawn and any(len(probe.trend_na_um) > 1 for probe in probes):
+        print_lines("trend: the last calibrations, oldest first; a full block is the probe's own highest, none is zero")
+
+
+def _sentence(probe: Shelved) -> str:
+    """One line per probe: a table read aloud loses its columns."""
+    cells = zip(_COLUMNS[1:], _row(probe)[1:], strict=True)
+    return f"{probe.electrode}: " + ", ".join(f"{name} {value}" for name, value in cells if value not in (None, ""))
 
 
 def _row(probe: Shelved) -> tuple[object, ...]:

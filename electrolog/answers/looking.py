@@ -1,0 +1,49 @@
+"""The looking part of the one door: what figures, charts and the report are drawn from."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+from datetime import datetime, tzinfo
+from typing import TYPE_CHECKING
+
+from electrolog.record.store import Record
+
+if TYPE_CHECKING:
+    from electrolog.answers.course import Ahead, Course
+    from electrolog.answers.fan import Fan
+    from electrolog.fouling.typical import TypicalLoss
+
+
+@dataclass(frozen=True)
+class Looking:
+    """A record and the time zone in which times without an offset are read (None: the machine's)."""
+
+    record: Record
+    zone: tzinfo | None = None
+
+    def courses(
+        self,
+        labels: Sequence[str],
+        analyte: str | None = None,
+        waveform: str | None = None,
+        *,
+        ahead: Ahead | None = None,
+        moment: datetime | None = None,
+    ) -> list[Course]:
+        """Each named probe's sensitivity: what was read, what is believed, and what is ahead by the kept fit."""
+        from electrolog.answers.course import courses
+
+        return courses(self.record, labels, analyte, waveform, ahead, moment)
+
+    def typical_losses(self, analyte: str) -> list[TypicalLoss]:
+        """What is left of a typical probe of each kind after hours in vivo, by the cohort's fit."""
+        from electrolog.answers.fan import typical_losses
+
+        return typical_losses(self.record, analyte)
+
+    def fan(self, analyte: str) -> Fan:
+        """Every probe's loss, aligned at its reference, with the typical loss of each kind."""
+        from electrolog.answers.fan import fan
+
+        return fan(self.record, analyte)
