@@ -10,13 +10,13 @@ import numpy as np
 from numpy.typing import NDArray
 
 from electrolog.answers import fits
-from electrolog.answers import life as lives
-from electrolog.answers.asked import Asked, Run, ask
-from electrolog.answers.checking import Demands
+from electrolog.answers.asked import Run
+from electrolog.answers.board import Board, board, in_order
+from electrolog.answers.cards import Card
+from electrolog.answers.checking import Demands, limits_in_force
 from electrolog.answers.cohorts import REFERENCE_SETTING
 from electrolog.answers.plan import PlanRow
-from electrolog.answers.ranking import shelf_of
-from electrolog.answers.standing import unanswerable
+from electrolog.answers.ranking import shelf_on
 from electrolog.clock import shown_moment, utc_now
 from electrolog.errors import FaultyRows, InputError, UnknownName
 from electrolog.fouling.parameters import WEIGHT
@@ -25,10 +25,11 @@ from electrolog.judge.limits import contradictions
 from electrolog.judge.planning import success_table
 from electrolog.judge.shelf import Shelf
 from electrolog.judge.words import nothing_asked, unset
+from electrolog.record import queries
 from electrolog.record.names import Names
 from electrolog.record.store import Record
 
-STEPS = 24  # of a success table; the odds between two are close to a line
+STEPS, FAR_STEPS = 16, 6  # of a success table; the odds between two are close to a line
 Kind = tuple[str, str, str, float | None, str]
 
 
@@ -64,22 +65,23 @@ def assigned(
     moment = moment or utc_now()
     _refuse_past(plan, moment)
     plan = _spelled(record, plan)
-    asked, shelves = _asked(record, plan, moment)
-    first = next(iter(asked.values()))
+    boards, shelves = _asked(record, plan, moment)
+    first = next(iter(boards.values()))
     clock = _Clock.of(plan, first)
-    tables = {_name(kind): _table(asked[kind], shelves[kind], plan, clock) for kind in asked}
+    tables = {_name(kind): _table(boards[kind], shelves[kind], plan, clock) for kind in boards}
     week = Week(
         runs=[_planned(row, clock) for row in plan],
         tables=tables,
-        available=np.array([[_there(first, label, row) for label in first.labels] for row in plan], dtype=bool),
+        available=_available(plan, first),
         uses_left=_uses_left(list(shelves.values()), len(plan)),
         least_success=1 - max(_risk(shelf) for shelf in shelves.values()),
         turnaround_min=turnaround_min,
     )
-    places = assign(week) if first.labels else tuple(_nobody(run) for run in week.runs)
+    places = assign(week) if first.cards else tuple(_nobody(run) for run in week.runs)
     served = [place.p_success for place in places if place.p_success is not None]
-    runs = tuple(_placed(row, place, first.labels) for row, place in zip(plan, places, strict=True))
-    notes = tuple(dict.fromkeys(f"{one.assay.analyte}: {note}" for one in asked.values() for note in one.fit.notes))
+    labels = [card.electrode for card in first.cards]
+    runs = tuple(_placed(row, place, labels) for row, place in zip(plan, places, strict=True))
+    notes = tuple(dict.fromkeys(f"{one.assay.analyte}: {note}" for one in boards.values() for note in one.fit.notes))
     return Assignment(runs, float(np.prod(served)) if served else None, (*clock.notes, *notes))
 
 
@@ -117,21 +119,24 @@ def _spelled(record: Record, plan: Sequence[PlanRow]) -> list[PlanRow]:
     return found
 
 
-def _asked(record: Record, plan: Sequence[PlanRow], moment: datetime) -> tuple[dict[Kind, Asked], dict[Kind, Shelf]]:
-    """Runs alike in analyte and waveform are forecast once."""
-    settings = tuple(dict.fromkeys(row.run.setting for row in plan))
-    forecast: dict[tuple[str, str], Asked] = {}
-    asked: dict[Kind, Asked] = {}
+def _asked(record: Record, plan: Sequence[PlanRow], moment: datetime) -> tuple[dict[Kind, Board], dict[Kind, Shelf]]:
+    """Runs alike in analyte and waveform are forecast once; the probes stand in the same order on every board."""
+    forecast: dict[tuple[str, str], Board] = {}
+    boards: dict[Kind, Board] = {}
     shelves: dict[Kind, Shelf] = {}
+    with record.reading() as connection:
+        stored = queries.limits(connection)
     for row in plan:
         kind, assay = _kind(row), (row.run.analyte, row.run.waveform)
         if assay not in forecast:
-            forecast[assay] = ask(record, None, row.run, moment, settings)
-        if kind not in asked:
-            asked[kind] = replace(forecast[assay], setting=row.run.setting)
-            shelves[kind] = shelf_of(record, asked[kind], row.run, Demands(row.needs_um, row.project))
+            forecast[assay] = in_order(board(record, None, row.run, moment))
+        if kind not in boards:
+            boards[kind] = replace(forecast[assay], setting=row.run.setting)
+            demands = Demands(row.needs_um, row.project)
+            limits = limits_in_force(stored, boards[kind], demands)
+            shelves[kind] = shelf_on(boards[kind], row.run, limits, demands)
             _refuse_unset(row, shelves[kind])
-    return asked, shelves
+    return boards, shelves
 
 
 def _refuse_unset(row: PlanRow, shelf: Shelf) -> None:
@@ -160,11 +165,11 @@ class _Clock:
     notes: tuple[str, ...]
 
     @classmethod
-    def of(cls, plan: Sequence[PlanRow], asked: Asked) -> _Clock:
+    def of(cls, plan: Sequence[PlanRow], there: Board) -> _Clock:
         settings = {row.run.setting for row in plan}
         if len(settings) == 1:
-            return cls(asked.setting, {}, ())
-        learned = {row["setting"]: row["median"] for row in asked.fit.summary["settings"]}
+            return cls(there.setting, {}, ())
+        learned = {row["setting"]: row["median"] for row in there.fit.summary["settings"]}
         weights = {name: learned.get(name, float(np.exp(WEIGHT[0]))) for name in settings}
         said = ", ".join(f"{name} {weights[name]:.2g}" for name in sorted(settings))
         return cls(REFERENCE_SETTING, weights, (f"runs in several settings: an hour counts as in-vivo hours: {said}",))
@@ -177,33 +182,26 @@ def _planned(row: PlanRow, clock: _Clock) -> PlannedRun:
     return PlannedRun(row.label, row.start, row.run.run_min, _name(_kind(row)), clock.wear_min(row))
 
 
-def _table(asked: Asked, shelf: Shelf, plan: Sequence[PlanRow], clock: _Clock) -> SuccessTable:
+def _table(there: Board, shelf: Shelf, plan: Sequence[PlanRow], clock: _Clock) -> SuccessTable:
     """Up to the wear of the whole plan: no probe can be worn by more."""
     whole = sum(clock.wear_min(row) for row in plan)
     longest = max(clock.wear_min(row) for row in plan)
     # Finer where most runs end: no probe serves more than a few of them.
     near = np.linspace(0, min(whole, 4 * longest), STEPS)
-    grid = near if whole <= near[-1] else np.append(near, np.geomspace(near[-1], whole, 8)[1:])
-    place = asked.cohort.events.settings.index(clock.setting)
-
-    def log_sensitivity_at(minutes: float) -> NDArray[np.float64]:
-        hours = np.zeros((len(asked.labels), len(asked.cohort.events.settings)))
-        hours[:, place] = minutes / 60
-        return asked.posterior.log_sensitivity(hours)
-
-    return success_table(replace(shelf, log_sensitivity_at=log_sensitivity_at), grid)
+    grid = near if whole <= near[-1] else np.append(near, np.geomspace(near[-1], whole, FAR_STEPS + 1)[1:])
+    return success_table(replace(shelf, log_sensitivity_at=there.log_sensitivity_in(clock.setting)), grid)
 
 
-def _there(asked: Asked, label: str, row: PlanRow) -> bool:
-    """Made by then, and out of any run that is under way or already logged for that time."""
-    made_on = asked.probes[label]["made_on"]
-    if made_on is not None and made_on > row.start.date():
-        return False
-    reason = unanswerable(asked, label)
-    if reason is not None and reason.rule == "clocks":
-        return False
-    busy_until = lives.in_use_until(asked.life[label], asked.moment)
-    return busy_until is None or busy_until <= row.start
+def _available(plan: Sequence[PlanRow], there: Board) -> NDArray[np.bool_]:
+    """(R, P) made by then, and out of any run that is under way; not where the order of things is open."""
+    found = np.array([[_there(card, row) for card in there.cards] for row in plan], dtype=bool)
+    return found.reshape(len(plan), len(there.cards))
+
+
+def _there(card: Card, row: PlanRow) -> bool:
+    made = card.made_on is None or card.made_on <= row.start.date()
+    free = card.in_use_until is None or card.in_use_until <= row.start
+    return made and free and (card.aside is None or card.aside.rule != "clocks")
 
 
 def _uses_left(shelves: Sequence[Shelf], runs: int) -> NDArray[np.int64]:

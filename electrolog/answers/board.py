@@ -10,8 +10,9 @@ import hashlib
 import io
 import json
 import os
-from collections.abc import Sequence
-from dataclasses import dataclass
+import zipfile
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass, replace
 from datetime import datetime
 from pathlib import Path
 
@@ -23,7 +24,6 @@ from electrolog.answers.asked import Asked, Floats, Run, ask
 from electrolog.answers.cards import Card, card_of
 from electrolog.answers.cohorts import REFERENCE_SETTING
 from electrolog.answers.fits import Assay
-from electrolog.fouling.draws import Posterior
 from electrolog.fouling.fit import CohortFit
 from electrolog.fouling.kept_draws import Arrays, packed, thinned, unpacked
 from electrolog.record import queries, sheets
@@ -50,13 +50,17 @@ class Board:
     def log_references(self) -> Floats:
         return np.asarray(self.arrays[REFERENCE])
 
-    def log_sensitivity_at(self, drawn: Posterior, run_min: float) -> Floats:
-        hours = np.zeros((len(self.cards), len(_settings(self.setting))))
-        hours[:, _settings(self.setting).index(self.setting)] = run_min / 60
-        return drawn.log_sensitivity(hours)
+    def log_sensitivity_in(self, setting: str) -> Callable[[float], Floats]:
+        """Minutes of run in that setting -> (U, D)."""
+        settings = tuple(dict.fromkeys((REFERENCE_SETTING, setting)))
+        drawn = unpacked(self.fit, self.arrays, settings)
 
-    def drawn(self) -> Posterior:
-        return unpacked(self.fit, self.arrays, _settings(self.setting))
+        def log_sensitivity_at(run_min: float) -> Floats:
+            hours = np.zeros((len(self.cards), len(settings)))
+            hours[:, settings.index(setting)] = run_min / 60
+            return drawn.log_sensitivity(hours)
+
+        return log_sensitivity_at
 
 
 @dataclass(frozen=True)
@@ -83,19 +87,22 @@ def board(record: Record, labels: Sequence[str] | None, run: Run, moment: dateti
     path = _path(record, assay)
     stamp = f"{VERSION} {fit.method} {fit.fingerprint} {correction}"
     kept = _read(path, stamp)
-    good = [label for label in wanted if _holds(kept, label, seen[label], moment)]
-    missing = [label for label in wanted if label not in set(good)]
+    good = {label: None for label in wanted if _holds(kept, label, seen[label], moment)}
+    missing = [label for label in wanted if label not in good]
     made_cards, made = _fresh(record, missing, run, moment, FEWER_DRAWS) if missing else ((), {})
     known = [kept.cards[label] for label in good] if kept else []
-    arrays = _together(kept, good, made)
+    arrays = _together(kept, list(good), made)
     found = Board(assay, setting, fit, (*known, *made_cards), arrays, moment)
     if len(missing) > len(good) / 20:
         _write(path, stamp, seen, found)
     return found
 
 
-def _settings(setting: str) -> tuple[str, ...]:
-    return tuple(dict.fromkeys((REFERENCE_SETTING, setting)))
+def in_order(found: Board) -> Board:
+    """The same probes by label, whichever of them were kept."""
+    order = sorted(range(len(found.cards)), key=lambda place: found.cards[place].electrode)
+    arrays = {name: values[order] for name, values in found.arrays.items()}
+    return replace(found, cards=tuple(found.cards[place] for place in order), arrays=arrays)
 
 
 def _fresh(
@@ -111,8 +118,8 @@ def _fresh(
 def _holds(kept: _Kept | None, label: str, seen: str, moment: datetime) -> bool:
     if kept is None or kept.keys.get(label) != seen:
         return False
-    card = kept.cards[label]
-    return card.lasts and (card.last_event_at is None or card.last_event_at <= moment)
+    last_event_at = kept.cards[label].last_event_at
+    return last_event_at is None or last_event_at <= moment
 
 
 def _together(kept: _Kept | None, good: Sequence[str], made: Arrays) -> Arrays:
@@ -149,20 +156,23 @@ def _read(path: Path, stamp: str) -> _Kept | None:
             if told["stamp"] != stamp:
                 return None
             arrays = {name: file[name] for name in file.files if name != "told"}
-    except (OSError, ValueError, KeyError):
+            read = {kept["electrode"]: cards.from_dict(kept) for kept in told["cards"]}
+            return _Kept(stamp, told["keys"], read, arrays)
+    except (OSError, ValueError, KeyError, TypeError, zipfile.BadZipFile):
         return None
-    read = {kept["electrode"]: cards.from_dict(kept) for kept in told["cards"]}
-    return _Kept(stamp, told["keys"], read, arrays)
 
 
 def _write(path: Path, stamp: str, seen: dict[str, str], found: Board) -> None:
+    lasting = [place for place, card in enumerate(found.cards) if card.lasts]
+    kept = [found.cards[place] for place in lasting]
     told = {
         "stamp": stamp,
-        "keys": {card.electrode: seen[card.electrode] for card in found.cards},
-        "cards": [cards.to_dict(card) for card in found.cards],
+        "keys": {card.electrode: seen[card.electrode] for card in kept},
+        "cards": [cards.to_dict(card) for card in kept],
     }
     text = np.frombuffer(json.dumps(told).encode(), dtype=np.uint8)
-    arrays: dict[str, NDArray[np.uint8] | NDArray[np.float32]] = {"told": text, **found.arrays}
+    arrays: dict[str, NDArray[np.uint8] | NDArray[np.float32]] = {"told": text}
+    arrays |= {name: values[lasting] for name, values in found.arrays.items()}
     packed_file = io.BytesIO()
     np.savez(packed_file, **arrays)  # type: ignore[arg-type]
     try:

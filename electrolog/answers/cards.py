@@ -27,6 +27,8 @@ class Card:
     out_of_use: str
     calibration: CalibrationFacts | None
     aside: Reason | None
+    made_on: date | None
+    in_use_until: datetime | None
     asked_at: datetime
     last_event_at: datetime | None
     lasts: bool
@@ -43,7 +45,7 @@ class Card:
 def card_of(asked: Asked, label: str, standards: Mapping[str, Row]) -> Card:
     life = asked.life[label]
     aside = unanswerable(asked, label)
-    in_use = lives.in_use_until(life, asked.moment) is not None
+    in_use_until = lives.in_use_until(life, asked.moment)
     return Card(
         label,
         asked.probes[label]["batch"],
@@ -52,32 +54,31 @@ def card_of(asked: Asked, label: str, standards: Mapping[str, Row]) -> Card:
         out_of_use(label, life, asked.moment),
         calibration_facts(asked, label, standards),
         aside,
+        asked.probes[label]["made_on"],
+        in_use_until,
         asked.moment,
         life[-1].at if life else None,
-        lasts=aside is None and not in_use and not asked.ahead[label] and not _made_later(asked, label),
+        lasts=aside is None and in_use_until is None and not asked.ahead[label],
     )
 
 
-def _made_later(asked: Asked, label: str) -> bool:
-    made_on: date | None = asked.probes[label]["made_on"]
-    return made_on is not None and made_on > asked.moment.date()
-
-
 def to_dict(card: Card) -> dict[str, Any]:
-    moments = {"asked_at": card.asked_at.isoformat(), "last_event_at": None}
-    if card.last_event_at is not None:
-        moments["last_event_at"] = card.last_event_at.isoformat()
-    return asdict(card) | moments
+    """Of a card that lasts: nothing is under way, and nothing stands in the way of an answer."""
+    told = asdict(card) | {name: _iso(getattr(card, name)) for name in ("made_on", "asked_at", "last_event_at")}
+    return {name: value for name, value in told.items() if name not in ("in_use_until", "aside", "lasts")}
 
 
 def from_dict(kept: Mapping[str, Any]) -> Card:
-    facts, last = kept["calibration"], kept["last_event_at"]
+    facts, made_on, last = kept["calibration"], kept["made_on"], kept["last_event_at"]
     values = {
         **kept,
-        "calibration": None
-        if facts is None
-        else CalibrationFacts(**{**facts, "events_since": tuple(facts["events_since"])}),
+        "calibration": facts and CalibrationFacts(**{**facts, "events_since": tuple(facts["events_since"])}),
+        "made_on": None if made_on is None else date.fromisoformat(made_on),
         "asked_at": datetime.fromisoformat(kept["asked_at"]),
         "last_event_at": None if last is None else datetime.fromisoformat(last),
     }
-    return Card(**values)
+    return Card(**values, in_use_until=None, aside=None, lasts=True)
+
+
+def _iso(when: date | None) -> str | None:
+    return None if when is None else when.isoformat()

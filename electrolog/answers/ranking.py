@@ -7,12 +7,10 @@ from dataclasses import dataclass
 from datetime import datetime
 
 from electrolog.answers import fits
-from electrolog.answers import life as lives
-from electrolog.answers.asked import Asked, Floats, Run
+from electrolog.answers.asked import Run
 from electrolog.answers.board import Board, board
 from electrolog.answers.cards import Card
-from electrolog.answers.checking import Demands, calibration_facts, limits_in_force, rules_of_the_lab
-from electrolog.answers.standing import out_of_use
+from electrolog.answers.checking import Demands, limits_in_force
 from electrolog.clock import utc_now
 from electrolog.judge.decision import UNDETERMINED
 from electrolog.judge.facts import Reason
@@ -53,18 +51,18 @@ def ranking(
     there = board(record, labels, run, moment or utc_now())
     with record.reading() as connection:
         limits = limits_in_force(queries.limits(connection), there, demands)
-    standings = judge_shelf(_shelf(there, run, limits, demands)) if there.cards else []
+    standings = judge_shelf(shelf_on(there, run, limits, demands)) if there.cards else []
     known = ((there.cards[standing.probe], standing) for standing in standings)
     ranked = [_ranked(card, standing) for card, standing in known if card.aside is None]
     aside = [_unanswered(card, card.aside) for card in there.cards if card.aside is not None]
     return Ranking((*ranked, *aside), there.fit.notes, there.log_references.shape[1])
 
 
-def _shelf(there: Board, run: Run, limits: Limits, demands: Demands) -> Shelf:
-    drawn = there.drawn()
+def shelf_on(there: Board, run: Run, limits: Limits, demands: Demands) -> Shelf:
+    """All probes of the board as one question to the judge."""
     return Shelf(
         run_min=run.run_min,
-        log_sensitivity_at=lambda run_min: there.log_sensitivity_at(drawn, run_min),
+        log_sensitivity_at=there.log_sensitivity_in(there.setting),
         limits=limits,
         calibrations=[card.at(there.moment) for card in there.cards],
         reference_log_sensitivity=there.log_references,
@@ -73,27 +71,6 @@ def _shelf(there: Board, run: Run, limits: Limits, demands: Demands) -> Shelf:
         reading_sd_log=fits.reading_sd_log(there.fit),
         needs_um=demands.needs_um,
         assay=there.assay.said,
-    )
-
-
-def shelf_of(record: Record, asked: Asked, run: Run, demands: Demands) -> Shelf:
-    """All probes asked about as one question to the judge."""
-    limits, standards = rules_of_the_lab(record, asked, demands)
-
-    def log_sensitivity_at(run_min: float) -> Floats:
-        return asked.posterior.log_sensitivity(asked.extra_hours(run_min))
-
-    return Shelf(
-        run_min=run.run_min,
-        log_sensitivity_at=log_sensitivity_at,
-        limits=limits,
-        calibrations=[calibration_facts(asked, label, standards) for label in asked.labels],
-        reference_log_sensitivity=asked.log_references(),
-        uses=[lives.state(asked.life[label], asked.moment).uses for label in asked.labels],
-        out_of_use=[out_of_use(label, asked.life[label], asked.moment) for label in asked.labels],
-        reading_sd_log=fits.reading_sd_log(asked.fit),
-        needs_um=demands.needs_um,
-        assay=asked.assay.said,
     )
 
 

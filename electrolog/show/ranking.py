@@ -12,20 +12,25 @@ from electrolog.show.machine import plain, print_csv, print_json
 from electrolog.show.tables import print_lines, print_table
 from electrolog.units import shown_concentration, shown_duration, shown_number, shown_percent
 
+MOST_SHOWN = 100  # nobody reads on; the best stand first
 _COLUMNS = ("probe", "verdict", "odds", "left at end", "detects", "nA/µM", "batch", "coating", "because")
 _LEAST = ("batch", "coating", "nA/µM", "detects", "left at end")
 
 
 def answer(found: Ranking, run: Run, json: bool, csv: bool) -> None:
     if json:
-        print_json(found)
+        probes = [_as_dict(one) for one in found.probes]
+        print_json({"probes": probes, "notes": found.notes, "draws": found.draws})
     elif csv:
         print_csv([plain(_as_dict(one)) for one in found.probes])
     elif not found.probes:
         print_lines("no usable probe on the shelf")
     else:
         print_lines(f"{shown_duration(run.run_min)} {run.setting}, {run.analyte}, {run.waveform}: best first")
-        print_table(_COLUMNS, [_row(one) for one in found.probes], ("odds", "left at end"), _LEAST, "because")
+        shown = found.probes[:MOST_SHOWN]
+        print_table(_COLUMNS, [_row(one) for one in shown], ("odds", "left at end"), _LEAST, "because")
+        rest = len(found.probes) - len(shown)
+        print_lines(*([f"and {rest} more; --json or --csv shows all"] if rest else []))
         print_lines(_counted(found), *[f"! {note}" for note in found.notes], CAUTION)
 
 
