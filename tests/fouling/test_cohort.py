@@ -261,5 +261,6 @@ def test_many_days_solved_thinly_agree_with_the_full_matrix(monkeypatch):
     full, thin = drawn
     apart = np.abs(thin.mean(axis=1) - full.mean(axis=1))
     assert np.quantile(apart, 0.98) < 0.002
-    assert apart.max() < 0.05  # a unit that hangs between a slip and none
+    # One unit hangs between a slip and very fast fouling, two nats of loss apart: there a hair tips the odds.
+    assert (apart / full.std(axis=1)).max() < 0.5
     assert np.median(thin.std(axis=1) / full.std(axis=1)) == pytest.approx(1.0, abs=0.1)
