@@ -97,6 +97,12 @@ def compared(
     return Compared(by, lab.analyte, lab.waveform, after_h, comparison, _next(groups, more), _notes(lab, by))
 
 
+def groups_of(record: Record, by: By, analyte: str, waveform: str | None = None) -> Groups:
+    """What is known of each group, probe by probe. Raises UnknownName, DataError where nothing was calibrated."""
+    lab = _lab(record, by, analyte, waveform)
+    return _cleanings(lab) if by is By.CLEANING else _kinds(lab, by)
+
+
 def _lab(record: Record, by: By, analyte: str, waveform: str | None) -> _Lab:
     now = utc_now()
     with record.reading() as connection:

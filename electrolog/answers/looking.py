@@ -12,7 +12,9 @@ from electrolog.record.store import Record
 if TYPE_CHECKING:
     from electrolog.answers.course import Ahead, Course
     from electrolog.answers.fan import Fan
+    from electrolog.answers.kinds import By
     from electrolog.fouling.typical import TypicalLoss
+    from electrolog.judge.compare import Groups
 
 
 @dataclass(frozen=True)
@@ -47,3 +49,9 @@ class Looking:
         from electrolog.answers.fan import fan
 
         return fan(self.record, analyte)
+
+    def groups(self, by: By, analyte: str, waveform: str | None = None) -> Groups:
+        """Level, loss, yield and life of every probe, by what distinguishes them."""
+        from electrolog.answers.comparing import groups_of
+
+        return groups_of(self.record, by, analyte, waveform)

@@ -86,7 +86,7 @@ def command(
 
     found = lab.readings_of([str(one.values["calibration"]) for one in entered])
     if figure is not None:
-        from electrolog.show.signal_figures import draw_calibrations
+        from electrolog.show.line_figure import draw_calibrations
 
         draw_calibrations(figure, found)
     calibrations.answer(found, json)

@@ -33,7 +33,7 @@ def command(
     lab = lab_of(ctx)
     found = lab.readings(lab.labels(labels), analyte=analyte, waveform=waveform, expected_um=_expected(expecting))
     if figure is not None:
-        from electrolog.show.signal_figures import draw_calibrations
+        from electrolog.show.line_figure import draw_calibrations
 
         draw_calibrations(figure, found)
     routes = {one.calibration: lab.detection(one) for one in found} if detection else {}

@@ -6,6 +6,7 @@ import typer
 
 from electrolog.answers.kinds import By
 from electrolog.cli.options import Csv, Json, Waveform
+from electrolog.cli.recording import FigureFile
 from electrolog.cli.session import lab_of
 
 
@@ -16,6 +17,7 @@ def command(
     waveform: Waveform = None,
     after: Annotated[str, typer.Option("--after", help="Hours in vivo of the share left.")] = "10h",
     more: Annotated[int, typer.Option("--more", help="How many more probes to deal out over the groups.")] = 6,
+    figure: FigureFile = None,
     json: Json = False,
     csv: Csv = False,
 ) -> None:
@@ -27,4 +29,10 @@ def command(
     from electrolog.units import HOURS, parse_quantity
 
     after_h = parse_quantity(after, HOURS, "after")
-    comparison.answer(lab_of(ctx).compare(by, analyte, waveform, after_h=after_h, more=more), json, csv)
+    lab = lab_of(ctx)
+    found = lab.compare(by, analyte, waveform, after_h=after_h, more=more)
+    if figure is not None:
+        from electrolog.show.groups_figure import draw
+
+        draw(figure, found, lab.groups(by, analyte, waveform))
+    comparison.answer(found, json, csv)

@@ -49,7 +49,8 @@ def draw_fan(axes: Axes, loss: TypicalLoss, trails: Sequence[Trail], weights: Ma
     axes.set_ylim(0.0, max([1.25, *[one for trail in trails for one in trail.share if one < 2.0]]) * 1.03)
     axes.legend(loc="best", fontsize=7)
     kind = "bare" if loss.coating == "none" else loss.coating
-    return labelled(axes, f"{kind}, {loss.waveform}: {len(trails)} probes", "exposure (h, worth as in vivo)", "share left")
+    title = f"{kind}, {loss.waveform}: {len(trails)} probes"
+    return labelled(axes, title, "exposure (h, worth as in vivo)", "share left")
 
 
 def _in_one_line(trails: Sequence[Trail]) -> tuple[list[float], list[float]]:

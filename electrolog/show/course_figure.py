@@ -52,8 +52,9 @@ def draw_course(axes: Axes, course: Course) -> Axes:
     _marks(axes, course.marks)
     axes.legend(loc="upper left", bbox_to_anchor=(1.01, 1.0), borderaxespad=0.0)
     if course.why_not_ahead:
-        said = f"no forecast: {course.why_not_ahead}".replace("$", r"\$")
-        axes.annotate(said, (0.01, 0.09), xycoords="axes fraction", fontsize=7, color=QUIET)
+        axes.annotate(
+            f"no forecast: {course.why_not_ahead}", (0.01, 0.09), xycoords="axes fraction", fontsize=7, color=QUIET
+        )
     return labelled(axes, title(course), "exposure (h)", "sensitivity (nA/µM)")
 
 

@@ -50,6 +50,7 @@ _LOOK: dict[str, Any] = {
     "svg.hashsalt": "electrolog",  # the same picture gives the same file
     "svg.fonttype": "none",
     "pdf.fonttype": 42,
+    "text.parse_math": False,  # a dollar sign in a name begins no formula
     "agg.path.chunksize": 10_000,
 }
 

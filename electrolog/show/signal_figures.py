@@ -1,4 +1,4 @@
-"""Pictures of what was found in a recording, and of the line through its points."""
+"""Pictures of what was found in a recording."""
 
 from __future__ import annotations
 
@@ -6,15 +6,14 @@ from collections.abc import Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING
 
-from electrolog.answers.history import Reading
 from electrolog.answers.signals import Recorded
-from electrolog.errors import InputError
 from electrolog.measure.calibrate import CalibrationFigures
 from electrolog.measure.recording import Span
 from electrolog.measure.scan_sheet import ScanSheet
 from electrolog.measure.scans import ScanReading, response_map
 from electrolog.measure.trace import TraceReading
 from electrolog.show.figures import BLUE, BROWN, INK, LINES, MARKS, QUIET, figure, labelled, two_sided
+from electrolog.show.line_figure import draw_line
 from electrolog.units import shown_concentration, shown_number
 
 if TYPE_CHECKING:
@@ -24,8 +23,6 @@ if TYPE_CHECKING:
 
     Array = NDArray[np.float64]
 
-Points = Sequence[tuple[float, float]]
-MOST_LINES = 30
 _MOST_DRAWN = 20_000
 
 
@@ -44,27 +41,6 @@ def draw(path: Path, recorded: Recorded, figures: CalibrationFigures) -> None:
             draw_voltammograms(top_right, recorded.reading, recorded.concentration_um)
             draw_scan_trace(low_left, recorded.reading, recorded.concentration_um)
             draw_line(low_right, recorded.points, figures)
-
-
-def draw_calibrations(path: Path, readings: Sequence[Reading]) -> None:
-    """The lines of logged calibrations beside each other."""
-    drawn = [one for one in readings if one.points]
-    if not drawn:
-        raise InputError("figure: no points were kept, so that there is no line to draw")
-    if len(drawn) > MOST_LINES:
-        raise InputError(
-            f"figure: {len(drawn)} calibrations are too many for one picture; accepted: up to {MOST_LINES}",
-            "name fewer probes, or choose with --analyte and --waveform",
-        )
-    columns = min(3, len(drawn))
-    rows = -(-len(drawn) // columns)
-    with figure(path, 3.6 * columns + 0.6, 3.4 * rows) as paper:
-        places = paper.subplots(rows, columns, squeeze=False).ravel().tolist()
-        for axes, one in zip(places, drawn, strict=False):
-            draw_line(axes, one.points, one.figures)
-            axes.set_title(f"{one.calibration}  {one.electrode}")
-        for axes in places[len(drawn) :]:
-            axes.set_visible(False)
 
 
 def draw_trace(axes: Axes, reading: TraceReading, concentration_um: Sequence[float] = ()) -> Axes:
@@ -131,23 +107,6 @@ def draw_sheet(axes: Axes, reading: ScanReading, sheet: ScanSheet) -> Axes:
     bar = axes.figure.colorbar(drawn, ax=axes, pad=0.02)
     bar.set_label("nA")
     return labelled(axes, "Change since the first background", "time (s)", "potential along the scan (V)")
-
-
-def draw_line(axes: Axes, points: Points, figures: CalibrationFigures) -> Axes:
-    """The points and what was made of them; a suspect point is ringed."""
-    concentrations, currents = zip(*points, strict=True)
-    axes.plot(concentrations, currents, MARKS[0], color=INK, label=f"{len(points)} points")
-    if figures.suspect_point is not None:
-        at = figures.suspect_point
-        axes.plot(concentrations[at], currents[at], "o", ms=12, mfc="none", color=BROWN, label="suspect, kept")
-    if figures.sensitivity_na_um is not None:
-        slope, offset = figures.sensitivity_na_um, figures.intercept_na or 0.0
-        top = max(concentrations)
-        style = "--" if figures.shape == "saturating" else "-"
-        label = f"{shown_number(slope)} nA/µM"
-        axes.plot([0, top], [offset, offset + slope * top], color=BLUE, linestyle=style, label=label, zorder=1)
-    axes.legend(loc="best")
-    return labelled(axes, "Calibration", "concentration (µM)", "current (nA)")
 
 
 def _signal(axes: Axes, clock: Array, signal: Array) -> None:

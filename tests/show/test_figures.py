@@ -16,7 +16,7 @@ from electrolog.measure import control as charts
 from electrolog.measure.calibrate import calibrate
 from electrolog.measure.scans import read_scans
 from electrolog.measure.trace import TraceSettings, read_trace
-from electrolog.show import control_figure, figures, signal_figures
+from electrolog.show import control_figure, figures, line_figure, signal_figures
 from tests.measure import recordings
 
 # sRGB to CIE XYZ (D65) and on to CIELAB: IEC 61966-2-1 and CIE 15, as usually printed.
@@ -109,7 +109,7 @@ def test_scans_are_drawn() -> None:
 def test_a_suspect_point_is_ringed() -> None:
     x = [0.0, 1, 2, 3, 4, 5, 6]
     y = [0.1, 9.8, 20.1, 60, 39.9, 50.2, 60]
-    axes = drawn(signal_figures.draw_line, list(zip(x, y, strict=True)), calibrate(x, y))
+    axes = drawn(line_figure.draw_line, list(zip(x, y, strict=True)), calibrate(x, y))
     assert any("suspect" in str(line.get_label()) for line in axes.lines)
 
 
