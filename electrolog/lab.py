@@ -15,6 +15,7 @@ from datetime import datetime, tzinfo
 from pathlib import Path
 from typing import TYPE_CHECKING
 
+from electrolog.answers.bringing import Bringing
 from electrolog.answers.judging import Judging, demands
 from electrolog.answers.looking import Looking
 from electrolog.answers.measuring import Measuring
@@ -43,7 +44,7 @@ if TYPE_CHECKING:
 
 
 @dataclass(frozen=True)
-class Lab(Measuring, Judging, Looking):
+class Lab(Bringing, Measuring, Judging, Looking):
     """A record and the time zone in which times without an offset are read (None: the machine's)."""
 
     # --- at the bench -------------------------------------------------------------------------------------

@@ -50,6 +50,7 @@ COMMANDS: dict[str, dict[str, str]] = {
     "The record": {
         "setup": "Make a record, or bring an older one up to date.",
         "add": "Add a word, an analyte or a waveform.",
+        "adopt": "Take in a spreadsheet as the lab kept it: dry run first.",
         "import": "Read an exchange folder.",
         "export": "Write an exchange folder.",
     },

@@ -16,7 +16,7 @@ from electrolog.cli.main import main
 
 # These need a recording or a cohort, which their own tests make.
 WITH_THEIR_OWN_TESTS = {"trace", "scans", "backtest", "fit", "forecast", "check", "control", "convert", "assign"}
-ON_AN_EMPTY_RECORD = {"new", "setup", "import"}
+ON_AN_EMPTY_RECORD = {"adopt", "new", "setup", "import"}
 STATUSES = {"check": {0, 10, 20, 30}}
 
 
@@ -51,6 +51,8 @@ def test_a_commands_example_works_as_it_stands(name: str, request: pytest.Fixtur
 def prepare(name: str, cli: Any, folder: Path) -> None:
     if name == "standard":  # the filled record has the example's own already
         cli.ok("amend", "standard", "S-48-DA", "standard=S-47-DA", "--why", "room for the example")
+    elif name == "adopt":
+        (folder / "factors.csv").write_text("probe,date,stage,nA/uM\nK1,2024-03-04,pre,12\n", encoding="utf-8")
     elif name == "import":
         (folder / "demo" / "lab").mkdir(parents=True)
         (folder / "demo" / "lab" / "batches.csv").write_text("batch\nB1\n", encoding="utf-8")

@@ -1,0 +1,40 @@
+"""The on-ramp part of the one door: a lab's own spreadsheets."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+from datetime import tzinfo
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+from electrolog.record.store import Record
+
+if TYPE_CHECKING:
+    from electrolog.record.books.adoption import Adoption
+
+
+@dataclass(frozen=True)
+class Bringing:
+    """A record and the time zone in which times without an offset are read (None: the machine's)."""
+
+    record: Record
+    zone: tzinfo | None = None
+
+    def adopt(
+        self,
+        book: Path,
+        *,
+        mapping_file: Path | None = None,
+        answers: Mapping[str, str] | None = None,
+        commit: bool = False,
+    ) -> Adoption:
+        """What a spreadsheet holds for the record; written only on `commit`, all of it or nothing.
+
+        The mapping is read from `mapping_file` (None: beside the book), and saved there with the answers.
+        """
+        from electrolog.record.books.adoption import adopt
+
+        return adopt(
+            self.record, book, mapping_file=mapping_file, answers=answers, commit=commit, zone=self.zone
+        )  # fmt: skip

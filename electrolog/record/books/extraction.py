@@ -1,0 +1,196 @@
+"""A book and its mapping give drafts of the record's rows: what a cell can't tell is asked, never guessed."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from datetime import datetime, timedelta, tzinfo
+
+from electrolog.clock import parse_iso, utc_now
+from electrolog.errors import InputError, shortened
+from electrolog.record.books.days import When, clock_time, date_order, when
+from electrolog.record.books.drafts import Draft, Extract
+from electrolog.record.books.grid import Book, Content, shown
+from electrolog.record.books.labels import Labels
+from electrolog.record.books.layout import Table, tables
+from electrolog.record.books.mapping import BookMapping
+from electrolog.record.books.measured import Measured
+from electrolog.record.books.numbers import decimal_mark
+from electrolog.record.books.said import Said
+from electrolog.record.books.views import Found, View, views
+from electrolog.record.books.vocabulary import Vocabulary
+from electrolog.record.columns import Value
+from electrolog.units import MINUTES
+
+_GAP = timedelta(minutes=30)  # between a run and a calibration whose time of day nobody wrote down
+
+
+class Extraction:
+    """One pass over a book. Each entry gives an electrode, its calibrations, and an exposure where a run is told."""
+
+    def __init__(self, book: Book, mapping: BookMapping, vocabulary: Vocabulary, zone: tzinfo | None) -> None:
+        self.book, self.mapping, self.zone = book, mapping, zone
+        self.out = Extract()
+        grids = [grid for grid in book.grids if grid.name not in mapping.skip]
+        self.tables = [table for grid in grids for table in tables(grid, mapping.understand)]
+        many = len({table.grid.name for table in self.tables}) > 1
+        self.said = Said(mapping, vocabulary, self.out, many)
+        self.labels = Labels(self.tables, mapping, vocabulary, self.out)
+        self.measured = Measured(mapping, self.out, self._decimal_comma())
+        self.order = self._date_order()
+
+    def run(self) -> Extract:
+        for table in self.tables:
+            for heading in table.headings:
+                self.out.headings.setdefault(
+                    " ".join(heading.text.split()), table.grid.place(table.header, heading.column)
+                )
+            for fact in table.facts:
+                self.out.headings.setdefault(" ".join(fact.heading.split()), table.grid.place(*fact.spot))
+            for view in views(table, self.mapping, self.out):
+                self._take(view)
+        if not self.tables:
+            raise InputError(
+                f"{self.book.name}: no table of calibrations or runs was found; accepted: headings such as"
+                " Probe, Date, Sensitivity (nA/µM) or 0.5 µM, 1 µM",
+                "say what the headings mean in the mapping file, under [headings]",
+            )
+        return self.out
+
+    def _take(self, view: View) -> None:
+        stages = self.measured.stages(view)
+        runs = view.first("duration")
+        if not stages and runs is None:
+            said = " ".join(shown(one.value) for one in view.rows[0] if one.value is not None)
+            self.out.say("left out", view.range, f"holds no measurement and no run: '{shortened(said)}'")
+            return
+        try:
+            electrode = self.labels.of(view)
+            exposure = self._exposure(view, electrode, runs) if runs is not None else None
+            made = [self._calibration(view, electrode, stage, exposure) for stage in stages]
+        except InputError as why:
+            self.out.say("refused", view.range, why.message)
+            return
+        self.out.drafts += [
+            *self.labels.drafts(view, electrode, self.measured),
+            *made,
+            *([exposure] if exposure else []),
+        ]
+
+    def _calibration(self, view: View, electrode: str, heading_stage: str, run: Draft | None) -> Draft:
+        stage = heading_stage or self.said.stage(view)
+        analyte, waveform = self.said.analyte(view), self.said.waveform(view)
+        at, day, assumed = self._moment(view, stage, run)
+        numbers, points, notes = self.measured.calibration(view, heading_stage)
+        texts, kept = self.said.texts(view)
+        clock = "" if assumed else f"T{at.astimezone(self.zone):%H%M}"
+        sign = "".join(analyte.split())
+        if self.out.questions.get("analyte"):
+            sign = "?"
+        label = f"{electrode}_{day}{clock}_{stage}_{sign}"
+        if view.first("waveform"):
+            label += f"_{waveform}"
+        notes = [*notes, *kept, *self._marked(view)] + (["time of day assumed"] if assumed else [])
+        values: dict[str, Value] = {
+            "calibration": label,
+            "electrode": electrode,
+            "at": at,
+            "stage": stage,
+            "analyte": analyte,
+        }
+        values |= {"waveform": waveform, **numbers, **texts, "note": self._note(view, notes)}
+        return Draft("calibrations", values, view.range, points)
+
+    def _exposure(self, view: View, electrode: str, runs: Found) -> Draft | None:
+        minutes = self.measured.number(view, runs, MINUTES, "duration")
+        if minutes is None:
+            return None
+        setting = self.said.setting(view)
+        start, _, assumed = self._moment(view, "run", None)
+        texts, kept = self.said.texts(view)
+        notes = kept + (["time of day assumed"] if assumed else [])
+        subject, recording = view.first("subject"), view.first("recording")
+        values: dict[str, Value] = {"electrode": electrode, "start": start, "duration_min": minutes, "setting": setting}
+        values |= {"subject": shown(subject.value) if subject else self.said.subject(view)}
+        values |= {"recording": shown(recording.value) if recording else None, "by": texts.get("by")}
+        waveform = self.said.waveform(view)
+        return Draft("exposures", {**values, "waveform": waveform or None, "note": self._note(view, notes)}, view.range)
+
+    def _moment(self, view: View, stage: str, run: Draft | None) -> tuple[datetime, str, bool]:
+        """When, which day, and whether the time of day is the mapping's. Raises InputError; also for the future."""
+        found = view.first("day", stage)
+        if found is None:
+            raise InputError("date: missing; accepted: a date in the row, or beside a label above the table")
+        said = self._when(view, found)
+        time = said.time
+        clock = view.first("time")
+        if time is None and clock is not None and run is None:
+            time = clock_time(clock.value)
+        typed = time.isoformat() if time else self.mapping.times[stage]
+        at = parse_iso(f"{said.day}T{typed}", self.zone, "date")
+        if time is None and run is not None:
+            at = _beside(at, stage, run)
+        if at > utc_now():
+            raise InputError(f"date: {said.day} at {view.place(found)} lies in the future; accepted: a day that was")
+        return at, said.day.isoformat(), time is None
+
+    def _when(self, view: View, found: Found) -> When:
+        said = when(found.value, self.order)
+        if said.doubt:
+            self.out.say("doubtful", view.place(found), said.doubt)
+        return said
+
+    def _note(self, view: View, notes: list[str]) -> str:
+        unique = list(dict.fromkeys(note for note in notes if note))
+        return "; ".join([*unique, f"from {self.book.name} {view.range} ({self.book.fingerprint[:12]})"])
+
+    def _marked(self, view: View) -> list[str]:
+        notes = []
+        for place, marks in view.marks():
+            if marks.comment:
+                notes.append(f"comment on {place.rpartition('!')[2]}: {shortened(marks.comment, 300)}")
+            if marks.colour:
+                self.out.say("doubtful", place, f"is coloured {marks.colour}: taken as any other; kept in the note")
+                notes.append(f"{place.rpartition('!')[2]} coloured {marks.colour}")
+            if marks.struck:
+                self._struck(place)
+                notes.append(f"{place.rpartition('!')[2]} struck through in the book")
+        return notes
+
+    def _struck(self, place: str) -> None:
+        answer = self.mapping.answered("struck")
+        if answer == "leave":
+            raise InputError(f"{place} is struck through, and the mapping leaves such rows out")
+        if answer != "take":
+            self.out.ask("struck", "Cells are struck through: take their rows all the same?", place, ("take", "leave"))
+        self.out.say("doubtful", place, "is struck through: what was meant by it?")
+
+    def _decimal_comma(self) -> bool:
+        answer = self.mapping.answered("decimal_mark")
+        found, why = decimal_mark(cell for grid in self.book.grids for row in grid.rows for cell in row)
+        if not answer and not found:
+            self.out.ask("decimal_mark", "Which is the decimal mark of numbers typed as text?", why, (".", ","))
+        return (answer or found) == ","
+
+    def _date_order(self) -> str:
+        answer = self.mapping.answered("date_order")
+        found, why = date_order(_days(self.tables, self.mapping))
+        if not answer and not found:
+            self.out.ask("date_order", "In which order do dates stand?", why, ("dmy", "mdy", "ymd"))
+        return answer or found
+
+
+def _beside(at: datetime, stage: str, run: Draft) -> datetime:
+    """A calibration without a time of day stays on its side of the run."""
+    start, minutes = run.values["start"], run.values["duration_min"]
+    assert isinstance(start, datetime)  # noqa: S101
+    assert isinstance(minutes, float)  # noqa: S101
+    if stage == "pre":
+        return min(at, start - _GAP)
+    return max(at, start + timedelta(minutes=minutes) + _GAP) if stage == "post" else at
+
+
+def _days(found: list[Table], mapping: BookMapping) -> Iterator[Content]:
+    for table in found:
+        columns = [h.column for h in table.headings if (m := mapping.understand(h.text)) and m.field == "day"]
+        yield from (table.grid.at(row, column) for row in table.rows for column in columns)
+        yield from (fact.value for fact in table.facts if (m := mapping.understand(fact.heading)) and m.field == "day")
