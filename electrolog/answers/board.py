@@ -31,9 +31,9 @@ from electrolog.record.names import Names
 from electrolog.record.readable import rows
 from electrolog.record.store import Record
 
-ALL_DRAWS, FEWER_DRAWS = 1024, 256
+ALL_DRAWS, FEWER_DRAWS = 1 << 20, 512
 LARGE = 400  # probes; below, a forecast is made as fast as it would be read
-VERSION = 1
+VERSION = 2
 REFERENCE = "reference"
 
 
@@ -44,6 +44,7 @@ class Board:
     fit: CohortFit
     cards: tuple[Card, ...]
     arrays: Arrays
+    draws: int
     moment: datetime
 
     @property
@@ -53,7 +54,7 @@ class Board:
     def log_sensitivity_in(self, setting: str) -> Callable[[float], Floats]:
         """Minutes of run in that setting -> (U, D)."""
         settings = tuple(dict.fromkeys((REFERENCE_SETTING, setting)))
-        drawn = unpacked(self.fit, self.arrays, settings)
+        drawn = unpacked(self.fit, self.arrays, settings, self.draws)
 
         def log_sensitivity_at(run_min: float) -> Floats:
             hours = np.zeros((len(self.cards), len(settings)))
@@ -83,7 +84,7 @@ def board(record: Record, labels: Sequence[str] | None, run: Run, moment: dateti
     wanted = list(seen) if labels is None else list(dict.fromkeys(labels))
     fit = fits.fit_for(record, assay)
     if labels is not None or len(wanted) < LARGE:
-        return Board(assay, setting, fit, *_fresh(record, wanted, run, moment, ALL_DRAWS), moment)
+        return Board(assay, setting, fit, *_fresh(record, wanted, run, moment, ALL_DRAWS), ALL_DRAWS, moment)
     path = _path(record, assay)
     stamp = f"{VERSION} {fit.method} {fit.fingerprint} {correction}"
     kept = _read(path, stamp)
@@ -92,7 +93,7 @@ def board(record: Record, labels: Sequence[str] | None, run: Run, moment: dateti
     made_cards, made = _fresh(record, missing, run, moment, FEWER_DRAWS) if missing else ((), {})
     known = [kept.cards[label] for label in good] if kept else []
     arrays = _together(kept, list(good), made)
-    found = Board(assay, setting, fit, (*known, *made_cards), arrays, moment)
+    found = Board(assay, setting, fit, (*known, *made_cards), arrays, FEWER_DRAWS, moment)
     if len(missing) > len(good) / 20:
         _write(path, stamp, seen, found)
     return found
@@ -151,7 +152,7 @@ def _folder() -> Path:
 def _read(path: Path, stamp: str) -> _Kept | None:
     """None where there is nothing, or nothing that can be read: it is made again then."""
     try:
-        with np.load(path, allow_pickle=False) as file:
+        with path.open("rb") as opened, np.load(opened, allow_pickle=False) as file:
             told = json.loads(file["told"].tobytes())
             if told["stamp"] != stamp:
                 return None

@@ -40,10 +40,14 @@ def posterior(fit: CohortFit, events: Events) -> Posterior:
     slipped, damaged = np.zeros(int(is_reading.sum())), np.zeros(len(events.units))
     strands = []
     for place, part in enumerate(fit.components):
-        per_theta = max(1, round(DRAWS * part.weight / len(part.theta_draws)))
-        strands.append(draw_strand(part, place, events, fit.line_error, per_theta, slipped, damaged))
+        strands.append(draw_strand(part, place, events, fit.line_error, per_theta(part), slipped, damaged))
     first = np.cumsum(counts) - counts
     return Posterior(tuple(strands), first, counts, at_end, at_readings, slipped, damaged)
+
+
+def per_theta(part: Component) -> int:
+    """How many draws of a unit there are under each draw of the hyper-parameters."""
+    return max(1, round(DRAWS * part.weight / len(part.theta_draws)))
 
 
 @dataclass(frozen=True)
@@ -199,14 +203,17 @@ def peak_grid(view: View, batch: Batch, cavity: tuple[Floats, Floats], peak: Sca
     at_peak = (cavity[0].mean(axis=0, keepdims=True), cavity[1])
     setup = set_up_pairs(view, batch, at_peak, peak, clock)
     grid = starting_grid(setup)
-    for _ in range(7):
+    for _ in range(6):
         grid = refit_grid(tilt(view.part.layout.shape, setup, grid), grid)
     k = len(view.part.theta_draws)
+    if k == 1:
+        return grid
     return Grid(np.repeat(grid.centre, k, axis=0), np.repeat(grid.spread, k, axis=0) * 1.2)
 
 
 def tilt_pairs(part: Component, setup: Setup, grid: Grid) -> tuple[Tilted, Grid]:
-    grid = refit_grid(tilt(part.layout.shape, setup, grid), grid)
+    if len(part.theta_draws) > 1:  # a single draw stands at the peak, where its grid was laid already
+        grid = refit_grid(tilt(part.layout.shape, setup, grid), grid)
     return tilt(part.layout.shape, setup, grid), grid
 
 

@@ -12,6 +12,7 @@ from electrolog.show.machine import plain, print_csv, print_json
 from electrolog.show.tables import print_lines, print_table
 from electrolog.units import shown_concentration, shown_duration, shown_number, shown_percent
 
+ENOUGH_DRAWS = 500  # below, odds are good to a few points only
 MOST_SHOWN = 100  # nobody reads on; the best stand first
 _COLUMNS = ("probe", "verdict", "odds", "left at end", "detects", "nA/µM", "batch", "coating", "because")
 _LEAST = ("batch", "coating", "nA/µM", "detects", "left at end")
@@ -41,7 +42,8 @@ def _as_dict(one: Ranked) -> dict[str, Any]:
 def _counted(found: Ranking) -> str:
     counts = Counter(one.verdict for one in found.probes)
     said = ", ".join(f"{count} {word}" for word, count in counts.items())
-    return f"{said}; odds: of breaking a limit by the end; `electrolog check PROBE` says more of one"
+    roughly = f", counted in {found.draws} draws" if found.draws < ENOUGH_DRAWS else ""
+    return f"{said}; odds: of breaking a limit by the end{roughly}; `electrolog check PROBE` says more of one"
 
 
 def _row(one: Ranked) -> tuple[object, ...]:
