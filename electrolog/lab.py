@@ -17,6 +17,8 @@ from typing import TYPE_CHECKING
 
 from electrolog.answers.bringing import Bringing
 from electrolog.answers.judging import Judging, demands
+from electrolog.answers.keeping import Keeping
+from electrolog.answers.keeping import restore as restore
 from electrolog.answers.looking import Looking
 from electrolog.answers.measuring import Measuring
 from electrolog.record import sheets
@@ -40,11 +42,10 @@ if TYPE_CHECKING:
     from electrolog.record.journal import Entry
     from electrolog.record.queries import Event
     from electrolog.record.readable import Row
-    from electrolog.record.verify import Verification
 
 
 @dataclass(frozen=True)
-class Lab(Bringing, Measuring, Judging, Looking):
+class Lab(Bringing, Measuring, Judging, Looking, Keeping):
     """A record and the time zone in which times without an offset are read (None: the machine's)."""
 
     # --- at the bench -------------------------------------------------------------------------------------
@@ -224,12 +225,6 @@ class Lab(Bringing, Measuring, Judging, Looking):
 
         with self.record.reading() as connection:
             return list(journal.entries(connection, sheet, row_id))
-
-    def verify(self) -> Verification:
-        """The journal replayed against the rows, and the kept figures against the raw points."""
-        from electrolog.answers.trust import verified
-
-        return verified(self.record)
 
     # --- in and out ---------------------------------------------------------------------------------------
 

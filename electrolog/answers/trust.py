@@ -16,10 +16,10 @@ from electrolog.record.verify import Verification, verify
 SAME = 1e-6  # relative: two machines may differ in the last digits, nobody forges those
 
 
-def verified(record: Record) -> Verification:
+def verified(record: Record, head: str | None = None) -> Verification:
     """Figures are no part of the journal, since they can be made again; so they are, where the rows are whole."""
     with record.reading() as connection:
-        found = verify(connection)
+        found = verify(connection, head)
         if not found.whole:
             return found
         kept = [one for one in queries.calibrations(connection) if (one.figures or {}).get("method") == METHOD]

@@ -28,11 +28,20 @@ def create(record: Record) -> None:
     """An empty record with the trade's analytes and waveforms in it."""
     from electrolog.record import builtin
 
+    make_tables(record)
+    builtin.add_all(record)
+
+
+def make_tables(record: Record) -> None:
+    write_ahead(record)
+    to_revision(record, schema.REVISION)
+
+
+def write_ahead(record: Record) -> None:
+    """In a file readers then block nobody, and nobody blocks them; it stays so once it is set."""
     if record.is_file:
         with closing(sqlite3.connect(record.name)) as connection:
             connection.execute("PRAGMA journal_mode = WAL")
-    to_revision(record, schema.REVISION)
-    builtin.add_all(record)
 
 
 def set_up(where: str) -> tuple[Record, str, str, Path | None]:
@@ -60,14 +69,13 @@ def upgrade(record: Record) -> Path | None:
 
 def copy_of_file(record: Record) -> Path:
     """A whole copy beside the file, named by the moment, checked after writing."""
+    from electrolog.record.copying import copy_file
+
     source = Path(record.name)
     target = source.with_name(f"{source.name}.{utc_now().strftime('%Y%m%dT%H%M%S%f')}.copy")
     if shutil.disk_usage(source.parent).free < 2 * source.stat().st_size:
         raise RecordError(f"no room for a copy of {source} before its upgrade", "make room on that disk first")
-    with closing(sqlite3.connect(source)) as old, closing(sqlite3.connect(target)) as new:
-        old.backup(new)
-        if new.execute("PRAGMA integrity_check").fetchone() != ("ok",):
-            raise RecordError(f"the copy {target} is not whole; {source} was left as it was")
+    copy_file(source, target)
     return target
 
 

@@ -54,7 +54,9 @@ class Record:
 
     @contextmanager
     def reading(self) -> Iterator[Connection]:
-        with translated(self.name), self.engine.connect() as connection, connection.begin():
+        """One state of the record, whatever others write meanwhile."""
+        engine = self.engine if self.is_file else self.engine.execution_options(isolation_level="REPEATABLE READ")
+        with translated(self.name), engine.connect() as connection, connection.begin():
             yield connection
 
     @contextmanager
@@ -232,6 +234,8 @@ def translated(name: str) -> Iterator[None]:
         yield
     except DBAPIError as error:
         raise RecordError(*_reworded(str(error.orig), name)) from None
+    except sqlite3.Error as error:  # of a copy, which is the driver's own matter
+        raise RecordError(*_reworded(str(error), name)) from None
 
 
 def _reworded(said: str, name: str) -> tuple[str, str]:

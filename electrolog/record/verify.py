@@ -3,11 +3,13 @@
 from __future__ import annotations
 
 import json
+import re
 from dataclasses import dataclass
 from typing import Any
 
 from sqlalchemy import Connection, select
 
+from electrolog.errors import InputError, shortened
 from electrolog.record import journal, schema
 from electrolog.record.sheets import BY_NAME, SHEETS
 
@@ -20,19 +22,39 @@ class Verification:
     entries: int
     head: str
     faults: tuple[str, ...]
+    since: int | None = None  # entries written after the head that was asked for
 
     @property
     def whole(self) -> bool:
         return not self.faults
 
 
-def verify(connection: Connection) -> Verification:
+def verify(connection: Connection, anchor: str | None = None) -> Verification:
+    """`anchor`: a head written down earlier, or its first signs; a chain alone can't show that its end was cut off.
+
+    Raises InputError for an anchor that is too short to tell one entry from any other.
+    """
     faults: list[str] = []
     expected, count, head = _replayed(connection, faults)
     found = _found(connection)
     for place in sorted(expected.keys() | found.keys()):
         faults += _compared(place, expected.get(place), found.get(place))
-    return Verification(count, head, tuple(faults))
+    since = None if anchor is None else _since(connection, anchor, faults)
+    return Verification(count, head, tuple(faults), since)
+
+
+def _since(connection: Connection, anchor: str, faults: list[str]) -> int | None:
+    wanted = anchor.strip().casefold()
+    if not re.fullmatch(r"[0-9a-f]{16,64}", wanted):
+        raise InputError(
+            f"head: '{shortened(anchor)}' is no journal head; accepted: its 64 signs, or the first 16 or more"
+        )
+    table = schema.journal
+    seq = connection.execute(select(table.c.seq).where(table.c.hash.startswith(wanted))).scalar()
+    if seq is None:
+        faults.append(f"journal: no entry has the hash {wanted}: its tail was cut off, or this is another record")
+        return None
+    return journal.head(connection)[0] - int(seq)
 
 
 def _replayed(connection: Connection, faults: list[str]) -> tuple[Rows, int, str]:

@@ -52,9 +52,11 @@ def _plain(value: object) -> str:
 
 def answer_verification(found: Verification, json: bool) -> None:
     if json:
-        print_json({"whole": found.whole, "entries": found.entries, "head": found.head, "faults": found.faults})
+        print_json({"whole": found.whole, **vars(found)})
         return
     for fault in found.faults:
         print_lines(fault)
     said = "the record is what the journal says" if found.whole else f"{len(found.faults)} faults"
     print_lines(f"{said}; {found.entries} entries, head {found.head[:16]}")
+    if found.since is not None:
+        print_lines(f"the head asked for is there; {found.since} entries were written since")

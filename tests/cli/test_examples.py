@@ -53,6 +53,14 @@ def prepare(name: str, cli: Any, folder: Path) -> None:
         cli.ok("amend", "standard", "S-48-DA", "standard=S-47-DA", "--why", "room for the example")
     elif name == "adopt":
         (folder / "factors.csv").write_text("probe,date,stage,nA/uM\nK1,2024-03-04,pre,12\n", encoding="utf-8")
+    elif name == "restore":
+        cli.ok("backup", "backups")
+        (written,) = (folder / "backups").iterdir()
+        written.rename(folder / shlex.split(examples(name)[0])[-1])
+    elif name == "move":
+        cli.ok("backup", "backups")
+        (written,) = (folder / "backups").iterdir()
+        written.rename(folder / "lab.db")
     elif name == "import":
         (folder / "demo" / "lab").mkdir(parents=True)
         (folder / "demo" / "lab" / "batches.csv").write_text("batch\nB1\n", encoding="utf-8")
