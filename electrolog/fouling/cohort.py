@@ -31,7 +31,7 @@ HOPELESS = 25.0  # nats behind the best shape: not climbed to its end
 CLOSE = 10.0  # nats behind the best shape: its evidence is worth a closer look
 PRIOR_ODDS = {"none": 0.1}  # against any other shape: a probe in use that doesn't foul at all is rare
 LARGE, PART = 2000, 300  # units of a large cohort, and of the part of it that tells shapes apart
-YOUNG, YOUNG_DRAWS = 60, 48
+YOUNG, YOUNG_DRAWS = 60, 32  # units of a young cohort; its draws of the hyper-parameters, each settled by itself
 LEAST_WEIGHT = 0.01  # a shape with less is named, but not drawn from
 
 
