@@ -28,6 +28,7 @@ ACCEPTED = {
     "date_order": ORDERS,
     "decimal_mark": (".", ","),
     "sheet_name": ("probe", "subject", "nothing"),
+    "blank_probe": ("above", "refuse"),
     "struck": ("take", "leave"),
     **{f"unit_{field}": units_of(field) for field in NEEDED},
 }

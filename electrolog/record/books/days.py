@@ -11,6 +11,7 @@ from electrolog.clock import utc_now
 from electrolog.errors import InputError, shortened
 from electrolog.record.books.grid import Content, shown
 
+EARLIEST = 1970
 ORDERS = ("dmy", "mdy", "ymd")
 MONTHS = {
     name: number
@@ -115,10 +116,9 @@ def _is_day(first: str, second: str, third: str, order: str) -> bool:
     if len(dict(zip(order, (first, second, third), strict=True))["y"]) == 1 or (len(third) == 4 and order == "ymd"):
         return False
     try:
-        date(*_parts(first, second, third, order))
+        return date(*_parts(first, second, third, order)).year >= EARLIEST
     except ValueError:
         return False
-    return True
 
 
 def _parts(first: str, second: str, third: str, order: str) -> tuple[int, int, int]:
@@ -155,6 +155,9 @@ def _day(text: str, order: str) -> tuple[date, str]:
 
 def _made(year: int, month: int, day: int, text: str) -> date:
     try:
-        return date(year, month, day)
+        made = date(year, month, day)
     except ValueError:
-        raise InputError(f"date: '{shortened(text)}' is no day of the calendar in this order; {_ACCEPTED}") from None
+        made = date.min
+    if made.year < EARLIEST:
+        raise InputError(f"date: '{shortened(text)}' is no day since {EARLIEST} in the order of this book; {_ACCEPTED}")
+    return made

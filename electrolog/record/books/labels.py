@@ -20,18 +20,30 @@ from electrolog.units import LENGTH_UM
 class Labels:
     def __init__(self, found: list[Table], mapping: BookMapping, vocabulary: Vocabulary, out: Extract) -> None:
         self.mapping, self.out, self.vocabulary = mapping, out, vocabulary
-        self.sheet_names = {table.grid.name for table in found}
+        self.above: dict[int, str] = {}
         self.main = dict(_main_spellings(found, mapping)) | dict(vocabulary.probes)
         self.said: dict[str, dict[str, Value]] = {}
 
     def of(self, view: View) -> str:
         """The label as the record is to have it. Raises InputError where none stands, or its spelling is in doubt."""
         found = view.first("electrode")
-        if found is None and self._sheets_are_probes(view):
+        if found is not None:
+            self.above[id(view.table)] = label = self._spelled(_label(shown(found.value)), view.place(found))
+            return label
+        has_column = any(one.field == "electrode" for one in view.rows[0])
+        if has_column and self._is_as_above(view):
+            return self.above[id(view.table)]
+        if not has_column and self._sheets_are_probes(view):
             return self._spelled(view.table.grid.name, view.range)
-        if found is None:
-            raise InputError("probe: missing; accepted: its label in the row, or beside a label above the table")
-        return self._spelled(_label(shown(found.value)), view.place(found))
+        raise InputError("probe: missing; accepted: its label in the row, or beside a label above the table")
+
+    def _is_as_above(self, view: View) -> bool:
+        if id(view.table) not in self.above:
+            return False
+        answer = self.mapping.answered("blank_probe")
+        if answer == "":
+            self.out.ask("blank_probe", "Does a blank cell mean the probe above?", view.range, ("above", "refuse"))
+        return answer in ("", "above")
 
     def _sheets_are_probes(self, view: View) -> bool:
         answer = self.mapping.answered("sheet_name")
