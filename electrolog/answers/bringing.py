@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from datetime import tzinfo
 from pathlib import Path
@@ -38,3 +38,9 @@ class Bringing:
         return adopt(
             self.record, book, mapping_file=mapping_file, answers=answers, commit=commit, zone=self.zone
         )  # fmt: skip
+
+    def write_template(self, path: Path, concentrations_um: Sequence[float] = ()) -> None:
+        """An empty book with the lab's words, which `adopt` reads without a question. Raises InputError."""
+        from electrolog.record.books.template import USUAL_UM, write_template
+
+        write_template(self.record, path, concentrations_um or USUAL_UM)

@@ -54,6 +54,7 @@ COMMANDS: dict[str, dict[str, str]] = {
         "backup": "Write a checked backup while others go on.",
         "restore": "Put a backup in the record's place.",
         "move": "Copy the whole record to another place or engine, proven equal.",
+        "template": "Make an empty spreadsheet that adopt reads.",
         "import": "Read an exchange folder.",
         "export": "Write an exchange folder.",
     },
