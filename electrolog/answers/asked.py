@@ -29,6 +29,7 @@ if TYPE_CHECKING:
     from electrolog.fouling.forecast import Posterior
 
 Floats = NDArray[np.float64]
+LONGEST_RUN_MIN = 8760 * 60.0
 
 
 @dataclass(frozen=True)
@@ -43,6 +44,8 @@ class Run:
     def __post_init__(self) -> None:
         if not self.run_min > 0:
             raise InputError(f"run: {self.run_min:g} min is no run; accepted: longer than zero, such as 4h")
+        if self.run_min > LONGEST_RUN_MIN:
+            raise InputError(f"run: {self.run_min / 60:.6g} h is longer than a year; accepted: up to 8760h")
 
 
 @dataclass(frozen=True)

@@ -18,9 +18,10 @@ from electrolog.answers.fits import Assay
 from electrolog.answers.standing import notes, out_of_use, unanswerable
 from electrolog.errors import unknown
 from electrolog.fouling.forecast import posterior
-from electrolog.judge.decision import UNDETERMINED
+from electrolog.judge.decision import RETIRE, UNDETERMINED
 from electrolog.judge.facts import CalibrationFacts
 from electrolog.judge.limits import LimitRow, Limits, effective
+from electrolog.judge.odds import NEEDS
 from electrolog.judge.question import Question
 from electrolog.judge.verdict import Verdict, judge
 from electrolog.record import queries, sheets
@@ -57,15 +58,25 @@ def check(
     """One verdict per probe, in the order of labels."""
     asked = ask(record, labels, run, moment)
     limits, standards = rules_of_the_lab(record, asked, demands)
-    return [
-        Checked(
-            label,
-            _verdict(question_of(asked, place, run, limits, demands, standards), asked, label),
-            notes(asked, label),
-            limits,
-        )
-        for place, label in enumerate(asked.labels)
-    ]
+    found = []
+    for place, label in enumerate(asked.labels):
+        verdict = _verdict(question_of(asked, place, run, limits, demands, standards), asked, label)
+        found.append(Checked(label, verdict, (*_asked_too_much(verdict, limits), *notes(asked, label)), limits))
+    return found
+
+
+def _asked_too_much(verdict: Verdict, limits: Limits) -> tuple[str, ...]:
+    """A sound probe that can't see as little as this run needs must not be thrown away for it."""
+    others = [p for rule, p in verdict.p_by_rule.items() if rule != NEEDS]
+    risk = limits.accepted_risk()
+    if (
+        verdict.verdict != RETIRE
+        or risk is None
+        or NEEDS not in verdict.p_by_rule
+        or max(others, default=1.0) > risk.value
+    ):
+        return ()
+    return ("only what this run needs is beyond it; the lab's own limits it keeps: for other runs it may still serve",)
 
 
 def rules_of_the_lab(record: Record, asked: Asked, demands: Demands) -> tuple[Limits, dict[str, Row]]:

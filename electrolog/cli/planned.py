@@ -7,8 +7,7 @@ from typing import TYPE_CHECKING, Annotated, TypedDict
 
 import typer
 
-from electrolog.cli.add import split
-from electrolog.errors import InputError
+from electrolog.errors import InputError, shortened
 
 if TYPE_CHECKING:
     from electrolog.answers.asked import Run
@@ -37,7 +36,14 @@ def asking(needs: str | None, project: str, limit: list[str] | None) -> Asking:
     from electrolog.units import CONCENTRATION_UM, parse_quantity
 
     needs_um = None if needs is None else parse_quantity(needs, CONCENTRATION_UM, "needs")
-    return {"needs_um": needs_um, "project": project, "limits": dict(split(text) for text in limit or [])}
+    return {"needs_um": needs_um, "project": project, "limits": dict(_rule_and_value(text) for text in limit or [])}
+
+
+def _rule_and_value(text: str) -> tuple[str, str]:
+    rule, equals, value = text.partition("=")
+    if not (equals and rule.strip() and value.strip()):
+        raise InputError(f"limit: '{shortened(text)}' is no pair; accepted: RULE=VALUE, such as least-share-left=60%")
+    return rule.strip(), value.strip()
 
 
 def run_of(analyte: str, waveform: str, setting: str, run: str) -> Run:

@@ -51,7 +51,10 @@ class Beside:
         return None if self.log_reference is None else np.exp(log_sensitivity - self.log_reference)
 
     def lod_um(self, log_sensitivity: Array, signal_to_noise: float) -> Array | None:
-        return None if self.noise_na is None else signal_to_noise * self.noise_na * np.exp(-log_sensitivity)
+        if self.noise_na is None:
+            return None
+        # A dead probe detects nothing: beyond exp(600) it is said to, rather than that a number overflowed.
+        return signal_to_noise * self.noise_na * np.exp(np.minimum(-log_sensitivity, 600.0))
 
 
 def values_at(log_sensitivity: Array, beside: Beside, ends: EndLimits) -> dict[str, Array]:
@@ -97,8 +100,8 @@ def below(log_sensitivity: Array, least: Array | None) -> Mask:
 
 def relative_width(log_sensitivity: Array) -> Array:
     """Width of the central 90 % interval of the sensitivity as a share of its median."""
-    low, middle, high = np.exp(np.quantile(log_sensitivity, QUANTILES, axis=-1))
-    return np.asarray((high - low) / middle)
+    low, middle, high = np.quantile(log_sensitivity, QUANTILES, axis=-1)
+    return np.asarray(np.exp(np.minimum(high - middle, 600.0)) - np.exp(low - middle))
 
 
 def holds(log_sensitivity: Array, beside: Beside, ends: EndLimits, accepted_risk: float) -> Mask:

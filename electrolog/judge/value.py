@@ -98,7 +98,7 @@ def _width(weights: Array, log_end: Array) -> Array:
     """Width of the 90 % interval over the median, of a lognormal with the reweighted draws' spread."""
     mean = weights @ log_end
     variance = np.maximum(weights @ log_end**2 - mean**2, 0.0)
-    return np.asarray(2 * np.sinh(1.645 * np.sqrt(variance)))
+    return np.asarray(2 * np.sinh(np.minimum(1.645 * np.sqrt(variance), 600.0)))
 
 
 def _narrowing(p_before: float, p_after: Array) -> float:

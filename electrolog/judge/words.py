@@ -19,7 +19,7 @@ def chance(p: float) -> str:
 
 
 def share_left(share: Spread, least: float, p: float) -> Reason:
-    low, middle, high = (_shown_share(value) for value in share)
+    low, middle, high = (shown_share(value) for value in share)
     text = (
         f"{middle} of the reference sensitivity left at the end (90 % interval {low} to {high}); "
         f"the limit is {shown_percent(least)}: odds of breaking it {chance(p)}"
@@ -27,8 +27,10 @@ def share_left(share: Spread, least: float, p: float) -> Reason:
     return Reason("least-share-left", text)
 
 
-def _shown_share(share: float) -> str:
+def shown_share(share: float | None) -> str:
     """A share of sensitivity may well be 100 % or more, unlike odds."""
+    if share is None:
+        return "?"
     return "<1 %" if share < 0.01 else f"{share * 100:.0f} %"
 
 

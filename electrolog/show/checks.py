@@ -8,17 +8,17 @@ from typing import Any
 from electrolog.answers.asked import Run
 from electrolog.answers.checking import Checked
 from electrolog.judge.verdict import NowAndEnd, Spread, Verdict
-from electrolog.judge.words import chance
+from electrolog.judge.words import chance, shown_share
 from electrolog.show.machine import plain, print_csv, print_json
 from electrolog.show.tables import print_lines, print_table
-from electrolog.units import shown_concentration, shown_duration, shown_number, shown_percent
+from electrolog.units import shown_concentration, shown_duration, shown_number
 
 SIGNS = {"fit": "[+]", "recalibrate": "[~]", "retire": "[x]", "undetermined": "[?]"}
 _COLUMNS = ("probe", "verdict", "odds", "longest run")
 Show = Callable[[float | None], str]
 FIGURES: tuple[tuple[str, str, Show], ...] = (
     ("sensitivity (nA/µM)", "sensitivity_na_um", shown_number),
-    ("share left", "fraction_left", shown_percent),
+    ("share left", "fraction_left", shown_share),
     ("detection limit", "lod_um", shown_concentration),
 )
 CAUTION = "Advice for people who decide: approved protocol and local rules come first. Never for clinical decisions."

@@ -7,10 +7,11 @@ from typing import Any
 
 from electrolog.answers.asked import Run
 from electrolog.answers.ranking import Ranked, Ranking
+from electrolog.judge.words import shown_share
 from electrolog.show.checks import CAUTION, SIGNS, odds_shown
 from electrolog.show.machine import plain, print_csv, print_json
 from electrolog.show.tables import print_lines, print_table
-from electrolog.units import shown_concentration, shown_duration, shown_number, shown_percent
+from electrolog.units import shown_concentration, shown_duration, shown_number
 
 ENOUGH_DRAWS = 500  # below, odds are good to a few points only
 MOST_SHOWN = 100  # nobody reads on; the best stand first
@@ -51,7 +52,7 @@ def _row(one: Ranked) -> tuple[object, ...]:
         one.electrode,
         f"{SIGNS[one.verdict]} {one.verdict}",
         odds_shown(one.p_breach),
-        "" if one.end_fraction_left is None else shown_percent(one.end_fraction_left),
+        "" if one.end_fraction_left is None else shown_share(one.end_fraction_left),
         "" if one.end_lod_um is None else shown_concentration(one.end_lod_um),
         "" if one.end_sensitivity_na_um is None else shown_number(one.end_sensitivity_na_um),
         one.batch,

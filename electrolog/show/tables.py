@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Iterable, Sequence
 from datetime import datetime
 from typing import TYPE_CHECKING
@@ -12,6 +13,9 @@ from electrolog.units import shown_number
 
 if TYPE_CHECKING:
     from rich.table import Table
+
+_TIE = "\ue000"  # of Unicode's private area: no text of the record is to lose a sign of its own
+_BEFORE_UNIT = re.compile(r"(?<=\d) (?=(?:%|h|min|[nµm]M|µM|nA|mV|V|°C|days)(?![\w]))")
 
 
 def print_table(
@@ -71,13 +75,14 @@ def _print(table: Table) -> None:
 
 
 def print_lines(*lines: str) -> None:
-    """Sentences, wrapped at the width there is."""
+    """Sentences, wrapped at the width there is; a number keeps its unit beside it."""
     import textwrap
 
     for line in lines:
         indent = " " * (len(line) - len(line.lstrip()))
-        wrapped = textwrap.wrap(safe(line), width(), subsequent_indent=indent + "  ", break_on_hyphens=False)
-        print("\n".join(wrapped) if wrapped else "")  # noqa: T201
+        tied = _BEFORE_UNIT.sub(_TIE, safe(line))
+        wrapped = textwrap.wrap(tied, width(), subsequent_indent=indent + "  ", break_on_hyphens=False)
+        print("\n".join(wrapped).replace(_TIE, " ") if wrapped else "")  # noqa: T201
 
 
 def with_error(value: float | None, error: float | None, digits: int = 3) -> str:

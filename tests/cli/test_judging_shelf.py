@@ -193,3 +193,31 @@ def test_the_pages_style_is_the_one_its_policy_allows(judged: Terminal, tmp_path
 
 def test_a_page_that_can_not_be_written_is_a_refusal(judged: Terminal) -> None:
     assert "No such file" in judged.refused("check", "R1", *RUN, "--page", "nowhere/rig.html", status=1)
+
+
+def test_a_run_of_a_year_is_judged_in_silence_and_a_longer_one_refused(judged: Terminal) -> None:
+    answer = judged("check", "R1", *RUN[:-1], "8760h", "--needs", "50nM", "--limit", "widest-interval=50%")
+    assert (answer.status, answer.err) == (10, "")
+    assert "shorten" in answer.out
+    assert "longer than a year" in judged.refused("check", "R1", *RUN[:-1], "8761h")
+
+
+def test_a_sound_probe_that_sees_too_little_is_not_to_be_thrown_away(judged: Terminal) -> None:
+    found = verdict_of(judged, "R1", "--needs", "1nM", "--limit", "least-share-left=20%")
+    assert found["verdict"] == "retire"
+    assert "for other runs it may still serve" in texts(found)
+    assert "may still serve" not in texts(
+        verdict_of(judged, "R1", "--needs", "1nM", "--limit", "least-share-left=100%")
+    )
+
+
+@pytest.mark.parametrize("typed", ["least-share-left", "=50%", "least-share-left="])
+def test_a_limit_for_this_run_is_a_rule_and_a_value(judged: Terminal, typed: str) -> None:
+    assert "accepted: RULE=VALUE" in judged.refused("check", "R1", *RUN, "--limit", typed)
+
+
+def test_a_number_keeps_its_unit_beside_it(judged: Terminal, monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setenv("COLUMNS", "48")
+    lines = judged("check", "R1,G1-1", *RUN).out.splitlines()
+    assert max(len(line) for line in lines) <= 48
+    assert not [line for line in lines if line.split()[:1] in (["%"], ["h"], ["min"], ["µM"])]
