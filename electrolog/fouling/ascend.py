@@ -8,12 +8,14 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from electrolog.fouling.parameters import COMMON
 from electrolog.fouling.propagation import Outcome, Problem, State, settle, start
 
 Floats = NDArray[np.float64]
 MOST_STEPS, LOOK = 60, 8
 FLAT = 0.02  # gain of log posterior (twice) that a last step would still bring
 NOISE = 0.02  # in a log evidence whose stand-ins haven't quite settled
+NEVER = -25.0  # log odds of slips and damage
 STEP = 0.15  # of a standard deviation, for second derivatives by differences
 
 
@@ -66,6 +68,8 @@ def climb(problem: Problem, theta: Floats, hopeless_below: float = -np.inf) -> P
     peak is found.
     """
     state = start(problem, theta)
+    # First as if nothing went wrong with any unit: else a bad day may be taken for as many slips, and stay so.
+    settle(problem, without_mishaps(theta), state, 6, 0.1 * crowd(problem))
     value, slope, outcome = log_posterior(problem, theta, state, 15)
     inverse = rough_covariance(problem, outcome)
     best = Step(theta, value, slope, outcome, deepcopy(state))
@@ -87,6 +91,12 @@ def climb(problem: Problem, theta: Floats, hopeless_below: float = -np.inf) -> P
         inverse = updated(inverse, found.theta - best.theta, best.slope - found.slope)
         best, shrink = found, min(1.0, shrink * 2.0)
     return Peak(best.theta, best.value, best.state, best.outcome, converged, rough_covariance(problem, best.outcome))
+
+
+def without_mishaps(theta: Floats) -> Floats:
+    cautious = theta.copy()
+    cautious[5:COMMON] = NEVER
+    return cautious
 
 
 @dataclass(frozen=True)
