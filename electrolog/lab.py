@@ -18,6 +18,7 @@ from typing import TYPE_CHECKING
 from electrolog.answers.bringing import Bringing
 from electrolog.answers.judging import Judging, demands
 from electrolog.answers.keeping import Keeping
+from electrolog.answers.keeping import rescue as rescue
 from electrolog.answers.keeping import restore as restore
 from electrolog.answers.looking import Looking
 from electrolog.answers.measuring import Measuring

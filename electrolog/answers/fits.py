@@ -74,6 +74,8 @@ def fit_for(record: Record, asked: Assay, fresh: bool = False) -> CohortFit:
 
 
 def keep(record: Record, analyte_id: int, fit: CohortFit, seen: queries.Seen) -> None:
+    if not record.may_keep:
+        return
     with record.writing() as writer:
         queries.keep_fit(writer, analyte_id, fit.method, fit.fingerprint, seen, to_dict(fit))
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from dataclasses import dataclass
 from pathlib import Path
 from typing import TYPE_CHECKING
@@ -10,7 +11,9 @@ from electrolog.record.store import Record, default_location
 
 if TYPE_CHECKING:
     from electrolog.record.backup import Backup
+    from electrolog.record.rescue import Rescued
     from electrolog.record.restore import Moved, Restored
+    from electrolog.record.roles import Roles
     from electrolog.record.verify import Verification
 
 
@@ -30,6 +33,12 @@ class Keeping:
 
         return move(self.record, where)
 
+    def roles(self, logins: Mapping[str, str]) -> Roles:
+        """Makes the roles of a shared record, and admits logins (login -> role) to them."""
+        from electrolog.record.roles import make
+
+        return make(self.record, logins)
+
     def verify(self, head: str | None = None) -> Verification:
         """The journal replayed against the rows; with `head`, written down earlier, whether its tail is there."""
         from electrolog.answers.trust import verified
@@ -45,3 +54,14 @@ def restore(where: str | None, file: Path, *, replace: bool = False) -> Restored
     from electrolog.record.restore import restore as put_back
 
     return put_back(default_location() if where is None else where, file, replace)
+
+
+def rescue(where: str | None, target: str) -> Rescued:
+    """A new record with all that a damaged one's journal still proves, its figures made again."""
+    from electrolog.answers.figures import recompute
+    from electrolog.record.rescue import rescue as save
+    from electrolog.record.store import open_record
+
+    done = save(default_location() if where is None else where, target)
+    recompute(open_record(target))
+    return done

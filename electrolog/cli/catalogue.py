@@ -53,6 +53,8 @@ COMMANDS: dict[str, dict[str, str]] = {
         "adopt": "Take in a spreadsheet as the lab kept it: dry run first.",
         "backup": "Write a checked backup while others go on.",
         "restore": "Put a backup in the record's place.",
+        "rescue": "Save what can be saved of a damaged file.",
+        "roles": "On a server: who may read, log or keep the record.",
         "move": "Copy the whole record to another place or engine, proven equal.",
         "template": "Make an empty spreadsheet that adopt reads.",
         "import": "Read an exchange folder.",

@@ -15,6 +15,7 @@ from electrolog.errors import RecordError
 from electrolog.record import journal, migrate, schema, store
 from electrolog.record.sheets import SHEETS
 from electrolog.record.store import Record
+from electrolog.record.translate import translated
 
 Fingerprint = dict[str, tuple[int, str]]
 _MANY = 5000
@@ -51,7 +52,7 @@ def copy_rows(source: Connection, target: Record) -> None:
     """Every row as it stands, into a database that holds none. Raises RecordError unless the two are then equal."""
     migrate.make_tables(target)
     writing = target.engine.execution_options(electrolog_writes=True)
-    with store.translated(target.name), writing.begin() as connection:
+    with translated(target.name), writing.begin() as connection:
         for table in tables():
             for rows in _rows(source, table):
                 journal.insert_many(connection, table, rows)
@@ -67,7 +68,7 @@ def refuse_unequal(source: Fingerprint, copy: Fingerprint, name: str) -> None:
 def copy_file(source: Path, target: Path) -> None:
     """A file's every page, one state of it while others write, checked after writing; `target` may be in use."""
     with (
-        store.translated(str(source)),
+        translated(str(source)),
         closing(sqlite3.connect(source, timeout=store.BUSY_TIMEOUT_MS / 1000)) as old,
         closing(sqlite3.connect(target, timeout=store.BUSY_TIMEOUT_MS / 1000)) as new,
     ):

@@ -49,7 +49,9 @@ def set_up(where: str) -> tuple[Record, str, str, Path | None]:
     from electrolog.record import store
 
     record = store.connected(where)
-    store.make_folder(record)
+    store.refuse_unsafe(record)
+    if record.is_file and not Path(record.name).exists():
+        store.make_folder(record)
     found = store.revision_of(record)
     if found is None:
         create(record)
@@ -133,7 +135,7 @@ def _migrating(record: Record) -> Iterator[Connection]:
 
     The pragma does nothing inside a transaction, so it stands before BEGIN; every key is checked before COMMIT.
     """
-    from electrolog.record.store import translated
+    from electrolog.record.translate import translated
 
     with translated(record.name), record.engine.connect().execution_options(electrolog_writes=True) as connection:
         if record.is_file:

@@ -45,6 +45,7 @@ def restore(where: str, file: Path, replace: bool = False) -> Restored:
     target = store.connected(where)
     if target.is_file and Path(target.name).resolve() == file.resolve():
         raise InputError("the backup and the record are the same file; accepted: two places")
+    store.refuse_unsafe(target)
     whole = _whole_backup(file)
     found = _standing(target, file)
     if found == SAME:
@@ -61,6 +62,7 @@ def move(source: Record, where: str) -> Moved:
     Raises RecordError unless both prove equal: journal head, every row, and each journal replayed.
     """
     target = store.connected(where)
+    store.refuse_unsafe(target)
     with source.writing(), source.reading() as connection:
         if _state(target) != EMPTY:
             raise RecordError(f"{target.name} holds a record already", "name an empty place")

@@ -8,21 +8,24 @@ import sqlite3
 import weakref
 from collections.abc import Iterator
 from contextlib import contextmanager
+from functools import cached_property
 from pathlib import Path
 from typing import Any
 
 from sqlalchemy import Connection, Engine, create_engine, event, select, text
 from sqlalchemy.engine import URL, make_url
-from sqlalchemy.exc import ArgumentError, DBAPIError
+from sqlalchemy.exc import ArgumentError
 from sqlalchemy.pool import NullPool, QueuePool
 
 from electrolog.errors import InputError, RecordError, shortened
-from electrolog.record import journal, schema
+from electrolog.record import journal, place, schema
 from electrolog.record.columns import checked_text
+from electrolog.record.translate import translated
 
 __all__ = ["Connection", "Record", "open_record"]
 
 BUSY_TIMEOUT_MS = 30_000
+WRITING = 0x656C6570  # any number that all who write agree on
 LONGEST_NAME = 4096
 _DRIVERS = {
     "sqlite": "sqlite",
@@ -37,10 +40,20 @@ LEAST_SQLITE = (3, 37, 0)  # STRICT tables
 class Record:
     """One database. Build it with open_record()."""
 
-    def __init__(self, engine: Engine, who: str) -> None:
+    def __init__(self, engine: Engine, who: str | None) -> None:
         self.engine = engine
         weakref.finalize(self, engine.dispose)  # a connection left open would keep the file in use on Windows
-        self.who = who
+        self._named = who
+
+    @cached_property
+    def who(self) -> str:
+        """The database's login on a server, which the client can't choose; in a file the machine's user."""
+        if self._named is not None:
+            return self._named
+        if self.is_file:
+            return current_user()
+        with self.reading() as connection:
+            return str(connection.execute(text("SELECT session_user")).scalar_one())
 
     @property
     def name(self) -> str:
@@ -62,13 +75,29 @@ class Record:
     @contextmanager
     def writing(self, reason: str = "") -> Iterator[journal.Writer]:
         """One transaction: the rows and their journal entries are both there, or neither is."""
-        engine = self.engine.execution_options(electrolog_writes=True)
-        with translated(self.name), engine.begin() as connection:
-            if not self.is_file:
-                connection.execute(text("LOCK TABLE journal IN EXCLUSIVE MODE"))
+        with self.changing() as connection:
             writer = journal.Writer(connection, self.who, reason)
             yield writer
             writer.flush()
+
+    @contextmanager
+    def changing(self) -> Iterator[Connection]:
+        """One transaction, and no other's meanwhile."""
+        engine = self.engine.execution_options(electrolog_writes=True)
+        with translated(self.name), engine.begin() as connection:
+            if not self.is_file:
+                # A lock of the table would need the right to change it, which nobody has who only adds to it.
+                connection.execute(text(f"SELECT pg_advisory_xact_lock({WRITING})"))
+            yield connection
+
+    @property
+    def may_keep(self) -> bool:
+        """Whether what was worked out may be kept for the next who asks: a login that only reads may not."""
+        if self.is_file:
+            return os.access(self.name, os.W_OK)
+        allowed = text("SELECT has_table_privilege('kept_fits', 'INSERT, DELETE')")
+        with self.reading() as connection:
+            return bool(connection.execute(allowed).scalar())
 
 
 def open_record(where: str, who: str | None = None, create: bool = False) -> Record:
@@ -78,6 +107,7 @@ def open_record(where: str, who: str | None = None, create: bool = False) -> Rec
     database that can't be used (absent, damaged, of another version), InputError for a URL that can't be read.
     """
     record = connected(where, who)
+    refuse_unsafe(record)
     if record.is_file and not Path(record.name).exists():
         if not create:
             raise RecordError(
@@ -91,7 +121,7 @@ def open_record(where: str, who: str | None = None, create: bool = False) -> Rec
 
 def connected(where: str, who: str | None = None) -> Record:
     """The record at `where`, not yet looked at."""
-    return Record(_engine(database_url(where)), who or current_user())
+    return Record(_engine(database_url(where)), who)
 
 
 def default_location() -> str:
@@ -171,7 +201,13 @@ def _begin_sqlite(connection: Connection) -> None:
     connection.exec_driver_sql("BEGIN IMMEDIATE" if writes else "BEGIN")
 
 
+def refuse_unsafe(record: Record) -> None:
+    if record.is_file:
+        place.refuse_unsafe(Path(record.name))
+
+
 def make_folder(record: Record) -> None:
+    """The folder of a record that is yet to be made. Raises RecordError for one that can't hold it."""
     if not record.is_file:
         return
     path = Path(record.name)
@@ -179,6 +215,8 @@ def make_folder(record: Record) -> None:
         path.parent.mkdir(parents=True, exist_ok=True)
     except OSError as why:
         raise RecordError(f"the folder {path.parent} can't be made: {why.strerror}") from None
+    refuse_unsafe(record)
+    place.refuse_lockless(path.resolve().parent)
 
 
 def _bring_to_revision(record: Record, create: bool) -> None:
@@ -225,31 +263,3 @@ def _refuse_foreign(record: Record, tables: set[str]) -> None:
             f"{record.name} is a database of something else (it holds the table '{shortened(min(tables))}')",
             "name another place with --db",
         )
-
-
-@contextmanager
-def translated(name: str) -> Iterator[None]:
-    """The driver's words into ours; the database's own name is all that is said of where."""
-    try:
-        yield
-    except DBAPIError as error:
-        raise RecordError(*_reworded(str(error.orig), name)) from None
-    except sqlite3.Error as error:  # of a copy, which is the driver's own matter
-        raise RecordError(*_reworded(str(error), name)) from None
-
-
-def _reworded(said: str, name: str) -> tuple[str, str]:
-    known = {
-        "unable to open": (f"{name} can't be opened", "look whether the folder is there and may be written"),
-        "readonly": (f"{name} may not be written", "ask who owns the file, or name another with --db"),
-        "locked": (f"{name} is in use by another program for over 30 s", "try again when it has finished"),
-        "full": (f"no room left on the disk of {name}", "make room; nothing was written"),
-        "disk I/O error": (f"the disk of {name} can't be read or written", "copy what can be saved, then check it"),
-        "not a database": (f"{name} is not a database", "look whether it is the file you mean"),
-        "malformed": (f"{name} is damaged", "take the newest whole copy; `sqlite3 FILE .recover` saves what is left"),
-        "append-only": (f"{name}: the journal is append-only", ""),
-    }
-    for words, answer in known.items():
-        if words in said:
-            return answer
-    return f"{name}: {shortened(said, 300)}", ""

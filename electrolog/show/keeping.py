@@ -10,7 +10,9 @@ from electrolog.show.text import one_line
 
 if TYPE_CHECKING:
     from electrolog.record.backup import Backup
+    from electrolog.record.rescue import Rescued
     from electrolog.record.restore import Moved, Restored
+    from electrolog.record.roles import Roles
 
 _FOUND = {"older": "an older state of it", "newer": "a newer state of it", "another": "another record"}
 
@@ -48,6 +50,22 @@ def answer_moved(done: Moved, json: bool) -> None:
     print_lines(f"{one_line(done.target)}: equal to {one_line(done.source)} in {sum(done.rows.values())} rows")
     print_lines(_state(done.entries, done.head))
     print_lines("the old one stays as it was; from now on name the new one, with --db or ELECTROLOG_DB")
+
+
+def answer_rescued(done: Rescued, json: bool) -> None:
+    if json:
+        print_json(done)
+        return
+    print_lines(f"{one_line(done.target)}: {done.rows} rows made again from {done.entries} entries, head {done.head}")
+    print_lines(f"what came after is lost: {done.stopped}" if done.stopped else "the journal was whole to its end")
+
+
+def answer_roles(roles: Roles, json: bool) -> None:
+    if json:
+        print_json(roles.holders)
+        return
+    for role, logins in roles.holders.items():
+        print_lines(f"{role}: {', '.join(one_line(login) for login in logins) or 'nobody yet'}")
 
 
 def _state(entries: int, head: str) -> str:

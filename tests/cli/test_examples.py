@@ -15,7 +15,10 @@ from electrolog.cli.catalogue import HELP, module_of
 from electrolog.cli.main import main
 
 # These need a recording or a cohort, which their own tests make.
-WITH_THEIR_OWN_TESTS = {"trace", "scans", "backtest", "fit", "forecast", "check", "control", "convert", "assign"}
+WITH_THEIR_OWN_TESTS = {
+    *("trace", "scans", "backtest", "fit", "forecast", "check", "control", "convert", "assign"),
+    "roles",  # on a server
+}
 ON_AN_EMPTY_RECORD = {"adopt", "new", "setup", "import"}
 STATUSES = {"check": {0, 10, 20, 30}}
 
