@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, field
 from datetime import date, datetime, time
+from functools import cached_property
 
 Content = str | float | bool | datetime | date | time | None
 Spot = tuple[int, int]  # row and column, counted from 0
@@ -59,7 +60,7 @@ class Grid:
     def place(self, row: int, column: int) -> str:
         return f"{self.name}!{cell_name(column, row) if self.turned else cell_name(row, column)}"
 
-    @property
+    @cached_property
     def width(self) -> int:
         return max((len(row) for row in self.rows), default=0)
 

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import re
 from dataclasses import dataclass, replace
+from functools import lru_cache
 
 from electrolog import units
 from electrolog.errors import InputError, unknown
@@ -30,6 +31,7 @@ class Meaning:
     why: str = ""
 
 
+@lru_cache(maxsize=50_000)  # texts repeat down a column, and every one of them may be a heading
 def meaning(heading: str) -> Meaning | None:
     """None for a heading that says nothing known: its cells are kept in the row's note."""
     text = " ".join(heading.translate(_FOLD).casefold().split()).rstrip(":").strip()
@@ -81,6 +83,8 @@ def _split_unit(text: str) -> tuple[str, str]:
 
 def _field(bare: str) -> str | None:
     name = bare.strip(" .-_#/:±")
+    if (inner := re.fullmatch(r"\[([^\]]+)\]", bare)) and (named := _field(inner[1])) is not None:
+        return named  # a heading that merely stands in brackets
     if re.match(r"\[[^\]]+\]", bare):
         trailing = re.sub(r"\[[^\]]+\]", "", bare).strip()
         return "concentration" if not trailing or _molar(trailing) else None
