@@ -17,14 +17,14 @@ from typing import TYPE_CHECKING
 
 from electrolog.answers.bringing import Bringing
 from electrolog.answers.judging import Judging, demands
-from electrolog.answers.keeping import Keeping
-from electrolog.answers.keeping import rescue as rescue
-from electrolog.answers.keeping import restore as restore
+from electrolog.answers.keeping import Keeping, rescue, restore
 from electrolog.answers.looking import Looking
 from electrolog.answers.measuring import Measuring
 from electrolog.record import sheets
 from electrolog.record.columns import Value
 from electrolog.record.store import default_location, open_record
+
+__all__ = ["Lab", "SetUp", "open_lab", "rescue", "restore", "set_up"]
 
 if TYPE_CHECKING:
     from electrolog.answers.asked import Run
@@ -211,10 +211,13 @@ class Lab(Bringing, Measuring, Judging, Looking, Keeping):
 
     # --- correcting and trusting --------------------------------------------------------------------------
 
-    def amend(self, one: str, name: str, values: Mapping[str, str], reason: str) -> Corrected:
+    def amend(
+        self, one: str, name: str, values: Mapping[str, str], reason: str, *, confirmed: bool = False
+    ) -> Corrected:
+        """Corrects values. Raises DoubtfulEntry where somebody else lately amended the same, unless confirmed."""
         from electrolog.answers.correcting import amend_row
 
-        return amend_row(self.record, one, name, values, reason, self.zone)
+        return amend_row(self.record, one, name, values, reason, self.zone, confirmed)
 
     def strike(self, one: str, name: str, reason: str) -> Corrected:
         from electrolog.answers.correcting import strike_row

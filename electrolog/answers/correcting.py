@@ -10,7 +10,7 @@ from typing import Any
 from electrolog.answers import figures as made
 from electrolog.answers import handling
 from electrolog.errors import unknown
-from electrolog.record import amend, names, queries, sheets
+from electrolog.record import amend, earlier, names, queries, schema, sheets
 from electrolog.record.columns import Value
 from electrolog.record.journal import Writer
 from electrolog.record.readable import row_by_id
@@ -28,15 +28,27 @@ class Corrected:
 
 
 def amend_row(
-    record: Record, one: str, name: str, typed: Mapping[str, str], reason: str, zone: tzinfo | None
+    record: Record,
+    one: str,
+    name: str,
+    typed: Mapping[str, str],
+    reason: str,
+    zone: tzinfo | None,
+    confirmed: bool = False,
 ) -> Corrected:
-    """Amends `calibration C0012`, `coating 17` or `point C0012/3`. An empty text makes a column unknown."""
+    """Amends `calibration C0012`, `coating 17` or `point C0012/3`. An empty text makes a column unknown.
+
+    Raises DoubtfulEntry where somebody else lately amended the same, unless confirmed.
+    """
     with record.writing(reason) as writer:
         sheet, row_id, ordinal = _place(writer, one, name)
         before = {} if ordinal else row_by_id(writer.connection, sheet, row_id) if _live(writer, sheet, row_id) else {}
         if sheet is sheets.CALIBRATIONS:
             typed = handling.amended(before.get("note"), typed)
         values = {column: _read(sheet, column, text, zone) for column, text in typed.items()}
+        if not confirmed:
+            columns = {schema.column_name(sheet.by_name[column]) for column in values}
+            earlier.refuse_unseen(writer, sheet.name, row_id, ordinal, columns)
         changed = amend.amend(writer, sheet, row_id, values, ordinal)
         _make_figures_anew(writer, sheet, row_id)
         plain = {column.removesuffix("_id"): pair for column, pair in changed.items()}

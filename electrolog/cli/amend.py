@@ -5,8 +5,8 @@ from typing import Annotated
 import typer
 
 from electrolog.cli.add import split
-from electrolog.cli.options import Json, Why
-from electrolog.cli.session import lab_of
+from electrolog.cli.options import Json, Why, Yes
+from electrolog.cli.session import lab_of, once_confirmed
 
 
 def command(
@@ -15,6 +15,7 @@ def command(
     name: Annotated[str, typer.Argument(metavar="NAME", help="Its label, or the number that `life` shows.")],
     values: Annotated[list[str], typer.Argument(metavar="COLUMN=VALUE...", help="An empty value: unknown.")],
     why: Why = "",
+    yes: Yes = False,
     json: Json = False,
 ) -> None:
     """Correct a value. The old one, who, when and the reason are kept in the journal.
@@ -25,4 +26,6 @@ def command(
     """
     from electrolog.show import corrections
 
-    corrections.answer(lab_of(ctx).amend(kind, name, dict(split(text) for text in values), why), json)
+    lab, changes = lab_of(ctx), dict(split(text) for text in values)
+    done = once_confirmed(lambda confirmed: lab.amend(kind, name, changes, why, confirmed=confirmed), yes)
+    corrections.answer(done, json)

@@ -9,7 +9,7 @@ from sqlalchemy import ColumnElement, Connection, func, select, update
 
 from electrolog.errors import InputError
 from electrolog.record import columns as kinds
-from electrolog.record import entry, schema, sheets
+from electrolog.record import earlier, entry, schema, sheets
 from electrolog.record.builtin import REASON as BUILT_IN
 from electrolog.record.columns import Value
 from electrolog.record.journal import Writer
@@ -82,7 +82,8 @@ def _live_row(writer: Writer, sheet: Sheet, row_id: int, ordinal: int | None) ->
     if row is None:
         raise InputError(f"there is no {sheet.one} {row_id if ordinal is None else f'number {ordinal}'}")
     if row["struck"] is not None:
-        raise InputError(f"this {sheet.one} was struck (journal entry {row['struck']}); accepted: a live one")
+        by = earlier.struck_by(writer.connection, row["struck"])
+        raise InputError(f"this {sheet.one} was struck (journal entry {row['struck']}, {by}); accepted: a live one")
     return {name: value for name, value in row.items() if name not in ("id", "ordinal", "struck")}
 
 

@@ -8,8 +8,8 @@ from typing import Any
 import pytest
 
 from electrolog.answers.entering import NewCalibration
-from electrolog.errors import InputError, UnknownName
-from electrolog.lab import Lab
+from electrolog.errors import DoubtfulEntry, InputError, UnknownName
+from electrolog.lab import Lab, open_lab
 
 
 def newest(lab: Lab) -> Any:
@@ -186,3 +186,49 @@ def test_a_struck_point_leaves_its_calibration(lived_in: Lab, raw: Callable[...,
 def test_names_unknown_are_answered_with_the_nearest(shared: Lab) -> None:
     with pytest.raises(UnknownName, match="nearest known one is 'C0001'"):
         shared.amend("calibration", "C001", {"note": "x"}, "because")
+
+
+# --- two people at the same entry ---------------------------------------------------------------------------------
+
+
+def second_person(lab: Lab) -> Lab:
+    return open_lab(lab.record.engine.url.render_as_string(False), who="finch")
+
+
+def test_the_second_to_amend_an_entry_is_told_what_the_first_did(lived_in: Lab) -> None:
+    lived_in.amend("exposure", "1", {"duration_min": "3h"}, "typed wrong")
+    second = second_person(lived_in)
+    with pytest.raises(DoubtfulEntry) as told:
+        second.amend("exposure", "1", {"duration_min": "2h"}, "read off the log")
+    assert "wren changed duration_min from 240.0 to 180.0" in told.value.doubts[0]
+    assert "typed wrong" in told.value.message
+    done = second.amend("exposure", "1", {"duration_min": "2h"}, "read off the log", confirmed=True)
+    assert done.changes == {"duration_min": (180.0, 120.0)}
+    assert lived_in.verify().whole
+
+
+def test_of_a_point_too(lived_in: Lab) -> None:
+    lived_in.amend("point", "C0001/3", {"current_na": "6.2"}, "misread")
+    second = second_person(lived_in)
+    second.amend("point", "C0001/4", {"current_na": "6.2"}, "another point is another matter")
+    with pytest.raises(DoubtfulEntry, match=r"wren changed current_na from 6\.1 to 6\.2"):
+        second.amend("point", "C0001/3", {"current_na": "6.4"}, "misread")
+
+
+def test_other_columns_and_own_second_thoughts_are_no_matter(lived_in: Lab) -> None:
+    lived_in.amend("exposure", "1", {"duration_min": "3h"}, "typed wrong")
+    assert lived_in.amend("exposure", "1", {"duration_min": "2h"}, "once more").changes
+    assert second_person(lived_in).amend("exposure", "1", {"note": "left arm"}, "forgotten").changes
+
+
+def test_what_was_amended_long_ago_is_no_matter(lived_in: Lab, monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setenv("ELECTROLOG_NOW", "2026-02-01T00:00:00Z")
+    lived_in.amend("exposure", "1", {"duration_min": "3h"}, "typed wrong")
+    monkeypatch.setenv("ELECTROLOG_NOW", "2026-02-03T00:00:00Z")
+    assert second_person(lived_in).amend("exposure", "1", {"duration_min": "2h"}, "read off the log").changes
+
+
+def test_who_struck_an_entry_is_told(lived_in: Lab) -> None:
+    lived_in.strike("cleaning", "1", "never happened")
+    with pytest.raises(InputError, match=r"struck .*by wren at .*: never happened"):
+        second_person(lived_in).amend("cleaning", "1", {"duration_min": "5min"}, "read off the log")
