@@ -44,6 +44,7 @@ class Record:
         self.engine = engine
         weakref.finalize(self, engine.dispose)  # a connection left open would keep the file in use on Windows
         self._named = who
+        self.read_only = False
 
     @cached_property
     def who(self) -> str:
@@ -83,6 +84,8 @@ class Record:
     @contextmanager
     def changing(self) -> Iterator[Connection]:
         """One transaction, and no other's meanwhile."""
+        if self.read_only:
+            raise RecordError(f"{self.name} was opened to be read only", "open it with write=True")
         engine = self.engine.execution_options(electrolog_writes=True)
         with translated(self.name), engine.begin() as connection:
             if not self.is_file:
@@ -93,6 +96,8 @@ class Record:
     @property
     def may_keep(self) -> bool:
         """Whether what was worked out may be kept for the next who asks: a login that only reads may not."""
+        if self.read_only:
+            return False
         if self.is_file:
             return os.access(self.name, os.W_OK)
         allowed = text("SELECT has_table_privilege('kept_fits', 'INSERT, DELETE')")
