@@ -48,6 +48,7 @@ COMMANDS: dict[str, dict[str, str]] = {
         "recompute": "Make all figures again from the raw points.",
     },
     "The record": {
+        "completion": "What makes your shell complete commands, labels and words.",
         "setup": "Make a record, or bring an older one up to date.",
         "add": "Add a word, an analyte or a waveform.",
         "adopt": "Take in a spreadsheet as the lab kept it: dry run first.",
