@@ -37,7 +37,7 @@ def log_sensitivity_along(drawn: Posterior, moments: Events, passed: Floats) -> 
 
 def _of_strand(place: int, strand: Strand, moments: Events, counts: Integers, passed: Floats) -> Floats:
     """(T, K, S)"""
-    scales = known_scales(strand.component, moments, place)
+    scales = known_scales((strand.component,), moments, place)
     hours = run_clock(moments, scales.weight, scales.recovery).at_end.T
     shape = (len(counts), *strand.level.shape[1:])
     alike = Strand(

@@ -8,16 +8,16 @@ damage.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import replace
+from itertools import groupby
+from zlib import crc32
 
 import numpy as np
 from numpy.typing import NDArray
 
 from electrolog.fouling.batches import Batch, pad_units
 from electrolog.fouling.clock import Clock, log_area_changes, run_clock
-from electrolog.fouling.covariance import Covariance, between, extended
 from electrolog.fouling.draws import Posterior, Strand
-from electrolog.fouling.effects import Effects
 from electrolog.fouling.events import READING, Events
 from electrolog.fouling.fates import damage_chances, slip_chances
 from electrolog.fouling.fit import CohortFit, Component
@@ -25,6 +25,7 @@ from electrolog.fouling.line_error import LineError
 from electrolog.fouling.parameters import Scales, prior_draws, read_scales
 from electrolog.fouling.quadrature import Grid, Setup, Tilted, refit_grid, starting_grid, tilt
 from electrolog.fouling.sampling import sample
+from electrolog.fouling.views import Cavity, View, cavities, widen
 
 Floats = NDArray[np.float64]
 Integers = NDArray[np.int64]
@@ -38,11 +39,28 @@ def posterior(fit: CohortFit, events: Events) -> Posterior:
     at_readings, at_end = log_area_changes(events)
     counts = np.bincount(events.unit[is_reading], minlength=len(events.units))
     slipped, damaged = np.zeros(int(is_reading.sum())), np.zeros(len(events.units))
-    strands = []
-    for place, part in enumerate(fit.components):
-        strands.append(draw_strand(part, place, events, fit.line_error, per_theta(part), slipped, damaged))
+    strands: list[Strand] = []
+    points = own_points(events.units)
+    for parts in of_one_shape(fit.components):
+        strands += draw_strands(parts, len(strands), events, fit.line_error, points, slipped, damaged)
+        points = points + sum(len(part.theta_draws) * per_theta(part) for part in parts)
     first = np.cumsum(counts) - counts
     return Posterior(tuple(strands), first, counts, at_end, at_readings, slipped, damaged)
+
+
+def of_one_shape(components: tuple[Component, ...]) -> list[tuple[Component, ...]]:
+    """Components drawn from at once: a young cohort has dozens, alike in all but numbers."""
+    alike = groupby(components, lambda part: (part.layout.shape.name, per_theta(part)))
+    return [tuple(parts) for _, parts in alike]
+
+
+def own_points(units: tuple[str, ...]) -> Integers:
+    """Where each unit's even points begin: the same whoever else is asked about, and others' elsewhere.
+
+    A unit's draws go on from one component to the next: were they to begin anew, every component would draw the same
+    few errors, and the tails of a forecast would rest on those.
+    """
+    return np.array([crc32(label.encode()) % 1_000_003 for label in units], dtype=np.int64)
 
 
 def per_theta(part: Component) -> int:
@@ -50,42 +68,53 @@ def per_theta(part: Component) -> int:
     return max(1, round(DRAWS * part.weight / len(part.theta_draws)))
 
 
-@dataclass(frozen=True)
-class View:
-    """A component seen from new events: shared effects with columns for names that the fit didn't know."""
-
-    part: Component
-    effects: Effects
-    mean: Floats  # (F + 1,)
-    mean_draws: Floats  # (K, F + 1)
-    covariance: Covariance
-    old_columns: Integers  # new place of each of the fit's columns, and of "none"
-
-
-def draw_strand(
-    part: Component, place: int, events: Events, line: LineError, per_theta: int, slipped: Floats, damaged: Floats
-) -> Strand:
-    view = widen(part, events)
-    scales = known_scales(part, events, place)
-    peak = known_scales(part, events, place, at_peak=True)
+def draw_strands(
+    parts: tuple[Component, ...],
+    place: int,
+    events: Events,
+    line: LineError,
+    points: Integers,
+    slipped: Floats,
+    damaged: Floats,
+) -> list[Strand]:
+    """place: of the first part in its fit. Adds to slipped (M,) and damaged (U,)."""
+    view = widen(parts, events)
+    scales = known_scales(parts, events, place)
+    peak = known_scales(parts, events, place, at_peak=True)
     clock = run_clock(events, scales.weight, scales.recovery)
     peak_clock = run_clock(events, peak.weight, peak.recovery)
-    n_units, k, q = len(events.units), len(part.theta_draws), len(part.layout.shape.latents)
-    latents, level = np.zeros((n_units, k, per_theta, q)), np.zeros((n_units, k, per_theta))
+    n_units, k, q = len(events.units), len(view.owner), len(view.shape.latents)
+    each = per_theta(parts[0])
+    share = np.array([part.weight / len(part.theta_draws) for part in parts])[view.owner]
+    latents, level = np.zeros((n_units, k, each, q)), np.zeros((n_units, k, each))
     damage, since = np.zeros_like(level), np.zeros(level.shape, dtype=np.int64)
     for units, size in groups_by_size(events, k):
         batch = pad_units(units, size, events, view.effects, q, line)
         cavity = cavities(view, batch, events)
         grid = peak_grid(view, batch, cavity, peak, peak_clock)
         pairs = set_up_pairs(view, batch, cavity, scales, clock)
-        tilted, grid = tilt_pairs(part, pairs, grid)
-        found = sample(tilted, grid, pairs, cavity_of_level(cavity, batch, view), per_theta)
+        tilted, grid = tilt_pairs(view, pairs, grid)
+        first = (points[units][:, None] + np.arange(k) * each).ravel()
+        found = sample(tilted, grid, pairs, cavity.of_level(), first, each)
         at = units
         latents[at], level[at], damage[at], since[at] = (x.reshape(len(units), k, *x.shape[1:]) for x in found)
-        by_fate = tilted.probability.sum(axis=1).reshape(len(units), k, -1).mean(axis=1)
-        slipped[batch.reading[batch.real]] += part.weight * slip_chances(by_fate, size)[batch.real]
-        damaged[at] += part.weight * damage_chances(by_fate, size).sum(axis=1)
-    return Strand(part, scales.shape, scales.weight, clock.at_end, clock.at_readings, latents, level, damage, since)
+        by_fate = np.einsum("bko,k->bo", tilted.probability.sum(axis=1).reshape(len(units), k, -1), share)
+        slipped[batch.reading[batch.real]] += slip_chances(by_fate, size)[batch.real]
+        damaged[at] += damage_chances(by_fate, size).sum(axis=1)
+    return [
+        Strand(
+            part,
+            scales.shape[mine],
+            scales.weight[mine],
+            clock.at_end[mine],
+            clock.at_readings[mine],
+            latents[:, mine],
+            level[:, mine],
+            damage[:, mine],
+            since[:, mine],
+        )
+        for part, mine in zip(parts, view.slices, strict=True)
+    ]
 
 
 def groups_by_size(events: Events, k: int) -> list[tuple[Integers, int]]:
@@ -96,39 +125,18 @@ def groups_by_size(events: Events, k: int) -> list[tuple[Integers, int]]:
     return [(chunk, max(1, int(counts[chunk].max()))) for chunk in chunks if len(chunk)]
 
 
-def widen(part: Component, events: Events) -> View:
-    known = set(part.effects.names)
-    new: list[tuple[str, ...]] = []
-    variances = []
-    scales = read_scales(part.layout, part.theta)
-    for g, (what, factor) in enumerate(part.layout.group_sds):
-        fresh = sorted({(what, factor, v) for v in events.groups.get(factor, ()) if v} - known)
-        new += fresh
-        variances += [float(scales.group_sds[g]) ** 2] * len(fresh)
-    days = sorted({("day", events.days[d]) for d in events.which[events.kind == READING]} - known)
-    new += days
-    variances += [float(scales.day_sd) ** 2] * len(days)
-    n, more = len(part.effects.names), len(new)
-    covariance = extended(part.covariance, np.array(variances))
-    names = part.effects.names + tuple(new)
-    slots = np.concatenate([part.effects.variance_slot, np.full(more, -1)])
-    effects = Effects(names, np.zeros(n + more), np.zeros(n + more), slots)
-    padded = np.concatenate([part.mean, np.zeros(more + 1)])
-    draws = np.concatenate([part.mean_draws, np.zeros((len(part.mean_draws), more + 1))], axis=1)
-    return View(part, effects, padded, draws, covariance, np.append(np.arange(n), n + more))
-
-
-def known_scales(part: Component, events: Events, place: int, at_peak: bool = False) -> Scales:
+def known_scales(parts: tuple[Component, ...], events: Events, place: int, at_peak: bool = False) -> Scales:
     """Hyper-parameters with the settings and renewals in the events' own order; unknown ones drawn from their priors.
 
-    place: of the component in its fit; a component may hold one draw only, and each is to get another one of the prior.
+    parts: of one shape; place: of the first in its fit. A component may hold one draw only, and each is to get another
+    one of the prior.
     """
-    theta = part.theta[None] if at_peak else part.theta_draws
-    scales = read_scales(part.layout, theta)
+    layout = parts[0].layout
+    scales = read_scales(layout, np.concatenate([part.theta[None] if at_peak else part.theta_draws for part in parts]))
     spin = None if at_peak else place
-    weight = reorder(scales.weight, part.layout.settings, events.settings, "weight", spin)
-    recovery = reorder(scales.recovery, part.layout.renewals, events.renewals, "recovery", spin)
-    return Scales(**{**scales.__dict__, "weight": weight, "recovery": recovery})
+    weight = reorder(scales.weight, layout.settings, events.settings, "weight", spin)
+    recovery = reorder(scales.recovery, layout.renewals, events.renewals, "recovery", spin)
+    return replace(scales, weight=weight, recovery=recovery)
 
 
 def reorder(values: Floats, known: tuple[str, ...], asked: tuple[str, ...], what: str, spin: int | None) -> Floats:
@@ -142,38 +150,9 @@ def reorder(values: Floats, known: tuple[str, ...], asked: tuple[str, ...], what
     return np.stack(columns, axis=-1) if columns else np.zeros((len(values), 0))
 
 
-def cavities(view: View, batch: Batch, events: Events) -> tuple[Floats, Floats]:
-    """What each unit's rows and its level see of the shared effects: means (K, B, R + 1), covariances (B, R + 1, R
-    + 1)."""
-    level = np.full((len(batch.unit), 1, batch.columns.shape[2]), len(view.effects.names))
-    level[:, 0, : batch.level_columns.shape[1]] = batch.level_columns
-    rows = np.concatenate([batch.columns, level], axis=1)
-    means = view.mean_draws[:, rows].sum(axis=-1)
-    joint = between(view.covariance, rows, rows)
-    for kept in view.part.units:
-        place = {label: k for k, label in enumerate(kept.labels)}
-        pairs = [(k, place[events.units[u]]) for k, u in enumerate(batch.unit) if events.units[u] in place]
-        if not pairs:
-            continue
-        here, there = np.array(pairs).T
-        old = view.old_columns[kept.columns[there]]
-        cross, own = between(view.covariance, rows[here], old), between(view.covariance, old, old)
-        precision = kept.precision[there]
-        gain = cross @ np.linalg.inv(np.eye(own.shape[1]) - precision @ own)
-        joint[here] += gain @ precision @ cross.transpose(0, 2, 1)
-        seen = view.mean_draws[:, old].sum(axis=-1)
-        pull = np.einsum("bij,kbj->kbi", precision, seen) - kept.shift[there]
-        means[:, here] += np.einsum("bij,kbj->kbi", gain, pull)
-    return means, 0.5 * (joint + joint.transpose(0, 2, 1))
-
-
-def set_up_pairs(view: View, batch: Batch, cavity: tuple[Floats, Floats], scales: Scales, clock: Clock) -> Setup:
+def set_up_pairs(view: View, batch: Batch, cavity: Cavity, scales: Scales, clock: Clock) -> Setup:
     """Every unit with every draw of the hyper-parameters: B K rows, the draw running fastest."""
-    means, joint = cavity
-    k, b = means.shape[:2]
-
-    def per_unit(value: Floats) -> Floats:
-        return np.repeat(value, k, axis=0)
+    b, k = cavity.means.shape[:2]
 
     def per_draw(value: Floats) -> Floats:
         return np.tile(value, (b, *[1] * (value.ndim - 1)))
@@ -182,13 +161,14 @@ def set_up_pairs(view: View, batch: Batch, cavity: tuple[Floats, Floats], scales
     shown = np.zeros((b, k, batch.real.shape[1])) if hours is None else hours
     pairs = batch.repeated(k)
     # A reading on a day that the fit never saw may be off because that day was bad: beside a slip, one more chance.
-    new_day = pairs.real & (pairs.columns[:, len(view.part.layout.shape.latents) :, -1] >= len(view.part.effects.names))
+    new_day = pairs.real & (pairs.columns[:, len(view.shape.latents) :, -1] >= view.n_known)
     slip_odds = per_draw(scales.slip_odds)[:, None] + new_day * per_draw(scales.bad_day_odds)[:, None]
+    means, joint = cavity.of_rows()
     return Setup(
         pairs,
         shown.reshape(b * k, -1) * pairs.real,
-        means.transpose(1, 0, 2)[:, :, :-1].reshape(b * k, -1),
-        per_unit(joint[:, :-1, :-1]),
+        means,
+        joint,
         per_draw(scales.level_sd**2),
         per_draw(scales.residual_sd**2),
         per_draw(scales.latent_sds**2),
@@ -198,27 +178,19 @@ def set_up_pairs(view: View, batch: Batch, cavity: tuple[Floats, Floats], scales
     )
 
 
-def peak_grid(view: View, batch: Batch, cavity: tuple[Floats, Floats], peak: Scales, clock: Clock) -> Grid:
-    """Grids at the most probable hyper-parameters, where those of all draws start."""
-    at_peak = (cavity[0].mean(axis=0, keepdims=True), cavity[1])
-    setup = set_up_pairs(view, batch, at_peak, peak, clock)
+def peak_grid(view: View, batch: Batch, cavity: Cavity, peak: Scales, clock: Clock) -> Grid:
+    """Grids at each part's most probable hyper-parameters, where those of all its draws start."""
+    setup = set_up_pairs(view, batch, cavity.at_peaks(view), peak, clock)
     grid = starting_grid(setup)
     for _ in range(6):
-        grid = refit_grid(tilt(view.part.layout.shape, setup, grid), grid)
-    k = len(view.part.theta_draws)
-    if k == 1:
+        grid = refit_grid(tilt(view.shape, setup, grid), grid)
+    if view.at_peak:
         return grid
-    return Grid(np.repeat(grid.centre, k, axis=0), np.repeat(grid.spread, k, axis=0) * 1.2)
+    pair = (np.arange(len(batch.unit))[:, None] * len(view.slices) + view.owner).ravel()
+    return Grid(grid.centre[pair], grid.spread[pair] * 1.2)
 
 
-def tilt_pairs(part: Component, setup: Setup, grid: Grid) -> tuple[Tilted, Grid]:
-    if len(part.theta_draws) > 1:  # a single draw stands at the peak, where its grid was laid already
-        grid = refit_grid(tilt(part.layout.shape, setup, grid), grid)
-    return tilt(part.layout.shape, setup, grid), grid
-
-
-def cavity_of_level(cavity: tuple[Floats, Floats], batch: Batch, view: View) -> tuple[Floats, Floats]:
-    """Per pair: mean (B K,) of the unit's expected level, and its covariance with every row and itself (B K, R + 1)."""
-    means, joint = cavity
-    k = len(means)
-    return means[:, :, -1].T.ravel(), np.repeat(joint[:, -1, :], k, axis=0)
+def tilt_pairs(view: View, setup: Setup, grid: Grid) -> tuple[Tilted, Grid]:
+    if not view.at_peak:
+        grid = refit_grid(tilt(view.shape, setup, grid), grid)
+    return tilt(view.shape, setup, grid), grid

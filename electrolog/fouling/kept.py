@@ -35,11 +35,18 @@ def to_dict(fit: CohortFit) -> dict[str, Any]:
 
 
 def from_dict(kept: dict[str, Any]) -> CohortFit:
-    """Raises DataError when the fit was kept by another version of the method."""
+    """Raises DataError when the fit was kept by another version of the method, or its layout is none that is known."""
     if kept.get("method") != METHOD:
         raise DataError(
             f"the kept fit was made by method {kept.get('method')}; this version makes {METHOD}", "fit the cohort again"
         )
+    try:
+        return _read(kept)
+    except (KeyError, TypeError, ValueError) as fault:
+        raise DataError(f"the kept fit can't be read: {fault!r}", "fit the cohort again") from fault
+
+
+def _read(kept: dict[str, Any]) -> CohortFit:
     parts = tuple(_read_component(part) for part in kept["components"])
     plain = {name: kept[name] for name in PLAIN}
     return CohortFit(

@@ -63,7 +63,7 @@ def unpacked(
     nothing = Events(whole, np.zeros(0, dtype=np.int8), whole, none, none, (), settings, (), (), {})
     strands = []
     for place, (part, picks) in enumerate(zip(fit.components, _picks(fit.components, most), strict=True)):
-        scales, theta = known_scales(part, nothing, place), picks // per_theta(part)
+        scales, theta = known_scales((part,), nothing, place), picks // per_theta(part)
         # Any: single precision does as well for what is asked of them here
         hours, latents, level = (cast(Any, arrays[f"{name} {place}"]) for name in ("hours", "latents", "level"))
         without = np.zeros((1, 1, 1))

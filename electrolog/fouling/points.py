@@ -12,12 +12,20 @@ FEW = 50_000
 
 
 def even_points(count: int, dimensions: int) -> Floats:
-    """(count, dimensions) in (0, 1): multiples of powers of the generalised golden ratio, modulo 1 (Kronecker)."""
+    """(count, dimensions) in (0, 1): the first of an even sequence."""
+    return points_at(np.arange(count), dimensions)
+
+
+def points_at(which: NDArray[np.int64], dimensions: int) -> Floats:
+    """(..., dimensions) in (0, 1): multiples of powers of the generalised golden ratio, modulo 1 (Kronecker).
+
+    Any stretch of consecutive ones is even.
+    """
     ratio = 2.0
     for _ in range(40):
         ratio = (1.0 + ratio) ** (1.0 / (dimensions + 1))
     steps = ratio ** -np.arange(1.0, dimensions + 1)
-    return np.asarray((0.5 + np.arange(1, count + 1)[:, None] * steps) % 1.0)
+    return np.asarray((0.5 + (which[..., None] + 1) * steps) % 1.0)
 
 
 def normal_quantiles(probability: Floats) -> Floats:

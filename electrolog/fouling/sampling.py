@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 
-from electrolog.fouling.points import even_points, normal_quantiles
+from electrolog.fouling.points import normal_quantiles, points_at
 from electrolog.fouling.quadrature import Grid, Setup, Tilted, standard_nodes
 
 Floats = NDArray[np.float64]
@@ -13,13 +13,15 @@ Integers = NDArray[np.int64]
 
 
 def sample(
-    tilted: Tilted, grid: Grid, setup: Setup, level: tuple[Floats, Floats], per_theta: int
+    tilted: Tilted, grid: Grid, setup: Setup, level: tuple[Floats, Floats], first: Integers, per_theta: int
 ) -> tuple[Floats, Floats, Floats, Integers]:
-    """S draws per pair: latents (B, S, q), level before damage (B, S), damage (B, S), and the reading it came
-    before."""
+    """S draws per pair: latents (B, S, q), level before damage (B, S), damage (B, S), and the reading it came before.
+
+    first (B,): which of the even points each pair's own begin with.
+    """
     n_pairs, n_nodes, n_fates = tilted.probability.shape
     q, n = tilted.nodes.shape[2], setup.batch.real.shape[1]
-    points = even_points(n_pairs * per_theta, 3 + q).reshape(n_pairs, per_theta, 3 + q)
+    points = points_at(first[:, None] + np.arange(per_theta), 3 + q)
     ranks = (np.arange(per_theta) + points[:, :, 0]) / per_theta
     steps = np.cumsum(tilted.probability.reshape(n_pairs, -1), axis=1)
     cell = np.minimum((ranks[:, :, None] * steps[:, -1:, None] > steps[:, None, :]).sum(axis=2), n_nodes * n_fates - 1)

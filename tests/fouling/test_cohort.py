@@ -126,19 +126,39 @@ class TestKeptFit:
         with pytest.raises(DataError, match="cohort-0"):
             CohortFit.from_dict(fit.to_dict() | {"method": "cohort-0"})
 
+    @pytest.mark.parametrize("missing", ["components", "line_error", "summary"])
+    def test_a_fit_of_another_layout_is_refused(self, fit, missing):
+        kept = {name: value for name, value in fit.to_dict().items() if name != missing}
+        with pytest.raises(DataError, match=missing):
+            CohortFit.from_dict(kept)
+
+    def test_a_component_of_another_layout_is_refused(self, fit):
+        kept = fit.to_dict()
+        del kept["components"][0]["mean_draws"]
+        with pytest.raises(DataError, match="mean_draws"):
+            CohortFit.from_dict(kept)
+
     def test_fitting_again_gives_the_same_numbers(self):
         known = fleet("young-lab", 2)
         first, second = (fit_cohort(known.events).to_dict() for _ in range(2))
         assert first == second
 
-    def test_a_unit_alone_is_forecast_as_among_all(self, lab, fit):
+    def test_a_units_draws_are_the_same_whoever_else_is_asked_about(self, lab, fit):
         """Its own readings were in the fit: they count once, whichever way it is asked."""
         among = posterior(fit, lab.events).log_sensitivity(ahead(lab.events))
-        for unit in (0, 17, 80):
-            alone = take_units(lab.events, np.array([unit]))
+        for units in ([0], [17], [80], [17, 80]):
+            asked = take_units(lab.events, np.array(units))
+            draws = posterior(fit, asked).log_sensitivity(ahead(asked))
+            np.testing.assert_allclose(draws, among[units], rtol=0, atol=1e-4)
+
+    def test_in_a_young_cohort_too(self):
+        known = fleet("young-lab", 3)
+        fit = fit_cohort(known.events)
+        among = posterior(fit, known.events).log_sensitivity(ahead(known.events))
+        for unit in (5, 20):
+            alone = take_units(known.events, np.array([unit]))
             draws = posterior(fit, alone).log_sensitivity(ahead(alone))[0]
-            assert draws.mean() == pytest.approx(among[unit].mean(), abs=0.01)
-            assert draws.std() == pytest.approx(among[unit].std(), rel=0.1)
+            np.testing.assert_allclose(draws, among[unit], rtol=0, atol=2e-4)
 
     def test_a_new_reading_on_a_new_day_moves_and_narrows_the_forecast(self, lab, fit):
         known = take_units(lab.events, np.array([9]))
