@@ -19,3 +19,4 @@ def _nothing_of_the_users(monkeypatch: pytest.MonkeyPatch) -> None:
         monkeypatch.delenv(name)
     for name in ("COLUMNS", "FORCE_COLOR", "NO_COLOR", "PYTHONIOENCODING"):
         monkeypatch.delenv(name, raising=False)
+    monkeypatch.setenv("ELECTROLOG_SETTINGS", os.devnull)

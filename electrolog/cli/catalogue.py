@@ -48,6 +48,7 @@ COMMANDS: dict[str, dict[str, str]] = {
         "recompute": "Make all figures again from the raw points.",
     },
     "The record": {
+        "settings": "What is taken where nothing is typed: rig, by, zone.",
         "completion": "What makes your shell complete commands, labels and words.",
         "setup": "Make a record, or bring an older one up to date.",
         "add": "Add a word, an analyte or a waveform.",
@@ -63,6 +64,11 @@ COMMANDS: dict[str, dict[str, str]] = {
     },
 }
 
+# What enters or changes something and only confirms it: silent with --quiet.
+WRITING = {
+    *(set(COMMANDS["At the bench"]) - {"dilutions"}),
+    *("amend", "strike", "recompute", "add", "adopt", "template", "import", "export", "setup"),
+}
 HELP = {name: text for section in COMMANDS.values() for name, text in section.items()}
 
 

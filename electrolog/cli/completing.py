@@ -12,6 +12,7 @@ from collections.abc import Iterator, Sequence
 from typing import Any
 
 from electrolog.cli.catalogue import HELP, module_of
+from electrolog.cli.preferences import in_force, usual_place
 
 # What an option's value names: a sheet, or a word list.
 VALUES = {
@@ -85,14 +86,8 @@ def _taken_apart(before: Sequence[str]) -> tuple[str, str | None, list[str]]:
             value = next(words, "")
             where = value if word == "--db" else where
         elif not word.startswith("-"):
-            return where or _usual_place(), word if word in HELP else "", list(words)
+            return where or in_force(None).get("db") or usual_place(), word if word in HELP else "", list(words)
     return where, None, []
-
-
-def _usual_place() -> str:
-    import platformdirs
-
-    return str(platformdirs.user_data_path("electrolog", appauthor=False) / "record.db")
 
 
 def _argument(command: str, rest: Sequence[str]) -> str:

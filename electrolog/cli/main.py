@@ -2,18 +2,21 @@
 
 from __future__ import annotations
 
+import contextlib
 import difflib
 import importlib
 import json
 import os
 import sys
+from pathlib import Path
 from typing import Annotated, Any
 
 import typer
 from typer.core import TyperGroup
 from typer.exceptions import TyperException
 
-from electrolog.cli.catalogue import COMMANDS, HELP, module_of
+from electrolog.cli.catalogue import COMMANDS, HELP, WRITING, module_of
+from electrolog.cli.preferences import ENTRIES, in_force
 from electrolog.cli.session import Session
 from electrolog.errors import ElectrologError, FaultyRows, InputError
 from electrolog.show.text import one_line, prepare_streams, safe
@@ -81,13 +84,19 @@ def electrolog(
         str | None,
         typer.Option("--zone", metavar="NAME", help="Zone of times without an offset (default: the machine's)."),
     ] = None,
+    quiet: Annotated[bool, typer.Option("--quiet", help="Say nothing of an entry that went well.")] = False,
 ) -> None:
     """The life of every carbon-fibre microelectrode: what it was, what it sees, how long it will hold.
 
     It advises people who decide: approved protocol, licensed practice and local rules come first. Never for
     clinical decisions.
     """
-    ctx.obj = Session(db, zone)
+    told = {} if ctx.invoked_subcommand == "settings" else in_force(db)
+    ctx.obj = Session(told.get("db") if db is None else db, zone or told.get("zone"))
+    ctx.default_map = dict.fromkeys(ENTRIES, told)
+    if quiet and ctx.invoked_subcommand in WRITING:
+        silenced = ctx.with_resource(Path(os.devnull).open("w", encoding="utf-8"))  # noqa: SIM115 -- it closes it
+        ctx.with_resource(contextlib.redirect_stdout(silenced))
 
 
 def run() -> None:

@@ -18,6 +18,7 @@ from electrolog.cli.main import main
 WITH_THEIR_OWN_TESTS = {
     *("trace", "scans", "backtest", "fit", "forecast", "check", "control", "convert", "assign"),
     "roles",  # on a server
+    "settings",  # with a file of its own
 }
 ON_AN_EMPTY_RECORD = {"adopt", "new", "setup", "import"}
 STATUSES = {"check": {0, 10, 20, 30}}
