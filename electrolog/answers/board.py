@@ -33,7 +33,7 @@ from electrolog.record.store import Record
 
 ALL_DRAWS, FEWER_DRAWS = 1 << 20, 512
 LARGE = 400  # probes; below, a forecast is made as fast as it would be read
-VERSION = 2
+VERSION = 3
 REFERENCE = "reference"
 
 

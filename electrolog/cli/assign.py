@@ -27,14 +27,14 @@ def command(
     setting: Annotated[str | None, typer.Option("--setting", "-s", help="Of the typed runs.")] = None,
     needs: Annotated[str, typer.Option("--needs", help="Of the typed runs: the smallest signal to be seen.")] = "",
     project: Project = "",
-    between: Annotated[str, typer.Option("--between", help="From one run of a probe to its next, at least.")] = "1h",
+    gap: Annotated[str, typer.Option("--gap", help="From one run of a probe to its next, at least.")] = "1h",
     at: AsOf = "now",
     json: Json = False,
     csv: Csv = False,
 ) -> None:
     """Which probe for which planned run, so that the odds that all succeed are greatest; and what can't be served.
 
-    electrolog assign week.csv --between 2h
+    electrolog assign week.csv --gap 2h
 
     electrolog assign --planned Mon=2026-02-02T09:00,2h -a dopamine -w triangle -s in-vivo
     """
@@ -51,5 +51,5 @@ def command(
     else:
         shared = {"analyte": analyte, "waveform": waveform, "setting": setting, "needs": needs, "project": project}
         rows = plan_of(((text, {**shared, **read_typed(text)}) for text in typed or []), lab.zone)
-    turnaround = parse_quantity(between, MINUTES, "between")
+    turnaround = parse_quantity(gap, MINUTES, "gap")
     assignment.answer(lab.assign(rows, turnaround_min=turnaround, moment=lab.moment(at)), lab.zone, json, csv)

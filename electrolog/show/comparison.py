@@ -2,12 +2,15 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+
 from electrolog.answers.comparing import Compared
 from electrolog.judge.compare import Difference, Estimate
 from electrolog.show.machine import plain, print_csv, print_json
 from electrolog.show.tables import print_lines, print_table
 from electrolog.units import shown_number
 
+MOST_SHOWN = 18
 _ESTIMATES = ("measure", "group", "probes", "value", "95 % interval")
 _DIFFERENCES = ("measure", "between", "ratio or difference", "p (Holm)", "clear", "more per group")
 
@@ -24,9 +27,18 @@ def answer(found: Compared, json: bool, csv: bool) -> None:
             _ESTIMATES, [_estimate(one) for one in comparison.estimates], ("probes", "value"), ("probes",), "measure"
         )
         print_lines("")
-        rows = [_difference(one) for one in comparison.differences]
+        shown, rest = _clearest(comparison.differences)
+        rows = [_difference(one) for one in shown]
         print_table(_DIFFERENCES, rows, ("p (Holm)",), ("more per group", "clear", "p (Holm)"), "measure")
-        print_lines(*_said(found), *[f"! {note}" for note in found.notes])
+        print_lines(*rest, *_said(found), *[f"! {note}" for note in found.notes])
+
+
+def _clearest(differences: Sequence[Difference]) -> tuple[list[Difference], list[str]]:
+    """Eight batches make 28 pairs in every measure: the clearest, and how many more there are."""
+    if len(differences) <= MOST_SHOWN:
+        return list(differences), []
+    shown = sorted(differences, key=lambda one: 2.0 if one.p is None else one.p)[:MOST_SHOWN]
+    return shown, [f"and {len(differences) - MOST_SHOWN} less clear ones; --json shows all"]
 
 
 def _estimate(one: Estimate) -> tuple[object, ...]:

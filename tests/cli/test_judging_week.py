@@ -157,3 +157,13 @@ def test_probes_of_which_nothing_is_known_are_named_with_the_reason(judged: Term
     judged.ok("new", "N1,N2")
     assert "can't be told, never calibrated with dopamine and triangle: N1, N2" in judged.ok("outlook", *RUN).out
     assert "accepted: none or more" in judged.refused("outlook", *RUN, "--runs", "-1")
+
+
+def test_a_probe_rests_between_its_runs(judged: Terminal) -> None:
+    for probe in judged.ok("shelf", "--json").json:
+        if probe["electrode"] != "R1":
+            judged.ok("retire", probe["electrode"], "-r", "broken", "--at", "now")
+    day = ("--planned", "A=2026-03-09T09:00Z,1h", "--planned", "B=2026-03-09T11:00Z,1h")
+    assert list(served(judged.ok("assign", *day, *TYPED, "--json")).values()) == ["R1", "R1"]
+    assert None in served(judged.ok("assign", *day, *TYPED, "--gap", "90min", "--json")).values()
+    assert "gap: 'soon' is not a number" in judged.refused("assign", *day, *TYPED, "--gap", "soon")
