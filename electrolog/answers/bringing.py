@@ -1,4 +1,4 @@
-"""The on-ramp part of the one door: a lab's own spreadsheets."""
+"""The on-ramp part of the one door: a lab's own spreadsheets, and the last entry once more."""
 
 from __future__ import annotations
 
@@ -11,6 +11,7 @@ from typing import TYPE_CHECKING
 from electrolog.record.store import Record
 
 if TYPE_CHECKING:
+    from electrolog.answers.entering import Entered
     from electrolog.record.books.adoption import Adoption
 
 
@@ -44,3 +45,16 @@ class Bringing:
         from electrolog.record.books.template import USUAL_UM, write_template
 
         write_template(self.record, path, concentrations_um or USUAL_UM)
+
+    def again(
+        self,
+        labels: Sequence[str],
+        points: Sequence[tuple[float, float]] = (),
+        *,
+        at: str | None = None,
+        confirmed: bool = False,
+    ) -> list[Entered]:
+        """The last entry of the same person once more, for other probes; `points` (µM, nA) of a calibration."""
+        from electrolog.answers.repeating import again
+
+        return again(self.record, labels, points, at, self.zone, confirmed)

@@ -16,6 +16,7 @@ COMMANDS: dict[str, dict[str, str]] = {
         "inspect": "Log what a look or a test showed.",
         "note": "Log a remark on a probe.",
         "retire": "Log the end of a probe's use.",
+        "again": "Log your last entry once more, for another probe.",
         "standard": "Log a standard solution, weighed, diluted or bought.",
         "dilutions": "Plan the dilutions of a calibration from a stock.",
     },

@@ -55,6 +55,8 @@ def test_a_commands_example_works_as_it_stands(name: str, request: pytest.Fixtur
 def prepare(name: str, cli: Any, folder: Path) -> None:
     if name == "standard":  # the filled record has the example's own already
         cli.ok("amend", "standard", "S-48-DA", "standard=S-47-DA", "--why", "room for the example")
+    elif name == "again":
+        cli.ok("calibrate", "B9-01", "pre", "DA", "0:0.1", "0.5uM:6.1", "1uM:12.2", "2uM:24", "-w", "triangle")
     elif name == "adopt":
         (folder / "factors.csv").write_text("probe,date,stage,nA/uM\nK1,2024-03-04,pre,12\n", encoding="utf-8")
     elif name == "restore":
