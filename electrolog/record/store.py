@@ -44,6 +44,7 @@ class Record:
         self.engine = engine
         weakref.finalize(self, engine.dispose)  # a connection left open would keep the file in use on Windows
         self._named = who
+        self._opened: tuple[int, int] | None = None
         self.read_only = False
 
     @cached_property
@@ -70,6 +71,7 @@ class Record:
     def reading(self) -> Iterator[Connection]:
         """One state of the record, whatever others write meanwhile."""
         engine = self.engine if self.is_file else self.engine.execution_options(isolation_level="REPEATABLE READ")
+        self._refuse_gone()
         with translated(self.name), engine.connect() as connection, connection.begin():
             yield connection
 
@@ -87,11 +89,26 @@ class Record:
         if self.read_only:
             raise RecordError(f"{self.name} was opened to be read only", "open it with write=True")
         engine = self.engine.execution_options(electrolog_writes=True)
+        self._refuse_gone()
         with translated(self.name), engine.begin() as connection:
             if not self.is_file:
                 # A lock of the table would need the right to change it, which nobody has who only adds to it.
                 connection.execute(text(f"SELECT pg_advisory_xact_lock({WRITING})"))
             yield connection
+
+    def _refuse_gone(self) -> None:
+        """A file that was removed or replaced lives on for whoever has it open, and what is written there is lost."""
+        if not self.is_file:
+            return
+        try:
+            found = Path(self.name).stat()
+        except OSError:
+            raise RecordError(
+                f"{self.name} is gone", "look whether its folder was moved or its disk taken out"
+            ) from None
+        if self._opened != (found.st_dev, found.st_ino):
+            self.engine.dispose()
+            self._opened = found.st_dev, found.st_ino
 
     @property
     def may_keep(self) -> bool:

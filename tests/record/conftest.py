@@ -73,7 +73,7 @@ def blank(engine_name: str, request: pytest.FixtureRequest, tmp_path: Path) -> s
     """A place where nothing is yet: a path, or the URL of an empty database."""
     if engine_name == "sqlite":
         return str(tmp_path / "blank.db")
-    return _new_database(request.getfixturevalue("postgresql"), "template1")
+    return new_database(request.getfixturevalue("postgresql"), "template1")
 
 
 @pytest.fixture
@@ -81,10 +81,10 @@ def where(engine_name: str, request: pytest.FixtureRequest, tmp_path: Path) -> s
     """A record just made."""
     if engine_name == "sqlite":
         return str(shutil.copy(request.getfixturevalue("empty_file"), tmp_path / "record.db"))
-    return _new_database(request.getfixturevalue("postgresql"), "electrolog_empty")
+    return new_database(request.getfixturevalue("postgresql"), "electrolog_empty")
 
 
-def _new_database(base: str, template: str) -> str:
+def new_database(base: str, template: str) -> str:
     """It is never dropped: that waits for a checkpoint, and the whole server is thrown away in the end."""
     name = f"electrolog_{next(_numbers)}"
     _run(base, f"CREATE DATABASE {name} TEMPLATE {template}")
@@ -101,7 +101,7 @@ def lived_in_template(request: pytest.FixtureRequest, tmp_path_factory: pytest.T
             path = tmp_path_factory.mktemp("lived") / "record.db"
             where = str(shutil.copy(request.getfixturevalue("empty_file"), path))
         else:
-            where = _new_database(request.getfixturevalue("postgresql"), "electrolog_empty")
+            where = new_database(request.getfixturevalue("postgresql"), "electrolog_empty")
         live(open_lab(where, who="wren"))
         return where
 
@@ -127,7 +127,7 @@ def lived_in(
     template = lived_in_template(engine_name)
     if engine_name == "sqlite":
         return open_lab(str(shutil.copy(template, tmp_path / "record.db")), who="wren")
-    return open_lab(_new_database(request.getfixturevalue("postgresql"), str(make_url(template).database)), who="wren")
+    return open_lab(new_database(request.getfixturevalue("postgresql"), str(make_url(template).database)), who="wren")
 
 
 def live(lab: Lab) -> Lab:

@@ -9,6 +9,7 @@ import pytest
 
 from electrolog.lab import Lab, open_lab
 from electrolog.record.builtin import ANALYTES
+from tests.faults import writers
 
 PROCESSES, ENTRIES = 8, 25
 RIG = """
@@ -68,3 +69,9 @@ def test_a_reader_sees_all_of_an_entry_or_nothing(lived_in: Lab, reader_sees: st
         if reader_sees == "before":
             assert "NEW" not in {row["electrode"] for row in lived_in.rows("electrodes")}
     assert "NEW" in {row["electrode"] for row in lived_in.rows("electrodes")}
+
+
+def test_many_writers_and_a_slow_reader(blank: str) -> None:
+    """Few of what tests/faults/writers.py does; the reader sees one state as long as it looks, and holds up nobody."""
+    found = writers.run(blank, 6, 10, reader_s=1.0)
+    assert (found.entries, found.lost, found.doubled, found.said, found.whole) == (60, 0, 0, (), True)

@@ -1,0 +1,213 @@
+"""Somebody with the file and with time: each tampering is one of many kinds, at a place that chance gave.
+
+python tests/faults/tampering.py 300
+"""
+
+from __future__ import annotations
+
+import json
+import random
+import shutil
+import sqlite3
+import sys
+import tempfile
+from collections import Counter
+from collections.abc import Callable
+from contextlib import closing
+from pathlib import Path
+from typing import Any
+
+sys.path.insert(0, str(Path(__file__).resolve().parents[2]))
+
+from electrolog.lab import Lab, open_lab
+from electrolog.record import journal, schema
+from electrolog.record.sheets import SHEETS
+
+Tamper = Callable[[sqlite3.Connection, random.Random], str]
+
+
+def change_cell(connection: sqlite3.Connection, chance: random.Random) -> str:
+    sheet, rowid = any_row(connection, chance)
+    names = [row[1] for row in connection.execute(f"PRAGMA table_info({sheet})")]
+    for name in chance.sample(names, len(names)):
+        (old,) = connection.execute(f"SELECT {name} FROM {sheet} WHERE rowid = ?", (rowid,)).fetchone()
+        new = another(old, chance)
+        try:
+            connection.execute(f"UPDATE {sheet} SET {name} = ? WHERE rowid = ?", (new, rowid))
+        except sqlite3.IntegrityError:
+            continue
+        return f"{sheet}.{name} {old!r} -> {new!r}"
+    raise AssertionError(f"no cell of {sheet} can be changed")
+
+
+def another(old: Any, chance: random.Random) -> Any:
+    """Near enough to the old one to pass for it."""
+    if old is None:
+        return 1
+    if isinstance(old, float):
+        return old * (1 + chance.choice((-1, 1)) * 10 ** chance.uniform(-12, 0))
+    if isinstance(old, int):
+        return old + chance.choice((-1, 1))
+    place = chance.randrange(len(old))
+    return old[:place] + chr(ord(old[place]) ^ 1) + old[place + 1 :]
+
+
+def remove_row(connection: sqlite3.Connection, chance: random.Random) -> str:
+    sheet, rowid = any_row(connection, chance)
+    connection.execute(f"DELETE FROM {sheet} WHERE rowid = ?", (rowid,))
+    return f"{sheet} {rowid} removed"
+
+
+def insert_row(connection: sqlite3.Connection, chance: random.Random) -> str:
+    number = chance.randrange(1000, 9999)
+    connection.execute("INSERT INTO electrodes (id, electrode) VALUES (?, ?)", (number, f"X-{number}"))
+    return f"probe {number} inserted"
+
+
+def swap_rows(connection: sqlite3.Connection, chance: random.Random) -> str:
+    points = "SELECT rowid, current_na FROM calibration_points WHERE calibration_id = 1"
+    (one, a), (other, b) = chance.sample(connection.execute(points).fetchall(), 2)
+    assert a != b
+    connection.execute("UPDATE calibration_points SET current_na = ? WHERE rowid = ?", (b, one))
+    connection.execute("UPDATE calibration_points SET current_na = ? WHERE rowid = ?", (a, other))
+    return f"points {one} and {other} swapped"
+
+
+def change_entry(connection: sqlite3.Connection, chance: random.Random) -> str:
+    seq = any_entry(connection, chance)
+    name = chance.choice(("at", "who", "reason", "change", "previous_hash", "hash", "row_id"))
+    (old,) = connection.execute(f"SELECT {name} FROM journal WHERE seq = ?", (seq,)).fetchone()
+    connection.execute(f"UPDATE journal SET {name} = ? WHERE seq = ?", (another(old or "x", chance), seq))
+    return f"journal {seq}.{name}"
+
+
+def remove_entry(connection: sqlite3.Connection, chance: random.Random) -> str:
+    seq = any_entry(connection, chance)
+    connection.execute("DELETE FROM journal WHERE seq = ?", (seq,))
+    return f"journal {seq} removed"
+
+
+def close_the_gap(connection: sqlite3.Connection, chance: random.Random) -> str:
+    """An entry gone, its row too, and all after it renumbered."""
+    seq = any_entry(connection, chance)
+    connection.execute("DELETE FROM journal WHERE seq = ?", (seq,))
+    for (later,) in connection.execute("SELECT seq FROM journal WHERE seq > ? ORDER BY seq", (seq,)).fetchall():
+        connection.execute("UPDATE journal SET seq = ? WHERE seq = ?", (later - 1, later))
+    return f"journal {seq} removed, the rest moved up"
+
+
+def reorder_entries(connection: sqlite3.Connection, chance: random.Random) -> str:
+    one, other = sorted(chance.sample(entries(connection), 2))
+    for a, b in ((one, -1), (other, one), (-1, other)):
+        connection.execute("PRAGMA ignore_check_constraints = ON")
+        connection.execute("UPDATE journal SET seq = ? WHERE seq = ?", (b, a))
+    return f"journal {one} and {other} changed places"
+
+
+def forge_entry(connection: sqlite3.Connection, chance: random.Random) -> str:
+    """Changed together with its own hash, and with the row that it tells of."""
+    seq = chance.choice(entries(connection)[:-1])
+    rehash(connection, seq, f"forged {chance.random()}")
+    return f"journal {seq} forged with its hash"
+
+
+def rewrite_to_the_end(connection: sqlite3.Connection, chance: random.Random) -> str:
+    """The whole chain made anew from there: nothing in the file betrays it, a head written down does."""
+    seqs = entries(connection)
+    first = chance.choice(seqs)
+    for seq in seqs[seqs.index(first) :]:
+        rehash(connection, seq, "forged" if seq == first else None)
+    return f"journal rewritten from {first}"
+
+
+def cut_tail(connection: sqlite3.Connection, chance: random.Random) -> str:
+    """The newest entries with all their rows: nothing in the file betrays it, a head written down does."""
+    last = entries(connection)[-1]
+    keep = last - chance.randrange(1, 3)
+    for seq in range(last, keep, -1):
+        found = connection.execute("SELECT sheet, row_id FROM journal WHERE seq = ?", (seq,))
+        ((sheet, row_id),) = found.fetchall()
+        connection.execute(f"DELETE FROM {sheet} WHERE id = ?", (row_id,))
+        connection.execute("DELETE FROM journal WHERE seq = ?", (seq,))
+    return f"journal cut after {keep}"
+
+
+def rehash(connection: sqlite3.Connection, seq: int, reason: str | None) -> None:
+    columns = ("seq", "at", "who", "action", "sheet", "row_id", "reason", "change", "previous_hash")
+    found = connection.execute(f"SELECT {', '.join(columns)} FROM journal WHERE seq = ?", (seq,)).fetchone()
+    row = dict(zip(columns, found, strict=True))
+    before = connection.execute("SELECT hash FROM journal WHERE seq = ?", (seq - 1,)).fetchone()
+    row["previous_hash"] = before[0] if before else journal.FIRST_HASH
+    row["reason"] = row["reason"] if reason is None else reason
+    moment = schema.UtcMoment().process_result_value(row["at"], None)  # type: ignore[arg-type]
+    values = (row["reason"], row["previous_hash"], journal.entry_hash({**row, "at": moment}), seq)
+    connection.execute("UPDATE journal SET reason = ?, previous_hash = ?, hash = ? WHERE seq = ?", values)
+
+
+def forge_figures(connection: sqlite3.Connection, chance: random.Random) -> str:
+    ((number, kept),) = [
+        chance.choice(connection.execute("SELECT calibration_id, figures FROM calibration_figures").fetchall())
+    ]
+    figures = json.loads(kept)
+    name = chance.choice(("sensitivity_na_um", "lod_um", "r_squared", "intercept_na"))
+    figures[name] = (figures[name] or 1.0) * 1.01
+    connection.execute(
+        "UPDATE calibration_figures SET figures = ? WHERE calibration_id = ?", (json.dumps(figures), number)
+    )
+    return f"kept {name} of calibration {number}"
+
+
+def any_row(connection: sqlite3.Connection, chance: random.Random) -> tuple[str, int]:
+    filled = [s.name for s in SHEETS if connection.execute(f"SELECT count(*) FROM {s.name}").fetchone()[0]]
+    sheet = chance.choice(filled)
+    return sheet, chance.choice(connection.execute(f"SELECT rowid FROM {sheet}").fetchall())[0]
+
+
+def entries(connection: sqlite3.Connection) -> list[int]:
+    return [seq for (seq,) in connection.execute("SELECT seq FROM journal ORDER BY seq")]
+
+
+def any_entry(connection: sqlite3.Connection, chance: random.Random) -> int:
+    return chance.choice(entries(connection))
+
+
+KINDS: tuple[Tamper, ...] = (
+    *(change_cell, change_cell, change_cell, remove_row, insert_row, swap_rows, change_entry, change_entry),
+    *(remove_entry, close_the_gap, reorder_entries, forge_entry, rewrite_to_the_end, cut_tail, forge_figures),
+)
+
+
+def tamper(whole: Path, copy: Path, seed: int) -> tuple[str, str]:
+    """A copy with one tampering in it; which kind, and what it did."""
+    shutil.copy(whole, copy)
+    kind = KINDS[seed % len(KINDS)]
+    chance = random.Random(seed)  # noqa: S311 -- seeded, so that a failure can be had again
+    with closing(sqlite3.connect(copy)) as connection:
+        for (trigger,) in connection.execute("SELECT name FROM sqlite_master WHERE type = 'trigger'").fetchall():
+            connection.execute(f"DROP TRIGGER {trigger}")
+        did = kind(connection, chance)
+        connection.commit()
+    return kind.__name__, did
+
+
+def missed(lab: Lab, count: int, folder: Path) -> tuple[Counter[str], list[str]]:
+    """How many of each kind were tried, and those that `verify` with the head written down before did not find."""
+    whole = lab.back_up(folder / "whole")
+    tried, overlooked = Counter[str](), []
+    for seed in range(count):
+        copy = folder / "tampered.db"
+        kind, did = tamper(whole.path, copy, seed)
+        tried[kind] += 1
+        if open_lab(str(copy)).verify(whole.head).whole:
+            overlooked.append(f"seed {seed}: {did}")
+    return tried, overlooked
+
+
+if __name__ == "__main__":
+    from tests.record.conftest import live
+
+    with tempfile.TemporaryDirectory() as name:
+        lab = live(open_lab(str(Path(name) / "record.db"), who="wren", create=True))
+        found, overlooked = missed(lab, int(sys.argv[1] if len(sys.argv) > 1 else 300), Path(name))
+    print(f"{found.total()} tamperings, {found.total() - len(overlooked)} found: {dict(found)}")
+    print("\n".join(overlooked))

@@ -1,0 +1,55 @@
+"""Few of what the scripts in tests/faults do by the hundred: kills, tamperings, damaged files."""
+
+from __future__ import annotations
+
+import sys
+from pathlib import Path
+
+import pytest
+
+from electrolog.lab import Lab, open_lab, rescue
+from tests.faults import damage, killed, tampering
+
+
+@pytest.mark.skipif(sys.platform == "win32", reason="SIGKILL and fork are POSIX's")
+def test_killed_at_any_moment_nothing_is_lost_doubled_or_broken() -> None:
+    found = killed.run(2, seed=7)
+    assert sum(one.tried for one in found.values()) == 2 * len(killed.COMMANDS)
+    assert sum(one.cut for one in found.values()) > 0
+    assert {name: (one.lost, one.doubled, one.broken) for name, one in found.items()} == dict.fromkeys(
+        found, (0, 0, [])
+    )
+
+
+@pytest.fixture
+def engine_name() -> str:
+    """Whoever tampers with a file or damages it does so past any server."""
+    return "sqlite"
+
+
+def test_every_tampering_is_found(lived_in: Lab, tmp_path: Path) -> None:
+    tried, overlooked = tampering.missed(lived_in, 3 * len(tampering.KINDS), tmp_path)
+    assert overlooked == []
+    assert set(tried) == {kind.__name__ for kind in tampering.KINDS}
+
+
+def test_a_damaged_file_is_named_or_says_what_it_said(lived_in: Lab, tmp_path: Path) -> None:
+    outcomes, overlooked, shares = damage.run(lived_in, 40, tmp_path)
+    assert overlooked == []
+    assert outcomes["named"] > 10
+    assert any(shares)
+
+
+def test_of_a_damaged_file_every_row_is_saved_that_the_journal_tells_of(lived_in: Lab, tmp_path: Path) -> None:
+    lived_in.amend("exposure", "1", {"duration_min": "3h"}, "typed wrong")
+    lived_in.strike("cleaning", "1", "never happened")
+    kept = lived_in.back_up(tmp_path / "kept")
+    content = kept.path.read_bytes()
+    damaged = tmp_path / "damaged.db"
+    damaged.write_bytes(content.replace(b"straight", b"crooked!"))
+    assert not open_lab(str(damaged)).verify().whole
+    assert damage.saved(damaged, tmp_path / "saved.db") < kept.entries  # the journal's own entry holds the word too
+    done = rescue(lived_in.record.name, str(tmp_path / "whole.db"))
+    assert (done.entries, done.head, done.stopped) == (kept.entries, kept.head, "")
+    saved = open_lab(str(tmp_path / "whole.db"))
+    assert damage.rows(saved) == damage.rows(lived_in)
