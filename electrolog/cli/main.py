@@ -15,6 +15,7 @@ import typer
 from typer.core import TyperGroup
 from typer.exceptions import TyperException
 
+from electrolog.cli.asking import AskingCommand
 from electrolog.cli.catalogue import COMMANDS, HELP, WRITING, module_of
 from electrolog.cli.preferences import ENTRIES, in_force
 from electrolog.cli.session import Session
@@ -41,7 +42,8 @@ class LazyCommands(TyperGroup):
             )
         module = importlib.import_module(module_of(cmd_name))
         single = typer.Typer(add_completion=False, rich_markup_mode=None, pretty_exceptions_enable=False)
-        single.command(cmd_name, help=_unwrapped(module.command.__doc__))(module.command)
+        explained = _unwrapped(module.command.__doc__)
+        single.command(cmd_name, cls=AskingCommand, help=explained)(module.command)
         return typer.main.get_command(single)
 
     def invoke(self, ctx: Any) -> Any:
