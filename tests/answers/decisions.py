@@ -48,10 +48,15 @@ class Decisions:
         return float((self.fit & good).sum() / (self.oracle & good).sum())
 
     @property
-    def longest_that_break(self) -> float:
-        """The share of promised runs, none and the longest of all left out, that break before their end."""
+    def promised_that_break(self) -> tuple[int, int]:
+        """Of how many promised runs, none and the longest of all left out, how many break before their end."""
         told = (self.longest_min > 0) & (self.longest_min < LONGEST_MIN)
-        return float((self.true_longest_min[told] < self.longest_min[told]).mean())
+        return int((self.true_longest_min[told] < self.longest_min[told]).sum()), int(told.sum())
+
+    @property
+    def longest_that_break(self) -> float:
+        broken, promised = self.promised_that_break
+        return broken / promised
 
     @property
     def longest_of_true(self) -> float:
