@@ -1,4 +1,4 @@
-"""The on-ramp part of the one door: a lab's own spreadsheets, and the last entry once more."""
+"""The on-ramp part of the one door: a lab's own spreadsheets, the last entry once more, and what a paper says."""
 
 from __future__ import annotations
 
@@ -12,6 +12,7 @@ from electrolog.record.store import Record
 
 if TYPE_CHECKING:
     from electrolog.answers.entering import Entered
+    from electrolog.answers.methods import Described
     from electrolog.record.books.adoption import Adoption
 
 
@@ -58,3 +59,9 @@ class Bringing:
         from electrolog.answers.repeating import again
 
         return again(self.record, labels, points, at, self.zone, confirmed)
+
+    def methods(self, labels: Sequence[str], analyte: str, waveform: str | None = None) -> Described:
+        """The numbers of a methods section and its supplementary table; of every probe where none is named."""
+        from electrolog.answers.methods import methods
+
+        return methods(self.record, labels, analyte, waveform)

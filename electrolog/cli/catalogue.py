@@ -49,6 +49,8 @@ COMMANDS: dict[str, dict[str, str]] = {
         "recompute": "Make all figures again from the raw points.",
     },
     "The record": {
+        "methods": "The methods paragraph of a paper and its supplementary table.",
+        "dictionary": "What every column of the record means.",
         "settings": "What is taken where nothing is typed: rig, by, zone.",
         "completion": "What makes your shell complete commands, labels and words.",
         "setup": "Make a record, or bring an older one up to date.",
