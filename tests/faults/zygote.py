@@ -70,7 +70,7 @@ def load_everything() -> None:
 
 
 def run_child(arguments: list[str], kill_after_s: float, fork: bool = True) -> tuple[Any, ...]:
-    with tempfile.TemporaryFile() as out, tempfile.TemporaryFile() as err:
+    with tempfile.TemporaryFile("w+b") as out, tempfile.TemporaryFile("w+b") as err:
         began = time.perf_counter()
         if not fork:
             done = run_here(arguments)

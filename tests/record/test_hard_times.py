@@ -1,14 +1,15 @@
-"""Few of what the scripts in tests/faults do by the hundred: kills, tamperings, damaged files."""
+"""Few of what the scripts in tests/faults do by the hundred: kills, tamperings, damaged files, hostile input."""
 
 from __future__ import annotations
 
+import shutil
 import sys
 from pathlib import Path
 
 import pytest
 
 from electrolog.lab import Lab, open_lab, rescue
-from tests.faults import damage, killed, tampering
+from tests.faults import damage, fuzz, killed, tampering
 
 
 @pytest.mark.skipif(sys.platform == "win32", reason="SIGKILL and fork are POSIX's")
@@ -53,3 +54,10 @@ def test_of_a_damaged_file_every_row_is_saved_that_the_journal_tells_of(lived_in
     assert (done.entries, done.head, done.stopped) == (kept.entries, kept.head, "")
     saved = open_lab(str(tmp_path / "whole.db"))
     assert damage.rows(saved) == damage.rows(lived_in)
+
+
+def test_hostile_input_is_refused_in_words_or_taken_whole(lived_in: Lab) -> None:
+    found = fuzz.run(lambda path: open_lab(str(shutil.copy(lived_in.record.name, path))), 150)
+    assert found.faults == []
+    assert found.inputs.total() >= 150
+    assert {0, 2} <= set(found.statuses)
