@@ -83,11 +83,7 @@ def methods(record: Record, labels: Sequence[str], analyte: str, waveform: str |
         analyte=found[0].analyte,
         waveforms=tuple(waves[name] for name in dict.fromkeys(one.waveform for one in found)),
         probes=tuple(used),
-        batches=len({probe["batch"] for probe in probes if probe["batch"]}),
-        length_um=spread(probe["exposed_length_um"] for probe in probes),
-        diameter_um=spread(probe["diameter_um"] or probe["fibre_diameter_um"] for probe in probes),
-        fibres=counted(probe["fibre"] for probe in probes),
-        insulations=counted(probe["insulation"] for probe in probes),
+        **_made(probes),
         coatings=counted(coated.values()),
         media=counted(one.row["medium"] for one in found),
         temperature_c=spread(one.row["temperature_c"] for one in found),
@@ -110,6 +106,16 @@ def methods(record: Record, labels: Sequence[str], analyte: str, waveform: str |
         computed_by=tuple(sorted({one.figures.method for one in found})),
         table=tuple(_table_row(one, coated) for one in found),
     )
+
+
+def _made(probes: Sequence[Row]) -> dict[str, Any]:
+    return {
+        "batches": len({probe["batch"] for probe in probes if probe["batch"]}),
+        "length_um": spread(probe["exposed_length_um"] for probe in probes),
+        "diameter_um": spread(probe["diameter_um"] or probe["fibre_diameter_um"] for probe in probes),
+        "fibres": counted(probe["fibre"] for probe in probes),
+        "insulations": counted(probe["insulation"] for probe in probes),
+    }
 
 
 def spread(values: Iterable[float | None]) -> Spread | None:
