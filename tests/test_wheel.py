@@ -117,8 +117,10 @@ def test_wheel_holds_the_package_and_its_migrations_and_nothing_else(wheel: Path
     source = {path.relative_to(ROOT).as_posix() for path in (ROOT / "electrolog").rglob("*.py")}
     migrations = {f"electrolog/migrations/{path.name}" for path in (ROOT / "migrations").glob("*.*")}
     versions = {f"electrolog/migrations/versions/{path.name}" for path in (ROOT / "migrations/versions").glob("*.py")}
+    templates = {f"electrolog/show/templates/{path.name}" for path in (ROOT / "electrolog/show/templates").iterdir()}
     assert len(versions) >= 1
-    assert source | migrations | versions <= names
+    assert len(templates) >= 1
+    assert source | migrations | versions | templates <= names
     assert {name.partition("/")[0] for name in names} == {"electrolog"}
 
 

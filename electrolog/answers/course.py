@@ -132,7 +132,7 @@ def _asked(
     record: Record, key: tuple[str, str, str], setting: str, run_min: float, moment: datetime
 ) -> tuple[Asked | None, str]:
     electrode, analyte, waveform = key
-    if not fits.is_kept(record, analyte, waveform):
+    if not fits.is_kept(record, analyte):
         return (
             None,
             f"no fit of the cohort is at hand: `electrolog fit --analyte {analyte}` makes one",

@@ -13,6 +13,7 @@ if TYPE_CHECKING:
     from electrolog.answers.course import Ahead, Course
     from electrolog.answers.fan import Fan
     from electrolog.answers.kinds import By
+    from electrolog.answers.report import LabSheet, Origin, Planned, ProbeSheet
     from electrolog.fouling.typical import TypicalLoss
     from electrolog.judge.compare import Groups
 
@@ -55,3 +56,23 @@ class Looking:
         from electrolog.answers.comparing import groups_of
 
         return groups_of(self.record, by, analyte, waveform)
+
+    def origin(self, moment: datetime | None = None) -> Origin:
+        """Who asks, when, which state of the record it is, and by which methods figures are made."""
+        from electrolog.answers.report import origin
+
+        return origin(self.record, moment)
+
+    def probe_sheets(
+        self, labels: Sequence[str], planned: Planned | None = None, moment: datetime | None = None
+    ) -> list[ProbeSheet]:
+        """All that a report tells of the named probes; with a planned run, the verdict for it."""
+        from electrolog.answers.report import probe_sheets
+
+        return probe_sheets(self.record, labels, planned, moment)
+
+    def lab_sheet(self, planned: Planned | None = None, moment: datetime | None = None) -> LabSheet:
+        """All that a report tells of the lab; with a planned run, every verdict for it and how many probes to make."""
+        from electrolog.answers.report import lab_sheet
+
+        return lab_sheet(self.record, planned, moment)

@@ -18,6 +18,7 @@ from electrolog.record.readable import Row, row_by_id
 from electrolog.record.store import Connection, Record
 
 STATES = ("untested", "calibrated", "used", "renewed", "retired")
+WIDER_STATES = ("usable", "all")
 
 
 @dataclass(frozen=True)
@@ -60,8 +61,8 @@ class Filter:
     search: str | None = None
 
     def __post_init__(self) -> None:
-        if self.state is not None and self.state not in (*STATES, "usable"):
-            raise unknown("state", self.state, (*STATES, "usable"))
+        if self.state is not None and self.state not in (*STATES, *WIDER_STATES):
+            raise unknown("state", self.state, (*STATES, *WIDER_STATES))
 
 
 def shelf(record: Record, wanted: Filter, moment: datetime | None = None) -> list[Shelved]:
@@ -139,8 +140,8 @@ def _share_left(life: list[Event], last: Event | None, figures: Mapping[int, Cal
 
 
 def _matches(one: Shelved, probe: Row, wanted: Filter, life: Mapping[str, list[Event]]) -> bool:
-    usable = wanted.state in (None, "usable")
-    in_state = one.state != "retired" if usable else one.state == wanted.state
+    wide = {None: one.state != "retired", "usable": one.state != "retired", "all": True}
+    in_state = wide.get(wanted.state, one.state == wanted.state)
     coating = one.coating or "none"
     checks: list[tuple[str | None, Callable[[str], bool]]] = [
         (wanted.batch, lambda text: _begins(one.batch, text)),

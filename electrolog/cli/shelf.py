@@ -19,7 +19,7 @@ def command(
     coating: Annotated[str | None, typer.Option("--coating", help="Coating that begins so; none for bare.")] = None,
     maker: Annotated[str | None, typer.Option("--maker", help="Maker that begins so.")] = None,
     state: Annotated[
-        str | None, typer.Option("--state", help="untested, calibrated, used, renewed, retired, usable (default)")
+        str | None, typer.Option("--state", help="untested, calibrated, used, renewed, retired, usable (default), all")
     ] = None,
     search: Annotated[str | None, typer.Option("--search", help="Anything ever written of the probe.")] = None,
     analyte: Analyte = None,

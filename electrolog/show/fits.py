@@ -61,14 +61,18 @@ def _suspects(found: FittedCohort) -> str:
 def _print_half_lives(found: FittedCohort) -> None:
     print_lines("", "half-life in vivo of a typical probe")
     columns = ("coating", "waveform", "half-life (h)", "probes", "calibrations")
-    rows = [(o.coating, o.waveform, _span(o.hours, _hours), o.probes, o.calibrations) for o in found.half_lives]
+    rows = [
+        (o.coating, o.waveform, span_shown(o.hours, hours_shown), o.probes, o.calibrations) for o in found.half_lives
+    ]
     print_table(columns, rows, columns[2:])
 
 
 def _print_settings(found: FittedCohort) -> None:
     print_lines("", "how fast a setting fouls beside in vivo")
     columns = ("setting", "weight", "hours logged", "probes")
-    rows = [(o.setting, _span(o.weight, shown_number), shown_number(o.exposure_h), o.probes) for o in found.settings]
+    rows = [
+        (o.setting, span_shown(o.weight, shown_number), shown_number(o.exposure_h), o.probes) for o in found.settings
+    ]
     print_table(columns, rows, columns[1:])
 
 
@@ -77,7 +81,7 @@ def _print_recoveries(found: FittedCohort) -> None:
         return
     print_lines("", "share of the fouling that a renewal undoes")
     columns = ("renewal", "undone", "times", "probes")
-    rows = [(one.method, _span(one.share, shown_percent), one.times, one.probes) for one in found.recoveries]
+    rows = [(one.method, span_shown(one.share, shown_percent), one.times, one.probes) for one in found.recoveries]
     print_table(columns, rows, columns[1:])
 
 
@@ -89,12 +93,12 @@ def _print_days(found: FittedCohort) -> None:
     which = f"{len(odd)} of {_count(len(found.days), 'calibration day')}"
     print_lines("", f"suspicious: {which}; is it the standard, the rig or the reference electrode?")
     columns = ("date", "standard", "rig", "all readings off by", "calibrations")
-    rows = [(day.date, day.standard, day.rig, _span(day.effect, _off), day.calibrations) for day in odd]
+    rows = [(day.date, day.standard, day.rig, span_shown(day.effect, off_shown), day.calibrations) for day in odd]
     print_table(columns, rows, columns[3:], least=("rig",))
 
 
 def _spreads(found: FittedCohort) -> list[str]:
-    said = [f"{_SPREADS[name]} {_span(spread, shown_percent)}" for name, spread in found.spreads.items()]
+    said = [f"{_SPREADS[name]} {span_shown(spread, shown_percent)}" for name, spread in found.spreads.items()]
     return ["", f"spread (standard deviations): {'; '.join(said)}"]
 
 
@@ -104,17 +108,17 @@ def _odd(found: FittedCohort) -> list[str]:
     return [*slips, *broken]
 
 
-def _span(value: Estimate, shown: Callable[[float | None], str]) -> str:
+def span_shown(value: Estimate, shown: Callable[[float | None], str]) -> str:
     if value.low == value.high:
         return shown(value.median)
     return f"{shown(value.median)} [{shown(value.low)}, {shown(value.high)}]"
 
 
-def _hours(hours: float | None) -> str:
+def hours_shown(hours: float | None) -> str:
     return "never" if hours is None else shown_number(hours)
 
 
-def _off(share: float | None) -> str:
+def off_shown(share: float | None) -> str:
     """A few percent as percent; a slip of a decimal as the factor that it is."""
     if share is None or share > 1:
         return "×?" if share is None else f"×{shown_number(1 + share)}"

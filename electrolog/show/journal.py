@@ -27,7 +27,7 @@ def answer(entries: Sequence[Entry], json: bool, csv: bool) -> None:
                     shown_moment(e.at),
                     e.who,
                     f"{e.action} {BY_NAME[e.sheet].one} {e.row_id}",
-                    _change(e),
+                    change_shown(e),
                     e.reason,
                 )
                 for e in entries
@@ -36,7 +36,7 @@ def answer(entries: Sequence[Entry], json: bool, csv: bool) -> None:
         )
 
 
-def _change(entry: Entry) -> str:
+def change_shown(entry: Entry) -> str:
     """An amendment as before and after; of an addition the table itself tells more."""
     if entry.action != "amend":
         points = entry.change.get("points")

@@ -25,10 +25,12 @@ def answer(probe: Row, events: Sequence[Event], json: bool, csv: bool) -> None:
     if json:
         print_json({"electrode": _identity(probe), "state": state, "events": rows})
     elif csv:
-        print_csv([{"at": e.at, "event": e.sheet.one, "number": e.row["id"], "what": _what(e)} for e in events])
+        print_csv([{"at": e.at, "event": e.sheet.one, "number": e.row["id"], "what": what_happened(e)} for e in events])
     else:
         print_lines(_identity_line(probe), _state_line(state))
-        print_table(("when", "event", "what"), [(shown_moment(e.at), e.name, _what(e)) for e in events], wrapped="what")
+        print_table(
+            ("when", "event", "what"), [(shown_moment(e.at), e.name, what_happened(e)) for e in events], wrapped="what"
+        )
 
 
 def _known(event: Event) -> dict[str, Any]:
@@ -56,7 +58,7 @@ def _state_line(state: lives.State) -> str:
     return f"{state.name}{why}; exposed {hours or 'never'}; {state.uses} uses"
 
 
-def _what(event: Event) -> str:
+def what_happened(event: Event) -> str:
     if event.sheet is sheets.CALIBRATIONS:
         row = event.row
         note, _ = split(row["note"])

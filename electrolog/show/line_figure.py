@@ -13,11 +13,7 @@ from electrolog.show.figures import BLUE, BROWN, INK, MARKS, QUIET, figure, labe
 from electrolog.units import shown_concentration, shown_number
 
 if TYPE_CHECKING:
-    import numpy as np
     from matplotlib.axes import Axes
-    from numpy.typing import NDArray
-
-    Array = NDArray[np.float64]
 
 Points = Sequence[tuple[float, float]]
 MOST_LINES = 30
@@ -64,13 +60,13 @@ def draw_residuals(axes: Axes, points: Points, figures: CalibrationFigures) -> A
     """Each current less what the fitted curve gives there."""
     import numpy as np
 
-    along, currents = (np.asarray(values, dtype=float) for values in zip(*points, strict=True))
-    fitted = _curve(points, figures, along)
+    along, currents = zip(*points, strict=True)
+    fitted = fitted_curve(points, figures, along)
     axes.axhline(0.0, color=QUIET, linewidth=0.8)
     if fitted is None:
         axes.annotate("no line", (0.5, 0.6), xycoords="axes fraction", ha="center", color=QUIET, fontsize=8)
     else:
-        left = currents - fitted
+        left = np.asarray(currents) - fitted
         axes.vlines(along, 0.0, left, color=QUIET, linewidth=0.9)
         axes.plot(along, left, MARKS[0], color=INK, markersize=4)
         axes.margins(y=0.2)
@@ -78,8 +74,6 @@ def draw_residuals(axes: Axes, points: Points, figures: CalibrationFigures) -> A
 
 
 def _fitted(axes: Axes, points: Points, figures: CalibrationFigures, top: float) -> None:
-    import numpy as np
-
     slope, offset = figures.sensitivity_na_um or 0.0, figures.intercept_na or 0.0
     label = f"{shown_number(slope)} nA/µM"
     if figures.shape != "saturating":
@@ -88,23 +82,23 @@ def _fitted(axes: Axes, points: Points, figures: CalibrationFigures, top: float)
     # The slope at low concentration overshoots the points: it must not stretch the axis.
     until = min(top, (max(current for _, current in points) - offset) / slope) if slope > 0 else top
     axes.plot([0, until], [offset, offset + slope * until], color=BLUE, linestyle="--", label=label, zorder=1)
-    grid = np.linspace(0.0, top, 80)
-    curve = _curve(points, figures, grid)
+    grid = [top * k / 80 for k in range(81)]
+    curve = fitted_curve(points, figures, grid)
     if curve is not None:
         axes.plot(grid, curve, color=BLUE, label="isotherm", zorder=1)
 
 
-def _curve(points: Points, figures: CalibrationFigures, at_um: Array) -> Array | None:
+def fitted_curve(points: Points, figures: CalibrationFigures, at_um: Sequence[float]) -> list[float] | None:
     """Current (nA) of the fitted line or isotherm; None where nothing could be fitted."""
     from electrolog.measure.saturating import fit_saturating
 
     if figures.sensitivity_na_um is None:
         return None
     if figures.shape != "saturating":
-        return (figures.intercept_na or 0.0) + figures.sensitivity_na_um * at_um
+        return [(figures.intercept_na or 0.0) + figures.sensitivity_na_um * x for x in at_um]
     try:
         fit = fit_saturating(*zip(*points, strict=True))
     except DataError:
         return None
-    bound = fit.affinity_per_um * at_um
-    return fit.offset_na + fit.current_max_na * bound / (1 + bound)
+    bound = [fit.affinity_per_um * x for x in at_um]
+    return [fit.offset_na + fit.current_max_na * b / (1 + b) for b in bound]

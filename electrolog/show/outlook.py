@@ -25,7 +25,7 @@ def answer(found: Outlook, zone: tzinfo | None, json: bool, csv: bool) -> None:
         told = [_row(one, zone) for one in found.probes if not one.why]
         if told:
             print_table(_COLUMNS, told, ("good for (h)",), ("until about", "breaks after (h)"))
-        print_lines(*_untold(found), *_said(found), *[f"! {note}" for note in found.notes], CAUTION)
+        print_lines(*_untold(found), *said_of(found), *[f"! {note}" for note in found.notes], CAUTION)
 
 
 def _row(one: Lasting, zone: tzinfo | None) -> tuple[object, ...]:
@@ -47,7 +47,7 @@ def _shown(hours: float | None) -> str:
     return _FAR if hours is None else shown_number(hours, 2)
 
 
-def _said(found: Outlook) -> list[str]:
+def said_of(found: Outlook) -> list[str]:
     said = ["good for: hours of run until the odds of a breach pass the accepted risk; breaks after: median and 90 %"]
     if found.pace_h_per_day is None:
         said.append("no run in the last 30 days, so hours can't be turned into dates")

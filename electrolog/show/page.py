@@ -19,7 +19,7 @@ from electrolog.show.limits import shown
 from electrolog.show.text import safe
 from electrolog.units import shown_concentration, shown_duration
 
-_CAUTIONS = (CAUTION, "An explanted probe is a biohazard and a sharp: handle and discard it by the local rules.")
+CAUTIONS = (CAUTION, "An explanted probe is a biohazard and a sharp: handle and discard it by the local rules.")
 _STYLE = """
 @page { size: A4; margin: 15mm }
 body { font: 11pt/1.4 sans-serif; color: #000; background: #fff; max-width: 180mm; margin: 8mm auto; padding: 0 4mm }
@@ -50,9 +50,9 @@ def page(found: Sequence[Checked], run: Run, asked: dict[str, Any], moment: date
         needs=None if asked["needs_um"] is None else shown_concentration(asked["needs_um"]),
         project=asked["project"],
         moment=shown_moment(moment),
-        probes=[_probe(one) for one in found],
+        probes=[verdict_context(one) for one in found],
         limits=[_limit(limit) for limit in found[0].limits.by_rule.values()] if found else [],
-        cautions=_CAUTIONS,
+        cautions=CAUTIONS,
         style=_Style(_STYLE),
         style_hash=base64.b64encode(hashlib.sha256(_STYLE.encode()).digest()).decode(),
     )
@@ -67,7 +67,7 @@ class _Style(str):
         return str(self)
 
 
-def _probe(one: Checked) -> dict[str, Any]:
+def verdict_context(one: Checked) -> dict[str, Any]:
     verdict = one.verdict
     return {
         "name": one.electrode,

@@ -1,0 +1,222 @@
+"""The lab's report in a real browser: quiet, self-contained, sortable, filterable, keyboard reachable, printable."""
+
+from __future__ import annotations
+
+import base64
+import json
+import re
+import shutil
+from collections.abc import Iterator
+from datetime import UTC, datetime, timedelta
+from pathlib import Path
+from typing import Any
+
+import pytest
+
+from electrolog.answers.report import BatchSheet, LabSheet, Origin
+from electrolog.answers.shelf import STATES, Shelved
+from electrolog.show.report_page import write_report
+
+MADE = datetime(2026, 3, 2, 9, 30, tzinfo=UTC)
+PROBES = 2000
+SECONDS_OF_WORK = 2.0  # of the browser's own processor; a page that is read at once takes about a third of it
+
+
+def shelved(k: int) -> Shelved:
+    value = None if k % 7 == 0 else 5.0 + (k * 37 % 200) / 10
+    return Shelved(
+        electrode=f"B{k // 10:03d}-{k % 10:02d}",
+        state=STATES[k % 5],
+        batch=f"B{k // 10:03d}",
+        made_by=("wren", "ibis")[k % 2],
+        coating=("PFSA", None)[k % 2],
+        fibre="carbon fibre 7 um",
+        age_days=k % 300,
+        exposure_h=k % 17 / 2,
+        uses=k % 5,
+        calibrations=3,
+        last_calibration=None if value is None else MADE - timedelta(days=k % 90),
+        analyte="dopamine",
+        waveform="triangle",
+        sensitivity_na_um=value,
+        sensitivity_se_na_um=0.2,
+        share_left=0.8,
+        reason="broken" if k % 5 == 4 else None,
+        trend_na_um=(10.0, 9.0, 8.0),
+    )
+
+
+@pytest.fixture(scope="module")
+def page(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    path = tmp_path_factory.mktemp("report") / "lab.html"
+    batch = BatchSheet("B000", MADE.date(), "wren", "carbon fibre 7 um", 10, 2, 8, 10)
+    lab = LabSheet(tuple(map(shelved, range(PROBES))), (batch,), (), ("dopamine",), (), None, "no run was named")
+    made = Origin("wren", MADE, "0", "lab.db", 12, "ab" * 32, {"calibration": "line"})
+    write_report(path, "The lab", made, [], lab, None)
+    return path
+
+
+@pytest.fixture(scope="module")
+def browser() -> Iterator[Any]:
+    chromium, driver = (shutil.which(name) for name in ("chromium", "chromedriver"))
+    if chromium is None or driver is None:
+        pytest.skip("no chromium with its driver on this machine: `apt-get install chromium chromium-driver`")
+    from selenium import webdriver
+    from selenium.webdriver.chrome.service import Service
+
+    options = webdriver.ChromeOptions()
+    options.binary_location = chromium
+    for argument in ("--headless=new", "--no-sandbox", "--disable-gpu", "--window-size=1200,900"):
+        options.add_argument(argument)
+    options.set_capability("goog:loggingPrefs", {"browser": "ALL", "performance": "ALL"})
+    started = webdriver.Chrome(options=options, service=Service(driver))
+    started.execute_cdp_cmd("Performance.enable", {"timeDomain": "threadTicks"})
+    yield started
+    started.quit()
+
+
+@pytest.fixture
+def opened(browser: Any, page: Path) -> Any:
+    browser.get_log("performance")
+    browser.get(page.as_uri())
+    return browser
+
+
+def shown(browser: Any) -> list[str]:
+    return list(
+        browser.execute_script(
+            "return [...document.querySelectorAll('#shelf tbody tr:not([hidden])')].map(r => r.cells[0].textContent)"
+        )
+    )
+
+
+def column(browser: Any, at: int) -> list[str]:
+    rows = "[...document.querySelectorAll('#shelf tbody tr')]"
+    return list(browser.execute_script(f"return {rows}.map(r => r.cells[{at}].dataset.v)"))
+
+
+def press(browser: Any, heading: str) -> None:
+    from selenium.webdriver.common.by import By
+
+    browser.find_element(By.XPATH, f"//th[button[text()='{heading}']]/button").click()
+
+
+def test_the_page_is_small(page: Path) -> None:
+    assert page.stat().st_size < 5_000_000
+
+
+def test_nothing_is_asked_of_any_network_and_the_console_is_silent(opened: Any, page: Path) -> None:
+    said = [json.loads(one["message"])["message"] for one in opened.get_log("performance")]
+    asked = {one["params"]["request"]["url"] for one in said if one["method"] == "Network.requestWillBeSent"}
+    assert {url for url in asked if not url.startswith("data:")} == {page.as_uri()}
+    assert opened.get_log("browser") == []
+
+
+def test_two_thousand_probes_are_there_at_once(opened: Any) -> None:
+    metrics = opened.execute_cdp_cmd("Performance.getMetrics", {})["metrics"]
+    assert {one["name"]: one["value"] for one in metrics}["TaskDuration"] < SECONDS_OF_WORK
+
+
+def test_usable_ones_are_shown_first_and_all_on_request(opened: Any) -> None:
+    from selenium.webdriver.common.by import By
+    from selenium.webdriver.support.ui import Select
+
+    assert len(shown(opened)) == PROBES * 4 // 5
+    choice = Select(opened.find_element(By.CSS_SELECTOR, "[data-for=shelf] select"))
+    choice.select_by_visible_text("all")
+    assert len(shown(opened)) == PROBES
+    choice.select_by_visible_text("retired")
+    assert len(shown(opened)) == PROBES // 5
+    assert opened.find_element(By.CSS_SELECTOR, "output").text == "400 of 2000 probes"
+
+
+def test_words_filter_rows(opened: Any) -> None:
+    from selenium.webdriver.common.by import By
+
+    opened.find_element(By.CSS_SELECTOR, "[data-for=shelf] input").send_keys("B01 pfsa")
+    expected = [one.electrode for one in map(shelved, range(PROBES)) if matches(one)]
+    assert shown(opened) == expected
+
+
+def matches(one: Shelved) -> bool:
+    return one.electrode.startswith("B01") and one.coating == "PFSA" and one.state != "retired"
+
+
+def test_numbers_sort_as_numbers_with_the_unknown_last_either_way(opened: Any) -> None:
+    known = sorted(one.sensitivity_na_um for one in map(shelved, range(PROBES)) if one.sensitivity_na_um is not None)
+    press(opened, "nA/µM")
+    up = column(opened, 9)
+    assert [float(value) for value in up[: len(known)]] == pytest.approx(known)
+    assert set(up[len(known) :]) == {""}
+    press(opened, "nA/µM")
+    down = column(opened, 9)
+    assert [float(value) for value in down[: len(known)]] == pytest.approx(known[::-1])
+    assert set(down[len(known) :]) == {""}
+
+
+def test_the_sorted_heading_says_so_to_a_screen_reader(opened: Any) -> None:
+    press(opened, "left")
+    press(opened, "probe")
+    sorted_by = opened.execute_script("return [...document.querySelectorAll('[aria-sort]')].map(h => h.ariaSort)")
+    assert sorted_by == ["ascending"]
+
+
+def test_everything_is_reached_by_the_keyboard(opened: Any) -> None:
+    from selenium.webdriver.common.keys import Keys
+
+    reached = []
+    for _ in range(5):
+        opened.switch_to.active_element.send_keys(Keys.TAB)
+        reached.append(opened.execute_script("return document.activeElement.tagName"))
+    assert reached == ["A", "INPUT", "SELECT", "BUTTON", "BUTTON"]
+    opened.switch_to.active_element.send_keys(Keys.ENTER)
+    assert opened.execute_script("return document.querySelector('th[aria-sort]').textContent").startswith("state")
+
+
+@pytest.mark.parametrize("scheme", ["light", "dark"])
+def test_text_stands_out_from_its_ground_in_light_and_dark(opened: Any, scheme: str) -> None:
+    """WCAG 2.2, 1.4.3: a contrast of 4.5 or more."""
+    media = {"features": [{"name": "prefers-color-scheme", "value": scheme}]}
+    opened.execute_cdp_cmd("Emulation.setEmulatedMedia", media)
+    ground = colour(opened, "body", "backgroundColor")
+    for selector in ("body", ".origin", "caption", "th"):
+        assert contrast(colour(opened, selector, "color"), ground) >= 4.5
+    assert (sum(ground) < 200) == (scheme == "dark")
+
+
+def colour(browser: Any, selector: str, what: str) -> list[int]:
+    found = browser.execute_script(f"return getComputedStyle(document.querySelector('{selector}')).{what}")
+    return [int(part) for part in re.findall(r"\d+", found)[:3]]
+
+
+def contrast(one: list[int], other: list[int]) -> float:
+    light, dark = sorted((luminance(one), luminance(other)), reverse=True)
+    return (light + 0.05) / (dark + 0.05)
+
+
+def luminance(rgb: list[int]) -> float:
+    linear = [c / 255 / 12.92 if c / 255 <= 0.04045 else ((c / 255 + 0.055) / 1.055) ** 2.4 for c in rgb]
+    return 0.2126 * linear[0] + 0.7152 * linear[1] + 0.0722 * linear[2]
+
+
+@pytest.mark.parametrize(("paper", "width_mm"), [("A4", 210), ("Letter", 215.9)])
+def test_no_table_is_wider_than_the_paper(opened: Any, paper: str, width_mm: float) -> None:
+    opened.execute_cdp_cmd("Emulation.setEmulatedMedia", {"media": "print"})
+    inside_px = (width_mm - 28) / 25.4 * 96
+    size = {"width": int(inside_px), "height": 900, "deviceScaleFactor": 1, "mobile": False}
+    opened.execute_cdp_cmd("Emulation.setDeviceMetricsOverride", size)
+    try:
+        tables = opened.execute_script("return [...document.querySelectorAll('table')].map(t => t.scrollWidth)")
+        assert tables
+        assert max(tables) <= inside_px + 1, paper
+        assert opened.execute_script("return document.documentElement.scrollWidth") <= inside_px + 1
+    finally:
+        opened.execute_cdp_cmd("Emulation.clearDeviceMetricsOverride", {})
+        opened.execute_cdp_cmd("Emulation.setEmulatedMedia", {"media": ""})
+
+
+def test_it_prints(opened: Any) -> None:
+    made = opened.execute_cdp_cmd(
+        "Page.printToPDF", {"preferCSSPageSize": False, "paperWidth": 8.27, "paperHeight": 11.69}
+    )
+    assert base64.b64decode(made["data"]).startswith(b"%PDF")
