@@ -14,6 +14,7 @@ from electrolog.answers.handling import split
 from electrolog.answers.labels import expanded, known_labels, numbered
 from electrolog.errors import DoubtfulEntry, InputError, shortened, unknown, with_article
 from electrolog.measure.calibrate import CalibrationFigures
+from electrolog.measure.health import other_standard
 from electrolog.record import entry, queries, sheets
 from electrolog.record.columns import Value
 from electrolog.record.journal import Writer
@@ -103,7 +104,7 @@ def log_calibrations(
         computed = [made.computed(_as_calibration(row, points), uncertainties) for row, points in rows]
         said = _doubts(writer, sheets.CALIBRATIONS, [row for row, _ in rows])
         for (row, points), figures in zip(rows, computed, strict=True):
-            said += asked.of_calibration(row, points, figures, _earlier(writer, row))
+            said += asked.of_calibration(row, points, figures, _earlier(writer, row)) + _of_the_standard(writer, row)
         _confirm(said, confirmed)
         entered = [
             _entered(writer, sheets.CALIBRATIONS, entry.add(writer, sheets.CALIBRATIONS, row, points), said)
@@ -162,14 +163,17 @@ def _checked(points: Points) -> list[tuple[float, float]]:
 
 
 def _labelled(writer: Writer, typed: Typed, label: str, zone: tzinfo | None) -> dict[str, Value]:
-    """With its probe's own spelling, and its label."""
+    """With its probe's and its standard's own spelling, and its label."""
     electrodes = known_labels(writer.connection, [str(typed["electrode"])], writer.names)
     if len(electrodes) > 1:
         raise InputError(
             f"electrode: '{shortened(str(typed['electrode']))}' names {len(electrodes)} probes;"
             " accepted: one label, or a file of points with a label in every row (points belong to one probe)"
         )
-    return read(sheets.CALIBRATIONS, {**typed, "calibration": label, "electrode": electrodes[0]}, zone)
+    row = read(sheets.CALIBRATIONS, {**typed, "calibration": label, "electrode": electrodes[0]}, zone)
+    if row.get("standard") is not None:
+        row["standard"] = writer.names.spelled("standards", str(row["standard"])) or row["standard"]
+    return row
 
 
 def _labels(writer: Writer, new: Sequence[NewCalibration]) -> list[str]:
@@ -211,6 +215,15 @@ def _earlier(writer: Writer, row: dict[str, Value]) -> list[tuple[CalibrationFig
     found = queries.calibrations(writer.connection, [electrode_id], analyte_id, waveform_id)
     uncertainties: dict[str, float | None] = {}
     return [(made.figures_of(one, uncertainties), [c for c, _ in one.points]) for one in found]
+
+
+def _of_the_standard(writer: Writer, row: dict[str, Value]) -> list[str]:
+    if row.get("standard") is None:
+        return []
+    standard = row_by_id(writer.connection, sheets.STANDARDS, writer.names.row_id("standards", str(row["standard"])))
+    analyte = row_by_id(writer.connection, sheets.ANALYTES, writer.names.row_id("analytes", str(row["analyte"])))
+    text = other_standard(standard["analyte"], analyte["analyte"])
+    return [f"{row['electrode']}: {text}"] if text else []
 
 
 def _confirm(said: Sequence[str], confirmed: bool) -> None:

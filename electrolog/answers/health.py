@@ -11,6 +11,7 @@ from typing import Any
 from electrolog.answers import figures as made
 from electrolog.answers import life as lives
 from electrolog.measure.calibrate import CalibrationFigures
+from electrolog.measure.detection import claimed_below_detection
 from electrolog.measure.health import Circumstances, day_points_at_the_standard, unhealthy
 from electrolog.measure.line import LineFit, fit_line
 from electrolog.measure.uneven import pooled_growth
@@ -36,11 +37,17 @@ def warnings(
     for one in asked:
         now, earlier = _circumstances(one, standards), [_circumstances(e, standards) for e in _earlier(one, asked)]
         said[one.row["id"]] += unhealthy(now, earlier, expected_um=expected_um)
+        said[one.row["id"]] += _unseen(expected_um, figures[one.row["id"]].lod_um)
     for key, text in _of_the_days(fellows, figures, lives_of_all):
         said[key].append(text)
     for key, text in _of_the_fellows(asked, fellows, figures):
         said[key].append(text)
     return {key: tuple(texts) for key, texts in said.items()}
+
+
+def _unseen(expected_um: tuple[float, float] | None, lod_um: float | None) -> list[str]:
+    text = claimed_below_detection(expected_um[0], lod_um, "the expected signal") if expected_um else None
+    return [text] if text else []
 
 
 def _around(
@@ -79,6 +86,7 @@ def _circumstances(one: Calibration, standards: Mapping[str, Row]) -> Circumstan
         standard_prepared_at=standard.get("prepared_at"),
         standard_expires_at=standard.get("expires_at"),
         diluent=standard.get("diluent"),
+        standard_analyte=standard.get("analyte"),
     )
 
 

@@ -151,9 +151,9 @@ def _said_of_signal(handling: Handling) -> list[str]:
 
 def _share(now: CalibrationFigures, reference: CalibrationFigures) -> tuple[float | None, float | None]:
     """Ratio of two sensitivities and its standard error by propagation of both relative errors."""
-    top, bottom = now.sensitivity_na_um, reference.sensitivity_na_um
-    if top is None or not bottom or bottom <= 0:
-        return None, None
+    top, bottom, lowest = now.sensitivity_na_um, reference.sensitivity_na_um, reference.sensitivity_low_na_um
+    if top is None or not bottom or bottom <= 0 or (lowest is not None and lowest <= 0):
+        return None, None  # of a reference that can't be told from zero nothing can be a share
     top_se, bottom_se = now.sensitivity_se_na_um, reference.sensitivity_se_na_um
     if top_se is None or bottom_se is None:
         return top / bottom, None

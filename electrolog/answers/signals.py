@@ -3,11 +3,12 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import asdict, dataclass
+from dataclasses import asdict, dataclass, replace
 from pathlib import Path
 from typing import Any
 
 import numpy as np
+from numpy.typing import NDArray
 
 from electrolog.answers import signal_files as files
 from electrolog.answers.history import usual_waveform
@@ -23,7 +24,9 @@ from electrolog.record.names import Names
 from electrolog.record.readable import row_by_id
 from electrolog.record.store import Record
 
+Array = NDArray[np.float64]
 Points = tuple[tuple[float, float], ...]
+SAME_SWEEP_V = 0.05  # common practice: sampling misses a vertex by less than this
 
 
 @dataclass(frozen=True)
@@ -90,7 +93,21 @@ def from_scans(
     columns |= {"reduction_peak_v": peaks.reduction.potential_v} if peaks.reduction else {}
     found = [_of_voltammogram(one) for one in reading.voltammograms]
     taken = {"taken_at_v": reading.trace_v, "background_at_v": reading.charging_v}
-    return _recorded("scans", path, reading, columns, concentration_um, found, left_out, taken, file.sheet)
+    recorded = _recorded("scans", path, reading, columns, concentration_um, found, left_out, taken, file.sheet)
+    said = _other_sweep(potential, sweep) if sweep is not None and file.potential_v is not None else ()
+    return replace(recorded, warnings=(*recorded.warnings, *said), doubts=(*recorded.doubts, *said))
+
+
+def _other_sweep(potential_v: Array, sweep: Sweep) -> tuple[str, ...]:
+    """The waveform decides with which calibrations this one is compared: it must be the one recorded."""
+    found_v = float(np.min(potential_v)), float(np.max(potential_v))
+    named_v = min(sweep.vertices_v), max(sweep.vertices_v)
+    if max(abs(found - named) for found, named in zip(found_v, named_v, strict=True)) <= SAME_SWEEP_V:
+        return ()
+    return (
+        f"the file's potentials run from {found_v[0]:.3g} to {found_v[1]:.3g} V, the waveform's from {named_v[0]:g} to "
+        f"{named_v[1]:g} V: is it the right waveform?",
+    )
 
 
 def sweep_of(record: Record, label: str, analyte: str, waveform: str | None) -> Sweep | None:

@@ -6,7 +6,8 @@ import typer
 
 from electrolog.cli.options import Json
 from electrolog.cli.session import lab_of
-from electrolog.units import CURRENT_NA, parse_quantity
+from electrolog.errors import InputError
+from electrolog.units import CURRENT_NA, FRACTION, parse_quantity
 
 
 def command(
@@ -15,7 +16,7 @@ def command(
     currents: Annotated[
         list[str], typer.Argument(metavar="CURRENT...", help="Of the unknown; replicates: 5.2nA 5.4nA or 5.2nA,5.4nA")
     ],
-    confidence: Annotated[float, typer.Option("--confidence", help="Of the interval.")] = 0.95,
+    confidence: Annotated[str, typer.Option("--confidence", help="Of the interval: 95%, 0.95")] = "0.95",
     json: Json = False,
 ) -> None:
     """Read the concentration of an unknown off a calibration, with its interval.
@@ -25,4 +26,7 @@ def command(
     from electrolog.show import concentrations
 
     values = [parse_quantity(part, CURRENT_NA, "current") for text in currents for part in text.split(",")]
-    concentrations.answer(lab_of(ctx).read_off(calibration, values, confidence), json)
+    share = parse_quantity(confidence, FRACTION, "confidence")
+    if not 0 < share < 1:
+        raise InputError(f"confidence: {confidence} is out of range; accepted: above 0 and below 1, such as 95%")
+    concentrations.answer(lab_of(ctx).read_off(calibration, values, share), json)

@@ -87,10 +87,10 @@ def hubaux_vos(fit: LineFit, replicates: int = 1, confidence: float = 0.95) -> L
     return Limits("Hubaux–Vos prediction bands", critical_um, lod_um, None)
 
 
-def claimed_below_detection(lowest_um: float, lod_um: float | None) -> str | None:
+def claimed_below_detection(lowest_um: float, lod_um: float | None, what: str = "the range") -> str | None:
     if lod_um is None or lowest_um >= lod_um:
         return None
-    return f"the range begins at {lowest_um:g} µM, below the detection limit of {lod_um:.2g} µM"
+    return f"{what} begins at {lowest_um:g} µM, below the detection limit of {lod_um:.2g} µM"
 
 
 def _k_sigma(whose: str, sd_na: float, sensitivity_na_um: float, k: float) -> Limits:

@@ -37,6 +37,7 @@ class Circumstances:
     standard_prepared_at: datetime | None = None
     standard_expires_at: datetime | None = None
     diluent: str | None = None
+    standard_analyte: str | None = None
 
 
 def unhealthy(
@@ -49,6 +50,7 @@ def unhealthy(
     """earlier: the comparable calibrations before, oldest first. expected_um: the signal's lowest and highest."""
     said = (
         past_use_by(now.analyte, now.diluent, now.standard_prepared_at, now.standard_expires_at, now.at),
+        other_standard(now.standard_analyte, now.analyte),
         unlike_temperature(now, earlier),
         unlike_medium(now, earlier),
         shifted_peaks(now, earlier, peak_shift_v),
@@ -57,6 +59,12 @@ def unhealthy(
         range_misses(now, expected_um),
     )
     return tuple(text for text in said if text)
+
+
+def other_standard(holds: str | None, measured: str) -> str | None:
+    if holds is None or not measured or holds == measured:
+        return None
+    return f"the standard holds {holds}, and {measured} was measured with it: is it the right one?"
 
 
 def unlike_temperature(now: Circumstances, earlier: Sequence[Circumstances]) -> str | None:

@@ -53,7 +53,7 @@ class TraceSettings:
 class Plateau:
     """One injection. `moves_na`: from the first to the last third of the plateau.
 
-    `rise_s`: 10 to 90 %; `fall_s`: 90 to 10 %. None: not reached before the next one began.
+    `rise_s`: 10 to 90 %; `fall_s`: 90 to 10 %. None: not seen before the next one began.
     """
 
     injection: Span
@@ -162,7 +162,7 @@ def _smooth(current: Array, time: Array) -> Array:
 
 
 def _between(time: Array, share: Array, start_s: float, end_s: float, low: float, high: float) -> float | None:
-    """Seconds from the first passing of `low` to the first of `high` after it."""
+    """Seconds from the first passing of `low` to the first of `high` after it; None too where a gap hides them."""
     here = (time >= start_s) & (time <= end_s)
     clock, part = time[here], share[here]
     above = np.flatnonzero(part >= high)
@@ -171,8 +171,8 @@ def _between(time: Array, share: Array, start_s: float, end_s: float, low: float
     below = np.flatnonzero(part[: above[0]] <= low)
     if not below.size:
         return None
-    first = _crossing(clock, part, int(below[-1]), low)
-    return _crossing(clock, part, int(above[0]) - 1, high) - first
+    way = Span(_crossing(clock, part, int(below[-1]), low), _crossing(clock, part, int(above[0]) - 1, high))
+    return None if any(gap.touches(way) for gap in gaps(time)) else way.length_s
 
 
 def _crossing(clock: Array, part: Array, before: int, level: float) -> float:
@@ -188,7 +188,7 @@ def _said_of(one: Plateau, place: int, time: Array, held: Sequence[Span]) -> lis
     if any("at its limit" in text for text in said):
         return said  # how fast a cut-off signal rose and fell can't be said
     if one.fall_s is None:
-        said.append(f"injection {place}: the current doesn't come back to a tenth before the recording goes on")
+        said.append(f"injection {place}: the current isn't seen to come back to a tenth before the recording goes on")
     elif one.tailing is not None and one.tailing > LONG_TAIL:
         said.append(
             f"injection {place}: the fall lasts {one.tailing:.2g} times the rise ({one.fall_s:.2g} s, {one.rise_s:.2g} "

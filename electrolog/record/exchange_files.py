@@ -12,7 +12,7 @@ from itertools import islice
 from pathlib import Path
 from typing import Any, TextIO
 
-from electrolog.errors import InputError, shortened, unknown
+from electrolog.errors import InputError, shortened, unknown, with_article
 from electrolog.record.columns import Column
 from electrolog.record.exchange_cells import CellReader, refusals
 from electrolog.record.exchange_faults import FILES, Faults, printable
@@ -173,6 +173,10 @@ def _places(header: list[str], line: int, rows: Rows, faults: Faults) -> dict[st
         faults.add(rows.file, line, "the header is not text in UTF-8; accepted: a CSV file saved as UTF-8")
         rows.unsure = True
         return None
+    if len(names) == 1 and (mark := next((mark for mark in ";\t" if mark in header[0]), None)):
+        faults.add(rows.file, line, f"columns are parted by {mark!r}; accepted: commas (RFC 4180), . as decimal mark")
+        rows.unsure = True
+        return None
     for place, name in enumerate(names):
         if name in places:
             faults.add(rows.file, line, f"the column '{name}' stands here twice; accepted: once")
@@ -182,7 +186,7 @@ def _places(header: list[str], line: int, rows: Rows, faults: Faults) -> dict[st
             faults.add(rows.file, line, _unknown_column(name, place, rows.sheet))
     missing = [column for column in rows.sheet.columns if column.required and column.name not in places]
     for column in missing:
-        faults.add(rows.file, line, f"{column.name}: this column is missing; a {rows.sheet.one} needs it")
+        faults.add(rows.file, line, f"{column.name}: this column is missing; {with_article(rows.sheet.one)} needs it")
     rows.unsure |= any(column.name in rows.sheet.key[:1] for column in missing)
     rows.present = frozenset(places)
     return places
@@ -200,7 +204,7 @@ def _without_refusals(values: list[Any], column: Column, start: int, rows: Rows,
     for row in refused:
         values[row - start] = None
     if column.required and None in values:
-        missing = f"{column.name}: missing; a {rows.sheet.one} needs it"
+        missing = f"{column.name}: missing; {with_article(rows.sheet.one)} needs it"
         for row in (start + index for index, value in enumerate(values) if value is None):
             refused.setdefault(row, missing)
     for row, why in refused.items():

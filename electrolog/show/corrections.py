@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from dataclasses import fields
 from typing import Any
 
 from electrolog.answers.correcting import Corrected
@@ -29,7 +30,7 @@ def answer_recomputed(changed: Sequence[Recomputed], json: bool, csv: bool) -> N
     if json:
         print_json(changed)
     elif csv:
-        print_csv([plain(one) for one in changed])
+        print_csv([plain(one) for one in changed], [column.name for column in fields(Recomputed)])
     elif not changed:
         print_lines("nothing changed: every kept figure is what its raw points give")
     else:

@@ -11,6 +11,7 @@ from typing import Any
 import pytest
 
 CAL = ("calibrate", "B07-01", "interim", "DA", "-w", "triangle")
+RISING = ("0:0.1", "0.5:6.1,6.3", "1:12.2", "2:24")
 SLIPS = {
     "a thousand times": (*CAL, "0:0.1", "0.5:6100", "1:12200", "2:24000"),
     "nanomolar as micromolar": (*CAL, "0:0.1", "500:6.1", "1000:12.2", "2000:24"),
@@ -18,6 +19,17 @@ SLIPS = {
     "an inverse factor": (*CAL, "--factor", "0.0838"),
     "a reversed point": (*CAL, "0:0.1", "0.5:12.2", "1:6.1", "2:24"),
     "negative currents": ("calibrate", "B9-01", "pre", "DA", "0:0.1", "1:-12", "2:-24", "-w", "triangle"),
+    "another analyte's standard": (
+        "calibrate",
+        "B9-01",
+        "pre",
+        "5-HT",
+        *RISING,
+        "-w",
+        "triangle",
+        "--standard",
+        "s-48-da",
+    ),
     "the future": ("clean", "B9-01", "-m", "acetone", "--at", "tomorrow 23:00"),
     "a future exposure": ("expose", "B9-01", "--for", "2h", "-s", "slice", "--start", "tomorrow 23:00"),
     "before it was made": ("clean", "B9-01", "-m", "acetone", "--at", "2025-12-01T10:00Z"),

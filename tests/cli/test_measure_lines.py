@@ -95,6 +95,29 @@ def test_an_unknown_is_read_off_with_its_interval(cli: Any) -> None:
     assert "(Fieller)" in cli.ok("concentration", "K1", "7.7nA").out
     assert "outside what was calibrated" in cli.ok("concentration", "K1", "80nA").out
     assert "calibration is called 'K9'" in cli.refused("concentration", "K9", "5nA")
+    wide, narrow = (
+        cli.ok("concentration", "K1", "7.7nA", "--confidence", share, "--json").json["prediction"]["delta_um"]
+        for share in ("99%", "0.9")
+    )
+    assert wide[0] < narrow[0] < narrow[1] < wide[1]
+    assert "above 0 and below 1" in cli.refused("concentration", "K1", "5nA", "--confidence", "100%")
+
+
+def test_of_a_reference_without_response_nothing_is_a_share(cli: Any) -> None:
+    flat = ("0:0.1,0.2,-0.1", "1uM:0.15", "2uM:0.05,0.3")
+    cli.ok("calibrate", "B9-01", "pre", "DA", *flat, "-w", "triangle", "--at", "2026-01-07T09:00Z", "--yes")
+    cli.ok("calibrate", "B9-01", "interim", "DA", *POINTS, "-w", "triangle", "--at", "2026-01-07T10:00Z", "--yes")
+    said = cli.ok("calibrations", "B9-01", "--json").json
+    assert [one["share_left"] for one in said] == [None, None]
+    assert "share left ? of the reference" in cli.ok("calibrations", "B9-01").out
+
+
+def test_a_standards_uncertainty_is_carried_in_however_its_label_is_typed(cli: Any) -> None:
+    at = ("-w", "triangle", "--at", "2026-01-07T09:00Z", "--standard", "s-48-da")
+    shared = cli.ok("calibrate", "B9-01", "pre", "DA", *POINTS, *at, "--json").json["sensitivity_se_shared_na_um"]
+    assert shared == pytest.approx(0.02 * 12.1, rel=0.03)
+    assert cli.ok("recompute", "--json").json == []
+    assert cli.ok("recompute", "--csv").out.startswith("calibration,")
 
 
 def test_an_unknown_has_no_interval_where_the_slope_says_nothing(cli: Any) -> None:
@@ -130,6 +153,8 @@ def test_a_range_that_misses_the_expected_signal_is_said(cli: Any) -> None:
     assert "is expected" in cli.ok("calibrations", "B07-01", "--expecting", "50nM-5uM").out
     assert "is expected" not in cli.ok("calibrations", "B07-02", "--expecting", "0.3uM-1uM").out
     assert "lowest and highest" in cli.refused("calibrations", "B07-01", "--expecting", "5uM")
+    unseen = "the expected signal begins at 0.001 µM, below the detection limit"
+    assert unseen in " ".join(cli.ok("calibrations", "B07-02", "--expecting", "1nM-1uM").out.split())
 
 
 @pytest.mark.parametrize(

@@ -171,6 +171,13 @@ def test_potentials_that_nothing_says_are_asked_for(cli: Any, sheet: Any, tmp_pa
     assert "name the waveform" in cli.refused("scans", "B9-01", "pre", "DA", file, *FOUR)
 
 
+def test_potentials_unlike_the_waveforms_are_asked_about(cli: Any, sheet: Any, tmp_path: Path) -> None:
+    file = save_sheet("h5", tmp_path, *sheet[:3])
+    common = ("scans", "B9-01", "pre", "DA", file, *FOUR, "-w", "serotonin-n")
+    assert "is it the right waveform?" in cli.refused(*common)
+    assert "from -0.4 to 1.3 V" in " ".join(cli.ok(*common, "--look").out.split())
+
+
 @pytest.mark.parametrize(
     ("name", "content", "words"),
     [

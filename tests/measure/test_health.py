@@ -43,6 +43,11 @@ def test_a_standard_past_its_use_by():
     assert "2 h after it expired" in only(standard_expires_at=NOON - timedelta(hours=2))
 
 
+def test_a_standard_of_another_analyte():
+    assert "holds serotonin, and dopamine was measured" in only(standard_analyte="serotonin")
+    assert unhealthy(replace(NOW, standard_analyte="dopamine"), [BEFORE]) == ()
+
+
 def test_what_the_bottle_says_goes_before_the_rule():
     fresh = NOON + timedelta(hours=1)
     assert past_use_by("dopamine", "PBS", NOON - timedelta(days=3), fresh, NOON) is None

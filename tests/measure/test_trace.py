@@ -142,6 +142,16 @@ def test_a_gap_is_named_and_within_a_plateau_named_there():
     assert said(read_trace(time[kept], current[kept]), "injection 2", "gap within its plateau")
 
 
+def test_a_fall_hidden_by_a_gap_has_no_length():
+    time, current, starts = trace()
+    kept = (time < starts[1] + 31) | (time > starts[1] + 60)
+    reading = read_trace(time[kept], current[kept])
+    assert reading.plateaus[1].fall_s is None
+    assert reading.plateaus[0].fall_s is not None
+    assert said(reading, "injection 2", "isn't seen to come back")
+    assert not said(reading, "clings")
+
+
 def test_an_amplifier_at_its_limit_is_named_at_its_injection():
     time, current, _ = trace(drift=(0,))
     reading = read_trace(time, np.minimum(current, 20))

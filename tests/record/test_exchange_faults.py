@@ -75,7 +75,7 @@ def test_all_faults_of_all_files_come_at_once_in_their_order(record: Record, tmp
             "line 2, exposed_length_um: holds bytes that are",
         ),
         ("electrodes.csv", "electrode\nP1\n".encode("utf-16"), "line 1, the header is not text in UTF-8"),
-        ("electrodes.csv", "electrode;note\nP1;x\n", "line 1, electrode;note: no column of electrodes.csv"),
+        ("electrodes.csv", "electrode;note\nP1;x\n", "line 1, columns are parted by ';'; accepted: commas"),
         (
             "electrodes.csv",
             "electrode,exposed_length_um\nP1,1e301\n",
