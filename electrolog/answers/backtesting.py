@@ -18,6 +18,7 @@ from electrolog.fouling.next_reading import reading_sd
 from electrolog.judge import backtest, odds, scores
 from electrolog.judge.backtest import FitVerdicts, Past, Predictive, Scored, Targets, fit_verdicts
 from electrolog.judge.limits import LimitRow, Limits, effective
+from electrolog.judge.mixed_rival import linear_mixed
 from electrolog.record import queries
 from electrolog.record.store import Connection, Record
 
@@ -29,6 +30,7 @@ OURS = "electrolog"
 RIVALS: dict[str, Callable[[Past, Targets], Predictive]] = {
     "last value": backtest.last_value,
     "own line": backtest.own_line,
+    "linear mixed model": linear_mixed,
     "cohort mean": backtest.cohort_mean,
 }
 

@@ -87,7 +87,7 @@ class Targets:
 def last_value(past: Past, targets: Targets) -> Predictive:
     """The probe's last reading; strays like the cohort's readings from their last ones."""
     steps = np.diff(past.reading)[np.diff(past.unit) == 0]
-    return _student(targets.own_reading[:, -1], np.full(len(targets.hours), _robust_sd(steps)))
+    return student(targets.own_reading[:, -1], np.full(len(targets.hours), _robust_sd(steps)))
 
 
 def own_line(past: Past, targets: Targets) -> Predictive:
@@ -101,7 +101,7 @@ def own_line(past: Past, targets: Targets) -> Predictive:
     plain = last_value(past, targets)
     with np.errstate(invalid="ignore", divide="ignore"):
         reach = np.sqrt(1 + 1 / lines.count + away**2 / lines.spread_hours2)
-        drawn = _student(lines.centre + lines.slope * away, sd * reach)
+        drawn = student(lines.centre + lines.slope * away, sd * reach)
     has_line = (lines.spread_hours2 > 0)[:, None]
     return Predictive(np.where(has_line, drawn.centre, plain.centre), np.where(has_line, drawn.sd, plain.sd))
 
@@ -117,10 +117,10 @@ def cohort_mean(past: Past, targets: Targets) -> Predictive:
         strays = past.reading[known] - line.centre - slope * (past.hours[known] - line.centre_hours)
         centre[asked] = line.centre + slope * (targets.hours[asked] - line.centre_hours)
         sd[asked] = _robust_sd(strays)
-    return _student(centre, sd)
+    return student(centre, sd)
 
 
-def _student(centre: Array, scale: Array) -> Predictive:
+def student(centre: Array, scale: Array) -> Predictive:
     """Student's t as a mixture of normals whose variances are scaled inverse chi-squared."""
     from scipy.special import chdtri
 
