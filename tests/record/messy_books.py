@@ -5,7 +5,7 @@ from __future__ import annotations
 import csv
 from collections.abc import Callable
 from dataclasses import dataclass, field
-from datetime import date
+from datetime import date, datetime
 from pathlib import Path
 from typing import Any
 
@@ -200,6 +200,31 @@ def ambiguous(path: Path) -> None:
     path.write_text("\n".join(rows), encoding="utf-8")
 
 
+def told_once_for_both(path: Path) -> None:
+    rows = [
+        ["Electrode", "Date", "Sensitivity (nA/µM)", None, "Run (h)"],
+        [None, None, "Pre", "Post", None],
+        [12, datetime(2023, 1, 2, 14, 30), 10.0, "7 nA/µM", 3],
+        [13, datetime(2023, 1, 3, 9, 0), 11.5, "-", 2],
+    ]
+    book = _save(path, ("S", rows))
+    for span in ("C1:D1", "A1:A2", "B1:B2", "E1:E2"):
+        book["S"].merge_cells(span)
+    book.save(path)
+
+
+def units_below(path: Path) -> None:
+    rows = [
+        [None, "Lab book 4"],
+        [],
+        [None, "E. no.", "Date (dd/mm/yy)", "Slope", "Slope error", "Lot", "Pre or post"],
+        [None, "units", None, "nA/uM", "nA/uM", None, None],
+        [None, 7, "03/04/22", 10, 0.2, "L1", "pre-calibration"],
+        [None, 8, "04/04/22", 11, 0.2, "L1", "after"],
+    ]
+    _save(path, ("S", rows))
+
+
 USUAL = {"waveform": "triangle"}
 BOTH = {**USUAL, "analyte": "DA"}
 BOOKS = [
@@ -216,6 +241,7 @@ BOOKS = [
         {**BOTH, "setting": "in-vivo"},
         [("E1", "2022-05-02", "pre", 10.0), ("E1", "2022-05-02", "post", 6.0), ("E2", "2022-05-03", "pre", 11.0)],
         [("E1", "2022-05-02", 150.0, "R-70"), ("E2", "2022-05-03", 90.0, "R-71")],
+        told=("runs!F4",),
     ),
     MessyBook(
         "across.xlsx",
@@ -299,5 +325,20 @@ BOOKS = [
         ambiguous,
         {**BOTH, "date_order": "mdy", "decimal_mark": ",", "unit_sensitivity": "uM/nA", "same:a1": "A-1"},
         [("A-1", "2024-03-04", "pre", 0.8), ("A-1", "2024-03-04", "post", 1 / 0.9)],
+    ),
+    MessyBook(
+        "once.xlsx",
+        told_once_for_both,
+        {**BOTH, "setting": "slice"},
+        [("12", "2023-01-02", "pre", 10.0), ("12", "2023-01-02", "post", 7.0), ("13", "2023-01-03", "pre", 11.5)],
+        [("12", "2023-01-02", 180.0, None), ("13", "2023-01-03", 120.0, None)],
+        told=("S!D4",),
+    ),
+    MessyBook(
+        "units.xlsx",
+        units_below,
+        BOTH,
+        [("7", "2022-04-03", "pre", 10.0), ("8", "2022-04-04", "post", 11.0)],
+        told=("S!C5", "S!C6"),
     ),
 ]

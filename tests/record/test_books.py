@@ -1,4 +1,4 @@
-"""Eleven books kept in eleven ways come into the record as a careful person would read them."""
+"""Thirteen books kept in thirteen ways come into the record as a careful person would read them."""
 
 from __future__ import annotations
 
@@ -31,7 +31,7 @@ def adopted(lab: Lab, path: Path, messy: MessyBook, *, commit: bool = False) -> 
 
 
 def held(lab: Lab) -> dict[str, int]:
-    return {sheet: len(lab.rows(sheet)) for sheet in ("electrodes", "calibrations", "exposures")}
+    return {sheet: len(lab.rows(sheet)) for sheet in ("batches", "electrodes", "calibrations", "exposures")}
 
 
 def test_only_what_a_book_cannot_tell_is_asked(lab: Lab, book: tuple[Path, MessyBook]) -> None:

@@ -89,6 +89,13 @@ def clock_time(cell: Content) -> time:
         raise InputError(f"time: '{shortened(shown(cell))}' is no time of day; accepted: such as 14:30") from None
 
 
+def order_in_heading(heading: str) -> str:
+    """`Date (dd/mm/yy)` says it; empty for a heading that doesn't."""
+    found = re.search(r"\b([dmy])\1{0,3}([./-])([dmy])\3{0,3}\2([dmy])\4{0,3}\b", heading.casefold())
+    order = found[1] + found[3] + found[4] if found else ""
+    return order if order in ORDERS else ""
+
+
 def date_order(cells: Iterable[Content]) -> tuple[str, str]:
     """The order that every date typed as text allows, and why; empty where two orders would do."""
     possible, witness = set(ORDERS), ""

@@ -7,7 +7,7 @@ from datetime import datetime, timedelta, tzinfo
 
 from electrolog.clock import parse_iso, utc_now
 from electrolog.errors import InputError, shortened
-from electrolog.record.books.days import When, clock_time, date_order, when
+from electrolog.record.books.days import When, clock_time, date_order, order_in_heading, when
 from electrolog.record.books.drafts import Draft, Extract
 from electrolog.record.books.grid import Book, Content, shown
 from electrolog.record.books.labels import Labels
@@ -66,7 +66,8 @@ class Extraction:
         try:
             electrode = self.labels.of(view)
             exposure = self._exposure(view, electrode, runs) if runs is not None else None
-            made = [self._calibration(view, electrode, stage, exposure) for stage in stages]
+            shared = exposure is not None or len(stages) > 1
+            made = [self._calibration(view, electrode, stage, exposure, shared) for stage in stages]
         except InputError as why:
             self.out.say("refused", view.range, why.message)
             return
@@ -76,10 +77,10 @@ class Extraction:
             *([exposure] if exposure else []),
         ]
 
-    def _calibration(self, view: View, electrode: str, heading_stage: str, run: Draft | None) -> Draft:
+    def _calibration(self, view: View, electrode: str, heading_stage: str, run: Draft | None, shared: bool) -> Draft:
         stage = heading_stage or self.said.stage(view)
         analyte, waveform = self.said.analyte(view), self.said.waveform(view)
-        at, day, assumed = self._moment(view, stage, run)
+        at, day, assumed = self._moment(view, stage, run, shared)
         numbers, points, notes = self.measured.calibration(view, heading_stage)
         texts, kept = self.said.texts(view)
         clock = "" if assumed else f"T{at.astimezone(self.zone):%H%M}"
@@ -105,7 +106,7 @@ class Extraction:
         if minutes is None:
             return None
         setting = self.said.setting(view)
-        start, _, assumed = self._moment(view, "run", None)
+        start, _, assumed = self._moment(view, "run", None, False)
         texts, kept = self.said.texts(view)
         notes = kept + (["time of day assumed"] if assumed else [])
         subject, recording = view.first("subject"), view.first("recording")
@@ -115,15 +116,19 @@ class Extraction:
         waveform = self.said.waveform(view)
         return Draft("exposures", {**values, "waveform": waveform or None, "note": self._note(view, notes)}, view.range)
 
-    def _moment(self, view: View, stage: str, run: Draft | None) -> tuple[datetime, str, bool]:
-        """When, which day, and whether the time of day is the mapping's. Raises InputError; also for the future."""
+    def _moment(self, view: View, stage: str, run: Draft | None, shared: bool) -> tuple[datetime, str, bool]:
+        """When, which day, and whether the time of day is the mapping's. Raises InputError; also for the future.
+
+        `shared`: a time of day in the row is the run's, or of one of several calibrations, and nobody knows of which.
+        """
         found = view.first("day", stage)
         if found is None:
             raise InputError("date: missing; accepted: a date in the row, or beside a label above the table")
         said = self._when(view, found)
-        time = said.time
+        own = not shared or bool(found.meaning and found.meaning.stage)
+        time = said.time if own else None
         clock = view.first("time")
-        if time is None and clock is not None and run is None:
+        if time is None and clock is not None and not shared:
             time = clock_time(clock.value)
         typed = time.isoformat() if time else self.mapping.times[stage]
         at = parse_iso(f"{said.day}T{typed}", self.zone, "date")
@@ -172,7 +177,8 @@ class Extraction:
         return (answer or found) == ","
 
     def _date_order(self) -> str:
-        answer = self.mapping.answered("date_order")
+        headings = (heading.text for table in self.tables for heading in table.headings)
+        answer = self.mapping.answered("date_order") or next(filter(None, map(order_in_heading, headings)), "")
         found, why = date_order(_days(self.tables, self.mapping))
         if not answer and not found:
             self.out.ask("date_order", "In which order do dates stand?", why, ("dmy", "mdy", "ymd"))

@@ -24,7 +24,8 @@ FIELDS: dict[str, tuple[Unit | None, str]] = {
     ),
     "duration": (
         units.MINUTES,
-        r"(run|recording|exposure|implant\w*)? ?(duration|length of run|time in (tissue|brain|slice))|exposure( time)?",
+        r"(run|recording|exposure|implant\w*)? ?(duration|length of run|time in (tissue|brain|slice))"
+        r"|exposure( time)?|run( time)?",
     ),
     "noise": (units.CURRENT_NA, r"(rms )?noise|baseline (sd|noise)"),
     "background": (units.CURRENT_NA, r"(background|bg|charging)( current)?"),
@@ -35,7 +36,7 @@ FIELDS: dict[str, tuple[Unit | None, str]] = {
     "diameter": (units.LENGTH_UM, r"(fib(re|er) )?diam\w*|od"),
     "electrode": (
         None,
-        r"(probe|electrode|elec\.?|cfe|cfm|cfme|microelectrode|e)( ?(id|no\.?|#|nr\.?|name|number|label|code))?",
+        r"(probe|electrode|elec\.?|cfe|cfm|cfme|microelectrode|e\.?)( ?(id|no\.?|#|nr\.?|name|number|label|code))?",
     ),
     "batch": (None, r"batch( ?(id|no\.?|#))?|lot"),
     "day": (

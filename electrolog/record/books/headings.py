@@ -11,7 +11,7 @@ from electrolog.errors import InputError, unknown
 from electrolog.record.books.fields import FIELDS
 from electrolog.units import Unit
 
-_STAGES = {"pre": r"\b(pre|before|prior)\b", "post": r"\b(post|after)\b"}
+_STAGES = {"pre": r"\b(pre|before|prior)(?=cal|\b)", "post": r"\b(post|after)(?=cal|\b)"}
 _SIGN = r"[unmp]?[am]\s*(?:/|per)\s*[unmp]?[am]|[unp]a|[unmp]m|mv|v|min|hours|h|s|deg c|c"
 _UNIT = re.compile(rf"[\[(]\s*([^\[\]()]*)\s*[\])]\s*$|(?:,|\bin\b|;|:|(?<=\S))\s+({_SIGN})\s*$")
 _INVERSE = re.compile(r"[unmp]?m\s*(/|per)\s*[unpm]?a", re.IGNORECASE)
@@ -43,7 +43,9 @@ def meaning(heading: str) -> Meaning | None:
     if stage and not re.search(r"pre ?(/|or|-) ?post|before ?/ ?after", bare):
         bare = (
             re.sub(
-                r"[-\s]*\b(pre|before|prior|post|after)\b[-\s]*(cal\w*\.?|run|exp\w*\.?|implant\w*)?[-:\s]*", " ", bare
+                r"[-\s]*\b(pre|before|prior|post|after)(?=cal|\b)[-\s]*(cal\w*\.?|run|exp\w*\.?|implant\w*)?[-:\s]*",
+                " ",
+                bare,
             ).strip()
             or "sensitivity"
         )

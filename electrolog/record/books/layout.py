@@ -18,7 +18,9 @@ _KEY_VALUE = re.compile(r"([^:]{1,40}):\s*(\S.*)")
 _STAGE = re.compile(r"\b(pre|post|before|after)\b", re.IGNORECASE)
 _NUMBER = re.compile(r"\d+([.,]\d+)?")
 _BARE_STAGE = re.compile(r"pre|post|before|after", re.IGNORECASE)
-_ONLY_UNIT = re.compile(r"[\[(]?\s*[unmpµμ]?([amhsv]|min)\s*(/\s*[unmpµμ]?[am])?\s*[\])]?|\W?°?c\W?", re.IGNORECASE)
+_ONLY_UNIT = re.compile(
+    r"[\[(]?\s*[unmpµμ]?([amhsv]|min)\s*(/\s*[unmpµμ]?[am])?\s*[\])]?|\W?°?c\W?|units?", re.IGNORECASE
+)
 Understand = Callable[[str], Meaning | None]
 
 
@@ -120,6 +122,8 @@ def _is_plain_concentration(found: Meaning | None) -> bool:
 def _headers(grid: Grid, understand: Understand) -> list[_Header]:
     found: list[_Header] = []
     for row in range(len(grid.rows)):
+        if found and found[-1].below > row:
+            continue  # the units of the row above
         headings = _headings(grid, row, understand)
         if not _is_header(grid, row, headings, understand):
             continue
@@ -206,12 +210,17 @@ def _data_end(grid: Grid, header: _Header, end: int, understand: Understand) -> 
     return end
 
 
+def _is_spanning(grid: Grid, row: int, column: int) -> bool:
+    """A cell merged over several columns heads them, and is no label of the cell beside it."""
+    return (row, column + 1) in grid.spans and grid.spans[row, column + 1] == (row, column)
+
+
 def row_facts(grid: Grid, row: int, understand: Understand) -> Iterator[Fact]:
     """`Probe: K-07` in one cell, or `Probe` with its value to the right."""
     filled = grid.filled(row)
     for place, column in enumerate(filled):
         cell = grid.at(row, column)
-        if not isinstance(cell, str) or _BARE_STAGE.fullmatch(cell):
+        if not isinstance(cell, str) or _BARE_STAGE.fullmatch(cell) or _is_spanning(grid, row, column):
             continue
         both = _KEY_VALUE.fullmatch(cell) or re.fullmatch(r"((?i:probe|electrode|animal))\s+(\S+)", cell)
         if both and understand(both[1]):

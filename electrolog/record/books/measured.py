@@ -43,17 +43,20 @@ class Measured:
             one
             for row in view.rows
             for one in (*row, *view.facts)
-            if one.meaning and one.field in ("sensitivity", "current") and self._says_something(one)
+            if one.meaning and one.field in ("sensitivity", "current") and self._says_something(view, one)
         ]
         return list(dict.fromkeys(one.meaning.stage for one in filled if one.meaning))
 
-    def _says_something(self, one: Found) -> bool:
+    def _says_something(self, view: View, one: Found) -> bool:
         if one.value is None:
             return False
         try:
-            return number(one.value, units.PLAIN, "", self.comma).value is not None
+            said = number(one.value, units.PLAIN, "", self.comma)
         except InputError:
             return True  # to be refused where it is read
+        if said.value is None:
+            self.out.say("doubtful", view.place(one), said.doubt)
+        return said.value is not None
 
     def calibration(self, view: View, stage: str) -> tuple[dict[str, Value], tuple[Point, ...], list[str]]:
         """The columns of a calibration that hold numbers, its points, and what of the cells goes into the note."""
