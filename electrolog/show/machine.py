@@ -6,6 +6,7 @@ import csv
 import io
 import json
 import math
+import re
 import sys
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import asdict, is_dataclass
@@ -59,4 +60,7 @@ def _cell(value: Any) -> Any:
     if isinstance(value, float):
         return repr(value).removesuffix(".0")
     # A spreadsheet would run a cell that begins like a formula; the apostrophe keeps it text.
-    return f"'{value}" if isinstance(value, str) and value[:1] in ("=", "+", "@", "\t") else value
+    return f"'{value}" if isinstance(value, str) and _FORMULA.match(value) else value
+
+
+_FORMULA = re.compile(r"[=+@\t\r]|-(?![\d.]+( +-?[\d.]+)*$)")  # `-0.4 1.3 -0.4` are potentials

@@ -87,8 +87,12 @@ def test_csv_without_rows_keeps_its_head(monkeypatch: pytest.MonkeyPatch) -> Non
     assert csv_of(monkeypatch, [], ["a", "b"]) == "a,b\r\n"
 
 
-@pytest.mark.parametrize("text", ["=1+1", "+1", "@x", "\tx"])
+@pytest.mark.parametrize("text", ["=1+1", "+1", "@x", "\tx", "\rx", "-1+1", "-cmd"])
 def test_a_spreadsheet_runs_no_cell(monkeypatch: pytest.MonkeyPatch, text: str) -> None:
     (row,) = csv.DictReader(io.StringIO(csv_of(monkeypatch, [{"a": text, "b": -1.5}]), newline=""))
-    assert row["a"][0] not in "=+@\t"
+    assert row["a"][0] not in "=+@-\t\r"
     assert row["b"] == "-1.5"
+
+
+def test_potentials_are_no_formula(monkeypatch: pytest.MonkeyPatch) -> None:
+    assert csv_of(monkeypatch, [{"vertices_v": "-0.4 1.3 -0.4"}]).splitlines()[1] == "-0.4 1.3 -0.4"
