@@ -28,6 +28,7 @@ COMMANDS: dict[str, dict[str, str]] = {
         "concentration": "Read the concentration of an unknown off a calibration.",
         "control": "Control chart of a check probe or check standard, per rig.",
         "list": "The lab's words, analytes, waveforms, batches or standards.",
+        "labels": "A sheet of stickers with codes that a hand scanner reads.",
         "report": "One page of probes, of a batch or of the lab, to read, print and keep.",
     },
     "Judging": {

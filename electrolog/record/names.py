@@ -2,12 +2,18 @@
 
 from __future__ import annotations
 
+import re
+
 from sqlalchemy import Connection, func, select
 
 from electrolog.errors import InputError, UnknownName, shortened, unknown
 from electrolog.record import schema
 from electrolog.record.builtin import WORDS
 from electrolog.record.sheets import BY_NAME, TERMS, Sheet
+
+# A hand scanner may be set to send what kind of code it read before the text (ISO/IEC 15424: ]Q and a digit is a QR
+# code), and a space or a line's end after it.
+_FROM_A_SCANNER = re.compile(r"\s*(?:\]Q\d)?(.*?)\s*", re.DOTALL)
 
 
 class Names:
@@ -33,6 +39,8 @@ class Names:
         found = self._known.get((sheet, name))
         if found is None:
             found = self._asked(sheet, name)
+        if found is None and sheet == "electrodes" and as_scanned(name) != name:
+            found = self.find(sheet, as_scanned(name))
         if found is not None:
             self._known[sheet, name] = found
         return found
@@ -49,6 +57,12 @@ class Names:
 
     def spelled(self, sheet: str, name: str) -> str | None:
         """How a live row of that name is spelled, if there is one that looks the same."""
+        found = self._spelled_so(sheet, name)
+        if found is None and sheet == "electrodes" and as_scanned(name) != name:
+            found = self._spelled_so(sheet, as_scanned(name))
+        return found
+
+    def _spelled_so(self, sheet: str, name: str) -> str | None:
         added = self._added.get((sheet, name.casefold()))
         if added is not None:
             return added
@@ -120,6 +134,12 @@ class Names:
             ):
                 self._words[kind].setdefault(term.casefold(), term)
         return self._words
+
+
+def as_scanned(text: str) -> str:
+    """A label without what a hand scanner put around it."""
+    found = _FROM_A_SCANNER.fullmatch(text)
+    return found[1] if found else text
 
 
 def _label_column(sheet: Sheet) -> str:

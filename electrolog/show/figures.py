@@ -5,7 +5,7 @@ Meaning is never carried by colour alone: marks and line styles differ too.
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
 from contextlib import contextmanager
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
@@ -75,6 +75,26 @@ def figure(path: Path, width_in: float, height_in: float) -> Iterator[Figure]:
         yield drawn
         undated = {".png": {"Software": None}, ".svg": {"Date": None}, ".pdf": {"CreationDate": None}}
         drawn.savefig(path, metadata=undated[path.suffix.casefold()])
+
+
+@contextmanager
+def figures_of_pages(path: Path, width_in: float, height_in: float) -> Iterator[Callable[[], Figure]]:
+    """A function that adds a page to the PDF at `path`; pages are written at the end."""
+    matplotlib = _matplotlib()
+    with matplotlib.rc_context(_LOOK):
+        from matplotlib.backends.backend_pdf import PdfPages
+        from matplotlib.figure import Figure
+
+        pages: list[Figure] = []
+
+        def add_page() -> Figure:
+            pages.append(Figure(figsize=(width_in, height_in)))
+            return pages[-1]
+
+        yield add_page
+        with PdfPages(path, metadata={"CreationDate": None}) as book:
+            for page in pages:
+                book.savefig(page)
 
 
 def two_sided() -> Colormap:
