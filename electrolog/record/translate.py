@@ -47,6 +47,8 @@ def translated(name: str) -> Iterator[None]:
         raise _refusal(str(error.orig), name) from None
     except sqlite3.Error as error:  # of a copy, which is the driver's own matter
         raise _refusal(str(error), name) from None
+    except UnicodeDecodeError:  # the driver fails over its own message, which quotes what a damaged page holds
+        raise _refusal("malformed", name) from None
 
 
 def _refusal(said: str, name: str) -> RecordError:

@@ -38,7 +38,11 @@ def verify(connection: Connection, anchor: str | None = None) -> Verification:
     try:
         expected, count, head = _replayed(connection, faults)
         found = _found(connection)
-    except (ValueError, TypeError) as why:  # a value of no kind that its column could ever have been given
+    except (
+        ValueError,
+        TypeError,
+        AttributeError,
+    ) as why:  # a value of no kind that its column could ever have been given
         return Verification(0, journal.FIRST_HASH, (*faults, f"a value can't be read ({shortened(str(why))})"))
     for place in sorted(expected.keys() | found.keys()):
         faults += _compared(place, expected.get(place), found.get(place))

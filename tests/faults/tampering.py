@@ -99,7 +99,6 @@ def close_the_gap(connection: sqlite3.Connection, chance: random.Random) -> str:
 def reorder_entries(connection: sqlite3.Connection, chance: random.Random) -> str:
     one, other = sorted(chance.sample(entries(connection), 2))
     for a, b in ((one, -1), (other, one), (-1, other)):
-        connection.execute("PRAGMA ignore_check_constraints = ON")
         connection.execute("UPDATE journal SET seq = ? WHERE seq = ?", (b, a))
     return f"journal {one} and {other} changed places"
 
@@ -185,6 +184,7 @@ def tamper(whole: Path, copy: Path, seed: int) -> tuple[str, str]:
     with closing(sqlite3.connect(copy)) as connection:
         for (trigger,) in connection.execute("SELECT name FROM sqlite_master WHERE type = 'trigger'").fetchall():
             connection.execute(f"DROP TRIGGER {trigger}")
+        connection.execute("PRAGMA ignore_check_constraints = ON")
         did = kind(connection, chance)
         connection.commit()
     return kind.__name__, did
