@@ -169,6 +169,18 @@ def test_a_formula_is_never_evaluated(lab: Lab, book: Callable[..., Path]) -> No
     assert not any("HYPERLINK" in str(row) or "cmd" in str(row) for row in lab.rows("calibrations"))
 
 
+def test_a_hidden_sheet_is_read_and_said_to_be_hidden(lab: Lab, book: Callable[..., Path]) -> None:
+    path = book(GOOD)
+    workbook = openpyxl.load_workbook(path)
+    workbook.create_sheet("front")
+    workbook.active = 1
+    workbook["Sheet"].sheet_state = "hidden"
+    workbook.save(path)
+    found = lab.adopt(path, answers=ANSWERS)
+    assert found.count("new") == 2
+    assert any("'Sheet' is hidden" in note for note in found.notes)
+
+
 def test_two_spellings_are_asked_about_and_not_decided(lab: Lab, book: Callable[..., Path]) -> None:
     path = book(GOOD, ["k 01", "2024-03-05", "pre", 11.0, ""], ["K-1", "2024-03-06", "pre", 10.0, ""])
     assert "may be 'K-1' in another spelling" in remarks(lab, path)["Sheet!A3:E3"]

@@ -28,15 +28,15 @@ class Grid:
     rows: list[list[Content]]
     spans: Mapping[Spot, Spot] = field(default_factory=dict)
     marks: Mapping[Spot, Marks] = field(default_factory=dict)
+    hidden: bool = False
     turned: bool = False  # rows are the sheet's columns; places are still told as in the sheet
 
     def turn(self) -> Grid:
         """For a sheet that has its headings down the first column."""
         turned = [[self._cell(row, column) for row in range(len(self.rows))] for column in range(self.width)]
         spans = {_swapped(spot): _swapped(first) for spot, first in self.spans.items()}
-        return Grid(
-            self.name, tidy(turned), spans, {_swapped(spot): m for spot, m in self.marks.items()}, not self.turned
-        )
+        marks = {_swapped(spot): mark for spot, mark in self.marks.items()}
+        return Grid(self.name, tidy(turned), spans, marks, self.hidden, not self.turned)
 
     def _cell(self, row: int, column: int) -> Content:
         return self.rows[row][column] if column < len(self.rows[row]) else None

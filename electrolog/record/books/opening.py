@@ -48,7 +48,9 @@ def open_book(path: Path) -> Book:
             notes = ("colour, strikethrough and comments were not looked at: they are read from an .xlsx of 16 MB",)
     else:
         notes = ("colour, strikethrough and comments were not looked at: save the book as .xlsx to have them told",)
-    return Book(path.name, fingerprint, tuple(_grids(path, content, marks)), notes)
+    grids = tuple(_grids(path, content, marks))
+    hidden = tuple(f"the sheet '{grid.name}' is hidden, and was read like any other" for grid in grids if grid.hidden)
+    return Book(path.name, fingerprint, grids, notes + hidden)
 
 
 def _bytes(path: Path) -> bytes:
@@ -197,7 +199,9 @@ def _grids(path: Path, content: bytes, marks: Mapping[str, Mapping[Spot, Marks]]
             if meta.typ == calamine.SheetTypeEnum.WorkSheet:
                 sheet = book.get_sheet_by_name(meta.name)
                 rows: list[list[Content]] = sheet.to_python(skip_empty_area=False)
-                yield Grid(meta.name, tidy(rows), _spans(sheet.merged_cell_ranges or ()), marks.get(meta.name, {}))
+                spans = _spans(sheet.merged_cell_ranges or ())
+                hidden = meta.visible != calamine.SheetVisibleEnum.Visible
+                yield Grid(meta.name, tidy(rows), spans, marks.get(meta.name, {}), hidden)
     except calamine.PasswordError:
         raise InputError(f"{path.name}: is locked by a password; accepted: a copy saved without one") from None
     except calamine.CalamineError as why:
