@@ -50,12 +50,14 @@ def command(
     electrolog check B07-01 --analyte dopamine --waveform triangle --setting in-vivo --run 4h --needs 50nM
     """
     from electrolog.show import checks
+    from electrolog.show.progress import working
 
     lab = lab_of(ctx)
     moment = lab.moment(at)
     planned = run_of(analyte, waveform, setting, run)
     demands = asking(needs, project, limit)
-    found = lab.check(chosen(lab, labels, everything, moment), planned, **demands, moment=moment)
+    with working("judging the probes"):
+        found = lab.check(chosen(lab, labels, everything, moment), planned, **demands, moment=moment)
     if page is not None:
         from electrolog.show.page import write_page
 

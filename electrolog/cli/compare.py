@@ -26,11 +26,13 @@ def command(
     electrolog compare --between coating --analyte dopamine
     """
     from electrolog.show import comparison
+    from electrolog.show.progress import working
     from electrolog.units import HOURS, parse_quantity
 
     after_h = parse_quantity(after, HOURS, "after")
     lab = lab_of(ctx)
-    found = lab.compare(by, analyte, waveform, after_h=after_h, more=more)
+    with working("comparing the groups"):
+        found = lab.compare(by, analyte, waveform, after_h=after_h, more=more)
     if figure is not None:
         from electrolog.show.groups_figure import draw
 

@@ -27,12 +27,14 @@ def command(
     electrolog forecast B07-01 --analyte dopamine --waveform triangle --setting in-vivo --run 4h
     """
     from electrolog.show import forecasts
+    from electrolog.show.progress import working
     from electrolog.units import PLAIN, parse_quantity
 
     lab = lab_of(ctx)
     wanted = [parse_quantity(text, PLAIN, "quantiles") for text in quantiles.split(",")]
     moment = lab.moment(at)
-    found = lab.forecast(
-        chosen(lab, labels, everything, moment), run_of(analyte, waveform, setting, run), wanted, moment
-    )
+    with working("forecasting"):
+        found = lab.forecast(
+            chosen(lab, labels, everything, moment), run_of(analyte, waveform, setting, run), wanted, moment
+        )
     forecasts.answer(found, json, csv)

@@ -43,13 +43,15 @@ def command(
     electrolog outlook --analyte dopamine --waveform triangle --setting in-vivo --run 2h --runs 20
     """
     from electrolog.show import outlook
+    from electrolog.show.progress import working
 
     lab = lab_of(ctx)
-    found = lab.outlook(
-        run_of(analyte, waveform, setting, run),
-        lab.labels(labels) if labels else None,
-        planned_runs=runs,
-        **asking(needs, project, limit),
-        moment=lab.moment(at),
-    )
+    with working("looking ahead"):
+        found = lab.outlook(
+            run_of(analyte, waveform, setting, run),
+            lab.labels(labels) if labels else None,
+            planned_runs=runs,
+            **asking(needs, project, limit),
+            moment=lab.moment(at),
+        )
     outlook.answer(found, lab.zone, json, csv)

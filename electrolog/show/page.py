@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-import base64
-import hashlib
 from collections.abc import Sequence
 from datetime import datetime
 from pathlib import Path
@@ -16,7 +14,7 @@ from electrolog.judge.limits import Limit, rule_named
 from electrolog.judge.verdict import Spread
 from electrolog.show.checks import CAUTION, FIGURES, SIGNS, odds_shown, spread_shown
 from electrolog.show.limits import shown
-from electrolog.show.text import safe
+from electrolog.show.pages import Inline, rendered
 from electrolog.units import shown_concentration, shown_duration
 
 CAUTIONS = (CAUTION, "An explanted probe is a biohazard and a sharp: handle and discard it by the local rules.")
@@ -39,12 +37,8 @@ def write_page(path: Path, found: Sequence[Checked], run: Run, asked: dict[str, 
 
 
 def page(found: Sequence[Checked], run: Run, asked: dict[str, Any], moment: datetime) -> str:
-    from jinja2 import Environment
-
-    template = Path(__file__).with_name("page.html").read_text(encoding="utf-8")
-    # Every text of the record goes through `safe` and is then escaped; the style is ours alone.
-    made = Environment(autoescape=True, finalize=lambda value: value if isinstance(value, _Style) else safe(value))
-    return made.from_string(template).render(
+    return rendered(
+        "page.html",
         title=f"Before the run: {shown_duration(run.run_min)} {run.setting}",
         run=run,
         needs=None if asked["needs_um"] is None else shown_concentration(asked["needs_um"]),
@@ -53,18 +47,8 @@ def page(found: Sequence[Checked], run: Run, asked: dict[str, Any], moment: date
         probes=[verdict_context(one) for one in found],
         limits=[_limit(limit) for limit in found[0].limits.by_rule.values()] if found else [],
         cautions=CAUTIONS,
-        style=_Style(_STYLE),
-        style_hash=base64.b64encode(hashlib.sha256(_STYLE.encode()).digest()).decode(),
+        style=Inline(_STYLE),
     )
-
-
-class _Style(str):
-    """Text that stands in the page as it is."""
-
-    __slots__ = ()
-
-    def __html__(self) -> str:
-        return str(self)
 
 
 def verdict_context(one: Checked) -> dict[str, Any]:
