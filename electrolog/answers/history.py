@@ -109,7 +109,7 @@ def _reading(
     _, handling = split(row["note"])
     own = numbers[row["id"]]
     first = lives.reference(life, row["analyte"], row["waveform"], calibration.at)
-    share, share_se = _share(own, numbers[first.row["id"]]) if first else (None, None)
+    share, share_se = share_of(own, numbers[first.row["id"]]) if first else (None, None)
     is_reference = bool(first) and first is not None and first.row["id"] == row["id"]
     return Reading(
         electrode=row["electrode"],
@@ -149,7 +149,7 @@ def _said_of_signal(handling: Handling) -> list[str]:
     return [str(text) for text in said] if isinstance(said, list) else []
 
 
-def _share(now: CalibrationFigures, reference: CalibrationFigures) -> tuple[float | None, float | None]:
+def share_of(now: CalibrationFigures, reference: CalibrationFigures) -> tuple[float | None, float | None]:
     """Ratio of two sensitivities and its standard error by propagation of both relative errors."""
     top, bottom, lowest = now.sensitivity_na_um, reference.sensitivity_na_um, reference.sensitivity_low_na_um
     if top is None or not bottom or bottom <= 0 or (lowest is not None and lowest <= 0):

@@ -8,6 +8,7 @@ from datetime import date, datetime
 
 from electrolog.answers import figures as made
 from electrolog.answers import life as lives
+from electrolog.answers.history import share_of
 from electrolog.clock import utc_now
 from electrolog.errors import unknown
 from electrolog.measure.calibrate import CalibrationFigures
@@ -135,8 +136,7 @@ def _share_left(life: list[Event], last: Event | None, figures: Mapping[int, Cal
     first = lives.reference(life, last.row["analyte"], last.row["waveform"], last.at)
     if first is None:
         return None
-    now, reference = figures[last.row["id"]].sensitivity_na_um, figures[first.row["id"]].sensitivity_na_um
-    return now / reference if now is not None and reference else None
+    return share_of(figures[last.row["id"]], figures[first.row["id"]])[0]
 
 
 def _matches(one: Shelved, probe: Row, wanted: Filter, life: Mapping[str, list[Event]]) -> bool:

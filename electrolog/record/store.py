@@ -196,7 +196,7 @@ def _engine(url: URL) -> Engine:
     except ModuleNotFoundError as missing:
         raise RecordError(
             f"the driver for {url.drivername} is not installed ({missing})",
-            'install it with: python -m pip install "electrolog[postgresql]"',
+            "install it with: python -m pip install 'psycopg[binary]'",
         ) from None
     if engine.dialect.name == "sqlite":
         if sqlite3.sqlite_version_info < LEAST_SQLITE:
