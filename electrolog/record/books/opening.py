@@ -214,7 +214,7 @@ def _reader() -> Any:
     except ModuleNotFoundError:
         raise InputError(
             "spreadsheets need a reader that is not installed",
-            'install it with: python -m pip install "electrolog[spreadsheets]"; .csv needs none',
+            "install it with: python -m pip install python-calamine openpyxl; .csv needs none",
         ) from None
     return python_calamine
 

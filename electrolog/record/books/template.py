@@ -72,7 +72,7 @@ def write_template(record: Record, path: Path, concentrations_um: Sequence[float
     try:
         import openpyxl
     except ModuleNotFoundError:
-        hint = 'install it with: python -m pip install "electrolog[spreadsheets]"'
+        hint = "install it with: python -m pip install python-calamine openpyxl"
         raise InputError("a template needs a library that is not installed", hint) from None
     book = openpyxl.Workbook()
     lists = _lists(record)
