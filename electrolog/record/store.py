@@ -4,7 +4,9 @@ from __future__ import annotations
 
 import getpass
 import os
+import random
 import sqlite3
+import time
 import weakref
 from collections.abc import Iterator
 from contextlib import contextmanager
@@ -13,26 +15,20 @@ from pathlib import Path
 from typing import Any
 
 from sqlalchemy import Connection, Engine, create_engine, event, select, text
-from sqlalchemy.engine import URL, make_url
-from sqlalchemy.exc import ArgumentError
+from sqlalchemy.engine import URL
+from sqlalchemy.exc import OperationalError
 from sqlalchemy.pool import NullPool, QueuePool
 
-from electrolog.errors import InputError, RecordError, shortened
+from electrolog.errors import RecordError, shortened
 from electrolog.record import journal, place, schema
-from electrolog.record.columns import checked_text
 from electrolog.record.translate import translated
+from electrolog.record.url import database_url
 
 __all__ = ["Connection", "Record", "open_record"]
 
-BUSY_TIMEOUT_MS = 30_000
+BUSY_TIMEOUT_MS = 60_000
+BETWEEN_LOOKS_S = (0.002, 0.02)
 WRITING = 0x656C6570  # any number that all who write agree on
-LONGEST_NAME = 4096
-_DRIVERS = {
-    "sqlite": "sqlite",
-    "sqlite+pysqlite": "sqlite",
-    "postgresql": "postgresql+psycopg",
-    "postgresql+psycopg": "postgresql+psycopg",
-}
 _SECRETS = ("password", "passfile", "sslpassword")  # what a URL may hold beside the password in its usual place
 LEAST_SQLITE = (3, 37, 0)  # STRICT tables
 
@@ -163,32 +159,6 @@ def current_user() -> str:
         return "unknown"
 
 
-def database_url(where: str) -> URL:
-    if not where.strip():
-        raise InputError("the database's name is empty; accepted: a file's path or an SQLAlchemy URL")
-    checked_text(where, "the database's name", LONGEST_NAME)
-    url = _url(where) if "://" in where else URL.create("sqlite", database=str(Path(where).expanduser()))
-    if url.drivername not in _DRIVERS:
-        raise InputError(
-            f"a '{shortened(url.drivername, 30)}' database can't hold the record; accepted: sqlite, postgresql+psycopg"
-        )
-    url = url.set(drivername=_DRIVERS[url.drivername])
-    if url.drivername != "sqlite":
-        return url
-    if url.database in (None, "", ":memory:"):
-        raise InputError("a database in memory would be lost at once; accepted: a file's path")
-    if url.query or url.host:
-        raise InputError("an SQLite URL takes a file's path and nothing else; accepted: such as sqlite:///lab.db")
-    return url
-
-
-def _url(where: str) -> URL:
-    try:
-        return make_url(where)
-    except (ArgumentError, ValueError):  # ValueError: a port that is no number
-        raise InputError("the database's URL can't be read; accepted: such as postgresql+psycopg://host/name") from None
-
-
 def _engine(url: URL) -> Engine:
     try:
         # Opening a file anew costs more than a question does; a server's connections aren't ours to keep.
@@ -220,7 +190,27 @@ def _prepare_sqlite(connection: Any, _: object) -> None:
 def _begin_sqlite(connection: Connection) -> None:
     # A writer takes its lock at once: one that read first and then wrote could be refused in the middle.
     writes = connection.get_execution_options().get("electrolog_writes")
-    connection.exec_driver_sql("BEGIN IMMEDIATE" if writes else "BEGIN")
+    if not writes:
+        connection.exec_driver_sql("BEGIN")
+        return
+    # SQLite's own waiting looks ever more rarely, so that of many who wait the latest comer wins and some never do.
+    until = time.monotonic() + BUSY_TIMEOUT_MS / 1000
+    connection.exec_driver_sql("PRAGMA busy_timeout = 0")
+    try:
+        while not _began_writing(connection, until):
+            time.sleep(random.uniform(*BETWEEN_LOOKS_S))  # noqa: S311 -- no secret
+    finally:
+        connection.exec_driver_sql(f"PRAGMA busy_timeout = {BUSY_TIMEOUT_MS}")
+
+
+def _began_writing(connection: Connection, until: float) -> bool:
+    try:
+        connection.exec_driver_sql("BEGIN IMMEDIATE")
+    except OperationalError as error:
+        if "is locked" in str(error.orig) and time.monotonic() < until:
+            return False
+        raise
+    return True
 
 
 def refuse_unsafe(record: Record) -> None:

@@ -20,7 +20,7 @@ _DAMAGED = ("{} is damaged", "`electrolog rescue NEW` saves what can be saved; o
 _KNOWN = {
     "unable to open": ("{} can't be opened", "look whether the folder is there and may be written"),
     "readonly": ("{} may not be written", "ask who owns the file, or name another with --db"),
-    "is locked": ("{} is in use by another program for over 30 s", "try again when it has finished"),
+    "is locked": ("{} is in use by another program for over a minute", "try again when it has finished"),
     "locking protocol": _LOCKS,
     "is full": _FULL,
     "No space left": _FULL,
