@@ -13,11 +13,9 @@ import numpy as np
 from electrolog.answers import fits
 from electrolog.answers import life as lives
 from electrolog.answers.asked import Asked, Floats, Run, ask
-from electrolog.answers.cohorts import unit_after
 from electrolog.answers.fits import Assay
 from electrolog.answers.standing import notes, out_of_use, unanswerable
 from electrolog.errors import unknown
-from electrolog.fouling.forecast import posterior
 from electrolog.judge.decision import RETIRE, UNDETERMINED
 from electrolog.judge.facts import CalibrationFacts
 from electrolog.judge.limits import LimitRow, Limits, effective
@@ -147,8 +145,8 @@ def _after_cleaning(asked: Asked, place: int) -> dict[str, Callable[[float], Flo
 
 def _cleaned(asked: Asked, place: int, renewal: str) -> Callable[[float], Floats]:
     def log_sensitivity_at(run_min: float) -> Floats:
-        events = unit_after(asked.cohort.events, place, renewal)
-        found: Floats = posterior(asked.fit, events).log_sensitivity(asked.extra_hours(run_min)[place : place + 1])[0]
+        alone = asked.after(renewal).only(np.array([place]))
+        found: Floats = alone.log_sensitivity(asked.extra_hours(run_min)[place : place + 1])[0]
         return found
 
     return log_sensitivity_at

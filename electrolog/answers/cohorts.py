@@ -114,17 +114,17 @@ def gather(
     return Cohort(events, tuple(wanted), readings, left_out)
 
 
-def unit_after(events: Events, place: int, renewal: str) -> Events:
-    """The same events with one more at the end of one unit: a renewal that leaves the area as it is."""
-    end = int(np.searchsorted(events.unit, place, side="right"))
+def units_after(events: Events, renewal: str) -> Events:
+    """The same events with one more at the end of every unit: a renewal that leaves the area as it is."""
+    ends = np.searchsorted(events.unit, np.arange(len(events.units)), side="right")
     renewals = events.renewals if renewal in events.renewals else (*events.renewals, renewal)
     return replace(
         events,
-        unit=np.insert(events.unit, end, place),
-        kind=np.insert(events.kind, end, RENEWAL),
-        which=np.insert(events.which, end, renewals.index(renewal)),
-        amount=np.insert(events.amount, end, 0.0),
-        se=np.insert(events.se, end, _NOWHERE),
+        unit=np.insert(events.unit, ends, np.arange(len(events.units))),
+        kind=np.insert(events.kind, ends, RENEWAL),
+        which=np.insert(events.which, ends, renewals.index(renewal)),
+        amount=np.insert(events.amount, ends, 0.0),
+        se=np.insert(events.se, ends, _NOWHERE),
         renewals=renewals,
     )
 

@@ -246,7 +246,7 @@ def _datasets(path: Path) -> dict[str, Any]:
     except ModuleNotFoundError:
         raise InputError(
             "reading HDF5 needs h5py, which isn't installed",
-            'install it with: python -m pip install h5py; or save the recording as NPY or CSV',
+            "install it with: python -m pip install h5py; or save the recording as NPY or CSV",
         ) from None
     found: dict[str, Any] = {}
 
