@@ -6,7 +6,7 @@ import math
 import re
 from pathlib import Path
 
-import readme
+from tests import readme
 
 _NUMBER = re.compile(r"-?\d+(?:\.\d+)?(?:e[+-]?\d+)?")
 _HASH = re.compile(r"\b[0-9a-f]{16}\b")

@@ -97,7 +97,7 @@ def test_bench_amends_its_own_of_the_day_only(login: Callable[[str], Lab], serve
     assert bench.amend("exposure", "2", {"duration_min": "3h"}, "typed wrong").changes
     for lab, number in ((other, "2"), (bench, "1")):
         with pytest.raises(RecordError, match="own entries of the day"):
-            lab.amend("exposure", number, {"duration_min": "2h"}, "not mine")
+            lab.amend("exposure", number, {"duration_min": "2h"}, "not mine", confirmed=True)
     with pytest.raises(RecordError, match="may not do that"):
         bench.strike("exposure", "2", "never happened")
     assert server.verify().whole
