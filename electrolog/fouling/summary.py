@@ -72,6 +72,13 @@ def half_lives(events: Events, fitted: list[Fitted]) -> list[dict[str, Any]]:
 
 def typical_half_life(part: Component, coating: str, waveform: str) -> Floats:
     """Hours, (K PER_DRAW,): of a probe whose latents are its group's means."""
+    latents, parameters = typical_latents(part, coating, waveform)
+    hours = part.layout.shape.half_life_hours(latents, parameters)
+    return np.asarray(np.broadcast_to(hours, latents.shape[:-1])).ravel()
+
+
+def typical_latents(part: Component, coating: str, waveform: str) -> tuple[Floats, Floats]:
+    """Draws of a group's mean latents (K, PER_DRAW, q), and of the shape's parameters (K, 1, p)."""
     names = part.effects.names
     n_latents = len(part.layout.shape.latents)
     rows = np.full((1, n_latents, 3), len(names))
@@ -84,9 +91,7 @@ def typical_half_life(part: Component, coating: str, waveform: str) -> Floats:
     noise = normal_points(PER_DRAW, max(n_latents, 1))[:, :n_latents] @ spread.T
     padded = np.append(part.mean_draws, np.zeros((len(part.mean_draws), 1)), axis=1)
     latents = padded[:, rows[0]].sum(axis=-1)[:, None, :] + noise
-    shape = read_scales(part.layout, part.theta_draws).shape
-    hours = part.layout.shape.half_life_hours(latents, shape[:, None, :])
-    return np.asarray(np.broadcast_to(hours, latents.shape[:-1])).ravel()
+    return latents, read_scales(part.layout, part.theta_draws).shape[:, None, :]
 
 
 def setting(events: Events, fitted: list[Fitted], which: int) -> dict[str, Any]:

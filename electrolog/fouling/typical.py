@@ -7,14 +7,11 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from electrolog.fouling.covariance import between
 from electrolog.fouling.fit import CohortFit, Component
-from electrolog.fouling.parameters import read_scales
-from electrolog.fouling.points import normal_points
+from electrolog.fouling.summary import typical_latents
 
 Floats = NDArray[np.float64]
 QUANTILES = (0.05, 0.5, 0.95)
-PER_DRAW = 32  # draws of the shared effects under each draw of the hyper-parameters
 
 
 @dataclass(frozen=True)
@@ -56,23 +53,6 @@ def _drawn(part: Component, coating: str, waveform: str, hours: Floats) -> _Draw
     loss = part.layout.shape.loss(hours[:, None, None], latents[None], parameters[None]).value
     share = np.exp(-np.broadcast_to(loss, (len(hours), *latents.shape[:-1])).reshape(len(hours), -1).T)
     return _Drawn(part.layout.shape.name, share, np.full(len(share), part.weight / len(share)))
-
-
-def typical_latents(part: Component, coating: str, waveform: str) -> tuple[Floats, Floats]:
-    """Draws of a group's mean latents (K, PER_DRAW, q), and of the shape's parameters (K, 1, p)."""
-    names = part.effects.names
-    n_latents = len(part.layout.shape.latents)
-    rows = np.full((1, n_latents, 3), len(names))
-    for k in range(n_latents):
-        rows[0, k, 0] = names.index(("latent", str(k)))
-    for slot, own in enumerate((("rate", "coating", coating), ("rate", "waveform", waveform)), start=1):
-        if own in names:
-            rows[0, 0, slot] = names.index(own)
-    spread = np.linalg.cholesky(between(part.covariance, rows, rows)[0] + 1e-12 * np.eye(n_latents))
-    noise = normal_points(PER_DRAW, max(n_latents, 1))[:, :n_latents] @ spread.T
-    padded = np.append(part.mean_draws, np.zeros((len(part.mean_draws), 1)), axis=1)
-    latents = padded[:, rows[0]].sum(axis=-1)[:, None, :] + noise
-    return latents, read_scales(part.layout, part.theta_draws).shape[:, None, :]
 
 
 def _quantiles(drawn: list[_Drawn]) -> Floats:
