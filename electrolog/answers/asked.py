@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass
 from datetime import datetime
 from typing import TYPE_CHECKING
 
@@ -13,7 +13,7 @@ from numpy.typing import NDArray
 from electrolog.answers import figures as made
 from electrolog.answers import fits
 from electrolog.answers import life as lives
-from electrolog.answers.cohorts import REFERENCE_SETTING, Cohort, coating, gather, units_after
+from electrolog.answers.cohorts import REFERENCE_SETTING, Cohort, coating, gather
 from electrolog.answers.fits import Assay
 from electrolog.clock import utc_now
 from electrolog.errors import InputError
@@ -67,15 +67,10 @@ class Asked:
     life: dict[str, list[Event]]
     ahead: dict[str, list[Event]]
     moment: datetime
-    _renewed: dict[str, Posterior] = field(default_factory=dict)
 
     def after(self, renewal: str) -> Posterior:
-        """The posterior if each unit were renewed so now; made once for all of them."""
-        if renewal not in self._renewed:
-            from electrolog.fouling.forecast import posterior
-
-            self._renewed[renewal] = posterior(self.fit, units_after(self.cohort.events, renewal))
-        return self._renewed[renewal]
+        """The posterior if each unit were renewed so now."""
+        return self.posterior.renewed(renewal)
 
     def extra_hours(self, run_min: float) -> Floats:
         """(U, S) hours that a run of that length adds."""

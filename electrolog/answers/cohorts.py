@@ -8,7 +8,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterable, Iterator, Mapping, Sequence
-from dataclasses import dataclass, field, replace
+from dataclasses import dataclass, field
 from datetime import timedelta
 from typing import Any
 
@@ -112,21 +112,6 @@ def gather(
         groups=_groups(wanted, of_probe, life),
     )
     return Cohort(events, tuple(wanted), readings, left_out)
-
-
-def units_after(events: Events, renewal: str) -> Events:
-    """The same events with one more at the end of every unit: a renewal that leaves the area as it is."""
-    ends = np.searchsorted(events.unit, np.arange(len(events.units)), side="right")
-    renewals = events.renewals if renewal in events.renewals else (*events.renewals, renewal)
-    return replace(
-        events,
-        unit=np.insert(events.unit, ends, np.arange(len(events.units))),
-        kind=np.insert(events.kind, ends, RENEWAL),
-        which=np.insert(events.which, ends, renewals.index(renewal)),
-        amount=np.insert(events.amount, ends, 0.0),
-        se=np.insert(events.se, ends, _NOWHERE),
-        renewals=renewals,
-    )
 
 
 def unusable(figures: CalibrationFigures) -> str:

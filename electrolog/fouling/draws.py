@@ -8,6 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from electrolog.fouling.fit import Component
+from electrolog.fouling.parameters import read_scales
 
 Floats = NDArray[np.float64]
 Integers = NDArray[np.int64]
@@ -53,6 +54,10 @@ class Posterior:
         """Log of the sensitivity after extra_hours (U, S) over that at the reference reading (U,): (U, D)."""
         return self.log_sensitivity(extra_hours) - self.log_sensitivity_at_reading(reference_reading)
 
+    def renewed(self, method: str) -> Posterior:
+        """The same draws, each unit renewed now by a method that the fit knows: only its clock hears of it."""
+        return replace(self, strands=tuple(turned_back(strand, method) for strand in self.strands))
+
     def only(self, places: Integers) -> Posterior:
         """The same draws for some of the units."""
         strands = tuple(
@@ -87,6 +92,12 @@ class Posterior:
         hours = strand.hours_at_readings[:, self._rows(which)].T[:, :, None]
         broken = strand.damaged_from <= which[:, None, None]
         return strand.level + np.where(broken, strand.damage, 0.0) - loss_at(strand, hours)
+
+
+def turned_back(strand: Strand, method: str) -> Strand:
+    layout = strand.component.layout
+    undone = read_scales(layout, strand.component.theta_draws).recovery[:, layout.renewals.index(method)]
+    return replace(strand, hours_at_end=strand.hours_at_end * (1.0 - undone)[:, None])
 
 
 def joined(parts: list[Floats]) -> Floats:

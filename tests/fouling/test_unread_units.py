@@ -5,7 +5,7 @@ from dataclasses import replace
 import numpy as np
 
 from electrolog.fouling.cohort import fit_cohort
-from electrolog.fouling.events import EXPOSURE
+from electrolog.fouling.events import EXPOSURE, RENEWAL
 from electrolog.fouling.forecast import posterior
 from tests.fouling.test_lonely_days import UNITS, lonely_lab
 
@@ -46,3 +46,22 @@ def test_a_unit_without_any_event_is_a_fresh_probe() -> None:
         groups=dict.fromkeys(events.groups, ("",)),
     )
     assert np.isfinite(posterior(fit, nothing).log_sensitivity(np.array([[4.0]]))).all()
+
+
+def test_a_cleaning_now_turns_the_clock_back_as_a_logged_one_does() -> None:
+    events, _ = lonely_lab(1)
+    fit = fit_cohort(events)
+    ends = np.searchsorted(events.unit, np.arange(UNITS), side="right")
+    cleaned = replace(
+        events,
+        unit=np.insert(events.unit, ends, np.arange(UNITS)),
+        kind=np.insert(events.kind, ends, RENEWAL),
+        which=np.insert(events.which, ends, 0),
+        amount=np.insert(events.amount, ends, 0.0),
+        se=np.insert(events.se, ends, np.nan),
+    )
+    later = np.full((UNITS, 1), 4.0)
+    logged = posterior(fit, cleaned).log_sensitivity(later)
+    asked = posterior(fit, events).renewed("clean:isopropanol").log_sensitivity(later)
+    assert np.abs(np.median(logged, axis=1) - np.median(asked, axis=1)).max() < 1e-6
+    assert (np.median(asked, axis=1) >= np.median(posterior(fit, events).log_sensitivity(later), axis=1)).all()
