@@ -116,6 +116,6 @@ def _matplotlib() -> Any:
     except ModuleNotFoundError:
         raise ElectrologError(
             "drawing needs matplotlib, which isn't installed",
-            'install it with: python -m pip install matplotlib; all numbers are there without it',
+            "install it with: python -m pip install matplotlib; all numbers are there without it",
         ) from None
     return found
