@@ -174,11 +174,6 @@ def newest_id(connection: Connection, sheet: Sheet) -> int:
     return connection.execute(select(func.max(schema.tables[sheet.name].c.id))).scalar() or 0
 
 
-def standard_of(connection: Connection, label: str) -> Row:
-    found = rows(connection, sheets.STANDARDS, schema.tables["standards"].c.standard == label)
-    return found[0]
-
-
 def limits(connection: Connection) -> list[Row]:
     return rows(connection, sheets.LIMITS, order=("rule", "id"))
 

@@ -143,7 +143,3 @@ kept_fits = Table(
 
 # Alembic's own table, described here so that an ordinary command can look at it without loading Alembic.
 alembic_version = Table("alembic_version", MetaData(), SqlColumn("version_num", SqlText))
-
-
-def table_of(sheet: Sheet) -> Table:
-    return tables[sheet.name]
