@@ -242,6 +242,12 @@ class Lab(Bringing, Measuring, Judging, Looking, Keeping):
 
         return export_folder(self.record, folder)
 
+    def export_parquet(self, folder: Path, progress: Progress | None = None) -> ExportReport:
+        """A .parquet file for each sheet of the exchange folder; types, units and UTC moments are kept."""
+        from electrolog.record.exchange_parquet import export_parquet
+
+        return export_parquet(self.record, folder, progress)
+
 
 @dataclass(frozen=True)
 class SetUp:

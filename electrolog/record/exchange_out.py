@@ -29,6 +29,7 @@ Labels = dict[str, dict[int, str]]  # of each sheet, row number -> name
 class ExportReport:
     folder: str
     rows: dict[str, int]  # sheet -> rows written
+    kind: str = "csv"
 
 
 def export_folder(record: Record, folder: Path, progress: Progress | None = None) -> ExportReport:

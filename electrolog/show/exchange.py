@@ -28,4 +28,6 @@ def answer_export(report: ExportReport, json: bool) -> None:
     if json:
         print_json(report)
         return
-    print_table(("file", "rows"), [(f"{sheet}.csv", count) for sheet, count in report.rows.items()], numeric=("rows",))
+    print_table(
+        ("file", "rows"), [(f"{sheet}.{report.kind}", count) for sheet, count in report.rows.items()], numeric=("rows",)
+    )
