@@ -33,7 +33,9 @@ class Batch:
 
     def repeated(self, times: int) -> Batch:
         """Every unit so many times, one after the other."""
-        rows = np.repeat(np.arange(len(self.unit)), times)
+        return self.take(np.repeat(np.arange(len(self.unit)), times))
+
+    def take(self, rows: Integers) -> Batch:
         return Batch(
             self.unit[rows],
             self.reading[rows],

@@ -19,11 +19,11 @@ from electrolog.fouling.batches import Batch, pad_units
 from electrolog.fouling.clock import Clock, log_area_changes, run_clock
 from electrolog.fouling.draws import Posterior, Strand
 from electrolog.fouling.events import READING, Events
-from electrolog.fouling.fates import damage_chances, slip_chances
 from electrolog.fouling.fit import CohortFit, Component
 from electrolog.fouling.line_error import LineError
+from electrolog.fouling.mixture import Grids, Mixture, refit_grids, starting_grids, weigh
 from electrolog.fouling.parameters import Scales, prior_draws, read_scales
-from electrolog.fouling.quadrature import Grid, Setup, Tilted, refit_grid, starting_grid, tilt
+from electrolog.fouling.quadrature import Grid, Setup
 from electrolog.fouling.sampling import sample
 from electrolog.fouling.views import Cavity, View, cavities, widen
 
@@ -91,16 +91,22 @@ def draw_strands(
     for units, size in groups_by_size(events, k):
         batch = pad_units(units, size, events, view.effects, q, line)
         cavity = cavities(view, batch, events)
-        grid = peak_grid(view, batch, cavity, peak, peak_clock)
+        grids = peak_grids(view, batch, cavity, peak, peak_clock)
         pairs = set_up_pairs(view, batch, cavity, scales, clock)
-        tilted, grid = tilt_pairs(view, pairs, grid)
+        mixture, grids = weigh_pairs(view, pairs, grids)
         first = (points[units][:, None] + np.arange(k) * each).ravel()
-        found = sample(tilted, grid, pairs, cavity.of_level(), first, each)
-        at = units
-        latents[at], level[at], damage[at], since[at] = (x.reshape(len(units), k, *x.shape[1:]) for x in found)
-        by_fate = np.einsum("bko,k->bo", tilted.probability.sum(axis=1).reshape(len(units), k, -1), share)
-        slipped[batch.reading[batch.real]] += slip_chances(by_fate, size)[batch.real]
-        damaged[at] += damage_chances(by_fate, size).sum(axis=1)
+        found = sample(mixture, grids, cavity.of_level(), first, each)
+        for kept, drawn in (
+            (latents, found.latents),
+            (level, found.level),
+            (damage, found.damage),
+            (since, found.damaged_from),
+        ):
+            kept[units] = drawn.reshape(len(units), k, *drawn.shape[1:])
+        by_unit = (len(units), k, size)
+        chance = np.einsum("bkn,k->bn", mixture.slipped.reshape(by_unit), share)
+        slipped[batch.reading[batch.real]] += chance[batch.real]
+        damaged[units] += np.einsum("bkn,k->b", mixture.damaged.reshape(by_unit), share)
     return [
         Strand(
             part,
@@ -178,19 +184,20 @@ def set_up_pairs(view: View, batch: Batch, cavity: Cavity, scales: Scales, clock
     )
 
 
-def peak_grid(view: View, batch: Batch, cavity: Cavity, peak: Scales, clock: Clock) -> Grid:
+def peak_grids(view: View, batch: Batch, cavity: Cavity, peak: Scales, clock: Clock) -> Grids:
     """Grids at each part's most probable hyper-parameters, where those of all its draws start."""
     setup = set_up_pairs(view, batch, cavity.at_peaks(view), peak, clock)
-    grid = starting_grid(setup)
+    grids = starting_grids(setup)
     for _ in range(6):
-        grid = refit_grid(tilt(view.shape, setup, grid), grid)
+        grids = refit_grids(weigh(view.shape, setup, grids), grids)
     if view.at_peak:
-        return grid
+        return grids
     pair = (np.arange(len(batch.unit))[:, None] * len(view.slices) + view.owner).ravel()
-    return Grid(grid.centre[pair], grid.spread[pair] * 1.2)
+    well, wrong, third = (Grid(grid.centre[pair], grid.spread[pair] * 1.2, grid.which) for grid in grids)
+    return well, wrong, third
 
 
-def tilt_pairs(view: View, setup: Setup, grid: Grid) -> tuple[Tilted, Grid]:
+def weigh_pairs(view: View, setup: Setup, grids: Grids) -> tuple[Mixture, Grids]:
     if not view.at_peak:
-        grid = refit_grid(tilt(view.shape, setup, grid), grid)
-    return tilt(view.shape, setup, grid), grid
+        grids = refit_grids(weigh(view.shape, setup, grids), grids)
+    return weigh(view.shape, setup, grids), grids

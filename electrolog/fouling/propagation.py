@@ -20,8 +20,9 @@ from electrolog.fouling.days import day_prior
 from electrolog.fouling.effects import Effects
 from electrolog.fouling.events import Events
 from electrolog.fouling.evidence import slopes
+from electrolog.fouling.mixture import Grids, Mixture, moments_of_latents, refit_grids, starting_grids, weigh
 from electrolog.fouling.parameters import Layout, Scales, read_scales
-from electrolog.fouling.quadrature import Grid, Setup, Tilted, refit_grid, starting_grid, tilt
+from electrolog.fouling.quadrature import Setup
 from electrolog.fouling.shared import Assembly, assemble, solve
 
 Floats = NDArray[np.float64]
@@ -44,7 +45,7 @@ class State:
 
     sites: list[Site]
     day_site: Site
-    grids: list[Grid] | None
+    grids: list[Grids] | None
     mean: Floats
     covariance: Covariance
     grids_stay: bool = False
@@ -52,10 +53,11 @@ class State:
 
 @dataclass(frozen=True)
 class UnitsSeen:
-    """What a sweep found of one batch's units: the whole of Tilted for every unit would fill the memory."""
+    """What a sweep found of one batch's units: the whole mixture for every unit would fill the memory."""
 
     log_evidence: Floats  # (B,)
-    by_fate: Floats  # (B, O) probabilities, see fates.py
+    slipped: Floats  # (B, n) probabilities
+    damaged: Floats  # (B, n) that damage came before each reading
     latent_mean: Floats  # (B, q)
     latent_variance: Floats  # (B, q)
 
@@ -109,14 +111,14 @@ def sweep(problem: Problem, scales: Scales, clock: Clock, state: State) -> Outco
     for k, (batch, site) in enumerate(zip(problem.batches, state.sites, strict=True)):
         cavity_mean, cavity = cavity_of(batch.columns, site, state)
         setup = set_up(batch, scales, clock, cavity_mean, cavity)
-        grid = state.grids[k] if state.grids else settle_grid(problem, setup)
-        tilted = tilt(problem.layout.shape, setup, grid)
-        found = slopes(problem.layout, setup, tilted, clock.reading_slopes[batch.reading])
-        log_evidence += float(np.sum(tilted.log_evidence - log_overlap(site, cavity_mean, cavity)))
+        grid = state.grids[k] if state.grids else settle_grids(problem, setup)
+        mixture = weigh(problem.layout.shape, setup, grid)
+        found = slopes(problem.layout, mixture, clock.reading_slopes[batch.reading])
+        log_evidence += float(np.sum(mixture.log_evidence - log_overlap(site, cavity_mean, cavity)))
         state.sites[k] = renewed(found.gradient, found.curvature, cavity_mean, cavity)
-        grids.append(grid if state.grids_stay else refit_grid(tilted, grid))
+        grids.append(grid if state.grids_stay else refit_grids(mixture, grid))
         all_scores.append(found.score)
-        all_seen.append(units_seen(tilted))
+        all_seen.append(units_seen(mixture))
     state.grids = grids
     by_days, day_scores, bad = sweep_days(problem.effects, scales, state)
     unit_scores = np.concatenate(all_scores) if all_scores else np.zeros((0, len(score)))
@@ -125,11 +127,8 @@ def sweep(problem: Problem, scales: Scales, clock: Clock, state: State) -> Outco
     return Outcome(log_evidence + by_days, score, unit_scores, bad, day_scores.T @ day_scores, all_seen)
 
 
-def units_seen(tilted: Tilted) -> UnitsSeen:
-    weight = np.einsum("bgo->bg", tilted.probability)
-    mean = np.einsum("bg,bgi->bi", weight, tilted.nodes)
-    square = np.einsum("bg,bgi->bi", weight, (tilted.nodes - mean[:, None, :]) ** 2)
-    return UnitsSeen(tilted.log_evidence, np.einsum("bgo->bo", tilted.probability), mean, square)
+def units_seen(mixture: Mixture) -> UnitsSeen:
+    return UnitsSeen(mixture.log_evidence, mixture.slipped, mixture.damaged, *moments_of_latents(mixture))
 
 
 def combine(problem: Problem, scales: Scales, state: State) -> float:
@@ -257,8 +256,8 @@ def set_up(batch: Batch, scales: Scales, clock: Clock, mean: Floats, covariance:
     )
 
 
-def settle_grid(problem: Problem, setup: Setup, rounds: int = 6) -> Grid:
-    grid = starting_grid(setup)
+def settle_grids(problem: Problem, setup: Setup, rounds: int = 6) -> Grids:
+    grids = starting_grids(setup)
     for _ in range(rounds):
-        grid = refit_grid(tilt(problem.layout.shape, setup, grid), grid)
-    return grid
+        grids = refit_grids(weigh(problem.layout.shape, setup, grids), grids)
+    return grids

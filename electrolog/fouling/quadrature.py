@@ -4,11 +4,11 @@ A unit's residual vector stacks its latents less their means and its readings le
 latents it is Gaussian with one covariance J, so the level, the shared effects and every reading's error are integrated
 exactly; the latents (log rate, log exponent) by the trapezoid rule on a grid laid on the unit's own posterior: for a
 smooth density that converges faster than any power of the spacing (Trefethen & Weideman 2014, doi:10.1137/130932132).
-Nodes are dense on the main peak and reach far beyond it (a sinh map), for a peak may stand on a broad foot. There are
-two grids: one for nothing having gone wrong, one for something having, for the second leaves the latents far less
-certain.
+Nodes are dense on the main peak and reach far beyond it (a sinh map), for a peak may stand on a broad foot.
 
 What else may have happened to a unit (fates.py) shifts its readings along one vector u, so J changes by rank one.
+Nothing and something having gone wrong have grids of their own (mixture.py), for the second leaves the latents far
+less certain.
 """
 
 from __future__ import annotations
@@ -20,12 +20,14 @@ import numpy as np
 from numpy.typing import NDArray
 
 from electrolog.fouling.batches import Batch
-from electrolog.fouling.fates import Fates, possible_fates
+from electrolog.fouling.fates import Fates
 from electrolog.fouling.shapes.shape import Loss, Shape
 
 Floats = NDArray[np.float64]
-# Of the nodes before they are stretched, in standard deviations, by the number of latents: nothing wrong,
-# something wrong.
+Integers = NDArray[np.int64]
+WELL, WRONG = 0, 1
+# Of the nodes before they are stretched, in standard deviations, by the number of latents: all went well, something
+# went wrong.
 SPACING = {0: (1.0, 1.0), 1: (0.8, 0.9), 2: (0.9, 1.1)}
 REACH = 4.3
 STRETCH = 0.45
@@ -33,22 +35,23 @@ STRETCH = 0.45
 
 @dataclass(frozen=True)
 class Grid:
-    """A unit's nodes: centre (B, 2, q) + spread (B, 2, q, q) @ standard nodes, for nothing wrong and for something
-    wrong."""
+    """Units' nodes: centre (B, q) + spread (B, q, q) @ standard nodes, as dense as is fit for WELL or WRONG."""
 
     centre: Floats
     spread: Floats
+    which: int
+
+    def take(self, rows: Integers) -> Grid:
+        return Grid(self.centre[rows], self.spread[rows], self.which)
 
 
 @dataclass(frozen=True)
 class Nodes:
-    """Standard nodes (G, q) of both grids, log volumes (G,) and sides (G, q) of their cells, and each one's grid
-    (G,)."""
+    """Standard nodes (G, q), log volumes (G,) and sides (G, q) of their cells."""
 
     place: Floats
     log_volume: Floats
     sides: Floats
-    grid: NDArray[np.int64]
 
 
 @dataclass(frozen=True)
@@ -66,12 +69,26 @@ class Setup:
     damage_odds: Floats  # (B,)
     shape_parameters: Floats  # (B, p)
 
+    def take(self, rows: Integers) -> Setup:
+        return Setup(
+            self.batch.take(rows),
+            self.hours[rows],
+            self.cavity_mean[rows],
+            self.cavity_covariance[rows],
+            self.level_variance[rows],
+            self.residual_variance[rows],
+            self.latent_variance[rows],
+            self.slip_odds[rows],
+            self.damage_odds[rows],
+            self.shape_parameters[rows],
+        )
+
 
 @dataclass(frozen=True)
 class Tilted:
     """The unit's posterior over nodes and fates, and what it is made of."""
 
-    log_evidence: Floats  # (B,)
+    log_evidence: Floats  # (B,), -inf where no fate is possible
     probability: Floats  # (B, G, O)
     nodes: Floats  # (B, G, q)
     loss: Loss  # (B, G, n)
@@ -79,20 +96,18 @@ class Tilted:
     pulled: Floats  # (B, G, R) inverse of J times the residuals
     shift: Floats  # (B, G, O) expected size of the slip or damage
     fates: Fates
-    log_weight: Floats  # (B, G, O)
     bent: Floats  # (B, R, O) inverse of J times u
     stiffness: Floats  # (B, O) u' inverse(J) u + 1 / variance
 
 
 @cache
-def standard_nodes(n_latents: int) -> Nodes:
+def standard_nodes(n_latents: int, which: int) -> Nodes:
     if n_latents == 0:
-        return Nodes(np.zeros((2, 0)), np.zeros(2), np.zeros((2, 0)), np.arange(2))
-    both = [even_nodes(n_latents, spacing) for spacing in SPACING[n_latents]]
-    which = np.repeat([0, 1], [len(even) for even in both])
-    even = np.concatenate(both)
-    widening = np.cosh(STRETCH * even) * np.array(SPACING[n_latents])[which][:, None]
-    return Nodes(np.sinh(STRETCH * even) / STRETCH, np.log(widening).sum(axis=1), widening, which)
+        return Nodes(np.zeros((1, 0)), np.zeros(1), np.zeros((1, 0)))
+    spacing = SPACING[n_latents][which]
+    even = even_nodes(n_latents, spacing)
+    widening = np.cosh(STRETCH * even) * spacing
+    return Nodes(np.sinh(STRETCH * even) / STRETCH, np.log(widening).sum(axis=1), widening)
 
 
 def even_nodes(n_latents: int, spacing: float) -> Floats:
@@ -104,49 +119,43 @@ def even_nodes(n_latents: int, spacing: float) -> Floats:
 
 def place_nodes(grid: Grid, nodes: Nodes) -> Floats:
     """(B, G, q)."""
-    moved = np.einsum("bgij,gj->bgi", grid.spread[:, nodes.grid], nodes.place)
-    return np.asarray(grid.centre[:, nodes.grid] + moved)
+    return np.asarray(grid.centre[:, None, :] + nodes.place @ grid.spread.transpose(0, 2, 1))
 
 
-def tilt(shape: Shape, setup: Setup, grid: Grid) -> Tilted:
-    q = grid.centre.shape[2]
-    standard = standard_nodes(q)
+def tilt(shape: Shape, setup: Setup, grid: Grid, fates: Fates) -> Tilted:
+    standard = standard_nodes(grid.centre.shape[1], grid.which)
     nodes = place_nodes(grid, standard)
     loss = shape.loss(setup.hours[:, None, :], nodes[:, :, None, :], setup.shape_parameters[:, None, None, :])
     residual = residuals(setup, nodes, loss)
     precision, log_det = invert(covariance(setup))
     pulled = residual @ precision
-    fates = possible_fates(setup.batch.real, setup.slip_odds, setup.damage_odds, q)
     bent = precision @ fates.along
     stiffness = np.einsum("bro,bro->bo", fates.along, bent) + 1.0 / fates.variance
-    push = pulled @ fates.along + fates.mean / fates.variance
+    push = pulled @ fates.along
+    push += fates.mean / fates.variance
     shift = push / stiffness[:, None, :]
-    gain = 0.5 * (push * shift - fates.mean**2 / fates.variance - np.log(fates.variance * stiffness)[:, None, :])
-    gain[..., 0] = shift[..., 0] = 0.0
     base = -0.5 * (
         np.einsum("bgr,bgr->bg", pulled, residual) + log_det[:, None] + count_terms(setup) * np.log(2.0 * np.pi)
     )
-    cell = np.log(np.abs(np.linalg.det(grid.spread)))[:, standard.grid] + standard.log_volume
-    log_weight = (base + cell)[..., None] + gain + fates.log_prior[:, None, :]
-    log_weight[:, standard.grid == 0, 1:] = -np.inf
-    log_weight[:, standard.grid == 1, 0] = -np.inf
-    top = log_weight.reshape(len(nodes), -1).max(axis=1)
-    weight = np.exp(log_weight - top[:, None, None])
-    total = weight.reshape(len(nodes), -1).sum(axis=1)
-    log_evidence = top + np.log(total)
-    return Tilted(
-        log_evidence,
-        weight / total[:, None, None],
-        nodes,
-        loss,
-        precision,
-        pulled,
-        shift,
-        fates,
-        log_weight,
-        bent,
-        stiffness,
-    )
+    base += np.log(np.abs(np.linalg.det(grid.spread)))[:, None] + standard.log_volume
+    of_fate = fates.log_prior - 0.5 * (fates.mean**2 / fates.variance + np.log(fates.variance * stiffness))
+    log_weight = np.multiply(push, shift, out=push)
+    log_weight *= 0.5
+    log_weight += base[..., None] + of_fate[:, None, :]
+    log_evidence, probability = normalised(log_weight)
+    return Tilted(log_evidence, probability, nodes, loss, precision, pulled, shift, fates, bent, stiffness)
+
+
+def normalised(log_weight: Floats) -> tuple[Floats, Floats]:
+    """Log of the sums (B,), and each one's share (B, G, O); changes its argument."""
+    top = log_weight.max(axis=(1, 2))
+    possible = np.isfinite(top)
+    log_weight -= np.where(possible, top, 0.0)[:, None, None]
+    weight = np.exp(log_weight, out=log_weight)
+    total = weight.sum(axis=(1, 2))
+    weight /= np.where(possible, total, 1.0)[:, None, None]
+    with np.errstate(divide="ignore"):
+        return top + np.log(np.where(possible, total, 1.0)), weight
 
 
 def residuals(setup: Setup, nodes: Floats, loss: Loss) -> Floats:
@@ -181,47 +190,38 @@ def count_terms(setup: Setup) -> Floats:
     return np.asarray(setup.batch.real.sum(axis=1, keepdims=True) + setup.latent_variance.shape[1], dtype=np.float64)
 
 
-def starting_grid(setup: Setup) -> Grid:
+def starting_grid(setup: Setup, which: int) -> Grid:
     """Grids on the prior: the cavity's means, with the cavity's and the units' own variances."""
     q = setup.latent_variance.shape[1]
     variance = np.diagonal(setup.cavity_covariance, axis1=1, axis2=2)[:, :q] + setup.latent_variance
-    one = np.sqrt(variance)[:, :, None] * np.eye(q)
-    return Grid(np.stack([setup.cavity_mean[:, :q]] * 2, axis=1), np.stack([one] * 2, axis=1))
+    return Grid(setup.cavity_mean[:, :q], np.sqrt(variance)[:, :, None] * np.eye(q), which)
 
 
 def refit_grid(tilted: Tilted, grid: Grid) -> Grid:
-    """The grids moved onto the main peaks they found."""
-    q = grid.centre.shape[2]
+    """The grid moved onto the main peak it found.
+
+    Never shrunk to less than about half at once, or a peak would be missed. The peak's mean and covariance are those
+    of the squared density, the covariance doubled: right for a Gaussian, and hardly moved by a broad foot.
+    """
+    q = grid.centre.shape[1]
     if q == 0:
         return grid
-    parts = [refit_one(tilted, grid, which) for which in (0, 1)]
-    return Grid(np.stack([p[0] for p in parts], axis=1), np.stack([p[1] for p in parts], axis=1))
-
-
-def refit_one(tilted: Tilted, grid: Grid, which: int) -> tuple[Floats, Floats]:
-    """Never shrunk to less than about half at once, or a peak would be missed.
-
-    The peak's mean and covariance are those of the squared density, the covariance doubled: right for a Gaussian, and
-    hardly moved by a broad foot.
-    """
-    q = grid.centre.shape[2]
-    standard = standard_nodes(q)
-    mine = standard.grid == which
-    by_node = tilted.log_weight[:, mine][:, :, [0] if which == 0 else slice(1, None)]
-    top = by_node.reshape(len(by_node), -1).max(axis=1)
-    possible = np.isfinite(top)  # nothing can be wrong with a unit that has no reading: that grid stays where it is
-    density = np.einsum("bgo->bg", np.exp(by_node - np.where(possible, top, 0.0)[:, None, None]))
+    standard = standard_nodes(q, grid.which)
+    possible = np.isfinite(tilted.log_evidence)  # nothing can be wrong with a unit that has no reading: it stays
+    density = np.einsum("bgo->bg", tilted.probability)
     density[~possible] = 1.0
-    squared = density**2 * np.exp(-standard.log_volume[mine])
-    off, spread = moments(squared / squared.sum(axis=1, keepdims=True), standard.place[mine])
+    squared = density**2 * np.exp(-standard.log_volume)
+    off, spread = moments(squared / squared.sum(axis=1, keepdims=True), standard.place)
     values, axes = np.linalg.eigh(2.0 * spread)
-    floor = (0.5 * SPACING[q][which]) ** 2
+    floor = (0.5 * SPACING[q][grid.which]) ** 2
     values = np.where(values < floor, values + floor, values)
-    before = grid.spread[:, which]
-    moved = before @ (axes * np.sqrt(values)[:, None, :])
-    mean = grid.centre[:, which] + np.einsum("bij,bj->bi", before, off)
-    mean = np.where(possible[:, None], mean, grid.centre[:, which])
-    return mean, np.where(possible[:, None, None], moved, before)
+    moved = grid.spread @ (axes * np.sqrt(values)[:, None, :])
+    mean = grid.centre + np.einsum("bij,bj->bi", grid.spread, off)
+    return Grid(
+        np.where(possible[:, None], mean, grid.centre),
+        np.where(possible[:, None, None], moved, grid.spread),
+        grid.which,
+    )
 
 
 def moments(weight: Floats, nodes: Floats) -> tuple[Floats, Floats]:

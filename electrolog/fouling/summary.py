@@ -11,7 +11,6 @@ from numpy.typing import NDArray
 
 from electrolog.fouling.covariance import between, variances
 from electrolog.fouling.events import EXPOSURE, READING, RENEWAL, Events
-from electrolog.fouling.fates import damage_chances, slip_chances
 from electrolog.fouling.fit import Component
 from electrolog.fouling.parameters import IN_VIVO, read_scales
 from electrolog.fouling.points import normal_points
@@ -164,7 +163,7 @@ def slips(events: Events, fitted: list[Fitted]) -> list[dict[str, Any]]:
 def slip_probability(one: Fitted, n_readings: int) -> Floats:
     chance = np.zeros(n_readings)
     for batch, seen in zip(one.problem.batches, one.outcome.units, strict=True):
-        chance[batch.reading[batch.real]] = slip_chances(seen.by_fate, batch.real.shape[1])[batch.real]
+        chance[batch.reading[batch.real]] = seen.slipped[batch.real]
     return chance
 
 
@@ -173,8 +172,7 @@ def damaged(events: Events, fitted: list[Fitted]) -> list[dict[str, Any]]:
     chance: dict[int, Floats] = {}
     for one in fitted:
         for batch, seen in zip(one.problem.batches, one.outcome.units, strict=True):
-            rows = damage_chances(seen.by_fate, batch.real.shape[1])
-            for unit, row in zip(batch.unit, rows, strict=True):
+            for unit, row in zip(batch.unit, seen.damaged, strict=True):
                 chance[unit] = chance.get(unit, 0.0) + one.part.weight * row
     return [
         {"unit": events.units[unit], "before_reading": int(row.argmax()), "probability": float(row.sum())}
