@@ -4,6 +4,7 @@
 
     lab = electrolog.open_lab("lab.db")  # to be read only
     electrolog.frame(lab.readings(["B1-01"]))
+    electrolog.draw.history(lab.courses(["B1-01"])[0])
     lab.check(["B1-01"], electrolog.Run("dopamine", "triangle", "in-vivo", run_min=120))
 
     lab = electrolog.open_lab("lab.db", write=True)  # every entry is journalled, as those of the terminal are
@@ -24,8 +25,19 @@ if TYPE_CHECKING:
     from electrolog.answers.frames import frame
     from electrolog.errors import DoubtfulEntry, ElectrologError, InputError
     from electrolog.lab import Lab
+    from electrolog.show import draw
 
-__all__ = ["DoubtfulEntry", "ElectrologError", "InputError", "Lab", "NewCalibration", "Run", "frame", "open_lab"]
+__all__ = [
+    "DoubtfulEntry",
+    "ElectrologError",
+    "InputError",
+    "Lab",
+    "NewCalibration",
+    "Run",
+    "draw",
+    "frame",
+    "open_lab",
+]
 
 _HOMES = {
     "DoubtfulEntry": "errors",
@@ -56,8 +68,10 @@ def open_lab(
 
 def __getattr__(name: str) -> Any:
     # The terminal asks for help far more often than for the database, which takes most of the time to load.
-    if name in _HOMES:
-        from importlib import import_module
+    from importlib import import_module
 
+    if name == "draw":
+        return import_module("electrolog.show.draw")
+    if name in _HOMES:
         return getattr(import_module(f"electrolog.{_HOMES[name]}"), name)
     raise AttributeError(f"module 'electrolog' has no attribute {name!r}")

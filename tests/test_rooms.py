@@ -17,7 +17,7 @@ PACKAGE = ROOT / "electrolog"
 
 GROUND = ("units", "errors", "clock")
 ROOMS = (*GROUND, "record", "measure", "fouling", "judge", "answers", "lab", "show", "cli")  # from the ground up
-DOOR = {"": "lab", "__main__": "cli"}  # the package itself and `python -m electrolog`
+DOOR = {"": "show", "__main__": "cli"}  # the package itself offers figures too; `python -m electrolog`
 
 BELOW = {room: {*ROOMS[: ROOMS.index(room)]} | ({*GROUND} if room in GROUND else set()) for room in ROOMS}
 BELOW["measure"] = {*GROUND}  # arrays in, dataclasses out: nothing of the database

@@ -10,6 +10,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from electrolog.answers import fits
+from electrolog.answers.answer import Answer
 from electrolog.answers.asked import Run
 from electrolog.answers.board import Board, board, in_order
 from electrolog.answers.cards import Card
@@ -34,7 +35,7 @@ Kind = tuple[str, str, str, float | None, str]
 
 
 @dataclass(frozen=True)
-class Placed:
+class Placed(Answer):
     """A run and who serves it: the odds that no limit is broken by its end. electrode None: nobody, and `why`."""
 
     label: str
@@ -50,7 +51,7 @@ class Placed:
 
 
 @dataclass(frozen=True)
-class Assignment:
+class Assignment(Answer):
     """p_all: the odds that every served run succeeds."""
 
     runs: tuple[Placed, ...]

@@ -12,6 +12,7 @@ import numpy as np
 
 from electrolog.answers import fits
 from electrolog.answers import life as lives
+from electrolog.answers.answer import Answer
 from electrolog.answers.asked import Asked, Floats, Run, ask
 from electrolog.answers.fits import Assay
 from electrolog.answers.standing import notes, out_of_use, unanswerable
@@ -43,7 +44,7 @@ class OfAnAssay(Protocol):
 
 
 @dataclass(frozen=True)
-class Checked:
+class Checked(Answer):
     electrode: str
     verdict: Verdict
     notes: tuple[str, ...]

@@ -15,6 +15,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from electrolog.answers import life as lives
+from electrolog.answers.answer import Answer
 from electrolog.answers.cohorts import coating, unusable
 from electrolog.answers.figures import all_figures
 from electrolog.answers.fits import fit_for
@@ -38,7 +39,7 @@ UNKNOWN_END = ("lost", "left in tissue")  # says nothing of how long it would ha
 
 
 @dataclass(frozen=True)
-class Compared:
+class Compared(Answer):
     """waveform: of the calibrations compared, "" for all. after_h: of the share left.
 
     next: where more probes would teach most; None where that can't be told.

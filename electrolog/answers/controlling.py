@@ -8,6 +8,7 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 from datetime import datetime
 
+from electrolog.answers.answer import Answer
 from electrolog.answers.history import Reading, readings
 from electrolog.answers.quantities import Quantity
 from electrolog.errors import DataError, InputError
@@ -36,7 +37,7 @@ class Plotted:
 
 
 @dataclass(frozen=True)
-class Controlled:
+class Controlled(Answer):
     """The charts of one rig, all over the same points. `signals`: (index of the point, rule that it breaks)."""
 
     rig: str

@@ -15,6 +15,7 @@ from numpy.typing import NDArray
 from electrolog.answers import curves, exposed, fits, remarks, signal_files
 from electrolog.answers import figures as made
 from electrolog.answers import life as lives
+from electrolog.answers.answer import Answer
 from electrolog.answers.background import Background, trial
 from electrolog.answers.cohorts import Cohort, gather
 from electrolog.answers.fits import Assay
@@ -70,7 +71,7 @@ class FixedFactor:
 
 
 @dataclass(frozen=True)
-class Converted:
+class Converted(Answer):
     """Per sample (N,): seconds, nA, µM and its 90 % band; NaN where no number can be given.
 
     `account`: everything it rests on, as plain values, to be kept beside the result.

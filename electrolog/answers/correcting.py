@@ -9,6 +9,7 @@ from typing import Any
 
 from electrolog.answers import figures as made
 from electrolog.answers import handling
+from electrolog.answers.answer import Answer
 from electrolog.errors import unknown
 from electrolog.record import amend, earlier, names, queries, schema, sheets
 from electrolog.record.columns import Value
@@ -19,7 +20,7 @@ from electrolog.record.store import Record
 
 
 @dataclass(frozen=True)
-class Corrected:
+class Corrected(Answer):
     """What a correction did: column -> (before, after) as people read them; empty for a strike."""
 
     what: str

@@ -10,6 +10,7 @@ import numpy as np
 
 from electrolog.answers import fits, history
 from electrolog.answers import life as lives
+from electrolog.answers.answer import Answer
 from electrolog.answers.asked import Asked, Floats, Run, ask
 from electrolog.answers.checking import Demands, limits_in_force
 from electrolog.answers.cohorts import REFERENCE_SETTING
@@ -47,7 +48,7 @@ class Mark:
 
 
 @dataclass(frozen=True)
-class Course:
+class Course(Answer):
     """One probe with one analyte and waveform, oldest reading first.
 
     believed: the truth at the readings that the fit used. ahead: from now on, in `setting`; empty where `why_not_ahead`

@@ -7,6 +7,7 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
+from electrolog.answers.answer import Answer
 from electrolog.answers.history import Reading
 from electrolog.errors import ElectrologError
 from electrolog.measure import detection
@@ -15,7 +16,7 @@ from electrolog.measure.line import LineFit, fit_line
 
 
 @dataclass(frozen=True)
-class Routes:
+class Routes(Answer):
     found: tuple[Limits, ...]
     why_not: dict[str, str]
 

@@ -11,6 +11,7 @@ import numpy as np
 
 from electrolog.answers import fits
 from electrolog.answers import life as lives
+from electrolog.answers.answer import Answer
 from electrolog.answers.asked import Floats
 from electrolog.answers.cohorts import Cohort, gather, unusable
 from electrolog.answers.figures import all_figures
@@ -33,7 +34,7 @@ Figures = Mapping[int, CalibrationFigures]
 
 
 @dataclass(frozen=True)
-class Diagnosed:
+class Diagnosed(Answer):
     """before and after: the calibrations compared, by label. symptoms: what was found; None in it: not measured."""
 
     electrode: str

@@ -10,6 +10,7 @@ from typing import Any
 
 from electrolog.answers import doubts as asked
 from electrolog.answers import figures as made
+from electrolog.answers.answer import Answer
 from electrolog.answers.handling import split
 from electrolog.answers.labels import expanded, known_labels, numbered
 from electrolog.errors import DoubtfulEntry, InputError, shortened, unknown, with_article
@@ -27,7 +28,7 @@ Points = Sequence[tuple[float, float]]
 
 
 @dataclass(frozen=True)
-class Entered:
+class Entered(Answer):
     """A row that is now in the record, and what was doubted and confirmed."""
 
     sheet: str

@@ -8,6 +8,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from electrolog.answers import fits, history
+from electrolog.answers.answer import Answer
 from electrolog.answers.fitting import whole_cohort
 from electrolog.answers.history import Reading
 from electrolog.fouling.fit import CohortFit
@@ -34,7 +35,7 @@ class Trail:
 
 
 @dataclass(frozen=True)
-class Fan:
+class Fan(Answer):
     analyte: str
     trails: tuple[Trail, ...]
     typical: tuple[TypicalLoss, ...]

@@ -6,6 +6,7 @@ from collections.abc import Iterable, Sequence
 from dataclasses import dataclass, replace
 from typing import Any
 
+from electrolog.answers.answer import Answer
 from electrolog.answers.handling import Handling, split, with_handling
 from electrolog.errors import DataError
 from electrolog.measure.calibrate import CalibrationFigures, calibrate, factor_only
@@ -19,7 +20,7 @@ NO_CONTENT = "neither points nor a factor were kept: there is nothing to compute
 
 
 @dataclass(frozen=True)
-class Recomputed:
+class Recomputed(Answer):
     """A calibration whose figures a new method, or a correction, has changed: figure -> (before, after)."""
 
     calibration: str

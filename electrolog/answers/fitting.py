@@ -9,6 +9,7 @@ from datetime import datetime
 from typing import Any
 
 from electrolog.answers import fits
+from electrolog.answers.answer import Answer
 from electrolog.answers.cohorts import Cohort
 from electrolog.answers.fits import Assay
 from electrolog.errors import DataError
@@ -84,7 +85,7 @@ class Odd:
 
 
 @dataclass(frozen=True)
-class FittedCohort:
+class FittedCohort(Answer):
     """spreads: standard deviations in log units, by what they are of. probes: one per waveform it was seen with."""
 
     analyte: str

@@ -9,6 +9,7 @@ from datetime import datetime
 import numpy as np
 
 from electrolog.answers import life as lives
+from electrolog.answers.answer import Answer
 from electrolog.answers.asked import Asked, Floats, Run, ask
 from electrolog.errors import InputError
 from electrolog.record.store import Record
@@ -37,7 +38,7 @@ class Basis:
 
 
 @dataclass(frozen=True)
-class Forecast:
+class Forecast(Answer):
     electrode: str
     analyte: str
     waveform: str

@@ -2,9 +2,10 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping, Sequence
-from dataclasses import fields, is_dataclass
+from collections.abc import Iterable, Sequence
 from typing import TYPE_CHECKING, Any
+
+from electrolog.answers.answer import has_parts, spread
 
 if TYPE_CHECKING:
     import pandas as pd
@@ -21,28 +22,12 @@ def frame(answers: Iterable[Any]) -> pd.DataFrame:
     """
     import pandas as pd
 
-    found = pd.DataFrame([dict(_spread(answer)) for answer in answers])
+    found = pd.DataFrame([dict(_row(answer)) for answer in answers])
     return found.drop(columns=[name for name in INTERNAL if name in found.columns])
 
 
-def _spread(answer: Any, prefix: str = "") -> Iterable[tuple[str, Any]]:
-    if not prefix and not _has_parts(answer):
+def _row(answer: Any) -> Iterable[tuple[str, Any]]:
+    if not has_parts(answer):
         raise TypeError(f"{type(answer).__name__} is no answer; accepted: a dataclass or a mapping")
-    for name, value in _parts(answer):
-        key = f"{prefix}{name}"
-        if _has_parts(value):
-            yield from _spread(value, f"{key}.")
-        elif isinstance(value, Sequence) and not isinstance(value, str):
-            yield key, list(value)
-        else:
-            yield key, value
-
-
-def _has_parts(value: Any) -> bool:
-    return isinstance(value, Mapping) or (is_dataclass(value) and not isinstance(value, type))
-
-
-def _parts(answer: Any) -> Iterable[tuple[str, Any]]:
-    if isinstance(answer, Mapping):
-        return ((str(name), value) for name, value in answer.items())
-    return ((field.name, getattr(answer, field.name)) for field in fields(answer))
+    for name, value in spread(answer):
+        yield name, list(value) if isinstance(value, Sequence) and not isinstance(value, str) else value

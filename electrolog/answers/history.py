@@ -11,6 +11,7 @@ from typing import Any
 from electrolog.answers import figures as made
 from electrolog.answers import health
 from electrolog.answers import life as lives
+from electrolog.answers.answer import Answer
 from electrolog.answers.carbon import Carbon, carbon_at
 from electrolog.answers.handling import Handling, split
 from electrolog.errors import InputError, shortened
@@ -24,7 +25,7 @@ from electrolog.record.store import Record
 
 
 @dataclass(frozen=True)
-class Reading:
+class Reading(Answer):
     """One calibration of a probe. `share_left` is of the reference calibration; its error is of both readings."""
 
     electrode: str

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
+from electrolog.answers.answer import Answer
 from electrolog.errors import InputError
 from electrolog.judge.rules import RULES, Rule, rule_named
 from electrolog.record import amend, entry, queries, sheets
@@ -18,7 +19,7 @@ LAB, COMMON = "lab decision", "common practice"
 
 
 @dataclass(frozen=True)
-class LimitSet:
+class LimitSet(Answer):
     """A rule with the value the lab has set, if it has; the value is in the rule's unit."""
 
     rule: Rule

@@ -5,8 +5,10 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from datetime import tzinfo
+from pathlib import Path
 from typing import TYPE_CHECKING
 
+from electrolog.record.columns import Value
 from electrolog.record.store import Record
 
 if TYPE_CHECKING:
@@ -19,9 +21,11 @@ if TYPE_CHECKING:
     from electrolog.answers.preparing import Preparation, PreparedStandard
     from electrolog.answers.quantities import Quantity
     from electrolog.answers.reading_off import ReadOff
-    from electrolog.answers.signals import Sweep
+    from electrolog.answers.signals import Recorded, Sweep
     from electrolog.measure.calibrate import CalibrationFigures
     from electrolog.measure.dilution_plan import DilutionPlan
+    from electrolog.measure.scans import ScanSettings
+    from electrolog.measure.trace import TraceSettings
 
 
 @dataclass(frozen=True)
@@ -36,6 +40,53 @@ class Measuring:
         from electrolog.answers.entering import log_calibrations
 
         return log_calibrations(self.record, new, self.zone, confirmed)
+
+    def read_trace(
+        self,
+        file: Path,
+        concentration_um: Sequence[float],
+        settings: TraceSettings | None = None,
+        *,
+        rate_hz: float | None = None,
+        left_out: Sequence[int] = (),
+    ) -> Recorded:
+        """What a flow-cell recording shows; nothing is logged. `concentration_um`: of each injection in order."""
+        from electrolog.answers.signals import from_trace
+        from electrolog.measure.trace import TraceSettings
+
+        return from_trace(file, concentration_um, settings or TraceSettings(), rate_hz=rate_hz, left_out=left_out)
+
+    def read_scans(
+        self,
+        file: Path,
+        concentration_um: Sequence[float],
+        settings: ScanSettings | None = None,
+        *,
+        sweep: Sweep | None = None,
+        left_out: Sequence[int] = (),
+    ) -> Recorded:
+        """What a sheet of scans shows; nothing is logged. `sweep`: where the file doesn't say its own."""
+        from electrolog.answers.signals import from_scans
+        from electrolog.measure.scans import ScanSettings
+
+        return from_scans(file, concentration_um, settings or ScanSettings(), sweep=sweep, left_out=left_out)
+
+    def log_recorded(
+        self,
+        recorded: Recorded,
+        values: Mapping[str, str | Value | None],
+        handling: Handling | None = None,
+        *,
+        confirmed: bool = False,
+    ) -> Entered:
+        """Logs what was read as a calibration; `values`: its probe, stage, analyte and the rest as they are typed.
+
+        Raises DoubtfulEntry for a likely slip unless confirmed.
+        """
+        from electrolog.answers.handling import Handling
+        from electrolog.answers.recorded import log_recorded
+
+        return log_recorded(self.record, recorded, values, handling or Handling(), self.zone, confirmed)
 
     def figures_of_points(
         self, points: Sequence[tuple[float, float]], handling: Handling, noise_na: float | None = None

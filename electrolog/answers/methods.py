@@ -9,6 +9,7 @@ from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 from typing import Any
 
+from electrolog.answers.answer import Answer
 from electrolog.answers.history import Reading, readings
 from electrolog.answers.labels import known_labels
 from electrolog.errors import InputError
@@ -31,7 +32,7 @@ class Spread:
 
 
 @dataclass(frozen=True)
-class Described:
+class Described(Answer):
     """`counts`: how many probes (or calibrations) each word holds for; '' where the record doesn't say."""
 
     analyte: str

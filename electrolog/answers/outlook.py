@@ -12,6 +12,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from electrolog.answers import life as lives
+from electrolog.answers.answer import Answer
 from electrolog.answers.asked import Asked, Floats, Run, ask
 from electrolog.answers.checking import Demands, question_of, rules_of_the_lab
 from electrolog.answers.cohorts import coating
@@ -67,7 +68,7 @@ class Making:
 
 
 @dataclass(frozen=True)
-class Outlook:
+class Outlook(Answer):
     """recalibrate_first: where a calibration now would save most, the best first.
 
     pace_h_per_day: run hours per day of a probe in use, over the last month; None: there was none.

@@ -8,6 +8,7 @@ from dataclasses import dataclass
 from datetime import datetime, tzinfo
 
 from electrolog import units
+from electrolog.answers.answer import Answer
 from electrolog.answers.entering import Entered, log_plain, read
 from electrolog.errors import InputError, shortened, unknown
 from electrolog.measure.dilution_plan import DilutionPlan, plan_dilutions
@@ -40,7 +41,7 @@ class Preparation:
 
 
 @dataclass(frozen=True)
-class PreparedStandard:
+class PreparedStandard(Answer):
     """What was logged; `prepared`: how its concentration came about, `usual_expiry`: the trade's use-by."""
 
     entered: Entered

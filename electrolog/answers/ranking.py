@@ -7,6 +7,7 @@ from dataclasses import dataclass
 from datetime import datetime
 
 from electrolog.answers import fits
+from electrolog.answers.answer import Answer
 from electrolog.answers.asked import Run
 from electrolog.answers.board import Board, board
 from electrolog.answers.cards import Card
@@ -21,7 +22,7 @@ from electrolog.record.store import Record
 
 
 @dataclass(frozen=True)
-class Ranked:
+class Ranked(Answer):
     """A probe's place before the run. The figures are medians at the run's end; None: unknown."""
 
     electrode: str
@@ -36,7 +37,7 @@ class Ranked:
 
 
 @dataclass(frozen=True)
-class Ranking:
+class Ranking(Answer):
     """notes: what holds for all of them alike. draws: how finely the odds were counted."""
 
     probes: tuple[Ranked, ...]

@@ -7,6 +7,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from electrolog.answers.answer import Answer
 from electrolog.answers.figures import standards_uncertainties
 from electrolog.answers.history import Reading, readings_of
 from electrolog.errors import DataError, InputError
@@ -16,7 +17,7 @@ from electrolog.record.store import Record
 
 
 @dataclass(frozen=True)
-class ReadOff:
+class ReadOff(Answer):
     """`standard_relative_uncertainty` is beside the intervals, not in them: every probe of that day shares it."""
 
     calibration: str

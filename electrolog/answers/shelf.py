@@ -8,6 +8,7 @@ from datetime import date, datetime
 
 from electrolog.answers import figures as made
 from electrolog.answers import life as lives
+from electrolog.answers.answer import Answer
 from electrolog.answers.history import share_of
 from electrolog.clock import utc_now
 from electrolog.errors import unknown
@@ -23,7 +24,7 @@ WIDER_STATES = ("usable", "all")
 
 
 @dataclass(frozen=True)
-class Shelved:
+class Shelved(Answer):
     """One probe as it lies on the shelf at the moment asked.
 
     trend_na_um: every reading that is comparable with the last one, oldest first.

@@ -11,6 +11,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from electrolog.answers import signal_files as files
+from electrolog.answers.answer import Answer
 from electrolog.answers.history import usual_waveform
 from electrolog.errors import InputError, UnknownName
 from electrolog.measure.peaks import Peak
@@ -30,7 +31,7 @@ SAME_SWEEP_V = 0.05  # common practice: sampling misses a vertex by less than th
 
 
 @dataclass(frozen=True)
-class Recorded:
+class Recorded(Answer):
     """`points`: without the injections left out. `columns`: what it says of the calibration beside them.
 
     `account`: the file, the settings and everything found, as plain values to be kept with the calibration.

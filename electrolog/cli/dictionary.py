@@ -10,6 +10,7 @@ def command(ctx: typer.Context, json: Json = False, csv: Csv = False) -> None:
 
     electrolog dictionary --csv
     """
+    from electrolog.answers.dictionary import entries
     from electrolog.show import dictionary
 
-    dictionary.answer(json, csv)
+    dictionary.answer(entries(), json, csv)

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass
 from pathlib import Path
 from typing import TYPE_CHECKING, Annotated
@@ -10,11 +10,10 @@ from typing import TYPE_CHECKING, Annotated
 import typer
 
 from electrolog.cli.session import once_confirmed
-from electrolog.errors import DoubtfulEntry, InputError, shortened
+from electrolog.errors import InputError, shortened
 from electrolog.units import CONCENTRATION_UM, parse_quantity
 
 if TYPE_CHECKING:
-    from electrolog.answers.handling import Handling
     from electrolog.answers.signals import Recorded
     from electrolog.lab import Lab
     from electrolog.measure.recording import Span
@@ -109,22 +108,7 @@ def log_or_show(lab: Lab, recorded: Recorded, wanted: Wanted) -> None:
     if wanted.look:
         signals.answer(recorded, figures, wanted.json)
         return
-    entered = once_confirmed(_entry(lab, recorded, wanted, handling), wanted.yes)
-    calibrations.answer(lab.readings_of(entered), wanted.json)
-
-
-def _entry(lab: Lab, recorded: Recorded, wanted: Wanted, handling: Handling) -> Callable[[bool], list[str]]:
-    from electrolog.answers.entering import NewCalibration
-    from electrolog.answers.handling import with_handling
-
-    known = {name: text for name, text in wanted.values.items() if text is not None}
-    known["waveform"] = known.get("waveform") or lab.usual_waveform(known["electrode"], known["analyte"])
-    note = with_handling(known.get("note"), handling)
-    new = NewCalibration({**recorded.columns, **known, "note": note}, recorded.points)
-
-    def enter(confirmed: bool) -> list[str]:
-        if recorded.doubts and not confirmed:
-            raise DoubtfulEntry("; ".join(recorded.doubts), recorded.doubts, "if it is right, repeat it with --yes")
-        return [str(one.values["calibration"]) for one in lab.calibrate([new], confirmed=confirmed)]
-
-    return enter
+    entered = once_confirmed(
+        lambda confirmed: lab.log_recorded(recorded, wanted.values, handling, confirmed=confirmed), wanted.yes
+    )
+    calibrations.answer(lab.readings_of([str(entered.values["calibration"])]), wanted.json)

@@ -21,18 +21,18 @@ LEAST_WEIGHT = 0.01
 
 def draw(path: Path, found: FittedCohort, fan: Fan) -> None:
     """The kinds with the most probes; beneath them the calibration days."""
-    kinds = sorted(fan.typical, key=lambda loss: -len(_of_kind(fan, loss)))[:MOST_KINDS]
+    kinds = sorted(fan.typical, key=lambda loss: -len(of_kind(fan, loss)))[:MOST_KINDS]
     columns = max(1, min(3, len(kinds)))
     rows = -(-len(kinds) // columns)
     with figure(path, max(7.2, 4.2 * columns), 3.6 * rows + 3.0) as paper:
         grid = paper.add_gridspec(rows + 1, columns)
         for place, loss in enumerate(kinds):
             axes = paper.add_subplot(grid[place // columns, place % columns])
-            draw_fan(axes, loss, _of_kind(fan, loss), found.shapes)
+            draw_fan(axes, loss, of_kind(fan, loss), found.shapes)
         draw_days(paper.add_subplot(grid[rows, :]), found.days)
 
 
-def _of_kind(fan: Fan, loss: TypicalLoss) -> list[Trail]:
+def of_kind(fan: Fan, loss: TypicalLoss) -> list[Trail]:
     return [trail for trail in fan.trails if (trail.coating, trail.waveform) == (loss.coating, loss.waveform)]
 
 

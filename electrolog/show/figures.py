@@ -78,6 +78,17 @@ def figure(path: Path, width_in: float, height_in: float) -> Iterator[Figure]:
 
 
 @contextmanager
+def on_axes(axes: Axes | None) -> Iterator[Axes]:
+    """The Axes to draw on in the house's look: the caller's own, or that of a new figure which a notebook shows."""
+    with _matplotlib().rc_context(_LOOK):
+        if axes is None:
+            from matplotlib import pyplot
+
+            axes = pyplot.figure(figsize=(7.2, 3.9), layout="constrained").add_subplot()
+        yield axes
+
+
+@contextmanager
 def figures_of_pages(path: Path, width_in: float, height_in: float) -> Iterator[Callable[[], Figure]]:
     """A function that adds a page to the PDF at `path`; pages are written at the end."""
     matplotlib = _matplotlib()
