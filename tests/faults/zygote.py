@@ -5,7 +5,7 @@ not into the loading of modules before it.
 
 from __future__ import annotations
 
-import importlib
+import importlib.util
 import json
 import os
 import pkgutil
@@ -14,11 +14,14 @@ import subprocess
 import sys
 import tempfile
 import time
+from collections.abc import Callable
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
 ROOT = Path(__file__).resolve().parents[2]
+LONGEST_S = 120.0
+HEAVY = ("numpy", "pandas", "scipy.linalg", "scipy.optimize", "scipy.special", "scipy.stats")
 
 
 @dataclass(frozen=True)
@@ -36,11 +39,15 @@ class Zygote:
         command = [sys.executable, str(Path(__file__).resolve())]
         self._process = subprocess.Popen(command, stdin=subprocess.PIPE, stdout=subprocess.PIPE, cwd=ROOT)
 
-    def run(self, arguments: list[str], kill_after_s: float = 60.0) -> Ended:
+    def run(
+        self, arguments: list[str], kill_after_s: float = LONGEST_S, meanwhile: Callable[[], None] | None = None
+    ) -> Ended:
         assert self._process.stdin is not None
         assert self._process.stdout is not None
         self._process.stdin.write(json.dumps([arguments, kill_after_s]).encode() + b"\n")
         self._process.stdin.flush()
+        if meanwhile is not None:
+            meanwhile()
         return Ended(*json.loads(self._process.stdout.readline()))
 
     def close(self) -> None:
@@ -62,11 +69,13 @@ def load_everything() -> None:
     for module in pkgutil.walk_packages(electrolog.__path__, "electrolog."):
         if not module.name.endswith("__main__"):
             importlib.import_module(module.name)
+    for name in (*HEAVY, *(["psycopg"] if importlib.util.find_spec("psycopg") else [])):
+        importlib.import_module(name)
     with tempfile.TemporaryDirectory() as folder:
         where = ["--db", str(Path(folder) / "record.db")]
         warm = (["setup"], ["new", "W"], ["verify"], ["inspect", "W", "--noise", "1nA"], ["backup", folder])
         for words in warm:
-            run_child([*where, *words], 60.0, fork=False)
+            run_child([*where, *words], LONGEST_S, fork=False)
 
 
 def run_child(arguments: list[str], kill_after_s: float, fork: bool = True) -> tuple[Any, ...]:

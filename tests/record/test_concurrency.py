@@ -73,5 +73,5 @@ def test_a_reader_sees_all_of_an_entry_or_nothing(lived_in: Lab, reader_sees: st
 
 def test_many_writers_and_a_slow_reader(blank: str) -> None:
     """Few of what tests/faults/writers.py does; the reader sees one state as long as it looks, and holds up nobody."""
-    found = writers.run(blank, 6, 10, reader_s=1.0)
+    found = writers.run(blank, 6, 10)
     assert (found.entries, found.lost, found.doubled, found.said, found.whole) == (60, 0, 0, (), True)
