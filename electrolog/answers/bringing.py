@@ -13,7 +13,9 @@ from electrolog.record.store import Record
 if TYPE_CHECKING:
     from electrolog.answers.entering import Entered
     from electrolog.answers.methods import Described
+    from electrolog.answers.recordings.runs import Runs
     from electrolog.record.books.adoption import Adoption
+    from electrolog.record.exchange_files import Progress
 
 
 @dataclass(frozen=True)
@@ -47,6 +49,37 @@ class Bringing:
 
         write_template(self.record, path, concentrations_um or USUAL_UM)
 
+    def read_runs(
+        self,
+        folder: Path,
+        *,
+        setting: str | None = None,
+        waveform: str | None = None,
+        subject: str | None = None,
+        probe: str | None = None,
+        probes: Mapping[str, str] | None = None,
+        commit: bool = False,
+        confirmed: bool = False,
+        progress: Progress | None = None,
+    ) -> Runs:
+        """The runs that a folder of recordings tells of; logged only on `commit`, all that is new or nothing.
+
+        What is typed holds for recordings that don't say it themselves; `probes`: label by file. What is doubtful is
+        logged only if `confirmed`.
+        """
+        from electrolog.answers.recordings.candidates import Given
+        from electrolog.answers.recordings.runs import Asking, runs
+
+        given = Given(setting, waveform, subject, probe, probes or {})
+        return runs(self.record, folder, Asking(given, commit, confirmed, self.zone), progress or _unheard)
+
+    def list_recordings(self, folder: Path, *, setting: str | None = None, progress: Progress | None = None) -> Path:
+        """Writes `recordings.csv` into a folder, a row for each recording, to be filled in. Raises InputError."""
+        from electrolog.answers.recordings.candidates import Given
+        from electrolog.answers.recordings.runs import Asking, list_recordings
+
+        return list_recordings(self.record, folder, Asking(Given(setting), zone=self.zone), progress or _unheard)
+
     def again(
         self,
         labels: Sequence[str],
@@ -65,3 +98,7 @@ class Bringing:
         from electrolog.answers.methods import methods
 
         return methods(self.record, labels, analyte, waveform)
+
+
+def _unheard(what: str, done: int) -> None:
+    """Progress that nobody asked for."""

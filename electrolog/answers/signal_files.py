@@ -18,8 +18,8 @@ from electrolog.measure.scan_sheet import ScanSheet
 Array = NDArray[np.float64]
 
 LARGEST_CSV = 4_000_000_000
-_SECONDS = {"time_s": 1.0, "time_ms": 1e-3, "time_min": 60.0}
-_NANOAMPERES = {"current_na": 1.0, "current_pa": 1e-3, "current_ua": 1e3}
+SECONDS = {"time_s": 1.0, "time_ms": 1e-3, "time_min": 60.0}
+NANOAMPERES = {"current_na": 1.0, "current_pa": 1e-3, "current_ua": 1e3}
 _VOLTS = {"potential_v": 1.0, "potential_mv": 1e-3}
 
 
@@ -34,20 +34,20 @@ class ScanFile:
 
 def trace_from(path: Path, rate_hz: float | None = None) -> tuple[Array, Array]:
     """Times in s and currents in nA. `rate_hz`: of a file that holds currents alone."""
-    with _said(path):
-        time, current = _by_ending(path, {".csv": _csv_trace, ".npy": _npy_trace, ".h5": _hdf_trace})(path, rate_hz)
+    with said_of(path):
+        time, current = by_ending(path, {".csv": _csv_trace, ".npy": _npy_trace, ".h5": _hdf_trace})(path, rate_hz)
         return time, current
 
 
 def scans_from(path: Path) -> ScanFile:
-    with _said(path):
-        found: ScanFile = _by_ending(path, {".csv": _csv_scans, ".npy": _npy_scans, ".h5": _hdf_scans})(path)
+    with said_of(path):
+        found: ScanFile = by_ending(path, {".csv": _csv_scans, ".npy": _npy_scans, ".h5": _hdf_scans})(path)
         return found
 
 
 def injections_from(path: Path) -> list[dict[str, float]]:
     """A table start_s, end_s and, if it is there, concentration_um; a row per injection."""
-    with _said(path):
+    with said_of(path):
         table = _table(path)
         missing = [name for name in ("start_s", "end_s") if name not in table]
         if missing:
@@ -66,7 +66,7 @@ def fingerprint(path: Path) -> str:
 
 
 @contextmanager
-def _said(path: Path) -> Iterator[None]:
+def said_of(path: Path) -> Iterator[None]:
     """Every refusal names the file."""
     try:
         yield
@@ -76,7 +76,7 @@ def _said(path: Path) -> Iterator[None]:
         raise InputError(f"{path.name}: can't be read ({shortened(str(why), 160)})", "is it whole?") from None
 
 
-def _by_ending(path: Path, readers: dict[str, Callable[..., Any]]) -> Callable[..., Any]:
+def by_ending(path: Path, readers: dict[str, Callable[..., Any]]) -> Callable[..., Any]:
     if not path.is_file():
         raise InputError("there is no such file")
     ending = path.suffix.casefold()
@@ -91,12 +91,12 @@ def _by_ending(path: Path, readers: dict[str, Callable[..., Any]]) -> Callable[.
 
 def _csv_trace(path: Path, _: float | None) -> tuple[Array, Array]:
     table = _table(path)
-    return _scaled(table, _SECONDS, "time"), _scaled(table, _NANOAMPERES, "current")
+    return _scaled(table, SECONDS, "time"), _scaled(table, NANOAMPERES, "current")
 
 
 def _csv_scans(path: Path) -> ScanFile:
     """First row: time_s, then the potentials in V; below it the time of each scan and its currents in nA."""
-    header = _header(path)
+    header = header_of(path)
     try:
         potential = np.array([float(cell) for cell in header[1:]])
     except ValueError as why:
@@ -104,9 +104,9 @@ def _csv_scans(path: Path) -> ScanFile:
             f"its first row holds something else than potentials ({shortened(str(why))}); accepted: time_s, then the "
             "potential of each point in V"
         ) from None
-    factor = _SECONDS.get(header[0].casefold())
+    factor = SECONDS.get(header[0].casefold())
     if factor is None:
-        raise InputError(f"its first column is called '{shortened(header[0])}'; accepted: {', '.join(_SECONDS)}")
+        raise InputError(f"its first column is called '{shortened(header[0])}'; accepted: {', '.join(SECONDS)}")
     cells = _numbers(path, header=None, skiprows=1)
     if cells.shape[1] != len(header):
         raise InputError(f"has {cells.shape[1]} columns below {len(header)} names; each column needs one")
@@ -116,17 +116,17 @@ def _csv_scans(path: Path) -> ScanFile:
 def _table(path: Path) -> Any:
     import pandas as pd
 
-    names = [cell.casefold() for cell in _header(path)]
+    names = [cell.casefold() for cell in header_of(path)]
     return pd.DataFrame(_numbers(path, header=0), columns=names)
 
 
-def _header(path: Path) -> list[str]:
+def header_of(path: Path) -> list[str]:
     _refuse_large(path)
     with path.open(encoding="utf-8-sig") as file:
         first = file.readline(1_000_000).strip()
     if not first:
         raise InputError("its first row is empty; accepted: the names of the columns")
-    return [cell.strip().strip('"') for cell in first.split(_separator(first))]
+    return [cell.strip().strip('"') for cell in first.split(separator_of(first))]
 
 
 def _numbers(path: Path, header: int | None, skiprows: int = 0) -> Array:
@@ -134,7 +134,7 @@ def _numbers(path: Path, header: int | None, skiprows: int = 0) -> Array:
     import pandas as pd
 
     with path.open(encoding="utf-8-sig") as file:
-        separator = _separator(file.readline(1_000_000))
+        separator = separator_of(file.readline(1_000_000))
     settings: dict[str, Any] = {"sep": separator, "header": header, "skiprows": skiprows, "encoding": "utf-8-sig"}
     try:
         return np.asarray(pd.read_csv(path, dtype=np.float64, **settings).to_numpy())
@@ -157,7 +157,7 @@ def _bad_cell(cells: Any, why: ValueError, first_line: int) -> ElectrologError:
     return InputError(shortened(str(why), 160))
 
 
-def _separator(line: str) -> str:
+def separator_of(line: str) -> str:
     return max((",", ";", "\t"), key=line.count)
 
 
@@ -175,10 +175,10 @@ def _refuse_large(path: Path) -> None:
 
 def _npy_trace(path: Path, rate_hz: float | None) -> tuple[Array, Array]:
     """Named columns, or two columns of s and nA, or currents alone with the rate they were taken at."""
-    found = _mapped(path)
+    found = mapped(path)
     if found.dtype.names:
         table = {name.casefold(): found[name] for name in found.dtype.names}
-        return _scaled(table, _SECONDS, "time"), _scaled(table, _NANOAMPERES, "current")
+        return _scaled(table, SECONDS, "time"), _scaled(table, NANOAMPERES, "current")
     if found.ndim == 2 and 2 in found.shape:
         time, current = found.T if found.shape[1] == 2 else found
         return np.asarray(time, dtype=float), np.asarray(current, dtype=float)
@@ -198,13 +198,13 @@ def _even_times(samples: int, rate_hz: float | None) -> Array:
 
 
 def _npy_scans(path: Path) -> ScanFile:
-    found = _mapped(path)
+    found = mapped(path)
     if found.ndim != 2 or found.dtype.names:
         raise InputError(f"holds an array of shape {found.shape}; accepted: a row per scan, a column per potential")
     return ScanFile(found)
 
 
-def _mapped(path: Path) -> Any:
+def mapped(path: Path) -> Any:
     """Mapped, not read: a sheet may be larger than the memory there is. Pickled objects are refused."""
     found = np.load(path, mmap_mode="r", allow_pickle=False)
     kinds = [found.dtype[name].kind for name in found.dtype.names] if found.dtype.names else [found.dtype.kind]
@@ -217,30 +217,34 @@ def _mapped(path: Path) -> Any:
 
 
 def _hdf_trace(path: Path, rate_hz: float | None) -> tuple[Array, Array]:
-    table = _datasets(path)
-    current = _scaled(table, _NANOAMPERES, "current")
+    table = _loaded(path)
+    current = _scaled(table, NANOAMPERES, "current")
     if current.ndim != 1:
         raise InputError(f"its currents have the shape {current.shape}; a trace has one row of them")
-    timed = any(name in table for name in _SECONDS)
-    return _scaled(table, _SECONDS, "time") if timed else _even_times(len(current), rate_hz), current
+    timed = any(name in table for name in SECONDS)
+    return _scaled(table, SECONDS, "time") if timed else _even_times(len(current), rate_hz), current
 
 
 def _hdf_scans(path: Path) -> ScanFile:
     """A dataset current_na (scans, points); potential_v (points,) and time_s (scans,) where they are there."""
-    table = _datasets(path)
-    sheet = next((table[name] * factor for name, factor in _NANOAMPERES.items() if name in table and factor != 1), None)
-    sheet = sheet if sheet is not None else _one_of(table, _NANOAMPERES, "current")[0]
+    table = _loaded(path)
+    sheet = next((table[name] * factor for name, factor in NANOAMPERES.items() if name in table and factor != 1), None)
+    sheet = sheet if sheet is not None else _one_of(table, NANOAMPERES, "current")[0]
     if sheet.ndim != 2:
         raise InputError(f"its currents have the shape {sheet.shape}; accepted: a row per scan, a column per potential")
     potential = _scaled(table, _VOLTS, "potential") if any(name in table for name in _VOLTS) else None
-    time = _scaled(table, _SECONDS, "time") if any(name in table for name in _SECONDS) else None
+    time = _scaled(table, SECONDS, "time") if any(name in table for name in SECONDS) else None
     if potential is not None and sheet.shape[0] == potential.size != sheet.shape[1]:
         sheet = sheet.T
     return ScanFile(sheet, potential, time)
 
 
-def _datasets(path: Path) -> dict[str, Any]:
-    """Every dataset by the last part of its name. Raises InputError where h5py isn't installed."""
+@contextmanager
+def datasets(path: Path) -> Iterator[dict[str, Any]]:
+    """Those of a known name, by the last part of it, while the file is open.
+
+    Raises InputError where h5py isn't installed, the file can't be read, or a name stands there twice.
+    """
     try:
         import h5py
     except ModuleNotFoundError:
@@ -252,17 +256,22 @@ def _datasets(path: Path) -> dict[str, Any]:
 
     def keep(name: str, item: Any) -> None:
         short = name.rpartition("/")[2].casefold()
-        if isinstance(item, h5py.Dataset) and short in {**_SECONDS, **_NANOAMPERES, **_VOLTS}:
+        if isinstance(item, h5py.Dataset) and short in {**SECONDS, **NANOAMPERES, **_VOLTS}:
             if short in found:
                 raise InputError(f"holds several datasets called {short}; accepted: one")
-            found[short] = item[()]
+            found[short] = item
 
     try:
         with h5py.File(path, "r") as file:
             file.visititems(keep)
+            yield found
     except OSError as why:
         raise InputError(f"is no HDF5 file that can be read ({shortened(str(why), 120)})") from None
-    return found
+
+
+def _loaded(path: Path) -> dict[str, Any]:
+    with datasets(path) as found:
+        return {name: item[()] for name, item in found.items()}
 
 
 # --- columns --------------------------------------------------------------------------------------------------

@@ -13,6 +13,7 @@ import pytest
 
 from electrolog.cli.catalogue import HELP, module_of
 from electrolog.cli.main import main
+from tests.cli.recordings import write_nwb
 
 # These need a recording or a cohort, which their own tests make.
 WITH_THEIR_OWN_TESTS = {
@@ -59,6 +60,8 @@ def prepare(name: str, cli: Any, folder: Path) -> None:
         cli.ok("calibrate", "B9-01", "pre", "DA", "0:0.1", "0.5uM:6.1", "1uM:12.2", "2uM:24", "-w", "triangle")
     elif name == "adopt":
         (folder / "factors.csv").write_text("probe,date,stage,nA/uM\nK1,2024-03-04,pre,12\n", encoding="utf-8")
+    elif name == "runs":
+        write_nwb(folder / "recordings" / "B9-01.nwb")
     elif name == "restore":
         cli.ok("backup", "backups")
         (written,) = (folder / "backups").iterdir()

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass, field
-from typing import Any
+from typing import Any, Protocol
 
 from electrolog.errors import InputError, shortened
 from electrolog.record import columns as kinds
@@ -34,6 +34,10 @@ class Origin:
         return f"adopted from {self.book} {draft.place}, SHA-256 {self.fingerprint}"
 
 
+class SaysOrigin(Protocol):
+    def of(self, draft: Draft) -> str: ...
+
+
 class _TriedOnly(Exception):
     """Rolls a dry run back."""
 
@@ -50,7 +54,7 @@ class BookFaults(Faults):
 class BookMerge(SheetMerge):
     """A sheet's drafts. The note is no part of what a row says: a book that has grown has another fingerprint."""
 
-    def __init__(self, under_way: Import, rows: Rows, drafts: Sequence[Draft], origin: Origin) -> None:
+    def __init__(self, under_way: Import, rows: Rows, drafts: Sequence[Draft], origin: SaysOrigin) -> None:
         super().__init__(under_way, rows)
         self.drafts, self.origin = drafts, origin
         self.states: dict[int, str] = {}
@@ -112,7 +116,7 @@ def _read(column: kinds.Column, value: kinds.Value) -> kinds.Value:
     return column.checked(value, str(value)) if isinstance(column, kinds.Number) and isinstance(value, float) else value
 
 
-def take_in(record: Record, drafts: list[Draft], out: Extract, origin: Origin, commit: bool) -> dict[int, str]:
+def take_in(record: Record, drafts: list[Draft], out: Extract, origin: SaysOrigin, commit: bool) -> dict[int, str]:
     """What becomes of each draft (by its id); the record is changed only on `commit`, all at once.
 
     Rows that a rule of the record refuses are said in `out`.
@@ -134,7 +138,7 @@ def take_in(record: Record, drafts: list[Draft], out: Extract, origin: Origin, c
         drafts[:] = [draft for draft in drafts if id(draft) not in lost]
 
 
-def _pass(writer: Writer, drafts: list[Draft], origin: Origin) -> tuple[dict[int, str], list[tuple[Draft, str]]]:
+def _pass(writer: Writer, drafts: list[Draft], origin: SaysOrigin) -> tuple[dict[int, str], list[tuple[Draft, str]]]:
     faults = BookFaults()
     by_sheet = {sheet.name: [draft for draft in drafts if draft.sheet == sheet.name] for sheet in TAKEN}
     under_way = Import(writer, faults, FilePoints(_point_rows(by_sheet["calibrations"])))
