@@ -60,30 +60,31 @@ def log_posterior(
     return outcome.log_evidence + log_prior, outcome.score - off / sd, outcome
 
 
-def climb(problem: Problem, theta: Floats, hopeless_below: float = -np.inf) -> Peak:
+def climb(problem: Problem, theta: Floats, hopeless_below: float = -np.inf, slack: float = 1.0) -> Peak:
     """Quasi-Newton ascent (BFGS), started from the outer product of the units' scores (Berndt et al. 1974).
 
     The stand-ins are carried from step to step, so most steps need two sweeps. Gives up, unconverged, once its slope
     promises to leave it below `hopeless_below`: a shape that far behind another has no weight, however well its
-    peak is found.
+    peak is found. `slack` times as much may still be to gain where it ends.
     """
+    loose = slack * crowd(problem)
     state = start(problem, theta)
     # First as if nothing went wrong with any unit: else a bad day may be taken for as many slips, and stay so.
-    settle(problem, without_mishaps(theta), state, 6, 0.1 * crowd(problem))
+    settle(problem, without_mishaps(theta), state, 6, 0.1 * loose)
     value, slope, outcome = log_posterior(problem, theta, state, 15)
     inverse = rough_covariance(problem, outcome)
     best = Step(theta, value, slope, outcome, deepcopy(state))
     shrink, converged = 1.0, False
     for count in range(MOST_STEPS):
         step = capped(inverse @ best.slope) * shrink
-        converged = bool(best.slope @ inverse @ best.slope < FLAT * crowd(problem))
+        converged = bool(best.slope @ inverse @ best.slope < FLAT * loose)
         hopeless = best.value + 10.0 * float(best.slope @ step) < hopeless_below
         if converged or (count >= LOOK and hopeless):
             break
         found = try_step(problem, best, step)
-        if found is None or found.value < best.value - NOISE * crowd(problem):
+        if found is None or found.value < best.value - NOISE * loose:
             best = try_step(problem, best, 0.0 * step, 12) or best
-        if found is None or found.value < best.value - NOISE * crowd(problem):
+        if found is None or found.value < best.value - NOISE * loose:
             shrink *= 0.35
             if shrink < 1e-3:
                 break
@@ -132,15 +133,17 @@ def updated(inverse: Floats, moved: Floats, turned: Floats) -> Floats:
 
 
 def rough_covariance(problem: Problem, outcome: Outcome) -> Floats:
+    """From the outer product of the scores, where scores tell: of what hardly ever happens they don't, and there the
+    information is what it would be with everything seen, the number of times that it happened (or ought to have)."""
     sd = prior_of(problem)[1]
     scores = outcome.unit_scores
     scores = scores - scores.sum(axis=0) / max(1, len(scores))
-    information = scores.T @ scores + np.diag(1.0 / sd**2)
+    information = scores.T @ scores
     information[2:5, 2:5] += outcome.day_information
-    for g in range(len(problem.layout.group_sds)):
-        slot = problem.layout.group_slots.start + g
-        information[slot, slot] += 0.5 * np.sum(problem.effects.variance_slot == g)
-    covariance = np.linalg.inv(information)
+    for slot, found in outcome.mishaps.items():
+        information[slot, slot] = max(information[slot, slot], found, found - outcome.score[slot])
+    information[problem.layout.group_slots, problem.layout.group_slots] += np.diag(outcome.group_information)
+    covariance = np.linalg.inv(information + np.diag(1.0 / sd**2))
     return 0.5 * (covariance + covariance.T)
 
 

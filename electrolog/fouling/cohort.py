@@ -27,10 +27,12 @@ from electrolog.fouling.young import settled_draws
 
 Floats = NDArray[np.float64]
 DRAWS = (32, 96)  # of the hyper-parameters, over all shapes: in a large cohort, in a young one
+ROUGH = 10.0  # how much less exactly a part is climbed: it tells shapes apart, and where to begin
 HOPELESS = 25.0  # nats behind the best shape: not climbed to its end
 CLOSE = 10.0  # nats behind the best shape: its evidence is worth a closer look
 PRIOR_ODDS = {"none": 0.1}  # against any other shape: a probe in use that doesn't foul at all is rare
-LARGE, PART = 2000, 300  # units of a large cohort, and of the part of it that tells shapes apart
+LARGE = 2000  # units of a large cohort
+PART, LARGER = 300, 5  # units of the part of it that tells shapes apart, and by how much each part outgrows the last
 YOUNG, YOUNG_DRAWS = 60, 32  # units of a young cohort; its draws of the hyper-parameters, each settled by itself
 LEAST_WEIGHT = 0.01  # a shape with less is named, but not drawn from
 
@@ -76,29 +78,40 @@ def weigh(fits: list[tuple[Problem, Peak, Width]]) -> Floats:
 def fit_shapes(events: Events, shapes: tuple[str, ...]) -> list[tuple[Problem, Peak, Width]]:
     """Every shape at its peak.
 
-    In a large cohort a part tells the shapes apart; those with weight there go on to all units from where they ended.
+    In a large cohort a part tells the shapes apart; those with weight there go on to ever larger parts, and at last to
+    all units, each time from where they ended: so near to the peak, a step or two suffice.
     """
-    if len(np.unique(events.unit[events.kind == READING])) <= LARGE:
+    n_units = len(np.unique(events.unit[events.kind == READING]))
+    if n_units <= LARGE:
         return fit_each(events, shapes)
-    part = take_units(events, neighbours_in_time(events, PART))
-    fits = fit_each(part, shapes, rough=True)
+    fits = fit_each(take_units(events, neighbours_in_time(events, PART)), shapes, rough=True)
+    size = PART * LARGER
+    while size * 2 < n_units:
+        fits = fit_further(take_units(events, neighbours_in_time(events, size)), fits, ROUGH)
+        size *= LARGER
+    return fit_further(events, fits)
+
+
+def fit_further(
+    events: Events, fits: list[tuple[Problem, Peak, Width]], slack: float = 1.0
+) -> list[tuple[Problem, Peak, Width]]:
     return [
-        fit_all_units(events, problem, peak) if weight >= LEAST_WEIGHT else (problem, peak, out_of_the_running(width))
+        fit_on(events, problem, peak, slack) if weight >= LEAST_WEIGHT else (problem, peak, out_of_the_running(width))
         for (problem, peak, width), weight in zip(fits, weigh(fits), strict=True)
     ]
 
 
 def out_of_the_running(width: Width) -> Width:
-    """A part's evidence is no match for that of all units."""
+    """A part's evidence is no match for that of more units."""
     return replace(width, log_evidence=-np.inf)
 
 
-def fit_all_units(events: Events, problem: Problem, peak: Peak) -> tuple[Problem, Peak, Width]:
-    """What the part has found is where all begin; with so many units the scores' outer product is the curvature."""
+def fit_on(events: Events, problem: Problem, peak: Peak, slack: float) -> tuple[Problem, Peak, Width]:
+    """What fewer units have found is where more begin; with so many the scores' outer product is the curvature."""
     whole = pose(events, problem.layout.shape.name)
     known = dict(zip((p.name for p in problem.layout.priors), peak.theta, strict=True))
     theta = np.array([known.get(prior.name, prior.mean) for prior in whole.layout.priors])
-    top = climb(whole, theta)
+    top = climb(whole, theta, slack=slack)
     return whole, top, rough_width(whole, top)
 
 
@@ -110,7 +123,7 @@ def fit_each(events: Events, shapes: tuple[str, ...], rough: bool = False) -> li
     for name in shapes:
         problem = pose(events, name)
         theta = np.array([known.get(prior.name, prior.mean) for prior in problem.layout.priors])
-        peak = climb(problem, theta, best - HOPELESS)
+        peak = climb(problem, theta, best - HOPELESS, ROUGH if rough else 1.0)
         if peak.log_posterior > best:
             best = peak.log_posterior
             known.update(zip((p.name for p in problem.layout.priors), peak.theta, strict=True))

@@ -69,7 +69,15 @@ class Outcome:
     unit_scores: Floats  # (units, P)
     bad_day: Floats
     day_information: Floats  # (3, 3) outer product of the days' scores in theta[2:5]
+    group_information: Floats  # (g,) in the log sds of groups
     units: list[UnitsSeen]
+
+    @property
+    def mishaps(self) -> dict[int, float]:
+        """Expected numbers of bad days, slips and damages, by the place of their odds in theta."""
+        slips = sum(float(seen.slipped.sum()) for seen in self.units)
+        damages = sum(float(seen.damaged.sum()) for seen in self.units)
+        return {4: float(self.bad_day.sum()), 5: slips, 6: damages}
 
 
 @dataclass(frozen=True)
@@ -122,9 +130,10 @@ def sweep(problem: Problem, scales: Scales, clock: Clock, state: State) -> Outco
     state.grids = grids
     by_days, day_scores, bad = sweep_days(problem.effects, scales, state)
     unit_scores = np.concatenate(all_scores) if all_scores else np.zeros((0, len(score)))
-    score += unit_scores.sum(axis=0) + group_scores(problem, scales, state)
+    score += unit_scores.sum(axis=0)
+    score[problem.layout.group_slots], of_groups = group_scores(problem, scales, state)
     score[2:5] += day_scores.sum(axis=0)
-    return Outcome(log_evidence + by_days, score, unit_scores, bad, day_scores.T @ day_scores, all_seen)
+    return Outcome(log_evidence + by_days, score, unit_scores, bad, day_scores.T @ day_scores, of_groups, all_seen)
 
 
 def units_seen(mixture: Mixture) -> UnitsSeen:
@@ -228,14 +237,17 @@ def sweep_days(effects: Effects, scales: Scales, state: State) -> tuple[float, F
     return float(np.sum(found.log_evidence - overlap)), found.score, found.bad
 
 
-def group_scores(problem: Problem, scales: Scales, state: State) -> Floats:
-    effects, layout = problem.effects, problem.layout
-    score = np.zeros(len(layout.priors))
-    second = state.mean[:-1] ** 2 + variances(state.covariance)
-    for g in range(len(layout.group_sds)):
-        mine = effects.variance_slot == g
-        score[layout.group_slots.start + g] = np.sum(second[mine] / scales.group_sds[g] ** 2 - 1.0)
-    return score
+def group_scores(problem: Problem, scales: Scales, state: State) -> tuple[Floats, Floats]:
+    """(g,) and their variances: a value with mean m and variance v has the score (m^2 + v) / sd^2 - 1, where m^2 is
+    expected to be sd^2 - v."""
+    slots = problem.effects.variance_slot
+    mean, variance = state.mean[:-1], variances(state.covariance)
+    score, information = np.zeros((2, len(problem.layout.group_sds)))
+    for g, sd in enumerate(scales.group_sds):
+        mine = slots == g
+        score[g] = np.sum((mean[mine] ** 2 + variance[mine]) / sd**2 - 1.0)
+        information[g] = 2.0 * np.sum((1.0 - variance[mine] / sd**2) ** 2)
+    return score, information
 
 
 def set_up(batch: Batch, scales: Scales, clock: Clock, mean: Floats, covariance: Floats) -> Setup:

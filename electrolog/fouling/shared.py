@@ -19,7 +19,7 @@ from electrolog.fouling.effects import Effects
 
 Floats = NDArray[np.float64]
 Integers = NDArray[np.int64]
-MOST_DENSE = 700
+MOST_DENSE = 400
 MOST_FEW = 60
 
 
