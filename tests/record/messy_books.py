@@ -225,6 +225,37 @@ def units_below(path: Path) -> None:
     _save(path, ("S", rows))
 
 
+def probes_across_by_concentration(path: Path) -> None:
+    def block(day: str, stage: str, *rows: list[Any]) -> list[list[Any]]:
+        return [["Date", day], ["Stage", stage], ["DA (µM)", "W-1", "W-2", "W-3"], *rows, []]
+
+    rows = [
+        ["Peak currents (nA)"],
+        *block("2023-05-02", "pre", [0.5, 5.0, 6.0, 4.0], [1.0, 10.1, 12.2, None], [2.0, 20.0, 24.5, 16.2]),
+        *block("2023-05-09", "post", [0.5, 4.0, None, 3.0], [1.0, 8.1, None, "<LOD"], [2.0, 16.0, None, 12.0]),
+    ]
+    _save(path, ("week 18", rows))
+
+
+def probes_across_by_day(path: Path) -> None:
+    rows = [
+        ["Slopes, nA/µM, flow cell"],
+        ["", "Electrode", None, None],
+        ["Day", "M01", "M02", "m03"],
+        ["3 May 22", 11.0, 9.5, None],
+        ["10 May 22", 8.8, "n/a", 12.0],
+        ["Mean", 9.9, 9.5, 12.0],
+    ]
+    book = _save(path, ("all", rows))
+    book["all"].merge_cells("B2:D2")
+    book.save(path)
+
+
+def days_across(path: Path) -> None:
+    rows = ["electrode;2024-01-08;2024-01-15;2024-01-22", "V1;12,5;10,1;9,7", "V2;11,0;;8,2"]
+    path.write_text("\n".join(rows), encoding="utf-8")
+
+
 USUAL = {"waveform": "triangle"}
 BOTH = {**USUAL, "analyte": "DA"}
 BOOKS = [
@@ -340,5 +371,42 @@ BOOKS = [
         BOTH,
         [("7", "2022-04-03", "pre", 10.0), ("8", "2022-04-04", "post", 11.0)],
         told=("S!C5", "S!C6"),
+    ),
+    MessyBook(
+        "matrix.xlsx",
+        probes_across_by_concentration,
+        {**USUAL, "probe_columns": "probes"},
+        [
+            ("W-1", "2023-05-02", "pre", [(0.5, 5.0), (1.0, 10.1), (2.0, 20.0)]),
+            ("W-2", "2023-05-02", "pre", [(0.5, 6.0), (1.0, 12.2), (2.0, 24.5)]),
+            ("W-3", "2023-05-02", "pre", [(0.5, 4.0), (2.0, 16.2)]),
+            ("W-1", "2023-05-09", "post", [(0.5, 4.0), (1.0, 8.1), (2.0, 16.0)]),
+            ("W-3", "2023-05-09", "post", [(0.5, 3.0), (2.0, 12.0)]),
+        ],
+        told=("week 18!D13",),
+    ),
+    MessyBook(
+        "slopes.xlsx",
+        probes_across_by_day,
+        {**BOTH, "stage": "interim", "unit_sensitivity": "nA/uM"},
+        [
+            ("M01", "2022-05-03", "interim", 11.0),
+            ("M01", "2022-05-10", "interim", 8.8),
+            ("M02", "2022-05-03", "interim", 9.5),
+            ("m03", "2022-05-10", "interim", 12.0),
+        ],
+        told=("all!A6", "all!C5"),
+    ),
+    MessyBook(
+        "days.csv",
+        days_across,
+        {**BOTH, "stage": "pre", "unit_sensitivity": "nA/uM"},
+        [
+            ("V1", "2024-01-08", "pre", 12.5),
+            ("V1", "2024-01-15", "pre", 10.1),
+            ("V1", "2024-01-22", "pre", 9.7),
+            ("V2", "2024-01-08", "pre", 11.0),
+            ("V2", "2024-01-22", "pre", 8.2),
+        ],
     ),
 ]

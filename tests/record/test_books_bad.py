@@ -370,3 +370,37 @@ def test_no_grid_of_cells_brings_the_reader_down(rows: list[list[Any]]) -> None:
     book = Book("any.xlsx", "0" * 64, (Grid("any", tidy([HEADS, GOOD, *rows])), Grid("more", tidy(rows))))
     out = Extraction(book, BookMapping(), known, UTC).run()
     assert [draft.values["electrode"] for draft in out.of("calibrations")][:1] == ["K-1"]
+
+
+# --- columns that may be probes ---------------------------------------------------------------------------------
+
+
+def grid_book(tmp_path: Path, *rows: str) -> Path:
+    path = tmp_path / "grid.csv"
+    path.write_text("\n".join(rows), encoding="utf-8")
+    return path
+
+
+@pytest.mark.parametrize("head", ["Date,weight,volume", "Date,0.5,1", "Date,X-1,X-1", "Date,gold standard,X-2"])
+def test_columns_that_look_like_no_probes_are_not_taken_for_them(lab: Lab, tmp_path: Path, head: str) -> None:
+    with pytest.raises(InputError, match="no table of calibrations or runs"):
+        lab.adopt(grid_book(tmp_path, head, "2024-03-04,301,2", "2024-03-05,305,2.5"))
+
+
+def test_columns_that_may_be_probes_are_asked_about_unless_the_record_knows_them(lab: Lab, tmp_path: Path) -> None:
+    path = grid_book(tmp_path, "Date,X-1,X-2", "2024-03-04,301,2", "2024-03-05,305,2.5")
+    asked = {one.key: one.why for one in lab.adopt(path).questions}
+    assert asked["probe_columns"] == "'X-1, X-2' at grid!B1"
+    with pytest.raises(InputError, match="no table of calibrations or runs"):
+        lab.adopt(path, answers={"probe_columns": "nothing"})
+    path.with_name("grid.adopt.toml").unlink()
+    lab.make_probes(["X-1", "X-2"])
+    assert "probe_columns" not in {one.key for one in lab.adopt(path).questions}
+
+
+def test_an_entry_of_a_probes_column_names_that_columns_cells(lab: Lab, tmp_path: Path) -> None:
+    path = grid_book(tmp_path, "Date,X-1,X-2", "2024-03-04,3,2", "2024-03-05,,2.5")
+    answers = {**ANSWERS, "probe_columns": "probes", "stage": "pre", "unit_sensitivity": "nA/uM"}
+    found = lab.adopt(path, answers=answers)
+    assert [row.place for row in found.rows if row.sheet == "calibrations"] == ["grid!B2", "grid!C2", "grid!C3"]
+    assert [one for one in found.remarks if one.kind != "doubtful"] == []

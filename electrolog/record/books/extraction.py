@@ -17,7 +17,7 @@ from electrolog.record.books.measured import Measured
 from electrolog.record.books.numbers import decimal_mark
 from electrolog.record.books.said import Said
 from electrolog.record.books.views import Found, View, views
-from electrolog.record.books.vocabulary import Vocabulary
+from electrolog.record.books.vocabulary import Vocabulary, alike
 from electrolog.record.columns import Value
 from electrolog.units import MINUTES
 
@@ -32,6 +32,7 @@ class Extraction:
         self.out = Extract()
         grids = [grid for grid in book.grids if grid.name not in mapping.skip]
         self.tables = [table for grid in grids for table in tables(grid, mapping.understand)]
+        self._ask_of_columns(vocabulary)
         many = len({table.grid.name for table in self.tables}) > 1
         self.said = Said(mapping, vocabulary, self.out, many)
         self.labels = Labels(self.tables, mapping, vocabulary, self.out)
@@ -56,9 +57,28 @@ class Extraction:
             )
         return self.out
 
+    def _ask_of_columns(self, vocabulary: Vocabulary) -> None:
+        """Whether columns are probes, where neither a heading nor the record says it."""
+        doubted = [
+            table
+            for table in self.tables
+            if table.matrix and not table.matrix.certain
+            if any(alike(label) not in vocabulary.probes for _, label in table.matrix.probes)
+        ]
+        answer = self.mapping.answered("probe_columns")
+        if answer == "nothing":
+            self.tables = [table for table in self.tables if table not in doubted]
+        elif doubted and answer != "probes":
+            first = doubted[0]
+            labels = ", ".join(label for _, label in (first.matrix.probes if first.matrix else ()))
+            why = f"'{shortened(labels)}' at {first.grid.place(first.header, first.headings[-1].column)}"
+            self.out.ask("probe_columns", "Is each of these columns one probe?", why, ("probes", "nothing"))
+
     def _take(self, view: View) -> None:
         stages = self.measured.stages(view)
         runs = view.first("duration")
+        if not stages and view.table.matrix is not None:
+            return  # this probe wasn't measured then
         if not stages and runs is None:
             said = " ".join(shown(one.value) for one in view.rows[0] if one.value is not None)
             self.out.say("left out", view.range, f"holds no measurement and no run: '{shortened(said)}'")

@@ -14,12 +14,12 @@ FIELDS: dict[str, tuple[Unit | None, str]] = {
     ),
     "sensitivity": (
         units.SENSITIVITY_NA_UM,
-        r"sens\w*\.?|slope|(cal(ib)?(ration)?\.? ?)?factor|cal\.? slope|conversion( factor)?",
+        r"sens\w*\.?|slopes?|(cal(ib)?(ration)?\.? ?)?factors?|cal\.? slopes?|conversion( factors?)?",
     ),
     "concentration": (units.CONCENTRATION_UM, r"conc\w*\.?|concentration|standard conc\w*|\[[^\]]+\]"),
     "current": (
         units.CURRENT_NA,
-        r"current|i ?(ox|p|peak|max)?|peak( current)?|response|signal|ox(idation)? current"
+        r"currents?|i ?(ox|p|peak|max)?|peak( currents?)?|responses?|signals?|ox(idation)? currents?"
         r"|(rep\w*|trial|inj\w*)\.? ?\d+",
     ),
     "duration": (

@@ -9,6 +9,7 @@ from functools import lru_cache
 from electrolog import units
 from electrolog.errors import InputError, unknown
 from electrolog.record.books.fields import FIELDS
+from electrolog.record.builtin import ANALYTES
 from electrolog.units import Unit
 
 _STAGES = {"pre": r"\b(pre|before|prior)(?=cal|\b)", "post": r"\b(post|after)(?=cal|\b)"}
@@ -16,6 +17,7 @@ _SIGN = r"[unmp]?[am]\s*(?:/|per)\s*[unmp]?[am]|[unp]a|[unmp]m|mv|v|min|hours|h|
 _UNIT = re.compile(rf"[\[(]\s*([^\[\]()]*)\s*[\])]\s*$|(?:,|\bin\b|;|:|(?<=\S))\s+({_SIGN})\s*$")
 _INVERSE = re.compile(r"[unmp]?m\s*(/|per)\s*[unpm]?a", re.IGNORECASE)
 _AMOUNT = re.compile(r"(?<![\w.,])(\d+(?:[.,]\d+)?)\s*([unmp]m)\b", re.IGNORECASE)
+_ANALYTES = {name.casefold() for analyte in ANALYTES for name in analyte[:2]}
 _FOLD = str.maketrans({"\u00b5": "u", "\u03bc": "u", "\u2212": "-", "\u00b0": "", "\u00b7": " "})
 
 
@@ -56,7 +58,7 @@ def meaning(heading: str) -> Meaning | None:
             ("current" if bare.endswith("a") and "/" not in bare else "sensitivity" if "/" in bare else bare),
             bare,
         )
-    found = _field(bare)
+    found = "concentration" if bare in _ANALYTES and _molar(sign) else _field(bare)  # "DA (µM)" is how much of it
     if found is None:
         return None
     stage = stage if found in ("sensitivity", "sensitivity_se", "current", "day", "noise") else ""

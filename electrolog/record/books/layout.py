@@ -9,6 +9,7 @@ from itertools import pairwise
 
 from electrolog.record.books.grid import Content, Grid, Spot
 from electrolog.record.books.headings import Meaning
+from electrolog.record.books.matrix import Matrix, matrix
 
 MEASURED = ("sensitivity", "current", "concentration", "duration")
 TOTALS = re.compile(
@@ -46,6 +47,7 @@ class Table:
     headings: tuple[Heading, ...]
     rows: tuple[int, ...]
     facts: tuple[Fact, ...]
+    matrix: Matrix | None = None  # of which this table is one probe's column
 
     @property
     def last_column(self) -> int:
@@ -57,6 +59,7 @@ class _Header:
     row: int
     below: int  # the first row that may hold data
     headings: tuple[Heading, ...]
+    matrix: Matrix | None = None
 
 
 def tables(grid: Grid, understand: Understand) -> list[Table]:
@@ -74,12 +77,37 @@ def _tables(grid: Grid, understand: Understand) -> list[Table]:
     start = 0
     for header, end in zip(headers, ends, strict=True):
         last = _data_end(grid, header, end, understand)
+        if header.matrix is not None:
+            found += _by_probe(grid, header, header.matrix, start, last, understand)
+            start = last
+            continue
         made = [_segment(grid, header, part, start, last, understand) for part in _segments(header, understand)]
         if found and len(made) == 1 and not made[0].facts and made[0].headings == found[-1].headings:
             made = [_joined(found.pop(), made[0])]  # only the headings again
         found += made
         start = last
     return found
+
+
+def _by_probe(
+    grid: Grid, header: _Header, found: Matrix, start: int, last: int, understand: Understand
+) -> Iterator[Table]:
+    """A table for each probe: the rows' keys, what is said beside them, and its own column."""
+    above = [fact for row in range(start, header.row) for fact in row_facts(grid, row, understand)]
+    kept = [h for h in header.headings if h.column in found.beside]
+    key = Heading(found.key, grid.text(header.row, found.key) if found.holds == "concentration" else "Date")
+    usual = "Current" if found.holds == "concentration" else "Sensitivity"
+    measured = _caption(grid, header.row, understand) or usual
+    rows = tuple(row for row in range(header.below, last) if grid.filled(row))
+    for column, label in found.probes:
+        probe = Fact("Probe", label, (header.row, column))
+        yield Table(grid, header.row, (key, *kept, Heading(column, measured)), rows, (*above, probe), found)
+
+
+def _caption(grid: Grid, end: int, understand: Understand) -> str:
+    """What the nearest cell above says that such tables hold."""
+    texts = (grid.own_text(row, column) for row in reversed(range(end)) for column in grid.filled(row))
+    return next((text for text in texts if (m := understand(text)) and m.field in MEASURED[:2] and m.unit), "")
 
 
 def _joined(first: Table, second: Table) -> Table:
@@ -125,15 +153,20 @@ def _headers(grid: Grid, understand: Understand) -> list[_Header]:
         if found and found[-1].below > row:
             continue  # the units of the row above
         headings = _headings(grid, row, understand)
+        across = None
         if not _is_header(grid, row, headings, understand):
-            continue
+            texts = {heading.column: grid.text(row, heading.column) for heading in headings}
+            above = [_group(grid, row, column, understand) for column in texts]
+            across = matrix(grid, row, texts, above, understand)
+            if across is None:
+                continue
         if found and found[-1].row == row - 1:  # the row above only grouped these
             found.pop()
         below = row + 1
         if _is_units_row(grid, below):
             headings = tuple(_with_unit_below(grid, below, heading) for heading in headings)
             below += 1
-        found.append(_Header(row, below, headings))
+        found.append(_Header(row, below, headings, across))
     return found
 
 
@@ -203,6 +236,7 @@ def _with_unit_below(grid: Grid, row: int, heading: Heading) -> Heading:
 def _data_end(grid: Grid, header: _Header, end: int, understand: Understand) -> int:
     """Where the rows of this table end and the labelled cells of the next one begin."""
     measured = {h.column for h in header.headings if (m := understand(h.text)) and m.field in MEASURED}
+    measured |= {column for column, _ in header.matrix.probes} if header.matrix else set()
     for row in range(header.below, end):
         numeric = any(isinstance(grid.at(row, column), float) for column in measured)
         if not numeric and any(row_facts(grid, row, understand)) and end < len(grid.rows):

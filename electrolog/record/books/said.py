@@ -18,7 +18,7 @@ _STAGES = (
     ("pre", r"pre\b.*|pre-?cal\w*|before.*|prior.*"),
     ("post", r"post\b.*|post-?cal\w*|after.*"),
 )
-_NAMED = re.compile(r"\[\s*([^\[\]]+?)\s*\]|^\s*([A-Za-z0-9-]{2,6})\s+\d")
+_NAMED = re.compile(r"\[\s*([^\[\]]+?)\s*\]|^\s*([A-Za-z0-9-]{2,6})\s+\d|^\s*(\w[\w ,-]*?)\s*[\[(,]?\s*[unmµμ]M\b")
 
 
 class Said:

@@ -58,6 +58,7 @@ class View:
         """`Sheet1!A4:H4`, the facts' own cells left aside."""
         first, last = self.numbers[0], self.numbers[-1]
         columns = sorted(one.spot[1] for row in self.rows for one in row) or [0]
+        columns = columns[-1:] if self.table.matrix else columns  # the cells between belong to other probes
         ends = [(first, columns[0]), (last, columns[-1])]
         turned = self.table.grid.turned
         names = [cell_name(*(reversed(spot) if turned else spot)) for spot in ends]
