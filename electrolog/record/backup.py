@@ -68,17 +68,16 @@ def _state(record: Record) -> tuple[int, str, str]:
 
 
 def _written(record: Record, folder: Path, identity: str) -> tuple[Path, Verification]:
-    at = utc_now().strftime("%Y%m%dT%H%M%SZ")
-    with copying.written_whole(folder / f"electrolog-{identity}-{at}.db") as part:
+    """Named at the very end: what it holds is known only once it is written and checked."""
+    stem = f"electrolog-{identity}-{utc_now().strftime('%Y%m%dT%H%M%SZ')}"
+    with copying.written_beside(folder / stem) as part:
         if record.is_file:
             copying.copy_file(Path(record.name), part)
         else:
             with record.reading() as connection:
                 copying.copy_rows(connection, connected(str(part)))
         found = checked(part)
-    plain = folder / f"electrolog-{identity}-{at}.db"
-    named = plain.with_name(f"{plain.stem}-{found.entries}-{found.head[:16]}.db")
-    return plain.replace(named), found
+        return copying.finish(part, folder / f"{stem}-{found.entries}-{found.head[:16]}.db"), found
 
 
 def _newest_of(folder: Path, identity: str, entries: int, head: str) -> Path | None:

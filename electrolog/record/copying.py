@@ -4,9 +4,11 @@ from __future__ import annotations
 
 import hashlib
 import os
+import shutil
 import sqlite3
+import time
 from collections.abc import Iterator
-from contextlib import closing, contextmanager
+from contextlib import closing, contextmanager, suppress
 from pathlib import Path
 
 from sqlalchemy import Connection, Table, select
@@ -18,7 +20,10 @@ from electrolog.record.store import Record
 from electrolog.record.translate import translated
 
 Fingerprint = dict[str, tuple[int, str]]
+LEFT_BEHIND_S = 6 * 3600.0
 _MANY = 5000
+_PART = ".electrolog-part"
+_BESIDE = ("", "-wal", "-shm", "-journal")
 
 
 def tables() -> list[Table]:
@@ -66,7 +71,11 @@ def refuse_unequal(source: Fingerprint, copy: Fingerprint, name: str) -> None:
 
 
 def copy_file(source: Path, target: Path) -> None:
-    """A file's every page, one state of it while others write, checked after writing; `target` may be in use."""
+    """A file's every page, one state of it while others write, checked after writing; `target` may be in use.
+
+    A new one may be read and written by whom its source may: a lab that closed its record closed its copies too.
+    """
+    make_as_closed(source, target)
     with (
         translated(str(source)),
         closing(sqlite3.connect(source, timeout=store.BUSY_TIMEOUT_MS / 1000)) as old,
@@ -77,17 +86,55 @@ def copy_file(source: Path, target: Path) -> None:
             raise RecordError(f"the copy {target} is not whole; {source} was left as it was")
 
 
+def make_as_closed(source: Path, target: Path) -> None:
+    """An empty file, if nothing is there yet, for those who may use `source` and nobody else."""
+    if target.exists():
+        return
+    try:
+        target.touch(mode=0o600)
+        shutil.copymode(source, target)
+    except OSError as why:
+        raise RecordError(f"{target} can't be written: {why.strerror}", "look whether its folder is there") from None
+
+
 @contextmanager
 def written_whole(target: Path) -> Iterator[Path]:
     """A place beside `target`; what was written there gets its name at the very end, or is gone."""
-    part = target.with_name(f".{target.name}.{os.getpid()}.part")
+    with written_beside(target) as part:
+        yield part
+        finish(part, target)
+
+
+@contextmanager
+def written_beside(target: Path) -> Iterator[Path]:
+    """A place beside `target` that is gone afterwards, unless finish() gave it its name.
+
+    What somebody who was killed left there is taken away by the next who writes.
+    """
+    _sweep(target.parent)
+    part = target.with_name(f".{target.name}.{os.getpid()}{_PART}")
     try:
         yield part
-        _make_single_file(part)
-        part.replace(target)
     finally:
-        for left in (part, *(part.with_name(part.name + end) for end in ("-wal", "-shm", "-journal"))):
-            left.unlink(missing_ok=True)
+        for end in _BESIDE:
+            part.with_name(part.name + end).unlink(missing_ok=True)
+
+
+def finish(part: Path, target: Path) -> Path:
+    _make_single_file(part)
+    return part.replace(target)
+
+
+def _sweep(folder: Path) -> None:
+    """Only what nobody has touched for long: another who writes there, on whatever machine, goes on."""
+    for left in folder.glob(f".*{_PART}*"):
+        with suppress(OSError):  # another swept it at the same time, or Windows has it open
+            if left.name.endswith(tuple(_PART + end for end in _BESIDE)) and _idle_s(left) > LEFT_BEHIND_S:
+                left.unlink()
+
+
+def _idle_s(path: Path) -> float:
+    return time.time() - path.stat().st_mtime
 
 
 def _make_single_file(path: Path) -> None:

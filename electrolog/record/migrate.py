@@ -63,21 +63,29 @@ def set_up(where: str) -> tuple[Record, str, str, Path | None]:
 
 
 def upgrade(record: Record) -> Path | None:
-    """Brings an older record up to date; returns the copy that was made first (SQLite)."""
+    """Brings an older record up to date; returns the copy that was made first (SQLite).
+
+    Raises RecordError, which names the copy; the record is then as it was, since a migration is one transaction.
+    """
     copy = copy_of_file(record) if record.is_file else None
-    to_revision(record, schema.REVISION)
+    try:
+        to_revision(record, schema.REVISION)
+    except RecordError as why:
+        hint = why.hint if copy is None else f"the record is as it was, and the copy from before is {copy}"
+        raise RecordError(f"the upgrade stopped: {why.message}", hint) from None
     return copy
 
 
 def copy_of_file(record: Record) -> Path:
     """A whole copy beside the file, named by the moment, checked after writing."""
-    from electrolog.record.copying import copy_file
+    from electrolog.record.copying import copy_file, written_whole
 
     source = Path(record.name)
     target = source.with_name(f"{source.name}.{utc_now().strftime('%Y%m%dT%H%M%S%f')}.copy")
     if shutil.disk_usage(source.parent).free < 2 * source.stat().st_size:
         raise RecordError(f"no room for a copy of {source} before its upgrade", "make room on that disk first")
-    copy_file(source, target)
+    with written_whole(target) as part:
+        copy_file(source, part)
     return target
 
 

@@ -44,6 +44,7 @@ def rescue(where: str, target: str) -> Rescued:
         raise RecordError(f"nothing of {source.name} can be saved ({stopped})", "restore a backup")
     store.make_folder(new)
     with copying.written_whole(Path(new.name)) as part:
+        copying.make_as_closed(Path(source.name), part)
         count = _write(store.connected(str(part)), entries)
     migrate.write_ahead(new)
     return Rescued(new.name, len(entries), entries[-1]["hash"], count, stopped)

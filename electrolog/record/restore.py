@@ -66,7 +66,7 @@ def move(source: Record, where: str) -> Moved:
     with source.writing(), source.reading() as connection:
         if _state(target) != EMPTY:
             raise RecordError(f"{target.name} holds a record already", "name an empty place")
-        _fill(connection, target)
+        _fill(source, connection, target)
         with target.reading() as copy:
             found, copied = verify(connection), verify(copy)
             rows = copying.fingerprint(copy)
@@ -174,11 +174,13 @@ def _put_in_place(target: Record, file: Path) -> None:
         migrate.write_ahead(target)
 
 
-def _fill(source: Connection, target: Record) -> None:
+def _fill(source: Record, rows: Connection, target: Record) -> None:
     if not target.is_file:
-        copying.copy_rows(source, target)
+        copying.copy_rows(rows, target)
         return
     store.make_folder(target)
     with copying.written_whole(Path(target.name)) as part:
-        copying.copy_rows(source, store.connected(str(part)))
+        if source.is_file:
+            copying.make_as_closed(Path(source.name), part)
+        copying.copy_rows(rows, store.connected(str(part)))
     migrate.write_ahead(target)

@@ -89,6 +89,7 @@ class Record:
         with translated(self.name), engine.begin() as connection:
             if not self.is_file:
                 # A lock of the table would need the right to change it, which nobody has who only adds to it.
+                connection.execute(text(f"SET LOCAL lock_timeout = {BUSY_TIMEOUT_MS}"))
                 connection.execute(text(f"SELECT pg_advisory_xact_lock({WRITING})"))
             yield connection
 
@@ -263,9 +264,15 @@ def revision_of(record: Record) -> str | None:
         tables = set(record.engine.dialect.get_table_names(connection))
         found = connection.execute(select(version.c.version_num)).scalar() if version.name in tables else None
         if schema.journal.name in tables and found is not None:
-            return str(found)
+            return None if _never_finished(connection) else str(found)
         _refuse_foreign(record, tables if found else tables - {version.name})
         return None
+
+
+def _never_finished(connection: Connection) -> bool:
+    """Tables and nothing in them: whoever made the record was interrupted before its first entry."""
+    words = schema.tables["analytes"].c.id
+    return journal.head(connection)[0] == 0 and connection.execute(select(words).limit(1)).first() is None
 
 
 def _refuse_foreign(record: Record, tables: set[str]) -> None:

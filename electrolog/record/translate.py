@@ -15,12 +15,14 @@ _CUT = (
     "the connection to {} was cut off",
     "an entry is there as a whole or not at all: look with `electrolog journal` before typing it again",
 )
+_IN_USE = ("{} is in use by another program for over a minute", "try again when it has finished")
 _LOCKS = ("the place of {} gives no working locks", "keep the record on this machine's own disk, or on a server")
 _DAMAGED = ("{} is damaged", "`electrolog rescue NEW` saves what can be saved; or `electrolog restore` a backup")
 _KNOWN = {
     "unable to open": ("{} can't be opened", "look whether the folder is there and may be written"),
     "readonly": ("{} may not be written", "ask who owns the file, or name another with --db"),
-    "is locked": ("{} is in use by another program for over a minute", "try again when it has finished"),
+    "is locked": _IN_USE,
+    "lock timeout": _IN_USE,
     "locking protocol": _LOCKS,
     "is full": _FULL,
     "No space left": _FULL,

@@ -11,7 +11,6 @@ output is there; the same command given again must leave the event exactly once.
 from __future__ import annotations
 
 import random
-import shutil
 import sys
 import tempfile
 import time

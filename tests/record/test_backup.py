@@ -7,6 +7,7 @@ import shutil
 import sqlite3
 import subprocess
 import sys
+import time
 from collections.abc import Callable
 from contextlib import closing
 from pathlib import Path
@@ -15,8 +16,8 @@ from typing import Any
 import pytest
 
 from electrolog.errors import InputError, RecordError, TamperedRecord
-from electrolog.lab import Lab, open_lab, restore
-from electrolog.record import copying
+from electrolog.lab import Lab, open_lab, rescue, restore
+from electrolog.record import copying, migrate
 
 Raw = Callable[..., list[Any]]
 
@@ -109,6 +110,35 @@ def test_a_place_that_cannot_be_written_is_said(lived_in: Lab, tmp_path: Path) -
     (tmp_path / "file").touch()
     with pytest.raises(RecordError, match="can't be made"):
         lived_in.back_up(tmp_path / "file")
+
+
+def test_what_a_killed_backup_left_is_swept_and_what_is_under_way_is_not(lived_in: Lab, tmp_path: Path) -> None:
+    kept = tmp_path / "kept"
+    kept.mkdir()
+    left = [kept / f".electrolog-1-2.4711.electrolog-part{end}" for end in ("", "-wal", "-journal")]
+    under_way, of_others = kept / ".electrolog-1-2.4712.electrolog-part", kept / ".editor.4711.part"
+    for path in (*left, under_way, of_others):
+        path.write_text("half", encoding="utf-8")
+    for path in (*left, of_others):
+        os.utime(path, (0, time.time() - copying.LEFT_BEHIND_S - 60))
+    done = lived_in.back_up(kept)
+    assert set(kept.iterdir()) == {under_way, of_others, done.path}
+
+
+@pytest.mark.skipif(os.name != "posix", reason="POSIX's file modes")
+@pytest.mark.parametrize("mode", [0o600, 0o640, 0o660])
+def test_a_copy_is_as_closed_as_the_record(lived_in: Lab, tmp_path: Path, mode: int) -> None:
+    if not lived_in.record.is_file:
+        pytest.skip("a server's own matter")
+    source = Path(lived_in.record.name)
+    source.chmod(mode)
+    kept = lived_in.back_up(tmp_path / "kept").path
+    lived_in.move(str(tmp_path / "moved.db"))
+    restore(str(tmp_path / "restored.db"), kept)
+    rescue(str(source), str(tmp_path / "rescued.db"))
+    copies = [kept, *(tmp_path / f"{name}.db" for name in ("moved", "restored", "rescued"))]
+    copies += [migrate.copy_of_file(lived_in.record)]
+    assert {path.name: oct(path.stat().st_mode & 0o777) for path in copies} == {path.name: oct(mode) for path in copies}
 
 
 # --- bringing back ---------------------------------------------------------------------------------------------

@@ -15,7 +15,8 @@ from sqlalchemy.exc import IntegrityError
 from electrolog.errors import RecordError
 from electrolog.lab import Lab, open_lab, set_up
 from electrolog.record import builtin, migrate, schema
-from electrolog.record.store import open_record
+from electrolog.record.store import connected, open_record
+from tests.faults import migrating
 
 Raw = Callable[..., list[Any]]
 
@@ -30,6 +31,18 @@ def test_a_record_is_made_once(blank: str) -> None:
     lab = open_lab(blank)
     assert len(lab.rows("analytes")) == len(builtin.ANALYTES)
     assert {entry.reason for entry in lab.journal()} == {builtin.REASON}
+    assert lab.verify().whole
+
+
+@pytest.mark.parametrize("door", ["setup", "create"])
+def test_a_record_whose_making_was_interrupted_is_made_to_the_end(blank: str, door: str) -> None:
+    migrate.make_tables(connected(blank))
+    with pytest.raises(RecordError, match="holds no record"):
+        open_lab(blank)
+    if door == "setup":
+        assert set_up(blank).what == "made"
+    lab = open_lab(blank, create=True)
+    assert len(lab.rows("analytes")) == len(builtin.ANALYTES)
     assert lab.verify().whole
 
 
@@ -123,3 +136,28 @@ def test_a_new_record_is_in_write_ahead_mode(blank: str) -> None:
     set_up(blank)
     with closing(sqlite3.connect(blank)) as connection:
         assert connection.execute("PRAGMA journal_mode").fetchone() == ("wal",)
+
+
+def test_a_migration_that_fails_leaves_the_record_and_names_the_copy(
+    lived_in: Lab, tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    where, before = lived_in.record.engine.url.render_as_string(False), lived_in.verify()
+    folder = migrating.folder_with(tmp_path, more="    op.execute('UPDATE nowhere SET it = 1')\n")
+    monkeypatch.setattr(migrate, "migrations_folder", lambda: folder)
+    monkeypatch.setattr(schema, "REVISION", "0002")
+    with pytest.raises(RecordError, match="the upgrade stopped") as refused:
+        set_up(where)
+    assert migrating.state(where) == ("0001", before)
+    if lived_in.record.is_file:
+        (copy,) = migrating.copies_of(lived_in.record)
+        assert str(copy) in refused.value.hint
+        assert migrating.state(str(copy)) == ("0001", before)
+
+
+def test_a_migration_killed_at_any_step_leaves_the_record_and_a_whole_copy(lived_in: Lab, tmp_path: Path) -> None:
+    """A few of the steps that tests/faults/migrating.py tries."""
+    where, before = lived_in.record.engine.url.render_as_string(False), lived_in.verify()
+    folder, out = migrating.folder_with(tmp_path), migrating.Outcome()
+    migrating.end_once(where, folder, "statement", 10, before, out)
+    assert (out.tried, out.as_it_was, out.broken) == (1, 1, [])
+    assert out.copies == (1 if lived_in.record.is_file else 0)

@@ -10,6 +10,7 @@ from contextlib import closing
 from pathlib import Path
 
 import pytest
+from sqlalchemy import create_engine
 
 from electrolog.errors import ElectrologError, InputError, RecordError
 from electrolog.lab import Lab, open_lab, set_up
@@ -140,19 +141,19 @@ def test_a_record_may_be_read_where_nothing_may_be_written(empty_file: Path, tmp
         lab.make_probes(["P1"])
 
 
-def test_a_record_in_use_is_waited_for_and_then_said_to_be(
-    empty_file: Path, tmp_path: Path, monkeypatch: pytest.MonkeyPatch
-) -> None:
+def test_a_record_in_use_is_waited_for_and_then_said_to_be(where: str, monkeypatch: pytest.MonkeyPatch) -> None:
+    """Whoever holds the lock may have gone home with the program open: nobody waits for ever."""
     monkeypatch.setattr(store, "BUSY_TIMEOUT_MS", 200)
-    path = tmp_path / "busy.db"
-    path.write_bytes(empty_file.read_bytes())
-    lab = open_lab(str(path))
-    with closing(sqlite3.connect(path)) as other:
-        other.execute("BEGIN IMMEDIATE")
+    lab = open_lab(where)
+    other = create_engine(lab.record.engine.url, isolation_level="AUTOCOMMIT")
+    with closing(other.connect()) as held:
+        file = lab.record.is_file
+        held.exec_driver_sql("BEGIN IMMEDIATE" if file else f"SELECT pg_advisory_lock({store.WRITING})")
         assert lab.rows("analytes")  # reading goes on
         with pytest.raises(RecordError, match="in use by another program"):
             lab.make_probes(["P1"])
-        other.rollback()
+        held.exec_driver_sql("ROLLBACK" if file else "SELECT pg_advisory_unlock_all()")
+    other.dispose()
     assert lab.make_probes(["P1"]) == ["P1"]
 
 
