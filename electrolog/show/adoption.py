@@ -38,6 +38,8 @@ def _shown(row: AdoptedRow) -> str:
         return (
             f"{shown_moment(values['start'])}, {shown_duration(values['duration_min'])}, {values.get('setting', '?')}"
         )
+    if row.sheet == "coatings":
+        return f"{shown_moment(values['at'])}, {values['material']}"
     return ", ".join(f"{name} {value}" for name, value in values.items() if name not in ("electrode", "batch"))
 
 

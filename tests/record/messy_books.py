@@ -262,7 +262,7 @@ BOOKS = [
     MessyBook(
         "factors.xlsx",
         factor_list,
-        {**BOTH, "struck": "take"},
+        {**BOTH, "struck": "take", "coated": "before"},
         [("K-01", "2023-03-04", "pre", 12.5), ("K-01", "2023-03-04", "post", 8.1), ("K-02", "2023-03-05", "pre", 9.1)],
         told=("Cals!D4", "Cals!D5", "Cals!D7", "Cals!G7", "Cals!A8:I8", "Cals!A9"),
     ),

@@ -30,8 +30,11 @@ def adopted(lab: Lab, path: Path, messy: MessyBook, *, commit: bool = False) -> 
     return lab.adopt(path, answers=messy.answers, commit=commit)
 
 
+HELD = ("batches", "electrodes", "coatings", "calibrations", "exposures")
+
+
 def held(lab: Lab) -> dict[str, int]:
-    return {sheet: len(lab.rows(sheet)) for sheet in ("batches", "electrodes", "calibrations", "exposures")}
+    return {sheet: len(lab.rows(sheet)) for sheet in HELD}
 
 
 def test_only_what_a_book_cannot_tell_is_asked(lab: Lab, book: tuple[Path, MessyBook]) -> None:
@@ -98,7 +101,7 @@ def test_every_row_keeps_its_cell_and_its_file(lab: Lab, book: tuple[Path, Messy
     reasons = [entry.reason for entry in lab.journal() if entry.reason != "built in"]
     assert len(reasons) == sum(held(lab).values())
     assert all(path.name in reason and fingerprint in reason and "!" in reason for reason in reasons)
-    notes = [row["note"] for sheet in ("calibrations", "exposures") for row in lab.rows(sheet)]
+    notes = [row["note"] for sheet in ("coatings", "calibrations", "exposures") for row in lab.rows(sheet)]
     assert all(f"from {path.name} " in note and fingerprint[:12] in note for note in notes)
 
 

@@ -29,6 +29,7 @@ ACCEPTED = {
     "decimal_mark": (".", ","),
     "sheet_name": ("probe", "subject", "nothing"),
     "blank_probe": ("above", "refuse"),
+    "coated": ("before", "note"),
     "probe_columns": ("probes", "nothing"),
     "struck": ("take", "leave"),
     **{f"unit_{field}": units_of(field) for field in NEEDED},

@@ -7,6 +7,7 @@ from datetime import datetime, timedelta, tzinfo
 
 from electrolog.clock import parse_iso, utc_now
 from electrolog.errors import InputError, shortened
+from electrolog.record.books.coatings import Coatings
 from electrolog.record.books.days import When, clock_time, date_order, order_in_heading, when
 from electrolog.record.books.drafts import Draft, Extract
 from electrolog.record.books.grid import Book, Content, shown
@@ -37,6 +38,7 @@ class Extraction:
         self.said = Said(mapping, vocabulary, self.out, many)
         self.labels = Labels(self.tables, mapping, vocabulary, self.out)
         self.measured = Measured(mapping, self.out, self._decimal_comma())
+        self.coatings = Coatings(mapping, vocabulary, self.out)
         self.order = self._date_order()
 
     def run(self) -> Extract:
@@ -49,6 +51,7 @@ class Extraction:
                 self.out.headings.setdefault(" ".join(fact.heading.split()), table.grid.place(*fact.spot))
             for view in views(table, self.mapping, self.out):
                 self._take(view)
+        self.out.drafts += self.coatings.drafts()
         if not self.tables:
             raise InputError(
                 f"{self.book.name}: no table of calibrations or runs was found; accepted: headings such as"
@@ -91,11 +94,23 @@ class Extraction:
         except InputError as why:
             self.out.say("refused", view.range, why.message)
             return
-        self.out.drafts += [
-            *self.labels.drafts(view, electrode, self.measured),
-            *made,
-            *([exposure] if exposure else []),
-        ]
+        entries = [*made, *([exposure] if exposure else [])]
+        self._coat(view, electrode, entries)
+        self.out.drafts += [*self.labels.drafts(view, electrode, self.measured), *entries]
+
+    def _coat(self, view: View, electrode: str, entries: list[Draft]) -> None:
+        """Its coating: as a row, or in the notes of the entries that named it."""
+        moments = [at for one in entries if isinstance(at := one.values.get("at", one.values.get("start")), datetime)]
+        if not moments:
+            return
+        kept = self.coatings.see(view, electrode, moments, self._note(view, []), self._day_of_coating)
+        for one in entries if kept else ():
+            one.values["note"] = f"{kept}; {one.values['note']}"
+
+    def _day_of_coating(self, found: Found) -> datetime:
+        said = when(found.value, self.order)
+        typed = said.time.isoformat() if said.time else self.mapping.times["coating"]
+        return parse_iso(f"{said.day}T{typed}", self.zone, "coated on")
 
     def _calibration(self, view: View, electrode: str, heading_stage: str, run: Draft | None, shared: bool) -> Draft:
         stage = heading_stage or self.said.stage(view)

@@ -39,6 +39,12 @@ FIELDS: dict[str, tuple[Unit | None, str]] = {
         r"(probe|electrode|elec\.?|cfe|cfm|cfme|microelectrode|e\.?)( ?(id|no\.?|#|nr\.?|name|number|label|code))?",
     ),
     "batch": (None, r"batch( ?(id|no\.?|#))?|lot"),
+    "coated": (None, r"coat(ed|ing) (on|date|day)|date (of )?coat(ed|ing)|(date|day) coated"),
+    "coating": (None, r"(polymer )?coat(ing|ed)?( material| type)?|film( material)?|membrane"),
+    "standard": (
+        None,
+        r"(da |dopamine )?(standard|std\.?)( ?(solution|id|no\.?|#|nr\.?|lot|label))?|stock( ?(solution|id|no\.?|#))?",
+    ),
     "day": (
         None,
         r"(cal(ib)?(ration)?\.? |test(ed)? |exp\w*\.? |rec\w*\.? )?(date|day)( of \w+)?|datum|when|measured( on)?",

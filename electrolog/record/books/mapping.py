@@ -12,7 +12,7 @@ from typing import Any
 from electrolog.errors import InputError, unknown
 from electrolog.record.books.headings import Meaning, checked, described, meaning
 
-TIMES = {"pre": "09:00", "interim": "12:00", "run": "12:00", "post": "18:00"}
+TIMES = {"pre": "09:00", "interim": "12:00", "run": "12:00", "post": "18:00", "coating": "08:00"}
 SECTIONS = ("answers", "times", "spellings", "words", "headings", "sheets")
 ENDING = ".adopt.toml"
 

@@ -12,7 +12,7 @@ from electrolog.record.books.headings import Meaning
 
 Understand = Callable[[str], Meaning | None]
 KEYS = ("concentration", "day", "electrode")  # "Probe" in the corner of a table whose rows are days
-BESIDE = ("day", "time", "stage", "analyte", "by", "rig", "medium", "temperature", "note", "derived")
+BESIDE = ("day", "time", "stage", "analyte", "by", "rig", "medium", "temperature", "standard", "note", "derived")
 _DAY = re.compile(r"\d{1,4}[./-]\d{1,2}[./-]\d{1,4}|\d{1,2}\.? \w{3,9}\.? '?\d{2,4}")
 _NUMERIC = re.compile(r"[~<>≈±+\-\s\d.,eE]*\d[~<>≈±+\-\s\d.,eE]*")
 _LOOK = re.compile(r"\d+")

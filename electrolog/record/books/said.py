@@ -9,6 +9,7 @@ from electrolog.errors import InputError, shortened, unknown
 from electrolog.record.books.drafts import Extract
 from electrolog.record.books.grid import shown
 from electrolog.record.books.mapping import BookMapping
+from electrolog.record.books.numbers import UNKNOWN
 from electrolog.record.books.views import Found, View
 from electrolog.record.books.vocabulary import Vocabulary
 from electrolog.record.columns import Value
@@ -101,6 +102,10 @@ class Said:
         if medium is not None:
             texts["medium"], said = self._medium(view, medium)
             kept += [said] if said else []
+        standard = view.first("standard")
+        if standard is not None:
+            texts["standard"], said = self._standard(view, standard)
+            kept += [said] if said else []
         kept += [f"{one.heading or 'beside'}: {shown(one.value)}" for one in view.cells("other")]
         kept += [f"{one.heading}: {shown(one.value)}" for one in view.cells("derived")]
         for field in ("noise", "background", "length", "diameter"):
@@ -117,6 +122,18 @@ class Said:
             said = f"'{text}' is no word of the list 'medium': kept in the note; under [words] it can be made one"
             self.out.say("doubtful", view.place(found), said)
         return word, "" if word == text else f"medium: {text}"
+
+    def _standard(self, view: View, found: Found) -> tuple[str | None, str]:
+        """A standard is linked where the record has it; what it was made of, no cell of a calibration tells."""
+        text = shown(found.value)
+        if text.casefold() in UNKNOWN:
+            return None, ""
+        label = self.vocabulary.standards.get(self.mapping.words.get(text, text).casefold())
+        if label is None:
+            why = f"'{shortened(text, 60)}' is no standard of the record: kept in the note"
+            how = "log it with `electrolog standard` and adopt the book again: the link is then filled in"
+            self.out.say("doubtful", view.place(found), f"{why}; {how}")
+        return label, "" if label == text else f"{found.heading}: {text}"
 
     def _word(self, kind: str, text: str, place: str, known: Mapping[str, str]) -> str:
         told = self.mapping.words.get(text, text)

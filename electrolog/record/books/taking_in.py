@@ -19,7 +19,7 @@ from electrolog.record.journal import Writer
 from electrolog.record.sheets import Sheet
 from electrolog.record.store import Record
 
-TAKEN = (sheets.BATCHES, sheets.ELECTRODES, sheets.CALIBRATIONS, sheets.EXPOSURES)
+TAKEN = (sheets.BATCHES, sheets.ELECTRODES, sheets.COATINGS, sheets.CALIBRATIONS, sheets.EXPOSURES)
 STATES = {"added": "new", "there": "there already", "filled": "filled in"}
 
 

@@ -4,7 +4,8 @@ from __future__ import annotations
 
 import re
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, field
+from datetime import datetime
 
 from sqlalchemy import Connection
 
@@ -22,6 +23,9 @@ class Vocabulary:
     media: Mapping[str, str]
     settings: Mapping[str, str]
     probes: Mapping[str, str]  # folded as `alike` does
+    coatings: Mapping[str, str] = field(default_factory=dict)  # materials
+    standards: Mapping[str, str] = field(default_factory=dict)
+    coated: Mapping[tuple[str, str], datetime] = field(default_factory=dict)  # probe and material: the first time
 
 
 def vocabulary(connection: Connection) -> Vocabulary:
@@ -37,7 +41,18 @@ def vocabulary(connection: Connection) -> Vocabulary:
         {word.casefold(): word for word in names.words("medium")},
         {word.casefold(): word for word in names.words("setting")},
         {alike(name): name for name, _ in names.everything("electrodes").values()},
+        {word.casefold(): word for word in names.words("coating material")},
+        {key: name for key, (name, _) in names.everything("standards").items()},
+        _coated(connection),
     )
+
+
+def _coated(connection: Connection) -> dict[tuple[str, str], datetime]:
+    first: dict[tuple[str, str], datetime] = {}
+    for row in rows(connection, sheets.COATINGS):
+        key = row["electrode"], row["material"]
+        first[key] = min(row["at"], first.get(key, row["at"]))
+    return first
 
 
 def alike(label: str) -> str:
