@@ -155,11 +155,11 @@ class Lab(Bringing, Measuring, Judging, Looking, Keeping):
 
         return fitted_cohort(self.record, analyte, fresh)
 
-    def backtest(self, analyte: str, *, cuts: int = 4) -> Backtest:
+    def backtest(self, analyte: str, *, cuts: int = 4, progress: Progress | None = None) -> Backtest:
         """How good forecasts of the lab's own later calibrations would have been, without a look ahead."""
         from electrolog.answers.backtesting import backtested
 
-        return backtested(self.record, analyte, cuts)
+        return backtested(self.record, analyte, cuts, progress)
 
     def convert(
         self,

@@ -146,6 +146,14 @@ def shown_number(value: float | None, digits: int = 3) -> str:
     return f"{value:.{digits - 1}e}"
 
 
+def shown_span(low: float, high: float, digits: int = 3) -> str:
+    """`11.98 to 12.03`: with as many digits as tell the two ends apart, since '12 to 12' would claim no error."""
+    for more in range(digits, digits + 4):
+        if low == high or shown_number(low, more) != shown_number(high, more):
+            break
+    return f"{shown_number(low, more)} to {shown_number(high, more)}"
+
+
 def shown_concentration(value_um: float | None, digits: int = 3) -> str:
     if value_um is None or math.isnan(value_um):
         return "?"

@@ -24,6 +24,7 @@ from electrolog.units import (
     TEMPERATURE_C,
     Unit,
     parse_quantity,
+    shown_span,
 )
 
 UNITS = {name: value for name, value in vars(units).items() if isinstance(value, Unit)}
@@ -196,3 +197,16 @@ def test_a_duration_is_shown_in_hours_and_minutes(minutes: float | None, shown: 
 )
 def test_a_share_is_never_rounded_to_a_certainty(share: float | None, shown: str) -> None:
     assert units.shown_percent(share) == shown
+
+
+@pytest.mark.parametrize(
+    ("low", "high", "said"),
+    [
+        (9.98, 10.83, "9.98 to 10.8"),
+        (11.978, 12.026, "11.98 to 12.03"),
+        (0.5, 0.5, "0.5 to 0.5"),
+        (2.0, math.inf, "2 to inf"),
+    ],
+)
+def test_a_spans_ends_are_told_apart(low: float, high: float, said: str) -> None:
+    assert shown_span(low, high) == said

@@ -9,6 +9,8 @@ from datetime import UTC, datetime
 import numpy as np
 
 from electrolog.answers import figures as made
+from electrolog.answers import kept_backtest
+from electrolog.answers.answer import Answer
 from electrolog.answers.fitting import whole_cohort
 from electrolog.answers.hindsight import Foresight, History, Target, before, past_of, targets_of
 from electrolog.errors import DataError, InputError
@@ -65,7 +67,7 @@ class Forecast:
 
 
 @dataclass(frozen=True)
-class Backtest:
+class Backtest(Answer):
     """methods: electrolog first, then its rivals, on the same readings. verdicts: None where no_verdicts says why."""
 
     analyte: str
@@ -89,10 +91,15 @@ class _Window:
     log_reference: backtest.Array
 
 
-def backtested(record: Record, analyte: str, cuts: int = CUTS) -> Backtest:
-    """Raises UnknownName; InputError for an impossible count of cuts; DataError where there is too little to test."""
+def backtested(
+    record: Record, analyte: str, cuts: int = CUTS, progress: Callable[[str, int], None] | None = None
+) -> Backtest:
+    """Kept for reports. Raises UnknownName; InputError for an impossible count of cuts; DataError where there is too
+    little to test.
+    """
     if not 1 <= cuts <= MOST_CUTS:
         raise InputError(f"cuts: {cuts} is out of range; accepted: 1 to {MOST_CUTS}")
+    state = kept_backtest.State.of(record, analyte)
     with record.reading() as connection:
         asked = whole_cohort(connection, analyte)
         limits = _limits(connection, asked.analyte)
@@ -100,8 +107,14 @@ def backtested(record: Record, analyte: str, cuts: int = CUTS) -> Backtest:
         probes, life = queries.probes(connection), queries.events(connection)
     history = History(asked.analyte, probes, life, made.all_figures(record, found))
     targets = targets_of(history.known())
-    windows = [_window(history, *window) for window in _windows(targets, cuts)]
-    return _scored(asked.analyte, windows, limits, len(targets))
+    windows = []
+    for cut, own in _windows(targets, cuts):
+        if progress is not None:
+            progress(f"calibrations forecast from {cut.date().isoformat()} on", len(own))
+        windows.append(_window(history, cut, own))
+    tested = _scored(asked.analyte, windows, limits, len(targets))
+    kept_backtest.keep(record, tested, state)
+    return tested
 
 
 def _limits(connection: Connection, analyte: str) -> Limits:

@@ -6,10 +6,8 @@ the cohort's fit is the same, nothing was corrected, and nothing more was logged
 
 from __future__ import annotations
 
-import hashlib
 import io
 import json
-import os
 import zipfile
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass, replace
@@ -19,7 +17,7 @@ from pathlib import Path
 import numpy as np
 from numpy.typing import NDArray
 
-from electrolog.answers import cards, fits
+from electrolog.answers import cache, cards, fits
 from electrolog.answers.asked import Asked, Floats, Run, ask
 from electrolog.answers.cards import Card, card_of
 from electrolog.answers.cohorts import REFERENCE_SETTING
@@ -85,7 +83,7 @@ def board(record: Record, labels: Sequence[str] | None, run: Run, moment: dateti
     fit = fits.fit_for(record, assay)
     if labels is not None or len(wanted) < LARGE:
         return Board(assay, setting, fit, *_fresh(record, wanted, run, moment, ALL_DRAWS), ALL_DRAWS, moment)
-    path = _path(record, assay)
+    path = cache.path_of(record, "shelf.npz", assay.analyte, assay.waveform)
     stamp = f"{VERSION} {fit.method} {fit.fingerprint} {correction}"
     kept = _read(path, stamp)
     good = {label: None for label in wanted if _holds(kept, label, seen[label], moment)}
@@ -133,22 +131,6 @@ def _together(kept: _Kept | None, good: Sequence[str], made: Arrays) -> Arrays:
     return {name: np.concatenate([values, made[name]]) for name, values in found.items()} if made else found
 
 
-def _path(record: Record, assay: Assay) -> Path:
-    where = str(Path(record.name).resolve()) if record.is_file else record.name
-    name = hashlib.sha256(f"{where}\n{assay.analyte}\n{assay.waveform}".encode()).hexdigest()[:24]
-    return _folder() / f"shelf-{name}.npz"
-
-
-def _folder() -> Path:
-    """ELECTROLOG_CACHE, or where this platform keeps what may be thrown away."""
-    named = os.environ.get("ELECTROLOG_CACHE")
-    if named:
-        return Path(named)
-    import platformdirs
-
-    return platformdirs.user_cache_path("electrolog", appauthor=False)
-
-
 def _read(path: Path, stamp: str) -> _Kept | None:
     """None where there is nothing, or nothing that can be read: it is made again then."""
     try:
@@ -176,10 +158,4 @@ def _write(path: Path, stamp: str, seen: dict[str, str], found: Board) -> None:
     arrays |= {name: values[lasting] for name, values in found.arrays.items()}
     packed_file = io.BytesIO()
     np.savez(packed_file, **arrays)  # type: ignore[arg-type]
-    try:
-        path.parent.mkdir(parents=True, exist_ok=True)
-        waiting = path.with_suffix(f".{os.getpid()}")
-        waiting.write_bytes(packed_file.getvalue())
-        waiting.replace(path)  # at once: another rig may be reading it
-    except OSError:
-        return  # a cache that can't be written costs time, not the answer
+    cache.write(path, packed_file.getvalue())

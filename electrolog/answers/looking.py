@@ -13,7 +13,9 @@ if TYPE_CHECKING:
     from electrolog.answers.course import Ahead, Course
     from electrolog.answers.fan import Fan
     from electrolog.answers.kinds import By
-    from electrolog.answers.report import LabSheet, Origin, Planned, ProbeSheet
+    from electrolog.answers.plan import PlanRow
+    from electrolog.answers.report import LabSheet, Origin, Planned, ProbeSheet, Progress
+    from electrolog.answers.report_week import WeekSheet
     from electrolog.fouling.typical import TypicalLoss
     from electrolog.judge.compare import Groups
 
@@ -71,8 +73,27 @@ class Looking:
 
         return probe_sheets(self.record, labels, planned, moment)
 
-    def lab_sheet(self, planned: Planned | None = None, moment: datetime | None = None) -> LabSheet:
-        """All that a report tells of the lab; with a planned run, every verdict for it and how many probes to make."""
+    def lab_sheet(
+        self,
+        planned: Planned | None = None,
+        moment: datetime | None = None,
+        *,
+        backtest: bool = False,
+        progress: Progress | None = None,
+    ) -> LabSheet:
+        """All that a report tells of the lab; with a planned run, every verdict for it and how many probes to make.
+
+        backtest: forecast the lab's own past anew, which takes minutes, in place of telling the kept result.
+        """
         from electrolog.answers.report import lab_sheet
 
-        return lab_sheet(self.record, planned, moment)
+        return lab_sheet(self.record, planned, moment, backtest=backtest, progress=progress)
+
+    def week_sheet(self, plan: Sequence[PlanRow], moment: datetime | None = None) -> tuple[WeekSheet, list[ProbeSheet]]:
+        """Which probe serves which planned run, and all that a report tells of those probes."""
+        from electrolog.answers.report_week import sheets_of_week, week_sheet
+        from electrolog.clock import utc_now
+
+        moment = moment or utc_now()
+        week = week_sheet(self.record, plan, moment)
+        return week, sheets_of_week(self.record, week, plan, moment)

@@ -2,18 +2,21 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
 from datetime import date, datetime
 
-from electrolog.answers import fits
+from electrolog.answers import fits, kept_backtest
 from electrolog.answers import life as lives
+from electrolog.answers.answer import Answer
 from electrolog.answers.asked import Run
+from electrolog.answers.backtesting import backtested
 from electrolog.answers.checking import Checked, Demands, check
 from electrolog.answers.comparing import told, usable
 from electrolog.answers.course import Ahead, Course, courses
 from electrolog.answers.fan import typical_losses
 from electrolog.answers.fitting import FittedCohort, fitted_cohort
+from electrolog.answers.kept_backtest import KeptBacktest
 from electrolog.answers.outlook import Outlook, outlook
 from electrolog.answers.ranking import Ranked, ranking
 from electrolog.answers.shelf import Filter, Shelved, shelf
@@ -29,11 +32,11 @@ from electrolog.record.queries import Event
 from electrolog.record.readable import Row, rows
 from electrolog.record.store import Record
 
-MOST_FOR_OUTLOOK = 100
+Progress = Callable[[str, int], None]  # what is under way, and how much of it
 
 
 @dataclass(frozen=True)
-class Origin:
+class Origin(Answer):
     """Who made a report, when, from which state of the record (its journal's newest entry), by which methods."""
 
     made_by: str
@@ -54,8 +57,11 @@ class Planned:
 
 
 @dataclass(frozen=True)
-class ProbeSheet:
-    """One probe. void: per calibration that is the newest of its kind, what has happened since that it can't know."""
+class ProbeSheet(Answer):
+    """One probe. void: per calibration that is the newest of its kind, what has happened since that it can't know.
+
+    planned: the run that the verdict is for.
+    """
 
     probe: Row
     life: tuple[Event, ...]
@@ -64,6 +70,7 @@ class ProbeSheet:
     void: dict[str, tuple[str, ...]]
     corrections: tuple[Entry, ...]
     verdict: Checked | None
+    planned: Planned | None = None
 
 
 @dataclass(frozen=True)
@@ -88,8 +95,10 @@ class CohortSheet:
 
 
 @dataclass(frozen=True)
-class LabSheet:
-    """cohorts: of the analytes whose fit is at hand; `without_fit` names the others."""
+class LabSheet(Answer):
+    """cohorts: of the analytes whose fit is at hand; `without_fit` names the others. tested: the kept backtests;
+    `untested`: per other analyte, why there is none.
+    """
 
     shelf: tuple[Shelved, ...]
     batches: tuple[BatchSheet, ...]
@@ -98,6 +107,8 @@ class LabSheet:
     verdicts: tuple[Ranked, ...]
     outlook: Outlook | None
     no_outlook: str
+    tested: tuple[KeptBacktest, ...] = ()
+    untested: tuple[tuple[str, str], ...] = ()
 
 
 def origin(record: Record, moment: datetime | None = None) -> Origin:
@@ -136,6 +147,7 @@ def probe_sheets(
             void=_void(life.get(label, []), moment),
             corrections=tuple(corrected[label]),
             verdict=verdicts.get(label),
+            planned=planned,
         )
         for label in labels
     ]
@@ -146,30 +158,42 @@ def _void(life: list[Event], moment: datetime) -> dict[str, tuple[str, ...]]:
     return {one.row["calibration"]: tuple(lives.voided_by(life, one, moment)) for one in newest.values()}
 
 
-def lab_sheet(record: Record, planned: Planned | None = None, moment: datetime | None = None) -> LabSheet:
-    """No cohort is fitted for it, unless a run is to be judged: a report must not take minutes unasked."""
-    moment = moment or utc_now()
+def lab_sheet(
+    record: Record,
+    planned: Planned | None = None,
+    moment: datetime | None = None,
+    *,
+    backtest: bool = False,
+    progress: Progress | None = None,
+) -> LabSheet:
+    """No cohort is fitted for it, unless a run is to be judged, and none is backtested, unless that is asked for: a
+    report must not take minutes unasked.
+    """
+    moment, tell = moment or utc_now(), progress or (lambda what, done: None)
     everything = shelf(record, Filter(state="all"), moment)
     with record.reading() as connection:
         probes, life = queries.probes(connection), queries.events(connection)
         batches = rows(connection, sheets.BATCHES, order=("batch",))
     verdicts: tuple[Ranked, ...] = ()
-    expected, no_outlook = None, "no run was named: --analyte, --waveform, --setting and --run ask for one"
+    expected, no_outlook = None, "that is told for one kind of run: --analyte, --waveform, --setting and --run name it"
     if planned is not None:
+        tell("judging the probes", 0)
         verdicts = ranking(record, None, planned.run, planned.demands, moment).probes
-        expected, no_outlook = _outlook(record, planned, len(verdicts), moment)
-    used = dict.fromkeys(one.analyte for one in everything if one.analyte is not None)
+        tell("looking ahead for probes", len(verdicts))
+        expected, no_outlook = _outlook(record, planned, moment)
+    used = list(dict.fromkeys(one.analyte for one in everything if one.analyte is not None))
     at_hand = [name for name in used if fits.is_kept(record, name)]
+    tested, untested = _backtests(record, used, tell if backtest else None)
     return LabSheet(
         shelf=tuple(everything),
         batches=tuple(_batch(row, probes, life) for row in batches),
-        cohorts=tuple(
-            CohortSheet(name, fitted_cohort(record, name), tuple(typical_losses(record, name))) for name in at_hand
-        ),
+        cohorts=tuple(_cohort(record, name) for name in at_hand),
         without_fit=tuple(name for name in used if name not in at_hand),
         verdicts=verdicts,
         outlook=expected,
         no_outlook=no_outlook,
+        tested=tested,
+        untested=untested,
     )
 
 
@@ -177,13 +201,27 @@ def _cohort(record: Record, analyte: str) -> CohortSheet:
     return CohortSheet(analyte, fitted_cohort(record, analyte), tuple(typical_losses(record, analyte)))
 
 
-def _outlook(record: Record, planned: Planned, probes: int, moment: datetime) -> tuple[Outlook | None, str]:
-    if probes > MOST_FOR_OUTLOOK:
-        return None, f"with {probes} probes that takes a while: `electrolog outlook` tells it"
+def _outlook(record: Record, planned: Planned, moment: datetime) -> tuple[Outlook | None, str]:
     try:
         return outlook(record, None, planned.run, planned.demands, moment=moment), ""
     except DataError as error:
         return None, error.message
+
+
+def _backtests(
+    record: Record, analytes: Sequence[str], progress: Progress | None
+) -> tuple[tuple[KeptBacktest, ...], tuple[tuple[str, str], ...]]:
+    """The kept ones; with `progress` they are made anew, and it is told of it."""
+    why: dict[str, str] = {}
+    for analyte in analytes if progress is not None else ():
+        try:
+            backtested(record, analyte, progress=progress)
+        except DataError as error:
+            why[analyte] = error.message
+    found = {name: kept_backtest.kept(record, name) for name in analytes}
+    tested = tuple(one for one in found.values() if one is not None)
+    untested = tuple((name, why.get(name, kept_backtest.NONE_MADE)) for name, one in found.items() if one is None)
+    return tested, untested
 
 
 def _batch(row: Row, probes: Sequence[Row], life: Mapping[str, list[Event]]) -> BatchSheet:

@@ -32,14 +32,19 @@ def command(
 
     electrolog adopt factors.csv --answer waveform=triangle --answer analyte=DA --commit
     """
+    from electrolog.show.progress import working
+
     lab = lab_of(ctx, create=True)
     answers = dict(map(_split, answer or ()))
-    found = lab.adopt(book, mapping_file=mapping, answers=answers)
+    with working("reading the book"):
+        found = lab.adopt(book, mapping_file=mapping, answers=answers)
     while (asked := _next_question(found, answers)) and sys.stdin.isatty() and sys.stderr.isatty():
         answers[asked.key] = _answer(asked)
-        found = lab.adopt(book, mapping_file=mapping, answers=answers)
+        with working("reading the book again"):
+            found = lab.adopt(book, mapping_file=mapping, answers=answers)
     if commit:
-        found = lab.adopt(book, mapping_file=mapping, answers=answers, commit=True)
+        with working("taking it in"):
+            found = lab.adopt(book, mapping_file=mapping, answers=answers, commit=True)
     from electrolog.show import adoption
 
     adoption.answer(found, json)

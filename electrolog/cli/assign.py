@@ -41,6 +41,7 @@ def command(
     from electrolog.answers.plan import plan_of, read_plan
     from electrolog.answers.plan import typed as read_typed
     from electrolog.show import assignment
+    from electrolog.show.progress import working
     from electrolog.units import MINUTES, parse_quantity
 
     if (plan is None) == (not typed):
@@ -52,4 +53,6 @@ def command(
         shared = {"analyte": analyte, "waveform": waveform, "setting": setting, "needs": needs, "project": project}
         rows = plan_of(((text, {**shared, **read_typed(text)}) for text in typed or []), lab.zone)
     turnaround = parse_quantity(gap, MINUTES, "gap")
-    assignment.answer(lab.assign(rows, turnaround_min=turnaround, moment=lab.moment(at)), lab.zone, json, csv)
+    with working("giving runs to probes"):
+        found = lab.assign(rows, turnaround_min=turnaround, moment=lab.moment(at))
+    assignment.answer(found, lab.zone, json, csv)

@@ -26,8 +26,8 @@ def command(
     from electrolog.show import backtests
     from electrolog.show.progress import working
 
-    with working("forecasting the lab's own past"):
-        found = lab_of(ctx).backtest(analyte, cuts=cuts)
+    with working("forecasting the lab's own past") as tell:
+        found = lab_of(ctx).backtest(analyte, cuts=cuts, progress=tell)
     if figure is not None:
         from electrolog.show.backtest_figure import draw
 

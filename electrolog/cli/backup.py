@@ -20,8 +20,10 @@ def command(
     electrolog backup backups --keep 30
     """
     from electrolog.show import keeping
+    from electrolog.show.progress import working
 
-    done = lab_of(ctx).back_up(folder, keep)
+    with working("writing and checking a backup"):
+        done = lab_of(ctx).back_up(folder, keep)
     keeping.answer_backup(done, json)
     if done.faults:
         raise typer.Exit(1)

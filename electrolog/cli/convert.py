@@ -32,6 +32,7 @@ def command(
     electrolog convert R0017.csv --probe B07-01 --analyte dopamine --exposure 17
     """
     from electrolog.show import conversions
+    from electrolog.show.progress import working
 
     lab = lab_of(ctx)
     labels = lab.labels([probe])
@@ -39,16 +40,17 @@ def command(
         raise InputError(f"probe: '{shortened(probe)}' names {len(labels)} probes; accepted: the one that recorded it")
     label = labels[0]
     result, account = conversions.targets(file, out)
-    found = lab.convert(
-        file,
-        label,
-        analyte,
-        waveform or lab.usual_waveform(label, analyte),
-        exposure=exposure,
-        start=None if start is None else lab.moment(start),
-        rate_hz=rate,
-        background_na=None if background is None else pair_of(background),
-    )
+    with working("converting the recording"):
+        found = lab.convert(
+            file,
+            label,
+            analyte,
+            waveform or lab.usual_waveform(label, analyte),
+            exposure=exposure,
+            start=None if start is None else lab.moment(start),
+            rate_hz=rate,
+            background_na=None if background is None else pair_of(background),
+        )
     conversions.write(found, result, account)
     conversions.answer(found, result, account, json)
 

@@ -23,7 +23,9 @@ def command(
     electrolog diagnose B07-01 --analyte dopamine
     """
     from electrolog.show import diagnosis
+    from electrolog.show.progress import working
 
     lab = lab_of(ctx)
-    found = lab.diagnose(label, analyte, waveform, first=first, moment=lab.moment(at))
+    with working("looking for causes"):
+        found = lab.diagnose(label, analyte, waveform, first=first, moment=lab.moment(at))
     diagnosis.answer(found, lab.zone, json)

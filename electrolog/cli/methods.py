@@ -23,5 +23,8 @@ def command(
     electrolog methods B07-01..B07-03 --analyte dopamine
     """
     from electrolog.show import methods
+    from electrolog.show.progress import working
 
-    methods.answer(lab_of(ctx).methods(labels or (), analyte, waveform), json, csv)
+    with working("gathering what was done"):
+        found = lab_of(ctx).methods(labels or (), analyte, waveform)
+    methods.answer(found, json, csv)

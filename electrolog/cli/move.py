@@ -18,5 +18,8 @@ def command(
     electrolog --db lab.db move shared.db
     """
     from electrolog.show import keeping
+    from electrolog.show.progress import working
 
-    keeping.answer_moved(lab_of(ctx).move(where), json)
+    with working("copying the record"):
+        done = lab_of(ctx).move(where)
+    keeping.answer_moved(done, json)

@@ -12,5 +12,8 @@ def command(ctx: typer.Context, json: Json = False, csv: Csv = False) -> None:
     electrolog recompute
     """
     from electrolog.show import corrections
+    from electrolog.show.progress import working
 
-    corrections.answer_recomputed(lab_of(ctx).recompute(), json, csv)
+    with working("making every calibration's figures again"):
+        changed = lab_of(ctx).recompute()
+    corrections.answer_recomputed(changed, json, csv)

@@ -18,5 +18,8 @@ def command(
     """
     from electrolog.lab import rescue
     from electrolog.show import keeping
+    from electrolog.show.progress import working
 
-    keeping.answer_rescued(rescue(ctx.obj.db, new), json)
+    with working("saving what the journal proves"):
+        done = rescue(ctx.obj.db, new)
+    keeping.answer_rescued(done, json)

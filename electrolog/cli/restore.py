@@ -22,5 +22,8 @@ def command(
     """
     from electrolog.lab import restore
     from electrolog.show import keeping
+    from electrolog.show.progress import working
 
-    keeping.answer_restored(restore(ctx.obj.db, file, replace=replace), json)
+    with working("putting the backup back"):
+        done = restore(ctx.obj.db, file, replace=replace)
+    keeping.answer_restored(done, json)

@@ -62,6 +62,7 @@ def command(
     from electrolog.answers.signals import from_scans
     from electrolog.measure.scans import ScanSettings
     from electrolog.measure.trace import TraceSettings
+    from electrolog.show.progress import working
 
     typed, spans = shared.concentrations_of(concentrations, injections)
     settings = ScanSettings(
@@ -74,7 +75,8 @@ def command(
     )
     lab = lab_of(ctx)
     sweep = lab.sweep(probe, analyte, waveform)
-    recorded = from_scans(file, typed, settings, sweep=sweep, left_out=leave_out or ())
+    with working("reading the sheet of scans"):
+        recorded = from_scans(file, typed, settings, sweep=sweep, left_out=leave_out or ())
     values = {
         "electrode": probe,
         "stage": stage,

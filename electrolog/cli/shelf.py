@@ -42,6 +42,7 @@ def command(
     electrolog shelf --analyte dopamine --waveform triangle --setting in-vivo --run 2h
     """
     from electrolog.answers.shelf import Filter
+    from electrolog.show.progress import working
 
     lab = lab_of(ctx)
     moment = lab.moment(at)
@@ -53,12 +54,16 @@ def command(
         from electrolog.show import shelf
         from electrolog.show.terminal import drawing
 
-        shelf.answer(lab.shelf(wanted, moment), json, csv, drawing(chart, plain))
+        with working("looking through the shelf"):
+            found = lab.shelf(wanted, moment)
+        shelf.answer(found, json, csv, drawing(chart, plain))
         return
     from electrolog.show import ranking
 
-    labels = None if wanted == Filter() else [probe.electrode for probe in lab.shelf(wanted, moment)]
-    ranking.answer(lab.ranking(planned, labels, **asking(needs, project, limit), moment=moment), planned, json, csv)
+    with working("judging the probes"):
+        labels = None if wanted == Filter() else [probe.electrode for probe in lab.shelf(wanted, moment)]
+        ranked = lab.ranking(planned, labels, **asking(needs, project, limit), moment=moment)
+    ranking.answer(ranked, planned, json, csv)
 
 
 def _planned(analyte: str | None, waveform: str | None, setting: str | None, run: str | None) -> Run | None:

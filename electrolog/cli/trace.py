@@ -53,10 +53,12 @@ def command(
     """
     from electrolog.answers.signals import from_trace
     from electrolog.measure.trace import TraceSettings
+    from electrolog.show.progress import working
 
     typed, spans = shared.concentrations_of(concentrations, injections)
     settings = TraceSettings(spans, baseline, shared.part(plateau, "plateau"), edge, negative)
-    recorded = from_trace(file, typed, settings, rate_hz=rate, left_out=leave_out or ())
+    with working("reading the recording"):
+        recorded = from_trace(file, typed, settings, rate_hz=rate, left_out=leave_out or ())
     values = {
         "electrode": probe,
         "stage": stage,

@@ -21,8 +21,10 @@ def command(
     electrolog verify
     """
     from electrolog.show import journal
+    from electrolog.show.progress import working
 
-    found = lab_of(ctx).verify(head)
+    with working("replaying the journal"):
+        found = lab_of(ctx).verify(head)
     journal.answer_verification(found, json)
     if not found.whole:
         raise typer.Exit(1)

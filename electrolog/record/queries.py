@@ -12,7 +12,7 @@ from typing import Any
 from sqlalchemy import Connection, Select, delete, func, insert, or_, select
 
 from electrolog.record import schema, sheets
-from electrolog.record.journal import Writer
+from electrolog.record.journal import FIRST_HASH, Writer
 from electrolog.record.readable import Row, readable, rows
 from electrolog.record.sheets import EVENTS, Sheet
 
@@ -201,6 +201,13 @@ def to_be_seen(connection: Connection, analyte_id: int) -> Seen:
     readings = select(func.count()).where(calibrations.c.analyte_id == analyte_id, calibrations.c.struck.is_(None))
     newest = select(func.max(journal.c.seq)).where(schema.CORRECTIONS)
     return Seen(connection.execute(readings).scalar_one(), connection.execute(newest).scalar() or 0)
+
+
+def grew_from(connection: Connection, seq: int, head: str) -> bool:
+    """Whether the record was once in that state, so that what was said of it then was said of this one."""
+    table = schema.journal
+    found = connection.execute(select(table.c.hash).where(table.c.seq == seq)).scalar()
+    return head == (FIRST_HASH if seq == 0 else found)
 
 
 def kept_fit(connection: Connection, analyte_id: int) -> KeptFit | None:

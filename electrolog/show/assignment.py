@@ -12,7 +12,7 @@ from electrolog.show.machine import plain, print_csv, print_json
 from electrolog.show.tables import print_lines, print_table
 from electrolog.units import shown_duration
 
-_COLUMNS = ("run", "start", "length", "analyte", "waveform", "setting", "probe", "odds of success", "used before")
+COLUMNS = ("run", "start", "length", "analyte", "waveform", "setting", "probe", "odds of success", "used before")
 _LEAST = ("used before", "waveform", "analyte", "setting", "length")
 
 
@@ -23,11 +23,11 @@ def answer(found: Assignment, zone: tzinfo | None, json: bool, csv: bool) -> Non
         print_csv([plain(run) for run in found.runs])
     else:
         by_time = sorted(found.runs, key=lambda run: (run.start, run.label))
-        print_table(_COLUMNS, [_row(run, zone) for run in by_time], ("length", "odds of success"), _LEAST)
-        print_lines(*_said(found), *[f"! {note}" for note in found.notes], CAUTION)
+        print_table(COLUMNS, [row(run, zone) for run in by_time], ("length", "odds of success"), _LEAST)
+        print_lines(*said_of(found), *[f"! {note}" for note in found.notes], CAUTION)
 
 
-def _row(run: Placed, zone: tzinfo | None) -> tuple[object, ...]:
+def row(run: Placed, zone: tzinfo | None) -> tuple[object, ...]:
     return (
         run.label,
         shown_moment(run.start, zone),
@@ -41,7 +41,7 @@ def _row(run: Placed, zone: tzinfo | None) -> tuple[object, ...]:
     )
 
 
-def _said(found: Assignment) -> list[str]:
+def said_of(found: Assignment) -> list[str]:
     served = [run for run in found.runs if run.electrode is not None]
     said = [f"{len(served)} of {len(found.runs)} runs served"]
     if found.p_all is not None:

@@ -12,7 +12,7 @@ from electrolog.show.figures import BLUE, BROWN, INK, LINES, QUIET, figure, labe
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
 
-_INKS = (BLUE, BROWN, QUIET, INK)
+_INKS = (BLUE, BROWN, QUIET, INK, BROWN)
 
 
 def draw(path: Path, found: Backtest) -> None:

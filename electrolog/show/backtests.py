@@ -57,7 +57,7 @@ def _print(found: Backtest) -> None:
     ours = found.methods[0]
     print_lines("", f"where {ours.method}'s readings fell in its forecasts (even when they are honest)")
     print_lines(*_bars(ours.pit_counts))
-    print_lines("", *_cuts(found), *_verdicts(found), *[f"! {note}" for note in found.notes])
+    print_lines("", *cuts_said(found), *verdicts_said(found), *[f"! {note}" for note in found.notes])
 
 
 def _row(scored: Scored) -> tuple[str, ...]:
@@ -72,12 +72,12 @@ def _bars(counts: tuple[int, ...]) -> list[str]:
     return [f"  {span} {'#' * round(BAR * n / most)} {n}" for span, n in zip(ends, counts, strict=True)]
 
 
-def _cuts(found: Backtest) -> list[str]:
+def cuts_said(found: Backtest) -> list[str]:
     said = [f"{cut.at.date().isoformat()} ({cut.calibrations} calibrations)" for cut in found.cuts]
     return [f"fitted anew on {', '.join(said)}"]
 
 
-def _verdicts(found: Backtest) -> list[str]:
+def verdicts_said(found: Backtest) -> list[str]:
     return [found.no_verdicts] if found.verdicts is None else [_fits(found.verdicts)]
 
 

@@ -14,7 +14,7 @@ from electrolog.show.history import share
 from electrolog.show.machine import plain, print_csv, print_json
 from electrolog.show.tables import print_lines, with_error
 from electrolog.show.text import one_line
-from electrolog.units import shown_concentration, shown_number
+from electrolog.units import shown_concentration, shown_span
 
 _FIGURES = (
     "sensitivity_na_um",
@@ -108,11 +108,11 @@ def figure_lines(figures: CalibrationFigures) -> list[str]:
     fit += f", r² {figures.r_squared:.4f}" if figures.r_squared is not None else ""
     fit += f", weights {figures.weighting}" if figures.weighting else ""
     lines = [f"  sensitivity {own} nA/µM ({fit})"]
-    if figures.sensitivity_low_na_um is not None:
-        low, high = shown_number(figures.sensitivity_low_na_um), shown_number(figures.sensitivity_high_na_um)
+    if figures.sensitivity_low_na_um is not None and figures.sensitivity_high_na_um is not None:
+        span = shown_span(figures.sensitivity_low_na_um, figures.sensitivity_high_na_um)
         shared = " with the standard's own uncertainty" if figures.sensitivity_se_shared_na_um else ""
         allowed = f"; allows for {figures.interval_route}" if figures.interval_route else ""
-        lines.append(f"  95 % interval {low} to {high} nA/µM{shared}{allowed}")
+        lines.append(f"  95 % interval {span} nA/µM{shared}{allowed}")
     if figures.lod_um is not None:
         loq = shown_concentration(figures.loq_um)
         lines.append(

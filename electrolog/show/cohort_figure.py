@@ -49,7 +49,8 @@ def draw_fan(axes: Axes, loss: TypicalLoss, trails: Sequence[Trail], weights: Ma
     axes.set_ylim(0.0, max([1.25, *[one for trail in trails for one in trail.share if one < 2.0]]) * 1.03)
     axes.legend(loc="best", fontsize=7)
     kind = "bare" if loss.coating == "none" else loss.coating
-    title = f"{kind}, {loss.waveform}: {len(trails)} probes"
+    above = sum(one > axes.get_ylim()[1] for trail in trails for one in trail.share)
+    title = f"{kind}, {loss.waveform}: {len(trails)} probes" + (f"; {above} readings above the frame" if above else "")
     return labelled(axes, title, "exposure (h, worth as in vivo)", "share left")
 
 
@@ -82,7 +83,7 @@ def draw_days(axes: Axes, days: Sequence[Day]) -> Axes:
         axes.xaxis.set_major_formatter(drawn.ConciseDateFormatter(locator))
     else:
         axes.annotate("no calibration day", (0.5, 0.5), xycoords="axes fraction", ha="center", color=QUIET)
-    return labelled(axes, "Calibration days: all readings off by (median, 90 %)", "date", "%")
+    return labelled(axes, "Calibration days: median and 90 % interval", "date", "all readings off by (%)")
 
 
 def _name(axes: Axes, at: float, day: Day) -> None:

@@ -7,15 +7,16 @@ from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 from electrolog.answers.controlling import Controlled
-from electrolog.show.figures import BLUE, BROWN, INK, MARKS, QUIET, figure, labelled
+from electrolog.show.figures import BLUE, BROWN, INK, MARKS, QUIET, figure, labelled, legend_above
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
+    from matplotlib.lines import Line2D
     from numpy.typing import ArrayLike
 
 
 def draw(path: Path, found: Sequence[Controlled]) -> None:
-    with figure(path, 10, 5.2 * len(found)) as paper:
+    with figure(path, 10, 5.2 * len(found) + 0.3) as paper:
         places = paper.subplots(2 * len(found), 2, squeeze=False)
         for row, one in enumerate(found):
             draw_individuals(places[2 * row][0], one)
@@ -24,6 +25,7 @@ def draw(path: Path, found: Sequence[Controlled]) -> None:
             draw_cusum(places[2 * row + 1][1], one)
         for axes in places.ravel().tolist():
             axes.xaxis.get_major_locator().set_params(integer=True)
+        paper.legend(handles=_explained(), loc="outside lower center", ncols=4)
 
 
 def draw_individuals(axes: Axes, one: Controlled) -> Axes:
@@ -31,8 +33,8 @@ def draw_individuals(axes: Axes, one: Controlled) -> Axes:
     _charted(axes, chart.statistic, chart.centre, chart.lower, chart.upper, [at for at, _ in chart.signals])
     if one.baseline < len(one.points):
         axes.axvline(one.baseline + 0.5, color=QUIET, linestyle=":", linewidth=1)
-        axes.annotate("limits set before", (one.baseline + 0.4, 0.02), xycoords=("data", "axes fraction"), **_SMALL)
-    return labelled(axes, f"{one.rig}: {one.what}", "reading", one.unit)
+    when = "" if not one.points else f", {one.points[0].at:%Y-%m-%d} to {one.points[-1].at:%Y-%m-%d}"
+    return labelled(axes, f"{one.rig}: {one.what}", f"reading{when}", one.unit)
 
 
 def draw_range(axes: Axes, one: Controlled) -> Axes:
@@ -59,11 +61,29 @@ def draw_cusum(axes: Axes, one: Controlled) -> Axes:
     axes.axhline(0, color=QUIET, linewidth=0.6)
     beyond = [(at, sums.high[at] if sums.high[at] >= sums.low[at] else -sums.low[at]) for at, _ in sums.signals]
     _ring(axes, [at + 1 for at, _ in beyond], [float(value) for _, value in beyond])
-    axes.legend(loc="lower left", ncols=2)
+    legend_above(axes, 2)
     return labelled(axes, "CUSUM: what adds up", "reading", one.unit)
 
 
-_SMALL: dict[str, Any] = {"fontsize": 7, "color": QUIET, "ha": "right", "va": "bottom"}
+def _explained() -> list[Line2D]:
+    from matplotlib.lines import Line2D
+
+    looks: dict[str, dict[str, Any]] = {
+        "centre": {"color": QUIET, "linewidth": 0.8},
+        "limit": {"color": QUIET, "linestyle": "--", "linewidth": 0.9},
+        "limits were set by the readings before": {"color": QUIET, "linestyle": ":", "linewidth": 1},
+        "breaks a rule": _RING | {"linestyle": "none"},
+    }
+    return [Line2D([], [], label=label, **look) for label, look in looks.items()]
+
+
+_RING: dict[str, Any] = {
+    "marker": "o",
+    "markersize": 11,
+    "markerfacecolor": "none",
+    "color": BROWN,
+    "markeredgewidth": 1.6,
+}
 
 
 def _charted(
@@ -90,4 +110,4 @@ def _charted(
 def _ring(axes: Axes, along: Sequence[float], values: Sequence[float]) -> None:
     """What broke a rule: a ring around the mark, for those who can't see its colour."""
     if along:
-        axes.plot(along, values, "o", markersize=11, markerfacecolor="none", color=BROWN, markeredgewidth=1.6)
+        axes.plot(along, values, linestyle="none", **_RING)

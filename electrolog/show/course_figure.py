@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING
 from electrolog.answers.course import Course, Mark
 from electrolog.errors import InputError
 from electrolog.show.courses import interval, known, title
-from electrolog.show.figures import BLUE, BROWN, INK, MARKS, QUIET, figure, labelled
+from electrolog.show.figures import BLUE, BROWN, INK, MARKS, QUIET, figure, labelled, legend_beside
 from electrolog.units import shown_percent
 
 if TYPE_CHECKING:
@@ -50,7 +50,7 @@ def draw_course(axes: Axes, course: Course) -> Axes:
         axes.axhline(course.limit_na_um, color=BROWN, linestyle="--", label=label)
     _top(axes, course)
     _marks(axes, course.marks)
-    axes.legend(loc="upper left", bbox_to_anchor=(1.01, 1.0), borderaxespad=0.0)
+    legend_beside(axes)
     if course.why_not_ahead:
         axes.annotate(
             f"no forecast: {course.why_not_ahead}", (0.01, 0.09), xycoords="axes fraction", fontsize=7, color=QUIET

@@ -12,7 +12,7 @@ from electrolog.record import sheets
 from electrolog.show.tables import print_lines
 from electrolog.show.terminal import Chart, Drawing
 from electrolog.show.text import safe
-from electrolog.units import shown_number, shown_percent
+from electrolog.units import shown_number, shown_percent, shown_span
 
 MOST_CHARTS = 6
 _SIGNS = {"coating": "C", "cleaning": "W", "re-cut": "X", "exposure": "r", "retirement": "E"}
@@ -121,9 +121,7 @@ def sentences(course: Course) -> list[str]:
         said.append("no calibration gave a sensitivity")
     else:
         band = interval(last)
-        inside = (
-            "error unknown" if band is None else f"95 % interval {shown_number(band[0])} to {shown_number(band[1])}"
-        )
+        inside = "error unknown" if band is None else f"95 % interval {shown_span(*band)}"
         said.append(
             f"last reading {shown_number(last.figures.sensitivity_na_um)} nA/µM ({inside}), after "
             f"{shown_number(sum(last.exposure_h.values()))} h of exposure, of {len(course.readings)} calibrations"
@@ -142,9 +140,5 @@ def _telling(course: Course) -> list[Mark]:
 
 def _ahead(held: Held, when: str, setting: str) -> str:
     where = when or f"after {shown_number(held.exposure_h)} h of exposure, the rest of it in {setting}"
-    span = _from_to(held.low_na_um, held.high_na_um)
+    span = shown_span(held.low_na_um, held.high_na_um)
     return f"forecast {where}: {shown_number(held.median_na_um)} nA/µM (90 % interval {span})"
-
-
-def _from_to(low: float, high: float) -> str:
-    return f"{shown_number(low)} to {shown_number(high)}"

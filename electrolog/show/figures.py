@@ -17,7 +17,7 @@ if TYPE_CHECKING:
     from matplotlib.colors import Colormap
     from matplotlib.figure import Figure
 
-INK, QUIET, BLUE, BROWN = "#1c1c1c", "#7d7d7d", "#00437d", "#975c3e"
+INK, QUIET, BLUE, BROWN = "#1c1c1c", "#6b6b6b", "#00437d", "#975c3e"
 MARKS = ("o", "s", "^", "D", "v", "P", "X", "<", ">", "*")
 LINES: tuple[Any, ...] = ("-", "--", "-.", ":", (0, (5, 1)), (0, (3, 1, 1, 1)), (0, (1, 1)), (0, (8, 2)))
 FORMATS = (".png", ".svg", ".pdf")
@@ -112,6 +112,15 @@ def two_sided() -> Colormap:
     from matplotlib.colors import LinearSegmentedColormap
 
     return LinearSegmentedColormap.from_list("below-and-above", TWO_SIDED)
+
+
+def legend_above(axes: Axes, columns: int = 3) -> None:
+    axes.legend(loc="lower right", bbox_to_anchor=(1.0, 1.0), ncols=columns, borderaxespad=0.1)
+
+
+def legend_beside(axes: Axes) -> None:
+    """Where lines go everywhere."""
+    axes.legend(loc="upper left", bbox_to_anchor=(1.01, 1.0), borderaxespad=0.0)
 
 
 def labelled(axes: Axes, title: str, along: str, up: str) -> Axes:

@@ -6,9 +6,9 @@ from collections.abc import Mapping, Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING
 
-from electrolog.answers.comparing import Compared
+from electrolog.answers.comparing import LOSS, Compared
 from electrolog.judge.compare import Estimate, Groups, Lives
-from electrolog.show.figures import BLUE, BROWN, INK, LINES, MARKS, QUIET, figure, labelled
+from electrolog.show.figures import BLUE, BROWN, INK, LINES, MARKS, QUIET, figure, labelled, legend_beside
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -48,7 +48,7 @@ def draw_spread(axes: Axes, measure: str, values: Mapping[str, ArrayLike], estim
     if all((np.asarray(own) >= 0).all() for own in values.values()):
         axes.set_ylim(bottom=0.0)
     axes.legend(loc="upper right", ncols=2)
-    return labelled(axes, measure, "group", measure)
+    return labelled(axes, measure, "group", f"{measure} (1/h)" if measure == LOSS else measure)
 
 
 def _mean(axes: Axes, at: float, one: Estimate) -> None:
@@ -80,7 +80,7 @@ def draw_survival(axes: Axes, lives: Lives) -> Axes:
         axes.plot(waiting, [curve.at(float(one)) for one in waiting], "|", color=ink, markersize=7)
     axes.set_ylim(0.0, 1.05)
     axes.set_xlim(left=0.0)
-    axes.legend(loc="lower left")
+    legend_beside(axes)
     left_out = len(lives) - len(largest)
     thin = "; thin: 95 %" if len(largest) <= 3 else ""
     more = f"; {left_out} smaller groups not drawn" if left_out else ""

@@ -9,10 +9,12 @@ from electrolog.answers.ranking import Ranked
 from electrolog.answers.report import BatchSheet, CohortSheet, LabSheet
 from electrolog.answers.shelf import STATES, Shelved
 from electrolog.clock import shown_moment
+from electrolog.fouling.typical import TypicalLoss
 from electrolog.judge.scores import share_interval
 from electrolog.show.checks import SIGNS, odds_shown
 from electrolog.show.fits import hours_shown, off_shown, span_shown
 from electrolog.show.outlook import said_of
+from electrolog.show.page_backtest import tested_context
 from electrolog.show.page_charts import days_chart, loss_chart
 from electrolog.show.svg import trend_path
 from electrolog.show.tables import day_or_never, named, with_error
@@ -32,6 +34,7 @@ _COLUMNS = (
     ("left", True),
 )
 _LEAST_WEIGHT = 0.01
+_LEFT_ROWS = 8
 
 
 def lab_context(lab: LabSheet) -> dict[str, Any]:
@@ -43,6 +46,8 @@ def lab_context(lab: LabSheet) -> dict[str, Any]:
         "verdicts": [_verdict(one) for one in lab.verdicts],
         "batches": [_batch(one) for one in lab.batches],
         "cohorts": [_cohort(one, f"a{place}") for place, one in enumerate(lab.cohorts)],
+        "tested": [tested_context(one, f"b{place}") for place, one in enumerate(lab.tested)],
+        "untested": lab.untested,
         "without_fit": ", ".join(lab.without_fit),
     }
 
@@ -102,8 +107,11 @@ def _batch(one: BatchSheet) -> tuple[object, ...]:
 def _cohort(one: CohortSheet, id_: str) -> dict[str, Any]:
     fit = one.fit
     return {
+        "id": id_,
         "analyte": one.analyte,
         "said": _said(fit),
+        "left_columns": ("kind", "hours in vivo", "5 %", "median", "95 %"),
+        "left": [row for loss in one.typical for row in _left(loss)],
         "losses": [(loss_chart(loss, fit.shapes), f"{id_}l{place}") for place, loss in enumerate(one.typical)],
         "half_lives": [
             (row.coating, row.waveform, span_shown(row.hours, hours_shown), row.probes, row.calibrations)
@@ -117,6 +125,13 @@ def _cohort(one: CohortSheet, id_: str) -> dict[str, Any]:
         "suspicious": [_day(day) for day in fit.suspicious_days],
         "every_day": [_day(day) for day in fit.days],
     }
+
+
+def _left(loss: TypicalLoss) -> list[tuple[str, ...]]:
+    kind = f"{'bare' if loss.coating == 'none' else loss.coating}, {loss.waveform}"
+    steps = range(0, len(loss.hours), max(1, len(loss.hours) // _LEFT_ROWS))
+    held = [(loss.hours[k], *(100.0 * part[k] for part in (loss.low, loss.median, loss.high))) for k in steps]
+    return [(kind, *(shown_number(float(value)) for value in row)) for row in held]
 
 
 def _said(fit: FittedCohort) -> list[str]:

@@ -10,7 +10,8 @@ from electrolog.answers.history import Reading
 from electrolog.errors import DataError, InputError
 from electrolog.measure.calibrate import CalibrationFigures
 from electrolog.show.figures import BLUE, BROWN, INK, MARKS, QUIET, figure, labelled
-from electrolog.units import shown_concentration, shown_number
+from electrolog.show.tables import with_error
+from electrolog.units import shown_concentration
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -75,7 +76,7 @@ def draw_residuals(axes: Axes, points: Points, figures: CalibrationFigures) -> A
 
 def _fitted(axes: Axes, points: Points, figures: CalibrationFigures, top: float) -> None:
     slope, offset = figures.sensitivity_na_um or 0.0, figures.intercept_na or 0.0
-    label = f"{shown_number(slope)} nA/µM"
+    label = f"{with_error(slope, figures.sensitivity_se_na_um)} nA/µM"
     if figures.shape != "saturating":
         axes.plot([0, top], [offset, offset + slope * top], color=BLUE, label=label, zorder=1)
         return

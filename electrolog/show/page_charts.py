@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Mapping, Sequence
 
 from electrolog.answers.course import Course
@@ -12,10 +13,12 @@ from electrolog.fouling.typical import Floats, TypicalLoss
 from electrolog.show.courses import interval, known, title
 from electrolog.show.line_figure import fitted_curve
 from electrolog.show.svg import Plot
-from electrolog.units import shown_concentration, shown_number, shown_percent
+from electrolog.units import shown_concentration, shown_number, shown_percent, shown_span
 
 LEAST_WEIGHT = 0.01
+_MOST_DATES = 6
 _MARKS = {"coating": "square", "cleaning": "down", "re-cut": "diamond", "exposure": "tick", "retirement": "cross"}
+_TOLD = 6  # values along a curve that say what they are
 _SHAPE_LOOKS = ("curve", "curve dash", "curve dotted", "curve dashdot", "curve longdash")
 
 
@@ -33,7 +36,7 @@ def course_chart(course: Course) -> Plot | None:
     _draw_ahead(plot, course)
     _draw_limit(plot, course)
     for held in course.believed:
-        span = _from_to(held.low_na_um, held.high_na_um)
+        span = shown_span(held.low_na_um, held.high_na_um)
         plot.bar(held.exposure_h, held.low_na_um, held.high_na_um, "truth", f"truth as believed: {span} nA/µM (90 %)")
         plot.explain("band", "band", "truth as believed, and forecast: 90 %")
     for at, one in zip(hours, found, strict=True):
@@ -60,7 +63,7 @@ def _draw_ahead(plot: Plot, course: Course) -> None:
     plot.band(hours, low, high, "band")
     plot.line(hours, [one.median_na_um for one in course.ahead], "curve")
     for one in course.ahead[:: max(1, len(course.ahead) // 4)]:
-        span = _from_to(one.low_na_um, one.high_na_um)
+        span = shown_span(one.low_na_um, one.high_na_um)
         said = f"forecast at {shown_number(one.exposure_h)} h: {shown_number(one.median_na_um)} nA/µM ({span}, 90 %)"
         plot.dot(one.exposure_h, one.median_na_um, "circle", "small", said)
     plot.explain("line", "curve", f"forecast in {course.setting}, median")
@@ -79,7 +82,7 @@ def _draw_reading(plot: Plot, at: float, one: Reading) -> None:
     value, ends = one.figures.sensitivity_na_um or 0.0, interval(one)
     if ends is not None:
         plot.bar(at, *ends, "error")
-    inside = "" if ends is None else f" ({_from_to(*ends)}, 95 %)"
+    inside = "" if ends is None else f" ({shown_span(*ends)}, 95 %)"
     said = f"{one.calibration}, {shown_moment(one.at)}, {one.stage}: {shown_number(value)} nA/µM{inside}"
     plot.dot(at, value, "circle", "dot", said)
     plot.explain("circle", "dot", "calibration, 95 % interval")
@@ -127,6 +130,11 @@ def loss_chart(loss: TypicalLoss, weights: Mapping[str, float]) -> Plot:
     for look, name in zip(_SHAPE_LOOKS, shapes, strict=False):
         plot.line(hours, _percent(loss.by_shape[name]), look, f"{name}, weight {shown_percent(weights[name])}")
         plot.explain("line", look, f"{name}, {shown_percent(weights[name])}")
+    for k in range(0, len(hours), max(1, len(hours) // _TOLD)):
+        median, low, high = (shown_percent(float(part[k])) for part in (loss.median, loss.low, loss.high))
+        said = f"after {shown_number(hours[k])} h in vivo: {median} left ({low} to {high}, 90 %)"
+        plot.dot(hours[k], 100.0 * float(loss.median[k]), "circle", "small", said)
+    plot.explain("circle", "small", "median over all shapes")
     plot.explain("band", "band", "90 % over all shapes")
     return plot
 
@@ -144,9 +152,9 @@ def days_chart(days: Sequence[Day]) -> Plot | None:
         return None
     first = min(at for at, _ in known_ones)
     ends = [100.0 * end for _, day in known_ones for end in (day.effect.low or 0.0, day.effect.high or 0.0)]
-    low, high = max(min(ends), -100.0), min(max(ends), 200.0)
+    low, high = 1.05 * max(min(ends), -100.0), 1.05 * min(max(ends), 200.0)
     wide = (0.0, float(max(at for at, _ in known_ones) - first))
-    plot = Plot("Calibration days", f"days since {date.fromordinal(first)}", "% off", wide, (low, high), height=220.0)
+    plot = Plot("Calibration days", "date", "% off", wide, (low, high), height=220.0, x_labels=_dates(first, wide[1]))
     plot.level(0.0, "zero")
     for at, day in known_ones:
         value = 100.0 * (day.effect.median or 0.0)
@@ -160,5 +168,9 @@ def days_chart(days: Sequence[Day]) -> Plot | None:
     return plot
 
 
-def _from_to(low: float, high: float) -> str:
-    return f"{shown_number(low)} to {shown_number(high)}"
+def _dates(first: int, days: float) -> list[tuple[float, str]]:
+    """Evenly spaced, as many as can stand side by side."""
+    from datetime import date
+
+    step = max(1, math.ceil(days / _MOST_DATES))
+    return [(float(off), date.fromordinal(first + off).isoformat()) for off in range(0, int(days) + 1, step)]

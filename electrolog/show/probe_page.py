@@ -5,9 +5,10 @@ from __future__ import annotations
 from datetime import datetime
 from typing import Any
 
+from electrolog.answers.assigning import Placed
 from electrolog.answers.course import Course
 from electrolog.answers.history import Reading
-from electrolog.answers.report import ProbeSheet
+from electrolog.answers.report import Planned, ProbeSheet
 from electrolog.clock import shown_moment
 from electrolog.record.sheets import BY_NAME
 from electrolog.show.calibrations import sentences
@@ -18,17 +19,27 @@ from electrolog.show.life import what_happened
 from electrolog.show.line_figure import fitted_curve
 from electrolog.show.page import verdict_context
 from electrolog.show.page_charts import course_chart, line_chart
-from electrolog.units import shown_concentration, shown_number
+from electrolog.units import shown_concentration, shown_duration, shown_number, shown_span
 
 _SIZES = (("exposed_length_um", "exposed length", "µm"), ("diameter_um", "diameter", "µm"))
 
 
-def probe_context(one: ProbeSheet, id_: str) -> dict[str, Any]:
+def planned_said(planned: Planned) -> str:
+    run, needs = planned.run, planned.demands.needs_um
+    parts = [f"{shown_duration(run.run_min)} {run.setting}", run.analyte, run.waveform]
+    parts += [] if needs is None else [f"down to {shown_concentration(needs)}"]
+    parts += [f"project {planned.demands.project}"] if planned.demands.project else []
+    return ", ".join(parts)
+
+
+def probe_context(one: ProbeSheet, id_: str, run: Placed | None = None) -> dict[str, Any]:
+    """run: the one of a plan that the verdict is for."""
     readings = [reading for course in one.courses for reading in course.readings]
     return {
         "id": id_,
         "name": one.probe["electrode"],
         "identity": _identity(one),
+        "judged_for": _judged_for(one, run),
         "verdict": None if one.verdict is None else verdict_context(one.verdict),
         "courses": [_course(course, one, f"{id_}c{place}") for place, course in enumerate(one.courses)],
         "timeline": [(_unbroken(event.at), event.name, what_happened(event)) for event in one.life],
@@ -45,6 +56,13 @@ def probe_context(one: ProbeSheet, id_: str) -> dict[str, Any]:
             for entry in one.corrections
         ],
     }
+
+
+def _judged_for(one: ProbeSheet, run: Placed | None) -> str:
+    if one.planned is None:
+        return ""
+    which = "" if run is None else f"{run.label}, {shown_moment(run.start)}: "
+    return f"for {which}{planned_said(one.planned)}"
 
 
 def _unbroken(moment: datetime) -> str:
@@ -85,7 +103,7 @@ def _factor(reading: Reading, one: ProbeSheet) -> tuple[str, ...]:
         _unbroken(reading.at),
         shown_number(sum(reading.exposure_h.values())),
         shown_number(reading.figures.sensitivity_na_um),
-        "not known" if ends is None else f"{shown_number(ends[0])} to {shown_number(ends[1])}",
+        "not known" if ends is None else shown_span(*ends),
         share(reading),
         _valid(reading, one),
     )

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from itertools import pairwise
 from pathlib import Path
 from typing import TYPE_CHECKING
 
@@ -12,8 +13,9 @@ from electrolog.measure.recording import Span
 from electrolog.measure.scan_sheet import ScanSheet
 from electrolog.measure.scans import ScanReading, response_map
 from electrolog.measure.trace import TraceReading
-from electrolog.show.figures import BLUE, BROWN, INK, LINES, MARKS, QUIET, figure, labelled, two_sided
+from electrolog.show.figures import BLUE, BROWN, INK, LINES, MARKS, QUIET, figure, labelled, legend_above, two_sided
 from electrolog.show.line_figure import draw_line
+from electrolog.show.terminal import round_ticks
 from electrolog.units import shown_concentration, shown_number
 
 if TYPE_CHECKING:
@@ -52,7 +54,7 @@ def draw_trace(axes: Axes, reading: TraceReading, concentration_um: Sequence[flo
     levels = [one.level_na for one in reading.plateaus]
     _plateaus(axes, [one.window for one in reading.plateaus], levels)
     _injections(axes, [one.injection for one in reading.plateaus], _clear(levels, reading.noise_na), concentration_um)
-    _legend_above(axes)
+    legend_above(axes)
     return labelled(axes, "Recording", "time (s)", "current (nA)")
 
 
@@ -67,7 +69,7 @@ def draw_scan_trace(axes: Axes, reading: ScanReading, concentration_um: Sequence
     tops = [float(reading.trace_na[one.window.within(reading.time_s)].mean()) for one in graphs]
     _plateaus(axes, [one.window for one in graphs], tops)
     _injections(axes, [one.injection for one in graphs], _clear(tops, reading.noise_na), concentration_um)
-    _legend_above(axes)
+    legend_above(axes)
     return labelled(axes, f"Current at {_volts(reading.trace_v)} V", "time (s)", "current (nA)")
 
 
@@ -77,7 +79,7 @@ def draw_voltammograms(axes: Axes, reading: ScanReading, concentration_um: Seque
     shades = two_sided()
     largest = max(abs(one.level_na) for one in reading.voltammograms) or 1.0
     for place, (one, name) in enumerate(zip(reading.voltammograms, names, strict=True)):
-        colour = shades(0.62 + 0.38 * abs(one.level_na) / largest)
+        colour = shades(0.74 + 0.26 * abs(one.level_na) / largest)
         axes.plot(reading.potential_v, one.current_na, color=colour, linestyle=LINES[place % len(LINES)], label=name)
     for peak, mark, word in (
         (reading.peaks.oxidation, MARKS[2], "oxidation"),
@@ -153,20 +155,35 @@ def _clear(levels: Sequence[float], noise_na: float) -> list[float]:
 
 
 def _potentials_along(axes: Axes, reading: ScanReading) -> None:
-    """Along a scan the potential goes there and back: its turns are named where they stand."""
+    """Along a scan the potential goes there and back: its turns are named where they stand, and round ones between."""
     import numpy as np
 
-    turns = np.flatnonzero(np.diff(np.sign(np.diff(reading.potential_v))) != 0) + 1
-    places = [0, *turns.tolist(), len(reading.potential_v) - 1]
+    scan = reading.potential_v
+    turns = np.flatnonzero(np.diff(np.sign(np.diff(scan))) != 0) + 1
+    places = [0, *turns.tolist(), len(scan) - 1]
     kept = [at for place, at in enumerate(places) if place == 0 or at - places[place - 1] > 1]
-    axes.set_yticks(kept, [_volts(float(reading.potential_v[at])) for at in kept])
+    ticks = [(float(at), float(scan[at])) for at in kept]
+    for first, last in pairwise(kept):
+        ticks += _round_between(scan[first : last + 1], first)
+    ticks.sort()
+    axes.set_yticks([at for at, _ in ticks], [_volts(potential) for _, potential in ticks])
     axes.spines["left"].set_visible(False)
+
+
+def _round_between(leg: Array, first: int) -> list[tuple[float, float]]:
+    """Places of round potentials on a leg that goes one way, with room to the turns at its ends."""
+    import numpy as np
+
+    low, high = sorted((float(leg[0]), float(leg[-1])))
+    room = 0.12 * (high - low)
+    if not room:
+        return []
+    along = np.arange(len(leg)) if leg[-1] > leg[0] else np.arange(len(leg))[::-1]
+    rising = leg if leg[-1] > leg[0] else leg[::-1]
+    chosen = [one for one in round_ticks(low, high, about=3) if low + room < one < high - room]
+    return [(first + float(np.interp(one, rising, along)), one) for one in chosen]
 
 
 def _volts(potential_v: float) -> str:
     """With the minus sign that the axes have."""
     return shown_number(potential_v).replace("-", "−")
-
-
-def _legend_above(axes: Axes) -> None:
-    axes.legend(loc="lower right", bbox_to_anchor=(1.0, 1.0), ncols=3, borderaxespad=0.1)

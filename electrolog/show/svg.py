@@ -8,7 +8,7 @@ from dataclasses import dataclass, field
 from electrolog.show.terminal import round_ticks
 from electrolog.units import shown_number
 
-LEFT, RIGHT, TOP, BOTTOM = 46.0, 12.0, 10.0, 36.0
+LEFT, RIGHT, TOP, BOTTOM = 46.0, 12.0, 20.0, 36.0
 _DOTS = {  # paths about a point, so that kinds differ in form and not in colour alone
     "circle": "m-3.2,0a3.2,3.2 0 1,0 6.4,0a3.2,3.2 0 1,0 -6.4,0",
     "ring": "m-6,0a6,6 0 1,0 12,0a6,6 0 1,0 -12,0",
@@ -37,7 +37,10 @@ class Tick:
 
 @dataclass
 class Plot:
-    """Axes with their units; what lies outside is drawn at the edge, so that nothing hides beyond it."""
+    """Axes with their units; what lies outside is drawn at the edge, so that nothing hides beyond it.
+
+    x_labels: where numbers would not do; a place and its words each.
+    """
 
     title: str
     along: str
@@ -46,6 +49,7 @@ class Plot:
     y: tuple[float, float]
     width: float = 640.0
     height: float = 280.0
+    x_labels: Sequence[tuple[float, str]] = ()
     shapes: list[Shape] = field(default_factory=list)
     legend: list[tuple[str, str, str]] = field(default_factory=list)  # path, look, words
 
@@ -62,7 +66,8 @@ class Plot:
 
     @property
     def x_ticks(self) -> list[Tick]:
-        return [Tick(self.px(value), f"{value:g}") for value in round_ticks(*self.x, about=6)]
+        labels = self.x_labels or [(value, f"{value:g}") for value in round_ticks(*self.x, about=6)]
+        return [Tick(self.px(value), words) for value, words in labels]
 
     @property
     def y_ticks(self) -> list[Tick]:
@@ -83,6 +88,10 @@ class Plot:
 
     def bar(self, x: float, low: float, high: float, look: str, said: str = "") -> None:
         self.shapes.append(Shape(f"M{self.px(x):g},{self.py(low):g}V{self.py(high):g}", look, said))
+
+    def box(self, x: tuple[float, float], y: tuple[float, float], look: str, said: str = "") -> None:
+        (left, right), (low, high) = map(self.px, x), map(self.py, y)
+        self.shapes.append(Shape(f"M{left:g},{low:g}V{high:g}H{right:g}V{low:g}z", look, said))
 
     def level(self, y: float, look: str, said: str = "") -> None:
         self.shapes.append(Shape(f"M{LEFT:g},{self.py(y):g}H{self.width - RIGHT:g}", look, said))

@@ -9,7 +9,6 @@ from typing import Any
 import numpy as np
 import pytest
 
-from electrolog.answers.backtesting import Backtest
 from electrolog.answers.course import Course, Held, Mark
 from electrolog.answers.fan import Trail
 from electrolog.answers.fitting import Day, Estimate
@@ -19,9 +18,9 @@ from electrolog.clock import utc_now
 from electrolog.errors import InputError
 from electrolog.fouling.typical import TypicalLoss
 from electrolog.judge import compare
-from electrolog.judge.backtest import Predictive, score
 from electrolog.measure.calibrate import CalibrationFigures, calibrate
 from electrolog.show import backtest_figure, cohort_figure, course_figure, groups_figure, line_figure
+from tests.show.known_backtest import backtest
 from tests.show.test_figures import drawn
 
 
@@ -159,15 +158,6 @@ def test_suspicious_days_are_ringed_and_named() -> None:
 
 def test_no_day_is_said() -> None:
     assert [text.get_text() for text in drawn(cohort_figure.draw_days, []).texts] == ["no calibration day"]
-
-
-def backtest() -> Backtest:
-    rng = np.random.default_rng(5)
-    truth = rng.normal(0.0, 1.0, 400)
-    draws = np.tile(np.linspace(-2.6, 2.6, 401), (400, 1)) * 1.0
-    honest = score("honest", Predictive(draws * 0 + rng.normal(0, 1, (400, 401)), np.full(draws.shape, 1e-6)), truth)
-    sure = score("sure", Predictive(rng.normal(0, 0.4, (400, 401)), np.full(draws.shape, 1e-6)), truth)
-    return Backtest("dopamine", (), (honest, sure), None, "none", (), ())
 
 
 def test_reliability_lies_on_the_diagonal_for_honest_forecasts_and_below_for_the_too_sure() -> None:

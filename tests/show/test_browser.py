@@ -13,9 +13,11 @@ from typing import Any
 
 import pytest
 
+from electrolog.answers.kept_backtest import KeptBacktest
 from electrolog.answers.report import BatchSheet, LabSheet, Origin
 from electrolog.answers.shelf import STATES, Shelved
-from electrolog.show.report_page import write_report
+from electrolog.show.report_page import Told, write_report
+from tests.show.known_backtest import backtest
 
 MADE = datetime(2026, 3, 2, 9, 30, tzinfo=UTC)
 PROBES = 2000
@@ -50,9 +52,11 @@ def shelved(k: int) -> Shelved:
 def page(tmp_path_factory: pytest.TempPathFactory) -> Path:
     path = tmp_path_factory.mktemp("report") / "lab.html"
     batch = BatchSheet("B000", MADE.date(), "wren", "carbon fibre 7 um", 10, 2, 8, 10)
-    lab = LabSheet(tuple(map(shelved, range(PROBES))), (batch,), (), ("dopamine",), (), None, "no run was named")
+    tested = (KeptBacktest(backtest(), MADE, 3, corrected_since=False),)
+    shelf = tuple(map(shelved, range(PROBES)))
+    lab = LabSheet(shelf, (batch,), (), ("dopamine",), (), None, "no run was named", tested)
     made = Origin("wren", MADE, "0", "lab.db", 12, "ab" * 32, {"calibration": "line"})
-    write_report(path, "The lab", made, [], lab, None)
+    write_report(path, Told("The lab", made, lab=lab))
     return path
 
 
@@ -165,12 +169,37 @@ def test_everything_is_reached_by_the_keyboard(opened: Any) -> None:
     from selenium.webdriver.common.keys import Keys
 
     reached = []
-    for _ in range(5):
+    for _ in range(9):
         opened.switch_to.active_element.send_keys(Keys.TAB)
         reached.append(opened.execute_script("return document.activeElement.tagName"))
-    assert reached == ["A", "INPUT", "SELECT", "BUTTON", "BUTTON"]
+    assert reached == ["A"] * 5 + ["INPUT", "SELECT", "BUTTON", "BUTTON"]  # past the skip link and four places
     opened.switch_to.active_element.send_keys(Keys.ENTER)
     assert opened.execute_script("return document.querySelector('th[aria-sort]').textContent").startswith("state")
+
+
+def test_a_chart_is_one_stop_and_the_arrows_go_from_value_to_value(opened: Any) -> None:
+    from selenium.webdriver.common.keys import Keys
+
+    counts = backtest().methods[0].pit_counts
+    opened.execute_script("document.querySelectorAll('svg.chart')[1].focus()")
+    assert said_of_chart(opened) == "arrow keys: from value to value"
+    seen = []
+    for _ in range(len(counts) + 1):
+        opened.switch_to.active_element.send_keys(Keys.ARROW_RIGHT)
+        seen.append(said_of_chart(opened))
+    assert seen[0] == f"1 of {len(seen)}: expected of honest forecasts: 40 in each"
+    assert [int(re.findall(r": (\d+) readings", text)[0]) for text in seen[1:]] == list(counts)
+    opened.switch_to.active_element.send_keys(Keys.ARROW_RIGHT)  # the last one stays
+    assert said_of_chart(opened) == seen[-1]
+    assert opened.execute_script("return document.querySelectorAll('.chosen').length") == 1
+    opened.switch_to.active_element.send_keys(Keys.ESCAPE)
+    assert said_of_chart(opened) == ""
+    opened.switch_to.active_element.send_keys(Keys.TAB)
+    assert opened.execute_script("return document.activeElement.tagName") == "SUMMARY"
+
+
+def said_of_chart(browser: Any) -> str:
+    return str(browser.execute_script("return document.querySelectorAll('figure output')[1].textContent"))
 
 
 @pytest.mark.parametrize("scheme", ["light", "dark"])

@@ -7,6 +7,7 @@ from typing import Any
 
 import numpy as np
 import pytest
+from matplotlib.colors import to_rgb
 
 from electrolog.answers.controlling import Controlled, Plotted
 from electrolog.answers.signals import from_trace
@@ -103,7 +104,7 @@ def test_scans_are_drawn() -> None:
     picture = drawn(signal_figures.draw_sheet, reading, scans)
     low, high = picture.images[0].get_clim()
     assert low == -high  # zero stands at the map's neutral middle
-    assert [label.get_text() for label in picture.get_yticklabels()] == ["−0.4", "1.3", "−0.4"]
+    assert [label.get_text() for label in picture.get_yticklabels()] == ["−0.4", "0", "1", "1.3", "1", "0", "−0.4"]
 
 
 def test_a_suspect_point_is_ringed() -> None:
@@ -152,3 +153,10 @@ def test_the_same_picture_gives_the_same_file(tmp_path: Path) -> None:
 def test_an_ending_that_is_no_pictures_is_refused_before_anything_is_drawn(tmp_path: Path) -> None:
     with pytest.raises(InputError, match=r"accepted: \.png, \.svg, \.pdf"), figures.figure(tmp_path / "a.jpg", 1, 1):
         raise AssertionError("nothing may be drawn")
+
+
+def test_every_ink_stands_out_from_white() -> None:
+    """WCAG 2.2, 1.4.3: a contrast of 4.5 or more, since words are written in each of them."""
+    for ink in (figures.INK, figures.QUIET, figures.BLUE, figures.BROWN):
+        linear = [c / 12.92 if c <= 0.04045 else ((c + 0.055) / 1.055) ** 2.4 for c in to_rgb(ink)]
+        assert 1.05 / (0.2126 * linear[0] + 0.7152 * linear[1] + 0.0722 * linear[2] + 0.05) >= 4.5, ink

@@ -1,4 +1,45 @@
 "use strict";
+// A chart is one stop of the Tab key; the arrow keys then go through what is drawn, from left to right, and it is said.
+const chartOf = (target) => (target instanceof Element ? target.closest("svg.chart[tabindex]") : null);
+const left = (path) => parseFloat(path.getAttribute("d").slice(1));
+const told = (chart) => Array.from(chart.querySelectorAll("path")).filter((path) => path.firstElementChild);
+const marks = new WeakMap();
+const marksOf = (chart) => {
+  if (!marks.has(chart)) { marks.set(chart, { paths: told(chart).sort((a, b) => left(a) - left(b)), at: -1 }); }
+  return marks.get(chart);
+};
+const show = (chart, at) => {
+  const known = marksOf(chart), said = chart.parentElement.querySelector("output");
+  if (known.at >= 0) { known.paths[known.at].classList.remove("chosen"); }
+  known.at = at;
+  if (at < 0) { said.textContent = ""; return; }
+  known.paths[at].classList.add("chosen");
+  said.textContent = `${at + 1} of ${known.paths.length}: ${known.paths[at].firstElementChild.textContent}`;
+};
+for (const chart of document.querySelectorAll("svg.chart[tabindex]")) {
+  // Of an image a screen reader keeps the keys to itself.
+  chart.setAttribute("role", "application");
+  chart.setAttribute("aria-roledescription", "chart, read by the arrow keys");
+}
+document.addEventListener("focusin", (event) => {
+  const chart = chartOf(event.target);
+  if (chart && marksOf(chart).at < 0) { chart.parentElement.querySelector("output").textContent = "arrow keys: from value to value"; }
+});
+document.addEventListener("focusout", (event) => { const chart = chartOf(event.target); if (chart) { show(chart, -1); } });
+document.addEventListener("mouseover", (event) => {
+  const chart = chartOf(event.target);
+  const at = chart ? marksOf(chart).paths.indexOf(event.target.closest("path")) : -1;
+  if (at >= 0) { show(chart, at); }
+});
+document.addEventListener("keydown", (event) => {
+  const chart = chartOf(event.target);
+  if (!chart || event.altKey || event.ctrlKey || event.metaKey) { return; }
+  const { at, paths } = marksOf(chart), last = paths.length - 1;
+  const to = { ArrowRight: Math.min(at + 1, last), ArrowDown: Math.min(at + 1, last), ArrowLeft: Math.max(at - 1, 0), ArrowUp: Math.max(at - 1, 0), Home: 0, End: last, Escape: -1 }[event.key];
+  if (to === undefined) { return; }
+  event.preventDefault();
+  show(chart, to);
+});
 for (const table of document.querySelectorAll("table[data-sortable]")) {
   const body = table.tBodies[0];
   const rows = Array.from(body.rows);
