@@ -16,22 +16,41 @@ _LABS_OWN = (sheets.TERMS, sheets.ANALYTES, sheets.WAVEFORMS, sheets.LIMITS)  # 
 _DERIVED = (schema.calibration_figures.name, schema.kept_fits.name)
 _LONGEST = 63 - len("_steward")  # PostgreSQL cuts a longer name off
 
+# Whoever is no owner: who, when and where in the chain are the server's to say, and what, as far as the role goes.
 _OWN_NAME = """
-CREATE OR REPLACE FUNCTION sign_with_login() RETURNS trigger LANGUAGE plpgsql AS $$
+CREATE OR REPLACE FUNCTION sign_with_login() RETURNS trigger LANGUAGE plpgsql
+SET search_path = pg_catalog, public, pg_temp AS $$
+DECLARE
+  last record;
 BEGIN
-  IF NOT pg_has_role(session_user, (SELECT relowner FROM pg_class WHERE oid = TG_RELID), 'MEMBER') THEN
-    IF NEW.who IS DISTINCT FROM session_user::text THEN
-      RAISE EXCEPTION 'who did it comes from the login: % is not %', session_user, NEW.who;
-    END IF;
-    IF NEW.at > now() + interval '10 minutes' THEN
-      RAISE EXCEPTION 'the entry is of %, the server''s clock stands at %', NEW.at, now();
-    END IF;
+  IF pg_has_role(session_user, (SELECT relowner FROM pg_class WHERE oid = TG_RELID), 'MEMBER') THEN
+    RETURN NEW;
+  END IF;
+  IF NEW.who IS DISTINCT FROM session_user::text THEN
+    RAISE EXCEPTION 'who did it comes from the login: % is not %', session_user, NEW.who;
+  END IF;
+  IF NEW.at NOT BETWEEN now() - interval '10 minutes' AND now() + interval '10 minutes' THEN
+    RAISE EXCEPTION 'the entry is of %, the server''s clock stands at %', NEW.at, now();
+  END IF;
+  SELECT seq, hash INTO last FROM journal ORDER BY seq DESC LIMIT 1;
+  IF NEW.seq IS DISTINCT FROM last.seq + 1 OR NEW.previous_hash IS DISTINCT FROM last.hash THEN
+    RAISE EXCEPTION 'entry % does not follow the newest one', NEW.seq;
+  END IF;
+  IF NOT pg_has_role(session_user, '{steward}', 'MEMBER') AND (NEW.action = 'strike' OR NEW.sheet IN ({labs_own})) THEN
+    RAISE EXCEPTION 'permission denied for the entry: % %', NEW.action, NEW.sheet;
+  END IF;
+  IF NEW.action = 'amend' AND NOT (pg_has_role(session_user, '{steward}', 'MEMBER') OR EXISTS (
+    SELECT FROM journal WHERE sheet = replace(NEW.sheet, 'calibration_points', 'calibrations')
+      AND row_id = NEW.row_id AND action = 'add' AND who = session_user::text AND at > now() - interval '1 day'
+  )) THEN
+    RAISE EXCEPTION 'the bench amends its own entries of the day';
   END IF;
   RETURN NEW;
 END $$
 """
 _OWN_ENTRY = """
-CREATE OR REPLACE FUNCTION refuse_foreign_entry() RETURNS trigger LANGUAGE plpgsql AS $$
+CREATE OR REPLACE FUNCTION refuse_foreign_entry() RETURNS trigger LANGUAGE plpgsql
+SET search_path = pg_catalog, public, pg_temp AS $$
 BEGIN
   IF pg_has_role(session_user, '{steward}', 'MEMBER') OR EXISTS (
     SELECT FROM journal WHERE sheet = replace(TG_TABLE_NAME, 'calibration_points', 'calibrations')
@@ -119,8 +138,9 @@ def _grant(connection: Connection, database: str) -> None:
 
 def _guard(connection: Connection, database: str) -> None:
     steward = f"{database}_{STEWARD}".replace("'", "''")
-    _run(connection, _OWN_NAME)
-    _run(connection, _OWN_ENTRY.replace("{steward}", steward))
+    labs_own = ", ".join(f"'{sheet.name}'" for sheet in _LABS_OWN)
+    for function in (_OWN_NAME, _OWN_ENTRY):
+        _run(connection, function.replace("{steward}", steward).replace("{labs_own}", labs_own))
     _run(
         connection,
         "CREATE OR REPLACE TRIGGER own_name BEFORE INSERT ON journal FOR EACH ROW EXECUTE FUNCTION sign_with_login()",

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import getpass
+import logging
 import os
 import random
 import sqlite3
@@ -27,6 +28,7 @@ from electrolog.record.url import database_url
 __all__ = ["Connection", "Record", "open_record"]
 
 BUSY_TIMEOUT_MS = 60_000
+CACHE_KB = 64_000  # SQLite's own 2 MB is read and written over and over by a large import; what isn't needed isn't taken
 BETWEEN_LOOKS_S = (0.002, 0.02)
 WRITING = 0x656C6570  # any number that all who write agree on
 _SECRETS = ("password", "passfile", "sslpassword")  # what a URL may hold beside the password in its usual place
@@ -176,7 +178,15 @@ def _engine(url: URL) -> Engine:
             )
         event.listen(engine, "connect", _prepare_sqlite)
         event.listen(engine, "begin", _begin_sqlite)
+    else:
+        _hush(logging.getLogger("psycopg"))
     return engine
+
+
+def _hush(driver: logging.Logger) -> None:
+    """Of a refused batch it would write more on standard error, beside the refusal in our own words."""
+    if not driver.handlers:
+        driver.addHandler(logging.NullHandler())
 
 
 def _prepare_sqlite(connection: Any, _: object) -> None:
@@ -185,6 +195,7 @@ def _prepare_sqlite(connection: Any, _: object) -> None:
     cursor = connection.cursor()
     cursor.execute(f"PRAGMA busy_timeout = {BUSY_TIMEOUT_MS}")
     cursor.execute("PRAGMA foreign_keys = ON")
+    cursor.execute(f"PRAGMA cache_size = {-CACHE_KB}")
     cursor.close()
 
 

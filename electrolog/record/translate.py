@@ -37,6 +37,10 @@ _KNOWN = {
     "connection is lost": _CUT,
     "permission denied": ("{}: this login may not do that", "a steward may, and admits others: `electrolog roles`"),
     "comes from the login": ("{}: who did it comes from the login, and can't be another", "log in as whoever did it"),
+    "server's clock stands at": (
+        "{}: this machine's clock and the server's are more than ten minutes apart",
+        "set this machine's clock, then type the entry again",
+    ),
     "own entries of the day": ("{}: the bench amends its own entries of the day", "ask a steward for any other"),
 }
 

@@ -9,13 +9,13 @@ from pathlib import Path
 import pytest
 
 from electrolog.lab import Lab, open_lab, rescue
-from tests.faults import damage, fuzz, killed, tampering
+from tests.faults import damage, full, fuzz, killed, recovery, restarts, tampering
 
 
 @pytest.mark.skipif(sys.platform == "win32", reason="SIGKILL and fork are POSIX's")
 def test_killed_at_any_moment_nothing_is_lost_doubled_or_broken() -> None:
-    found = killed.run(2, seed=7)
-    assert sum(one.tried for one in found.values()) == 2 * len(killed.COMMANDS)
+    found = killed.run(1, seed=7)
+    assert sum(one.tried for one in found.values()) == len(killed.COMMANDS)
     assert sum(one.cut for one in found.values()) > 0
     assert {name: (one.lost, one.doubled, one.broken) for name, one in found.items()} == dict.fromkeys(
         found, (0, 0, [])
@@ -61,3 +61,40 @@ def test_hostile_input_is_refused_in_words_or_taken_whole(lived_in: Lab) -> None
     assert found.faults == []
     assert found.inputs.total() >= 150
     assert {0, 2} <= set(found.statuses)
+
+
+# --- a server's own hard times ---------------------------------------------------------------------------------------
+
+
+def test_a_record_comes_back_to_the_minute_before_an_accident(postgresql: str) -> None:
+    """By a base backup and the log kept since, as the README says it."""
+    if sys.platform == "win32":
+        pytest.skip("the commands that keep the log are POSIX's")
+    found = recovery.tried()
+    assert found.at_backup < found.at_target < found.at_accident
+    assert (found.found, found.whole) == (found.at_target, True)
+
+
+def test_a_server_that_stops_under_its_writers_keeps_what_was_acknowledged(postgresql: str) -> None:
+    found = restarts.run(2)
+    assert (found.stops, found.lost, found.doubled, found.half, found.broken) == (2, 0, 0, 0, [])
+    assert found.acknowledged > 0
+    assert found.cut > 0
+
+
+@pytest.mark.skipif(not full.may_mount(), reason="needs a file system of its own to fill")
+def test_a_disk_that_is_really_full(postgresql: str) -> None:
+    for found in (full.on_file(3), full.on_server(1)):
+        assert found.refused > 0
+        assert (found.lost, found.half, found.broken) == (0, 0, [])
+
+
+def test_whoever_is_cut_off_or_killed_at_a_server_leaves_it_whole(postgresql: str) -> None:
+    if sys.platform == "win32":
+        pytest.skip("SIGKILL and fork are POSIX's")
+    few = tuple(command for command in killed.COMMANDS if command.name in ("calibrate", "import"))
+    for how in ("postgresql", "cut"):
+        found = killed.run(1, how, seed=7, commands=few)
+        assert {name: (one.tried, one.lost, one.doubled, one.broken) for name, one in found.items()} == dict.fromkeys(
+            found, (1, 0, 0, [])
+        )
