@@ -11,7 +11,8 @@ from electrolog.clock import shown_moment, utc_now
 from electrolog.measure.calibrate import CalibrationFigures
 from electrolog.measure.slips import likely_slips
 from electrolog.record import sheets
-from electrolog.record.queries import Event
+from electrolog.record.doubles import Readings, first_double, readings_of
+from electrolog.record.queries import Calibration, Event
 from electrolog.record.sheets import Sheet
 from electrolog.units import shown_duration
 
@@ -57,6 +58,18 @@ def of_calibration(
         noise_na=values.get("noise_na"),
     )
     return [f"{values['electrode']}: {text}" for text in said]
+
+
+def entered_twice(values: Values, points: Sequence[tuple[float, float]], earlier: Sequence[Calibration]) -> list[str]:
+    """`earlier`: the probe's comparable calibrations."""
+    new = Readings(values["at"], values["stage"], tuple(points), values.get("sensitivity_na_um"))
+    found: Calibration | None = first_double(new, [(readings_of(one), one) for one in earlier])
+    if found is None:
+        return []
+    name, at = found.row["calibration"], shown_moment(found.at)
+    return [
+        f"{values['electrode']}: {new.said} as {name} of {at}: entered twice? `electrolog strike calibration {name}` takes that one out"
+    ]
 
 
 def _exposure(values: Values, life: Sequence[Event]) -> list[str]:

@@ -105,7 +105,9 @@ def log_calibrations(
         computed = [made.computed(_as_calibration(row, points), uncertainties) for row, points in rows]
         said = _doubts(writer, sheets.CALIBRATIONS, [row for row, _ in rows])
         for (row, points), figures in zip(rows, computed, strict=True):
-            said += asked.of_calibration(row, points, figures, _earlier(writer, row)) + _of_the_standard(writer, row)
+            earlier = _earlier(writer, row)
+            said += asked.entered_twice(row, points, earlier)
+            said += asked.of_calibration(row, points, figures, _figured(earlier)) + _of_the_standard(writer, row)
         _confirm(said, confirmed)
         entered = [
             _entered(writer, sheets.CALIBRATIONS, entry.add(writer, sheets.CALIBRATIONS, row, points), said)
@@ -209,11 +211,16 @@ def _doubts(writer: Writer, sheet: Sheet, rows: Sequence[dict[str, Value]]) -> l
     ]
 
 
-def _earlier(writer: Writer, row: dict[str, Value]) -> list[tuple[CalibrationFigures, list[float]]]:
+def _earlier(writer: Writer, row: dict[str, Value]) -> list[queries.Calibration]:
+    """The probe's comparable calibrations."""
     electrode_id = writer.names.row_id("electrodes", str(row["electrode"]))
     analyte_id = writer.names.row_id("analytes", str(row["analyte"]))
     waveform_id = writer.names.row_id("waveforms", str(row["waveform"]))
-    found = queries.calibrations(writer.connection, [electrode_id], analyte_id, waveform_id)
+    return queries.calibrations(writer.connection, [electrode_id], analyte_id, waveform_id)
+
+
+def _figured(found: Sequence[queries.Calibration]) -> list[tuple[CalibrationFigures, list[float]]]:
+    """With the concentrations used."""
     uncertainties: dict[str, float | None] = {}
     return [(made.figures_of(one, uncertainties), [c for c, _ in one.points]) for one in found]
 

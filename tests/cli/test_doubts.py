@@ -10,6 +10,8 @@ from typing import Any
 
 import pytest
 
+from tests.cli.conftest import POINTS
+
 CAL = ("calibrate", "B07-01", "interim", "DA", "-w", "triangle")
 RISING = ("0:0.1", "0.5:6.1,6.3", "1:12.2", "2:24")
 SLIPS = {
@@ -19,6 +21,17 @@ SLIPS = {
     "an inverse factor": (*CAL, "--factor", "0.0838"),
     "a reversed point": (*CAL, "0:0.1", "0.5:12.2", "1:6.1", "2:24"),
     "negative currents": ("calibrate", "B9-01", "pre", "DA", "0:0.1", "1:-12", "2:-24", "-w", "triangle"),
+    "the same points again": (
+        "calibrate",
+        "B07-03",
+        "pre",
+        "DA",
+        *POINTS,
+        "-w",
+        "triangle",
+        "--at",
+        "2026-01-07T11:10Z",
+    ),
     "another analyte's standard": (
         "calibrate",
         "B9-01",
@@ -122,3 +135,12 @@ def at_a_terminal(arguments: list[str], typed: str) -> tuple[str, int]:
 def test_the_scratch_folder_holds_nothing_but_the_record(cli: Any, tmp_path: Path) -> None:
     cli.refused(*SLIPS["the future"])
     assert {path.name.split("-")[0] for path in tmp_path.iterdir()} == {"record.db"}
+
+
+def test_a_calibration_entered_twice_names_the_first_and_how_to_take_it_out(cli: Any) -> None:
+    said = cli.refused(*SLIPS["the same points again"])
+    assert "B07-03: the same 6 points as C0044 of " in said
+    assert "entered twice? `electrolog strike calibration C0044` takes that one out" in said
+    cli.ok(*SLIPS["the same points again"][:-1], "2026-01-09T11:10Z")  # of another day they are no copy
+    cli.ok("strike", "calibration", "C0044", "--why", "twice")
+    cli.ok(*SLIPS["the same points again"])

@@ -14,6 +14,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
+from electrolog.answers.entering import NewCalibration
 from electrolog.errors import InputError
 from electrolog.lab import Lab, open_lab
 from electrolog.record.books.extraction import Extraction
@@ -404,3 +405,44 @@ def test_an_entry_of_a_probes_column_names_that_columns_cells(lab: Lab, tmp_path
     found = lab.adopt(path, answers=answers)
     assert [row.place for row in found.rows if row.sheet == "calibrations"] == ["grid!B2", "grid!C2", "grid!C3"]
     assert [one for one in found.remarks if one.kind != "doubtful"] == []
+
+
+# --- entered already ----------------------------------------------------------------------------------------------
+
+
+def test_a_calibration_that_the_record_has_under_another_label_is_asked_about(
+    lab: Lab, book: Callable[..., Path]
+) -> None:
+    path = book(GOOD, ["K-2", "2024-03-04", "pre", 8.0, ""])
+    lab.make_probes(["K-1"])
+    typed = {"electrode": "K-1", "at": "2024-03-04T14:00Z", "stage": "pre", "analyte": "DA", "waveform": "triangle"}
+    lab.calibrate([NewCalibration({**typed, "sensitivity_na_um": "12nA/uM"})])
+    found = lab.adopt(path, answers=ANSWERS)
+    (asked,) = found.questions
+    assert (asked.key, asked.accepted) == ("doubles", ("leave", "take"))
+    assert asked.why.startswith("Sheet!A2:E2 holds the same factor as C0001 of the record, 2024-03-04 ")
+    assert "entered twice?" in remarks(lab, path, "doubtful")["Sheet!A2:E2"]
+    left = lab.adopt(path, answers={"doubles": "leave"}, commit=True)
+    assert [row.name for row in left.rows if row.sheet == "calibrations"] == ["K-2_2024-03-04_pre_dopamine"]
+    assert len(lab.rows("calibrations")) == 2
+    lab.adopt(path, answers={"doubles": "take"}, commit=True)
+    assert len(lab.rows("calibrations")) == 3
+    again = lab.adopt(path, answers={"doubles": "leave"})
+    assert [row.state for row in again.rows] == ["there already"] * 4
+
+
+def test_points_that_a_book_holds_twice_are_asked_about(lab: Lab, tmp_path: Path) -> None:
+    path = tmp_path / "twice.csv"
+    rows = (
+        "K-1,2024-03-04,09:00,pre,5.1,10.2",
+        "K-1,2024-03-04,09:10,pre,5.1,10.2",
+        "K-1,2024-03-09,09:00,pre,5.1,10.2",
+    )
+    path.write_text("\n".join(("Probe,Date,Time,Stage,0.5 uM (nA),1 uM (nA)", *rows)), encoding="utf-8")
+    (asked,) = lab.adopt(path, answers=ANSWERS).questions
+    assert asked.why == "twice!A3:F3 holds the same 2 points as twice!A2:F2, 2024-03-04 09:00"
+    lab.adopt(path, answers={"doubles": "leave"}, commit=True)
+    assert [row["at"].isoformat() for row in lab.rows("calibrations")] == [
+        "2024-03-04T09:00:00+00:00",
+        "2024-03-09T09:00:00+00:00",
+    ]

@@ -9,6 +9,7 @@ from pathlib import Path
 
 from electrolog.errors import InputError, shortened, unknown
 from electrolog.record.books.days import ORDERS
+from electrolog.record.books.doubles import CHOICES, without_doubles
 from electrolog.record.books.drafts import Draft, Extract, Question, Remark
 from electrolog.record.books.extraction import Extraction
 from electrolog.record.books.grid import Book
@@ -30,6 +31,7 @@ ACCEPTED = {
     "sheet_name": ("probe", "subject", "nothing"),
     "blank_probe": ("above", "refuse"),
     "coated": ("before", "note"),
+    "doubles": CHOICES,
     "probe_columns": ("probes", "nothing"),
     "struck": ("take", "leave"),
     **{f"unit_{field}": units_of(field) for field in NEEDED},
@@ -98,10 +100,11 @@ def adopt(
     mapping = replace(mapping, headings=_learned(out, mapping))
     if mapping != kept:  # a file that somebody edited keeps its look as long as nothing is new
         write_mapping(file, mapping, book.name)
+    with record.reading() as connection:
+        drafts = without_doubles(connection, unique(out), out, mapping)
     open_questions = [one for one in out.questions.values() if not one.key.startswith("same:")]
     if commit and open_questions:
         raise _unanswered(book, open_questions, file)
-    drafts = unique(out)
     states: dict[int, str] = {}
     if not open_questions:
         origin = Origin(book.name, book.fingerprint)

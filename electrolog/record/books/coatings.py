@@ -12,6 +12,7 @@ from electrolog.record.books.mapping import BookMapping
 from electrolog.record.books.numbers import UNKNOWN
 from electrolog.record.books.views import Found, View
 from electrolog.record.books.vocabulary import Vocabulary
+from electrolog.record.columns import Value
 
 BARE = {*UNKNOWN, "no", "bare", "uncoated", "none (bare)", "0"}
 BEFORE = timedelta(hours=1)  # the entry that first names a coating whose day nobody wrote down
@@ -72,5 +73,5 @@ class Coatings:
         key = electrode, word, at
         first = self.found.get(key)
         if first is None or (known is None and when < first.values["at"]):  # type: ignore[operator]
-            values = {"electrode": electrode, "at": when, "material": word, "note": f"{assumed}{note}"}
-            self.found[key] = Draft("coatings", {**values}, view.range)
+            values: dict[str, Value] = {"electrode": electrode, "at": when, "material": word}
+            self.found[key] = Draft("coatings", values | {"note": f"{assumed}{note}"}, view.range)
