@@ -11,7 +11,7 @@ from sqlalchemy import Connection, select
 
 from electrolog.errors import InputError, shortened
 from electrolog.record import journal, schema
-from electrolog.record.sheets import BY_NAME, SHEETS
+from electrolog.record.sheets import BY_NAME, CALIBRATIONS, SHEETS
 
 Place = tuple[str, int, int]  # sheet, row number, place of a point (0 for any other row)
 Rows = dict[Place, dict[str, Any]]
@@ -125,8 +125,7 @@ def _found(connection: Connection) -> Rows:
 
 
 def _compared(place: Place, expected: dict[str, Any] | None, found: dict[str, Any] | None) -> list[str]:
-    sheet, row_id, number = place
-    what = f"{BY_NAME[sheet].one} {row_id}" + (f", point {number}" if number else "") if sheet in BY_NAME else sheet
+    what = _called(place, expected or found or {})
     if found is None:
         return [f"{what}: was removed behind the journal's back"]
     if expected is None:
@@ -137,3 +136,15 @@ def _compared(place: Place, expected: dict[str, Any] | None, found: dict[str, An
         for name in sorted(expected.keys() | plain.keys())
         if expected.get(name) != plain.get(name)
     ]
+
+
+def _called(place: Place, row: dict[str, Any]) -> str:
+    """As `amend` takes it: `exposure 119`, `calibration 4, point 2`; with its label where the row has one."""
+    name, row_id, number = place
+    if name not in BY_NAME:
+        return shortened(name)
+    if number:
+        return f"{CALIBRATIONS.one} {row_id}, point {number}"
+    sheet = BY_NAME[name]
+    label = row.get(sheet.key[0]) if len(sheet.key) == 1 else None
+    return f"{sheet.one} {row_id}" + (f" ({shortened(str(label))})" if label is not None else "")

@@ -60,22 +60,25 @@ def test_the_hash_can_be_made_without_electrolog(shared: Lab, raw: Raw) -> None:
     [
         ("UPDATE exposures SET duration_min = 60 WHERE id = 1", "exposure 1: duration_min was changed"),
         ("UPDATE exposures SET note = 'x' WHERE id = 1", "exposure 1: note was changed"),
-        ("UPDATE calibrations SET noise_na = NULL WHERE id = 1", "calibration 1: noise_na was changed"),
+        ("UPDATE calibrations SET noise_na = NULL WHERE id = 1", "calibration 1 (C0001): noise_na was changed"),
         (
             "UPDATE calibration_points SET current_na = 1 WHERE calibration_id = 1 AND ordinal = 3",
-            "point 3: current_na",
+            "calibration 1, point 3: current_na",
         ),
         ("UPDATE cleanings SET at = '2026-01-08T16:00:01.000000Z' WHERE id = 1", "cleaning 1: at was changed"),
-        ("UPDATE batches SET made_on = '2026-01-06' WHERE id = 1", "batch 1: made_on was changed"),
-        ("UPDATE calibrations SET struck = 3 WHERE id = 1", "calibration 1: struck was changed"),
-        ("UPDATE electrodes SET electrode = 'B1-99' WHERE id = 2", "probe 2: electrode was changed"),
+        ("UPDATE batches SET made_on = '2026-01-06' WHERE id = 1", "batch 1 (B1): made_on was changed"),
+        ("UPDATE calibrations SET struck = 3 WHERE id = 1", "calibration 1 (C0001): struck was changed"),
+        ("UPDATE electrodes SET electrode = 'B1-99' WHERE id = 2", "probe 2 (B1-02): electrode was changed"),
         ("DELETE FROM recuts", "re-cut 1: was removed"),
-        ("DELETE FROM calibration_points WHERE calibration_id = 2 AND ordinal = 6", "point 6: was removed"),
-        ("INSERT INTO electrodes (id, electrode) VALUES (77, 'X')", "probe 77: was added"),
+        (
+            "DELETE FROM calibration_points WHERE calibration_id = 2 AND ordinal = 6",
+            "calibration 2, point 6: was removed",
+        ),
+        ("INSERT INTO electrodes (id, electrode) VALUES (77, 'X')", "probe 77 (X): was added"),
         (
             "INSERT INTO calibration_points (calibration_id, ordinal, concentration_um, current_na) "
             "VALUES (1, 7, 1, 1)",
-            "point 7: was added",
+            "calibration 1, point 7: was added",
         ),
     ],
 )
