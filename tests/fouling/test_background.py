@@ -65,3 +65,10 @@ def test_what_is_left_is_the_normals_product() -> None:
     weight = 0.15**-2 + 0.05**-2
     assert kept.mean() == pytest.approx((-0.3 * 0.15**-2 - 0.1 * 0.05**-2) / weight, abs=1e-3)
     assert kept.std() == pytest.approx(weight**-0.5, rel=0.02)
+
+
+@pytest.mark.parametrize(("count", "enough"), [(20, True), (19, False)])
+def test_twenty_pairs_are_enough(count: int, enough: bool) -> None:
+    every = pairs(0.4, 0.02, seed=1, probes=10)
+    some = {name: getattr(every, name)[:count] for name in ("forecast", "reading", "smoothed", "background", "probe")}
+    assert ("are needed" in tried(replace(every, **some)).said) is not enough

@@ -182,3 +182,9 @@ def test_two_hundred_runs_on_two_thousand_probes_take_less_than_two_seconds_of_w
     places = assign(asked)
     assert time.process_time() - began < 2.0
     assert all(place.probe is not None for place in places)
+
+
+def test_odds_are_read_between_the_tables_points_to_its_end():
+    table = SuccessTable(np.array([0.0, 60.0, 120.0]), np.array([[1.0, 0.8, 0.2]]))
+    wear = np.array([0.0, 30.0, 60.0, 90.0, 120.0, 121.0])
+    assert table.at(np.zeros(6, dtype=int), wear) == pytest.approx([1.0, 0.9, 0.8, 0.5, 0.2, np.nan], nan_ok=True)

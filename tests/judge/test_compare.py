@@ -152,3 +152,10 @@ def test_with_the_probes_it_asks_for_the_difference_is_found_as_often_as_promise
         for _ in range(250)
     ]
     assert np.mean(found) == pytest.approx(0.8, abs=0.06)
+
+
+def test_a_ratio_of_small_numbers_is_a_ratio_like_any_other():
+    large = {"a": [3.0, 4.0, 5.0], "b": [1.5, 2.5, 2.0]}
+    small = {group: [value / 100 for value in values] for group, values in large.items()}
+    found = [compare(Groups(values={"level": one}, ratio_measures=("level",))).differences[0] for one in (large, small)]
+    assert (found[0].low, found[0].high) == pytest.approx((found[1].low, found[1].high))

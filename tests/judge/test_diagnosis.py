@@ -135,3 +135,9 @@ def test_two_causes_can_hold_at_once():
     both = replace(MADE["fouling"], log_selectivity=-0.8)
     likely = {finding.cause for finding in diagnose(both).findings if finding.judgement == LIKELY}
     assert likely == {"fouling", "loss of coating"}
+
+
+@pytest.mark.parametrize("decades", [-6, -3, -1, 1, 3, 6])
+def test_a_slip_is_found_whichever_way_the_point_went(decades):
+    found = diagnose(replace(RESTED, log_change=decades * np.log(10) + 0.02))
+    assert finding(found, "a slip of entry").judgement == LIKELY

@@ -3,6 +3,7 @@
 import numpy as np
 import pytest
 from scipy.special import ndtr, ndtri
+from scipy.stats import norm
 
 from electrolog.judge.scores import coverage, crps, log_score, odds_score, pit, share_interval
 
@@ -72,3 +73,15 @@ def test_odds_that_come_true_are_told_from_odds_that_do_not():
     assert sum(count for *_, count in honest.classes) == 20_000
     assert [int(said * 5) for said, *_ in honest.classes] == [0, 1, 2, 3, 4]
     assert odds_score(np.array([1.0, 0.0]), np.array([True, False])).brier == 0.0
+
+
+def test_log_score_of_few_draws_is_minus_the_log_of_the_mean_density():
+    draws, reading, sd = np.array([[0.1, -0.4, 0.9]]), np.array([0.3]), np.array([0.5])
+    expected = -np.log(norm.pdf(reading[0], draws[0], sd[0]).mean())
+    assert log_score(draws, reading, sd)[0] == pytest.approx(expected, rel=1e-12)
+
+
+def test_the_mean_width_is_that_of_the_interval():
+    """Of a standard normal, 90 %: 2 · 1.6449."""
+    found = coverage(np.vstack([LEVELS, 3 * LEVELS]), np.zeros(2))
+    assert found.mean_width == pytest.approx(2 * 2 * 1.6449, rel=1e-3)

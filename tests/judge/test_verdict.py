@@ -10,6 +10,7 @@ import pytest
 from electrolog.errors import InputError
 from electrolog.judge.facts import CalibrationFacts
 from electrolog.judge.verdict import judge
+from electrolog.judge.words import chance
 from tests.judge.known_probes import DRAWS, Known, fresh, limits, question
 
 
@@ -297,3 +298,10 @@ def test_a_calibration_without_any_figures_still_gives_an_answer():
     bare = CalibrationFacts(age_h=1.0)
     assert judge(question(Known(rate=0.0), calibration=bare)).verdict == "fit"
     assert len(question().log_sensitivity_at(0.0)) == DRAWS
+
+
+@pytest.mark.parametrize(
+    ("p", "said"), [(0.0, "<1 %"), (0.0099, "<1 %"), (0.01, "1 %"), (0.99, "99 %"), (0.991, ">99 %"), (1.0, ">99 %")]
+)
+def test_odds_from_draws_are_never_said_to_be_none_or_certain(p, said):
+    assert chance(p) == said

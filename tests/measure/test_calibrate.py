@@ -280,3 +280,16 @@ def test_the_ordinary_path_loads_nothing_heavy():
     )
     ran = subprocess.run([sys.executable, "-c", program], capture_output=True, text=True, check=True, encoding="utf-8")
     assert ran.stdout.strip() == "[]"
+
+
+def test_two_points_lie_on_their_line_by_nature():
+    assert not any("exactly on the line" in said for said in calibrate([0, 1], [0.1, 12.2]).warnings)
+
+
+@pytest.mark.parametrize("scale", [1.0, 0.01])
+def test_how_far_it_is_linear_does_not_depend_on_the_slopes_size(scale):
+    x = np.array([0, 0.5, 1, 2, 4])
+    line = fit_line(x, scale * np.array([0.1, 6.1, 12.2, 24.0, 40.0]))
+    assert linear_to_um(line, share=0.08) == linear_to_um(
+        fit_line(x, np.array([0.1, 6.1, 12.2, 24.0, 40.0])), share=0.08
+    )

@@ -71,6 +71,11 @@ def test_the_usual_rules(tail, rule):
     assert all(index >= 20 for index, _ in chart.signals)
 
 
+@pytest.mark.parametrize("tail", [[2.9], [2.5, 0.0, 0.0, 2.5], [2.5, -2.5], [1.5, 1.5, 0.0, 0.0, 1.5, 1.5], [0.5] * 7])
+def test_one_less_than_the_rules_need_breaks_none(tail):
+    assert individuals([0.564, -0.564] * 10 + tail, baseline=20).signals == ()
+
+
 def test_false_alarms_are_as_rare_as_published():
     """Three standard deviations are passed by 0.27 % of points in control; estimated limits make it a little more."""
     x = np.random.default_rng(12).normal(0, 1, 20_000)

@@ -51,3 +51,22 @@ def test_a_stock_a_little_too_strong_is_diluted_a_little():
     plan = plan_dilutions(30.0, [0.05, 5.0], volume_ml=5)
     assert plan.intermediate is not None
     assert plan.intermediate.concentration_um == 15.0
+
+
+FLASKS_ML = (1, 2, 5, 10, 20, 25, 50, 100, 200, 250, 500, 1000)  # of those that ISO 1042 names, from memory
+
+
+@pytest.mark.parametrize(
+    ("stock_um", "wanted_um", "volume_ml", "flask_ml"),
+    [
+        (1e6, (0.25, 0.5, 1.0, 2.0), 50.0, 10.0),  # 0.01 mL at a thousandth fills just that one
+        (1000.0, (0.0011, 22.0), 1000.0, 250.0),
+        (10_000.0, (0.25, 0.5, 1.0, 2.0), 50.0, 1.0),
+    ],
+)
+def test_the_intermediate_is_made_in_the_smallest_flask_that_holds_it(stock_um, wanted_um, volume_ml, flask_ml):
+    plan = plan_dilutions(stock_um, wanted_um, volume_ml=volume_ml)
+    assert plan.intermediate.make_up_to_ml == flask_ml
+    factor = plan.intermediate.make_up_to_ml / plan.intermediate.take_ml
+    needed = max(sum(step.take_ml for step in plan.steps), 0.01 * factor)
+    assert flask_ml == min(size for size in FLASKS_ML if size >= needed * (1 - 1e-9))

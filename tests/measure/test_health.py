@@ -121,3 +121,9 @@ def test_honest_days_are_accused_rarely():
     random = np.random.default_rng(1)
     accused = sum(shared_shift(random.normal(0, 0.05, 5)) is not None for _ in range(3000))
     assert accused / 3000 == pytest.approx(0.01, abs=0.006)
+
+
+@pytest.mark.parametrize(("noise_na", "noisier"), [(0.073, False), (0.077, True)])
+def test_noise_half_as_high_again_is_too_high(noise_na, noisier):
+    """0.05 nA before: common practice."""
+    assert bool(unhealthy(replace(NOW, noise_na=noise_na), [BEFORE])) is noisier

@@ -92,3 +92,11 @@ def test_a_vanishing_affinity_is_the_line():
     x = np.array([0, 0.25, 0.5, 1, 2, 4])
     y = 20 * x / (1 + 1e-3 * x)
     assert fit_saturating(x, y).sensitivity_na_um == pytest.approx(fit_line(x[:3], y[:3]).slope_na_um, rel=1e-3)
+
+
+def test_four_concentrations_are_enough():
+    x = np.array([0.5, 1.0, 2.0, 4.0])
+    fit = fit_saturating(x, 0.3 + 12 * x / (1 + 0.4 * x))
+    assert (fit.sensitivity_na_um, fit.affinity_per_um, fit.offset_na) == pytest.approx((12, 0.4, 0.3), rel=1e-6)
+    with pytest.raises(DataError, match="found 3"):
+        fit_saturating(x[:3], x[:3])

@@ -193,3 +193,8 @@ def test_a_sheet_beyond_all_measure_is_refused_before_it_is_read(made):
 
     with pytest.raises(InputError, match="2000000000 samples are too many at once"):
         read_scans(Endless(), made[1], made[2])
+
+
+def test_a_short_recording_is_drawn_scan_by_scan(made, reading):
+    change, times = response_map(made[0][:600], reading)
+    assert (change.shape, len(times)) == ((600, 500), 600)

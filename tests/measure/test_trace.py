@@ -4,6 +4,7 @@ import numpy as np
 import pytest
 
 from electrolog.errors import DataError, InputError
+from electrolog.measure.drift import scatter_about_line
 from electrolog.measure.recording import Span
 from electrolog.measure.trace import TraceSettings, read_trace
 from tests.measure.recordings import CONCENTRATIONS, SENSITIVITY, trace
@@ -228,3 +229,17 @@ def test_scale_and_offset_change_nothing_but_scale():
     plain, scaled = read_trace(time, current), read_trace(time + 1000, 3 * current + 50)
     assert levels(scaled) == pytest.approx(3 * levels(plain), rel=1e-6)
     assert [one.rise_s for one in scaled.plateaus] == pytest.approx([one.rise_s for one in plain.plateaus], rel=1e-4)
+
+
+def test_rise_and_fall_are_read_between_the_samples():
+    """From a tenth to nine tenths an exponential takes τ·ln 9: to a percent, with half a second between samples."""
+    time, current, _ = trace(rate_hz=2, noise_na=1e-4, rise_s=2, fall_s=5, drift=(0, 0, 0), concentration=(1, 2, 1, 2))
+    for one in read_trace(time, current).plateaus:
+        assert one.rise_s == pytest.approx(2 * np.log(9), rel=0.01)
+        assert one.fall_s == pytest.approx(5 * np.log(9), rel=0.01)
+
+
+def test_noise_is_what_is_left_of_a_line_by_least_squares():
+    time, current = np.array([0.0, 1.0, 2.5, 4.0]), np.array([1.0, 1.3, 0.7, 1.9])
+    left = current - np.polyval(np.polyfit(time, current, 1), time)
+    assert scatter_about_line(time, current) == pytest.approx(np.sqrt(left @ left / (4 - 2)))

@@ -118,3 +118,27 @@ def test_a_weighted_lines_detection_limit_rests_on_the_scatter_of_a_blank():
         x, y = made(random, 4, 0.05, noise=0.1)
         found.append(calibrate(x, y, weights=weights.from_error_model(SLOPE * x + 1e-9, 0.1, 0.05)).lod_um)
     assert np.median(found) == pytest.approx(3 * 0.1 / SLOPE, rel=0.1)
+
+
+@pytest.mark.parametrize("through_zero", [True, False])
+def test_the_allowance_is_that_of_the_formulas_with_full_matrices(through_zero):
+    """Residual maker M = I - H, size yᵀMy / tr(MV), Satterthwaite's tr(MV)² / tr(MVMV), written out here."""
+    x = np.repeat(LEVELS[1:], 4)
+    y = SLOPE * x * (1 + 0.08 * np.random.default_rng(3).normal(size=x.size))
+    found = allowance(fit_line(x, y, through_zero=through_zero))
+    design = x[:, None] if through_zero else np.column_stack([np.ones_like(x), x])
+    rows = np.linalg.pinv(design)
+    maker, variance = np.eye(x.size) - design @ rows, np.diag(x**2)
+    scattered = maker @ variance
+    size = (y @ maker @ y) / np.trace(scattered)
+    assert found.se_na_um == pytest.approx(np.sqrt(size * rows[-1] @ variance @ rows[-1]))
+    assert found.degrees_of_freedom == pytest.approx(np.trace(scattered) ** 2 / np.trace(scattered @ scattered))
+
+
+def test_a_line_without_a_slope_has_no_part_in_the_pooled_growth():
+    random = np.random.default_rng(5)
+    lines = [fit_line(*made(random, 1, 0.15, noise=0.01)) for _ in range(30)]
+    flat = fit_line([0.0, 1.0, 2.0], [1.0, 2.0, 1.0])
+    assert flat.slope_na_um == 0.0
+    assert pooled_growth(lines) is not None
+    assert pooled_growth([*lines, flat]) == pooled_growth(lines)
