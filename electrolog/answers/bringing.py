@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
-from datetime import tzinfo
+from datetime import datetime, tzinfo
 from pathlib import Path
 from typing import TYPE_CHECKING
 
@@ -14,6 +14,7 @@ if TYPE_CHECKING:
     from electrolog.answers.entering import Entered
     from electrolog.answers.methods import Described
     from electrolog.answers.recordings.runs import Runs
+    from electrolog.answers.recordings.wanted import Enclosed
     from electrolog.record.books.adoption import Adoption
     from electrolog.record.exchange_files import Progress
 
@@ -80,6 +81,40 @@ class Bringing:
 
         return list_recordings(self.record, folder, Asking(Given(setting), zone=self.zone), progress or _unheard)
 
+    def enclose(  # noqa: PLR0913 -- each is an option of the command
+        self,
+        file: Path,
+        analyte: str,
+        *,
+        probe: str | None = None,
+        waveform: str | None = None,
+        convert: bool = False,
+        series: str | None = None,
+        unit: str = "uM",
+        setting: str | None = None,
+        needs_um: float | None = None,
+        exposure: int | None = None,
+        start: datetime | None = None,
+        rate_hz: float | None = None,
+        out: Path | None = None,
+        in_place: bool = False,
+        again: bool = False,
+    ) -> Enclosed:
+        """Puts a probe's papers into an NWB recording (a copy, unless `in_place`), or beside a .csv, .npy or .h5 one.
+
+        Electrode, calibrations, factor in force and verdict as they stood when the run began; with `convert` the
+        concentration (`unit`: uM or nM) with its 90 % band as well. Papers that are there already are a refusal,
+        unless `again`.
+        """
+        from electrolog.answers.recordings.enclosing import enclosed
+        from electrolog.answers.recordings.wanted import Wanted
+
+        wanted = Wanted(
+            file, analyte, probe, waveform, setting, exposure, start, rate_hz, needs_um, convert, series, unit, out,
+            in_place, again,
+        )  # fmt: skip
+        return enclosed(self.record, wanted, self.zone)
+
     def again(
         self,
         labels: Sequence[str],
@@ -98,6 +133,12 @@ class Bringing:
         from electrolog.answers.methods import methods
 
         return methods(self.record, labels, analyte, waveform)
+
+    def dictionary(self) -> list[dict[str, str]]:
+        """What every column of every sheet means: unit, bounds, what it accepts."""
+        from electrolog.answers.dictionary import entries
+
+        return entries()
 
 
 def _unheard(what: str, done: int) -> None:

@@ -38,7 +38,10 @@ MOST_STEPS = 480  # at which the sensitivity is drawn: every minute of eight hou
 
 @dataclass(frozen=True)
 class Wanted:
-    """What is to be converted, with what it was recorded; `exposure` and `start` say in which run."""
+    """What is to be converted, with what it was recorded; `exposure` and `start` say in which run.
+
+    `trace`: its seconds and nA, where they have been read already.
+    """
 
     file: Path
     probe: str
@@ -48,6 +51,7 @@ class Wanted:
     start: datetime | None = None
     rate_hz: float | None = None
     background: Background | None = None
+    trace: tuple[Floats, Floats] | None = None
 
 
 @dataclass(frozen=True)
@@ -152,7 +156,7 @@ def converted(record: Record, wanted: Wanted) -> Converted:
 
 
 def _recording(wanted: Wanted) -> tuple[Floats, Floats]:
-    time_s, current_na = signal_files.trace_from(wanted.file, wanted.rate_hz)
+    time_s, current_na = wanted.trace or signal_files.trace_from(wanted.file, wanted.rate_hz)
     time_s = checked_clock(time_s)
     if len(current_na) != len(time_s) or not np.isfinite(current_na).any():
         raise InputError(f"{wanted.file.name}: {len(time_s)} times go with no current at all; each sample needs one")

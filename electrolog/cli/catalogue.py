@@ -58,6 +58,7 @@ COMMANDS: dict[str, dict[str, str]] = {
         "setup": "Make a record, or bring an older one up to date.",
         "add": "Add a word, an analyte or a waveform.",
         "runs": "Log the runs that a folder of recordings tells of: dry run first.",
+        "enclose": "Put a probe's papers into a recording, or beside it.",
         "adopt": "Take in a spreadsheet as the lab kept it: dry run first.",
         "backup": "Write a checked backup while others go on.",
         "restore": "Put a backup in the record's place.",
@@ -73,7 +74,7 @@ COMMANDS: dict[str, dict[str, str]] = {
 # What enters or changes something and only confirms it: silent with --quiet.
 WRITING = {
     *(set(COMMANDS["At the bench"]) - {"dilutions"}),
-    *("amend", "strike", "recompute", "add", "adopt", "runs", "template", "import", "export", "setup"),
+    *("amend", "strike", "recompute", "add", "adopt", "runs", "enclose", "template", "import", "export", "setup"),
 }
 HELP = {name: text for section in COMMANDS.values() for name, text in section.items()}
 

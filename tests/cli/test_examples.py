@@ -6,6 +6,7 @@ import ast
 import importlib
 import inspect
 import shlex
+from datetime import UTC, datetime
 from pathlib import Path
 from typing import Any
 
@@ -62,6 +63,8 @@ def prepare(name: str, cli: Any, folder: Path) -> None:
         (folder / "factors.csv").write_text("probe,date,stage,nA/uM\nK1,2024-03-04,pre,12\n", encoding="utf-8")
     elif name == "runs":
         write_nwb(folder / "recordings" / "B9-01.nwb")
+    elif name == "enclose":
+        write_nwb(folder / "B07-01_R1.nwb", began=datetime(2026, 1, 8, 9, tzinfo=UTC))
     elif name == "restore":
         cli.ok("backup", "backups")
         (written,) = (folder / "backups").iterdir()

@@ -11,6 +11,7 @@ from pathlib import Path
 from electrolog.answers.recordings import nwb
 from electrolog.answers.recordings.listed import LIST, Listed, read_list
 from electrolog.answers.recordings.naming import Labels, Named
+from electrolog.answers.recordings.plain_labels import labels_in
 from electrolog.answers.recordings.span import ENDINGS, span_s
 from electrolog.answers.recordings.told import Told
 from electrolog.clock import shown_moment
@@ -41,6 +42,7 @@ class Candidate:
     probe_from: str = ""
     start: datetime | None = None
     duration_min: float | None = None
+    sha256: str | None = None
     texts: dict[str, str | None] = field(default_factory=dict)
     said: list[str] = field(default_factory=list)
     doubts: list[str] = field(default_factory=list)
@@ -50,7 +52,7 @@ class Candidate:
     @property
     def recording(self) -> str:
         """Its name in the record; a copy with papers in it is the same recording."""
-        return self.path.stem.removesuffix(ENCLOSED)
+        return recording_of(self.file)
 
     @property
     def end(self) -> datetime:
@@ -84,7 +86,7 @@ class Folder:
             if not path.resolve().is_relative_to(self.path.resolve()):
                 raise InputError("lies outside this folder; accepted: a file in it")
             told = self._told(path, listed)
-            probes = self._probes(name, listed, told)
+            probes = self.probes(name, listed, told)
         except InputError as why:
             yield Candidate(name, path, refusals=[_without_name(why, path)])
             return
@@ -99,12 +101,13 @@ class Folder:
             raise InputError("there is no such file")
         if listed.start is None:
             raise InputError(f"when did it begin? accepted: a start in {LIST}, since such a file can't tell")
-        if listed.duration_s is not None:
-            return listed
-        first_s, last_s = span_s(path, None if row is None else row.rate_hz())
-        return replace(listed, duration_s=last_s - first_s)
+        first_s, last_s = 0.0, listed.duration_s
+        if last_s is None:
+            first_s, last_s = span_s(path, None if row is None else row.rate_hz())
+        return replace(listed, duration_s=last_s - first_s, probes=labels_in(path.with_name(f"{path.stem}{ENCLOSED}")))
 
-    def _probes(self, name: str, listed: Listed | None, told: Told) -> list[Named]:
+    def probes(self, name: str, listed: Listed | None, told: Told) -> list[Named]:
+        """Which probes recorded a file. Raises UnknownName, or InputError where it isn't told, or told twice."""
         own = [Named(self.labels.required(label), "its own entry") for label in told.probes]
         typed = self._typed(name, listed)
         if typed is not None:
@@ -142,7 +145,7 @@ class Folder:
 
     def _candidate(self, one: Candidate, listed: Listed | None, told: Told) -> Candidate:
         assert told.start is not None  # noqa: S101 -- refused before
-        one.start, one.duration_min = told.start, (told.duration_s or 0.0) / 60
+        one.start, one.duration_min, one.sha256 = told.start, (told.duration_s or 0.0) / 60, told.sha256
         names = ("subject", "setting", "waveform", "medium", "by", "note")
         one.texts = {name: None if listed is None else listed.text(name) for name in names}
         one.texts["subject"] = told.subject or self.given.subject
@@ -176,6 +179,10 @@ def plain_files(folder: Path) -> list[str]:
         for path in found
         if path.name != LIST and not any(part.startswith((".", "~")) or ENCLOSED in part for part in path.parts)
     )
+
+
+def recording_of(file: str) -> str:
+    return Path(file).stem.removesuffix(ENCLOSED)
 
 
 def _without_name(why: InputError, path: Path) -> str:

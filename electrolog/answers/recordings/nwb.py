@@ -18,6 +18,7 @@ from electrolog.errors import InputError, shortened
 
 MODULE = "electrolog_"  # begins the name of the group that we put into a file, one for each probe
 TABLE, LABEL = "electrode", "electrode"
+ORIGIN, SHA256 = "origin", "recording_sha256"
 # Stored values are currents after the series' own conversion and offset; NWB's unit of current is amperes.
 NANOAMPERES = {
     **dict.fromkeys(("amperes", "ampere", "amps", "amp", "a"), 1e9),
@@ -140,6 +141,7 @@ def told_by(path: Path, zone: tzinfo | None, listed: Told) -> Told:
             subject=listed.subject or subject,
             probes=own_labels(one.file),
             devices=_devices(one.file),
+            sha256=_first_sha256(one.file),
             zone_assumed=listed.zone_assumed or bool(own and own.zone_assumed and not listed.start),
             said=(*said, *_differing(listed, start, subject, zone)),
         )
@@ -167,6 +169,11 @@ def own_labels(file: Any) -> tuple[str, ...]:
     """The probes whose papers are in the file."""
     tables = [module.data_interfaces.get(TABLE) for module in own_modules(file)]
     return tuple(str(label) for table in tables if table is not None for label in table[LABEL].data[:])
+
+
+def _first_sha256(file: Any) -> str | None:
+    tables = [module.data_interfaces.get(ORIGIN) for module in own_modules(file)]
+    return next((str(table[SHA256].data[0]) for table in tables if table is not None), None)
 
 
 def own_modules(file: Any) -> list[Any]:

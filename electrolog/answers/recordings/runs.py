@@ -8,6 +8,7 @@ from dataclasses import dataclass, field
 from datetime import datetime, tzinfo
 from pathlib import Path
 
+from electrolog.answers.answer import Answer
 from electrolog.answers.recordings.candidates import (
     Candidate,
     Folder,
@@ -19,10 +20,11 @@ from electrolog.answers.recordings.listed import LIST, read_list, write_list
 from electrolog.answers.recordings.naming import Labels
 from electrolog.answers.recordings.standing import Standing, read_from
 from electrolog.answers.signal_files import fingerprint
-from electrolog.errors import InputError
+from electrolog.errors import InputError, unknown
 from electrolog.record import sheets
 from electrolog.record.books.drafts import Draft, Extract
 from electrolog.record.books.taking_in import take_in, unique
+from electrolog.record.books.vocabulary import Vocabulary, vocabulary
 from electrolog.record.columns import Value
 from electrolog.record.names import Names
 from electrolog.record.store import Record
@@ -47,7 +49,7 @@ class FoundRun:
 
 
 @dataclass(frozen=True)
-class Runs:
+class Runs(Answer):
     """`questions`: what no file tells, without which nothing is written. `unlisted`: files that a list must date."""
 
     folder: str
@@ -88,12 +90,13 @@ def runs(record: Record, folder: Path, asking: Asking, tell: Tell) -> Runs:
     """
     with record.reading() as connection:
         names = Names(connection)
-        given = _spelled(asking.given, names)
+        _refuse_unknown(asking.given, names)
         labels = Labels(spelling for spelling, _ in names.everything("electrodes").values())
-        found = list(Folder(folder, asking.zone, given, labels).candidates(tell))
-        Standing.of(connection).settle(found)
-        _check_words(found, names)
-        questions = _questions(found, names)
+        known, standing = vocabulary(connection), Standing.of(connection)
+    found = list(Folder(folder, asking.zone, asking.given, labels).candidates(tell))
+    standing.settle(found)
+    _check_words(found, known)
+    questions = _questions(found, known)
     listed = {row.file for row in read_list(folder)}
     unlisted = tuple(name for name in plain_files(folder) if name not in listed)
     if asking.commit and questions:
@@ -115,33 +118,29 @@ def list_recordings(record: Record, folder: Path, asking: Asking, tell: Tell) ->
     return write_list(folder, sorted(rows, key=lambda row: row["file"]))
 
 
-def _spelled(given: Given, names: Names) -> Given:
-    """With the record's spellings. Raises UnknownName."""
+def _refuse_unknown(given: Given, names: Names) -> None:
+    """Raises UnknownName."""
     if given.setting is not None:
         names.word("setting", given.setting)
     if given.waveform is not None:
         names.row_id("waveforms", given.waveform)
     for label in filter(None, (given.probe, *given.probes.values())):
         names.row_id("electrodes", label)
-    return given
 
 
-def _check_words(found: Sequence[Candidate], names: Names) -> None:
+def _check_words(found: Sequence[Candidate], known: Vocabulary) -> None:
     for one in found:
-        for column, look_up in (("setting", "setting"), ("medium", "medium")):
+        for column, words in (("setting", known.settings), ("medium", known.media)):
             text = one.texts.get(column)
-            try:
-                if text is not None:
-                    one.texts[column] = names.word(look_up, text)
-            except InputError as why:
-                one.refusals.append(why.message)
+            if text and text.casefold() not in words:
+                one.refusals.append(unknown(column, text, words.values()).message)
 
 
-def _questions(found: Sequence[Candidate], names: Names) -> tuple[str, ...]:
+def _questions(found: Sequence[Candidate], known: Vocabulary) -> tuple[str, ...]:
     asked = [one for one in found if not (one.refusals or one.there or one.texts.get("setting"))]
     if not asked:
         return ()
-    words = ", ".join(names.words("setting"))
+    words = ", ".join(known.settings.values())
     return (f"setting: where was the probe in {_counted(asked)}? --setting, or a column of {LIST}; accepted: {words}",)
 
 
@@ -160,7 +159,7 @@ def _taken_in(record: Record, chosen: Sequence[Candidate], commit: bool, tell: T
     origins = {}
     for done, (place, one) in enumerate(places.items()):
         tell("files fingerprinted", done)
-        origins[place] = (one.file, fingerprint(one.path) if commit else "")
+        origins[place] = (one.file, (one.sha256 or fingerprint(one.path)) if commit else "")
     out = Extract([Draft("exposures", _values(one, origins[place][1]), place) for place, one in places.items()])
     drafts = unique(out)
     states = take_in(record, drafts, out, FileOrigin(origins), commit)

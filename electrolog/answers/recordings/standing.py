@@ -10,7 +10,7 @@ from datetime import timedelta
 
 from electrolog.answers import doubts
 from electrolog.answers import life as lives
-from electrolog.answers.recordings.candidates import Candidate
+from electrolog.answers.recordings.candidates import Candidate, recording_of
 from electrolog.answers.signal_files import fingerprint
 from electrolog.clock import shown_moment, utc_now
 from electrolog.record import journal, queries, sheets
@@ -36,14 +36,14 @@ class Standing:
 
     probes: Mapping[str, Row]
     life: Mapping[str, Sequence[Event]]
-    given: Mapping[tuple[str, str], int]  # (file's name, SHA-256) -> exposure
+    given: Mapping[tuple[str, str], int]  # (recording, SHA-256) -> exposure
 
     @classmethod
     def of(cls, connection: Connection) -> Standing:
         probes = {probe["electrode"]: probe for probe in queries.probes(connection)}
         reasons = [(entry.reason, entry.row_id) for entry in journal.entries(connection, sheets.EXPOSURES.name)]
         found = [(match, row_id) for reason, row_id in reasons if (match := _READ_FROM.fullmatch(reason))]
-        given = {(_last(match[1]), match[2]): row_id for match, row_id in found}
+        given = {(recording_of(match[1]), match[2]): row_id for match, row_id in found}
         return cls(probes, queries.events(connection), given)
 
     def settle(self, found: Sequence[Candidate]) -> None:
@@ -90,11 +90,9 @@ class Standing:
     def _read_before(self, one: Candidate) -> int | None:
         """By its bytes, but only where its name is known: hashing a folder of large files takes minutes."""
         names = {name for name, _ in self.given}
-        return self.given.get((one.path.name, fingerprint(one.path))) if one.path.name in names else None
-
-
-def _last(file: str) -> str:
-    return file.rpartition("/")[2]
+        if one.recording not in names:
+            return None
+        return self.given.get((one.recording, one.sha256 or fingerprint(one.path)))
 
 
 def _compare(found: Sequence[Candidate]) -> None:

@@ -10,6 +10,7 @@ from datetime import datetime
 class Told:
     """None or empty: it doesn't say. `devices` may hold a label, `probes` are labels for certain.
 
+    `sha256`: of the file before anything of ours was put in, where we have put something in.
     `zone_assumed`: the start has no offset, and was read in the lab's zone. `said`: what else was assumed.
     """
 
@@ -19,4 +20,5 @@ class Told:
     probes: tuple[str, ...] = ()
     devices: tuple[str, ...] = ()
     zone_assumed: bool = False
+    sha256: str | None = None
     said: tuple[str, ...] = ()
