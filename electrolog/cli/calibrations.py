@@ -4,7 +4,7 @@ from typing import Annotated
 
 import typer
 
-from electrolog.cli.options import Analyte, Csv, Json, Labels, Waveform
+from electrolog.cli.options import Analyte, ChartOption, Csv, Json, Labels, Plain, Waveform
 from electrolog.cli.recording import FigureFile
 from electrolog.cli.session import lab_of
 from electrolog.errors import InputError, shortened
@@ -21,14 +21,17 @@ def command(
         str | None, typer.Option("--expecting", metavar="FROM-TO", help="Signal to be recorded: 50nM-1uM")
     ] = None,
     figure: FigureFile = None,
+    chart: ChartOption = False,
+    plain: Plain = False,
     json: Json = False,
     csv: Csv = False,
 ) -> None:
-    """Calibrations with all their figures, oldest first, and what speaks against them.
+    """Calibrations with all their figures, oldest first, and what speaks against them; drawn at a terminal.
 
     electrolog calibrations B07-01 --detection --expecting 50nM-1uM
     """
-    from electrolog.show import calibrations
+    from electrolog.show import calibrations, lines
+    from electrolog.show.terminal import Drawing, drawing
 
     lab = lab_of(ctx)
     found = lab.readings(lab.labels(labels), analyte=analyte, waveform=waveform, expected_um=_expected(expecting))
@@ -38,6 +41,7 @@ def command(
         draw_calibrations(figure, found)
     routes = {one.calibration: lab.detection(one) for one in found} if detection else {}
     calibrations.answer_list(found, json, csv, routes)
+    lines.answer(found, Drawing.NONE if json or csv else drawing(chart, plain))
 
 
 def _expected(text: str | None) -> tuple[float, float] | None:

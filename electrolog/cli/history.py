@@ -58,7 +58,8 @@ def command(
 
             draw(figure, found)
         courses.answer(found, how, against is Against.TIME)
-    history.answer(lab.readings(names, analyte=analyte, waveform=waveform), json, csv)
+    readings = lab.readings(names, analyte=analyte, waveform=waveform)
+    history.answer(readings, json, csv, how is Drawing.PLAIN)
 
 
 def _ahead(length: str, setting: str | None) -> Ahead:

@@ -12,7 +12,7 @@ from electrolog.show.tables import print_lines, print_table, with_error
 from electrolog.units import shown_number
 
 
-def answer(readings: Sequence[Reading], json: bool, csv: bool) -> None:
+def answer(readings: Sequence[Reading], json: bool, csv: bool, plain: bool = False) -> None:
     rows = [as_dict(reading) for reading in readings]
     if json:
         print_json(rows)
@@ -20,6 +20,8 @@ def answer(readings: Sequence[Reading], json: bool, csv: bool) -> None:
         print_csv(rows)
     elif not readings:
         print_lines("no calibration yet: log one with `electrolog calibrate`")
+    elif plain:
+        print_lines(*[_sentence(reading) for reading in readings], *_warned(readings))
     else:
         _print(readings)
 
@@ -62,8 +64,19 @@ def _print(readings: Sequence[Reading]) -> None:
         for reading in readings
     ]
     print_table(columns, rows, ("exposed (h)", "nA/µM", "share left"), ("waveform", "stage", "when", "analyte"))
-    said = [f"{reading.calibration}: {text}" for reading in readings for text in reading.warnings]
-    print_lines(*[f"! {text}" for text in said])
+    print_lines(*_warned(readings))
+
+
+def _warned(readings: Sequence[Reading]) -> list[str]:
+    return [f"! {reading.calibration}: {text}" for reading in readings for text in reading.warnings]
+
+
+def _sentence(one: Reading) -> str:
+    """One line per calibration: a table read aloud loses its columns."""
+    what = f"{one.electrode}, {one.stage} {one.analyte} {one.waveform}, {shown_moment(one.at)}"
+    value = with_error(one.figures.sensitivity_na_um, one.figures.sensitivity_se_na_um)
+    left = "the reference" if one.is_reference else f"{share(one)} left"
+    return f"{one.calibration}, {what}: {value} nA/µM after {shown_number(sum(one.exposure_h.values()))} h, {left}"
 
 
 def share(reading: Reading) -> str:

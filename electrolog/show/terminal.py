@@ -44,7 +44,9 @@ def _can_draw() -> bool:
 class Chart:
     """Points, intervals, bands and lines on axes that name their units."""
 
-    def __init__(self, along: str, up: str, *, x: tuple[float, float], y: tuple[float, float]) -> None:
+    def __init__(
+        self, along: str, up: str, *, x: tuple[float, float], y: tuple[float, float], rows: int = HEIGHT
+    ) -> None:
         import plotext
 
         self._library: Any = plotext
@@ -52,12 +54,12 @@ class Chart:
         self._figure.clear()
         self._figure.theme("colorless")
         self._width = min(width(), WIDEST)
-        self._figure.plot_size(self._width, HEIGHT)
+        self._figure.plot_size(self._width, rows)
         self._up = up
         self._figure.label(along, "x")
         self._x, self._y = _room(*x), _room(*y)
-        for axis, limits in (("x", self._x), ("y", self._y)):
-            ticks = round_ticks(*limits)
+        for axis, limits, about in (("x", self._x, 6), ("y", self._y, max(2, 6 * rows // HEIGHT))):
+            ticks = round_ticks(*limits, about)
             self._figure.ruler(axis).lim(*limits)
             self._figure.ruler(axis).ticks(ticks, [f"{tick:g}" for tick in ticks])
 

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import os
+import re
 import subprocess
 import sys
 import time
@@ -56,6 +57,37 @@ def test_plain_is_sentences(judged: Any) -> None:
     assert BOX not in out
     assert "forecast now: " in out
     assert "90 % interval" in out
+
+
+def test_history_in_sentences_has_no_table(judged: Any) -> None:
+    out = " ".join(judged.ok("history", "R1", "--plain").out.split())
+    assert "─" not in out
+    assert re.search(r"R1/1, R1, post dopamine triangle, .* after 4 h, [\d.]+ ± [\d.]+ % left", out)
+
+
+def test_calibrations_draw_points_line_and_what_is_left_over(judged: Any) -> None:
+    out = judged.ok("calibrations", "R1", "--chart").out
+    assert out.count(BOX) == 4  # of each calibration the line, and beneath it what it leaves over
+    assert "left over (nA)" in out
+    assert "o 6 points; · line; : detection limit" in out
+    for columns in ("60", "80", "200"):
+        drawn = judged.process("calibrations", "R1", "--chart", COLUMNS=columns).stdout.decode()
+        assert max(map(len, drawn.splitlines())) <= int(columns)
+
+
+def test_calibrations_point_by_point_in_sentences(judged: Any) -> None:
+    out = judged.ok("calibrations", "R1", "--plain").out
+    assert BOX not in out
+    readings = judged.ok("calibrations", "R1", "--json").json
+    assert len(re.findall(r"µM|nM", out)) > sum(len(one["points"]) for one in readings)
+    assert re.search(r"  2 µM: 15\.8 nA, 0\.\d+ nA above the line", out)
+    assert "isotherm" in judged.ok("calibrations", "R2", "--chart").out
+
+
+def test_only_the_newest_lines_are_drawn(judged: Any) -> None:
+    out = judged.ok("calibrations", "R1", "R2", "--chart").out
+    assert out.count(BOX) == 6
+    assert "1 earlier ones are not drawn" in out
 
 
 def test_along_time_there_is_no_forecast(judged: Any) -> None:
