@@ -24,7 +24,7 @@ from electrolog.record import columns as kinds
 from electrolog.record import schema
 from electrolog.record.columns import LARGEST, number_text
 from electrolog.record.schema import column_name
-from electrolog.record.sheets import POINTS, SHEETS, Sheet
+from electrolog.record.sheets import CALIBRATIONS, ELECTRODES, POINTS, SHEETS, Sheet
 
 NAMES = {
     "ix": "ix_%(table_name)s_%(column_0_N_name)s",
@@ -34,6 +34,8 @@ NAMES = {
     "pk": "pk_%(table_name)s",
 }
 _LIVE = text("struck IS NULL")
+FOLDED = (ELECTRODES, CALIBRATIONS)  # many, and looked up in any case
+LED = {CALIBRATIONS.name: {"analyte_id"}}  # links that an index for more than the link begins with
 _UTC_SHAPE = "0000-00-00T00:00:00.000000Z".replace("0", "[0-9]")
 
 
@@ -46,8 +48,7 @@ def full_metadata() -> MetaData:
     _guard_journal(full.tables["journal"])
     for sheet in SHEETS:
         _guard(sheet, full.tables[sheet.name])
-    calibrations = full.tables["calibrations"]
-    Index("ix_calibrations_analyte_waveform", calibrations.c.analyte_id, calibrations.c.waveform_id)
+    _index_cohorts(full.tables["calibrations"])
     for name, target in (("calibration_figures", "calibrations"), ("kept_fits", "analytes")):
         key = f"{target.removesuffix('s')}_id"
         full.tables[name].append_constraint(ForeignKeyConstraint([key], [f"{target}.id"]))
@@ -65,6 +66,13 @@ def _guard(sheet: Sheet, table: Table) -> None:
         table.append_constraint(PrimaryKeyConstraint("calibration_id", "ordinal"))
     else:
         _index(sheet, table)
+
+
+def _index_cohorts(table: Table) -> None:
+    """What came to one cohort since its fit, and what it measured on a day, found without reading the others'."""
+    for name, then in (("cohort", table.c.id), ("cohort_at", table.c.at)):
+        live = {"sqlite_where": _LIVE, "postgresql_where": _LIVE}
+        Index(f"ix_{table.name}_{name}", table.c.analyte_id, then, **live)
 
 
 def _guard_journal(table: Table) -> None:
@@ -132,9 +140,11 @@ def _index(sheet: Sheet, table: Table) -> None:
         sqlite_where=_LIVE,
         postgresql_where=_LIVE,
     )
-    leading = column_name(sheet.by_name[sheet.key[0]]) if sheet.key else ""
+    if sheet in FOLDED:
+        Index(f"ix_{sheet.name}_folded", func.lower(table.c[sheet.key[0]]))
+    led = {column_name(sheet.by_name[name]) for name in sheet.key[:1]} | LED.get(sheet.name, set())
     for column in sheet.columns:
-        if isinstance(column, kinds.Link) and column_name(column) != leading:
+        if isinstance(column, kinds.Link) and column_name(column) not in led:
             Index(f"ix_{sheet.name}_{column_name(column)}", table.c[column_name(column)])
 
 

@@ -180,9 +180,12 @@ def limits(connection: Connection) -> list[Row]:
 
 @dataclass(frozen=True)
 class Seen:
-    """How much of the record a fit has seen: its count of calibrations, and the newest correction's entry."""
+    """How much of the record a fit has seen: its calibrations, how many and the newest one's number, and the newest
+    correction's entry.
+    """
 
     readings: int
+    newest: int
     correction: int
 
 
@@ -198,9 +201,10 @@ class KeptFit:
 def to_be_seen(connection: Connection, analyte_id: int) -> Seen:
     """What a fit made now would see."""
     calibrations, journal = schema.tables["calibrations"], schema.journal
-    readings = select(func.count()).where(calibrations.c.analyte_id == analyte_id, calibrations.c.struck.is_(None))
-    newest = select(func.max(journal.c.seq)).where(schema.CORRECTIONS)
-    return Seen(connection.execute(readings).scalar_one(), connection.execute(newest).scalar() or 0)
+    live = calibrations.c.analyte_id == analyte_id, calibrations.c.struck.is_(None)
+    count, newest = connection.execute(select(func.count(), func.max(calibrations.c.id)).where(*live)).one()
+    correction = select(func.max(journal.c.seq)).where(schema.CORRECTIONS)
+    return Seen(count, newest or 0, connection.execute(correction).scalar() or 0)
 
 
 def grew_from(connection: Connection, seq: int, head: str) -> bool:
@@ -215,7 +219,7 @@ def kept_fit(connection: Connection, analyte_id: int) -> KeptFit | None:
     row = connection.execute(select(table).where(table.c.analyte_id == analyte_id)).first()
     if row is None:
         return None
-    seen = Seen(row.seen_readings, row.seen_correction)
+    seen = Seen(row.seen_readings, row.seen_newest or 0, row.seen_correction)
     return KeptFit(row.method, row.fingerprint, seen, row.made_at, json.loads(row.fit))
 
 
@@ -229,6 +233,7 @@ def keep_fit(
         "method": method,
         "fingerprint": fingerprint,
         "seen_readings": seen.readings,
+        "seen_newest": seen.newest,
         "seen_correction": seen.correction,
         "made_at": writer.at,
         "fit": json.dumps(fit, allow_nan=False),

@@ -27,7 +27,7 @@ from electrolog.record import columns as kinds
 from electrolog.record.columns import as_utc
 from electrolog.record.sheets import POINTS, SHEETS, Sheet
 
-REVISION = "0001"  # the newest migration; a test holds it equal to the newest file in migrations/
+REVISION = "0002"  # the newest migration; a test holds it equal to the newest file in migrations/
 
 metadata = MetaData()
 
@@ -70,7 +70,7 @@ class IsoDay(TypeDecorator[date]):
 @lru_cache(maxsize=1024)
 def fixed_width(moment: datetime) -> str:
     """One text for one moment. Kept for a while: a row, its journal entry and the entry's hash ask in turn."""
-    return moment.astimezone(UTC).replace(tzinfo=None).isoformat(timespec="microseconds") + "Z"
+    return moment.astimezone(UTC).isoformat(timespec="microseconds").removesuffix("+00:00") + "Z"
 
 
 Real: TypeEngine[float] = REAL().with_variant(
@@ -139,6 +139,7 @@ kept_fits = Table(
     SqlColumn("seen_correction", Integer, nullable=False),
     SqlColumn("made_at", UtcMoment(), nullable=False),
     SqlColumn("fit", SqlText, nullable=False),
+    SqlColumn("seen_newest", Integer),
 )
 
 # Alembic's own table, described here so that an ordinary command can look at it without loading Alembic.

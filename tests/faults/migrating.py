@@ -2,7 +2,7 @@
 
     python tests/faults/migrating.py
 
-The second migration is invented for it: a table rebuilt, rows filled in, an index. Whatever ended it, the record is as
+The last migration is invented for it: a table rebuilt, rows filled in, an index. Whatever ended it, the record is as
 it was or as it will be, whole; every copy made before is whole and holds what the record held; and the next `setup`
 brings it up.
 """
@@ -22,24 +22,26 @@ from sqlalchemy import make_url, text
 
 sys.path.insert(0, str(Path(__file__).resolve().parents[2]))
 
-from electrolog.record import migrate
+from electrolog.record import migrate, schema
 from electrolog.record.store import Record, connected
 from electrolog.record.verify import Verification, verify
 
+NOW = schema.REVISION
+NEXT = f"{int(NOW) + 1:04d}"
 INVENTED = '''
 """An invented step."""
 
 import sqlalchemy as sa
 from alembic import op
 
-revision = "0002"
-down_revision = "0001"
+revision = "{next}"
+down_revision = "{now}"
 
 
 def upgrade():
-    op.add_column("batches", sa.Column("drawer", sa.Text()))
-    op.execute("UPDATE batches SET drawer = 'left'")
-    with op.batch_alter_table("electrodes", recreate="auto") as table:
+    op.add_column("electrodes", sa.Column("drawer", sa.Text()))
+    op.execute("UPDATE electrodes SET drawer = 'left'")
+    with op.batch_alter_table("batches", recreate="auto") as table:
         table.add_column(sa.Column("drawer", sa.Text()))
         table.create_check_constraint("drawer_length", "length(drawer) < 100")
     op.create_index("ix_electrodes_drawer", "electrodes", ["drawer"])
@@ -52,9 +54,9 @@ CHILD = """
 import os, signal, sys
 from pathlib import Path
 from sqlalchemy import Engine, event
-where, folder, how, last = sys.argv[1], sys.argv[2], sys.argv[3], int(sys.argv[4])
+where, folder, how, last, revision = sys.argv[1], sys.argv[2], sys.argv[3], int(sys.argv[4]), sys.argv[5]
 from electrolog.record import copying, migrate, schema
-migrate.migrations_folder, schema.REVISION = lambda: Path(folder), "0002"
+migrate.migrations_folder, schema.REVISION = lambda: Path(folder), revision
 import alembic.command
 seen = 0
 def step(*_):
@@ -91,12 +93,13 @@ def folder_with(place: Path, more: str = "") -> Path:
     """The real migrations and the invented one."""
     folder = place / "migrations"
     shutil.copytree(migrate.migrations_folder(), folder, ignore=shutil.ignore_patterns("__pycache__"))
-    (folder / "versions" / "0002_invented.py").write_text(INVENTED.format(more=more), encoding="utf-8")
+    invented = INVENTED.format(more=more, now=NOW, next=NEXT)
+    (folder / "versions" / f"{NEXT}_invented.py").write_text(invented, encoding="utf-8")
     return folder
 
 
 def brought_up(where: str, folder: Path, how: str = "statement", last: int = 0) -> subprocess.CompletedProcess[str]:
-    command = [sys.executable, "-c", CHILD, where, str(folder), how, str(last)]
+    command = [sys.executable, "-c", CHILD, where, str(folder), how, str(last), NEXT]
     return subprocess.run(command, capture_output=True, encoding="utf-8", check=False, timeout=120)
 
 
@@ -119,14 +122,14 @@ def end_once(where: str, folder: Path, how: str, last: int, before: Verification
     try:
         revision, found = state(where)
         assert found == before, f"the record is not what it was: {found.faults[:1]}"
-        out.as_it_was += revision == "0001"
-        out.brought_up += revision == "0002"
+        out.as_it_was += revision == NOW
+        out.brought_up += revision == NEXT
         for copy in copies_of(connected(where)):
-            assert state(str(copy)) == ("0001", before), f"{copy.name} is not the record as it was"
+            assert state(str(copy)) == (NOW, before), f"{copy.name} is not the record as it was"
             out.copies += 1
         again = brought_up(where, folder)
         assert again.returncode == 0, again.stderr[-500:]
-        assert state(where) == ("0002", before), "the next setup did not bring it up"
+        assert state(where) == (NEXT, before), "the next setup did not bring it up"
     except AssertionError as why:
         out.broken.append(f"{how} {last}: {why}")
 

@@ -5,6 +5,7 @@ from __future__ import annotations
 import sqlite3
 from collections.abc import Callable
 from contextlib import closing
+from dataclasses import astuple
 from pathlib import Path
 from typing import Any
 
@@ -14,7 +15,8 @@ from sqlalchemy.exc import IntegrityError
 
 from electrolog.errors import RecordError
 from electrolog.lab import Lab, open_lab, set_up
-from electrolog.record import builtin, migrate, schema
+from electrolog.record import builtin, migrate, queries, schema
+from electrolog.record.names import Names
 from electrolog.record.store import connected, open_record
 from tests.faults import migrating
 
@@ -55,6 +57,17 @@ def test_a_populated_record_goes_down_and_up_again(lived_in: Lab, raw: Raw) -> N
     assert lived_in.verify().whole
     with pytest.raises(Exception, match="keeps every row"):
         raw(lived_in, "DELETE FROM analytes")
+
+
+def test_a_fit_kept_before_fits_knew_their_newest_calibration_is_still_used(lived_in: Lab, raw: Raw) -> None:
+    lived_in.cohort_fit("dopamine")
+    with lived_in.record.reading() as connection:
+        seen = queries.to_be_seen(connection, Names(connection).row_id("analytes", "dopamine"))
+    migrate.to_revision(lived_in.record, "0001")
+    assert "seen_newest" not in {column["name"] for column in inspect(lived_in.record.engine).get_columns("kept_fits")}
+    migrate.to_revision(lived_in.record, schema.REVISION)
+    assert raw(lived_in, "SELECT seen_readings, seen_newest, seen_correction FROM kept_fits") == [astuple(seen)]
+    assert lived_in.verify().whole
 
 
 def test_migrating_to_where_it_stands_changes_nothing(lived_in: Lab, raw: Raw) -> None:
@@ -102,7 +115,7 @@ def test_a_copy_holds_what_is_still_in_the_write_ahead_log(lived_in: Lab) -> Non
 
 
 def test_bringing_an_older_record_up_makes_a_copy_first(lived_in: Lab, raw: Raw) -> None:
-    """There is one revision yet, so the step up is from nothing: the copy holds the record as it was."""
+    """From the newest revision it is no step at all: the copy holds the record as it was."""
     before = lived_in.verify()
     copy = migrate.upgrade(lived_in.record)
     assert lived_in.verify() == before
@@ -144,14 +157,14 @@ def test_a_migration_that_fails_leaves_the_record_and_names_the_copy(
     where, before = lived_in.record.engine.url.render_as_string(False), lived_in.verify()
     folder = migrating.folder_with(tmp_path, more="    op.execute('UPDATE nowhere SET it = 1')\n")
     monkeypatch.setattr(migrate, "migrations_folder", lambda: folder)
-    monkeypatch.setattr(schema, "REVISION", "0002")
+    monkeypatch.setattr(schema, "REVISION", migrating.NEXT)
     with pytest.raises(RecordError, match="the upgrade stopped") as refused:
         set_up(where)
-    assert migrating.state(where) == ("0001", before)
+    assert migrating.state(where) == (migrating.NOW, before)
     if lived_in.record.is_file:
         (copy,) = migrating.copies_of(lived_in.record)
         assert str(copy) in refused.value.hint
-        assert migrating.state(str(copy)) == ("0001", before)
+        assert migrating.state(str(copy)) == (migrating.NOW, before)
 
 
 def test_a_migration_killed_at_any_step_leaves_the_record_and_a_whole_copy(lived_in: Lab, tmp_path: Path) -> None:
