@@ -13,7 +13,6 @@ from electrolog.answers import life as lives
 from electrolog.measure.calibrate import CalibrationFigures
 from electrolog.measure.detection import claimed_below_detection
 from electrolog.measure.health import Circumstances, day_points_at_the_standard, unhealthy
-from electrolog.measure.line import LineFit, fit_line
 from electrolog.measure.uneven import pooled_growth
 from electrolog.record import queries, sheets
 from electrolog.record.queries import Calibration, Event
@@ -22,6 +21,8 @@ from electrolog.record.store import Record
 
 Figures = Mapping[int, CalibrationFigures]
 Said = dict[int, tuple[str, ...]]
+Unit = tuple[str, str, str]  # probe, analyte, waveform
+ByUnit = dict[Unit, list[Calibration]]
 _MOST_DAYS = 400  # an engine limits the length of one statement
 
 
@@ -34,9 +35,10 @@ def warnings(
     fellows, lives_of_all, standards = _around(record, asked)
     figures = {**made.all_figures(record, fellows), **numbers}
     said: dict[int, list[str]] = defaultdict(list)
+    among, of = _by_unit(asked), {one.row["id"]: _circumstances(one, standards) for one in asked}
     for one in asked:
-        now, earlier = _circumstances(one, standards), [_circumstances(e, standards) for e in _earlier(one, asked)]
-        said[one.row["id"]] += unhealthy(now, earlier, expected_um=expected_um)
+        earlier = [of[other.row["id"]] for other in _earlier(one, among)]
+        said[one.row["id"]] += unhealthy(of[one.row["id"]], earlier, expected_um=expected_um)
         said[one.row["id"]] += _unseen(expected_um, figures[one.row["id"]].lod_um)
     for key, text in _of_the_days(fellows, figures, lives_of_all):
         said[key].append(text)
@@ -62,10 +64,20 @@ def _around(
         return queries.calibrations(connection, ids), queries.events(connection, ids, of), standards
 
 
-def _earlier(one: Calibration, among: Sequence[Calibration]) -> list[Calibration]:
+def _by_unit(among: Sequence[Calibration]) -> ByUnit:
+    found: ByUnit = defaultdict(list)
+    for one in among:
+        found[_unit(one)].append(one)
+    return found
+
+
+def _unit(one: Calibration) -> Unit:
+    return one.row["electrode"], one.row["analyte"], one.row["waveform"]
+
+
+def _earlier(one: Calibration, among: ByUnit) -> list[Calibration]:
     """Of the same probe, analyte and waveform."""
-    keys = ("electrode", "analyte", "waveform")
-    return [other for other in among if other.at < one.at and all(other.row[k] == one.row[k] for k in keys)]
+    return [other for other in among[_unit(one)] if other.at < one.at]
 
 
 def _circumstances(one: Calibration, standards: Mapping[str, Row]) -> Circumstances:
@@ -95,8 +107,9 @@ def _of_the_days(
 ) -> list[tuple[int, str]]:
     """Where all probes measured with one standard, or on one rig, moved alike though nothing was done to them."""
     groups: dict[tuple[date, str, str, str], list[tuple[int, float]]] = defaultdict(list)
+    among = _by_unit(fellows)
     for one in fellows:
-        shift = _untouched_shift(one, fellows, figures, life.get(one.row["electrode"], []))
+        shift = _untouched_shift(one, among, figures, life.get(one.row["electrode"], []))
         for what in ("standard", "rig"):
             if shift is not None and one.row[what]:
                 shared = (one.at.date(), one.row["analyte"], one.row["waveform"], f"{what} {one.row[what]}")
@@ -117,11 +130,9 @@ def _said_of(members: Sequence[tuple[int, float]], what: str) -> list[tuple[int,
     return [(key, text) for key, _ in members] if text else []
 
 
-def _untouched_shift(
-    one: Calibration, fellows: Sequence[Calibration], figures: Figures, life: Sequence[Event]
-) -> float | None:
+def _untouched_shift(one: Calibration, among: ByUnit, figures: Figures, life: Sequence[Event]) -> float | None:
     """log of the sensitivity over the one before, where the probe lay untouched in between: it should be the same."""
-    before = next(reversed(_earlier(one, fellows)), None)
+    before = next(reversed(_earlier(one, among)), None)
     if before is None or any(before.at <= event.at <= one.at for event in life):
         return None
     now, then = figures[one.row["id"]].sensitivity_na_um, figures[before.row["id"]].sensitivity_na_um
@@ -137,7 +148,7 @@ def _of_the_fellows(
     if own.shape != "line" or own.weighting or own.interval_route or own.sensitivity_low_na_um is None:
         return []
     alike = [one for one in fellows if all(one.row[k] == newest.row[k] for k in ("analyte", "waveform"))]
-    growth = pooled_growth([_line(one) for one in alike if figures[one.row["id"]].shape == "line"])
+    growth = pooled_growth(_points(one) for one in alike if figures[one.row["id"]].shape == "line")
     if growth is None:
         return []
     text = (
@@ -147,6 +158,6 @@ def _of_the_fellows(
     return [(newest.row["id"], text)]
 
 
-def _line(one: Calibration) -> LineFit:
+def _points(one: Calibration) -> tuple[Sequence[float], Sequence[float]]:
     concentrations, currents = zip(*one.points, strict=True)
-    return fit_line(concentrations, currents)
+    return concentrations, currents
