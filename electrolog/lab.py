@@ -230,6 +230,13 @@ class Lab(Bringing, Measuring, Judging, Looking, Keeping):
         with self.record.reading() as connection:
             return list(journal.entries(connection, sheet, row_id))
 
+    def named(self, entries: Sequence[Entry]) -> list[str]:
+        """What each entry of the journal did to what, rows by their labels: `amend point C0042/3`."""
+        from electrolog.record.row_names import named
+
+        with self.record.reading() as connection:
+            return named(connection, entries)
+
     # --- in and out ---------------------------------------------------------------------------------------
 
     def import_folder(self, folder: Path, progress: Progress | None = None) -> ImportReport:

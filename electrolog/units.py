@@ -136,6 +136,11 @@ def _wrong_unit(text: str, sign: str, unit: Unit, what: str) -> InputError:
     return InputError(f"{what}: {typed}; accepted: {accepted}, such as {unit.example}")
 
 
+def counted(number: int, one: str, many: str = "") -> str:
+    """`1 point`, `7 points`, `2 batches`."""
+    return f"{number} {one if number == 1 else many or one + 's'}"
+
+
 def shown_number(value: float | None, digits: int = 3) -> str:
     """A number for a person: `digits` significant ones, without an exponent in the range a bench uses."""
     if value is None or math.isnan(value):

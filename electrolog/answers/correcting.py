@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from datetime import tzinfo
 from typing import Any
 
@@ -18,14 +18,20 @@ from electrolog.record.readable import row_by_id
 from electrolog.record.sheets import Sheet
 from electrolog.record.store import Record
 
+Sensitivity = tuple[float | None, float | None]
+
 
 @dataclass(frozen=True)
 class Corrected(Answer):
-    """What a correction did: column -> (before, after) as people read them; empty for a strike."""
+    """What a correction did: column -> (before, after) as people read them; empty for a strike.
+
+    sensitivities: of the calibrations whose figures it changed, (nA/µM, its standard error) before and after.
+    """
 
     what: str
     sheet: str
     changes: dict[str, tuple[Any, Any]]
+    sensitivities: dict[str, tuple[Sensitivity, Sensitivity]] = field(default_factory=dict)
 
 
 def amend_row(
@@ -51,21 +57,20 @@ def amend_row(
             columns = {schema.column_name(sheet.by_name[column]) for column in values}
             earlier.refuse_unseen(writer, sheet.name, row_id, ordinal, columns)
         changed = amend.amend(writer, sheet, row_id, values, ordinal)
-        _make_figures_anew(writer, sheet, row_id)
+        sensitivities = _make_figures_anew(writer, sheet, row_id)
         plain = {column.removesuffix("_id"): pair for column, pair in changed.items()}
         named = {column: (before.get(column, old), values.get(column, new)) for column, (old, new) in plain.items()}
         if sheet is sheets.CALIBRATIONS and "note" in named:
             old, new = named.pop("note")
             named |= handling.changes(old, str(new) if new else None)
-        return Corrected(f"{sheet.one} {name}", sheet.name, named)
+        return Corrected(f"{sheet.one} {name}", sheet.name, named, sensitivities)
 
 
 def strike_row(record: Record, one: str, name: str, reason: str) -> Corrected:
     with record.writing(reason) as writer:
         sheet, row_id, ordinal = _place(writer, one, name)
         amend.strike(writer, sheet, row_id, ordinal)
-        _make_figures_anew(writer, sheet, row_id)
-        return Corrected(f"{sheet.one} {name}", sheet.name, {})
+        return Corrected(f"{sheet.one} {name}", sheet.name, {}, _make_figures_anew(writer, sheet, row_id))
 
 
 def _place(writer: Writer, one: str, name: str) -> tuple[Sheet, int, int | None]:
@@ -86,7 +91,7 @@ def _read(sheet: Sheet, column: str, text: str, zone: tzinfo | None) -> Value:
     return sheet.by_name[column].read_typed(text, zone) if text.strip() else None
 
 
-def _make_figures_anew(writer: Writer, sheet: Sheet, row_id: int) -> None:
+def _make_figures_anew(writer: Writer, sheet: Sheet, row_id: int) -> dict[str, tuple[Sensitivity, Sensitivity]]:
     """Figures rest on points, noise and the standard's uncertainty; a correction of these reaches them at once."""
     writer.flush()
     if sheet in (sheets.CALIBRATIONS, sheets.POINTS):
@@ -94,7 +99,16 @@ def _make_figures_anew(writer: Writer, sheet: Sheet, row_id: int) -> None:
     elif sheet is sheets.STANDARDS:
         found = queries.calibrations_on_standard(writer.connection, row_id)
     else:
-        return
+        return {}
     uncertainties = made.standards_uncertainties(writer.connection)
     fresh = {one.row["id"]: made.computed(one, uncertainties) for one in found}
     queries.keep_figures(writer, {key: (figures.method, figures.to_dict()) for key, figures in fresh.items()})
+    told = {}
+    for one in found:
+        told[one.row["calibration"]] = _sensitivity(one.figures), _sensitivity(vars(fresh[one.row["id"]]))
+    return {label: pair for label, pair in told.items() if pair[0] != pair[1]}
+
+
+def _sensitivity(figures: Mapping[str, Any] | None) -> Sensitivity:
+    known = figures or {}
+    return known.get("sensitivity_na_um"), known.get("sensitivity_se_na_um")

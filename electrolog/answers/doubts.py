@@ -67,9 +67,8 @@ def entered_twice(values: Values, points: Sequence[tuple[float, float]], earlier
     if found is None:
         return []
     name, at = found.row["calibration"], shown_moment(found.at)
-    return [
-        f"{values['electrode']}: {new.said} as {name} of {at}: entered twice? `electrolog strike calibration {name}` takes that one out"
-    ]
+    how = f"`electrolog strike calibration {name}` takes that one out"
+    return [f"{values['electrode']}: {new.said} as {name} of {at}: entered twice? {how}"]
 
 
 def _exposure(values: Values, life: Sequence[Event]) -> list[str]:

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
-from datetime import tzinfo
+from datetime import datetime, timedelta, tzinfo
 from itertools import count
 from typing import Any
 
@@ -69,9 +69,29 @@ def log(
     with record.writing() as writer:
         chosen = known_labels(writer.connection, labels, writer.names)
         rows = [read(sheet, {**typed, "electrode": label}, zone) for label in chosen]
+        if sheet is sheets.INSPECTIONS:
+            _beside_remarks(writer, rows)
         said = _doubts(writer, sheet, rows)
         _confirm(said, confirmed)
         return [_entered(writer, sheet, entry.add(writer, sheet, row), said) for row in rows]
+
+
+def _beside_remarks(writer: Writer, rows: Sequence[dict[str, Value]]) -> None:
+    """A remark and an inspection of one and the same moment: the later entry is put a second later.
+
+    Two inspections of one moment stay a contradiction, and are refused.
+    """
+    probes = queries.probes(writer.connection, [str(row["electrode"]) for row in rows])
+    life = queries.events(writer.connection, [probe["id"] for probe in probes], (sheets.INSPECTIONS,))
+    for row in rows:
+        taken = {event.at: event.row for event in life.get(str(row["electrode"]), [])}
+        at = row["at"]
+        while isinstance(at, datetime) and at in taken and (_is_remark(row) or _is_remark(taken[at])):
+            row["at"] = at = at + timedelta(seconds=1)
+
+
+def _is_remark(row: Mapping[str, Any]) -> bool:
+    return all(row.get(name) is None for name in ("exposed_length_um", "seal_ok", "background_na", "noise_na"))
 
 
 def log_plain(record: Record, sheet: Sheet, typed: Typed, zone: tzinfo | None) -> Entered:

@@ -17,6 +17,7 @@ from electrolog.answers.handling import Handling, split
 from electrolog.errors import InputError, shortened
 from electrolog.measure.calibrate import CalibrationFigures
 from electrolog.measure.geometry import Specific, area_um2, per_area, per_length
+from electrolog.measure.recording import once_negative
 from electrolog.record import queries, sheets
 from electrolog.record.names import Names
 from electrolog.record.queries import Calibration, Event
@@ -128,7 +129,9 @@ def _reading(
         is_reference=is_reference,
         handling=handling,
         specific=_per_size(own, carbon_at(probe, life, calibration.at)),
-        warnings=(*own.warnings, *_said_of_signal(handling), *_said_of_order(calibration, life), *health_warnings),
+        warnings=once_negative(
+            (*_said_of_signal(handling), *own.warnings, *_said_of_order(calibration, life), *health_warnings)
+        ),
     )
 
 

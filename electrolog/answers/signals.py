@@ -15,7 +15,7 @@ from electrolog.answers.answer import Answer
 from electrolog.answers.history import usual_waveform
 from electrolog.errors import InputError, UnknownName
 from electrolog.measure.peaks import Peak
-from electrolog.measure.recording import Span
+from electrolog.measure.recording import NEGATIVE, Span
 from electrolog.measure.scan_sheet import ScanSheet
 from electrolog.measure.scans import ScanReading, ScanSettings, Voltammogram, read_scans
 from electrolog.measure.sweep import potentials_v
@@ -178,7 +178,7 @@ def _recorded(
 def _doubts(points: Points) -> tuple[str, ...]:
     if not points or not all(current < 0 for _, current in points):
         return ()
-    return ("the current falls at every injection: is oxidation recorded as negative? --negative turns the recording",)
+    return (f"the current falls at every injection: {NEGATIVE} --negative turns the recording",)
 
 
 def _refuse_left_out(left_out: Sequence[int], injections: int) -> None:

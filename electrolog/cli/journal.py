@@ -20,5 +20,7 @@ def command(
     """
     from electrolog.show import journal
 
-    entries = lab_of(ctx).journal()
-    journal.answer(entries[-last:] if last else entries, json, csv)
+    lab = lab_of(ctx)
+    entries = lab.journal()
+    chosen = entries[-last:] if last else entries
+    journal.answer(chosen, lab.named(chosen), json, csv)

@@ -15,7 +15,7 @@ from electrolog.measure.detection import from_noise, from_residuals
 from electrolog.measure.line import LineFit, fit_line, levels_um
 from electrolog.measure.linear import LINEAR_SHARE, linear_to_um
 from electrolog.measure.points import curvature_p, lack_of_fit, suspect_point
-from electrolog.measure.remarks import Outcome, all_of, without_response
+from electrolog.measure.remarks import Outcome, all_of, is_flat, without_response
 from electrolog.measure.saturating import SaturatingFit, fit_saturating
 from electrolog.measure.tails import t_quantile
 from electrolog.measure.uneven import allowance
@@ -99,6 +99,8 @@ def calibrate(
     curve = _curve_if_asked_for(line)
     found = _line_figures(line) if curve is None else _curve_figures(curve)
     found |= _interval(found, shared) if curve is not None else _interval_of_line(line, found, shared)
+    if is_flat(line):
+        found |= dict.fromkeys(_SCATTER)  # points that never move don't tell how sure their slope of zero is
     suspect = suspect_point(line) if curve is None else None
     outcome = Outcome(line, curve, suspect, noise_na)
     if outcome.responds:
@@ -168,6 +170,17 @@ def _curve_if_asked_for(line: LineFit) -> SaturatingFit | None:
     except DataError:
         return None
     return curve if curve.residual_sd_na < line.residual_sd_na else None
+
+
+_SCATTER = (
+    "sensitivity_se_na_um",
+    "sensitivity_se_shared_na_um",
+    "sensitivity_low_na_um",
+    "sensitivity_high_na_um",
+    "intercept_se_na",
+    "residual_sd_na",
+    "r_squared",
+)
 
 
 def _line_figures(line: LineFit) -> dict[str, Any]:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -17,6 +17,9 @@ MOST_SAMPLES = 1_000_000_000
 FEWEST_SAMPLES = 20
 GAP_STEPS = 5.0  # common practice: a pause of more than five samples is a gap
 CLIPPED_RUN = 5  # noise doesn't hold a signal at its very extreme for five samples on end
+
+
+NEGATIVE = "is oxidation recorded as negative?"  # asked by whatever meets such a recording; said once
 
 
 @dataclass(frozen=True)
@@ -116,3 +119,9 @@ def _in_run(flags: Flags) -> Flags:
 def _runs(flags: Flags) -> Iterator[tuple[int, int]]:
     edges = np.flatnonzero(np.diff(np.concatenate([[0], flags.astype(np.int8), [0]])))
     return zip(edges[::2].tolist(), edges[1::2].tolist(), strict=True)
+
+
+def once_negative(said: Sequence[str]) -> tuple[str, ...]:
+    """Of several remarks that a recording is negative the first: trace, points and line each find it for themselves."""
+    first = next((text for text in said if NEGATIVE in text), "")
+    return tuple(text for text in said if NEGATIVE not in text or text is first)

@@ -17,6 +17,7 @@ from electrolog.measure.points import (
     p_against_zero,
     tells_from_zero,
 )
+from electrolog.measure.recording import NEGATIVE
 from electrolog.measure.saturating import SaturatingFit
 
 SIGNIFICANT = 0.05
@@ -65,6 +66,11 @@ class Outcome:
         return len(levels_um(self.line.concentration_um))
 
 
+def is_flat(line: LineFit) -> bool:
+    """The same current at every concentration: a dead probe, an open circuit, or zeros typed in."""
+    return bool(np.ptp(line.current_na) == 0) and (not line.through_zero or line.current_na[0] == 0)
+
+
 def without_response(concentrations: int) -> str:
     if concentrations == 0:
         return "no points: nothing can be computed"
@@ -78,6 +84,8 @@ def all_of(outcome: Outcome, lod_um: float | None) -> tuple[str, ...]:
 
 def _few_points(outcome: Outcome) -> str | None:
     line = outcome.line
+    if is_flat(line):
+        return None
     if outcome.levels == 1:
         alone = "" if line.n_points > 1 else ", and one point gives it no standard error"
         return (
@@ -99,13 +107,16 @@ def _falling(outcome: Outcome) -> str | None:
         return None
     falls = f"the current falls as the concentration rises ({line.slope_na_um:.4g} nA/µM)"
     if (line.current_na[line.concentration_um > 0] < 0).all():
-        return f"{falls} and every current is negative: is oxidation recorded as negative? Nothing was turned"
+        return f"{falls} and every current is negative: {NEGATIVE} Nothing was turned"
     return f"{falls}: no detection limit can be stated"
 
 
 def _no_response(outcome: Outcome) -> str | None:
-    if outcome.line.slope_na_um == 0:
-        return "the current doesn't change with the concentration: no response was measured"
+    if is_flat(outcome.line):
+        return (
+            f"every current is {outcome.line.current_na[0]:g} nA, whatever the concentration: no response was "
+            "measured, and points without scatter don't tell how surely; was the probe connected?"
+        )
     p = p_against_zero(outcome.sensitivity_na_um, outcome.sensitivity_se_na_um, outcome.degrees_of_freedom)
     if not p >= SIGNIFICANT:
         return None

@@ -12,6 +12,7 @@ from electrolog.errors import DataError, InputError
 from electrolog.measure.drift import Drift, fitted_drift, scatter_about_line
 from electrolog.measure.injections import EDGE_S, find_injections, given_injections
 from electrolog.measure.recording import (
+    NEGATIVE,
     Span,
     checked_clock,
     checked_current,
@@ -109,7 +110,7 @@ def injections_of(time: Array, current: Array, settings: TraceSettings) -> tuple
     found = find_injections(time, current, settings.edge_s)
     said = list(found.warnings)
     if found.downward:
-        said.append("the current falls at every injection: is oxidation recorded as negative? Nothing was turned")
+        said.append(f"the current falls at every injection: {NEGATIVE} Nothing was turned")
     return found.injections, said
 
 

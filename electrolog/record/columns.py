@@ -7,7 +7,7 @@ from dataclasses import dataclass
 from datetime import UTC, date, datetime, tzinfo
 
 from electrolog.clock import iso_utc, parse_day, parse_iso, parse_moment
-from electrolog.errors import InputError, shortened, unknown
+from electrolog.errors import InputError, shortened
 from electrolog.units import PLAIN, Unit, parse_quantity
 
 Value = str | float | datetime | date | None
@@ -77,7 +77,7 @@ class Choice(Column):
     def read(self, text: str, zone: tzinfo | None = None) -> Value:
         found = text.strip().casefold()
         if found not in self.choices:
-            raise unknown(self.name, text, self.choices, f"accepted: {', '.join(self.choices)}")
+            raise InputError(f"{self.name}: found '{shortened(text)}'; accepted: {', '.join(self.choices)}")
         return found
 
 

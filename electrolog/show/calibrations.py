@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
+from dataclasses import fields
 from typing import Any
 
 from electrolog.answers.detecting import Routes
@@ -14,7 +15,7 @@ from electrolog.show.history import share
 from electrolog.show.machine import plain, print_csv, print_json
 from electrolog.show.tables import print_lines, with_error
 from electrolog.show.text import one_line
-from electrolog.units import shown_concentration, shown_span
+from electrolog.units import counted, shown_concentration, shown_span
 
 _FIGURES = (
     "sensitivity_na_um",
@@ -29,6 +30,10 @@ _FIGURES = (
     "linear_to_um",
     "shape",
 )
+_AHEAD = ("calibration", "at", "stage", "analyte", "waveform")
+_BEHIND = ("warnings", "electrode", "handling", "specific", "share_left", "share_left_se", "points")
+_REST = tuple(one.name for one in fields(CalibrationFigures) if one.name not in (*_FIGURES, "warnings"))
+_COLUMNS = (*_AHEAD, *_FIGURES, *_BEHIND, *_REST)
 
 
 def as_dict(reading: Reading) -> dict[str, Any]:
@@ -57,7 +62,7 @@ def answer_list(readings: Sequence[Reading], json: bool, csv: bool, routes: Mapp
     known = routes or {}
     if json or csv:
         rows = [{**as_dict(one), **_detection_of(known.get(one.calibration))} for one in readings]
-        print_json(rows) if json else print_csv([plain(row) for row in rows])
+        print_json(rows) if json else print_csv([plain(row) for row in rows], None if rows else _COLUMNS)
     elif not readings:
         print_lines("no calibration yet: log one with `electrolog calibrate`")
     else:
@@ -104,7 +109,7 @@ def sentences(reading: Reading) -> list[str]:
 
 def figure_lines(figures: CalibrationFigures) -> list[str]:
     own = with_error(figures.sensitivity_na_um, figures.sensitivity_se_na_um)
-    fit = f"{figures.shape or 'factor only'}, {figures.n_points} points"
+    fit = f"{figures.shape or 'factor only'}, {counted(figures.n_points, 'point')}"
     fit += f", r² {figures.r_squared:.4f}" if figures.r_squared is not None else ""
     fit += f", weights {figures.weighting}" if figures.weighting else ""
     lines = [f"  sensitivity {own} nA/µM ({fit})"]

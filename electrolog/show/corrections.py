@@ -10,8 +10,8 @@ from electrolog.answers.correcting import Corrected
 from electrolog.answers.figures import Recomputed
 from electrolog.show.entries import plain_name, shown
 from electrolog.show.machine import plain, print_csv, print_json
-from electrolog.show.tables import print_lines
-from electrolog.units import shown_number
+from electrolog.show.tables import print_lines, with_error
+from electrolog.units import counted, shown_number
 
 
 def answer(corrected: Corrected, json: bool) -> None:
@@ -24,6 +24,8 @@ def answer(corrected: Corrected, json: bool) -> None:
         name = plain_name(column)
         old, new = (shown(corrected.sheet, column, value) for value in (before, after))
         print_lines(f"{corrected.what}: {name} was {old}, is {new}")
+    for label, (before, after) in corrected.sensitivities.items():
+        print_lines(f"  {label}: sensitivity was {with_error(*before)}, is {with_error(*after)} nA/µM")
 
 
 def answer_recomputed(changed: Sequence[Recomputed], json: bool, csv: bool) -> None:
@@ -38,7 +40,7 @@ def answer_recomputed(changed: Sequence[Recomputed], json: bool, csv: bool) -> N
             made_by = f" (method {one.method_before}, now {one.method})" if one.method_before != one.method else ""
             told = [_change(name, pair) for name, pair in one.changes.items() if name != "method"]
             print_lines(f"{one.calibration}{made_by}: {'; '.join(told) or 'the same figures'}")
-        print_lines(f"{len(changed)} calibrations changed")
+        print_lines(f"{counted(len(changed), 'calibration')} changed")
 
 
 def _change(name: str, pair: tuple[Any, Any]) -> str:

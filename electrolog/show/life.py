@@ -14,7 +14,7 @@ from electrolog.record.readable import Row
 from electrolog.show.entries import plain_name, shown
 from electrolog.show.machine import plain, print_csv, print_json
 from electrolog.show.tables import print_lines, print_table
-from electrolog.units import shown_number
+from electrolog.units import counted, shown_number
 
 _ELSEWHERE = ("id", "electrode", "at", "start", "calibration")
 
@@ -25,7 +25,8 @@ def answer(probe: Row, events: Sequence[Event], json: bool, csv: bool) -> None:
     if json:
         print_json({"electrode": _identity(probe), "state": state, "events": rows})
     elif csv:
-        print_csv([{"at": e.at, "event": e.sheet.one, "number": e.row["id"], "what": what_happened(e)} for e in events])
+        told = [{"at": e.at, "event": e.sheet.one, "number": e.row["id"], "what": what_happened(e)} for e in events]
+        print_csv(told, ("at", "event", "number", "what"))
     else:
         print_lines(_identity_line(probe), _state_line(state))
         print_table(
@@ -55,7 +56,7 @@ def _identity_line(probe: Row) -> str:
 def _state_line(state: lives.State) -> str:
     hours = ", ".join(f"{shown_number(h)} h {setting}" for setting, h in sorted(state.exposure_h.items()))
     why = f" ({state.reason})" if state.reason else ""
-    return f"{state.name}{why}; exposed {hours or 'never'}; {state.uses} uses"
+    return f"{state.name}{why}; exposed {hours or 'never'}; {counted(state.uses, 'use')}"
 
 
 def what_happened(event: Event) -> str:

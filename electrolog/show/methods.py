@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING
 
 from electrolog.show.machine import print_csv, print_json
 from electrolog.show.tables import print_lines
-from electrolog.units import shown_concentration, shown_number
+from electrolog.units import counted, shown_concentration, shown_number
 
 if TYPE_CHECKING:
     from electrolog.answers.methods import Described, Spread
@@ -19,7 +19,7 @@ def answer(found: Described, json: bool, csv: bool) -> None:
     elif csv:
         print_csv(found.table)
     else:
-        print_lines(paragraph(found), "", f"supplementary table: {len(found.table)} rows with --csv")
+        print_lines(paragraph(found), "", f"supplementary table: {counted(len(found.table), 'row')} with --csv")
 
 
 def paragraph(found: Described) -> str:
@@ -36,8 +36,8 @@ def _sentences(found: Described) -> Iterator[str]:
 
 
 def _making(found: Described) -> Iterator[str]:
-    batches = f" from {_count(found.batches, 'batch', 'batches')}" if found.batches else ""
-    yield f"{_count(len(found.probes), 'carbon-fibre microelectrode')}{batches} were calibrated for {found.analyte}."
+    batches = f" from {counted(found.batches, 'batch', 'batches')}" if found.batches else ""
+    yield f"{counted(len(found.probes), 'carbon-fibre microelectrode')}{batches} were calibrated for {found.analyte}."
     if found.length_um:
         yield f"Exposed length was {_spread(found.length_um, 'µm')}{_of(found.length_um, len(found.probes))}."
     if found.diameter_um:
@@ -56,25 +56,26 @@ def _sweeps(found: Described) -> Iterator[str]:
 
 def _calibrating(found: Described) -> Iterator[str]:
     stages = ", ".join(f"{count} {stage}" for stage, count in found.stages.items())
-    said = f"There were {_count(sum(found.stages.values()), 'calibration')} ({stages}); medium: {_words(found.media)}"
+    said = f"There were {counted(sum(found.stages.values()), 'calibration')} ({stages}); medium: {_words(found.media)}"
     said += f"; temperature {_spread(found.temperature_c, '°C')}" if found.temperature_c else ""
     said += f"; {_spread(found.points, 'points each')}" if found.points else ""
     said += f"; {found.without_points} with the factor alone" if found.without_points else ""
     yield f"{said}."
     yield "Each probe's own calibrations were used, not a factor pooled over probes."
     for stage, values in found.sensitivity_na_um.items():
-        yield f"Sensitivity ({stage}) was {_spread(values, 'nA/µM')} over {_count(values.n, 'calibration')}."
+        yield f"Sensitivity ({stage}) was {_spread(values, 'nA/µM')} over {counted(values.n, 'calibration')}."
     if found.lod_um:
         low, high = shown_concentration(found.lod_um.least), shown_concentration(found.lod_um.most)
-        yield f"Limits of detection ranged from {low} to {high} over {_count(found.lod_um.n, 'calibration')}."
+        yield f"Limits of detection ranged from {low} to {high} over {counted(found.lod_um.n, 'calibration')}."
 
 
 def _running(found: Described) -> Iterator[str]:
     if not found.runs:
         return
-    yield f"{_count(found.runs.n, 'run')} ({_words(found.settings)}) lasted {_spread(found.runs, 'min')}."
+    yield f"{counted(found.runs.n, 'run')} ({_words(found.settings)}) lasted {_spread(found.runs, 'min')}."
     if found.hours_to_run:
-        yield f"Pre-calibration preceded the run by {_spread(found.hours_to_run, 'h')} ({found.hours_to_run.n} runs)."
+        runs = counted(found.hours_to_run.n, "run")
+        yield f"Pre-calibration preceded the run by {_spread(found.hours_to_run, 'h')} ({runs})."
     if found.share_left:
         share = _spread(found.share_left, "of the reference sensitivity")
         yield f"At post-calibration {share} was left (n = {found.share_left.n})."
@@ -82,18 +83,14 @@ def _running(found: Described) -> Iterator[str]:
 
 def _leaving_out(found: Described) -> Iterator[str]:
     if found.uncalibrated:
-        yield f"{_count(found.uncalibrated, 'probe')} without a calibration for it left out."
+        yield f"{counted(found.uncalibrated, 'probe')} without a calibration for it left out."
     if found.retired:
         yield f"Retired probes are included: {_words(found.retired)}."
     if found.struck:
         said = "; ".join(f"{label}: {reason or 'no reason given'}" for label, reason in found.struck.items())
-        yield f"Left out: {_count(len(found.struck), 'calibration')} ({said})."
+        yield f"Left out: {counted(len(found.struck), 'calibration')} ({said})."
     else:
         yield "No calibration was left out."
-
-
-def _count(count: int, one: str, many: str = "") -> str:
-    return f"{count} {one if count == 1 else many or one + 's'}"
 
 
 def _spread(values: Spread, unit: str) -> str:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from dataclasses import fields
 from datetime import tzinfo
 
 from electrolog.answers.outlook import Lasting, Making, Outlook
@@ -20,7 +21,7 @@ def answer(found: Outlook, zone: tzinfo | None, json: bool, csv: bool) -> None:
     if json:
         print_json(found)
     elif csv:
-        print_csv([plain(vars(one)) for one in found.probes])
+        print_csv([plain(vars(one)) for one in found.probes], [column.name for column in fields(Lasting)])
     else:
         told = [_row(one, zone) for one in found.probes if not one.why]
         if told:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections import Counter
+from dataclasses import fields
 from typing import Any
 
 from electrolog.answers.asked import Run
@@ -24,7 +25,7 @@ def answer(found: Ranking, run: Run, json: bool, csv: bool) -> None:
         probes = [_as_dict(one) for one in found.probes]
         print_json({"probes": probes, "notes": found.notes, "draws": found.draws})
     elif csv:
-        print_csv([plain(_as_dict(one)) for one in found.probes])
+        print_csv([plain(_as_dict(one)) for one in found.probes], [column.name for column in fields(Ranked)])
     elif not found.probes:
         print_lines("no usable probe on the shelf")
     else:

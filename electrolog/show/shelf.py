@@ -3,12 +3,13 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from dataclasses import fields
 
 from electrolog.answers.shelf import Shelved
 from electrolog.show.machine import plain, print_csv, print_json
 from electrolog.show.tables import day_or_never, print_lines, print_table, with_error
 from electrolog.show.terminal import Drawing, trend
-from electrolog.units import shown_number, shown_percent
+from electrolog.units import counted, shown_number, shown_percent
 
 _COLUMNS = ("probe", "state", "batch", "coating", "age (d)", "exposed (h)", "uses", "calibrated", "nA/µM", "left")
 _LEAST = ("batch", "age (d)", "uses", "coating", "calibrated", "exposed (h)")
@@ -19,11 +20,11 @@ def answer(probes: Sequence[Shelved], json: bool, csv: bool, how: Drawing = Draw
     if json:
         print_json(probes)
     elif csv:
-        print_csv([plain(probe) for probe in probes])
+        print_csv([plain(probe) for probe in probes], [column.name for column in fields(Shelved)])
     elif not probes:
         print_lines("no probe matches")
     elif how is Drawing.PLAIN:
-        print_lines(*[_sentence(probe) for probe in probes], f"{len(probes)} probes")
+        print_lines(*[_sentence(probe) for probe in probes], counted(len(probes), "probe"))
     else:
         _print(probes, how)
 
@@ -33,7 +34,7 @@ def _print(probes: Sequence[Shelved], how: Drawing) -> None:
     drawn = how is Drawing.CHART
     rows = [(*_row(probe), trend(probe.trend_na_um)) if drawn else _row(probe) for probe in probes]
     print_table((*_COLUMNS, _TREND) if drawn else _COLUMNS, rows, numeric, _LEAST)
-    print_lines(f"{len(probes)} probes")
+    print_lines(counted(len(probes), "probe"))
     if drawn and any(len(probe.trend_na_um) > 1 for probe in probes):
         print_lines("trend: the last calibrations, oldest first; a full block is the probe's own highest, none is zero")
 

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from electrolog.answers.signals import Recorded
 from electrolog.measure.calibrate import CalibrationFigures
+from electrolog.measure.recording import once_negative
 from electrolog.show.calibrations import figure_lines
 from electrolog.show.machine import print_json
 from electrolog.show.tables import print_lines, print_table
@@ -18,7 +19,8 @@ def answer(recorded: Recorded, figures: CalibrationFigures, json: bool) -> None:
     print_lines(f"{account['file']}: {len(account['injections'])} injections; nothing was logged")
     print_table(*injections(recorded))
     print_lines(*facts(recorded), *figure_lines(figures))
-    print_lines(*[f"! {text}" for text in (*recorded.warnings, *recorded.doubts, *figures.warnings)])
+    said = once_negative((*recorded.doubts, *recorded.warnings, *figures.warnings))
+    print_lines(*[f"! {text}" for text in said])
 
 
 def injections(recorded: Recorded) -> tuple[list[str], list[list[object]], list[str]]:
