@@ -15,7 +15,7 @@ import pytest
 ROOT = Path(__file__).resolve().parents[1]
 PACKAGE = ROOT / "electrolog"
 
-GROUND = ("units", "errors", "clock")
+GROUND = ("units", "errors", "clock", "texts")
 ROOMS = (*GROUND, "record", "measure", "fouling", "judge", "answers", "lab", "show", "cli")  # from the ground up
 DOOR = {"": "show", "__main__": "cli"}  # the package itself offers figures too; `python -m electrolog`
 

@@ -12,6 +12,7 @@ from typing import TypeVar
 from electrolog.answers.asked import Run
 from electrolog.clock import parse_moment
 from electrolog.errors import ElectrologError, FaultyRows, InputError, shortened, unknown
+from electrolog.texts import small_text
 from electrolog.units import CONCENTRATION_UM, MINUTES, parse_quantity
 
 REQUIRED = ("label", "start", "duration", "analyte", "waveform", "setting")
@@ -33,10 +34,7 @@ class PlanRow:
 
 def read_plan(path: Path, zone: tzinfo | None) -> list[PlanRow]:
     """Raises FaultyRows with every fault, InputError for a file that is no plan."""
-    try:
-        text = path.read_text(encoding="utf-8-sig")
-    except UnicodeDecodeError:
-        raise InputError(f"{path.name} is not UTF-8 text; accepted: a CSV file in UTF-8") from None
+    text = small_text(path, "a CSV file in UTF-8")
     reader = csv.DictReader(text.splitlines())
     _check_header(path.name, reader.fieldnames or [])
     return plan_of(((f"{path.name} line {reader.line_num}", row) for row in reader), zone)

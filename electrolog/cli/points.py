@@ -3,11 +3,13 @@
 from __future__ import annotations
 
 import csv
+import io
 from collections.abc import Iterable, Iterator
 from pathlib import Path
 
 from electrolog.errors import FaultyRows, InputError, shortened
 from electrolog.record.sheets import POINT_NA, POINT_UM
+from electrolog.texts import small_text
 from electrolog.units import CONCENTRATION_UM, CURRENT_NA, parse_quantity
 
 Point = tuple[float, float]
@@ -53,18 +55,15 @@ def from_file(path: Path) -> dict[str, list[Point]]:
 
 
 def _rows(path: Path) -> Iterator[tuple[int, dict[str, str]]]:
-    with path.open(encoding="utf-8-sig", newline="") as file:
-        reader = csv.DictReader(file, strict=True)
-        try:
-            missing = [name for name in _COLUMNS if name not in (reader.fieldnames or ())]
-            if missing:
-                raise InputError(
-                    f"{path.name}: has no column {' or '.join(missing)};"
-                    " accepted: concentration_um, current_na and, for several probes, electrode"
-                )
-            for row in reader:
-                yield reader.line_num, row
-        except UnicodeDecodeError:
-            raise InputError(f"{path.name}: is not text in UTF-8; accepted: CSV in UTF-8") from None
-        except csv.Error as why:
-            raise InputError(f"{path.name} line {reader.line_num}: can't be read ({why}); accepted: CSV") from None
+    reader = csv.DictReader(io.StringIO(small_text(path, "CSV in UTF-8"), newline=""), strict=True)
+    try:
+        missing = [name for name in _COLUMNS if name not in (reader.fieldnames or ())]
+        if missing:
+            raise InputError(
+                f"{path.name}: has no column {' or '.join(missing)};"
+                " accepted: concentration_um, current_na and, for several probes, electrode"
+            )
+        for row in reader:
+            yield reader.line_num, row
+    except csv.Error as why:
+        raise InputError(f"{path.name} line {reader.line_num}: can't be read ({why}); accepted: CSV") from None

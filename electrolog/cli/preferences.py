@@ -7,6 +7,7 @@ from collections.abc import Mapping
 from pathlib import Path
 
 from electrolog.errors import InputError, unknown
+from electrolog.texts import small_text
 
 # What is typed at every entry of a day, and where the record is; nothing that a question's answer would turn on.
 KEYS = ("db", "zone", "rig", "by", "medium", "waveform", "setting")
@@ -51,10 +52,7 @@ def read(path: Path, own: bool) -> dict[str, str]:
     """The settings of one file, none where there is no file. Raises InputError for a setting that isn't one."""
     if not os.path.isfile(path):  # noqa: PTH113 -- of a name that no file can have it says no, and doesn't raise
         return {}
-    try:
-        text = path.read_text(encoding="utf-8")
-    except (OSError, UnicodeDecodeError) as why:
-        raise InputError(f"{path}: can't be read ({why}); accepted: a text file in UTF-8") from None
+    text = small_text(path, 'lines such as rig = "north"')
     import tomllib
 
     try:

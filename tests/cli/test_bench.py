@@ -159,9 +159,7 @@ def test_every_bad_row_of_a_file_is_named_at_once(cli: Any, tmp_path: Path) -> N
 
 
 def test_a_missing_file_is_named(cli: Any) -> None:
-    assert "nope.csv" in cli.refused(
-        "calibrate", "B9-01", "pre", "DA", "--points", "nope.csv", "-w", "triangle", status=1
-    )
+    assert "nope.csv" in cli.refused("calibrate", "B9-01", "pre", "DA", "--points", "nope.csv", "-w", "triangle")
 
 
 def test_times_are_now_unless_said(cli: Any) -> None:

@@ -11,6 +11,7 @@ from typing import Any
 
 from electrolog.errors import InputError, unknown
 from electrolog.record.books.headings import Meaning, checked, described, meaning
+from electrolog.texts import small_text
 
 TIMES = {"pre": "09:00", "interim": "12:00", "run": "12:00", "post": "18:00", "coating": "08:00"}
 SECTIONS = ("answers", "times", "spellings", "words", "headings", "sheets")
@@ -52,10 +53,8 @@ def usual_file(book: Path) -> Path:
 def read_mapping(path: Path) -> BookMapping:
     """Raises InputError that names what in the file can't be taken."""
     try:
-        found = tomllib.loads(path.read_text(encoding="utf-8"))
-    except OSError as why:
-        raise InputError(f"{path}: can't be read: {why.strerror}; accepted: a mapping file made by adopt") from None
-    except (tomllib.TOMLDecodeError, UnicodeDecodeError) as why:
+        found = tomllib.loads(small_text(path, "a mapping file made by adopt"))
+    except tomllib.TOMLDecodeError as why:
         raise InputError(f"{path.name}: is no TOML ({why})", "correct it, or delete it and run adopt again") from None
     for section in found:
         if section not in SECTIONS:
