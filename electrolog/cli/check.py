@@ -61,6 +61,6 @@ def command(
     if page is not None:
         from electrolog.show.page import write_page
 
-        write_page(page, found, planned, dict(demands), moment)
+        write_page(page, found, planned, dict(demands), lab.origin(moment))
     checks.answer(found, planned, json, csv)
     raise typer.Exit(max((EXIT_STATUS[one.verdict.verdict] for one in found), default=0))

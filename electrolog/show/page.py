@@ -3,18 +3,18 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from datetime import datetime
 from pathlib import Path
 from typing import Any
 
 from electrolog.answers.asked import Run
 from electrolog.answers.checking import Checked
+from electrolog.answers.report import Origin
 from electrolog.clock import shown_moment
 from electrolog.judge.limits import Limit, rule_named
 from electrolog.judge.verdict import Spread
 from electrolog.show.checks import CAUTION, FIGURES, SIGNS, odds_shown, spread_shown
 from electrolog.show.limits import shown
-from electrolog.show.pages import Inline, rendered
+from electrolog.show.pages import Inline, origin_said, rendered
 from electrolog.units import shown_concentration, shown_duration
 
 CAUTIONS = (CAUTION, "An explanted probe is a biohazard and a sharp: handle and discard it by the local rules.")
@@ -31,19 +31,20 @@ th, td { text-align: left; padding: 0.5mm 2mm; border-bottom: 0.2mm solid #999; 
 """
 
 
-def write_page(path: Path, found: Sequence[Checked], run: Run, asked: dict[str, Any], moment: datetime) -> None:
+def write_page(path: Path, found: Sequence[Checked], run: Run, asked: dict[str, Any], made: Origin) -> None:
     """`asked`: what the run demands beyond the lab's limits, as it was asked."""
-    path.write_text(page(found, run, asked, moment), encoding="utf-8", newline="\n")
+    path.write_text(page(found, run, asked, made), encoding="utf-8", newline="\n")
 
 
-def page(found: Sequence[Checked], run: Run, asked: dict[str, Any], moment: datetime) -> str:
+def page(found: Sequence[Checked], run: Run, asked: dict[str, Any], made: Origin) -> str:
     return rendered(
         "page.html",
         title=f"Before the run: {shown_duration(run.run_min)} {run.setting}",
         run=run,
         needs=None if asked["needs_um"] is None else shown_concentration(asked["needs_um"]),
         project=asked["project"],
-        moment=shown_moment(moment),
+        moment=shown_moment(made.made_at),
+        origin=origin_said(made),
         probes=[verdict_context(one) for one in found],
         limits=[_limit(limit) for limit in found[0].limits.by_rule.values()] if found else [],
         cautions=CAUTIONS,

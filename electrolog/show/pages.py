@@ -8,6 +8,8 @@ import hashlib
 from pathlib import Path
 from typing import Any
 
+from electrolog.answers.report import Origin
+from electrolog.clock import shown_moment
 from electrolog.show.text import safe
 
 TEMPLATES = Path(__file__).with_name("templates")
@@ -47,3 +49,17 @@ def rendered(template: str, **context: Any) -> str:
 
 def _finalized(value: Any) -> Any:
     return value if hasattr(value, "__html__") or isinstance(value, int | float) else safe(value)
+
+
+def origin_said(made: Origin) -> str:
+    """The head is what `verify --head` is asked later, to see whether anything was cut off since."""
+    methods = ", ".join(f"{what} by {name}" for what, name in made.methods.items())
+    return (
+        f"Made by {made.made_by} on {shown_moment(made.made_at)} with electrolog {made.version} "
+        f"from {_short(made.record)}; journal at entry {made.entries}, head {made.head[:16]}; {methods}."
+    )
+
+
+def _short(record: str) -> str:
+    """A file by its name: where it lies on somebody's disk is nobody else's business."""
+    return record if "://" in record else Path(record).name

@@ -9,11 +9,10 @@ from typing import Any
 
 from electrolog.answers.report import LabSheet, Origin, Planned, ProbeSheet
 from electrolog.answers.report_week import WeekSheet
-from electrolog.clock import shown_moment
 from electrolog.show.assignment import COLUMNS, row, said_of
 from electrolog.show.lab_page import lab_context
 from electrolog.show.page import CAUTIONS
-from electrolog.show.pages import own_file, rendered
+from electrolog.show.pages import origin_said, own_file, rendered
 from electrolog.show.probe_page import planned_said, probe_context
 
 
@@ -39,7 +38,7 @@ def report(told: Told) -> str:
     return rendered(
         "report.html",
         title=told.title,
-        origin=_origin(told.made),
+        origin=origin_said(told.made),
         planned="" if told.planned is None or lab is None else planned_said(told.planned),
         places=_places(told, lab, probes),
         probes=probes,
@@ -72,16 +71,3 @@ def _places(told: Told, lab: dict[str, Any] | None, probes: list[dict[str, Any]]
 def _week(week: WeekSheet) -> dict[str, Any]:
     said = [*said_of(week.assignment), *week.assignment.notes]
     return {"columns": COLUMNS, "rows": [row(run, None) for run in week.runs], "said": said}
-
-
-def _origin(made: Origin) -> str:
-    methods = ", ".join(f"{what} by {name}" for what, name in made.methods.items())
-    return (
-        f"Made by {made.made_by} on {shown_moment(made.made_at)} with electrolog {made.version} "
-        f"from {_short(made.record)}; journal at entry {made.entries}, head {made.head[:16]}; {methods}."
-    )
-
-
-def _short(record: str) -> str:
-    """A file by its name: where it lies on somebody's disk is nobody else's business."""
-    return record if "://" in record else Path(record).name

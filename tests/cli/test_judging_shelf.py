@@ -191,6 +191,12 @@ def test_the_pages_style_is_the_one_its_policy_allows(judged: Terminal, tmp_path
     assert f"style-src 'sha256-{digest}'" in page
 
 
+def test_the_page_says_from_which_state_of_the_journal_it_is(judged: Terminal, tmp_path: Path) -> None:
+    judged("check", "R1", *RUN, "--page", "rig.html")
+    head = judged.ok("verify", "--json").json["head"]
+    assert f"head {head[:16]}" in (tmp_path / "rig.html").read_text(encoding="utf-8")
+
+
 def test_a_page_that_can_not_be_written_is_a_refusal(judged: Terminal) -> None:
     assert "No such file" in judged.refused("check", "R1", *RUN, "--page", "nowhere/rig.html", status=1)
 
