@@ -44,9 +44,29 @@ AFTER = {  # what a command's arguments name, in their order; the last one may r
     "scans": ("electrodes", "stage", "analytes"),
     "standard": ("", "analytes"),
     "concentration": ("calibrations",),
+    **dict.fromkeys(("amend", "strike"), ("kind", "of that kind")),
+    "list": ("list",),
+    "completion": ("shell",),
     **dict.fromkeys(("adopt", "import", "export", "template", "setup", "new", "add", "journal", "dilutions"), ("",)),
 }
-STAGES = ("pre", "interim", "post")
+OF_A_KIND = {  # what `amend` and `strike` call by a label
+    "calibration": "calibrations",
+    "point": "calibrations",
+    "probe": "electrodes",
+    "batch": "batches",
+    "standard": "standards",
+    "analyte": "analytes",
+    "waveform": "waveforms",
+}
+FIXED = {
+    "stage": ("pre", "interim", "post"),
+    "kind": (
+        *OF_A_KIND,
+        *("exposure", "cleaning", "coating", "conditioning", "inspection", "re-cut", "retirement", "word"),
+    ),
+    "list": ("words", "analytes", "waveforms", "batches", "standards"),
+    "shell": ("bash", "zsh", "fish", "powershell"),
+}
 GLOBAL = ("--db", "--zone", "--quiet")
 
 
@@ -64,8 +84,10 @@ def completions(words: Sequence[str]) -> list[str]:
     if what is None and last.startswith("-") and _takes_value(command, last):
         return []
     what = what or _argument(command, rest)
-    if what == "stage":
-        return [stage for stage in STAGES if stage.startswith(typed)]
+    if what == "of that kind":
+        what = OF_A_KIND.get(next(_arguments(command, rest)), "")
+    if what in FIXED:
+        return [word for word in FIXED[what] if word.startswith(typed)]
     from electrolog.record.completions import names
 
     return [f"{_ahead(typed)}{name}" for name in names(where, what, typed.removeprefix(_ahead(typed)))] if what else []
@@ -129,7 +151,8 @@ def _options(command: str, with_value: bool = False) -> list[str]:
 def main() -> None:
     # A tab must never print a traceback into what somebody is typing.
     with contextlib.suppress(Exception):
-        sys.stdout.write("\n".join(completions(sys.argv[1:])))
+        words = ["" if word == '""' else word for word in sys.argv[1:]]  # some PowerShells pass an empty word so
+        sys.stdout.write("\n".join(completions(words)))
 
 
 if __name__ == "__main__":

@@ -24,9 +24,14 @@ compdef _electrolog electrolog
 """,
     "fish": """function __electrolog_words
     set -l words (commandline -opc) (commandline -ct)
-    {python} -m electrolog.cli.completing $words[2..-1] 2>/dev/null
+    set -l found ({python} -m electrolog.cli.completing $words[2..-1] 2>/dev/null)
+    if set -q found[1]
+        printf '%s\\n' $found
+    else
+        __fish_complete_path (commandline -ct)
+    end
 end
-complete -c electrolog -a '(__electrolog_words)'
+complete -c electrolog -f -a '(__electrolog_words)'
 """,
     "powershell": """Register-ArgumentCompleter -Native -CommandName electrolog -ScriptBlock {{
     param($word, $ast, $position)
