@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import os
 import re
+from collections.abc import Sequence
 from datetime import UTC, date, datetime, timedelta, tzinfo
 from zoneinfo import ZoneInfo
 
@@ -65,6 +66,18 @@ def parse_iso(text: str, zone: tzinfo | None = None, what: str = "at", accepted:
     if re.fullmatch(r"\d{4}-?\d{2}-?\d{2}|\d{4}-?W\d{2}(-?\d)?", text.strip()):
         raise InputError(f"{what}: '{shortened(text)}' is a day without a time; accepted: {accepted}")
     return _to_utc(moment, zone, text, what)
+
+
+def plain_moments(texts: Sequence[str]) -> list[datetime] | None:
+    """What parse_iso says of each; None where one has no offset, lies far off or can't be read: ask it then."""
+    try:
+        moments = [datetime.fromisoformat(text) for text in texts]
+        if not moments or None in [moment.tzinfo for moment in moments]:
+            return None
+        utc = [moment.astimezone(UTC) for moment in moments]
+    except (ValueError, OverflowError):
+        return None
+    return utc if min(utc).year > _EARLIEST and max(utc).year + 1 < _LATEST else None
 
 
 def parse_day(text: str, zone: tzinfo | None = None, what: str = "date") -> date:

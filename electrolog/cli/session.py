@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import gc
 import sys
 from collections.abc import Callable
 from dataclasses import dataclass
@@ -27,7 +28,10 @@ class Session:
         from electrolog.clock import zone_named
         from electrolog.lab import open_lab
 
-        return open_lab(self.db, zone=zone_named(self.zone), create=create)
+        opened = open_lab(self.db, zone=zone_named(self.zone), create=create)
+        gc.freeze()  # what was loaded stays until the end, and is passed over from here on
+        gc.enable()
+        return opened
 
 
 def lab_of(ctx: typer.Context, create: bool = False) -> Lab:

@@ -10,6 +10,7 @@ from numpy.typing import ArrayLike, NDArray
 from electrolog.errors import InputError
 
 Array = NDArray[np.float64]
+EXACT = 1e-13  # of the largest current
 
 
 @dataclass(frozen=True)
@@ -25,6 +26,10 @@ class LineFits:
     centre_um: Array
     spread_um2: Array
     degrees_of_freedom: int
+
+    def exact(self, current_na: Array) -> NDArray[np.bool_]:
+        """(n,) of lines through currents (n, k), where the scatter is no more than the rounding of the arithmetic."""
+        return np.asarray(self.residual_sd_na <= EXACT * np.abs(current_na).max(axis=-1))
 
 
 @dataclass(frozen=True)
@@ -68,7 +73,7 @@ class LineFit:
 
     def exact(self) -> bool:
         """True where the scatter is no more than the rounding of the arithmetic: no test can rest on it."""
-        return bool(self.residual_sd_na <= 1e-13 * np.abs(self.current_na).max())
+        return bool(self.residual_sd_na <= EXACT * np.abs(self.current_na).max())
 
 
 def fit_line(

@@ -3,14 +3,15 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Sequence
+from collections import defaultdict
+from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
 
-from electrolog.measure.line import LineFit, levels_um
-from electrolog.measure.points import growing_scatter, leverage
+from electrolog.measure.line import LineFit, fit_lines, levels_um
+from electrolog.measure.points import growing_scatter
 from electrolog.measure.tails import f_p, t_quantile
 
 Array = NDArray[np.float64]
@@ -75,23 +76,52 @@ class PooledGrowth:
     p: float
 
 
-def pooled_growth(lines: Sequence[LineFit], level: float = 0.01) -> PooledGrowth | None:
-    """From the residuals of many calibrations, each in units of its own slope; None where they don't tell.
+def pooled_growth(
+    calibrations: Iterable[tuple[Sequence[float], Sequence[float]]], level: float = 0.01
+) -> PooledGrowth | None:
+    """From the points (µM, nA) of many calibrations: the residuals of their lines, each in units of its own slope.
 
-    Single points can't show growing scatter within one calibration; a dozen calibrations together can.
+    Single points can't show growing scatter within one calibration; a dozen calibrations together can. None where
+    they don't tell.
     """
-    usable = [line for line in lines if line.degrees_of_freedom > 0 and line.slope_na_um > 0 and not line.exact()]
-    low, high, freedom = [], [], 0.0
-    for line in usable:
-        apart = line.residual_na / line.slope_na_um / np.sqrt(np.maximum(1 - leverage(line), 1e-9))
-        upper = line.concentration_um > np.median(levels_um(line.concentration_um))
-        low.append(apart[~upper])
-        high.append(apart[upper])
-        freedom += line.degrees_of_freedom / line.n_points
-    if len(usable) < FEWEST_LINES:
+    alike: dict[tuple[float, ...], list[Sequence[float]]] = defaultdict(list)
+    for concentration_um, current_na in calibrations:
+        alike[tuple(concentration_um)].append(current_na)
+    parts = [_apart(np.array(levels), np.array(currents)) for levels, currents in alike.items()]
+    lines = sum(part.lines for part in parts)
+    if lines < FEWEST_LINES:
         return None
-    below, above = np.concatenate(low), np.concatenate(high)
+    below, above = np.concatenate([part.low for part in parts]), np.concatenate([part.high for part in parts])
     ratio = float((above @ above) / len(above) / max(float(below @ below) / len(below), 1e-300))
-    share = freedom / len(usable)
+    share = math.fsum(part.freedom for part in parts) / lines
     p = f_p(ratio, round(share * len(above)), round(share * len(below)))
-    return PooledGrowth(math.sqrt(ratio), len(usable), p) if p < level else None
+    return PooledGrowth(math.sqrt(ratio), lines, p) if p < level else None
+
+
+@dataclass(frozen=True)
+class _Apart:
+    """Of so many lines the residuals over slope and leverage, at lower and at upper concentrations.
+
+    freedom: degrees of freedom for each point, summed over the lines.
+    """
+
+    low: Array
+    high: Array
+    lines: int
+    freedom: float
+
+
+def _apart(concentration_um: Array, current_na: Array) -> _Apart:
+    """Of the lines that rise, through the same concentrations (k,) and currents (n, k)."""
+    fits = fit_lines(concentration_um, current_na)
+    usable = (fits.slope_na_um > 0) & ~fits.exact(current_na) & (fits.degrees_of_freedom > 0)
+    lines = int(usable.sum())
+    if lines == 0:
+        return _Apart(np.empty(0), np.empty(0), 0, 0.0)
+    slope, intercept = fits.slope_na_um[usable, None], fits.intercept_na[usable, None]
+    pull = 1 / concentration_um.size + (concentration_um - fits.centre_um[0]) ** 2 / fits.spread_um2[0]
+    residual = current_na[usable] - intercept - slope * concentration_um
+    apart = residual / slope / np.sqrt(np.maximum(1 - pull, 1e-9))
+    upper = concentration_um > np.median(levels_um(concentration_um))
+    freedom = lines * fits.degrees_of_freedom / concentration_um.size
+    return _Apart(apart[:, ~upper].ravel(), apart[:, upper].ravel(), lines, freedom)

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterator, Mapping, Sequence
 from datetime import datetime
 from typing import Any
 
@@ -12,7 +12,7 @@ from electrolog.errors import InputError, shortened, unknown, with_article
 from electrolog.record import columns as kinds
 from electrolog.record import schema, sheets
 from electrolog.record.columns import Value
-from electrolog.record.journal import Writer
+from electrolog.record.journal import Columns, Writer
 from electrolog.record.names import Names
 from electrolog.record.sheets import Sheet
 
@@ -54,6 +54,33 @@ def insert(writer: Writer, sheet: Sheet, row: Row, points: Points) -> int:
     return row_id
 
 
+def insert_all(writer: Writer, sheet: Sheet, columns: Columns, points: Sequence[Points]) -> range:
+    """Writes rows that have been checked already, given by column, each with its points; returns their numbers."""
+    ids = writer.new_ids(sheet.name, len(points))
+    writer.insert_columns(sheet.name, {"id": ids, **columns})
+    if any(points):
+        writer.insert_columns("calibration_points", _by_column(ids, points))
+    writer.note_all("add", sheet.name, zip(ids, _added(columns, points), strict=True))
+    return ids
+
+
+def _added(columns: Columns, points: Sequence[Points]) -> Iterator[dict[str, Any]]:
+    """What the journal keeps of each row."""
+    told = {name: values for name, values in columns.items() if values.count(None) < len(values)}
+    for *row, own in zip(*told.values(), points, strict=True):
+        after = {name: value for name, value in zip(told, row, strict=True) if value is not None}
+        yield {"after": after, "points": own} if own else {"after": after}
+
+
+def _by_column(ids: Sequence[int], points: Sequence[Points]) -> Columns:
+    return {
+        "calibration_id": [row_id for row_id, own in zip(ids, points, strict=True) for _ in own],
+        "ordinal": [ordinal for own in points for ordinal in range(1, len(own) + 1)],
+        "concentration_um": [concentration for own in points for concentration, _ in own],
+        "current_na": [current for own in points for _, current in own],
+    }
+
+
 def resolved(sheet: Sheet, values: Mapping[str, Value], names: Names) -> Row:
     """The row as its table keeps it: every column there, names turned into row numbers."""
     for name in values:
@@ -81,8 +108,11 @@ def known(row: Row) -> Row:
     return {name: value for name, value in row.items() if value is not None}
 
 
+RULED = {"calibrations": ("sensitivity_na_um", "sensitivity_se_na_um"), "standards": ("expires_at",)}
+
+
 def check_row(sheet: Sheet, row: Row, has_points: bool = False) -> None:
-    """Rules between the columns of one row."""
+    """Rules between the columns of one row; they say nothing of one in which its sheet's RULED are all unknown."""
     if sheet is sheets.CALIBRATIONS:
         _check_factor(row, has_points)
     if sheet is sheets.STANDARDS:

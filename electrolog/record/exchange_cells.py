@@ -8,6 +8,7 @@ from dataclasses import dataclass
 from datetime import tzinfo
 from typing import Any
 
+from electrolog.clock import plain_moments
 from electrolog.errors import InputError, shortened
 from electrolog.record import columns as kinds
 from electrolog.record.columns import Column, Value
@@ -44,7 +45,14 @@ class CellReader:
         if isinstance(self.column, kinds.Number):
             numbers = _plain_numbers(self.column, texts)
             return [self._one(text) for text in texts] if numbers is None else numbers
+        new = list({text: None for text in texts if text not in self._memo})
+        self._memo.update(zip(new, self._plain(new) or (), strict=False))
         return list(map(self._memo.__getitem__, texts))
+
+    def _plain(self, texts: Sequence[str]) -> Sequence[Any] | None:
+        if isinstance(self.column, kinds.Moment):
+            return plain_moments(texts)
+        return _plain_labels(texts) if isinstance(self.column, kinds.Label) else None
 
     def _one(self, text: str) -> Value | Refusal:
         blank = text == "" if isinstance(self.column, kinds.Text) else not text.strip()
@@ -59,19 +67,37 @@ class CellReader:
             return Refusal(why.message)
 
 
+# The quick ways, for a column in which nothing is wrong; None where each cell has to be looked at.
+
+
 def _plain_numbers(column: kinds.Number, texts: Sequence[str]) -> list[Any] | None:
-    """The quick way for a column in which nothing is wrong; None where each cell has to be looked at."""
+    if column.whole or "_" in "".join(texts):
+        return None
     try:
-        values = [float(text) + 0.0 if text else None for text in texts]
-        known = [value for value in values if value is not None]
-        if column.whole or not all(map(math.isfinite, known)) or "_" in "".join(texts):
+        known = list(map(float, filter(None, texts) if "" in texts else texts))
+        if not math.isfinite(sum(known)):
             return None
         for extreme in (min(known), max(known)) if known else ():
             column.checked(extreme, "")
     except (ValueError, InputError):
         return None
-    return values
+    if 0.0 in known:
+        known = [value + 0.0 for value in known]  # -0.0 becomes 0.0, which is written the same way again
+    if len(known) == len(texts):
+        return known
+    found = iter(known)
+    return [next(found) if text else None for text in texts]
+
+
+def _plain_labels(texts: Sequence[str]) -> list[Any] | None:
+    """Of printable ASCII without a space, so that nothing is invisible or stray."""
+    together = "".join(texts)
+    if not (together.isascii() and together.isprintable()) or " " in together:
+        return None
+    return None if max(map(len, texts), default=0) > kinds.LABEL_LIMIT else [text or None for text in texts]
 
 
 def refusals(values: Sequence[object]) -> Iterator[tuple[int, Refusal]]:
+    if Refusal not in set(map(type, values)):
+        return iter(())
     return ((index, value) for index, value in enumerate(values) if type(value) is Refusal)

@@ -18,9 +18,8 @@ from electrolog.record.exchange_cells import CellReader, refusals
 from electrolog.record.exchange_faults import FILES, Faults, printable
 from electrolog.record.sheets import BY_NAME, Sheet
 
-CHUNK = 10_000  # rows held as text at a time
+CHUNK = 1_000  # rows held as text at a time
 CELL_LIMIT = min(sys.maxsize, 2**31 - 1)
-Numbered = tuple[int, list[str]]
 Progress = Callable[[str, int], None]  # what is under way, and rows done so far
 
 
@@ -96,8 +95,8 @@ def _read_file(path: Path, sheet: Sheet, zone: tzinfo | None, faults: Faults) ->
 
 
 def _read_stream(stream: TextIO, rows: Rows, zone: tzinfo | None, faults: Faults) -> None:
-    records = _records(csv.reader(stream, strict=True), rows, faults)
-    line, header = next(records, (0, []))
+    reader = csv.reader(stream, strict=True)
+    line, header = _header(reader, rows, faults)
     if not header:
         accepted = ",".join(column.name for column in rows.sheet.columns)
         faults.add(rows.file, 0, f"is empty; accepted: a header row such as {accepted}")
@@ -106,54 +105,86 @@ def _read_stream(stream: TextIO, rows: Rows, zone: tzinfo | None, faults: Faults
     if places is None:
         return
     readers = [CellReader(column, zone) if column.name in places else None for column in rows.sheet.columns]
-    while chunk := list(islice(records, CHUNK)):
-        _take_chunk(chunk, [places.get(column.name, 0) for column in rows.sheet.columns], readers, rows, faults)
+    in_order = [places.get(column.name, 0) for column in rows.sheet.columns]
+    for lines, records in _stretches(reader, header, rows, faults):
+        _take_stretch(lines, list(zip(*records, strict=True)), in_order, readers, rows, faults)
     if any(column.required and column.name not in places for column in rows.sheet.columns):
         rows.faulty.update(range(len(rows.lines)))
 
 
-def _take_chunk(
-    chunk: list[Numbered],
+def _take_stretch(
+    lines: list[int],
+    texts: list[tuple[str, ...]],
     places: list[int],
     readers: list[CellReader | None],
     rows: Rows,
     faults: Faults,
 ) -> None:
     start = len(rows.lines)
-    rows.lines += [line for line, _ in chunk]
-    texts = list(zip(*(cells for _, cells in chunk), strict=True))
+    rows.lines += lines
     for number, column in enumerate(rows.sheet.columns):
         reader = readers[number]
         if reader is None:
-            rows.cells[number] += [None] * len(chunk)
+            rows.cells[number] += [None] * len(lines)
         else:
             values = reader.read(texts[places[number]])
             rows.cells[number] += _without_refusals(values, column, start, rows, faults)
 
 
-def _records(reader: Any, rows: Rows, faults: Faults) -> Iterator[Numbered]:
-    """The line on which each row begins, and its cells, the header first; lines with nothing on them say nothing.
-
-    Rows that can't be told apart from the header, or laid out along it, are reported and left out.
-    """
-    header: list[str] = []
+def _header(reader: Any, rows: Rows, faults: Faults) -> tuple[int, list[str]]:
+    """The first line with something on it, and where it stands."""
     while True:
         line = reader.line_num + 1
         try:
-            for cells in reader:
-                if not header or (len(cells) == len(header) and cells != header):
-                    header = header or cells
-                    if cells:
-                        yield line, cells
-                elif cells:
-                    _refuse_shape(line, cells, header, rows, faults)
-                line = reader.line_num + 1
-            return
+            cells = next(reader, None)
         except csv.Error as why:
-            faults.add(
-                rows.file, line, f"this is no row of CSV ({why}); accepted: quotes doubled and closed (RFC 4180)"
-            )
-            rows.unsure = True
+            _refuse_csv(line, why, rows, faults)
+            continue
+        if cells or cells is None:
+            return line, cells or []
+
+
+def _stretches(
+    reader: Any, header: list[str], rows: Rows, faults: Faults
+) -> Iterator[tuple[list[int], list[list[str]]]]:
+    """The line on which each row begins, and its cells, many at a time; lines with nothing on them say nothing.
+
+    Rows that can't be told apart from the header, or laid out along it, are reported and left out.
+    """
+    ended = False
+    while not ended:
+        lines: list[int] = []
+        records: list[list[str]] = []
+        line = reader.line_num + 1
+        try:
+            for cells in islice(reader, CHUNK):
+                lines.append(line)
+                records.append(cells)
+                line = reader.line_num + 1
+            ended = len(records) < CHUNK
+        except csv.Error as why:
+            _refuse_csv(line, why, rows, faults)
+        if header in records or set(map(len, records)) != {len(header)}:
+            lines, records = _laid_out(lines, records, header, rows, faults)
+        if records:
+            yield lines, records
+
+
+def _laid_out(
+    lines: list[int], records: list[list[str]], header: list[str], rows: Rows, faults: Faults
+) -> tuple[list[int], list[list[str]]]:
+    kept = []
+    for line, cells in zip(lines, records, strict=True):
+        if len(cells) == len(header) and cells != header:
+            kept.append((line, cells))
+        elif cells:
+            _refuse_shape(line, cells, header, rows, faults)
+    return [line for line, _ in kept], [cells for _, cells in kept]
+
+
+def _refuse_csv(line: int, why: csv.Error, rows: Rows, faults: Faults) -> None:
+    faults.add(rows.file, line, f"this is no row of CSV ({why}); accepted: quotes doubled and closed (RFC 4180)")
+    rows.unsure = True
 
 
 def _refuse_shape(line: int, cells: list[str], header: list[str], rows: Rows, faults: Faults) -> None:

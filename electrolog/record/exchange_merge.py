@@ -24,10 +24,9 @@ from electrolog.record.exchange_known import (
     stored_points,
 )
 from electrolog.record.exchange_links import resolve
+from electrolog.record.exchange_new import SHARED, take_new
 from electrolog.record.exchange_points import FilePoints
 from electrolog.record.journal import Writer
-
-SHARED = (sheets.ANALYTES, sheets.WAVEFORMS, sheets.TERMS)  # names of the trade: another case is the same name
 
 
 @dataclass
@@ -75,12 +74,10 @@ class SheetMerge:
         resolve(self.rows, writer.names, self.all.unsure, self.all.faults)
         if self.sheet is sheets.CALIBRATIONS and (self.known.live or self.known.struck):
             self.stored = stored_points(writer.connection)
-        for index, values in enumerate(zip(*self.rows.cells, strict=True)):
-            if index in self.rows.faulty:
-                self._keep_out(values)
-            else:
-                self._take_row(index, values)
-            if index % CHUNK == CHUNK - 1:
+        for start in range(0, len(self.rows.lines), CHUNK):
+            columns = [column[start : start + CHUNK] for column in self.rows.cells]
+            if not take_new(self, start, columns):
+                self._take_one_by_one(start, columns)
                 writer.flush()
         self._note_left()
 
@@ -91,6 +88,13 @@ class SheetMerge:
             self.all.counts["calibration_points"].there += self.all.points.refuse_strays(
                 taken, self.known, self.stored, self.all.writer.names, self.all.faults
             )
+
+    def _take_one_by_one(self, start: int, columns: list[list[Any]]) -> None:
+        for index, values in enumerate(zip(*columns, strict=True), start):
+            if index in self.rows.faulty:
+                self._keep_out(values)
+            else:
+                self._take_row(index, values)
 
     def _take_row(self, index: int, values: Values) -> None:
         key = self.key(values)

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections import defaultdict
 from collections.abc import Sequence
+from itertools import chain, groupby
 
 from electrolog.errors import shortened
 from electrolog.record import sheets
@@ -21,15 +22,22 @@ class FilePoints:
     def __init__(self, rows: Rows | None) -> None:
         self._rows = rows or Rows(sheets.POINTS, cells=[[] for _ in sheets.POINTS.columns])
         self._labels, self._concentrations, self._currents = self._rows.cells
-        self._members: dict[str, list[int]] = defaultdict(list)
-        for index, label in enumerate(self._labels):
+        self._members: dict[str, list[range]] = defaultdict(list)  # where its points stand, mostly in one piece
+        start = 0
+        for label, run in groupby(self._labels):
+            stop = start + sum(1 for _ in run)
             if label is not None:
-                self._members[label.casefold()].append(index)
+                self._members[label.casefold()].append(range(start, stop))
+            start = stop
         self._doubtful = {self._labels[index].casefold() for index in self._rows.faulty if self._labels[index]}
 
     def of(self, label: str) -> list[Point]:
         """The points of one calibration, by its folded label."""
-        return [(self._concentrations[index], self._currents[index]) for index in self._members.get(label, ())]
+        found: list[Point] = []
+        for run in self._members.get(label, ()):
+            stretch = slice(run.start, run.stop)
+            found += zip(self._concentrations[stretch], self._currents[stretch], strict=True)
+        return found
 
     def agree(self, label: str, stored: Sequence[Sequence[Point]]) -> bool:
         """Whether the file says nothing else about its points than one of these; a fault told already says nothing."""
@@ -40,7 +48,7 @@ class FilePoints:
         """A fault when the record has other points for this calibration."""
         if self.agree(label, (stored.live[row_id], stored.every[row_id])):
             return False
-        first = self._members[label][0]
+        first = self._members[label][0].start
         held = f"{len(stored.live[row_id])} other points" if stored.live[row_id] else "no points"
         faults.add(
             POINTS_FILE,
@@ -58,13 +66,13 @@ class FilePoints:
             if live is None:
                 self._refuse_unknown(label, names, faults)
             elif not self.refuse_other(label, live[0], stored, faults):
-                there += len(self._members[label])
+                there += sum(map(len, self._members[label]))
         return there
 
     def _refuse_unknown(self, label: str, names: Names, faults: Faults) -> None:
         calibrations = [spelling for spelling, _ in names.everything("calibrations").values()]
-        said = faults.unknown("calibration", self._labels[self._members[label][0]], calibrations)
-        for index in self._members[label]:
+        said = faults.unknown("calibration", self._labels[self._members[label][0].start], calibrations)
+        for index in chain.from_iterable(self._members[label]):
             hint = "; accepted: one in calibrations.csv or in the record"
             faults.add(POINTS_FILE, self._rows.lines[index], f"calibration: {said}{hint}")
 

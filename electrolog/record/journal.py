@@ -7,9 +7,10 @@ from __future__ import annotations
 
 import hashlib
 import json
-from collections.abc import Iterator, Mapping
+from collections.abc import Callable, Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass, field
 from datetime import date, datetime
+from itertools import chain
 from typing import Any
 
 from sqlalchemy import Column, Connection, Dialect, Table, func, insert, select
@@ -18,7 +19,9 @@ from electrolog.clock import utc_now
 from electrolog.record import schema
 from electrolog.record.names import Names
 
+Columns = Mapping[str, Sequence[Any]]
 FIRST_HASH = "0" * 64
+ROWS_AT_ONCE = 100  # in one statement: of the widest table far fewer values than SQLite takes
 
 
 @dataclass(frozen=True)
@@ -43,7 +46,7 @@ class Writer:
     who: str
     reason: str = ""
     at: datetime = field(default_factory=utc_now)
-    _entries: list[dict[str, Any]] = field(default_factory=list)
+    _entries: list[tuple[Any, ...]] = field(default_factory=list)
     _rows: dict[str, list[dict[str, Any]]] = field(default_factory=dict)
     _tail: tuple[int, str] | None = None
     _next_ids: dict[str, int] = field(default_factory=dict)
@@ -53,33 +56,41 @@ class Writer:
 
     def new_id(self, sheet: str) -> int:
         """The next row number. The write lock makes it safe, and the journal can name the row before it is there."""
+        return self.new_ids(sheet, 1)[0]
+
+    def new_ids(self, sheet: str, count: int) -> range:
         if sheet not in self._next_ids:
             newest = select(func.max(schema.tables[sheet].c.id))
-            self._next_ids[sheet] = self.connection.execute(newest).scalar() or 0
-        self._next_ids[sheet] += 1
-        return self._next_ids[sheet]
+            self._next_ids[sheet] = (self.connection.execute(newest).scalar() or 0) + 1
+        first = self._next_ids[sheet]
+        self._next_ids[sheet] = first + count
+        return range(first, first + count)
 
     def note(self, action: str, sheet: str, row_id: int, change: Mapping[str, Any], reason: str | None = None) -> int:
         """Chains an entry; it reaches the database at flush(), in this transaction. Returns its number."""
+        return self.note_all(action, sheet, [(row_id, change)], reason)
+
+    def note_all(
+        self, action: str, sheet: str, changes: Iterable[tuple[int, Mapping[str, Any]]], reason: str | None = None
+    ) -> int:
+        """Chains an entry for each (row number, change), hashed in one pass. Returns the last one's number."""
         seq, previous = self._tail_now()
-        row: dict[str, Any] = {
-            "seq": seq + 1,
-            "at": self.at,
-            "who": self.who,
-            "action": action,
-            "sheet": sheet,
-            "row_id": row_id,
-            "reason": self.reason if reason is None else reason,
-            "change": canonical(change),
-            "previous_hash": previous,
-        }
-        row["hash"] = entry_hash(row)
-        self._entries.append(row)
-        self._tail = (seq + 1, row["hash"])
-        return seq + 1
+        why = self.reason if reason is None else reason
+        hashed = hasher(self.at, self.who, action, sheet, why)
+        for row_id, change in changes:
+            seq, before, text = seq + 1, previous, canonical(change)
+            previous = hashed(seq, row_id, text, before)
+            self._entries.append((seq, self.at, self.who, action, sheet, row_id, why, text, before, previous))
+        self._tail = (seq, previous)
+        return seq
 
     def insert(self, sheet: str, *rows: dict[str, Any]) -> None:
         self._rows.setdefault(sheet, []).extend(rows)
+
+    def insert_columns(self, sheet: str, columns: Columns) -> None:
+        """Rows given by column, written at once, after those that wait."""
+        self.flush()
+        insert_columns(self.connection, schema.tables[sheet], columns)
 
     def flush(self) -> None:
         for sheet in list(schema.tables):
@@ -87,7 +98,8 @@ class Writer:
             if rows:
                 insert_many(self.connection, schema.tables[sheet], rows)
         if self._entries:
-            insert_many(self.connection, schema.journal, self._entries)
+            by_column = zip(schema.journal.c.keys(), zip(*self._entries, strict=True), strict=True)
+            insert_columns(self.connection, schema.journal, dict(by_column))
             self._entries = []
 
     def _tail_now(self) -> tuple[int, str]:
@@ -96,20 +108,37 @@ class Writer:
         return self._tail
 
 
-def insert_many(connection: Connection, table: Table, rows: list[dict[str, Any]]) -> None:
-    """Rows with the same columns. SQLite's driver is given them at once: SQLAlchemy's own way costs a bulk import
-    more than the database itself does.
-    """
-    if connection.dialect.name != "sqlite":
-        connection.execute(insert(table), rows)
+def insert_many(connection: Connection, table: Table, rows: Sequence[Mapping[str, Any]]) -> None:
+    """Rows with the same columns."""
+    insert_columns(connection, table, {name: [row[name] for row in rows] for name in rows[0]})
+
+
+def insert_columns(connection: Connection, table: Table, columns: Columns) -> None:
+    """Rows given by column."""
+    if connection.dialect.name == "sqlite":
+        _insert_sqlite(connection, table, columns)
         return
-    statement = insert(table).compile(dialect=connection.dialect, column_keys=list(rows[0]))
-    columns = [_driver_values(table.c[name], rows, connection.dialect) for name in statement.positiontup or ()]
-    connection.exec_driver_sql(str(statement), list(zip(*columns, strict=True)))
+    rows = [dict(zip(columns, row, strict=True)) for row in zip(*columns.values(), strict=True)]
+    connection.execute(insert(table), rows)
 
 
-def _driver_values(column: Column[Any], rows: list[dict[str, Any]], dialect: Dialect) -> list[Any]:
-    values = [row[column.name] for row in rows]
+def _insert_sqlite(connection: Connection, table: Table, columns: Columns) -> None:
+    """Many rows in one statement, straight to the driver: SQLAlchemy's own way costs a bulk import more than the
+    database itself does, and a statement for each row half as much again.
+    """
+    known = {name: values for name, values in columns.items() if values.count(None) < len(values)}
+    values = [_driver_values(table.c[name], column, connection.dialect) for name, column in known.items()]
+    names = ", ".join(map(connection.dialect.identifier_preparer.quote, known))
+    row, width = f"({', '.join('?' * len(known))})", len(known)
+    flat = tuple(chain.from_iterable(zip(*values, strict=True)))
+    blocks = [flat[at : at + ROWS_AT_ONCE * width] for at in range(0, len(flat), ROWS_AT_ONCE * width)]
+    rest = [blocks.pop()] if len(blocks[-1]) < ROWS_AT_ONCE * width else []
+    for some in filter(None, (blocks, rest)):
+        rows = ", ".join([row] * (len(some[0]) // width))
+        connection.exec_driver_sql(f"INSERT INTO {table.name} ({names}) VALUES {rows}", some)  # noqa: S608
+
+
+def _driver_values(column: Column[Any], values: Sequence[Any], dialect: Dialect) -> Sequence[Any]:
     turned = column.type.dialect_impl(dialect).bind_processor(dialect)
     return list(map(turned, values)) if turned else values
 
@@ -123,19 +152,22 @@ def head(connection: Connection) -> tuple[int, str]:
 
 
 def entry_hash(row: Mapping[str, Any]) -> str:
-    """SHA-256 over every column but the hash itself, in a form that has one spelling only."""
-    parts = [
-        row["seq"],
-        schema.fixed_width(row["at"]),
-        row["who"],
-        row["action"],
-        row["sheet"],
-        row["row_id"],
-        row["reason"],
-        row["change"],
-        row["previous_hash"],
-    ]
-    return hashlib.sha256(_HASHED.encode(parts).encode()).hexdigest()
+    hashed = hasher(row["at"], row["who"], row["action"], row["sheet"], row["reason"])
+    return hashed(row["seq"], row["row_id"], row["change"], row["previous_hash"])
+
+
+def hasher(at: datetime, who: str, action: str, sheet: str, reason: str) -> Callable[[int, int, str, str], str]:
+    """SHA-256 over every column but the hash itself, as a JSON list that has one spelling only; what many entries
+    share is spelled once.
+    """
+    origin = ",".join(map(_SPELLED.encode, (schema.fixed_width(at), who, action, sheet)))
+    why = _SPELLED.encode(reason)
+
+    def hashed(seq: int, row_id: int, change: str, previous: str) -> str:
+        spelled = f"[{seq},{origin},{row_id},{why},{_SPELLED.encode(change)},{_SPELLED.encode(previous)}]"
+        return hashlib.sha256(spelled.encode()).hexdigest()
+
+    return hashed
 
 
 def canonical(change: Mapping[str, Any]) -> str:
@@ -150,7 +182,7 @@ def _plain(value: object) -> str:
     raise TypeError(f"{type(value).__name__} has no place in the journal")
 
 
-_HASHED = json.JSONEncoder(separators=(",", ":"))
+_SPELLED = json.JSONEncoder()
 _CANONICAL = json.JSONEncoder(sort_keys=True, separators=(",", ":"), default=_plain, allow_nan=False)
 
 

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import re
+from collections.abc import Sequence
 
 from sqlalchemy import Connection, func, select
 
@@ -51,6 +52,11 @@ class Names:
         self._known[sheet, name] = row_id
         if sheet in self._complete:
             self._complete[sheet][name.casefold()] = (name, row_id)
+
+    def add_all(self, sheet: str, names: Sequence[str], row_ids: Sequence[int]) -> None:
+        """The same for many, of a sheet whose every name is known."""
+        by_name = zip(names, zip(names, row_ids, strict=True), strict=True)
+        self.everything(sheet).update({name.casefold(): found for name, found in by_name})
 
     def add_abbreviation(self, short: str, row_id: int) -> None:
         self._abbreviated().setdefault(short.casefold(), row_id)
@@ -102,9 +108,9 @@ class Names:
         self._word_lists()[kind].setdefault(word.casefold(), word)
 
     def _asked(self, sheet: str, name: str) -> int | None:
-        table, label = schema.tables[sheet], _label_column(BY_NAME[sheet])
-        query = select(table.c.id).where(table.c[label] == name, table.c.struck.is_(None))
         if sheet not in self._complete:
+            table, label = schema.tables[sheet], _label_column(BY_NAME[sheet])
+            query = select(table.c.id).where(table.c[label] == name, table.c.struck.is_(None))
             found = self._connection.execute(query).scalar()
             if found is not None:
                 return int(found)

@@ -79,11 +79,11 @@ def test_nothing_is_allowed_for_where_replicates_are_missing_or_even_or_weighted
 
 def test_many_calibrations_together_show_what_one_cannot():
     random = np.random.default_rng(4)
-    grown = pooled_growth([fit_line(*made(random, 1, 0.06)) for _ in range(20)])
+    grown = pooled_growth([made(random, 1, 0.06) for _ in range(20)])
     assert grown.lines == 20
     assert grown.times > 1.5
-    assert pooled_growth([fit_line(*made(random, 1, 0.06)) for _ in range(5)]) is None
-    false = [pooled_growth([fit_line(*made(random, 1, 0.0)) for _ in range(20)]) for _ in range(200)]
+    assert pooled_growth([made(random, 1, 0.06) for _ in range(5)]) is None
+    false = [pooled_growth([made(random, 1, 0.0) for _ in range(20)]) for _ in range(200)]
     assert sum(one is not None for one in false) <= 8  # one in a hundred by chance
 
 
@@ -137,8 +137,8 @@ def test_the_allowance_is_that_of_the_formulas_with_full_matrices(through_zero):
 
 def test_a_line_without_a_slope_has_no_part_in_the_pooled_growth():
     random = np.random.default_rng(5)
-    lines = [fit_line(*made(random, 1, 0.15, noise=0.01)) for _ in range(30)]
-    flat = fit_line([0.0, 1.0, 2.0], [1.0, 2.0, 1.0])
-    assert flat.slope_na_um == 0.0
-    assert pooled_growth(lines) is not None
-    assert pooled_growth([*lines, flat]) == pooled_growth(lines)
+    rising = [made(random, 1, 0.15, noise=0.01) for _ in range(30)]
+    flat = [0.0, 1.0, 2.0], [1.0, 2.0, 1.0]
+    assert fit_line(*flat).slope_na_um == 0.0
+    assert pooled_growth(rising) is not None
+    assert pooled_growth([*rising, flat]) == pooled_growth(rising)
