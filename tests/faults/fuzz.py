@@ -28,6 +28,7 @@ from electrolog.cli.catalogue import HELP, module_of
 from electrolog.cli.main import main
 from electrolog.lab import Lab, open_lab
 from electrolog.record import journal
+from tests.faults.right_files import BOOK, EXCHANGE, File, readers
 
 LONGEST_S = 30.0
 STATUSES = {0, 1, 2, 10, 20, 30, 130}
@@ -220,31 +221,16 @@ def command_lines(draw: st.DrawFn) -> list[str]:
     return [*zone, name, *(word for part in parts for word in part)]
 
 
-EXCHANGE = {
-    "electrodes.csv": "electrode,batch,geometry,exposed_length_um\nX1,,cylinder,100\nX2,,disk,\n",
-    "waveforms.csv": "waveform,vertices_v,scan_rate_v_s,frequency_hz\nzigzag,-0.4 1.3 -0.4,400,10\n",
-    "calibrations.csv": (
-        "calibration,electrode,at,stage,analyte,waveform,noise_na\nXC1,X1,2026-01-07T09:00:00Z,pre,dopamine,zigzag,0.08\n"
-    ),
-    "calibration_points.csv": "calibration,concentration_um,current_na\nXC1,0,0.1\nXC1,1,12.2\nXC1,2,24\n",
-    "exposures.csv": "electrode,start,duration_min,setting\nX1,2026-01-08T09:00:00Z,240,in-vivo\n",
-    "terms.csv": "kind,term,meaning\nsetting,gel,agar\n",
-    "standards.csv": "standard,analyte,prepared_at,concentration_um\nXS,dopamine,2026-01-07T08:00:00Z,10000\n",
-}
-RECORDING = "time_s,current_na\n" + "".join(f"{n / 10},{(n // 50 % 2) * 6 + n % 3 * 0.1}\n" for n in range(400))
-SCANS = "potential_v,0uM,1uM\n" + "".join(f"{n / 20 - 0.4:.2f},{n % 5},{n % 5 + 2}\n" for n in range(30))
-BOOK = 'probe,date,stage,nA/uM,note\nK1,2024-03-04,pre,12,ok\nK2,05/03/2024,post,"9,5",tip bent\n'
 BYTES = st.sampled_from(
     [b"\x00", b"\xff\xfe", b"\xef\xbb\xbf", b'"', b",", b"\n", b"\r", b";", b"=1+1", b"nan", b"1e999", b"-"]
 )
 
 
 @st.composite
-def mutated(draw: st.DrawFn, text: str) -> bytes:
+def mutated(draw: st.DrawFn, content: bytes) -> bytes:
     """A file that was right, with up to four things done to it; or nothing like one."""
     if draw(st.integers(0, 19)) == 0:
         return draw(st.binary(max_size=300))
-    content = text.encode()
     for _ in range(draw(st.integers(1, 4))):
         place, length = draw(st.integers(0, len(content))), draw(st.integers(0, 12))
         new = draw(BYTES | st.binary(max_size=4) | AWKWARD.map(lambda word: word.encode(errors="surrogatepass")))
@@ -266,35 +252,25 @@ def in_a_deep_folder() -> Iterator[Path]:
             os.chdir(before)
 
 
-READERS: dict[str, tuple[str, list[str]]] = {  # a file that is right, and the words that read it
-    "trace": (RECORDING, ["trace", "B1-02", "pre", "DA", "hostile.csv", "1uM", "-w", "triangle", "--yes"]),
-    "scans": (SCANS, ["scans", "B1-02", "pre", "DA", "hostile.csv", "1uM", "-w", "triangle", "--yes"]),
-    "recording": (RECORDING, ["convert", "hostile.csv", "-p", "B1-01", "-a", "DA", "-w", "triangle"]),
-    "spreadsheet": (
-        BOOK,
-        ["adopt", "hostile.csv", "--answer", "waveform=triangle", "--answer", "analyte=DA", "--commit"],
-    ),
-}
-
-
 @st.composite
 def exchange_folders(draw: st.DrawFn) -> dict[str, bytes]:
     """One or two of its files mutated."""
     chosen = draw(st.sets(st.sampled_from(sorted(EXCHANGE)), min_size=1, max_size=2))
-    files = {name: text.encode() for name, text in EXCHANGE.items()}
-    return files | {name: draw(mutated(EXCHANGE[name])) for name in sorted(chosen)}
+    return EXCHANGE | {name: draw(mutated(EXCHANGE[name])) for name in sorted(chosen)}
 
 
 def run(make: Callable[[Path], Lab], count: int) -> Tally:
     """Half of the inputs are command lines; the other half are files, of each reader as many."""
-    tally, each = Tally(), -(-count // 10)
+    files = readers()
+    tally, each = Tally(), -(-count // (2 * (len(files) + 1)))
     with in_a_deep_folder() as folder:
         path = folder / "record.db"
         make(path)
+        (folder / "right.csv").write_text(BOOK, encoding="utf-8")
         many(count // 2, command_lines(), lambda words: tried(path, words, "command line", tally))
         many(each, exchange_folders(), lambda files: read_folder(path, files, tally))
-        for what, (text, words) in READERS.items():
-            many(each, mutated(text), partial(read_file, path, what, words, tally))
+        for what, file in files.items():
+            many(each, mutated(file.content), partial(read_file, path, what, file, tally))
         if not open_lab(str(path)).verify().whole:
             tally.faults.append("the record no longer verifies")
     return tally
@@ -308,9 +284,16 @@ def read_folder(path: Path, files: dict[str, bytes], tally: Tally) -> None:
     tried(path, ["import", str(folder)], "exchange folder", tally)
 
 
-def read_file(path: Path, what: str, words: list[str], tally: Tally, content: bytes) -> None:
-    (path.parent / "hostile.csv").write_bytes(content)
-    tried(path, words, what, tally)
+def read_file(path: Path, what: str, file: File, tally: Tally, content: bytes) -> None:
+    place = path.parent / file.name
+    place.write_bytes(content)
+    if file.name == "settings.toml":
+        os.environ["ELECTROLOG_SETTINGS"] = str(place)
+    try:
+        tried(path, file.words, what, tally)
+    finally:
+        os.environ["ELECTROLOG_SETTINGS"] = os.devnull
+        place.unlink()
 
 
 def many(count: int, inputs: st.SearchStrategy[Any], use: Callable[[Any], None]) -> None:
