@@ -1,6 +1,8 @@
 """Every check, from nothing but Python:  python3 tests/run.py
 
 With arguments, pytest alone, with those arguments:  python3 tests/run.py tests/record -k journal
+
+How fast, beside a floor or a peer in the same run:  python3 tests/run.py --bench [quick | NAME ...]
 """
 
 import os
@@ -18,6 +20,8 @@ MOST_WORKERS = 4
 
 def main(arguments: list[str]) -> int:
     environment.prepare("tests", "postgresql")
+    if arguments[:1] == ["--bench"]:
+        return module("tests.bench", *arguments[1:])
     lint = [] if arguments else LINT
     statuses = [module(*command) for command in lint]
     workers = str(min(MOST_WORKERS, os.cpu_count() or 1))
