@@ -68,6 +68,8 @@ def _summary(found: Runs) -> list[str]:
     if found.unlisted:
         shown = _named(list(found.unlisted))
         lines.append(f"only a list can tell of {shown}: `electrolog runs {found.folder} --list` makes one to fill in")
+    if any(run.state == "refused" and not run.electrode for run in found.runs):
+        lines.append("a probe that no file names can be typed: --probe FILE=LABEL, or in the list (--list)")
     if found.count("doubtful"):
         lines.append("what is doubtful is written only with --yes")
     if not found.committed:

@@ -60,7 +60,10 @@ def test_what_is_added_and_what_is_ours_may_differ(source: Path) -> None:
         file["new/x"] = 1
         _again("ours/x", 2)(file)
 
-    refuse_unequal(source, changed(source, change), OURS)
+    copy = changed(source, change)
+    refuse_unequal(source, copy, OURS)
+    with pytest.raises(ElectrologError, match="ours/x would"):
+        refuse_unequal(source, copy, ())
 
 
 @pytest.mark.parametrize(

@@ -83,7 +83,9 @@ def test_the_run_is_found_by_the_list_or_by_what_is_typed(judged: Any, recording
     assert "its run isn't on record" in judged.refused("enclose", "a.csv", *ASKED, "--convert", "--again")
     (recording.parent / "recordings.csv").write_text(f"file,start\na.csv,{RUN.isoformat()}\n", encoding="utf-8")
     told = judged.ok("enclose", "a.csv", *ASKED, "--convert", "--again", "--json").json
-    assert told["exposure"] == open_lab(judged.db).rows("exposures")[-2]["id"]
+    assert told["exposure"] == next(
+        r["id"] for r in open_lab(judged.db).rows("exposures") if r["recording"] == "rec-R1"
+    )
     (recording.parent / "recordings.csv").unlink()
     said = judged.refused("enclose", "a.csv", "-a", "dopamine", "-p", "G0-0")
     assert "which exposure is it?" in said

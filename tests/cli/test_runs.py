@@ -145,6 +145,7 @@ def test_the_probe_is_read_from_the_files_name_or_its_folders(cli: Any, tmp_path
         ("R1.nwb", "names no probe, nor does its file or folder"),
         ("B9-1.nwb", "the nearest labels are B9-01"),
         ("XB9-01.nwb", "the nearest labels are B9-01"),
+        ("R0121_B902.nwb", "the nearest labels are B9-02"),
         ("B9-011.nwb", "names no probe"),
         ("B9-01_B9-02.nwb", "name 2 probes: B9-01, B9-02"),
         ("B9-01/B9-02.nwb", "name 2 probes: B9-02, B9-01"),
@@ -169,6 +170,8 @@ def test_the_probe_may_be_typed_of_one_file_or_of_all(cli: Any, tmp_path: Path) 
     assert probe_of(cli, "--probe", "run1.nwb=b9-02") == ("B9-02", "--probe")
     assert probe_of(cli, "--probe", "B9-03") == ("B9-03", "--probe")
     assert "no probe is called 'B99'" in cli.refused("runs", "rig", *HERE, "--probe", "B99")
+    cli.ok("runs", "rig", *HERE, "--probe", "B9-03", "--commit")
+    assert probe_of(cli) == ("there already", "exposure 13 was read from this very file")
     (tmp_path / "rig" / "run1.nwb").rename(tmp_path / "rig" / "B9-01.nwb")
     assert "its name says B9-01, --probe says B9-03" in probe_of(cli, "--probe", "B9-03")[1]
 
@@ -289,7 +292,7 @@ def test_the_same_run_twice_is_taken_once_and_two_at_a_time_not_at_all(cli: Any,
         "B9-01_R1.nwb": "new",
         "B9-01_R2.nwb": "refused",
         "B9-01_R4.nwb": "refused",
-        "copy of B9-01_R1.nwb": "there already",
+        "copy of B9-01_R1.nwb": "repeated",
     }
     assert "overlaps with B9-01_R4.nwb" in said_of(told, "B9-01_R2.nwb")
     assert "the same run as B9-01_R1.nwb" in said_of(told, "copy of B9-01_R1.nwb")

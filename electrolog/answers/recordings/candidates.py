@@ -34,7 +34,10 @@ class Given:
 
 @dataclass
 class Candidate:
-    """One run of one probe. `said`: what was assumed; `doubts` want a yes; with a refusal it isn't logged."""
+    """One run of one probe. `said`: what was assumed; `doubts` want a yes; with a refusal it isn't logged.
+
+    `there`: which row of the record it is; `repeats`: the other file of the folder that tells of the same run.
+    """
 
     file: str
     path: Path
@@ -48,6 +51,7 @@ class Candidate:
     doubts: list[str] = field(default_factory=list)
     refusals: list[str] = field(default_factory=list)
     there: str = ""
+    repeats: str = ""
 
     @property
     def recording(self) -> str:
@@ -187,5 +191,5 @@ def recording_of(file: str) -> str:
 
 def _without_name(why: InputError, path: Path) -> str:
     """The file is named beside it already."""
-    hint = f" ({why.hint})" if why.hint else ""
+    hint = f"; {why.hint}" if why.hint else ""
     return why.message.removeprefix(f"{path.name}: ") + hint

@@ -49,11 +49,17 @@ class Labels:
                 rest = re.sub(pattern, "\0", rest)
         return found
 
-    def _near(self, text: str) -> str:
+    def _near(self, *words: str) -> str:
+        """The labels that look most like any of the words."""
         by_likeness = {alike(key): label for key, label in self._folded.items()}
-        near = difflib.get_close_matches(alike(text), list(by_likeness), n=MOST_NEAR, cutoff=0.5)
+        likely: dict[str, float] = {}
+        for word in map(alike, words):
+            for key in difflib.get_close_matches(word, list(by_likeness), n=MOST_NEAR, cutoff=0.5):
+                ratio = difflib.SequenceMatcher(a=key, b=word).ratio()
+                likely[by_likeness[key]] = max(ratio, likely.get(by_likeness[key], 0.0))
+        near = sorted(likely, key=lambda label: -likely[label])[:MOST_NEAR]
         if near:
-            return f"the nearest labels are {', '.join(by_likeness[key] for key in near)}"
+            return f"the nearest labels are {', '.join(near)}"
         return f"known: {', '.join(list(self._folded.values())[:12])}" if self._folded else "none is known yet"
 
     def by_name(self, parts: Sequence[str]) -> Named:
@@ -63,12 +69,11 @@ class Labels:
         if len(told) > 1:
             raise InputError(f"its name and folders name {len(told)} probes: {', '.join(told)}; accepted: one")
         if not told:
-            raise InputError(f"names no probe, nor does its file or folder; {self._near(_word(parts[0]))}")
+            raise InputError(f"names no probe, nor does its file or folder; {self._near(*_words(parts[0]))}")
         (part,) = [part for part, labels in found if labels][:1]
         return Named(told[0], "the file's name" if part == parts[0] else f"the folder '{shortened(part, 40)}'")
 
 
-def _word(name: str) -> str:
-    """What in a file's name looks most like a label: letters and digits together."""
-    words = [word for word in re.split(r"[\s_]+", name) if re.search(r"[^\W\d_]", word) and re.search(r"\d", word)]
-    return words[0] if words else name
+def _words(name: str) -> list[str]:
+    """The parts of a file's name that may be a label: none is without a letter, or every date would be like one."""
+    return [word for word in re.split(r"[\s_]+", name) if re.search(r"[^\W\d_]", word)] or [name]

@@ -29,12 +29,15 @@ from electrolog.record.columns import Value
 from electrolog.record.names import Names
 from electrolog.record.store import Record
 
-NEW, THERE, DOUBTFUL, REFUSED, WAITING = "new", "there already", "doubtful", "refused", "waits for an answer"
+THERE, REPEATED, DOUBTFUL, REFUSED = "there already", "repeated", "doubtful", "refused"
+WAITING = "waits for an answer"
 
 
 @dataclass(frozen=True)
 class FoundRun:
-    """`state`: new, there already, filled in, left struck, doubtful (wants a yes), refused, or waits for an answer."""
+    """`state`: new, there already, filled in, left struck, repeated (another file tells of the same run), doubtful
+    (wants a yes), refused, or waits for an answer.
+    """
 
     file: str
     state: str
@@ -137,7 +140,7 @@ def _check_words(found: Sequence[Candidate], known: Vocabulary) -> None:
 
 
 def _questions(found: Sequence[Candidate], known: Vocabulary) -> tuple[str, ...]:
-    asked = [one for one in found if not (one.refusals or one.there or one.texts.get("setting"))]
+    asked = [one for one in found if _is_open(one) and not one.texts.get("setting")]
     if not asked:
         return ()
     words = ", ".join(known.settings.values())
@@ -149,7 +152,11 @@ def _counted(asked: Sequence[Candidate]) -> str:
 
 
 def _to_write(found: Sequence[Candidate], confirmed: bool) -> list[Candidate]:
-    return [one for one in found if not (one.refusals or one.there) and (confirmed or not one.doubts)]
+    return [one for one in found if _is_open(one) and (confirmed or not one.doubts)]
+
+
+def _is_open(one: Candidate) -> bool:
+    return not (one.refusals or one.there or one.repeats)
 
 
 def _taken_in(record: Record, chosen: Sequence[Candidate], commit: bool, tell: Tell) -> dict[int, str]:
@@ -186,11 +193,14 @@ def _told(one: Candidate, state: str, waiting: bool, confirmed: bool) -> FoundRu
         state = REFUSED
     elif one.there:
         state = THERE
+    elif one.repeats:
+        state = REPEATED
     elif one.doubts and not confirmed:
         state = DOUBTFUL
     elif waiting:
         state = WAITING
-    said = (*one.refusals, *([one.there] if one.there else ()), *one.doubts, *one.said)
+    same = f"the same run as {one.repeats}" if one.repeats else ""
+    said = (*one.refusals, *filter(None, (one.there, same)), *one.doubts, *one.said)
     return FoundRun(
         one.file, state, one.probe, one.probe_from, one.start, one.duration_min, one.texts.get("setting"),
         one.texts.get("subject"), one.texts.get("waveform"), tuple(dict.fromkeys(said)),

@@ -51,7 +51,9 @@ class Standing:
         for one in found:
             if not one.refusals:
                 self._look(one)
-        _compare(found)
+            elif not one.probe and one.path.is_file() and (number := self._read_before(one)):
+                one.refusals, one.there = [], f"exposure {number} was read from this very file"
+        _compare([one for one in found if one.start is not None])
 
     def _look(self, one: Candidate) -> None:
         assert one.start is not None  # noqa: S101 -- such are refused before
@@ -113,7 +115,7 @@ def _compare_two(first: Candidate, second: Candidate) -> None:
     assert second.start is not None  # noqa: S101
     apart_s = abs((second.start - first.start).total_seconds()), abs((second.end - first.end).total_seconds())
     if max(apart_s) < SAME_S:
-        second.there = second.there or f"the same run as {first.file}"
-    elif second.start < first.end and not (first.there and second.there):
+        second.repeats = first.file
+    elif second.start < first.end and not (first.there and second.there) and not (first.repeats or second.repeats):
         first.refusals.append(f"overlaps with {second.file}: a probe can't be in two places at once")
         second.refusals.append(f"overlaps with {first.file}: a probe can't be in two places at once")
