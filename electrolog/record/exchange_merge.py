@@ -53,6 +53,8 @@ class Import:
 class SheetMerge:
     """One file against the record."""
 
+    at_once = True  # whether plain new rows may be taken in together
+
     def __init__(self, under_way: Import, rows: Rows) -> None:
         self.all = under_way
         self.rows = rows
@@ -76,7 +78,7 @@ class SheetMerge:
             self.stored = stored_points(writer.connection)
         for start in range(0, len(self.rows.lines), CHUNK):
             columns = [column[start : start + CHUNK] for column in self.rows.cells]
-            if not take_new(self, start, columns):
+            if not (self.at_once and take_new(self, start, columns)):
                 self._take_one_by_one(start, columns)
                 writer.flush()
         self._note_left()

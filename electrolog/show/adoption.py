@@ -2,14 +2,20 @@
 
 from __future__ import annotations
 
+import re
+from collections import Counter
 from collections.abc import Mapping
 from typing import TYPE_CHECKING, Any
 
 from electrolog.clock import shown_moment
 from electrolog.record import sheets
 from electrolog.show.machine import print_json
-from electrolog.show.tables import print_lines, print_table
-from electrolog.units import shown_duration, shown_number
+from electrolog.show.tables import named, print_lines, print_table
+from electrolog.units import counted, shown_duration, shown_number
+
+MOST_ROWS = 5  # of a kind
+MOST_PLACES = 3  # that say the same
+_OWN = re.compile(r"'[^']*'|\b\d{4}\b|[^\s;]+![A-Z]+\d+(:[A-Z]+\d+)?")  # a cell's own value, a year, a place
 
 if TYPE_CHECKING:
     from electrolog.record.books.adoption import AdoptedRow, Adoption
@@ -22,8 +28,7 @@ def answer(found: Adoption, json: bool) -> None:
     headings = [(one.heading, one.place, one.meaning, one.why) for one in found.headings]
     print_table(("heading", "first at", "read as", "because of"), headings, least=("because of", "first at"))
     print_lines("")
-    rows = [(row.state, row.place, sheets.BY_NAME[row.sheet].one, row.name, _shown(row)) for row in found.rows]
-    print_table(("state", "where", "what", "name", "holds"), rows, least=("name",), wrapped="holds")
+    _print_rows(found)
     _print_remarks(found)
     print_lines("", *_summary(found))
 
@@ -43,12 +48,40 @@ def _shown(row: AdoptedRow) -> str:
     return ", ".join(f"{name} {value}" for name, value in values.items() if name not in ("electrode", "batch"))
 
 
+def _print_rows(found: Adoption) -> None:
+    """The first of each kind and state: nobody reads a thousand lines at a terminal."""
+    shown: list[tuple[str, ...]] = []
+    more: Counter[str] = Counter()
+    seen: Counter[tuple[str, str]] = Counter()
+    for row in found.rows:
+        kind = sheets.BY_NAME[row.sheet].one
+        seen[kind, row.state] += 1
+        if seen[kind, row.state] <= MOST_ROWS:
+            shown.append((row.state, row.place, kind, row.name, _shown(row)))
+        else:
+            more[f"{kind}, {row.state}"] += 1
+    print_table(("state", "where", "what", "name", "holds"), shown, least=("name",), wrapped="holds")
+    if more:
+        said = "; ".join(f"{count} more of {what}" for what, count in more.items())
+        print_lines(f"and {said} (--json lists them all)")
+
+
 def _print_remarks(found: Adoption) -> None:
+    """Remarks that differ in a value only stand together: the first of them, and where the others are."""
     for kind in ("refused", "doubtful", "left out"):
-        said = [(one.place, one.said) for one in found.remarks if one.kind == kind]
-        if said:
+        alike: dict[str, list[tuple[str, str]]] = {}
+        for one in found.remarks:
+            if one.kind == kind:
+                alike.setdefault(_OWN.sub("…", one.said), []).append((one.place, one.said))
+        if alike:
             print_lines("")
-            print_table((f"{kind}: where", "why"), said, wrapped="why")
+            print_table((f"{kind}: where", "why"), [_remark(told) for told in alike.values()], wrapped="why")
+
+
+def _remark(told: list[tuple[str, str]]) -> tuple[str, str]:
+    others = len({said for _, said in told}) - 1
+    more = f" (and {counted(others, 'more value')} of the kind)" if others else ""
+    return named([place for place, _ in told], MOST_PLACES), told[0][1] + more
 
 
 def _summary(found: Adoption) -> list[str]:

@@ -67,3 +67,13 @@ def test_a_person_is_asked_and_the_answers_are_kept(empty: Any, book: str) -> No
     kept = Path("old.adopt.toml").read_text(encoding="utf-8")
     assert 'analyte = "DA"' in kept
     assert 'waveform = "triangle"' in kept
+
+
+def test_a_long_book_is_told_in_few_lines(empty: Any, tmp_path: Path) -> None:
+    rows = "".join(f"K-{place},2024-03-{place:02d},pre,~{place}.5\n" for place in range(1, 31))
+    (tmp_path / "long.csv").write_text(f"Probe,Date,Stage,nA/uM\n{rows}", encoding="utf-8")
+    out = empty.ok("adopt", "long.csv", *ANSWERS).out
+    assert len(out.splitlines()) < 40
+    assert "long!D2, long!D3, long!D4 and 27 more   '~1.5' is approximate (and 29 more values of the kind)" in out
+    assert "and 25 more of probe, new; 25 more of calibration, new (--json lists them all)" in " ".join(out.split())
+    assert len(empty.ok("adopt", "long.csv", "--json").json["remarks"]) == 30

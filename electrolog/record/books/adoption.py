@@ -32,6 +32,7 @@ ACCEPTED = {
     "blank_probe": ("above", "refuse"),
     "coated": ("before", "note"),
     "doubles": CHOICES,
+    "run_day": ("pre", "post"),
     "probe_columns": ("probes", "nothing"),
     "struck": ("take", "leave"),
     **{f"unit_{field}": units_of(field) for field in NEEDED},

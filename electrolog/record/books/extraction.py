@@ -88,13 +88,25 @@ class Extraction:
             return
         try:
             electrode = self.labels.of(view)
+            marked = self._marked(view)
             exposure = self._exposure(view, electrode, runs) if runs is not None else None
-            shared = exposure is not None or len(stages) > 1
-            made = [self._calibration(view, electrode, stage, exposure, shared) for stage in stages]
         except InputError as why:
             self.out.say("refused", view.range, why.message)
             return
-        entries = [*made, *([exposure] if exposure else [])]
+        shared = exposure is not None or len(stages) > 1
+        entries = [exposure] if exposure else []
+        refused = []
+        for stage in stages:
+            try:
+                entries.append(self._calibration(view, electrode, stage, exposure, shared, marked))
+            except InputError as why:
+                refused.append(why.message)
+        for said in refused:
+            self.out.say("refused", view.range, said + ("; the rest of the row is taken" if entries else ""))
+        if not entries:
+            return
+        for one in entries if refused else ():
+            one.values["note"] = f"refused beside it: {shortened('; '.join(refused), 200)}; {one.values['note']}"
         self._coat(view, electrode, entries)
         self.out.drafts += [*self.labels.drafts(view, electrode, self.measured), *entries]
 
@@ -112,7 +124,9 @@ class Extraction:
         typed = said.time.isoformat() if said.time else self.mapping.times["coating"]
         return parse_iso(f"{said.day}T{typed}", self.zone, "coated on")
 
-    def _calibration(self, view: View, electrode: str, heading_stage: str, run: Draft | None, shared: bool) -> Draft:
+    def _calibration(
+        self, view: View, electrode: str, heading_stage: str, run: Draft | None, shared: bool, marked: list[str]
+    ) -> Draft:
         stage = heading_stage or self.said.stage(view)
         analyte, waveform = self.said.analyte(view), self.said.waveform(view)
         at, day, assumed = self._moment(view, stage, run, shared)
@@ -125,7 +139,7 @@ class Extraction:
         label = f"{electrode}_{day}{clock}_{stage}_{sign}"
         if view.first("waveform"):
             label += f"_{waveform}"
-        notes = [*notes, *kept, *self._marked(view)] + (["time of day assumed"] if assumed else [])
+        notes = [*notes, *kept, *marked] + (["time of day assumed"] if assumed else [])
         values: dict[str, Value] = {
             "calibration": label,
             "electrode": electrode,
@@ -157,11 +171,13 @@ class Extraction:
         `shared`: a time of day in the row is the run's, or of one of several calibrations, and nobody knows of which.
         """
         found = view.first("day", stage)
+        borrowed = found is None and stage == "run"
+        found = self._day_of_run(view) if borrowed else found
         if found is None:
             raise InputError("date: missing; accepted: a date in the row, or beside a label above the table")
         said = self._when(view, found)
         own = not shared or bool(found.meaning and found.meaning.stage)
-        time = said.time if own else None
+        time = said.time if own and not borrowed else None
         clock = view.first("time")
         if time is None and clock is not None and not shared:
             time = clock_time(clock.value)
@@ -172,6 +188,16 @@ class Extraction:
         if at > utc_now():
             raise InputError(f"date: {said.day} at {view.place(found)} lies in the future; accepted: a day that was")
         return at, said.day.isoformat(), time is None
+
+    def _day_of_run(self, view: View) -> Found | None:
+        """Of a row that only dates its calibrations: their one day, or the one that a person says."""
+        found = {stage: cells[0] for stage in ("pre", "post") if (cells := view.cells("day", stage))}
+        days = {when(one.value, self.order).day for one in found.values()}
+        answer = self.mapping.answered("run_day")
+        if len(days) > 1 and not answer:
+            places = " and ".join(view.place(one) for one in found.values())
+            self.out.ask("run_day", "On the day of which calibration was the run?", f"{places} differ", tuple(found))
+        return found.get(answer or "pre") or next(iter(found.values()), None)
 
     def _when(self, view: View, found: Found) -> When:
         said = when(found.value, self.order)

@@ -54,6 +54,8 @@ class BookFaults(Faults):
 class BookMerge(SheetMerge):
     """A sheet's drafts. The note is no part of what a row says: a book that has grown has another fingerprint."""
 
+    at_once = False  # each row has an origin of its own, which stands in its journal entry
+
     def __init__(self, under_way: Import, rows: Rows, drafts: Sequence[Draft], origin: SaysOrigin) -> None:
         super().__init__(under_way, rows)
         self.drafts, self.origin = drafts, origin
