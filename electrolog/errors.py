@@ -7,6 +7,7 @@ ElectrologError            exit 1   something failed
 ├── DoubtfulEntry          exit 2   a likely slip that nobody confirmed
 ├── DataError              exit 1   numbers from which no answer can be made
 ├── RecordError            exit 1   the database itself: missing, locked, of another version
+│   └── PasswordNeeded     exit 1   the server asks for one, and none was given
 └── TamperedRecord         exit 1   verify found a row changed behind the journal's back
 
 A message names what was found and what would be accepted; the hint says what to do. The translation to an
@@ -61,6 +62,10 @@ class DataError(ElectrologError):
 
 class RecordError(ElectrologError):
     kind = "record"
+
+
+class PasswordNeeded(RecordError):
+    """Whoever has a terminal may ask for it."""
 
 
 class TamperedRecord(ElectrologError):

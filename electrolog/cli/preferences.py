@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import os
+import re
 from collections.abc import Mapping
 from pathlib import Path
 
@@ -12,6 +13,7 @@ from electrolog.texts import small_text
 # What is typed at every entry of a day, and where the record is; nothing that a question's answer would turn on.
 KEYS = ("db", "zone", "rig", "by", "medium", "waveform", "setting")
 OF_A_LAB = KEYS[1:]
+_PASSWORD = re.compile(r"://[^/@?]*:[^/@?]+@|[?&](?:ssl)?password=", re.IGNORECASE)
 ENTRIES = ("calibrate", "trace", "scans", "expose", "condition", "again")
 
 
@@ -67,13 +69,19 @@ def _checked(path: Path, key: str, value: object, known: tuple[str, ...]) -> str
         raise unknown(f"setting of {path}", key, known)
     if not isinstance(value, str):
         raise InputError(f'{path}: {key} is no text; accepted: such as {key} = "north"')
+    if _PASSWORD.search(value):
+        raise InputError(
+            f"{path}: {key} holds a password, which is never kept here; accepted: the URL without it",
+            "PGPASSFILE or a service file holds it",
+        )
     return value
 
 
 def write(path: Path, changed: Mapping[str, str]) -> None:
     from json import dumps
 
-    values = {key: value for key, value in {**read(path, True), **changed}.items() if value}
+    checked = {key: _checked(path, key, value, KEYS) for key, value in changed.items()}
+    values = {key: value for key, value in {**read(path, True), **checked}.items() if value}
     try:
         path.parent.mkdir(parents=True, exist_ok=True)
         lines = [f"{key} = {dumps(value, ensure_ascii=False)}\n" for key, value in values.items()]

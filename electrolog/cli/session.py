@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import gc
+import os
 import sys
 from collections.abc import Callable
 from dataclasses import dataclass
@@ -10,7 +11,7 @@ from typing import TYPE_CHECKING, TypeVar
 
 import typer
 
-from electrolog.errors import DoubtfulEntry
+from electrolog.errors import DoubtfulEntry, PasswordNeeded
 from electrolog.show.text import safe
 
 if TYPE_CHECKING:
@@ -25,13 +26,24 @@ class Session:
     zone: str | None
 
     def lab(self, create: bool = False) -> Lab:
-        from electrolog.clock import zone_named
-        from electrolog.lab import open_lab
-
-        opened = open_lab(self.db, zone=zone_named(self.zone), create=create)
+        try:
+            opened = self._opened(create)
+        except PasswordNeeded as refused:
+            if not (sys.stdin.isatty() and sys.stderr.isatty()):
+                raise
+            typer.echo(safe(refused.message), err=True)
+            # The driver looks for it there; it is gone with this process.
+            os.environ["PGPASSWORD"] = typer.prompt("Password", hide_input=True, err=True)
+            opened = self._opened(create)
         gc.freeze()  # what was loaded stays until the end, and is passed over from here on
         gc.enable()
         return opened
+
+    def _opened(self, create: bool) -> Lab:
+        from electrolog.clock import zone_named
+        from electrolog.lab import open_lab
+
+        return open_lab(self.db, zone=zone_named(self.zone), create=create)
 
 
 def lab_of(ctx: typer.Context, create: bool = False) -> Lab:

@@ -17,10 +17,10 @@ from typing import Any
 
 from sqlalchemy import Connection, Engine, create_engine, event, select, text
 from sqlalchemy.engine import URL
-from sqlalchemy.exc import OperationalError
+from sqlalchemy.exc import ArgumentError, OperationalError
 from sqlalchemy.pool import NullPool, QueuePool
 
-from electrolog.errors import RecordError, shortened
+from electrolog.errors import InputError, RecordError, shortened
 from electrolog.record import journal, place, schema
 from electrolog.record.translate import translated
 from electrolog.record.url import database_url
@@ -28,7 +28,9 @@ from electrolog.record.url import database_url
 __all__ = ["Connection", "Record", "open_record"]
 
 BUSY_TIMEOUT_MS = 60_000
-CACHE_KB = 64_000  # SQLite's own 2 MB is read and written over and over by a large import; what isn't needed isn't taken
+CACHE_KB = (
+    64_000  # SQLite's own 2 MB is read and written over and over by a large import; what isn't needed isn't taken
+)
 BETWEEN_LOOKS_S = (0.002, 0.02)
 WRITING = 0x656C6570  # any number that all who write agree on
 _SECRETS = ("password", "passfile", "sslpassword")  # what a URL may hold beside the password in its usual place
@@ -170,6 +172,10 @@ def _engine(url: URL) -> Engine:
         raise RecordError(
             f"the driver for {url.drivername} is not installed ({missing})",
             "install it with: python -m pip install 'psycopg[binary]'",
+        ) from None
+    except ArgumentError as why:  # such as a port that is no number, among the options
+        raise InputError(
+            f"the database's URL can't be read ({shortened(str(why))}); accepted: such as postgresql+psycopg://host/name"
         ) from None
     if engine.dialect.name == "sqlite":
         if sqlite3.sqlite_version_info < LEAST_SQLITE:

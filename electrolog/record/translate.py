@@ -8,7 +8,7 @@ from contextlib import contextmanager
 
 from sqlalchemy.exc import DBAPIError
 
-from electrolog.errors import RecordError, shortened
+from electrolog.errors import PasswordNeeded, RecordError, shortened
 
 _FULL = ("no room left on the disk of {}", "make room; nothing was written")
 _CUT = (
@@ -17,6 +17,8 @@ _CUT = (
 )
 _IN_USE = ("{} is in use by another program for over a minute", "try again when it has finished")
 _LOCKS = ("the place of {} gives no working locks", "keep the record on this machine's own disk, or on a server")
+_UNTOLD = "no password supplied"
+_WHERE_PASSWORDS_BELONG = "PGPASSFILE or a service file holds it; it is never kept here"
 _DAMAGED = ("{} is damaged", "`electrolog rescue NEW` saves what can be saved; or `electrolog restore` a backup")
 _KNOWN = {
     "unable to open": ("{} can't be opened", "look whether the folder is there and may be written"),
@@ -35,6 +37,8 @@ _KNOWN = {
     "server closed the connection": _CUT,
     "connection is closed": _CUT,
     "connection is lost": _CUT,
+    _UNTOLD: ("{} asks for a password", _WHERE_PASSWORDS_BELONG),
+    "password authentication failed": ("{}: the password is another one", _WHERE_PASSWORDS_BELONG),
     "permission denied": ("{}: this login may not do that", "a steward may, and admits others: `electrolog roles`"),
     "comes from the login": ("{}: who did it comes from the login, and can't be another", "log in as whoever did it"),
     "server's clock stands at": (
@@ -60,5 +64,6 @@ def translated(name: str) -> Iterator[None]:
 def _refusal(said: str, name: str) -> RecordError:
     for words, (message, hint) in _KNOWN.items():
         if words in said:
-            return RecordError(message.format(name), hint)
+            kind = PasswordNeeded if words == _UNTOLD else RecordError
+            return kind(message.format(name), hint)
     return RecordError(f"{name}: {shortened(said, 300)}")
