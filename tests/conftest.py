@@ -7,6 +7,10 @@ import os
 import pytest
 from hypothesis import settings
 
+from tests.browsing import browser
+
+__all__ = ["browser"]
+
 # A slow machine is not a failure, and a failure that comes and goes would be shrugged off.
 settings.register_profile("steady", deadline=None, derandomize=True, database=None)
 settings.load_profile("steady")

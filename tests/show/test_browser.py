@@ -3,10 +3,7 @@
 from __future__ import annotations
 
 import base64
-import json
 import re
-import shutil
-from collections.abc import Iterator
 from datetime import UTC, datetime, timedelta
 from pathlib import Path
 from typing import Any
@@ -17,6 +14,7 @@ from electrolog.answers.kept_backtest import KeptBacktest
 from electrolog.answers.report import BatchSheet, LabSheet, Origin
 from electrolog.answers.shelf import STATES, Shelved
 from electrolog.show.report_page import Told, write_report
+from tests.browsing import asked_of_networks, colour, contrast, overhang_px
 from tests.show.known_backtest import backtest
 
 MADE = datetime(2026, 3, 2, 9, 30, tzinfo=UTC)
@@ -60,25 +58,6 @@ def page(tmp_path_factory: pytest.TempPathFactory) -> Path:
     return path
 
 
-@pytest.fixture(scope="module")
-def browser() -> Iterator[Any]:
-    chromium, driver = (shutil.which(name) for name in ("chromium", "chromedriver"))
-    if chromium is None or driver is None:
-        pytest.skip("no chromium with its driver on this machine: `apt-get install chromium chromium-driver`")
-    from selenium import webdriver
-    from selenium.webdriver.chrome.service import Service
-
-    options = webdriver.ChromeOptions()
-    options.binary_location = chromium
-    for argument in ("--headless=new", "--no-sandbox", "--disable-gpu", "--window-size=1200,900"):
-        options.add_argument(argument)
-    options.set_capability("goog:loggingPrefs", {"browser": "ALL", "performance": "ALL"})
-    started = webdriver.Chrome(options=options, service=Service(driver))
-    started.execute_cdp_cmd("Performance.enable", {"timeDomain": "threadTicks"})
-    yield started
-    started.quit()
-
-
 @pytest.fixture
 def opened(browser: Any, page: Path) -> Any:
     browser.get_log("performance")
@@ -110,9 +89,7 @@ def test_the_page_is_small(page: Path) -> None:
 
 
 def test_nothing_is_asked_of_any_network_and_the_console_is_silent(opened: Any, page: Path) -> None:
-    said = [json.loads(one["message"])["message"] for one in opened.get_log("performance")]
-    asked = {one["params"]["request"]["url"] for one in said if one["method"] == "Network.requestWillBeSent"}
-    assert {url for url in asked if not url.startswith("data:")} == {page.as_uri()}
+    assert asked_of_networks(opened) == {page.as_uri()}
     assert opened.get_log("browser") == []
 
 
@@ -213,35 +190,9 @@ def test_text_stands_out_from_its_ground_in_light_and_dark(opened: Any, scheme: 
     assert (sum(ground) < 200) == (scheme == "dark")
 
 
-def colour(browser: Any, selector: str, what: str) -> list[int]:
-    found = browser.execute_script(f"return getComputedStyle(document.querySelector('{selector}')).{what}")
-    return [int(part) for part in re.findall(r"\d+", found)[:3]]
-
-
-def contrast(one: list[int], other: list[int]) -> float:
-    light, dark = sorted((luminance(one), luminance(other)), reverse=True)
-    return (light + 0.05) / (dark + 0.05)
-
-
-def luminance(rgb: list[int]) -> float:
-    linear = [c / 255 / 12.92 if c / 255 <= 0.04045 else ((c / 255 + 0.055) / 1.055) ** 2.4 for c in rgb]
-    return 0.2126 * linear[0] + 0.7152 * linear[1] + 0.0722 * linear[2]
-
-
 @pytest.mark.parametrize(("paper", "width_mm"), [("A4", 210), ("Letter", 215.9)])
 def test_no_table_is_wider_than_the_paper(opened: Any, paper: str, width_mm: float) -> None:
-    opened.execute_cdp_cmd("Emulation.setEmulatedMedia", {"media": "print"})
-    inside_px = (width_mm - 28) / 25.4 * 96
-    size = {"width": int(inside_px), "height": 900, "deviceScaleFactor": 1, "mobile": False}
-    opened.execute_cdp_cmd("Emulation.setDeviceMetricsOverride", size)
-    try:
-        tables = opened.execute_script("return [...document.querySelectorAll('table')].map(t => t.scrollWidth)")
-        assert tables
-        assert max(tables) <= inside_px + 1, paper
-        assert opened.execute_script("return document.documentElement.scrollWidth") <= inside_px + 1
-    finally:
-        opened.execute_cdp_cmd("Emulation.clearDeviceMetricsOverride", {})
-        opened.execute_cdp_cmd("Emulation.setEmulatedMedia", {"media": ""})
+    assert overhang_px(opened, width_mm) <= 1, paper
 
 
 def test_it_prints(opened: Any) -> None:
