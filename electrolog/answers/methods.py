@@ -7,13 +7,17 @@ import statistics
 from collections import Counter
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
+from datetime import datetime
 from typing import Any
 
+from electrolog.answers import life as lives
 from electrolog.answers.answer import Answer
 from electrolog.answers.history import Reading, readings
 from electrolog.answers.labels import known_labels
+from electrolog.clock import utc_now
 from electrolog.errors import InputError
 from electrolog.record import queries, sheets
+from electrolog.record.books.drafts import TIME_ASSUMED
 from electrolog.record.queries import Event
 from electrolog.record.readable import Row, rows
 from electrolog.record.store import Record
@@ -52,6 +56,8 @@ class Described(Answer):
     lod_um: Spread | None
     share_left: Spread | None  # at post-calibrations
     hours_to_run: Spread | None  # from the newest pre-calibration to the run
+    hours_from_run: Spread | None  # from the run's end to the next post-calibration
+    untimed_runs: int  # of which only the day is known, so that neither is
     runs: Spread | None  # duration in min
     settings: dict[str, int]
     without_points: int
@@ -79,6 +85,7 @@ def methods(record: Record, labels: Sequence[str], analyte: str, waveform: str |
         struck = struck_calibrations(connection, [probe["id"] for probe in probes])
     events = [event for probe in probes for event in life.get(probe["electrode"], [])]
     coated = {str(probe["electrode"]): _coating(life.get(probe["electrode"], [])) for probe in probes}
+    lengths = {str(probe["electrode"]): probe["exposed_length_um"] for probe in probes}
     runs = [event for event in events if event.sheet is sheets.EXPOSURES]
     return Described(
         analyte=found[0].analyte,
@@ -97,7 +104,7 @@ def methods(record: Record, labels: Sequence[str], analyte: str, waveform: str |
         },
         lod_um=spread(one.figures.lod_um for one in found),
         share_left=spread(one.share_left for one in found if one.stage == "post"),
-        hours_to_run=spread(_hours_to_run(found, runs)),
+        **_timed(found, runs),
         runs=spread(event.row["duration_min"] for event in runs),
         settings=counted(event.row["setting"] for event in runs),
         without_points=sum(not one.points for one in found),
@@ -105,7 +112,7 @@ def methods(record: Record, labels: Sequence[str], analyte: str, waveform: str |
         retired=counted(event.row["reason"] for event in events if event.sheet is sheets.RETIREMENTS),
         struck=dict(struck),
         computed_by=tuple(sorted({one.figures.method for one in found})),
-        table=tuple(_table_row(one, coated) for one in found),
+        table=tuple(_table_row(one, coated, lengths) for one in found),
     )
 
 
@@ -136,22 +143,32 @@ def _coating(life: Sequence[Event]) -> str:
     return " then ".join(dict.fromkeys(films)) or "none"
 
 
-def _hours_to_run(found: Sequence[Reading], runs: Sequence[Event]) -> list[float]:
-    """For each run, from the probe's newest pre-calibration before it."""
-    hours = []
-    for run in runs:
-        before = [
-            one.at for one in found if one.electrode == run.row["electrode"] and one.stage == "pre" and one.at <= run.at
-        ]
-        if before:
-            hours.append((run.at - max(before)).total_seconds() / 3600)
-    return hours
+def _timed(found: Sequence[Reading], runs: Sequence[Event]) -> dict[str, Any]:
+    """How long before and after its run a probe was calibrated; a time of day that was assumed tells neither."""
+    known = [one for one in found if TIME_ASSUMED not in (one.row["note"] or "")]
+    timed = [run for run in runs if TIME_ASSUMED not in (run.row["note"] or "")]
+    before, after = [], []
+    for run in timed:
+        own = [one for one in known if one.electrode == run.row["electrode"]]
+        pre = [one.at for one in own if one.stage == "pre" and one.at <= run.at]
+        later = [one.at for one in runs if one.row["electrode"] == run.row["electrode"] and one.at > run.at]
+        until = min(later, default=utc_now())  # a calibration behind the next run is the next run's
+        post = [one.at for one in own if one.stage == "post" and lives.end_of(run) <= one.at <= until]
+        before += [_hours(max(pre), run.at)] if pre else []
+        after += [_hours(lives.end_of(run), min(post))] if post else []
+    told = {"hours_to_run": spread(before), "hours_from_run": spread(after)}
+    return {**told, "untimed_runs": len(runs) - len(timed)}
 
 
-def _table_row(one: Reading, coated: dict[str, str]) -> dict[str, Any]:
+def _hours(start: datetime, end: datetime) -> float:
+    return (end - start).total_seconds() / 3600
+
+
+def _table_row(one: Reading, coated: dict[str, str], lengths: dict[str, float | None]) -> dict[str, Any]:
     figures = one.figures
     return {
         "electrode": one.electrode,
+        "exposed_length_um": lengths[one.electrode],
         "coating": coated[one.electrode],
         "calibration": one.calibration,
         "at": one.at,
@@ -159,6 +176,7 @@ def _table_row(one: Reading, coated: dict[str, str]) -> dict[str, Any]:
         "waveform": one.waveform,
         "medium": one.row["medium"],
         "temperature_c": one.row["temperature_c"],
+        "standard": one.row["standard"],
         "exposure_before_h": sum(one.exposure_h.values()),
         "n_points": figures.n_points,
         "sensitivity_na_um": figures.sensitivity_na_um,

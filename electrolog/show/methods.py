@@ -38,7 +38,9 @@ def _sentences(found: Described) -> Iterator[str]:
 def _making(found: Described) -> Iterator[str]:
     batches = f" from {counted(found.batches, 'batch', 'batches')}" if found.batches else ""
     yield f"{counted(len(found.probes), 'carbon-fibre microelectrode')}{batches} were calibrated for {found.analyte}."
-    if found.length_um:
+    if found.length_um is None:
+        yield "Exposed length: not recorded."
+    else:
         yield f"Exposed length was {_spread(found.length_um, 'µm')}{_of(found.length_um, len(found.probes))}."
     if found.diameter_um:
         yield f"Diameter was {_spread(found.diameter_um, 'µm')}{_of(found.diameter_um, len(found.probes))}."
@@ -57,7 +59,7 @@ def _sweeps(found: Described) -> Iterator[str]:
 def _calibrating(found: Described) -> Iterator[str]:
     stages = ", ".join(f"{count} {stage}" for stage, count in found.stages.items())
     said = f"There were {counted(sum(found.stages.values()), 'calibration')} ({stages}); medium: {_words(found.media)}"
-    said += f"; temperature {_spread(found.temperature_c, '°C')}" if found.temperature_c else ""
+    said += f"; temperature {_spread(found.temperature_c, '°C') if found.temperature_c else 'not recorded'}"
     said += f"; {_spread(found.points, 'points each')}" if found.points else ""
     said += f"; {found.without_points} with the factor alone" if found.without_points else ""
     yield f"{said}."
@@ -76,6 +78,11 @@ def _running(found: Described) -> Iterator[str]:
     if found.hours_to_run:
         runs = counted(found.hours_to_run.n, "run")
         yield f"Pre-calibration preceded the run by {_spread(found.hours_to_run, 'h')} ({runs})."
+    if found.hours_from_run:
+        posts = counted(found.hours_from_run.n, "run")
+        yield f"Post-calibration followed the run after {_spread(found.hours_from_run, 'h')} ({posts})."
+    if found.untimed_runs:
+        yield f"Of {counted(found.untimed_runs, 'run')} only the day is known, and no time to a calibration."
     if found.share_left:
         share = _spread(found.share_left, "of the reference sensitivity")
         yield f"At post-calibration {share} was left (n = {found.share_left.n})."

@@ -63,3 +63,25 @@ def test_the_dictionary_has_every_column_with_its_unit(cli: Any) -> None:
     assert (units["concentration_um"], units["duration_min"], units["sensitivity_na_um"]) == ("µM", "min", "nA/µM")
     assert all(one["meaning"] and one["accepts"] for one in told)
     assert len(cli.ok("dictionary", "--csv").out.splitlines()) == len(told) + 1
+
+
+def test_what_isnt_recorded_is_said_and_an_assumed_time_of_day_gives_no_hours(empty: Any, tmp_path: Any) -> None:
+    rows = ("K-1,2024-03-04,12,2024-03-04,9,3", "K-2,2024-03-06,11,,,2")
+    heads = "Probe,Pre Date,Pre nA/uM,Post Date,Post nA/uM,Run (h)"
+    (tmp_path / "old.csv").write_text("\n".join([heads, *rows]), encoding="utf-8")
+    answers = [f"--answer={key}" for key in ("analyte=DA", "waveform=triangle", "setting=in-vivo")]
+    empty.ok("adopt", "old.csv", *answers, "--commit")
+    out = " ".join(empty.ok("methods", "-a", "DA").out.split())
+    assert "Exposed length: not recorded." in out
+    assert "temperature not recorded" in out
+    assert "Of 2 runs only the day is known, and no time to a calibration." in out
+    assert "preceded" not in out
+    told = empty.ok("methods", "-a", "DA", "--json").json
+    assert (told["hours_to_run"], told["hours_from_run"], told["untimed_runs"]) == (None, None, 2)
+
+
+def test_the_time_from_a_runs_end_to_its_post_calibration_is_told(cli: Any) -> None:
+    told = cli.ok("methods", "B07-01", "-a", "DA", "--json").json
+    # the last of twelve runs of two hours began 2026-01-19 at 09:00; the calibration was 2026-01-20 at 09:00
+    assert (told["hours_from_run"]["n"], told["hours_from_run"]["mean"]) == (1, 22.0)
+    assert "Post-calibration followed the run after" in " ".join(cli.ok("methods", "B07-01", "-a", "DA").out.split())

@@ -8,6 +8,7 @@ from dataclasses import dataclass, field
 from electrolog.record.columns import Value
 
 Point = tuple[float, float]  # µM, nA
+TIME_ASSUMED = "time of day assumed"  # stands in the note of a row whose cell had only a day
 
 
 @dataclass(frozen=True)

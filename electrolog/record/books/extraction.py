@@ -9,7 +9,7 @@ from electrolog.clock import parse_iso, utc_now
 from electrolog.errors import InputError, shortened
 from electrolog.record.books.coatings import Coatings
 from electrolog.record.books.days import When, clock_time, date_order, order_in_heading, when
-from electrolog.record.books.drafts import Draft, Extract
+from electrolog.record.books.drafts import TIME_ASSUMED, Draft, Extract
 from electrolog.record.books.grid import Book, Content, shown
 from electrolog.record.books.labels import Labels
 from electrolog.record.books.layout import Table, tables
@@ -139,7 +139,7 @@ class Extraction:
         label = f"{electrode}_{day}{clock}_{stage}_{sign}"
         if view.first("waveform"):
             label += f"_{waveform}"
-        notes = [*notes, *kept, *marked] + (["time of day assumed"] if assumed else [])
+        notes = [*notes, *kept, *marked] + ([TIME_ASSUMED] if assumed else [])
         values: dict[str, Value] = {
             "calibration": label,
             "electrode": electrode,
@@ -157,7 +157,7 @@ class Extraction:
         setting = self.said.setting(view)
         start, _, assumed = self._moment(view, "run", None, False)
         texts, kept = self.said.texts(view)
-        notes = kept + (["time of day assumed"] if assumed else [])
+        notes = kept + ([TIME_ASSUMED] if assumed else [])
         subject, recording = view.first("subject"), view.first("recording")
         values: dict[str, Value] = {"electrode": electrode, "start": start, "duration_min": minutes, "setting": setting}
         values |= {"subject": shown(subject.value) if subject else self.said.subject(view)}
