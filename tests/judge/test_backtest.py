@@ -122,3 +122,23 @@ def test_fit_verdicts_of_honest_odds_are_wrong_as_often_as_expected() -> None:
     found = fit_verdicts(draws, np.zeros_like(draws), 0.1, truth, np.zeros(5000), draws)
     assert found.low <= found.expected / found.fit <= found.high
     assert found.wrong / found.fit < 0.1
+
+
+def test_a_rivals_error_is_what_its_line_left() -> None:
+    """Hours far from zero; the residuals by numpy's own least squares."""
+    rng = np.random.default_rng(4)
+    hours = np.tile([20.0, 23.0, 25.0, 31.0], 6)
+    unit = np.repeat(np.arange(6), 4)
+    reading = 3 - 0.04 * hours + rng.normal(0, 0.05, hours.size)
+    known = Past(unit, np.zeros(24, dtype=np.int64), hours, reading)
+    asked = targets([25.0], [[20.0, 30.0]], [[2.2, 1.8]])
+    one_line = np.abs(reading - np.polyval(np.polyfit(hours, reading, 1), hours))
+    expected = backtest.student(np.zeros(1), np.array([backtest.MAD_TO_SD * np.median(one_line)])).sd
+    assert backtest.cohort_mean(known, asked).sd == pytest.approx(expected)
+    own = [
+        reading[unit == u] - np.polyval(np.polyfit(hours[unit == u], reading[unit == u], 1), hours[unit == u])
+        for u in range(6)
+    ]
+    spread = backtest.MAD_TO_SD * np.median(np.abs(np.concatenate(own))) * np.sqrt(4 / (4 - 2))
+    expected = backtest.student(np.zeros(1), np.array([spread * np.sqrt(1 + 1 / 2)])).sd  # asked at the line's middle
+    assert backtest.own_line(known, asked).sd == pytest.approx(expected)
