@@ -101,7 +101,8 @@ def turned_back(strand: Strand, method: str) -> Strand:
 
 
 def joined(parts: list[Floats]) -> Floats:
-    return np.concatenate([part.reshape(len(part), -1) for part in parts], axis=1)
+    """(U, all draws of all parts); of no unit too, where -1 would have nothing to reckon with."""
+    return np.concatenate([part.reshape(len(part), int(np.prod(part.shape[1:]))) for part in parts], axis=1)
 
 
 def later(strand: Strand, extra_hours: Floats) -> Floats:

@@ -167,3 +167,11 @@ def test_a_probe_rests_between_its_runs(judged: Terminal) -> None:
     assert list(served(judged.ok("assign", *day, *TYPED, "--json")).values()) == ["R1", "R1"]
     assert None in served(judged.ok("assign", *day, *TYPED, "--gap", "90min", "--json")).values()
     assert "gap: 'soon' is not a number" in judged.refused("assign", *day, *TYPED, "--gap", "soon")
+
+
+def test_a_lab_without_probes_serves_nobody(empty: Any) -> None:
+    empty.ok("limits", "set", "least-share-left", "50%")
+    empty.ok("limits", "adopt", "accepted-risk")
+    asked = ("assign", "--planned", "Mon=2099-02-02T09:00Z,2h", "-a", "DA", "-w", "triangle", "-s", "in-vivo")
+    (run,) = empty.ok(*asked, "--json").json["runs"]
+    assert (run["electrode"], run["why"]) == (None, "no probe: there are none")
