@@ -200,6 +200,14 @@ def test_compressed_data_tables_references_and_links_are_the_same(judged: Any, r
     assert_holds_all_of(recording.with_name("rec-R1.enclosed.nwb"), recording)
 
 
+def test_an_older_file_is_taken_and_its_new_version_said(judged: Any, recording: Path) -> None:
+    """pynwb 4 raised a file that pynwb 2.5 had made from 2.6.0 to its own version, and changed nothing else."""
+    with patched(recording) as file:
+        file.attrs["nwb_version"] = "2.6.0"
+    assert "the file was of NWB 2.6.0, and is of NWB 2." in judged.ok("enclose", "rec-R1.nwb", *ASKED).out
+    assert_holds_all_of(recording.with_name("rec-R1.enclosed.nwb"), recording)
+
+
 def test_papers_are_put_in_once_and_again_replaces_only_our_own(judged: Any, recording: Path) -> None:
     judged.ok("enclose", "rec-R1.nwb", *ASKED, "--convert")
     path = recording.with_name("rec-R1.enclosed.nwb")

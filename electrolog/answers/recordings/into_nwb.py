@@ -33,10 +33,10 @@ def into_nwb(record: Record, wanted: Wanted, zone: tzinfo | None) -> Enclosed:
     place, trace = _current(wanted) if wanted.convert else ("", None)
     found, made = gathered(record, wanted, occasion, exposure, recorded, trace)
     series = None if made is None else _series(place, made, occasion, wanted.unit)
-    nwb_writing.write(base, target, found, series, replace=base == target)
+    said = (*told.said, *nwb_writing.write(base, target, found, series, replace=base == target))
     name = f"concentration_{place.rpartition('/')[2]}"
     names = () if series is None else (name, f"{name}_low", f"{name}_high")
-    return answer_of(found, target, names, exposure, told.said, made)
+    return answer_of(found, target, names, exposure, said, made)
 
 
 def _target(wanted: Wanted) -> Path:

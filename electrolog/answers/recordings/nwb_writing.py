@@ -13,7 +13,7 @@ from numpy.typing import NDArray
 from electrolog.answers.recordings.nwb import LABEL, MODULE, TABLE, opened, own_modules
 from electrolog.answers.recordings.nwb_series import by_place
 from electrolog.answers.recordings.papers import Papers
-from electrolog.answers.recordings.proof import refuse_unequal
+from electrolog.answers.recordings.proof import FORMAT, refuse_unequal
 from electrolog.answers.recordings.tables import Column, Table
 from electrolog.answers.recordings.working_copy import working_copy
 from electrolog.errors import InputError
@@ -52,8 +52,10 @@ def holds(file: Any, label: str) -> bool:
     return True
 
 
-def write(source: Path, target: Path, papers: Papers, series: Series | None, replace: bool) -> None:
+def write(source: Path, target: Path, papers: Papers, series: Series | None, replace: bool) -> tuple[str, ...]:
     """Into a copy of `source`, which then becomes `target`; papers of the same probe in it are replaced.
+
+    Returns what there is to say of it.
 
     Raises InputError or ElectrologError, both files as they were, unless all else in the copy equals the source.
     """
@@ -69,6 +71,20 @@ def write(source: Path, target: Path, papers: Papers, series: Series | None, rep
         with opened(copy) as one:
             if not holds(one.file, papers.label):
                 raise InputError(f"{target.name}: what was put in can't be read back; nothing was changed")
+        return _of_versions(_version(source), _version(copy))
+
+
+def _version(path: Path) -> str:
+    import h5py
+
+    with h5py.File(path, "r") as file:
+        return str(file.attrs[FORMAT])
+
+
+def _of_versions(before: str, after: str) -> tuple[str, ...]:
+    return (
+        () if before == after else (f"the file was of NWB {before}, and is of NWB {after} now: pynwb adds in its own",)
+    )
 
 
 def _refuse_left_behind(source: Path) -> None:
