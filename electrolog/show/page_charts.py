@@ -18,6 +18,7 @@ from electrolog.units import shown_concentration, shown_number, shown_percent, s
 LEAST_WEIGHT = 0.01
 _MOST_DATES = 6
 _MARKS = {"coating": "square", "cleaning": "down", "re-cut": "diamond", "exposure": "tick", "retirement": "cross"}
+_MARK_HEIGHT = 0.06
 _TOLD = 6  # values along a curve that say what they are
 _SHAPE_LOOKS = ("curve", "curve dash", "curve dotted", "curve dashdot", "curve longdash")
 
@@ -43,7 +44,9 @@ def course_chart(course: Course) -> Plot | None:
         _draw_reading(plot, at, one)
     for mark in course.marks:
         said = f"{mark.what} {mark.said}, {shown_moment(mark.at)}"
-        plot.dot(mark.exposure_h, plot.y[0], _MARKS[mark.what], "mark", said)
+        # A cleaning usually follows a run at the same exposure: it stands above the run's end and doesn't hide it.
+        height = 0.0 if mark.what == "exposure" else _MARK_HEIGHT * (plot.y[1] - plot.y[0])
+        plot.dot(mark.exposure_h, plot.y[0] + height, _MARKS[mark.what], "mark", said)
         plot.explain(_MARKS[mark.what], "mark", "end of a run" if mark.what == "exposure" else mark.what)
     return plot
 
