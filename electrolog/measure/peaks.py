@@ -53,19 +53,27 @@ def find_peaks(
     potential_v, current_na (n,). oxidation_v, reduction_v: named by a person, taken as they are.
     """
     smooth = smoothed(current_na)
+    return peaks_of(potential_v, smooth, noise_na, oxidation_v=oxidation_v, reduction_v=reduction_v)
+
+
+def peaks_of(
+    potential_v: Array, smooth_na: Array, noise_na: float, *, oxidation_v: float | None, reduction_v: float | None
+) -> Peaks:
+    """The same of a voltammogram that is smoothed already."""
     upwards = rising(potential_v)
     return Peaks(
-        oxidation=_peak(potential_v, smooth, upwards, noise_na, oxidation_v, upright=True),
-        reduction=_peak(potential_v, smooth, ~upwards, noise_na, reduction_v, upright=False),
+        oxidation=_peak(potential_v, smooth_na, upwards, noise_na, oxidation_v, upright=True),
+        reduction=_peak(potential_v, smooth_na, ~upwards, noise_na, reduction_v, upright=False),
     )
 
 
 def smoothed(current_na: Array) -> Array:
-    """Savitzky–Golay, second degree: a peak keeps its height and its place."""
+    """Savitzky–Golay, second degree: a peak keeps its height and its place. One scan (n,), or many (m, n)."""
     from scipy.signal import savgol_filter
 
-    window = max(5, int(SMOOTHED_SHARE * len(current_na)) // 2 * 2 + 1)
-    return np.asarray(savgol_filter(current_na, min(window, len(current_na) // 2 * 2 - 1), 2))
+    points = current_na.shape[-1]
+    window = max(5, int(SMOOTHED_SHARE * points) // 2 * 2 + 1)
+    return np.asarray(savgol_filter(current_na, min(window, points // 2 * 2 - 1), 2))
 
 
 def _peak(

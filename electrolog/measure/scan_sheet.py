@@ -13,6 +13,7 @@ from electrolog.measure.recording import Span, checked_clock, clipped, refuse_to
 
 Array = NDArray[np.float64]
 
+HELD_POINTS = 5
 AROUND = 2  # points to either side that are averaged with the one asked for
 _ROWS_AT_ONCE = 512
 
@@ -83,8 +84,10 @@ def held_at_limit(sheet: ScanSheet, extremes: tuple[float, float], time: Array) 
     """Stretches of scans in which the current stands at the sheet's very extreme for several points on end."""
     flags = np.zeros(sheet.shape[0], dtype=bool)
     for first, rows in _stretches(sheet, _ROWS_AT_ONCE):
-        touched = np.flatnonzero(((rows == extremes[0]) | (rows == extremes[1])).sum(1) >= 5)
-        for row in touched.tolist():
+        at_one = (rows == extremes[0]) | (rows == extremes[1])
+        if np.count_nonzero(at_one) < HELD_POINTS:  # the rule, and far quicker to see than row by row
+            continue
+        for row in np.flatnonzero(at_one.sum(1) >= HELD_POINTS).tolist():
             scan = rows[row]
             flags[first + row] = bool((clipped(scan) & ((scan == extremes[0]) | (scan == extremes[1]))).any())
     return spans_of(flags, time)

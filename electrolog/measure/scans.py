@@ -11,7 +11,7 @@ from numpy.typing import ArrayLike, NDArray
 from electrolog.errors import InputError
 from electrolog.measure.drift import scatter_about_line
 from electrolog.measure.injections import contrast_over
-from electrolog.measure.peaks import Peaks, find_peaks, smoothed
+from electrolog.measure.peaks import Peaks, peaks_of, smoothed
 from electrolog.measure.recording import Span, gaps, said_of_gaps, step_s
 from electrolog.measure.scan_sheet import ScanSheet, around, clock_of, column, first_pass, held_at_limit, mean_scan
 from electrolog.measure.sweep import checked_potentials, nearest, rising
@@ -25,6 +25,7 @@ from electrolog.measure.trace import (
 
 Array = NDArray[np.float64]
 
+LIKELY = 20  # points of a scan: the medians of all would take as long as reading the sheet
 BACKGROUND_S = (5.0, 0.5)  # common practice: the seconds right before an injection
 
 
@@ -109,12 +110,13 @@ def read_scans(
         sign * (mean_scan(sheet, time, window) - background)
         for window, background in zip(_windows(injections, settings), backgrounds, strict=True)
     ]
-    at = _at_the_peak(potential, responses, at, settings)
+    smooth = smoothed(np.array(responses))
+    at = _at_the_peak(potential, responses, smooth, at, settings)
     trace = sign * column(sheet, at)
     noise = _noise(time, trace, injections, settings)
     graphs = tuple(
-        _voltammogram(time, potential, one, response, at, noise, settings)
-        for one, response in zip(injections, responses, strict=True)
+        _voltammogram(time, potential, one, (response, own), at, noise, settings)
+        for one, response, own in zip(injections, responses, smooth, strict=True)
     )
     background = sign * backgrounds[0]
     charging_at = at if settings.charging_v is None else nearest(potential, settings.charging_v, upwards=True)
@@ -146,33 +148,50 @@ def _where_it_shows(coarse: Array, potential: Array, named_v: float | None) -> i
     """The point of the rising sweep whose current steps most from one four seconds to the next."""
     if named_v is not None:
         return nearest(potential, named_v, upwards=True)
-    step = np.abs(contrast_over(coarse - coarse.mean(0), 4))
-    drift = np.median(step, axis=0)
-    return int(np.argmax(np.where(rising(potential), step.max(0) - 3 * drift, -np.inf)))
+    part = rising(potential)
+    upwards = np.flatnonzero(part if part.any() else ~part)
+    level = coarse[:, upwards]
+    step = np.abs(contrast_over(level - level.mean(0), 4))
+    highest = step.max(0)
+
+    def clear(columns: NDArray[np.int64]) -> Array:
+        return np.asarray(highest[columns] - 3 * np.median(step[:, columns], axis=0))
+
+    least = clear(np.argsort(-highest)[:LIKELY]).max()
+    among = np.flatnonzero(highest >= least)  # what drifts can only lower the others
+    return int(upwards[among[np.argmax(clear(among))]])
 
 
-def _at_the_peak(potential: Array, responses: Sequence[Array], at: int, settings: ScanSettings) -> int:
+def _at_the_peak(potential: Array, responses: Sequence[Array], smooth: Array, at: int, settings: ScanSettings) -> int:
     """Points of all injections are taken at one potential, that of the largest response's peak.
 
     Each injection's own highest point would be read too high where the noise chose it.
     """
     if settings.oxidation_v is not None:
         return at
-    largest = max(responses, key=lambda one: abs(around(one, at)))
-    upright = largest if around(largest, at) >= 0 else -largest
-    peak = find_peaks(potential, upright, reduction_v=settings.reduction_v).oxidation
+    heights = [around(response, at) for response in responses]
+    largest = max(range(len(heights)), key=lambda place: abs(heights[place]))
+    upright = smooth[largest] if heights[largest] >= 0 else -smooth[largest]
+    peak = peaks_of(potential, upright, 0.0, oxidation_v=None, reduction_v=settings.reduction_v).oxidation
     return at if peak is None else peak.index
 
 
 def _voltammogram(
-    time: Array, potential: Array, injection: Span, response: Array, at: int, noise: float, settings: ScanSettings
+    time: Array,
+    potential: Array,
+    injection: Span,
+    response: tuple[Array, Array],
+    at: int,
+    noise: float,
+    settings: ScanSettings,
 ) -> Voltammogram:
+    """response: as it is, and smoothed."""
     window, background = plateau_window(injection, settings.trace.plateau), _before(injection, settings)
     own_noise = noise * sum(1 / int(span.within(time).sum()) for span in (window, background)) ** 0.5
-    peaks = find_peaks(
-        potential, response, own_noise, oxidation_v=settings.oxidation_v, reduction_v=settings.reduction_v
-    )
-    return Voltammogram(injection, window, background, response, around(smoothed(response), at), peaks)
+    raw, smooth = response
+    named = {"oxidation_v": settings.oxidation_v, "reduction_v": settings.reduction_v}
+    peaks = peaks_of(potential, smooth, own_noise, **named)
+    return Voltammogram(injection, window, background, raw, around(smooth, at), peaks)
 
 
 def _before(injection: Span, settings: ScanSettings) -> Span:
