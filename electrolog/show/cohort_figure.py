@@ -10,7 +10,7 @@ from electrolog.answers.fan import Fan, Trail
 from electrolog.answers.fitting import Day, FittedCohort
 from electrolog.fouling.typical import TypicalLoss
 from electrolog.show.figures import BLUE, BROWN, INK, LINES, MARKS, QUIET, figure, labelled
-from electrolog.units import shown_percent
+from electrolog.units import counted, shown_percent
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -50,7 +50,8 @@ def draw_fan(axes: Axes, loss: TypicalLoss, trails: Sequence[Trail], weights: Ma
     axes.legend(loc="best", fontsize=7)
     kind = "bare" if loss.coating == "none" else loss.coating
     above = sum(one > axes.get_ylim()[1] for trail in trails for one in trail.share)
-    title = f"{kind}, {loss.waveform}: {len(trails)} probes" + (f"; {above} readings above the frame" if above else "")
+    title = f"{kind}, {loss.waveform}: {counted(len(trails), 'probe')}"
+    title += f"; {counted(above, 'reading')} above the frame" if above else ""
     return labelled(axes, title, "exposure (h, worth as in vivo)", "share left")
 
 

@@ -11,7 +11,7 @@ from electrolog.errors import DataError, InputError
 from electrolog.measure.calibrate import CalibrationFigures
 from electrolog.show.figures import BLUE, BROWN, INK, MARKS, QUIET, figure, labelled
 from electrolog.show.tables import with_error
-from electrolog.units import shown_concentration
+from electrolog.units import counted, shown_concentration
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -44,7 +44,7 @@ def draw_calibrations(path: Path, readings: Sequence[Reading]) -> None:
 def draw_line(axes: Axes, points: Points, figures: CalibrationFigures) -> Axes:
     """The points and what was made of them; a suspect point is ringed."""
     concentrations, currents = zip(*points, strict=True)
-    axes.plot(concentrations, currents, MARKS[0], color=INK, label=f"{len(points)} points")
+    axes.plot(concentrations, currents, MARKS[0], color=INK, label=counted(len(points), "point"))
     if figures.suspect_point is not None:
         at = figures.suspect_point
         axes.plot(concentrations[at], currents[at], "o", ms=12, mfc="none", color=BROWN, label="suspect, kept")

@@ -9,7 +9,7 @@ from electrolog.show.line_figure import fitted_curve
 from electrolog.show.tables import print_lines
 from electrolog.show.terminal import Chart, Drawing
 from electrolog.show.text import safe
-from electrolog.units import shown_concentration, shown_number
+from electrolog.units import counted, shown_concentration, shown_number
 
 MOST_CHARTS = 3
 _LOW = 8  # rows of what is left over
@@ -65,7 +65,7 @@ def _print_left_over(x: Sequence[float], left: Sequence[float], wide: tuple[floa
 
 
 def _legend(one: Reading, left: Sequence[float] | None) -> list[str]:
-    said = [f"o {len(one.points)} points"]
+    said = [f"o {counted(len(one.points), 'point')}"]
     said += [] if left is None else ["· line" if one.figures.shape != "saturating" else "· isotherm"]
     if one.figures.lod_um is not None and one.figures.lod_um <= max(x for x, _ in one.points):
         said.append(f": detection limit {shown_concentration(one.figures.lod_um)}")

@@ -147,6 +147,18 @@ def test_a_fan_draws_ten_thousand_probes_as_one_line() -> None:
     assert len(axes.lines) == 3
 
 
+def test_readings_beyond_the_frame_are_counted() -> None:
+    hours = np.linspace(0, 10, 11)
+    loss = TypicalLoss("none", "triangle", hours, *[np.exp(-rate * hours) for rate in (0.1, 0.06, 0.03)], {})
+    trails = [Trail("P1", "triangle", "none", (0.0, 3.0, 6.0), (1.0, 9.0, 0.7))]
+    assert (
+        drawn(cohort_figure.draw_fan, loss, trails, {}).get_title()
+        == "bare, triangle: 1 probe; 1 reading above the frame"
+    )
+    whole = [Trail("P1", "triangle", "none", (0.0, 3.0), (1.0, 0.9))]
+    assert "frame" not in drawn(cohort_figure.draw_fan, loss, whole, {}).get_title()
+
+
 def test_suspicious_days_are_ringed_and_named() -> None:
     day = Day("S-1", "rig-1", "2026-03-02", Estimate(0.01, -0.03, 0.05), 3, 0.02, False)
     odd = replace(day, date="2026-03-05", effect=Estimate(-0.15, -0.2, -0.1), p_bad=0.9, suspicious=True)
@@ -167,6 +179,15 @@ def test_reliability_lies_on_the_diagonal_for_honest_forecasts_and_below_for_the
     assert np.abs(lines["honest"] - levels).max() < 0.08
     assert lines["sure"][80] < 0.6
     assert len({line.get_linestyle() for line in axes.lines[1:]}) == 2
+
+
+def test_every_rival_is_drawn_in_a_look_of_its_own() -> None:
+    found = backtest()
+    rivals = tuple(replace(found.methods[1], method=name) for name in ("last", "line", "mixed", "mean"))
+    axes = drawn(backtest_figure.draw_reliability, replace(found, methods=(found.methods[0], *rivals)))
+    shown = [line for line in axes.lines if not str(line.get_label()).startswith("_")]
+    assert [line.get_label() for line in shown] == ["honest", "last", "line", "mixed", "mean"]
+    assert len({str(line.get_linestyle()) + str(line._dash_pattern) for line in shown}) == 5
 
 
 def test_pit_bars_are_the_counts() -> None:
