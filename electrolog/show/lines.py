@@ -27,7 +27,8 @@ def answer(readings: Sequence[Reading], how: Drawing) -> None:
     for one in with_points[-MOST_CHARTS:]:
         _print_charts(one)
     if len(with_points) > MOST_CHARTS:
-        print_lines(f"({len(with_points) - MOST_CHARTS} earlier ones are not drawn: --figure draws up to 30)")
+        more = counted(len(with_points) - MOST_CHARTS, "earlier one")
+        print_lines(f"({more} not drawn: --figure draws up to 30)")
 
 
 def _left_over(one: Reading) -> list[float] | None:

@@ -87,7 +87,7 @@ def test_calibrations_point_by_point_in_sentences(judged: Any) -> None:
 def test_only_the_newest_lines_are_drawn(judged: Any) -> None:
     out = judged.ok("calibrations", "R1", "R2", "--chart").out
     assert out.count(BOX) == 6
-    assert "1 earlier ones are not drawn" in out
+    assert "1 earlier one not drawn" in out
 
 
 def test_along_time_there_is_no_forecast(judged: Any) -> None:
