@@ -27,10 +27,13 @@ def answer(found: Enclosed, recording: Path, json: bool) -> None:
 
 
 def _sentences(found: Enclosed, recording: Path) -> list[str]:
-    in_place = Path(found.target).name == recording.name
+    target = Path(found.target)
+    beside = target.is_relative_to(recording.parent)
+    place = (target.relative_to(recording.parent) if beside else target).as_posix()
+    in_place = target.name == recording.name
     untouched = "" if in_place else f"; {recording.name} itself is untouched"
     rows = ", ".join(f"{name.replace('_', ' ')} {count}" for name, count in found.tables.items())
-    lines = [f"the papers of {found.electrode} are in {Path(found.target).name}{untouched}", f"  rows: {rows}"]
+    lines = [f"the papers of {found.electrode} are in {place}{untouched}", f"  rows: {rows}"]
     if found.factor is not None:
         lines += [f"  {line}" for line in _of_factor(found.factor)]
     if found.verdict is not None:

@@ -81,11 +81,15 @@ def test_the_run_is_found_by_the_list_or_by_what_is_typed(judged: Any, recording
     late = (RUN.replace(year=RUN.year + 1)).isoformat()
     (recording.parent / "recordings.csv").write_text(f"file,probe,start\na.csv,R1,{late}\n", encoding="utf-8")
     assert "its run isn't on record" in judged.refused("enclose", "a.csv", *ASKED, "--convert", "--again")
-    (recording.parent / "recordings.csv").write_text(f"file,start\na.csv,{RUN.isoformat()}\n", encoding="utf-8")
-    told = judged.ok("enclose", "a.csv", *ASKED, "--convert", "--again", "--json").json
+    text = f"file,probe,start\na.csv,r1,{RUN.isoformat()}\n"
+    (recording.parent / "recordings.csv").write_text(text, encoding="utf-8")
+    told = judged.ok("enclose", "a.csv", "-a", "dopamine", "--convert", "--again", "--json").json
+    assert told["electrode"] == "R1"
     assert told["exposure"] == next(
         r["id"] for r in open_lab(judged.db).rows("exposures") if r["recording"] == "rec-R1"
     )
+    (recording.parent / "recordings.csv").write_text(text + f"a.csv,R2,{RUN.isoformat()}\n", encoding="utf-8")
+    assert "recordings.csv names r1, R2: which probe is it?" in judged.refused("enclose", "a.csv", "-a", "dopamine")
     (recording.parent / "recordings.csv").unlink()
     said = judged.refused("enclose", "a.csv", "-a", "dopamine", "-p", "G0-0")
     assert "which exposure is it?" in said

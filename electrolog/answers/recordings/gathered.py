@@ -14,6 +14,7 @@ from electrolog.answers import converting
 from electrolog.answers.converting import Converted
 from electrolog.answers.history import usual_waveform
 from electrolog.answers.recordings.candidates import Folder, Given
+from electrolog.answers.recordings.listed import LIST, Listed, read_list
 from electrolog.answers.recordings.naming import Labels
 from electrolog.answers.recordings.papers import Occasion, Papers, papers
 from electrolog.answers.recordings.run_of import Recorded, run_of
@@ -38,13 +39,25 @@ CONVERSION = {
 }
 
 
-def label_of(record: Record, wanted: Wanted, told: Told) -> str:
+def listed_of(wanted: Wanted) -> Listed | None:
+    """The recording's row in the list of its folder. Raises InputError where the list names several probes."""
+    rows = [row for row in read_list(wanted.file.resolve().parent) if row.file == wanted.file.name]
+    if wanted.probe is not None:
+        named = wanted.probe.strip().casefold()
+        rows = [row for row in rows if (row.text("probe") or named).casefold() == named]
+    probes = list(dict.fromkeys(filter(None, (row.text("probe") for row in rows))))
+    if len(probes) > 1:
+        raise InputError(f"{wanted.file.name}: {LIST} names {', '.join(probes)}: which probe is it? --probe names one")
+    return rows[0] if rows else None
+
+
+def label_of(record: Record, wanted: Wanted, row: Listed | None, told: Told) -> str:
     with record.reading() as connection:
         labels = Labels(spelling for spelling, _ in Names(connection).everything("electrodes").values())
     if wanted.probe is not None:
         return labels.required(wanted.probe)
     try:
-        found = Folder(wanted.file.resolve().parent, None, Given(), labels).probes(wanted.file.name, None, told)
+        found = Folder(wanted.file.resolve().parent, None, Given(), labels).probes(wanted.file.name, row, told)
     except InputError as why:
         raise InputError(f"{wanted.file.name}: {why.message}", "name it with --probe") from None
     if len(found) > 1:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from datetime import tzinfo
+from datetime import timedelta, tzinfo
 from pathlib import Path
 
 import numpy as np
@@ -11,7 +11,7 @@ from numpy.typing import NDArray
 from electrolog.answers.converting import Converted
 from electrolog.answers.recordings import nwb, nwb_series, nwb_writing
 from electrolog.answers.recordings.candidates import ENCLOSED
-from electrolog.answers.recordings.gathered import answer_of, gathered, label_of, occasion_of
+from electrolog.answers.recordings.gathered import answer_of, gathered, label_of, listed_of, occasion_of
 from electrolog.answers.recordings.papers import Occasion
 from electrolog.answers.recordings.run_of import Recorded
 from electrolog.answers.recordings.told import Told
@@ -24,11 +24,13 @@ Floats = NDArray[np.float64]
 
 
 def into_nwb(record: Record, wanted: Wanted, zone: tzinfo | None) -> Enclosed:
-    told = nwb.told_by(wanted.file, zone, Told())
-    label = label_of(record, wanted, told)
+    row = listed_of(wanted)
+    told = nwb.told_by(wanted.file, zone, Told() if row is None else row.told(zone))
+    label = label_of(record, wanted, row, told)
     target = _target(wanted)
     base = _base(wanted, target, label)
-    recorded = Recorded(told.start, told.duration_s, nwb.began(wanted.file, zone).moment)
+    assert told.start is not None  # noqa: S101 -- told_by refuses a file without one
+    recorded = Recorded(told.start, told.duration_s, told.start - timedelta(seconds=told.first_s))
     occasion, exposure = occasion_of(record, wanted, label, recorded, told.sha256)
     place, trace = _current(wanted) if wanted.convert else ("", None)
     found, made = gathered(record, wanted, occasion, exposure, recorded, trace)

@@ -52,7 +52,7 @@ class Listed:
         text = self.cells.get("start")
         start = None if text is None else parse_iso(text, zone, f"{LIST} line {self.line}, start")
         assumed = text is not None and datetime.fromisoformat(text).tzinfo is None
-        return Told(start, self._number(_DURATION), self.cells.get("subject"), zone_assumed=assumed)
+        return Told(start, self._number(_DURATION), subject=self.cells.get("subject"), zone_assumed=assumed)
 
     def rate_hz(self) -> float | None:
         return self._number(_RATE)

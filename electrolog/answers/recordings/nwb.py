@@ -132,12 +132,13 @@ def told_by(path: Path, zone: tzinfo | None, listed: Told) -> Told:
     """
     own = _began(path, zone, listed)
     with opened(path) as one:
-        first_s, last_s, said = _span(path, one.file) if listed.duration_s is None else (0.0, listed.duration_s, ())
+        first_s, last_s, said = _span(path, one.file)
         subject = (one.file.subject.subject_id if one.file.subject is not None else None) or None
         start = own.moment + timedelta(seconds=first_s) if own else None
         return Told(
             start=listed.start or start,
-            duration_s=last_s - first_s,
+            duration_s=listed.duration_s or last_s - first_s,
+            first_s=first_s,
             subject=listed.subject or subject,
             probes=own_labels(one.file),
             devices=_devices(one.file),

@@ -10,12 +10,14 @@ from datetime import datetime
 class Told:
     """None or empty: it doesn't say. `devices` may hold a label, `probes` are labels for certain.
 
+    `first_s`: the first sample's time on the file's own clock.
     `sha256`: of the file before anything of ours was put in, where we have put something in.
     `zone_assumed`: the start has no offset, and was read in the lab's zone. `said`: what else was assumed.
     """
 
     start: datetime | None = None
     duration_s: float | None = None
+    first_s: float = 0.0
     subject: str | None = None
     probes: tuple[str, ...] = ()
     devices: tuple[str, ...] = ()
