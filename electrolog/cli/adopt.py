@@ -7,6 +7,7 @@ from typing import TYPE_CHECKING, Annotated
 import typer
 
 from electrolog.cli.options import Json
+from electrolog.cli.preferences import in_force
 from electrolog.cli.session import lab_of
 from electrolog.errors import InputError
 from electrolog.show.text import safe
@@ -38,8 +39,9 @@ def command(
     answers = dict(map(_split, answer or ()))
     with working("reading the book"):
         found = lab.adopt(book, mapping_file=mapping, answers=answers)
+    usual = in_force(ctx.obj.db)
     while (asked := _next_question(found, answers)) and sys.stdin.isatty() and sys.stderr.isatty():
-        answers[asked.key] = _answer(asked)
+        answers[asked.key] = _answer(asked, usual.get(asked.key))
         with working("reading the book again"):
             found = lab.adopt(book, mapping_file=mapping, answers=answers)
     if commit:
@@ -54,10 +56,11 @@ def _next_question(found: Adoption, answers: dict[str, str]) -> Question | None:
     return next((one for one in found.questions if one.key not in answers), None)
 
 
-def _answer(asked: Question) -> str:
+def _answer(asked: Question, usual: str | None) -> str:
+    """`usual`: what the settings say, in brackets: Enter takes it."""
     typer.echo(f"{safe(asked.text)}  ({safe(asked.why)})", err=True)
     typer.echo(f"  accepted: {safe(', '.join(asked.accepted))}", err=True)
-    said: str = typer.prompt(asked.key, err=True)
+    said: str = typer.prompt(asked.key, default=usual, err=True)
     return said
 
 

@@ -47,9 +47,10 @@ def test_what_was_adopted_answers_like_what_was_typed(empty: Any, book: str) -> 
     empty.ok("verify")
 
 
-def test_a_person_is_asked_and_the_answers_are_kept(empty: Any, book: str) -> None:
+def test_a_person_is_asked_and_the_answers_are_kept(empty: Any, book: str, tmp_path: Path) -> None:
     pty = pytest.importorskip("pty", reason="a terminal of its own needs a POSIX system")
-    answers = iter([b"DA\n", b"triangle\n"])
+    answers = iter([b"DA\n", b"\n"])
+    (tmp_path / "record.toml").write_text('waveform = "triangle"\n', encoding="utf-8")  # the lab's settings
     command = [sys.executable, "-m", "electrolog", "--db", empty.db, "adopt", book]
     said = b""
 
@@ -57,7 +58,7 @@ def test_a_person_is_asked_and_the_answers_are_kept(empty: Any, book: str) -> No
         nonlocal said
         piece = os.read(descriptor, 4096)
         said += piece
-        if piece.rstrip().endswith((b"analyte:", b"waveform:")):
+        if piece.rstrip().endswith((b"analyte:", b"waveform [triangle]:")):
             os.write(descriptor, next(answers))
         return piece
 

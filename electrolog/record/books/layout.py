@@ -5,6 +5,7 @@ from __future__ import annotations
 import re
 from collections.abc import Callable, Iterator
 from dataclasses import dataclass
+from functools import partial
 from itertools import pairwise
 
 from electrolog.record.books.grid import Content, Grid, Spot
@@ -156,8 +157,7 @@ def _headers(grid: Grid, understand: Understand) -> list[_Header]:
         across = None
         if not _is_header(grid, row, headings, understand):
             texts = {heading.column: grid.text(row, heading.column) for heading in headings}
-            above = [_group(grid, row, column, understand) for column in texts]
-            across = matrix(grid, row, texts, above, understand)
+            across = matrix(grid, row, texts, _groups(grid, row, understand), understand)
             if across is None:
                 continue
         if found and found[-1].row == row - 1:  # the row above only grouped these
@@ -187,17 +187,16 @@ def _is_header(grid: Grid, row: int, headings: tuple[Heading, ...], understand: 
 
 
 def _headings(grid: Grid, row: int, understand: Understand) -> tuple[Heading, ...]:
-    texts = []
+    texts, over = [], _groups(grid, row, understand)
     for column in grid.filled(row) + [c for c in range(grid.width) if grid.spans.get((row, c), (row, c))[0] < row]:
         text = grid.text(row, column)
         if text and len(text) <= 80:
-            texts.append(Heading(column, _grouped(grid, row, column, text, understand)))
+            texts.append(Heading(column, _grouped(over(column), text, understand)))
     return tuple(sorted(texts, key=lambda heading: heading.column))
 
 
-def _grouped(grid: Grid, row: int, column: int, text: str, understand: Understand) -> str:
+def _grouped(above: str, text: str, understand: Understand) -> str:
     """With the heading above it, where that one spans several columns and says more."""
-    above = _group(grid, row, column, understand)
     if not above or above == text:
         return text
     if _NUMBER.fullmatch(text):
@@ -210,16 +209,25 @@ def _grouped(grid: Grid, row: int, column: int, text: str, understand: Understan
     return next(both, text)
 
 
-def _group(grid: Grid, row: int, column: int, understand: Understand) -> str:
-    """The heading that the row above has for several columns: a merged cell, or in a CSV the last one to the left."""
-    if row == 0 or any(row_facts(grid, row - 1, understand)):
-        return ""
-    if any((row - 1, c) in grid.spans for c in range(grid.width)):
-        return grid.text(row - 1, column) if (row - 1, column) in grid.spans else ""
-    if _NUMBER.fullmatch(grid.text(row, column)) and all(grid.text(row - 1, c) for c in grid.filled(row)):
+def _groups(grid: Grid, row: int, understand: Understand) -> Callable[[int], str]:
+    """The heading that the row above has for several columns: a merged cell, or in a CSV the last one to the left.
+
+    What holds for the whole row is looked up once: every row of a book is asked whether it is one of headings.
+    """
+    if row == 0 or not grid.filled(row - 1) or any(row_facts(grid, row - 1, understand)):
+        return lambda _: ""
+    if grid.spans and any((row - 1, c) in grid.spans for c in range(grid.width)):
+        return lambda column: grid.text(row - 1, column) if (row - 1, column) in grid.spans else ""
+    is_full = all(grid.text(row - 1, c) for c in grid.filled(row))
+    return partial(_to_the_left, grid, row, is_full)
+
+
+def _to_the_left(grid: Grid, row: int, is_full: bool, column: int) -> str:
+    is_number = _NUMBER.fullmatch(grid.text(row, column)) is not None
+    if is_number and is_full:
         return ""
     left = next((grid.text(row - 1, c) for c in range(column, -1, -1) if grid.text(row - 1, c)), "")
-    return left if _NUMBER.fullmatch(grid.text(row, column)) or _STAGE.search(left) else ""
+    return left if is_number or _STAGE.search(left) else ""
 
 
 def _is_units_row(grid: Grid, row: int) -> bool:

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import re
-from collections.abc import Callable, Iterator, Mapping, Sequence
+from collections.abc import Callable, Collection, Iterator, Mapping
 from dataclasses import dataclass
 from datetime import date
 
@@ -34,25 +34,25 @@ class Matrix:
 
 
 def matrix(
-    grid: Grid, row: int, texts: Mapping[int, str], above: Sequence[str], understand: Understand
+    grid: Grid, row: int, texts: Mapping[int, str], above: Callable[[int], str], understand: Understand
 ) -> Matrix | None:
-    """None where the row heads no such table. `texts`: its headings by column; `above`: what stands over each."""
+    """None where the row heads no such table. `texts`: its headings by column; `above`: what stands over a column."""
     known = {column: found for column, text in texts.items() if (found := understand(text)) is not None}
-    key = _key(grid, row, known)
+    key = _key(grid, row, known) if len(known) < len(texts) else None
     if key is None:
         return None
     probes = tuple((column, text) for column, text in texts.items() if column != key and column not in known)
     beside = tuple(column for column, found in known.items() if column != key and found.field in BESIDE)
-    if len(probes) < 2 or len(probes) + len(beside) + (key in known) < len(texts):
+    labels = {text.casefold() for _, text in probes}
+    if len(probes) < 2 or len(labels) < len(probes) or len(probes) + len(beside) + (key in known) < len(texts):
         return None
-    over = dict(zip(texts, above, strict=True))
-    headed = all((found := understand(over[column])) is not None and found.field == "electrode" for column, _ in probes)
+    over = [understand(above(column)) for column, _ in probes]
+    headed = all(found is not None and found.field == "electrode" for found in over)
     certain = headed or (key in known and known[key].field == "electrode")
-    labels = [text for _, text in probes]
-    if not (certain or _look_alike(labels)) or len({label.casefold() for label in labels}) < len(labels):
-        return None
     filled = [column for column, _ in probes if any(cell is not None for cell in _below(grid, row, column))]
-    if not filled or not all(_holds_numbers(grid, row, column) for column in filled):
+    if not (certain or _look_alike(labels)) or not filled:
+        return None
+    if not all(_holds_numbers(grid, row, column) for column in filled):
         return None
     holds = "concentration" if key in known and known[key].field == "concentration" else "day"
     return Matrix(key, holds, probes, beside, certain)
@@ -67,11 +67,11 @@ def _key(grid: Grid, row: int, known: dict[int, Meaning]) -> int | None:
     return blank if blank is not None and _holds_days(grid, row, blank) else None
 
 
-def _look_alike(labels: Sequence[str]) -> bool:
+def _look_alike(labels: Collection[str]) -> bool:
     """Labels of one lab have a stem and a number, or are a letter or two; numbers may be amounts."""
     if any(len(label) > LONGEST_LABEL or _NUMERIC.fullmatch(label) for label in labels):
         return False
-    stems = {_LOOK.sub("#", label.casefold()) for label in labels}
+    stems = {_LOOK.sub("#", label) for label in labels}
     return len(stems) <= 2 and all("#" in stem or len(stem) <= 2 for stem in stems)
 
 
