@@ -11,7 +11,7 @@ from electrolog.clock import shown_moment
 from electrolog.judge.backtest import PIT_CLASSES, Scored
 from electrolog.show.backtests import cuts_said, verdicts_said
 from electrolog.show.svg import Plot
-from electrolog.units import shown_number, shown_percent
+from electrolog.units import counted, shown_number, shown_percent
 
 LOOKS = ("curve", "rival dash", "rival dotted", "rival dashdot", "rival longdash")
 TENTHS = tuple(k / 10 for k in range(1, 10))
@@ -90,7 +90,9 @@ def pit_chart(one: Scored) -> Plot:
     plot.level(expected, "zero", f"expected of honest forecasts: {shown_number(expected)} in each")
     for k, count in enumerate(one.pit_counts):
         ends = (k + 0.06) / PIT_CLASSES, (k + 0.94) / PIT_CLASSES
-        plot.box(ends, (0, count), "column", f"{_class(k)}: {count} readings, expected {shown_number(expected)}")
+        plot.box(
+            ends, (0, count), "column", f"{_class(k)}: {counted(count, 'reading')}, expected {shown_number(expected)}"
+        )
     plot.explain("band", "column", one.method)
     plot.explain("band", "chance", "what chance may do to honest forecasts, 95 %")
     return plot
