@@ -10,7 +10,7 @@ import typer
 from electrolog.cli.options import Json
 from electrolog.cli.planned import AsOf, Labels, Needs, Project, RunLimits, asking, run_of
 from electrolog.cli.session import lab_of
-from electrolog.errors import InputError
+from electrolog.errors import InputError, shortened
 
 if TYPE_CHECKING:
     from electrolog.answers.report import Planned
@@ -61,6 +61,8 @@ def command(
         asked = replace(asked, planned=_planned(analyte, waveform, setting, run, (needs, project, limit)))
     elif any((analyte, waveform, setting, needs, project, limit)):
         raise InputError("the plan says of each run what it is; accepted with a plan: --lab, --at and --out")
+    if not out.absolute().parent.is_dir():  # said before the work, not after it
+        raise InputError(f"out: the folder '{shortened(str(out.parent))}' isn't there; accepted: one that is")
     if backtest and not whole:
         raise InputError("a backtest is the lab's: accepted with --lab")
     with working("making the report") as tell:

@@ -183,6 +183,10 @@ def test_half_a_run_and_unknown_names_are_refused(cli: Any) -> None:
     assert not Path("page.html").exists()
 
 
+def test_a_folder_that_is_not_there_is_said_before_the_work(cli: Any) -> None:
+    assert "the folder 'nowhere' isn't there" in cli.refused("report", "--lab", "--out", "nowhere/page.html")
+
+
 def test_hostile_text_is_only_text(cli: Any) -> None:
     cli.ok("note", "B07-01", HOSTILE.replace("\x07", ""), "--at", "2026-01-21T09:00Z")
     cli.ok("new", "<img src=x onerror=alert(1)>")
