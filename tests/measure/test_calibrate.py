@@ -286,6 +286,12 @@ def test_two_points_lie_on_their_line_by_nature():
     assert not any("exactly on the line" in said for said in calibrate([0, 1], [0.1, 12.2]).warnings)
 
 
+def test_a_flat_line_is_no_response_and_nothing_else():
+    said = " ".join(calibrate([0, 1, 2, 4], [1.0, 1.0, 1.0, 1.0]).warnings)
+    assert "no response was measured" in said
+    assert "exactly on the line" not in said
+
+
 @pytest.mark.parametrize("scale", [1.0, 0.01])
 def test_how_far_it_is_linear_does_not_depend_on_the_slopes_size(scale):
     x = np.array([0, 0.5, 1, 2, 4])
