@@ -85,7 +85,6 @@ def methods(record: Record, labels: Sequence[str], analyte: str, waveform: str |
         struck = struck_calibrations(connection, [probe["id"] for probe in probes])
     events = [event for probe in probes for event in life.get(probe["electrode"], [])]
     coated = {str(probe["electrode"]): _coating(life.get(probe["electrode"], [])) for probe in probes}
-    lengths = {str(probe["electrode"]): probe["exposed_length_um"] for probe in probes}
     runs = [event for event in events if event.sheet is sheets.EXPOSURES]
     return Described(
         analyte=found[0].analyte,
@@ -112,7 +111,7 @@ def methods(record: Record, labels: Sequence[str], analyte: str, waveform: str |
         retired=counted(event.row["reason"] for event in events if event.sheet is sheets.RETIREMENTS),
         struck=dict(struck),
         computed_by=tuple(sorted({one.figures.method for one in found})),
-        table=tuple(_table_row(one, coated, lengths) for one in found),
+        table=_table(found, coated, probes),
     )
 
 
@@ -162,6 +161,11 @@ def _timed(found: Sequence[Reading], runs: Sequence[Event]) -> dict[str, Any]:
 
 def _hours(start: datetime, end: datetime) -> float:
     return (end - start).total_seconds() / 3600
+
+
+def _table(found: Sequence[Reading], coated: dict[str, str], probes: Sequence[Row]) -> tuple[dict[str, Any], ...]:
+    lengths = {str(probe["electrode"]): probe["exposed_length_um"] for probe in probes}
+    return tuple(_table_row(one, coated, lengths) for one in found)
 
 
 def _table_row(one: Reading, coated: dict[str, str], lengths: dict[str, float | None]) -> dict[str, Any]:
