@@ -47,7 +47,14 @@ AFTER = {  # what a command's arguments name, in their order; the last one may r
     **dict.fromkeys(("amend", "strike"), ("kind", "of that kind")),
     "list": ("list",),
     "completion": ("shell",),
-    **dict.fromkeys(("adopt", "import", "export", "template", "setup", "new", "add", "journal", "dilutions"), ("",)),
+    "limits": ("action", ""),
+    "add": ("addable", ""),
+    "dilutions": ("standards", ""),
+    # what isn't the record's to name: files and folders, which the shell offers, or text
+    **dict.fromkeys(("adopt", "import", "export", "template", "runs", "enclose", "convert", "assign"), ("",)),
+    **dict.fromkeys(("backup", "restore", "rescue", "move", "roles", "settings", "new"), ("",)),
+    **dict.fromkeys(("setup", "journal", "verify", "recompute", "dictionary", "shelf"), ("",)),
+    **dict.fromkeys(("compare", "fit", "backtest"), ("",)),
 }
 OF_A_KIND = {  # what `amend` and `strike` call by a label
     "calibration": "calibrations",
@@ -65,6 +72,21 @@ FIXED = {
         *("exposure", "cleaning", "coating", "conditioning", "inspection", "re-cut", "retirement", "word"),
     ),
     "list": ("words", "analytes", "waveforms", "batches", "standards"),
+    "action": ("list", "set", "unset", "adopt"),
+    "addable": (
+        *(
+            "analyte",
+            "waveform",
+            "fibre",
+            "insulation",
+            "seal",
+            "coating material",
+            "coating method",
+            "medium",
+            "setting",
+        ),
+        *("cleaning method", "retirement reason"),
+    ),
     "shell": ("bash", "zsh", "fish", "powershell"),
 }
 GLOBAL = ("--db", "--zone", "--quiet")

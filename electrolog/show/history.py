@@ -17,13 +17,19 @@ def answer(readings: Sequence[Reading], json: bool, csv: bool, plain: bool = Fal
     if json:
         print_json(rows)
     elif csv:
-        print_csv(rows)
+        print_csv(rows, None if rows else _KEYS)
     elif not readings:
         print_lines("no calibration yet: log one with `electrolog calibrate`")
     elif plain:
         print_lines(*[_sentence(reading) for reading in readings], *_warned(readings))
     else:
         _print(readings)
+
+
+_KEYS = (
+    *("electrode", "calibration", "at", "stage", "analyte", "waveform", "exposure_h", "exposure_by_setting_h"),
+    *("sensitivity_na_um", "sensitivity_se_na_um", "share_left", "share_left_se", "is_reference", "warnings"),
+)
 
 
 def as_dict(reading: Reading) -> dict[str, Any]:

@@ -12,6 +12,7 @@ from typing import Any
 import pytest
 
 from electrolog.cli.completing import completions
+from electrolog.record.sheets import WORD_KINDS
 
 
 @pytest.fixture
@@ -44,6 +45,11 @@ def offered(cli: Any, monkeypatch: pytest.MonkeyPatch) -> Any:
         (("strike", "exposure", ""), []),
         (("list", "wa"), ["waveforms"]),
         (("completion", "f"), ["fish"]),
+        (("limits", "a"), ["adopt"]),
+        (("dilutions", "S"), ["S-48-DA"]),
+        (("backup", ""), []),
+        (("runs", "B"), []),
+        (("shelf", "B"), []),
         (("--db", "nowhere.db", "life", ""), []),
         (("import", ""), []),
         (("nonsense", "B"), []),
@@ -52,6 +58,10 @@ def offered(cli: Any, monkeypatch: pytest.MonkeyPatch) -> Any:
 )
 def test_a_tab_offers_what_fits_there(offered: Any, words: tuple[str, ...], expected: list[str]) -> None:
     assert offered(*words) == expected
+
+
+def test_what_can_be_added_is_offered(offered: Any) -> None:
+    assert offered("add", "") == ["analyte", "waveform", *WORD_KINDS]
 
 
 def test_the_labs_own_words_are_offered_and_struck_labels_are_not(cli: Any, offered: Any) -> None:

@@ -39,7 +39,7 @@ def test_the_journal_names_rows_as_people_do(cli: Any) -> None:
     assert "point C0042/5" in out
 
 
-@pytest.mark.parametrize("command", ["calibrations", "life"])
+@pytest.mark.parametrize("command", ["calibrations", "history", "life"])
 def test_an_empty_list_has_its_columns_in_csv(cli: Any, command: str) -> None:
     cli.ok("new", "Z-1")
     filled = cli.ok(command, "B07-01", "--csv").out.splitlines()[0]
