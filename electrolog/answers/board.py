@@ -20,13 +20,13 @@ from numpy.typing import NDArray
 from electrolog.answers import cache, cards, fits
 from electrolog.answers.asked import Asked, Floats, Run, ask
 from electrolog.answers.cards import Card, card_of
+from electrolog.answers.checking import standards_of
 from electrolog.answers.cohorts import REFERENCE_SETTING
 from electrolog.answers.fits import Assay
 from electrolog.fouling.fit import CohortFit
 from electrolog.fouling.kept_draws import Arrays, packed, thinned, unpacked
-from electrolog.record import queries, sheets
+from electrolog.record import kept_fits, queries
 from electrolog.record.names import Names
-from electrolog.record.readable import rows
 from electrolog.record.store import Record
 
 ALL_DRAWS, FEWER_DRAWS = 1 << 20, 512
@@ -78,9 +78,8 @@ def board(record: Record, labels: Sequence[str] | None, run: Run, moment: dateti
         assay = fits.assay(connection, run.analyte, run.waveform)
         setting = Names(connection).word("setting", run.setting)
         seen = queries.lives_seen(connection, moment)
-        correction = queries.to_be_seen(connection, assay.analyte_id).correction
     wanted = list(seen) if labels is None else list(dict.fromkeys(labels))
-    fit = fits.fit_for(record, assay)
+    fit, correction = fits.fit_for(record, assay), fits.corrected_last(record, assay)
     if labels is not None or len(wanted) < LARGE:
         return Board(assay, setting, fit, *_fresh(record, wanted, run, moment, ALL_DRAWS), ALL_DRAWS, moment)
     path = cache.path_of(record, "shelf.npz", assay.analyte, assay.waveform)
@@ -109,7 +108,7 @@ def _fresh(
 ) -> tuple[tuple[Card, ...], Arrays]:
     asked: Asked = ask(record, labels, run, moment)
     with record.reading() as connection:
-        standards = {row["standard"]: row for row in rows(connection, sheets.STANDARDS)}
+        standards = standards_of(connection, asked)
     arrays = packed(asked.posterior, draws) | {REFERENCE: thinned(asked.posterior, asked.log_references(), draws)}
     return tuple(card_of(asked, label, standards) for label in asked.labels), arrays
 

@@ -25,8 +25,8 @@ from electrolog.judge.question import Question
 from electrolog.judge.verdict import Verdict, judge
 from electrolog.record import queries, sheets
 from electrolog.record.queries import Event
-from electrolog.record.readable import Row, rows
-from electrolog.record.store import Record
+from electrolog.record.readable import Row
+from electrolog.record.store import Connection, Record
 
 
 @dataclass(frozen=True)
@@ -79,10 +79,15 @@ def _asked_too_much(verdict: Verdict, limits: Limits) -> tuple[str, ...]:
 
 
 def rules_of_the_lab(record: Record, asked: Asked, demands: Demands) -> tuple[Limits, dict[str, Row]]:
-    """The limits in force, and the standards by label."""
+    """The limits in force, and the standards by label that the probes were calibrated with."""
     with record.reading() as connection:
         limits = limits_in_force(queries.limits(connection), asked, demands)
-        return limits, {row["standard"]: row for row in rows(connection, sheets.STANDARDS)}
+        return limits, standards_of(connection, asked)
+
+
+def standards_of(connection: Connection, asked: Asked) -> dict[str, Row]:
+    """Those that the probes asked about were calibrated with, by label."""
+    return queries.standards(connection, [e.row.get("standard") for life in asked.life.values() for e in life])
 
 
 def _verdict(question: Question, asked: Asked, label: str) -> Verdict:

@@ -7,6 +7,8 @@ logarithm; what is left out is counted and said.
 from __future__ import annotations
 
 import math
+import sys
+from array import array
 from collections.abc import Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass, field
 from datetime import timedelta
@@ -41,11 +43,13 @@ class Cohort:
 
 @dataclass
 class _Columns:
-    unit: list[int] = field(default_factory=list)
-    kind: list[int] = field(default_factory=list)
-    which: list[int] = field(default_factory=list)
-    amount: list[float] = field(default_factory=list)
-    se: list[float] = field(default_factory=list)
+    """Packed as they come: a large cohort has millions of rows, and a list would hold an object for each number."""
+
+    unit: array[int] = field(default_factory=lambda: array("q"))
+    kind: array[int] = field(default_factory=lambda: array("b"))
+    which: array[int] = field(default_factory=lambda: array("q"))
+    amount: array[float] = field(default_factory=lambda: array("d"))
+    se: array[float] = field(default_factory=lambda: array("d"))
 
     def add(self, unit: int, kind: int, which: int, amount: float, se: float = _NOWHERE) -> None:
         self.unit.append(unit)
@@ -69,6 +73,13 @@ class _Index:
         return tuple(self.places)
 
 
+@dataclass(frozen=True)
+class _Names:
+    settings: _Index
+    renewals: _Index
+    days: _Index
+
+
 def gather(
     probes: Sequence[Row],
     life: Mapping[str, list[Event]],
@@ -81,37 +92,65 @@ def gather(
 
     A named unit may have no reading yet. `settings_known` come first, whether or not anything was logged in them.
     """
-    settings, renewals, days = _Index(settings_known), _Index(), _Index()
-    columns, left_out = _Columns(), {}
-    wanted = list(_units(probes, life, analyte) if units is None else units)
-    readings: dict[UnitKey, list[Event]] = {}
-    of_probe = {probe["electrode"]: probe for probe in probes}
-    for place, (electrode, waveform) in enumerate(wanted):
-        story = life.get(electrode, [])
-        usable = []
-        for event in lives.comparable_calibrations(story, analyte, waveform):
-            why = unusable(figures[event.row["id"]])
-            if why:
-                left_out[event.row["calibration"]] = why
-            else:
-                usable.append(event)
-        readings[electrode, waveform] = usable
-        length = of_probe[electrode]["exposed_length_um"]
-        for step in _steps(story, {event.row["id"] for event in usable}, length):
-            _write(step, place, columns, figures, settings, renewals, days)
-    events = Events(
-        unit=np.array(columns.unit, dtype=np.int64),
-        kind=np.array(columns.kind, dtype=np.int8),
-        which=np.array(columns.which, dtype=np.int64),
-        amount=np.array(columns.amount, dtype=np.float64),
-        se=np.array(columns.se, dtype=np.float64),
-        units=tuple(f"{electrode}\n{waveform}" for electrode, waveform in wanted),
-        settings=settings.names,
-        renewals=renewals.names,
-        days=days.names,
-        groups=_groups(wanted, of_probe, life),
-    )
-    return Cohort(events, tuple(wanted), readings, left_out)
+    gathering = Gathering(analyte, settings_known)
+    readings = gathering.add(probes, life, figures, units)
+    return gathering.done(readings)
+
+
+class Gathering:
+    """A cohort as it is gathered, some probes at a time; only its columns of numbers and its names are held."""
+
+    def __init__(self, analyte: str, settings_known: Iterable[str] = (REFERENCE_SETTING,)) -> None:
+        self._analyte = analyte
+        self._names = _Names(_Index(settings_known), _Index(), _Index())
+        self._columns = _Columns()
+        self._units: list[UnitKey] = []
+        self._groups: dict[str, list[str]] = {factor: [] for factor in ("coating", "fibre", "waveform", "batch")}
+        self._left_out: dict[str, str] = {}
+
+    def add(
+        self,
+        probes: Sequence[Row],
+        life: Mapping[str, list[Event]],
+        figures: Mapping[int, CalibrationFigures],
+        units: Sequence[UnitKey] | None = None,
+    ) -> dict[UnitKey, list[Event]]:
+        """The units of these probes behind those gathered so far; returns the calibrations behind their readings."""
+        of_probe = {probe["electrode"]: probe for probe in probes}
+        readings: dict[UnitKey, list[Event]] = {}
+        for electrode, waveform in _units(probes, life, self._analyte) if units is None else units:
+            story, probe = life.get(electrode, []), of_probe[electrode]
+            usable = self._usable(lives.comparable_calibrations(story, self._analyte, waveform), figures)
+            readings[electrode, waveform] = usable
+            for step in _steps(story, {event.row["id"] for event in usable}, probe["exposed_length_um"]):
+                _write(step, len(self._units), self._columns, figures, self._names)
+            self._units.append((electrode, waveform))
+            own = (coating(story), probe["fibre"] or "", waveform, probe["batch"] or "")
+            for values, value in zip(self._groups.values(), own, strict=True):
+                values.append(sys.intern(value))
+        return readings
+
+    def _usable(self, found: Sequence[Event], figures: Mapping[int, CalibrationFigures]) -> list[Event]:
+        why_not = {event.row["calibration"]: unusable(figures[event.row["id"]]) for event in found}
+        self._left_out.update({label: why for label, why in why_not.items() if why})
+        return [event for event in found if not why_not[event.row["calibration"]]]
+
+    def done(self, readings: dict[UnitKey, list[Event]] | None = None) -> Cohort:
+        """readings: the calibrations behind them, where the cohort is to hold these too."""
+        columns, names = self._columns, self._names
+        events = Events(
+            unit=np.array(columns.unit, dtype=np.int64),
+            kind=np.array(columns.kind, dtype=np.int8),
+            which=np.array(columns.which, dtype=np.int64),
+            amount=np.array(columns.amount, dtype=np.float64),
+            se=np.array(columns.se, dtype=np.float64),
+            units=tuple(f"{electrode}\n{waveform}" for electrode, waveform in self._units),
+            settings=names.settings.names,
+            renewals=names.renewals.names,
+            days=names.days.names,
+            groups={factor: tuple(values) for factor, values in self._groups.items()},
+        )
+        return Cohort(events, tuple(self._units), readings or {}, self._left_out)
 
 
 def unusable(figures: CalibrationFigures) -> str:
@@ -198,30 +237,17 @@ def _write(
     unit: int,
     columns: _Columns,
     figures: Mapping[int, CalibrationFigures],
-    settings: _Index,
-    renewals: _Index,
-    days: _Index,
+    names: _Names,
 ) -> None:
     if step.kind == EXPOSURE:
-        columns.add(unit, EXPOSURE, settings.place(step.name), step.amount)
+        columns.add(unit, EXPOSURE, names.settings.place(step.name), step.amount)
     elif step.kind == RENEWAL:
-        columns.add(unit, RENEWAL, renewals.place(step.name), step.amount)
+        columns.add(unit, RENEWAL, names.renewals.place(step.name), step.amount)
     else:
         own = figures[step.event.row["id"]]
         sensitivity = own.sensitivity_na_um or _NOWHERE
         relative = own.sensitivity_se_na_um / sensitivity if own.sensitivity_se_na_um is not None else _NOWHERE
-        columns.add(unit, READING, days.place(step.name), math.log(sensitivity), relative)
-
-
-def _groups(
-    units: Sequence[UnitKey], probes: Mapping[str, Row], life: Mapping[str, list[Event]]
-) -> dict[str, tuple[str, ...]]:
-    return {
-        "coating": tuple(coating(life.get(electrode, [])) for electrode, _ in units),
-        "fibre": tuple(probes[electrode]["fibre"] or "" for electrode, _ in units),
-        "waveform": tuple(waveform for _, waveform in units),
-        "batch": tuple(probes[electrode]["batch"] or "" for electrode, _ in units),
-    }
+        columns.add(unit, READING, names.days.place(step.name), math.log(sensitivity), relative)
 
 
 def coating(story: Sequence[Event]) -> str:

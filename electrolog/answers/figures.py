@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Sequence
+from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass, replace
 from typing import Any
 
@@ -16,6 +16,7 @@ from electrolog.record.queries import Calibration
 from electrolog.record.readable import rows
 from electrolog.record.store import Connection, Record
 
+MANY_NEW = 200  # figures that cost more to make again than to keep
 NO_CONTENT = "neither points nor a factor were kept: there is nothing to compute from"
 
 
@@ -33,9 +34,8 @@ class Recomputed(Answer):
 
 def figures_of(calibration: Calibration, uncertainties: dict[str, float | None]) -> CalibrationFigures:
     """`uncertainties`: relative standard uncertainty by standard's label."""
-    kept = calibration.figures
-    if kept is not None and kept.get("method") == METHOD:
-        return CalibrationFigures.from_dict(kept)
+    if calibration.figures is not None and _is_kept(calibration):
+        return CalibrationFigures.from_dict(calibration.figures)
     return computed(calibration, uncertainties)
 
 
@@ -87,14 +87,54 @@ def figures_of_points(
 
 
 def all_figures(record: Record, calibrations: Iterable[Calibration]) -> dict[int, CalibrationFigures]:
-    """Figures by calibration number."""
+    """Figures by calibration number; where many have none yet, as after an import, they are kept for who asks next."""
+    asked = list(calibrations)
+    stale = [calibration for calibration in asked if not _is_kept(calibration)]
     with record.reading() as connection:
-        uncertainties = standards_uncertainties(connection)
-    return {calibration.row["id"]: figures_of(calibration, uncertainties) for calibration in calibrations}
+        uncertainties = standards_uncertainties(connection, stale)
+    found = {calibration.row["id"]: figures_of(calibration, uncertainties) for calibration in asked}
+    new = [calibration for calibration in asked if calibration.figures is None]
+    if len(new) >= MANY_NEW and record.may_keep:
+        _keep_new(record, new, found, uncertainties)
+    return found
 
 
-def standards_uncertainties(connection: Connection) -> dict[str, float | None]:
-    return {row["standard"]: row["relative_uncertainty"] for row in rows(connection, sheets.STANDARDS)}
+def _keep_new(
+    record: Record,
+    new: Sequence[Calibration],
+    found: Mapping[int, CalibrationFigures],
+    uncertainties: dict[str, float | None],
+) -> None:
+    """Of those that are still as they were read: somebody else may have corrected one meanwhile."""
+    with record.writing() as writer:
+        if not standards_uncertainties(writer.connection, new).items() <= uncertainties.items():
+            return
+        now = {one.row["id"]: one for one in queries.calibrations_by_id(writer.connection, [o.row["id"] for o in new])}
+        same = [one.row["id"] for one in new if now.get(one.row["id"]) == one]
+        queries.keep_figures(writer, {key: (found[key].method, found[key].to_dict()) for key in same})
+
+
+def figures_without_points(
+    connection: Connection, calibrations: Iterable[Calibration]
+) -> dict[int, CalibrationFigures]:
+    """Of calibrations read without their points: only those need them whose figures aren't kept."""
+    found = {calibration.row["id"]: calibration for calibration in calibrations}
+    stale = queries.calibrations_by_id(connection, [key for key, one in found.items() if not _is_kept(one)])
+    uncertainties = standards_uncertainties(connection, stale)
+    found.update({calibration.row["id"]: calibration for calibration in stale})
+    return {key: figures_of(calibration, uncertainties) for key, calibration in found.items()}
+
+
+def standards_uncertainties(connection: Connection, of: Iterable[Calibration] | None = None) -> dict[str, float | None]:
+    """By standard's label: of the standards of these calibrations, or of all."""
+    if of is None:
+        return {row["standard"]: row["relative_uncertainty"] for row in rows(connection, sheets.STANDARDS)}
+    named = queries.standards(connection, [calibration.row["standard"] for calibration in of])
+    return {label: row["relative_uncertainty"] for label, row in named.items()}
+
+
+def _is_kept(calibration: Calibration) -> bool:
+    return calibration.figures is not None and calibration.figures.get("method") == METHOD
 
 
 def recompute(record: Record) -> list[Recomputed]:

@@ -3,23 +3,29 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 from contextlib import suppress
 from dataclasses import dataclass
 
 from electrolog.answers import cohorts
 from electrolog.answers import figures as made
-from electrolog.answers.cohorts import Cohort
+from electrolog.answers.cohorts import Cohort, Gathering, UnitKey
 from electrolog.errors import DataError
 from electrolog.fouling.cohort import fit_cohort
 from electrolog.fouling.fit import METHOD, CohortFit
 from electrolog.fouling.kept import from_dict, to_dict
 from electrolog.fouling.parameters import read_scales
-from electrolog.record import queries
+from electrolog.measure.calibrate import CalibrationFigures
+from electrolog.record import kept_fits, queries, sheets
 from electrolog.record.names import Names
-from electrolog.record.readable import row_by_id
+from electrolog.record.queries import Event
+from electrolog.record.readable import Row, row_by_id
 from electrolog.record.sheets import ANALYTES, WAVEFORMS
 from electrolog.record.store import Connection, Record
 
+PROBES_AT_ONCE = 500
+# What else happened to a probe changes none of its readings.
+OF_THE_FIT = tuple(sheet for sheet in sheets.EVENTS if sheet not in (sheets.CONDITIONINGS, sheets.RETIREMENTS))
 CHANGED_ENOUGH = 0.05  # of the readings; below that one probe's own news reach its forecast without a new fit
 
 
@@ -45,42 +51,72 @@ def assay(connection: Connection, analyte: str, waveform: str) -> Assay:
     return Assay(spelled, row_by_id(connection, WAVEFORMS, waveform_id)["waveform"], analyte_id)
 
 
-def gathered(record: Record, asked: Assay) -> Cohort:
-    """The whole cohort of the assay's analyte: every probe, retired ones too, with every waveform."""
+def gathered(record: Record, asked: Assay) -> tuple[Cohort, kept_fits.Seen]:
+    """The whole cohort of the assay's analyte: every probe, retired ones too, with every waveform; `readings` is empty.
+
+    With it how much of the record that is. A stretch of probes at a time, so that what is held of a large cohort is its
+    columns of numbers.
+    """
+    gathering = Gathering(asked.analyte)
     with record.reading() as connection:
-        probes = queries.probes(connection)
-        life = queries.events(connection)
-        found = queries.calibrations(connection, None, asked.analyte_id)
-    return cohorts.gather(probes, life, made.all_figures(record, found), asked.analyte)
+        seen = kept_fits.to_be_seen(connection, asked.analyte_id)
+        members = queries.calibrated_with(connection, asked.analyte_id)
+        for start in range(0, len(members), PROBES_AT_ONCE):
+            gathering.add(*_stretch(connection, asked, members[start : start + PROBES_AT_ONCE]))
+    return gathering.done(), seen
+
+
+def _stretch(
+    connection: Connection, asked: Assay, ids: Sequence[int]
+) -> tuple[list[Row], dict[str, list[Event]], dict[int, CalibrationFigures]]:
+    probes, life = queries.probes_by_id(connection, ids), queries.events(connection, ids, OF_THE_FIT)
+    found = queries.calibrations(connection, ids, asked.analyte_id, points=False)
+    return probes, life, made.figures_without_points(connection, found)
+
+
+def calibration_of(record: Record, asked: Assay, unit: UnitKey, place: int) -> str:
+    """The label of a unit's reading by its place among those that the fit uses; "?" where it is gone by now."""
+    with record.reading() as connection:
+        ids = [probe["id"] for probe in queries.probes(connection, [unit[0]])]
+        told = _stretch(connection, asked, ids)
+    readings = cohorts.gather(*told, asked.analyte, [unit]).readings[unit] if ids else []
+    return str(readings[place].row["calibration"]) if place < len(readings) else "?"
 
 
 def is_kept(record: Record, analyte: str) -> bool:
     """Whether a fit is kept that `fit_for` would use, so that asking costs nothing. Raises UnknownName."""
     with record.reading() as connection:
-        analyte_id = Names(connection).row_id("analytes", analyte)
-        kept = queries.kept_fit(connection, analyte_id)
-        seen = queries.to_be_seen(connection, analyte_id)
-    return kept is not None and kept.method == METHOD and not _changed(kept.seen, seen)
+        return _still_holds(connection, Names(connection).row_id("analytes", analyte))
 
 
-def fit_for(record: Record, asked: Assay, fresh: bool = False) -> CohortFit:
-    """The cohort's fit, from the record if what it saw is still nearly all there is."""
+def fit_for(
+    record: Record, asked: Assay, fresh: bool = False, known: tuple[Cohort, kept_fits.Seen] | None = None
+) -> CohortFit:
+    """The cohort's fit, from the record if what it saw is still nearly all there is; `known`: as just gathered."""
     with record.reading() as connection:
-        kept = None if fresh else queries.kept_fit(connection, asked.analyte_id)
-        seen = queries.to_be_seen(connection, asked.analyte_id)
-    if kept is not None and kept.method == METHOD and not _changed(kept.seen, seen):
-        with suppress(DataError):  # of a layout that this version can't read
-            return from_dict(kept.fit)
-    fit = fit_cohort(gathered(record, asked).events)
+        if not fresh and _still_holds(connection, asked.analyte_id):
+            with suppress(DataError):  # of a layout that this version can't read
+                return from_dict(kept_fits.content(connection, asked.analyte_id))
+    cohort, seen = known or gathered(record, asked)
+    fit = fit_cohort(cohort.events)
     keep(record, asked.analyte_id, fit, seen)
     return fit
 
 
-def keep(record: Record, analyte_id: int, fit: CohortFit, seen: queries.Seen) -> None:
+def corrected_last(record: Record, asked: Assay) -> int:
+    """The journal entry up to which no correction of the cohort is unknown to its fit, or the newest such one."""
+    with record.reading() as connection:
+        kept = kept_fits.kept_fit(connection, asked.analyte_id)
+        if kept is None:
+            return kept_fits.to_be_seen(connection, asked.analyte_id).correction
+        return kept_fits.since(connection, asked.analyte_id, kept.seen).correction or kept.seen.correction
+
+
+def keep(record: Record, analyte_id: int, fit: CohortFit, seen: kept_fits.Seen) -> None:
     if not record.may_keep:
         return
     with record.writing() as writer:
-        queries.keep_fit(writer, analyte_id, fit.method, fit.fingerprint, seen, to_dict(fit))
+        kept_fits.keep_fit(writer, analyte_id, fit.method, fit.fingerprint, seen, to_dict(fit))
 
 
 def reading_sd_log(fit: CohortFit) -> float:
@@ -94,7 +130,10 @@ def known_renewals(fit: CohortFit) -> tuple[str, ...]:
     return fit.components[0].layout.renewals
 
 
-def _changed(kept: queries.Seen, now: queries.Seen) -> bool:
-    """A correction may touch anything, so it always counts; new readings count by their share."""
-    new = abs(now.readings - kept.readings)
-    return now.correction != kept.correction or new > CHANGED_ENOUGH * max(kept.readings, 1)
+def _still_holds(connection: Connection, analyte_id: int) -> bool:
+    """Whether a fit is kept and holds: a correction of its cohort always counts, new readings by their share."""
+    kept = kept_fits.kept_fit(connection, analyte_id)
+    if kept is None or kept.method != METHOD:
+        return False
+    since = kept_fits.since(connection, analyte_id, kept.seen)
+    return not since.correction and since.readings <= CHANGED_ENOUGH * max(kept.seen.readings, 1)

@@ -15,7 +15,7 @@ from electrolog.answers.fits import Assay
 from electrolog.errors import DataError
 from electrolog.fouling.events import READING
 from electrolog.fouling.fit import CohortFit
-from electrolog.record import queries
+from electrolog.record import kept_fits
 from electrolog.record.names import Names
 from electrolog.record.readable import row_by_id
 from electrolog.record.sheets import ANALYTES
@@ -122,24 +122,24 @@ def fitted_cohort(record: Record, analyte: str, fresh: bool = False) -> FittedCo
     """
     with record.reading() as connection:
         asked = whole_cohort(connection, analyte)
-    cohort = fits.gathered(record, asked)
+    cohort, seen = fits.gathered(record, asked)
     if not (cohort.events.kind == READING).any():
         raise DataError(
             f"no calibration with {asked.analyte} gives a sensitivity: there is nothing to fit",
             "log calibrations with `electrolog calibrate`, or `electrolog import` a folder",
         )
-    fit = fits.fit_for(record, asked, fresh)
+    fit = fits.fit_for(record, asked, fresh, (cohort, seen))
     with record.reading() as connection:
-        kept = queries.kept_fit(connection, asked.analyte_id)
+        kept = kept_fits.kept_fit(connection, asked.analyte_id)
     if kept is None:
         raise DataError("the fit was taken away while it was read", "ask again")
-    return _told(asked.analyte, fit, cohort, kept.made_at)
+    return _told(record, asked, fit, cohort, kept.made_at)
 
 
-def _told(analyte: str, fit: CohortFit, cohort: Cohort, made_at: datetime) -> FittedCohort:
+def _told(record: Record, asked: Assay, fit: CohortFit, cohort: Cohort, made_at: datetime) -> FittedCohort:
     said = fit.summary
     return FittedCohort(
-        analyte=analyte,
+        analyte=asked.analyte,
         method=fit.method,
         made_at=made_at,
         converged=fit.converged,
@@ -156,8 +156,8 @@ def _told(analyte: str, fit: CohortFit, cohort: Cohort, made_at: datetime) -> Fi
         ),
         days=tuple(sorted((_day(row) for row in said["days"]), key=lambda day: (day.date, day.standard, day.rig))),
         spreads={name: _estimate(row) for name, row in said["spreads"].items()},
-        slips=tuple(_odd(cohort, row, row["reading"]) for row in said["slips"]),
-        damaged=tuple(_odd(cohort, row, row["before_reading"]) for row in said["damaged"]),
+        slips=tuple(_odd(record, asked, row, row["reading"]) for row in said["slips"]),
+        damaged=tuple(_odd(record, asked, row, row["before_reading"]) for row in said["damaged"]),
         notes=(*fit.notes, *[f"{name} is left out: {why}" for name, why in cohort.left_out.items()]),
     )
 
@@ -177,8 +177,7 @@ def _day(row: Mapping[str, Any]) -> Day:
     return Day(standard, rig, date, effect, row["n_calibrations"], row["bad_probability"], row["suspicious"])
 
 
-def _odd(cohort: Cohort, row: Mapping[str, Any], which: int) -> Odd:
+def _odd(record: Record, asked: Assay, row: Mapping[str, Any], which: int) -> Odd:
     electrode, waveform = row["unit"].split("\n")
-    readings = cohort.readings.get((electrode, waveform), [])
-    name = readings[which].row["calibration"] if which < len(readings) else "?"
+    name = fits.calibration_of(record, asked, (electrode, waveform), which)
     return Odd(electrode, name, row["probability"])

@@ -15,8 +15,9 @@ from electrolog.measure.detection import claimed_below_detection
 from electrolog.measure.health import Circumstances, day_points_at_the_standard, unhealthy
 from electrolog.measure.uneven import pooled_growth
 from electrolog.record import queries, sheets
+from electrolog.record.names import Names
 from electrolog.record.queries import Calibration, Event
-from electrolog.record.readable import Row, rows
+from electrolog.record.readable import Row
 from electrolog.record.store import Record
 
 Figures = Mapping[int, CalibrationFigures]
@@ -55,13 +56,19 @@ def _unseen(expected_um: tuple[float, float] | None, lod_um: float | None) -> li
 def _around(
     record: Record, asked: Sequence[Calibration]
 ) -> tuple[list[Calibration], dict[str, list[Event]], dict[str, Row]]:
-    """Everything measured on the same days, with the earlier calibrations and lives of those probes."""
+    """All that was measured on the same days with the same analytes, and the calibrations and lives of those probes."""
     days = sorted({one.at.date() for one in asked}, reverse=True)[:_MOST_DAYS]
     with record.reading() as connection:
-        ids = queries.electrodes_calibrated_on(connection, days)
-        standards = {row["standard"]: row for row in rows(connection, sheets.STANDARDS)}
+        standards = queries.standards(connection, [one.row["standard"] for one in asked])
+        names = Names(connection)
+        fellows: list[Calibration] = []
+        probes: dict[int, None] = {}
+        for analyte_id in {names.row_id("analytes", one.row["analyte"]): None for one in asked}:
+            ids = queries.calibrated_on(connection, days, analyte_id)
+            fellows += queries.calibrations(connection, ids, analyte_id)
+            probes.update(dict.fromkeys(ids))
         of = (sheets.EXPOSURES, *lives.RENEWING)
-        return queries.calibrations(connection, ids), queries.events(connection, ids, of), standards
+        return fellows, queries.events(connection, list(probes), of), standards
 
 
 def _by_unit(among: Sequence[Calibration]) -> ByUnit:

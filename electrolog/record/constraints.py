@@ -23,8 +23,9 @@ from sqlalchemy.sql.elements import ColumnElement
 from electrolog.record import columns as kinds
 from electrolog.record import schema
 from electrolog.record.columns import LARGEST, number_text
+from electrolog.record.names import FOLDED
 from electrolog.record.schema import column_name
-from electrolog.record.sheets import CALIBRATIONS, ELECTRODES, POINTS, SHEETS, Sheet
+from electrolog.record.sheets import CALIBRATIONS, POINTS, SHEETS, Sheet
 
 NAMES = {
     "ix": "ix_%(table_name)s_%(column_0_N_name)s",
@@ -34,8 +35,7 @@ NAMES = {
     "pk": "pk_%(table_name)s",
 }
 _LIVE = text("struck IS NULL")
-FOLDED = (ELECTRODES, CALIBRATIONS)  # many, and looked up in any case
-LED = {CALIBRATIONS.name: {"analyte_id"}}  # links that an index for more than the link begins with
+LED = {CALIBRATIONS.name: {"analyte_id", "electrode_id"}}  # links that an index for more than the link begins with
 _UTC_SHAPE = "0000-00-00T00:00:00.000000Z".replace("0", "[0-9]")
 
 
@@ -69,10 +69,13 @@ def _guard(sheet: Sheet, table: Table) -> None:
 
 
 def _index_cohorts(table: Table) -> None:
-    """What came to one cohort since its fit, and what it measured on a day, found without reading the others'."""
-    for name, then in (("cohort", table.c.id), ("cohort_at", table.c.at)):
-        live = {"sqlite_where": _LIVE, "postgresql_where": _LIVE}
-        Index(f"ix_{table.name}_{name}", table.c.analyte_id, then, **live)
+    """What came to one cohort since its fit, what it measured on a day, and one probe's share of it, found without
+    reading the others'.
+    """
+    c = table.c
+    for name, columns in (("cohort", (c.analyte_id, c.id)), ("cohort_at", (c.analyte_id, c.at))):
+        Index(f"ix_{table.name}_{name}", *columns, sqlite_where=_LIVE, postgresql_where=_LIVE)
+    Index(f"ix_{table.name}_probe", c.electrode_id, c.analyte_id)
 
 
 def _guard_journal(table: Table) -> None:
@@ -140,7 +143,7 @@ def _index(sheet: Sheet, table: Table) -> None:
         sqlite_where=_LIVE,
         postgresql_where=_LIVE,
     )
-    if sheet in FOLDED:
+    if sheet.name in FOLDED:
         Index(f"ix_{sheet.name}_folded", func.lower(table.c[sheet.key[0]]))
     led = {column_name(sheet.by_name[name]) for name in sheet.key[:1]} | LED.get(sheet.name, set())
     for column in sheet.columns:

@@ -12,6 +12,7 @@ from electrolog.record import schema
 from electrolog.record.builtin import WORDS
 from electrolog.record.sheets import BY_NAME, TERMS, Sheet
 
+FOLDED = ("electrodes", "calibrations")  # sheets with an index by what differs in case alone
 # A hand scanner may be set to send what kind of code it read before the text (ISO/IEC 15424: ]Q and a digit is a QR
 # code), and a space or a line's end after it.
 _FROM_A_SCANNER = re.compile(r"\s*(?:\]Q\d)?(.*?)\s*", re.DOTALL)
@@ -114,6 +115,13 @@ class Names:
             found = self._connection.execute(query).scalar()
             if found is not None:
                 return int(found)
+            if (
+                sheet in FOLDED and name.isascii()
+            ):  # so many that all their names are read only for want of a better way
+                folded = select(table.c.id).where(func.lower(table.c[label]) == name.lower(), table.c.struck.is_(None))
+                found = self._connection.execute(folded).scalar()
+                if found is not None:
+                    return int(found)
         known = self.everything(sheet).get(name.casefold())
         if known is not None:
             return known[1]

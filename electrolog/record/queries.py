@@ -4,19 +4,20 @@ from __future__ import annotations
 
 import json
 from collections import defaultdict
-from collections.abc import Iterable, Mapping, Sequence
+from collections.abc import Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from datetime import UTC, date, datetime, timedelta
+from operator import attrgetter, itemgetter
 from typing import Any
 
-from sqlalchemy import Connection, Select, delete, func, insert, or_, select
+from sqlalchemy import ColumnElement, Connection, Result, Select, delete, func, insert, or_, select
 
 from electrolog.record import schema, sheets
 from electrolog.record.journal import FIRST_HASH, Writer
 from electrolog.record.readable import Row, readable, rows
 from electrolog.record.sheets import EVENTS, Sheet
 
-_MANY = 500  # engines limit how many parameters one statement takes; above this a whole table is read instead
+_MANY = 500  # engines limit how many parameters one statement takes; more are asked for a stretch at a time
 
 
 @dataclass(frozen=True)
@@ -49,6 +50,14 @@ class Calibration:
 
 def probes(connection: Connection, labels: Sequence[str] = ()) -> list[Row]:
     """Probes with their batch's columns; all of them, or those named, in the order of their labels."""
+    return _probes(connection, schema.tables["electrodes"].c.electrode, labels or None)
+
+
+def probes_by_id(connection: Connection, ids: Sequence[int]) -> list[Row]:
+    return _probes(connection, schema.tables["electrodes"].c.id, ids)
+
+
+def _probes(connection: Connection, column: ColumnElement[Any], among: Sequence[Any] | None) -> list[Row]:
     table, batch = schema.tables["electrodes"], schema.tables["batches"]
     query = (
         select(
@@ -63,11 +72,18 @@ def probes(connection: Connection, labels: Sequence[str] = ()) -> list[Row]:
         )
         .select_from(table.outerjoin(batch, table.c.batch_id == batch.c.id))
         .where(table.c.struck.is_(None))
-        .order_by(table.c.electrode)
     )
-    if labels:
-        query = query.where(table.c.electrode.in_(labels))
-    return [dict(row) for row in connection.execute(query).mappings()]
+    return sorted(_rows(connection, query, column, among), key=itemgetter("electrode"))
+
+
+def calibrated_with(connection: Connection, analyte_id: int) -> list[int]:
+    """Every probe of a cohort, retired ones too, by number, in the order of their labels."""
+    electrodes, calibrations = schema.tables["electrodes"].c, schema.tables["calibrations"].c
+    live = calibrations.analyte_id == analyte_id, calibrations.struck.is_(None)
+    measured = select(calibrations.electrode_id).where(*live).distinct().subquery()
+    query = select(electrodes.id, electrodes.electrode).where(electrodes.id == measured.c.electrode_id)
+    found = connection.execute(query.where(electrodes.struck.is_(None))).all()
+    return [row.id for row in sorted(found, key=attrgetter("electrode"))]
 
 
 def events(
@@ -77,9 +93,9 @@ def events(
     lives: dict[str, list[Event]] = defaultdict(list)
     for sheet in of:
         time = sheet.time_column or "at"
-        query = _of_electrodes(readable(sheet), sheet, electrode_ids)
-        for row in connection.execute(query).mappings():
-            lives[row["electrode"]].append(Event(row[time], sheet, dict(row)))
+        column = schema.tables[sheet.name].c.electrode_id
+        for row in _rows(connection, readable(sheet), column, electrode_ids):
+            lives[row["electrode"]].append(Event(row[time], sheet, row))
     for life in lives.values():
         life.sort(key=lambda event: (event.at, EVENTS.index(event.sheet)))
     return dict(lives)
@@ -90,69 +106,88 @@ def calibrations(
     electrode_ids: Sequence[int] | None = None,
     analyte_id: int | None = None,
     waveform_id: int | None = None,
+    *,
+    points: bool = True,
 ) -> list[Calibration]:
-    """Calibrations with points and stored figures, oldest first."""
+    """Calibrations with stored figures and, unless they aren't asked for, points; oldest first."""
     table = schema.tables["calibrations"]
-    query = _of_electrodes(readable(sheets.CALIBRATIONS), sheets.CALIBRATIONS, electrode_ids)
+    query = readable(sheets.CALIBRATIONS)
     if analyte_id is not None:
         query = query.where(table.c.analyte_id == analyte_id)
     if waveform_id is not None:
         query = query.where(table.c.waveform_id == waveform_id)
-    return _with_points(connection, query)
+    found = _rows(connection, query, table.c.electrode_id, electrode_ids)
+    whole = electrode_ids is None and analyte_id is None and waveform_id is None
+    return _filled(connection, found, whole, points)
 
 
 def calibrations_by_id(connection: Connection, ids: Sequence[int]) -> list[Calibration]:
-    return _with_points(connection, readable(sheets.CALIBRATIONS).where(schema.tables["calibrations"].c.id.in_(ids)))
-
-
-def electrodes_calibrated_on(connection: Connection, days: Iterable[date]) -> list[int]:
-    """Which probes were calibrated on any of these days (UTC), by number."""
-    table = schema.tables["calibrations"]
-    spans = [datetime(day.year, day.month, day.day, tzinfo=UTC) for day in days]
-    on = [table.c.at.between(start, start + timedelta(days=1)) for start in spans]
-    if not on:
-        return []
-    found = connection.execute(select(table.c.electrode_id).where(or_(*on), table.c.struck.is_(None)).distinct())
-    return [row.electrode_id for row in found]
+    query = readable(sheets.CALIBRATIONS)
+    return _filled(connection, _rows(connection, query, schema.tables["calibrations"].c.id, ids))
 
 
 def calibrations_on_standard(connection: Connection, standard_id: int) -> list[Calibration]:
+    on = schema.tables["calibrations"].c.standard_id == standard_id
+    return _filled(connection, _rows(connection, readable(sheets.CALIBRATIONS).where(on)))
+
+
+def calibrated_on(connection: Connection, days: Iterable[date], analyte_id: int) -> list[int]:
+    """Which probes were calibrated with the analyte on any of these days (UTC), by number."""
     table = schema.tables["calibrations"]
-    return _with_points(connection, readable(sheets.CALIBRATIONS).where(table.c.standard_id == standard_id))
+    spans = [datetime(day.year, day.month, day.day, tzinfo=UTC) for day in days]
+    # All of it stands in each part, so that each is found by the one index, which holds live rows only.
+    cohort = (table.c.analyte_id == analyte_id) & table.c.struck.is_(None)
+    on = [cohort & table.c.at.between(start, start + timedelta(days=1)) for start in spans]
+    if not on:
+        return []
+    # Made distinct here: asked to do it, SQLite walks through every calibration in the order of probes.
+    found = connection.execute(select(table.c.electrode_id).where(or_(*on))).scalars()
+    return list(dict.fromkeys(found))
 
 
-def _with_points(connection: Connection, query: Select[Any]) -> list[Calibration]:
-    table, figures = schema.tables["calibrations"], schema.calibration_figures
-    found = [dict(row) for row in connection.execute(query.order_by(table.c.at, table.c.calibration)).mappings()]
-    ids = [row["id"] for row in found]
-    points = _points(connection, ids)
-    kept = {
-        row.calibration_id: json.loads(row.figures)
-        for row in connection.execute(_among(select(figures), figures.c.calibration_id, ids))
-    }
-    return [Calibration(row, tuple(points.get(row["id"], ())), kept.get(row["id"])) for row in found]
+def standards(connection: Connection, labels: Iterable[str | None]) -> dict[str, Row]:
+    """Those named, by label."""
+    named = sorted({label for label in labels if label})
+    column = schema.tables["standards"].c.standard
+    return {row["standard"]: row for row in _rows(connection, readable(sheets.STANDARDS), column, named)}
 
 
-def _points(connection: Connection, calibration_ids: Sequence[int]) -> dict[int, list[tuple[float, float]]]:
-    table = schema.tables["calibration_points"]
-    query = select(table.c.calibration_id, table.c.concentration_um, table.c.current_na).where(table.c.struck.is_(None))
-    query = _among(query, table.c.calibration_id, calibration_ids)
-    found: dict[int, list[tuple[float, float]]] = defaultdict(list)
-    for calibration_id, concentration, current in connection.execute(
-        query.order_by(table.c.calibration_id, table.c.ordinal)
-    ):
-        found[calibration_id].append((concentration, current))
-    return found
+def _filled(connection: Connection, found: list[Row], whole: bool = False, points: bool = True) -> list[Calibration]:
+    """`whole`: they are all that there are, and so are their points and figures."""
+    table, figures = schema.tables["calibration_points"], schema.calibration_figures
+    ids = None if whole else [row["id"] for row in found]
+    known: dict[int, list[tuple[float, float]]] = defaultdict(list)
+    if points:
+        query = select(table.c.calibration_id, table.c.concentration_um, table.c.current_na)
+        query = query.where(table.c.struck.is_(None)).order_by(table.c.calibration_id, table.c.ordinal)
+        for calibration_id, concentration, current in _tuples(connection, query, table.c.calibration_id, ids):
+            known[calibration_id].append((concentration, current))
+    stored = select(figures.c.calibration_id, figures.c.figures)
+    kept = {key: json.loads(text) for key, text in _tuples(connection, stored, figures.c.calibration_id, ids)}
+    found.sort(key=itemgetter("at", "calibration"))
+    return [Calibration(row, tuple(known.get(row["id"], ())), kept.get(row["id"])) for row in found]
 
 
-def _of_electrodes(query: Any, sheet: Sheet, electrode_ids: Sequence[int] | None) -> Any:
-    if electrode_ids is None:
-        return query
-    return _among(query, schema.tables[sheet.name].c.electrode_id, electrode_ids)
+def _rows(
+    connection: Connection, query: Select[Any], column: Any = None, among: Sequence[Any] | None = None
+) -> list[Row]:
+    return [dict(row) for result in _results(connection, query, column, among) for row in result.mappings()]
 
 
-def _among(query: Any, column: Any, ids: Sequence[int]) -> Any:
-    return query.where(column.in_(ids)) if len(ids) <= _MANY else query
+def _tuples(connection: Connection, query: Select[Any], column: Any, among: Sequence[Any] | None) -> Iterator[Any]:
+    for result in _results(connection, query, column, among):
+        yield from result
+
+
+def _results(
+    connection: Connection, query: Select[Any], column: Any, among: Sequence[Any] | None
+) -> Iterator[Result[Any]]:
+    """The query, or as many as it takes to ask for those among; never a whole table for some of its rows."""
+    if among is None:
+        yield connection.execute(query)
+        return
+    for start in range(0, len(among), _MANY):
+        yield connection.execute(query.where(column.in_(among[start : start + _MANY])))
 
 
 def keep_figures(writer: Writer, figures: Mapping[int, tuple[str, Mapping[str, Any]]]) -> None:
@@ -178,67 +213,11 @@ def limits(connection: Connection) -> list[Row]:
     return rows(connection, sheets.LIMITS, order=("rule", "id"))
 
 
-@dataclass(frozen=True)
-class Seen:
-    """How much of the record a fit has seen: its calibrations, how many and the newest one's number, and the newest
-    correction's entry.
-    """
-
-    readings: int
-    newest: int
-    correction: int
-
-
-@dataclass(frozen=True)
-class KeptFit:
-    method: str
-    fingerprint: str
-    seen: Seen
-    made_at: datetime
-    fit: dict[str, Any]
-
-
-def to_be_seen(connection: Connection, analyte_id: int) -> Seen:
-    """What a fit made now would see."""
-    calibrations, journal = schema.tables["calibrations"], schema.journal
-    live = calibrations.c.analyte_id == analyte_id, calibrations.c.struck.is_(None)
-    count, newest = connection.execute(select(func.count(), func.max(calibrations.c.id)).where(*live)).one()
-    correction = select(func.max(journal.c.seq)).where(schema.CORRECTIONS)
-    return Seen(count, newest or 0, connection.execute(correction).scalar() or 0)
-
-
 def grew_from(connection: Connection, seq: int, head: str) -> bool:
     """Whether the record was once in that state, so that what was said of it then was said of this one."""
     table = schema.journal
     found = connection.execute(select(table.c.hash).where(table.c.seq == seq)).scalar()
     return head == (FIRST_HASH if seq == 0 else found)
-
-
-def kept_fit(connection: Connection, analyte_id: int) -> KeptFit | None:
-    table = schema.kept_fits
-    row = connection.execute(select(table).where(table.c.analyte_id == analyte_id)).first()
-    if row is None:
-        return None
-    seen = Seen(row.seen_readings, row.seen_newest or 0, row.seen_correction)
-    return KeptFit(row.method, row.fingerprint, seen, row.made_at, json.loads(row.fit))
-
-
-def keep_fit(
-    writer: Writer, analyte_id: int, method: str, fingerprint: str, seen: Seen, fit: Mapping[str, Any]
-) -> None:
-    table = schema.kept_fits
-    writer.connection.execute(delete(table).where(table.c.analyte_id == analyte_id))
-    row = {
-        "analyte_id": analyte_id,
-        "method": method,
-        "fingerprint": fingerprint,
-        "seen_readings": seen.readings,
-        "seen_newest": seen.newest,
-        "seen_correction": seen.correction,
-        "made_at": writer.at,
-        "fit": json.dumps(fit, allow_nan=False),
-    }
-    writer.connection.execute(insert(table), [row])
 
 
 def lives_seen(connection: Connection, moment: datetime) -> dict[str, str]:

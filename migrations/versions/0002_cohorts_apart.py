@@ -22,6 +22,8 @@ LABELLED = (("electrodes", "electrode"), ("calibrations", "calibration"))
 def upgrade() -> None:
     op.drop_index("ix_calibrations_analyte_id", "calibrations")
     op.drop_index("ix_calibrations_analyte_waveform", "calibrations")
+    op.drop_index("ix_calibrations_electrode_id", "calibrations")
+    op.create_index("ix_calibrations_probe", "calibrations", ["electrode_id", "analyte_id"])
     _index_live("ix_calibrations_cohort", ["analyte_id", "id"])
     _index_live("ix_calibrations_cohort_at", ["analyte_id", "at"])
     for table, label in LABELLED:
@@ -37,8 +39,7 @@ def _index_live(name: str, columns: list[str]) -> None:
 def _note_newest() -> None:
     connection = op.get_bind()
     last = sa.text(
-        "SELECT id FROM calibrations WHERE analyte_id = :analyte AND struck IS NULL"
-        " ORDER BY id LIMIT 1 OFFSET :before"
+        "SELECT id FROM calibrations WHERE analyte_id = :analyte AND struck IS NULL ORDER BY id LIMIT 1 OFFSET :before"
     )
     noted = sa.text("UPDATE kept_fits SET seen_newest = :newest WHERE analyte_id = :analyte")
     for analyte, readings in connection.execute(sa.text("SELECT analyte_id, seen_readings FROM kept_fits")).all():
@@ -52,5 +53,7 @@ def downgrade() -> None:
         op.drop_index(f"ix_{table}_folded", table)
     op.drop_index("ix_calibrations_cohort_at", "calibrations")
     op.drop_index("ix_calibrations_cohort", "calibrations")
+    op.drop_index("ix_calibrations_probe", "calibrations")
+    op.create_index("ix_calibrations_electrode_id", "calibrations", ["electrode_id"])
     op.create_index("ix_calibrations_analyte_waveform", "calibrations", ["analyte_id", "waveform_id"])
     op.create_index("ix_calibrations_analyte_id", "calibrations", ["analyte_id"])

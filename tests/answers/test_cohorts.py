@@ -38,7 +38,7 @@ def expose(lab: Lab, start: str, hours: float, setting: str = "in-vivo") -> None
 def gathered(lab: Lab) -> Cohort:
     with lab.record.reading() as connection:
         asked = fits.assay(connection, "DA", "triangle")
-    return fits.gathered(lab.record, asked)
+    return fits.gathered(lab.record, asked)[0]
 
 
 def steps(cohort: Cohort) -> list[tuple[str, str, float]]:

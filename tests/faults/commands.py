@@ -196,12 +196,13 @@ def forget_fit(lab: Lab) -> None:
 
 def kept_fits(lab: Lab, *_: object) -> int:
     from electrolog.fouling.kept import from_dict
-    from electrolog.record import queries
+    from electrolog.record import kept_fits
     from electrolog.record.names import Names
 
     with lab.record.reading() as connection:
-        found = queries.kept_fit(connection, Names(connection).row_id("analytes", "serotonin"))
-    return 0 if found is None or from_dict(found.fit) is None else 1
+        analyte_id = Names(connection).row_id("analytes", "serotonin")
+        found = kept_fits.kept_fit(connection, analyte_id)
+        return 0 if found is None or from_dict(kept_fits.content(connection, analyte_id)) is None else 1
 
 
 # --- whole records --------------------------------------------------------------------------------------------------

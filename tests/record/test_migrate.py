@@ -15,7 +15,7 @@ from sqlalchemy.exc import IntegrityError
 
 from electrolog.errors import RecordError
 from electrolog.lab import Lab, open_lab, set_up
-from electrolog.record import builtin, migrate, queries, schema
+from electrolog.record import builtin, kept_fits, migrate, schema
 from electrolog.record.names import Names
 from electrolog.record.store import connected, open_record
 from tests.faults import migrating
@@ -62,7 +62,7 @@ def test_a_populated_record_goes_down_and_up_again(lived_in: Lab, raw: Raw) -> N
 def test_a_fit_kept_before_fits_knew_their_newest_calibration_is_still_used(lived_in: Lab, raw: Raw) -> None:
     lived_in.cohort_fit("dopamine")
     with lived_in.record.reading() as connection:
-        seen = queries.to_be_seen(connection, Names(connection).row_id("analytes", "dopamine"))
+        seen = kept_fits.to_be_seen(connection, Names(connection).row_id("analytes", "dopamine"))
     migrate.to_revision(lived_in.record, "0001")
     assert "seen_newest" not in {column["name"] for column in inspect(lived_in.record.engine).get_columns("kept_fits")}
     migrate.to_revision(lived_in.record, schema.REVISION)
