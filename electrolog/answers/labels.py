@@ -11,6 +11,7 @@ from electrolog.record.store import Connection
 
 _NUMBERED = re.compile(r"(.*?)(\d+)", re.DOTALL)
 MOST = 10_000
+FEW = 20  # names are looked up one by one; beyond it all labels are read once
 
 
 def expanded(names: Iterable[str], known: Iterable[str] = ()) -> list[str]:
@@ -32,9 +33,11 @@ def expanded(names: Iterable[str], known: Iterable[str] = ()) -> list[str]:
 
 def known_labels(connection: Connection, names: Iterable[str], lookup: Names | None = None) -> list[str]:
     """Labels as the record spells them. Raises UnknownName for the first that it doesn't know."""
-    lookup = lookup or Names(connection)
+    lookup, names = lookup or Names(connection), list(names)
+    if len(names) > FEW:
+        lookup.everything("electrodes")
     plain = [name for name in names if lookup.find("electrodes", name) is not None]
-    rest = [name for name in names if name not in plain]
+    rest = len(plain) < len(names)
     known = lookup.everything("electrodes") if rest else {}
     chosen = plain if not rest else expanded(names, (spelling for spelling, _ in known.values()))
     for label in chosen:
