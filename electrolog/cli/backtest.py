@@ -4,7 +4,7 @@ from typing import Annotated
 
 import typer
 
-from electrolog.cli.options import Csv, Json
+from electrolog.cli.options import Csv, Json, Plain
 from electrolog.cli.recording import FigureFile
 from electrolog.cli.session import lab_of
 
@@ -14,6 +14,7 @@ def command(
     analyte: Annotated[str, typer.Option("--analyte", "-a", help="Whose cohort.")],
     cuts: Annotated[int, typer.Option("--cuts", help="How often the cohort is fitted anew on the way.")] = 4,
     figure: FigureFile = None,
+    plain: Plain = False,
     json: Json = False,
     csv: Csv = False,
 ) -> None:
@@ -32,4 +33,4 @@ def command(
         from electrolog.show.backtest_figure import draw
 
         draw(figure, found)
-    backtests.answer(found, json, csv)
+    backtests.answer(found, json, csv, plain)

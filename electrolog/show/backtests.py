@@ -11,15 +11,16 @@ from electrolog.show.tables import print_lines, print_table
 from electrolog.units import shown_number, shown_percent
 
 BAR = 30
+_COLUMNS = ("method", "CRPS", "median", "log score", "50 % hold", "80 % hold", "90 % hold", "90 % width")
 
 
-def answer(found: Backtest, json: bool, csv: bool) -> None:
+def answer(found: Backtest, json: bool, csv: bool, in_sentences: bool = False) -> None:
     if json:
         print_json(as_dict(found))
     elif csv:
         print_csv([plain(one) for one in found.forecasts])
     else:
-        _print(found)
+        _print(found, in_sentences)
 
 
 def as_dict(found: Backtest) -> dict[str, Any]:
@@ -47,16 +48,18 @@ def _method(scored: Scored) -> dict[str, Any]:
     }
 
 
-def _print(found: Backtest) -> None:
+def _print(found: Backtest, in_sentences: bool) -> None:
     print_lines(
         f"{found.analyte}: {len(found.forecasts)} calibrations, each forecast from what was known before it"
         " (scores in log units: 0.10 is about 10 %; less is better)"
     )
-    columns = ("method", "CRPS", "median", "log score", "50 % hold", "80 % hold", "90 % hold", "90 % width")
-    print_table(columns, [_row(one) for one in found.methods], columns[1:], least=("median", "50 % hold", "80 % hold"))
-    ours = found.methods[0]
+    rows, ours = [_row(one) for one in found.methods], found.methods[0]
+    if in_sentences:
+        print_lines(*[_sentence(row) for row in rows])
+    else:
+        print_table(_COLUMNS, rows, _COLUMNS[1:], least=("median", "50 % hold", "80 % hold"))
     print_lines("", f"where {ours.method}'s readings fell in its forecasts (even when they are honest)")
-    print_lines(*_bars(ours.pit_counts))
+    print_lines(*_bars(ours.pit_counts, 0 if in_sentences else BAR))
     print_lines("", *cuts_said(found), *verdicts_said(found), *[f"! {note}" for note in found.notes])
 
 
@@ -66,10 +69,16 @@ def _row(scored: Scored) -> tuple[str, ...]:
     return (scored.method, *figures, f"{scored.log_score:.2f}", *held, f"{scored.coverage[-1].mean_width:.2f}")
 
 
-def _bars(counts: tuple[int, ...]) -> list[str]:
+def _sentence(row: tuple[str, ...]) -> str:
+    """A table read aloud loses its columns."""
+    return f"{row[0]}: " + ", ".join(f"{name} {value}" for name, value in zip(_COLUMNS[1:], row[1:], strict=True))
+
+
+def _bars(counts: tuple[int, ...], longest: int) -> list[str]:
     most = max(*counts, 1)
     ends = [f"{k / PIT_CLASSES:.1f}-{(k + 1) / PIT_CLASSES:.1f}" for k in range(PIT_CLASSES)]
-    return [f"  {span} {'#' * round(BAR * n / most)} {n}" for span, n in zip(ends, counts, strict=True)]
+    bars = [f"{'#' * round(longest * count / most)} " if longest else "" for count in counts]
+    return [f"  {span} {bar}{count}" for span, bar, count in zip(ends, bars, counts, strict=True)]
 
 
 def cuts_said(found: Backtest) -> list[str]:

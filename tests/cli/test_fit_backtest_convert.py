@@ -122,6 +122,14 @@ def test_the_table_counts_fit_verdicts_once_limits_are_set(lab: Terminal) -> Non
     assert float(expected[1]) < 0.2 * fit
 
 
+def test_a_backtest_in_sentences_has_neither_bars_nor_columns(lab: Terminal) -> None:
+    out = lab.ok("backtest", *ASKED, "--cuts", "1", "--plain").out
+    assert "##" not in out
+    assert "─" not in out
+    assert re.search(r"electrolog: CRPS 0\.\d+, median 0\.\d+, log score", out)
+    assert re.search(r"  0\.9-1\.0 \d+\n", out)
+
+
 def test_no_forecast_peeks_at_what_came_later(lab: Terminal) -> None:
     """The last calibration of every probe is made ten times what it was: no other forecast may move."""
     asked = ("backtest", *ASKED, "--cuts", "1", "--csv")
