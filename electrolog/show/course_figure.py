@@ -107,12 +107,12 @@ def _top(axes: Axes, course: Course) -> None:
 
 
 def _marks(axes: Axes, marks: Sequence[Mark]) -> None:
-    """In a row at the foot; what each is stands in the legend."""
+    """In a row at the foot, the runs' ends beneath it, where a cleaning would else hide them; the legend names each."""
     for what in dict.fromkeys(mark.what for mark in marks):
         hours = [mark.exposure_h for mark in marks if mark.what == what]
         axes.plot(
             hours,
-            [0.035] * len(hours),
+            [0.016 if what == "exposure" else 0.052] * len(hours),
             _SIGNS[what],
             transform=axes.get_xaxis_transform(),
             color=QUIET,
