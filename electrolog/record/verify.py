@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+import operator
 import re
 from dataclasses import dataclass
 from typing import Any
@@ -15,6 +16,7 @@ from electrolog.record.sheets import BY_NAME, CALIBRATIONS, SHEETS
 
 Place = tuple[str, int, int]  # sheet, row number, place of a point (0 for any other row)
 Rows = dict[Place, dict[str, Any]]
+UNREADABLE = (ValueError, TypeError, AttributeError)
 
 
 @dataclass(frozen=True)
@@ -38,12 +40,8 @@ def verify(connection: Connection, anchor: str | None = None) -> Verification:
     try:
         expected, count, head = _replayed(connection, faults)
         found = _found(connection)
-    except (
-        ValueError,
-        TypeError,
-        AttributeError,
-    ) as why:  # a value of no kind that its column could ever have been given
-        return Verification(0, journal.FIRST_HASH, (*faults, f"a value can't be read ({shortened(str(why))})"))
+    except UNREADABLE:  # a value of no kind that its column could ever have been given
+        return Verification(0, journal.FIRST_HASH, (*faults, *_unreadable(connection)))
     for place in sorted(expected.keys() | found.keys()):
         faults += _compared(place, expected.get(place), found.get(place))
     since = None if anchor is None else _since(connection, anchor, faults)
@@ -56,6 +54,20 @@ def _damage(connection: Connection) -> list[str]:
         return []
     found = connection.exec_driver_sql("PRAGMA integrity_check").scalars()
     return [f"file: {shortened(said)}" for said in found if said != "ok"]
+
+
+def _unreadable(connection: Connection) -> list[str]:
+    """Which rows hold such a value: each is asked for by itself."""
+    faults = []
+    for table in (schema.journal, *(schema.tables[sheet.name] for sheet in SHEETS)):
+        key = [table.c[name] for name in ("seq", "id", "calibration_id", "ordinal") if name in table.c]
+        for values in connection.execute(select(*key)).all():
+            try:
+                connection.execute(select(table).where(*map(operator.eq, key, values))).one()
+            except UNREADABLE as why:
+                place = (table.name, values[0], values[1] if len(values) > 1 else 0)
+                faults.append(f"{_called(place, {})}: holds a value that can't be read ({shortened(str(why))})")
+    return faults
 
 
 def _since(connection: Connection, anchor: str, faults: list[str]) -> int | None:
@@ -141,6 +153,8 @@ def _compared(place: Place, expected: dict[str, Any] | None, found: dict[str, An
 def _called(place: Place, row: dict[str, Any]) -> str:
     """As `amend` takes it: `exposure 119`, `calibration 4, point 2`; with its label where the row has one."""
     name, row_id, number = place
+    if name == schema.journal.name:
+        return f"journal entry {row_id}"
     if name not in BY_NAME:
         return shortened(name)
     if number:

@@ -58,7 +58,7 @@ def another(old: Any, chance: random.Random) -> Any:
     if old is None:
         return 1
     if isinstance(old, float):
-        return old * (1 + chance.choice((-1, 1)) * 10 ** chance.uniform(-12, 0))
+        return old + 1e-9 if old == 0 else old * (1 + chance.choice((-1, 1)) * 10 ** chance.uniform(-12, 0))
     if isinstance(old, int):
         return old + chance.choice((-1, 1))
     place = chance.randrange(len(old))

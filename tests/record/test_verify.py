@@ -4,7 +4,9 @@ from __future__ import annotations
 
 import hashlib
 import json
+import sqlite3
 from collections.abc import Callable
+from contextlib import closing
 from typing import Any
 
 import pytest
@@ -133,6 +135,23 @@ def test_the_newest_entries_cut_off_change_the_head(unguarded: Lab, raw: Raw) ->
     after = unguarded.verify()
     assert (after.entries, after.head) != (before.entries, before.head)
     assert "was added behind the journal's back" in after.faults[0]
+
+
+@pytest.mark.parametrize(
+    ("statement", "named"),
+    [
+        ("UPDATE standards SET prepared_at = '2026,01-07T08:00:00.000000Z'", "standard 1: holds a value"),
+        ("UPDATE journal SET at = '2026-99-01T08:00:00.000000Z' WHERE seq = 22", "journal entry 22: holds a value"),
+    ],
+)
+def test_a_value_that_no_column_could_be_given_is_named(unguarded: Lab, statement: str, named: str) -> None:
+    if not unguarded.record.is_file:
+        pytest.skip("PostgreSQL's types hold no such value")
+    with closing(sqlite3.connect(unguarded.record.name)) as connection:
+        connection.execute("PRAGMA ignore_check_constraints = ON")
+        connection.execute(statement)
+        connection.commit()
+    assert any(named in fault for fault in faults(unguarded))
 
 
 @pytest.mark.parametrize(
