@@ -25,7 +25,7 @@ from electrolog.answers.cohorts import REFERENCE_SETTING
 from electrolog.answers.fits import Assay
 from electrolog.fouling.fit import CohortFit
 from electrolog.fouling.kept_draws import Arrays, packed, thinned, unpacked
-from electrolog.record import kept_fits, queries
+from electrolog.record import queries
 from electrolog.record.names import Names
 from electrolog.record.store import Record
 

@@ -23,7 +23,7 @@ from electrolog.judge.limits import LimitRow, Limits, effective
 from electrolog.judge.odds import NEEDS
 from electrolog.judge.question import Question
 from electrolog.judge.verdict import Verdict, judge
-from electrolog.record import queries, sheets
+from electrolog.record import queries
 from electrolog.record.queries import Event
 from electrolog.record.readable import Row
 from electrolog.record.store import Connection, Record
