@@ -77,16 +77,17 @@ def _draw(
 ) -> None:
     hours = [one.exposure_h for one in ahead]
     chart.band(hours, [one.low_na_um for one in ahead], [one.high_na_um for one in ahead])
-    chart.points(hours, [one.median_na_um for one in ahead], "·")
     if course.limit_na_um is not None:
         chart.level(course.limit_na_um)
+    chart.points(hours, [one.median_na_um for one in ahead], "·")
     for at, reading in zip(x, known(course), strict=True):
         band = interval(reading)
         if band is not None:
             chart.interval(at, *band)
     chart.points(x, [one.figures.sensitivity_na_um or 0.0 for one in known(course)], "o")
+    above = _up(course)[1] / 10  # a row higher than the end of the run that a cleaning followed
     for sign, at in marks:
-        chart.points([at], [0.0], sign)
+        chart.points([at], [0.0 if sign == _SIGNS["exposure"] else above], sign)
 
 
 def _span(values: Sequence[float]) -> tuple[float, float]:
