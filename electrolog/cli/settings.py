@@ -6,6 +6,7 @@ import typer
 
 from electrolog.cli.options import Json
 from electrolog.cli.preferences import KEYS, in_force, lab_file, own_file, read, write
+from electrolog.clock import zone_named
 from electrolog.errors import InputError, unknown
 
 
@@ -42,4 +43,6 @@ def _split(typed: str) -> tuple[str, str]:
         raise InputError(f"'{typed}' is no setting; accepted: such as rig=north, or rig= to take it out")
     if key not in KEYS:
         raise unknown("setting", key, KEYS)
+    if key == "zone":
+        zone_named(value)  # one that isn't would stop every command from now on
     return key, value

@@ -99,8 +99,9 @@ def calibrate(
     curve = _curve_if_asked_for(line)
     found = _line_figures(line) if curve is None else _curve_figures(curve)
     found |= _interval(found, shared) if curve is not None else _interval_of_line(line, found, shared)
-    if is_flat(line):
-        found |= dict.fromkeys(_SCATTER)  # points that never move don't tell how sure their slope of zero is
+    if is_flat(line) or (line.degrees_of_freedom > 0 and line.exact()):
+        found |= dict.fromkeys(_SCATTER)  # points without any scatter don't tell how sure their slope is
+        found["r_squared"] = None if is_flat(line) else line.r_squared
     suspect = suspect_point(line) if curve is None else None
     outcome = Outcome(line, curve, suspect, noise_na)
     if outcome.responds:
@@ -179,7 +180,6 @@ _SCATTER = (
     "sensitivity_high_na_um",
     "intercept_se_na",
     "residual_sd_na",
-    "r_squared",
 )
 
 

@@ -71,3 +71,10 @@ def test_quiet_entries_say_nothing_and_questions_still_answer(cli: Any) -> None:
     assert cli.ok("--quiet", "clean", "B9-01", "-m", "isopropanol", "--at", "2026-02-01T09:00Z").out == ""
     assert "isopropanol" in cli.ok("--quiet", "life", "B9-01").out
     assert "no probe is called" in cli.refused("--quiet", "clean", "nobody", "-m", "isopropanol")
+
+
+def test_a_zone_that_isnt_one_is_refused_before_it_is_kept(cli: Any) -> None:
+    assert "no time zone is called 'Mars/X'" in cli.refused("settings", "zone=Mars/X")
+    cli.ok("shelf")
+    cli.ok("settings", "zone=Europe/Lisbon")
+    cli.ok("settings", "zone=")

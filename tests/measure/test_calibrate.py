@@ -299,3 +299,18 @@ def test_how_far_it_is_linear_does_not_depend_on_the_slopes_size(scale):
     assert linear_to_um(line, share=0.08) == linear_to_um(
         fit_line(x, np.array([0.1, 6.1, 12.2, 24.0, 40.0])), share=0.08
     )
+
+
+@pytest.mark.parametrize(
+    ("current_na", "slope"), [([0, 0, 0, 0], 0.0), ([3, 3, 3, 3], 0.0), ([0.5, 12.5, 24.5, 48.5], 12.0)]
+)
+def test_points_without_any_scatter_give_no_certainty(current_na: list[float], slope: float) -> None:
+    figures = calibrate([0, 1, 2, 4], current_na)
+    assert figures.sensitivity_na_um == pytest.approx(slope, abs=1e-12)
+    unknown = ("sensitivity_se_na_um", "sensitivity_low_na_um", "sensitivity_high_na_um", "residual_sd_na")
+    assert [getattr(figures, name) for name in unknown] == [None] * 4
+    assert any("without" in text and "scatter" in text for text in figures.warnings)
+
+
+def test_replicates_of_one_concentration_that_agree_are_no_dead_probe() -> None:
+    assert not any("no response" in text for text in calibrate([1, 1], [5, 5]).warnings)
