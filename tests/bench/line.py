@@ -39,6 +39,14 @@ class Line:
     note: str = ""
 
     @property
+    def by_processor_time(self) -> float | None:
+        """The same ratio, which a busy machine disturbs less; None for a line that is no ratio."""
+        ours, peer = (taken and taken.median_processor_s for taken in (self.ours, self.peer))
+        if not ours or not peer or self.aim.unit != "×":
+            return None
+        return ours / peer if self.aim.sense == AT_MOST else peer / ours
+
+    @property
     def verdict(self) -> str:
         if self.value is None:
             return "left out"

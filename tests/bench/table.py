@@ -17,7 +17,7 @@ from tests.bench.line import Line
 from tests.bench.timing import Taken
 
 LIBRARIES = ("numpy", "scipy", "pandas", "sqlalchemy", "typer", "statsmodels", "h5py")
-HEADINGS = ("work", "against", "ours", "peer", "result", "aim", "verdict")
+HEADINGS = ("work", "against", "ours", "peer", "result", "by processor time", "aim", "verdict")
 
 
 def machine() -> dict[str, Any]:
@@ -25,6 +25,7 @@ def machine() -> dict[str, Any]:
         "system": platform.platform(),
         "processor": _processor(),
         "cores": os.cpu_count(),
+        "load": [round(load, 1) for load in os.getloadavg()] if hasattr(os, "getloadavg") else "unknown",
         "python": platform.python_version(),
         "sqlite": sqlite3.sqlite_version,
         "r": _r(),
@@ -59,7 +60,8 @@ def row_of(line: Line) -> tuple[str, ...]:
         line.against or "–",
         _seconds(line.ours),
         _seconds(line.peer),
-        "–" if line.value is None else f"{line.value:.3g}{line.aim.unit if line.aim.unit == '×' else ''}",
+        _result(line.value, line.aim.unit),
+        _result(line.by_processor_time, "×"),
         str(line.aim),
         line.verdict + (f": {line.note}" if line.note else ""),
     )
@@ -85,12 +87,19 @@ def _plain(line: Line) -> dict[str, Any]:
         "against": line.against,
         "ours_s": line.ours.seconds if line.ours else None,
         "peer_s": line.peer.seconds if line.peer else None,
+        "ours_processor_s": line.ours.processor_s if line.ours else None,
+        "peer_processor_s": line.peer.processor_s if line.peer else None,
+        "by_processor_time": line.by_processor_time,
         "value": line.value,
         "unit": line.aim.unit,
         "aim": str(line.aim),
         "verdict": line.verdict,
         "note": line.note,
     }
+
+
+def _result(value: float | None, unit: str) -> str:
+    return "–" if value is None else f"{value:.3g}{unit if unit == '×' else ''}"
 
 
 def _seconds(taken: Taken | None) -> str:

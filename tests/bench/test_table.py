@@ -30,8 +30,15 @@ def test_works_take_turns_and_the_first_round_is_not_counted() -> None:
 
 def test_a_work_that_does_not_time_itself_is_timed() -> None:
     (taken,) = by_turns({"ours": lambda: sum(range(1000))}, rounds=3).values()
-    assert len(taken.seconds) == 3
+    assert len(taken.seconds) == len(taken.processor_s) == 3
     assert min(taken.seconds) > 0
+
+
+def test_a_busy_machine_is_seen_through_by_processor_time() -> None:
+    ours, peer = Taken((9.0,), (2.0,)), Taken((1.0,), (1.0,))
+    assert ratio("work", "peer", ours, peer, 1.5).by_processor_time == 2.0
+    assert ratio("work", "peer", ours, peer, 1.5, AT_LEAST).by_processor_time == 0.5
+    assert ratio("work", "peer", Taken((9.0,), (0.0,)), peer, 1.5).by_processor_time is None
 
 
 @pytest.mark.parametrize(

@@ -18,30 +18,39 @@ ONE_THREAD = dict.fromkeys(("OMP_NUM_THREADS", "OPENBLAS_NUM_THREADS", "MKL_NUM_
 
 @dataclass(frozen=True)
 class Taken:
-    """Seconds of one work in each round."""
+    """Seconds of one work in each round: by the clock, and of processor time (its own and its processes')."""
 
     seconds: tuple[float, ...]
+    processor_s: tuple[float, ...] = ()
 
     @property
     def median_s(self) -> float:
         return median(self.seconds)
 
     @property
-    def least_s(self) -> float:
-        return min(self.seconds)
+    def median_processor_s(self) -> float | None:
+        """None where it isn't known: the system doesn't say, or the work was timed by somebody else."""
+        return median(self.processor_s) if self.processor_s and min(self.processor_s) > 0 else None
 
 
 def by_turns(works: Mapping[str, Work], rounds: int = ROUNDS, warm: int = 1) -> dict[str, Taken]:
     """Each work once a round. A work that returns a float has timed itself; the first `warm` rounds are not counted."""
-    found: dict[str, list[float]] = {name: [] for name in works}
+    found: dict[str, list[tuple[float, float]]] = {name: [] for name in works}
     for turn in range(warm + rounds):
         for name, work in works.items():
-            begun = time.perf_counter()
+            before_s, begun = _processor_s(), time.perf_counter()
             said = work()
-            seconds = said if isinstance(said, float) else time.perf_counter() - begun
+            seconds, processor_s = time.perf_counter() - begun, _processor_s() - before_s
             if turn >= warm:
-                found[name].append(seconds)
-    return {name: Taken(tuple(seconds)) for name, seconds in found.items()}
+                found[name].append((said, 0.0) if isinstance(said, float) else (seconds, processor_s))
+    return {name: Taken(*zip(*both, strict=True)) for name, both in found.items()}
+
+
+def _processor_s() -> float:
+    """Of this process and of those that have ended (Windows doesn't tell of those)."""
+    now = os.times()
+    of_children = now.children_user + now.children_system
+    return now.user + now.system + of_children if of_children or os.name != "nt" else 0.0
 
 
 def python(*arguments: str | Path, more: Mapping[str, str] | None = None, allowed: Sequence[int] = (0,)) -> Work:
