@@ -1,0 +1,67 @@
+"""Figures of many new calibrations are kept by the first who asks, and never over what was corrected meanwhile."""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+import pytest
+
+from electrolog.answers import figures
+from electrolog.answers.shelf import Filter
+from electrolog.lab import Lab, open_lab
+from electrolog.record import queries
+from electrolog.record.queries import Calibration
+
+PROBES = figures.MANY_NEW
+
+
+@pytest.fixture
+def lab(tmp_path: Path) -> Lab:
+    folder = tmp_path / "exchange"
+    folder.mkdir()
+    labels = [f"P{k}" for k in range(PROBES)]
+    known = {
+        "electrodes.csv": ["electrode", *labels],
+        "calibrations.csv": [
+            "calibration,electrode,at,stage,analyte,waveform",
+            *[f"C{label},{label},2026-01-05T09:00Z,pre,dopamine,triangle" for label in labels],
+        ],
+        "calibration_points.csv": [
+            "calibration,concentration_um,current_na",
+            *[f"C{label},{level},{10 * level}" for label in labels for level in (0, 1, 2)],
+        ],
+    }
+    for name, lines in known.items():
+        (folder / name).write_text("\n".join(lines) + "\n", encoding="utf-8")
+    made = open_lab(str(tmp_path / "lab.db"), create=True)
+    made.import_folder(folder)
+    return made
+
+
+def calibrations(lab: Lab) -> list[Calibration]:
+    with lab.record.reading() as connection:
+        return queries.calibrations(connection)
+
+
+def test_the_first_who_asks_keeps_them(lab: Lab) -> None:
+    assert not [one for one in calibrations(lab) if one.figures is not None]
+    lab.shelf(Filter())
+    assert len([one for one in calibrations(lab) if one.figures is not None]) == PROBES
+    assert lab.recompute() == []
+    assert lab.verify().whole
+
+
+def test_what_was_corrected_meanwhile_is_not_kept(lab: Lab) -> None:
+    read = calibrations(lab)
+    lab.amend("calibration", "CP0", {"noise_na": "0.1"}, "misread")
+    before = next(one.figures for one in calibrations(lab) if one.row["calibration"] == "CP0")
+    figures.all_figures(lab.record, read)
+    after = {one.row["calibration"]: one.figures for one in calibrations(lab)}
+    assert after["CP0"] == before
+    assert after["CP1"] is not None
+    assert lab.recompute() == []
+
+
+def test_a_few_are_not_worth_a_write(lab: Lab) -> None:
+    figures.all_figures(lab.record, calibrations(lab)[: PROBES - 1])
+    assert not [one for one in calibrations(lab) if one.figures is not None]
