@@ -7,6 +7,7 @@ from collections.abc import Callable, Iterator
 from contextlib import contextmanager
 from dataclasses import dataclass
 from pathlib import Path
+from tokenize import TokenError
 from typing import Any
 
 import numpy as np
@@ -18,6 +19,9 @@ from electrolog.measure.scan_sheet import ScanSheet
 Array = NDArray[np.float64]
 
 LARGEST_CSV = 4_000_000_000
+MOST_SWOLLEN = 200  # times the file's size; real noise packs ten times at best
+# What NumPy and HDF5 raise over a file that was cut or overwritten.
+BROKEN = (ValueError, EOFError, RuntimeError, MemoryError, SyntaxError, TokenError)
 SECONDS = {"time_s": 1.0, "time_ms": 1e-3, "time_min": 60.0}
 NANOAMPERES = {"current_na": 1.0, "current_pa": 1e-3, "current_ua": 1e3}
 _VOLTS = {"potential_v": 1.0, "potential_mv": 1e-3}
@@ -72,7 +76,7 @@ def said_of(path: Path) -> Iterator[None]:
         yield
     except InputError as error:
         raise InputError(f"{path.name}: {error.message}", error.hint) from None
-    except (ValueError, EOFError, UnicodeDecodeError) as why:
+    except BROKEN as why:
         raise InputError(f"{path.name}: can't be read ({shortened(str(why), 160)})", "is it whole?") from None
 
 
@@ -259,13 +263,15 @@ def datasets(path: Path) -> Iterator[dict[str, Any]]:
         if isinstance(item, h5py.Dataset) and short in {**SECONDS, **NANOAMPERES, **_VOLTS}:
             if short in found:
                 raise InputError(f"holds several datasets called {short}; accepted: one")
+            if item.nbytes > max(2**26, MOST_SWOLLEN * path.stat().st_size):
+                raise InputError(f"its {short} would unpack to {item.nbytes / 1e9:.3g} GB, more than such a file holds")
             found[short] = item
 
     try:
         with h5py.File(path, "r") as file:
             file.visititems(keep)
             yield found
-    except OSError as why:
+    except (OSError, RuntimeError) as why:
         raise InputError(f"is no HDF5 file that can be read ({shortened(str(why), 120)})") from None
 
 

@@ -129,6 +129,8 @@ def main(arguments: list[str]) -> int:
 
 
 def _refuse_undecodable(arguments: list[str]) -> None:
+    if any("\0" in argument for argument in arguments):
+        raise InputError("the command line holds a NUL; accepted: text in UTF-8")
     try:
         "".join(arguments).encode()
     except UnicodeEncodeError:

@@ -199,6 +199,27 @@ def test_a_file_that_is_no_trace_is_refused_by_name(
     assert words in cli.refused("trace", "B9-01", "pre", "DA", file, *FOUR, "-w", "triangle")
 
 
+def test_a_file_that_was_overwritten_is_refused_in_words(cli: Any, tmp_path: Path) -> None:
+    """What NumPy's header and HDF5's inner marks make of it are errors of kinds that no reader would expect."""
+    np.save(tmp_path / "a.npy", np.zeros((400, 2)))
+    header = (tmp_path / "a.npy").read_bytes()
+    (tmp_path / "a.npy").write_bytes(header.replace(b"(400, 2)", b"((((400,"))
+    with h5py.File(tmp_path / "a.h5", "w") as file:
+        file["time_s"], file["current_na"] = np.arange(400.0), np.zeros(400)
+    marks = (tmp_path / "a.h5").read_bytes()
+    (tmp_path / "a.h5").write_bytes(marks.replace(b"HEAP", b"HEAR").replace(b"SNOD", b"SNOW"))
+    for name in ("a.npy", "a.h5"):
+        assert f"{name}: " in cli.refused("trace", "B9-01", "pre", "DA", str(tmp_path / name), *FOUR, "-w", "triangle")
+
+
+def test_a_file_that_would_unpack_to_more_than_there_is_memory_is_refused(cli: Any, tmp_path: Path) -> None:
+    with h5py.File(tmp_path / "bomb.h5", "w") as file:
+        file.create_dataset("current_na", (10**12,), "f8", chunks=(10**5,), compression="gzip")
+        file["time_s"] = np.arange(5.0)
+    said = cli.refused("trace", "B9-01", "pre", "DA", str(tmp_path / "bomb.h5"), *FOUR, "-w", "triangle")
+    assert "unpack to 8e+03 GB" in said
+
+
 def test_a_missing_file_and_foreign_arrays_are_refused(cli: Any, tmp_path: Path) -> None:
     common = ("B9-01", "pre", "DA")
     assert "there is no such file" in cli.refused("trace", *common, "nowhere.csv", *FOUR)

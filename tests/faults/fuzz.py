@@ -314,4 +314,5 @@ if __name__ == "__main__":
     found = run(lambda path: live(open_lab(str(path), who="wren", create=True)), int([*sys.argv, "10000"][1]))
     print(f"{found.inputs.total()} inputs {dict(found.inputs)}, statuses {dict(sorted(found.statuses.items()))}")
     print(f"slowest {found.slowest_s:.1f} s; {len(found.faults)} faults")
-    print("\n".join(found.faults[:40]))
+    kinds = {fault.partition("]: ")[2][:100]: fault for fault in found.faults}  # one of each
+    print("\n".join(list(kinds.values())[:60]))
