@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import os
 import shutil
 from collections.abc import Callable
 from pathlib import Path
@@ -103,6 +104,28 @@ def test_a_copy_takes_its_place_whole_or_not_at_all(source: Path) -> None:
         copy.write_bytes(b"new")
     assert target.read_bytes() == b"new"
     assert sorted(path.name for path in source.parent.iterdir()) == ["source.h5", "target.h5"]
+
+
+def test_a_disk_without_room_is_noticed_before_anything_is_written(source: Path) -> None:
+    target = source.with_name("target.h5")
+    with (
+        pytest.raises(ElectrologError, match="the copy needs 1e"),
+        working_copy(source, target, False, more_bytes=10**18),
+    ):
+        pass
+    assert sorted(path.name for path in source.parent.iterdir()) == ["source.h5"]
+
+
+def test_what_a_killed_process_left_is_swept_a_day_later(source: Path) -> None:
+    target = source.with_name("target.h5")
+    names = (".target-old.part", ".target-new.part", ".another-old.part")
+    for name in names:
+        source.with_name(name).write_bytes(b"half a copy")
+        if "old" in name:
+            os.utime(source.with_name(name), (0, 0))
+    with working_copy(source, target, False):
+        pass
+    assert sorted(path.name for path in source.parent.iterdir() if path.name in names) == sorted(names[1:])
 
 
 def test_a_source_that_changes_meanwhile_is_noticed(source: Path) -> None:

@@ -408,6 +408,21 @@ def test_the_copy_is_the_same_run_and_names_its_probe(judged: Any, recording: Pa
     assert "--probe says R2, the papers in the file are of R1" in said[0]
 
 
+@pytest.mark.parametrize("seed", range(6))
+def test_damaged_bytes_are_a_refusal_or_borne_and_never_spread(judged: Any, recording: Path, seed: int) -> None:
+    rng = np.random.default_rng(seed)
+    content = bytearray(recording.read_bytes())
+    for place in rng.integers(0, len(content), 30).tolist():
+        content[place] = int(rng.integers(0, 256))
+    recording.write_bytes(content)
+    answer = judged("enclose", "rec-R1.nwb", *ASKED)
+    assert "an error in electrolog itself" not in answer.err
+    assert answer.status in (0, 1, 2)
+    assert recording.read_bytes() == content
+    if answer.status:
+        assert [path.name for path in recording.parent.iterdir() if "record.db" not in path.name] == ["rec-R1.nwb"]
+
+
 def test_a_kill_at_any_moment_leaves_the_recording_whole(judged: Any, recording: Path) -> None:
     before = sha256(recording)
     command = [sys.executable, "-m", "electrolog", "--db", judged.db, "enclose", "rec-R1.nwb", *ASKED, "--convert"]

@@ -2,7 +2,9 @@
 
 from __future__ import annotations
 
+import os
 import shutil
+import sys
 from datetime import UTC, datetime, timedelta
 from pathlib import Path
 from typing import Any
@@ -109,6 +111,24 @@ def test_where_the_probe_was_is_asked_and_never_guessed(cli: Any, folder: Path) 
     assert "accepted: in-vivo, slice" in out
     assert "where was the probe" in cli.refused("runs", "rig", "--commit")
     assert "no setting is called 'in-vitro'" in cli.refused("runs", "rig", "--setting", "in-vitro")
+
+
+def test_a_person_is_asked_where_the_probe_was(cli: Any, folder: Path) -> None:
+    pty = pytest.importorskip("pty", reason="a terminal of its own needs a POSIX system")
+    command = [sys.executable, "-m", "electrolog", "--db", cli.db, "runs", "rig", "--commit"]
+    said = b""
+
+    def read(descriptor: int) -> bytes:
+        nonlocal said
+        piece = os.read(descriptor, 4096)
+        said += piece
+        if piece.rstrip().endswith(b"setting:"):
+            os.write(descriptor, b"slice\n")
+        return piece
+
+    assert pty.spawn(command, read, lambda _: b"") == 0
+    assert b"where was the probe in 2 recordings?" in said
+    assert {row["setting"] for row in exposures(cli)} == {"slice"}
 
 
 # --- which probe ------------------------------------------------------------------------------------------

@@ -82,7 +82,7 @@ def _unreadable(path: Path, why: Exception) -> InputError:
         return InputError(f"{path.name}: is cut short ({path.stat().st_size} bytes)", "copy it from the rig once more")
     if "signature not found" in said:
         return InputError(f"{path.name}: is no HDF5 file, whatever its name says; accepted: NWB in HDF5")
-    if "lock" in said:
+    if "unable to lock file" in said:
         return InputError(f"{path.name}: another program has it open", "wait until it is closed there")
     if "Missing NWB version" in said:
         return InputError(f"{path.name}: is HDF5, but nothing in it is NWB; accepted: NWB in HDF5")

@@ -3,6 +3,8 @@
 from __future__ import annotations
 
 import re
+from collections.abc import Iterator
+from contextlib import contextmanager
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
@@ -16,7 +18,7 @@ from electrolog.answers.recordings.papers import Papers
 from electrolog.answers.recordings.proof import FORMAT, refuse_unequal
 from electrolog.answers.recordings.tables import Column, Table
 from electrolog.answers.recordings.working_copy import working_copy
-from electrolog.errors import InputError
+from electrolog.errors import ElectrologError, InputError, shortened
 
 Floats = NDArray[np.float64]
 DEVICE = "microelectrode_"
@@ -62,7 +64,8 @@ def write(source: Path, target: Path, papers: Papers, series: Series | None, rep
     module, device = place_of(papers.label)
     if target.parent.resolve() != source.parent.resolve():
         _refuse_left_behind(source)
-    with working_copy(source, target, replace) as copy:
+    more_bytes = 0 if series is None else 3 * series.concentration.nbytes
+    with working_copy(source, target, replace, more_bytes) as copy, _whole(source):
         _take_out(copy, module, device)
         with opened(copy, "a") as one:
             _put_in(one.file, papers, series)
@@ -72,6 +75,22 @@ def write(source: Path, target: Path, papers: Papers, series: Series | None, rep
             if not holds(one.file, papers.label):
                 raise InputError(f"{target.name}: what was put in can't be read back; nothing was changed")
         return _of_versions(_version(source), _version(copy))
+
+
+@contextmanager
+def _whole(source: Path) -> Iterator[None]:
+    """Damaged bytes end in any error at all, from deep inside the libraries; a full disk says itself what it is."""
+    try:
+        yield
+    except ElectrologError:
+        raise
+    except Exception as why:
+        if isinstance(why, OSError) and why.errno:
+            raise
+        said = f"{type(why).__name__}: {shortened(str(why), 120)}"
+        raise InputError(
+            f"{source.name}: can't be read to its end ({said}); nothing was put in", "is it whole?"
+        ) from None
 
 
 def _version(path: Path) -> str:

@@ -6,26 +6,31 @@ import os
 import shutil
 import stat
 import tempfile
+import time
 from collections.abc import Iterator
 from contextlib import contextmanager
 from pathlib import Path
 
 from electrolog.errors import ElectrologError, InputError
 
-SPARE_BYTES = 20_000_000  # beside the copy, for what is added
-SPARE_FACTOR = 3  # a converted series of doubles beside one of floats, with the band's two ends
+PART = ".part"
+LEFT_BEHIND_S = 86_400.0
+SPARE_BYTES = 20_000_000  # beside the copy, for tables and what the format says of itself
 
 
 @contextmanager
-def working_copy(source: Path, target: Path, replace: bool) -> Iterator[Path]:
+def working_copy(source: Path, target: Path, replace: bool, more_bytes: int = 0) -> Iterator[Path]:
     """Yields a copy of `source` beside `target`; on leaving without an error it becomes `target`.
+
+    `more_bytes`: what large things are to be added.
 
     Raises InputError where `target` is there and isn't to be replaced, or `source` has changed meanwhile, and
     ElectrologError where the disk is too full. Whatever happens, `source` and `target` are whole.
     """
+    _sweep(target)
     before = _stamp(source)
-    _refuse_full_disk(source, target.parent)
-    handle, name = tempfile.mkstemp(prefix=f".{target.stem[:40]}-", suffix=".part", dir=target.parent)
+    _refuse_full_disk(source.stat().st_size + more_bytes + SPARE_BYTES, target.parent)
+    handle, name = tempfile.mkstemp(prefix=_prefix(target), suffix=PART, dir=target.parent)
     os.close(handle)
     copy = Path(name)
     try:
@@ -42,6 +47,17 @@ def working_copy(source: Path, target: Path, replace: bool) -> Iterator[Path]:
         copy.unlink(missing_ok=True)
 
 
+def _prefix(target: Path) -> str:
+    return f".{target.stem[:40]}-"
+
+
+def _sweep(target: Path) -> None:
+    """Copies of this file that a killed process has left; younger ones may be another's under way."""
+    for path in target.parent.glob(f".*{PART}"):
+        if path.name.startswith(_prefix(target)) and time.time() - path.stat().st_mtime > LEFT_BEHIND_S:
+            path.unlink(missing_ok=True)
+
+
 def refuse_read_only(path: Path) -> None:
     """A file that somebody has protected isn't replaced by one that isn't."""
     if not (os.access(path, os.W_OK) and path.stat().st_mode & stat.S_IWUSR):
@@ -53,11 +69,11 @@ def _stamp(path: Path) -> tuple[int, int]:
     return found.st_size, found.st_mtime_ns
 
 
-def _refuse_full_disk(source: Path, folder: Path) -> None:
-    needed, free = source.stat().st_size * SPARE_FACTOR + SPARE_BYTES, shutil.disk_usage(folder).free
+def _refuse_full_disk(needed: int, folder: Path) -> None:
+    free = shutil.disk_usage(folder).free
     if free < needed:
         raise ElectrologError(
-            f"{folder}: {free / 1e9:.2g} GB are free; {needed / 1e9:.2g} GB may be needed for the copy",
+            f"{folder}: {free / 1e9:.3g} GB are free; the copy needs {needed / 1e9:.3g} GB",
             "make room, or name another place with --out",
         )
 
