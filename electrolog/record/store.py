@@ -184,15 +184,9 @@ def _engine(url: URL) -> Engine:
             )
         event.listen(engine, "connect", _prepare_sqlite)
         event.listen(engine, "begin", _begin_sqlite)
-    else:
-        _hush(logging.getLogger("psycopg"))
-    return engine
-
-
-def _hush(driver: logging.Logger) -> None:
-    """Of a refused batch it would write more on standard error, beside the refusal in our own words."""
-    if not driver.handlers:
+    elif not (driver := logging.getLogger("psycopg")).handlers:  # of a refused batch it would say more than we do
         driver.addHandler(logging.NullHandler())
+    return engine
 
 
 def _prepare_sqlite(connection: Any, _: object) -> None:
@@ -207,15 +201,20 @@ def _prepare_sqlite(connection: Any, _: object) -> None:
 
 def _begin_sqlite(connection: Connection) -> None:
     # A writer takes its lock at once: one that read first and then wrote could be refused in the middle.
-    writes = connection.get_execution_options().get("electrolog_writes")
-    if not writes:
+    if not connection.get_execution_options().get("electrolog_writes"):
         connection.exec_driver_sql("BEGIN")
         return
     # SQLite's own waiting looks ever more rarely, so that of many who wait the latest comer wins and some never do.
-    until = time.monotonic() + BUSY_TIMEOUT_MS / 1000
+    # Where others get on, a turn will come; it is given up only when for so long nobody has written anything.
     connection.exec_driver_sql("PRAGMA busy_timeout = 0")
+    until, version = 0.0, None
     try:
-        while not _began_writing(connection, until):
+        while True:
+            found = connection.exec_driver_sql("PRAGMA data_version").scalar()
+            if found != version:
+                until, version = time.monotonic() + BUSY_TIMEOUT_MS / 1000, found
+            if _began_writing(connection, until):
+                return
             time.sleep(random.uniform(*BETWEEN_LOOKS_S))  # noqa: S311 -- no secret
     finally:
         connection.exec_driver_sql(f"PRAGMA busy_timeout = {BUSY_TIMEOUT_MS}")

@@ -6,6 +6,8 @@ import os
 import sqlite3
 import subprocess
 import sys
+import threading
+import time
 from contextlib import closing
 from pathlib import Path
 
@@ -155,6 +157,31 @@ def test_a_record_in_use_is_waited_for_and_then_said_to_be(where: str, monkeypat
         held.exec_driver_sql("ROLLBACK" if file else "SELECT pg_advisory_unlock_all()")
     other.dispose()
     assert lab.make_probes(["P1"]) == ["P1"]
+
+
+def test_whoever_waits_among_many_who_write_gets_a_turn(
+    empty_file: Path, tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """Longer than anybody would wait for one who is stuck: as long as the others get on."""
+    path = tmp_path / "busy.db"
+    path.write_bytes(empty_file.read_bytes())
+    lab, started = open_lab(str(path)), threading.Event()
+
+    def keep_busy() -> None:
+        with closing(sqlite3.connect(path, isolation_level=None)) as others:
+            for _ in range(10):
+                others.execute("BEGIN IMMEDIATE")
+                others.execute("UPDATE waveforms SET id = id")
+                started.set()
+                time.sleep(0.2)
+                others.execute("COMMIT")
+
+    busy = threading.Thread(target=keep_busy)
+    busy.start()
+    started.wait()
+    monkeypatch.setattr(store, "BUSY_TIMEOUT_MS", 600)
+    assert lab.make_probes(["P1"]) == ["P1"]
+    busy.join()
 
 
 def test_nothing_of_an_entry_that_fails_stays(lived_in: Lab) -> None:
