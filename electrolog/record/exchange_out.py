@@ -63,7 +63,7 @@ def _rows(connection: Connection, sheet: Sheet, labels: Labels) -> list[Any]:
     if sheet is sheets.POINTS:
         query = select(*columns).where(table.c.struck.is_(None)).order_by(table.c.calibration_id, table.c.ordinal)
         names = labels["calibrations"]  # of live ones: the points of a struck calibration go with it
-        rows = [row for row in connection.execute(query) if row[0] in names]
+        rows = [row for row in connection.execute(query).all() if row[0] in names]
         rows.sort(key=lambda row: names[row[0]])  # a stable sort keeps the order of the points
         return rows
     found: Sequence[Any] = connection.execute(select(table.c.id, *columns).where(table.c.struck.is_(None))).all()
@@ -102,7 +102,8 @@ def _cells(column: Column, values: Sequence[Any], labels: Labels) -> list[str]:
         names = labels[column.to]
         return ["" if value is None else names[value] for value in values]
     if isinstance(column, kinds.Number):
-        return ["" if value is None else number_text(value) for value in values]
+        written = {value: "" if value is None else number_text(value) for value in set(values)}  # levels repeat
+        return [written[value] for value in values]
     if isinstance(column, kinds.Moment | kinds.Day):
         return [column.write(value) for value in values]
     return ["" if value is None else value for value in values]
