@@ -157,7 +157,7 @@ OF_NOBODY = (
     "ALTER ROLE session_user SUPERUSER",
     "ALTER SYSTEM SET fsync = off",
     "COPY journal TO PROGRAM 'cat'",
-    "COPY journal TO '/tmp/journal.csv'",
+    "COPY journal TO '/journal.csv'",
     "SELECT pg_read_file('PG_VERSION')",
     "SELECT lo_import('/etc/hostname')",
     "SELECT rolpassword FROM pg_authid",
