@@ -40,8 +40,8 @@ def command(
     with working("reading the book"):
         found = lab.adopt(book, mapping_file=mapping, answers=answers)
     usual = in_force(ctx.obj.db)
-    while (asked := _next_question(found, answers)) and sys.stdin.isatty() and sys.stderr.isatty():
-        answers[asked.key] = _answer(asked, usual.get(asked.key))
+    while (asked := _open_questions(found, answers)) and sys.stdin.isatty() and sys.stderr.isatty():
+        answers |= {one.key: _answer(one, usual.get(one.key)) for one in asked}
         with working("reading the book again"):
             found = lab.adopt(book, mapping_file=mapping, answers=answers)
     if commit:
@@ -52,16 +52,22 @@ def command(
     adoption.answer(found, json)
 
 
-def _next_question(found: Adoption, answers: dict[str, str]) -> Question | None:
-    return next((one for one in found.questions if one.key not in answers), None)
+def _open_questions(found: Adoption, answers: dict[str, str]) -> list[Question]:
+    return [one for one in found.questions if one.key not in answers]
 
 
 def _answer(asked: Question, usual: str | None) -> str:
-    """`usual`: what the settings say, in brackets: Enter takes it."""
+    """`usual`: what the settings say, in brackets: Enter takes it. Asked again for what wouldn't be accepted."""
     typer.echo(f"{safe(asked.text)}  ({safe(asked.why)})", err=True)
     typer.echo(f"  accepted: {safe(', '.join(asked.accepted))}", err=True)
-    said: str = typer.prompt(asked.key, default=usual, err=True)
-    return said
+    spelled = {one.casefold(): one for one in asked.accepted}
+    while True:
+        said: str = typer.prompt(asked.key, default=usual, err=True)
+        if asked.key == "analyte" or not spelled:  # which goes by an abbreviation too
+            return said
+        if said.strip().casefold() in spelled:
+            return spelled[said.strip().casefold()]
+        typer.echo("  that is none of these", err=True)
 
 
 def _split(typed: str) -> tuple[str, str]:

@@ -49,7 +49,7 @@ def test_what_was_adopted_answers_like_what_was_typed(empty: Any, book: str) -> 
 
 def test_a_person_is_asked_and_the_answers_are_kept(empty: Any, book: str, tmp_path: Path) -> None:
     pty = pytest.importorskip("pty", reason="a terminal of its own needs a POSIX system")
-    answers = iter([b"DA\n", b"\n"])
+    answers = iter([b"DA\n", b"square\n", b"\n"])
     (tmp_path / "record.toml").write_text('waveform = "triangle"\n', encoding="utf-8")  # the lab's settings
     command = [sys.executable, "-m", "electrolog", "--db", empty.db, "adopt", book]
     said = b""
@@ -65,6 +65,7 @@ def test_a_person_is_asked_and_the_answers_are_kept(empty: Any, book: str, tmp_p
     status = pty.spawn(command, read, lambda _: b"")
     assert status == 0
     assert b"What was measured?" in said
+    assert b"that is none of these" in said
     kept = Path("old.adopt.toml").read_text(encoding="utf-8")
     assert 'analyte = "DA"' in kept
     assert 'waveform = "triangle"' in kept
