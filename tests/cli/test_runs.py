@@ -319,6 +319,15 @@ def test_the_same_run_twice_is_taken_once_and_two_at_a_time_not_at_all(cli: Any,
     assert len(exposures(cli)) == 1
 
 
+def test_a_run_on_record_stays_there_whatever_else_comes(cli: Any, folder: Path) -> None:
+    cli.ok("runs", "rig", *HERE, "--commit")
+    write_nwb(folder / "B9-01_R4.nwb", began=BEGAN + timedelta(days=1, hours=1))
+    told = cli.ok("runs", "rig", *HERE, "--commit", "--json")
+    assert states(told) == dict.fromkeys(("B9-01_R1.nwb", "B9-01_R2.nwb"), "there already") | {
+        "B9-01_R4.nwb": "refused"
+    }
+
+
 def test_what_is_doubtful_is_logged_only_when_somebody_says_yes(cli: Any, tmp_path: Path) -> None:
     write_nwb(tmp_path / "rig" / "B07-02 run.nwb")  # broken on 21 January
     write_nwb(tmp_path / "rig" / "B9-01 run.nwb", began=datetime(2025, 12, 1, tzinfo=UTC))

@@ -116,6 +116,7 @@ def _compare_two(first: Candidate, second: Candidate) -> None:
     apart_s = abs((second.start - first.start).total_seconds()), abs((second.end - first.end).total_seconds())
     if max(apart_s) < SAME_S:
         second.repeats = first.file
-    elif second.start < first.end and not (first.there and second.there) and not (first.repeats or second.repeats):
-        first.refusals.append(f"overlaps with {second.file}: a probe can't be in two places at once")
-        second.refusals.append(f"overlaps with {first.file}: a probe can't be in two places at once")
+    elif second.start < first.end and not (first.repeats or second.repeats):
+        for one, other in ((first, second), (second, first)):
+            if not one.there:  # what is on record stays there, whatever else comes
+                one.refusals.append(f"overlaps with {other.file}: a probe can't be in two places at once")
