@@ -96,13 +96,9 @@ def draw_strands(
         mixture, grids = weigh_pairs(view, pairs, grids)
         first = (points[units][:, None] + np.arange(k) * each).ravel()
         found = sample(mixture, grids, cavity.of_level(), first, each)
-        for kept, drawn in (
-            (latents, found.latents),
-            (level, found.level),
-            (damage, found.damage),
-            (since, found.damaged_from),
-        ):
-            kept[units] = drawn.reshape(len(units), k, *drawn.shape[1:])
+        drawn = (found.latents, found.level, found.damage, found.damaged_from)
+        for kept, one in zip((latents, level, damage, since), drawn, strict=True):
+            kept[units] = one.reshape(len(units), k, *one.shape[1:])
         by_unit = (len(units), k, size)
         chance = np.einsum("bkn,k->bn", mixture.slipped.reshape(by_unit), share)
         slipped[batch.reading[batch.real]] += chance[batch.real]
