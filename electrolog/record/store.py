@@ -93,7 +93,7 @@ class Record:
         with translated(self.name), engine.begin() as connection:
             if not self.is_file:
                 # A lock of the table would need the right to change it, which nobody has who only adds to it.
-                connection.execute(text(f"SET LOCAL lock_timeout = {BUSY_TIMEOUT_MS}"))
+                connection.execute(text(f"SET LOCAL lock_timeout = {10 * BUSY_TIMEOUT_MS}"))  # of many, each in turn
                 connection.execute(text(f"SELECT pg_advisory_xact_lock({WRITING})"))
             yield connection
 

@@ -120,6 +120,20 @@ def test_a_locked_open_document_is_told(tmp_path: Path) -> None:
     assert "locked by a password" in refusal(path)
 
 
+@pytest.mark.parametrize("cut", [b"shortened in front", b"packed wrongly"])
+def test_an_archive_that_was_overwritten_is_told(tmp_path: Path, cut: bytes) -> None:
+    path = tmp_path / "a.xlsx"
+    with zipfile.ZipFile(path, "w", zipfile.ZIP_DEFLATED) as archive:
+        archive.writestr("xl/workbook.xml", bytes(range(256)) * 20)
+    whole = path.read_bytes()
+    if cut == b"shortened in front":  # the table at the end then points before the beginning
+        path.write_bytes(whole[:8] + whole[20:])
+    else:
+        start = 30 + len("xl/workbook.xml")
+        path.write_bytes(whole[:start] + b"\xff" * 40 + whole[start + 40 :])
+    assert "a.xlsx" in refusal(path)
+
+
 @pytest.mark.parametrize(
     ("name", "content", "said"),
     [

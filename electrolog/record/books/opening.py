@@ -7,6 +7,7 @@ import hashlib
 import io
 import re
 import zipfile
+import zlib
 from collections.abc import Iterator
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
@@ -24,6 +25,8 @@ MOST_UNPACKED = 512 * 2**20
 MOST_CELLS = 8_000_000  # a sheet is held as a full rectangle: one cell in the far corner would fill all memory
 MOST_MARKED = 16 * 2**20  # unpacked; above it colours and comments would take longer to read than all the rest
 ACCEPTED = "accepted: .xlsx, .xls, .ods or .csv"
+# What the library raises over an archive that was cut or overwritten.
+BROKEN = (zipfile.BadZipFile, zlib.error, OSError, RuntimeError, NotImplementedError, EOFError, ValueError)
 _ZIP, _COMPOUND = b"PK\x03\x04", b"\xd0\xcf\x11\xe0\xa1\xb1\x1a\xe1"
 _CELL = re.compile(rb'<(?:\w+:)?c\b[^>]*?\br="([A-Z]{1,3})(\d{1,7})"')
 _REPEATED = re.compile(rb'number-(rows|columns)-repeated="(\d+)"[^>]*?(/?)>')
@@ -113,7 +116,7 @@ def _kind_of_archive(path: Path, content: bytes) -> str:
 def _opened(path: Path, content: bytes) -> zipfile.ZipFile:
     try:
         return zipfile.ZipFile(io.BytesIO(content))
-    except zipfile.BadZipFile:
+    except BROKEN:
         raise InputError(f"{path.name}: is damaged; accepted: a whole file", "save it anew") from None
 
 
@@ -145,7 +148,7 @@ def _streamed(path: Path, archive: zipfile.ZipFile, info: zipfile.ZipInfo, room:
                     )
                 corner.look(tail + chunk)
                 tail = chunk[-200:]
-    except (zipfile.BadZipFile, OSError, RuntimeError, NotImplementedError, EOFError) as why:
+    except BROKEN as why:
         raise InputError(f"{path.name}: its part {shortened(info.filename, 60)} can't be unpacked ({why})") from None
     return size
 
