@@ -24,12 +24,20 @@ MOST_FEW = 60
 
 
 @dataclass(frozen=True)
-class Assembly:
-    """Where each entry of the stand-ins' precisions goes: entry `source` of all of them laid end to end adds to
-    slot `slot`."""
+class BatchAssembly:
+    """Entry `source` of one batch's precisions, laid end to end, adds to its `slot`, which is slot `place` of all."""
 
-    source: Integers
-    slot: Integers
+    source: NDArray[np.int32]
+    slot: NDArray[np.int32]
+    place: Integers
+
+
+@dataclass(frozen=True)
+class Assembly:
+    """Where each entry of the stand-ins' precisions goes: batch by batch, or all entries at once would fill the
+    memory."""
+
+    batches: tuple[BatchAssembly, ...]
     row: Integers  # per slot
     column: Integers  # per slot
 
@@ -43,24 +51,29 @@ class Solved:
 
 def plan_assembly(columns: list[Integers], n_effects: int) -> Assembly:
     """columns: (B, R, e) of every batch."""
-    sources, keys, before = [], [], 0
+    sources, slots, keys = [], [], [np.zeros(0, dtype=np.int64)]
     for at in columns:
         b, r, _ = at.shape
-        entry = before + np.arange(b * r * r).reshape(b, r, r, 1, 1)
+        entry = np.arange(b * r * r, dtype=np.int32).reshape(b, r, r, 1, 1)
         row, column = at[:, :, None, :, None], at[:, None, :, None, :]
         real = (row < n_effects) & (column < n_effects)
+        key, slot = np.unique((row * n_effects + column)[real], return_inverse=True)
         sources.append(np.broadcast_to(entry, real.shape)[real])
-        keys.append((row * n_effects + column)[real])
-        before += b * r * r
-    none = np.zeros(0, dtype=np.int64)
-    kinds, slot = np.unique(np.concatenate([none, *keys]), return_inverse=True)
-    return Assembly(np.concatenate([none, *sources]), slot, kinds // n_effects, kinds % n_effects)
+        slots.append(slot.astype(np.int32))
+        keys.append(key)
+    kinds, place = np.unique(np.concatenate(keys), return_inverse=True)
+    places = np.split(place, np.cumsum([len(key) for key in keys[1:]])[:-1]) if columns else []
+    batches = tuple(BatchAssembly(*each) for each in zip(sources, slots, places, strict=True))
+    return Assembly(batches, kinds // n_effects, kinds % n_effects)
 
 
 def assemble(plan: Assembly, precisions: list[Floats]) -> Floats:
     """Value of every slot."""
-    flat = np.concatenate([np.zeros(0), *(p.ravel() for p in precisions)])
-    return np.bincount(plan.slot, weights=flat[plan.source], minlength=len(plan.row)).astype(np.float64)
+    values = np.zeros(len(plan.row))
+    for batch, precision in zip(plan.batches, precisions, strict=True):
+        entries = precision.ravel()[batch.source]
+        values[batch.place] += np.bincount(batch.slot, weights=entries, minlength=len(batch.place))
+    return values
 
 
 def solve(effects: Effects, plan: Assembly, values: Floats, prior: Floats, pull: Floats) -> Solved:

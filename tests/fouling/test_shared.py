@@ -23,7 +23,7 @@ def test_mean_and_log_determinant_are_those_of_the_whole_matrix() -> None:
     coupled[0, 1:] = coupled[1:, 0] = 0.05
     coupled[0, 0] = 20.0
     row, column = np.nonzero(coupled)
-    plan = Assembly(np.zeros(0, dtype=np.int64), np.zeros(0, dtype=np.int64), row, column)
+    plan = Assembly((), row, column)
     names = (("level",), *(("day", str(day)) for day in range(DAYS)))
     effects = Effects(names, np.zeros(n), np.full(n, np.inf), np.full(n, -2))
     prior, pull = np.concatenate([[1.0], rng.uniform(2, 4, DAYS)]), rng.normal(size=n)
