@@ -81,7 +81,9 @@ def _asked_too_much(verdict: Verdict, limits: Limits) -> tuple[str, ...]:
 def rules_of_the_lab(record: Record, asked: Asked, demands: Demands) -> tuple[Limits, dict[str, Row]]:
     """The limits in force, and the standards by label that the probes were calibrated with."""
     with record.reading() as connection:
-        limits = limits_in_force(queries.limits(connection), asked, demands)
+        # A project is known by any of its limits, so that those of other analytes are read too where one is named.
+        stored = queries.limits(connection, None if demands.project else asked.assay.analyte_id)
+        limits = limits_in_force(stored, asked, demands)
         return limits, standards_of(connection, asked)
 
 

@@ -209,8 +209,11 @@ def newest_id(connection: Connection, sheet: Sheet) -> int:
     return connection.execute(select(func.max(schema.tables[sheet.name].c.id))).scalar() or 0
 
 
-def limits(connection: Connection) -> list[Row]:
-    return rows(connection, sheets.LIMITS, order=("rule", "id"))
+def limits(connection: Connection, analyte_id: int | None = None) -> list[Row]:
+    """All of them, or those that may hold for the analyte."""
+    own = schema.tables[sheets.LIMITS.name].c.analyte_id
+    where = () if analyte_id is None else (or_(own.is_(None), own == analyte_id),)
+    return rows(connection, sheets.LIMITS, *where, order=("rule", "id"))
 
 
 def grew_from(connection: Connection, seq: int, head: str) -> bool:
