@@ -94,8 +94,9 @@ def start(problem: Problem, theta: Floats) -> State:
     sites = [Site(np.zeros((b, r, r)), np.zeros((b, r))) for b, r in rows]
     n_days = int(problem.effects.is_day.sum())
     precision = np.full(n_days, 1.0 / float(read_scales(problem.layout, theta).day_sd) ** 2)
-    empty = np.zeros(len(problem.effects.names) + 1)
-    return State(sites, Site(precision, np.zeros(n_days)), None, empty, np.zeros((len(empty), len(empty))))
+    mean = np.zeros(len(problem.effects.names) + 1)
+    # The covariance comes with the first combination: beforehand as a whole matrix, it would not fit into memory.
+    return State(sites, Site(precision, np.zeros(n_days)), None, mean, np.zeros((0, 0)))
 
 
 def settle(problem: Problem, theta: Floats, state: State, sweeps: int = 8, tolerance: float = 0.01) -> Outcome:

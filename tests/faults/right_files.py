@@ -31,8 +31,7 @@ CALIBRATING = ["B1-02", "pre", "DA"]
 ANSWERS = ["--answer", "waveform=triangle", "--answer", "analyte=DA", "--answer", "date_order=dmy", "--commit"]
 BOOK = 'probe,date,stage,nA/uM,note\nK1,2024-03-04,pre,12,ok\nK2,05/03/2024,post,"9,5",tip bent\n'
 PLAN = (
-    "label,start,duration,analyte,waveform,setting,needs,project\n"
-    "Mon,2035-02-02T09:00Z,2h,DA,triangle,in-vivo,50nM,\n"
+    "label,start,duration,analyte,waveform,setting,needs,project\nMon,2035-02-02T09:00Z,2h,DA,triangle,in-vivo,50nM,\n"
 )
 MAPPING = """[answers]
 waveform = "triangle"
