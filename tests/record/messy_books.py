@@ -256,6 +256,54 @@ def days_across(path: Path) -> None:
     path.write_text("\n".join(rows), encoding="utf-8")
 
 
+def headings_in_two_rows(path: Path) -> None:
+    heads = [
+        ["Probe", "Calibration", None, None, "Who", "In brain", None, "Remarks"],
+        ["#", "when", "factor (µM/nA)", "LOD (nM)", "operator", "from", "hrs", None],
+    ]
+    rows = [
+        ["N-1", "3/4/24", "0,08", "21", "wren", None, None, "ok"],
+        ["SD-2", "14/4/24", "~0,1", "<20", "finch", None, None, None],
+        *heads,
+        ["n 3", date(2024, 5, 2), 0.125, 25, "finch", None, None, None],
+        ["Mean", None, 0.1, None, None, None, None, None],
+        ["n", 3, None, None, None, None, None, None],
+    ]
+    book = _save(path, ("Log", [*heads, *rows]))
+    for span in ("B1:D1", "F1:G1", "B5:D5"):
+        book["Log"].merge_cells(span)
+    book.save(path)
+
+
+def headings_in_the_first_row_alone(path: Path) -> None:
+    rows = [
+        ["Probe", "Date", "Pre", None, "Operator"],
+        [None, None, "nA/µM", "LOD (nM)", None],
+        ["R-1", date(2024, 5, 2), 10.0, 20, "wren"],
+        ["R-2", date(2024, 5, 3), 11.0, 20, "finch"],
+    ]
+    book = _save(path, ("A", rows))
+    book["A"].merge_cells("C1:D1")
+    book.save(path)
+
+
+def probes_across_with_days_below(path: Path) -> None:
+    rows = [
+        ["Flow cell, spring"],
+        ["", "Batch Q7", None, "Batch Q8"],
+        ["[DA] (µM)", "Q7-01", "Q7-02", "Q8-1"],
+        ["Date", "12.03.25", "13.03.25", date(2025, 3, 14)],
+        ["Stage", "pre", "pre", "post"],
+        ["0", "0,05", "<LOD", "0,1"],
+        ["0,5", "6,2", "5,7", "4,4"],
+        ["1", "12,3", "11,6", "8,8"],
+        ["Mean (nA)", "9,27", "8,65", "6,6"],
+    ]
+    book = _save(path, ("spring", rows))
+    book["spring"].merge_cells("B2:C2")
+    book.save(path)
+
+
 USUAL = {"waveform": "triangle"}
 BOTH = {**USUAL, "analyte": "DA"}
 BOOKS = [
@@ -408,5 +456,29 @@ BOOKS = [
             ("V2", "2024-01-08", "pre", 11.0),
             ("V2", "2024-01-22", "pre", 8.2),
         ],
+    ),
+    MessyBook(
+        "two_rows.xlsx",
+        headings_in_two_rows,
+        {**BOTH, "stage": "pre"},
+        [("N-1", "2024-04-03", "pre", 12.5), ("SD-2", "2024-04-14", "pre", 10.0), ("n 3", "2024-05-02", "pre", 8.0)],
+        told=("Log!C4", "Log!A8", "Log!A9"),
+    ),
+    MessyBook(
+        "first_row.xlsx",
+        headings_in_the_first_row_alone,
+        BOTH,
+        [("R-1", "2024-05-02", "pre", 10.0), ("R-2", "2024-05-03", "pre", 11.0)],
+    ),
+    MessyBook(
+        "days_below.xlsx",
+        probes_across_with_days_below,
+        {**USUAL, "probe_columns": "probes", "unit_current": "nA"},
+        [
+            ("Q7-01", "2025-03-12", "pre", [(0.0, 0.05), (0.5, 6.2), (1.0, 12.3)]),
+            ("Q7-02", "2025-03-13", "pre", [(0.5, 5.7), (1.0, 11.6)]),
+            ("Q8-1", "2025-03-14", "post", [(0.0, 0.1), (0.5, 4.4), (1.0, 8.8)]),
+        ],
+        told=("spring!C6", "spring!A9"),
     ),
 ]

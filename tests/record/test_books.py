@@ -1,4 +1,4 @@
-"""Thirteen books kept in thirteen ways come into the record as a careful person would read them."""
+"""Books kept each in a way of its own come into the record as a careful person would read them."""
 
 from __future__ import annotations
 

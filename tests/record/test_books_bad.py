@@ -421,6 +421,13 @@ def test_an_entry_of_a_probes_column_names_that_columns_cells(lab: Lab, tmp_path
     assert [one for one in found.remarks if one.kind != "doubtful"] == []
 
 
+def test_labelled_cells_right_above_the_headings_are_no_headings(lab: Lab, tmp_path: Path) -> None:
+    rows = ("Analyte,dopamine", "Operator,wren,,Rig,north", "Probe,Date,Stage,nA/µM", "R-1,2024-05-02,pre,10")
+    found = lab.adopt(grid_book(tmp_path, *rows), answers={"waveform": "triangle"})
+    (taken,) = (row.values for row in found.rows if row.sheet == "calibrations")
+    assert [taken[name] for name in ("analyte", "by", "rig")] == ["dopamine", "wren", "north"]
+
+
 # --- entered already ----------------------------------------------------------------------------------------------
 
 

@@ -3,42 +3,31 @@
 from __future__ import annotations
 
 import re
-from collections.abc import Callable, Iterator
+from collections.abc import Iterator
 from dataclasses import dataclass
-from functools import partial
 from itertools import pairwise
 
-from electrolog.record.books.grid import Content, Grid, Spot
+from electrolog.record.books.grid import Grid
+from electrolog.record.books.heading_rows import (
+    BARE_STAGE,
+    Fact,
+    Heading,
+    Understand,
+    groups,
+    headings_of,
+    row_facts,
+)
 from electrolog.record.books.headings import Meaning
-from electrolog.record.books.matrix import Matrix, matrix
+from electrolog.record.books.matrix import BESIDE, Matrix, matrix
 
 MEASURED = ("sensitivity", "current", "concentration", "duration")
 TOTALS = re.compile(
-    r"(grand )?(total|mean|average|avg\.?|sum|sd|st\.? ?dev\.?|sem|std\.?|median|min|max|n)\b.{0,12}", re.IGNORECASE
+    r"(grand )?(total|mean|average|avg\.?|sum|st\.? ?dev\.?|(sd|sem|std\.?|median|min|max|n)(?![-_. ]?\d))\b.{0,12}",
+    re.IGNORECASE,  # but `N-1` and `SD 12` are probes
 )
-_KEY_VALUE = re.compile(r"([^:]{1,40}):\s*(\S.*)")
-_STAGE = re.compile(r"\b(pre|post|before|after)\b", re.IGNORECASE)
-_NUMBER = re.compile(r"\d+([.,]\d+)?")
-_BARE_STAGE = re.compile(r"pre|post|before|after", re.IGNORECASE)
 _ONLY_UNIT = re.compile(
     r"[\[(]?\s*[unmpµμ]?([amhsv]|min)\s*(/\s*[unmpµμ]?[am])?\s*[\])]?|\W?°?c\W?|units?", re.IGNORECASE
 )
-Understand = Callable[[str], Meaning | None]
-
-
-@dataclass(frozen=True)
-class Heading:
-    column: int
-    text: str
-
-
-@dataclass(frozen=True)
-class Fact:
-    """A labelled cell beside or above a table, such as `Probe: K-07`."""
-
-    heading: str
-    value: Content
-    spot: Spot
 
 
 @dataclass(frozen=True)
@@ -94,15 +83,22 @@ def _by_probe(
     grid: Grid, header: _Header, found: Matrix, start: int, last: int, understand: Understand
 ) -> Iterator[Table]:
     """A table for each probe: the rows' keys, what is said beside them, and its own column."""
-    above = [fact for row in range(start, header.row) for fact in row_facts(grid, row, understand)]
+    above = list(_facts_above(grid, header, start, understand))
     kept = [h for h in header.headings if h.column in found.beside]
     key = Heading(found.key, grid.text(header.row, found.key) if found.holds == "concentration" else "Date")
     usual = "Current" if found.holds == "concentration" else "Sensitivity"
     measured = _caption(grid, header.row, understand) or usual
-    rows = tuple(row for row in range(header.below, last) if grid.filled(row))
+    filled = [row for row in range(header.below, last) if grid.filled(row)]
+    labelled = [row for row in filled if (m := understand(grid.text(row, found.key))) and m.field in BESIDE[:-1]]
+    rows = tuple(row for row in filled if row not in labelled)
     for column, label in found.probes:
         probe = Fact("Probe", label, (header.row, column))
-        yield Table(grid, header.row, (key, *kept, Heading(column, measured)), rows, (*above, probe), found)
+        own = [
+            Fact(grid.text(row, found.key), value, (row, column))
+            for row in labelled
+            if (value := grid.at(row, column)) is not None
+        ]
+        yield Table(grid, header.row, (key, *kept, Heading(column, measured)), rows, (*own, *above, probe), found)
 
 
 def _caption(grid: Grid, end: int, understand: Understand) -> str:
@@ -121,14 +117,14 @@ def _segment(
     whole = len(part) == len(header.headings)
     low = 0 if whole else part[0].column
     high = grid.width if whole else _next_start(header, part)
-    facts = tuple(
-        fact
-        for row in range(start, header.row)
-        for fact in row_facts(grid, row, understand)
-        if low <= fact.spot[1] < high
-    )
+    facts = tuple(fact for fact in _facts_above(grid, header, start, understand) if low <= fact.spot[1] < high)
     rows = tuple(row for row in range(header.below, last) if any(low <= column < high for column in grid.filled(row)))
     return Table(grid, header.row, part, rows, facts)
+
+
+def _facts_above(grid: Grid, header: _Header, start: int, understand: Understand) -> Iterator[Fact]:
+    for row in range(start, header.row):
+        yield from row_facts(grid, row, understand, is_above_headings=row == header.row - 1)
 
 
 def _next_start(header: _Header, part: tuple[Heading, ...]) -> int:
@@ -153,11 +149,11 @@ def _headers(grid: Grid, understand: Understand) -> list[_Header]:
     for row in range(len(grid.rows)):
         if found and found[-1].below > row:
             continue  # the units of the row above
-        headings = _headings(grid, row, understand)
+        headings = headings_of(grid, row, understand)
         across = None
         if not _is_header(grid, row, headings, understand):
             texts = {heading.column: grid.text(row, heading.column) for heading in headings}
-            across = matrix(grid, row, texts, _groups(grid, row, understand), understand)
+            across = matrix(grid, row, texts, groups(grid, row, understand), understand)
             if across is None:
                 continue
         if found and found[-1].row == row - 1:  # the row above only grouped these
@@ -176,7 +172,7 @@ def _is_header(grid: Grid, row: int, headings: tuple[Heading, ...], understand: 
     ):
         return False
     texts = [heading.text for heading in headings]
-    if any(map(_BARE_STAGE.fullmatch, texts)) and any((m := understand(text)) and m.field == "stage" for text in texts):
+    if any(map(BARE_STAGE.fullmatch, texts)) and any((m := understand(text)) and m.field == "stage" for text in texts):
         return False  # "Stage | pre | post" is a row of values
     known = [found for found in (understand(heading.text) for heading in headings) if found is not None]
     if sum(isinstance(grid.at(row, heading.column), str) for heading in headings) * 3 < len(headings):
@@ -184,50 +180,6 @@ def _is_header(grid: Grid, row: int, headings: tuple[Heading, ...], understand: 
         if len(numeric) < 2:
             return False
     return len(known) >= 2 and len(known) * 5 >= len(headings) * 2 and any(found.field in MEASURED for found in known)
-
-
-def _headings(grid: Grid, row: int, understand: Understand) -> tuple[Heading, ...]:
-    texts, over = [], _groups(grid, row, understand)
-    for column in grid.filled(row) + [c for c in range(grid.width) if grid.spans.get((row, c), (row, c))[0] < row]:
-        text = grid.text(row, column)
-        if text and len(text) <= 80:
-            texts.append(Heading(column, _grouped(over(column), text, understand)))
-    return tuple(sorted(texts, key=lambda heading: heading.column))
-
-
-def _grouped(above: str, text: str, understand: Understand) -> str:
-    """With the heading above it, where that one spans several columns and says more."""
-    if not above or above == text:
-        return text
-    if _NUMBER.fullmatch(text):
-        over = understand(above)
-        return f"{text} {over.unit or '?'} ({above})" if over is not None and over.field == "concentration" else text
-    alone = understand(text)
-    both = (
-        combined for combined in (f"{above} {text}", f"{text} {above}") if understand(combined) not in (None, alone)
-    )
-    return next(both, text)
-
-
-def _groups(grid: Grid, row: int, understand: Understand) -> Callable[[int], str]:
-    """The heading that the row above has for several columns: a merged cell, or in a CSV the last one to the left.
-
-    What holds for the whole row is looked up once: every row of a book is asked whether it is one of headings.
-    """
-    if row == 0 or not grid.filled(row - 1) or any(row_facts(grid, row - 1, understand)):
-        return lambda _: ""
-    if grid.spans and any((row - 1, c) in grid.spans for c in range(grid.width)):
-        return lambda column: grid.text(row - 1, column) if (row - 1, column) in grid.spans else ""
-    is_full = all(grid.text(row - 1, c) for c in grid.filled(row))
-    return partial(_to_the_left, grid, row, is_full)
-
-
-def _to_the_left(grid: Grid, row: int, is_full: bool, column: int) -> str:
-    is_number = _NUMBER.fullmatch(grid.text(row, column)) is not None
-    if is_number and is_full:
-        return ""
-    left = next((grid.text(row - 1, c) for c in range(column, -1, -1) if grid.text(row - 1, c)), "")
-    return left if is_number or _STAGE.search(left) else ""
 
 
 def _is_units_row(grid: Grid, row: int) -> bool:
@@ -250,24 +202,3 @@ def _data_end(grid: Grid, header: _Header, end: int, understand: Understand) -> 
         if not numeric and any(row_facts(grid, row, understand)) and end < len(grid.rows):
             return row
     return end
-
-
-def _is_spanning(grid: Grid, row: int, column: int) -> bool:
-    """A cell merged over several columns heads them, and is no label of the cell beside it."""
-    return (row, column + 1) in grid.spans and grid.spans[row, column + 1] == (row, column)
-
-
-def row_facts(grid: Grid, row: int, understand: Understand) -> Iterator[Fact]:
-    """`Probe: K-07` in one cell, or `Probe` with its value to the right."""
-    filled = grid.filled(row)
-    for place, column in enumerate(filled):
-        cell = grid.at(row, column)
-        if not isinstance(cell, str) or _BARE_STAGE.fullmatch(cell) or _is_spanning(grid, row, column):
-            continue
-        both = _KEY_VALUE.fullmatch(cell) or re.fullmatch(r"((?i:probe|electrode|animal))\s+(\S+)", cell)
-        if both and understand(both[1]):
-            yield Fact(both[1], both[2], (row, column))
-        elif understand(cell) and place + 1 < len(filled) and filled[place + 1] <= column + 3:
-            value = grid.at(row, filled[place + 1])
-            if not (isinstance(value, str) and understand(value)) or _BARE_STAGE.fullmatch(str(value)):
-                yield Fact(cell, value, (row, filled[place + 1]))

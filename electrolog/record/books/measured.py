@@ -138,6 +138,8 @@ class Measured:
     def _turned(self, view: View, found: Found, stage: str) -> tuple[float | None, float | None]:
         """µM per nA into nA per µM; the relative error stays what it is, to first order."""
         said = number(found.value, units.PLAIN, "sensitivity", self.comma)
+        if said.doubt:
+            self.out.say("doubtful", view.place(found), said.doubt)
         if said.value is None:
             return None, None
         if said.value == 0:
