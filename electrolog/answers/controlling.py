@@ -16,6 +16,7 @@ from electrolog.measure import control as charts
 from electrolog.measure.control import Chart, Cusum
 from electrolog.record.names import Names
 from electrolog.record.store import Record
+from electrolog.units import counted
 
 FEWEST = 4  # three ranges are little enough to set limits by
 
@@ -90,10 +91,15 @@ def control(
     if not enough:
         most = max(map(len, by_rig.values()), default=0)
         raise DataError(
-            f"{most} readings of {quantity} on one rig are too few for a control chart; {FEWEST} or more are needed",
+            f"{counted(most, 'reading')} of {quantity} on one rig: too few for a control chart; "
+            f"{FEWEST} or more are needed",
             "measure the check probe on every rig, at the beginning of each day",
         )
-    left = [f"{len(by_rig[name])} readings on {name} are too few for a chart" for name in by_rig if name not in enough]
+    left = [
+        f"{counted(len(by_rig[name]), 'reading')} on {name}: too few for a chart"
+        for name in by_rig
+        if name not in enough
+    ]
     return [
         _charted(name, str(quantity), unit, points, wanted.baseline, left) for name, points in sorted(enough.items())
     ]

@@ -34,13 +34,14 @@ def command(
     from electrolog.show.terminal import Drawing, drawing
 
     lab = lab_of(ctx)
-    found = lab.readings(lab.labels(labels), analyte=analyte, waveform=waveform, expected_um=_expected(expecting))
+    names = lab.labels(labels)
+    found = lab.readings(names, analyte=analyte, waveform=waveform, expected_um=_expected(expecting))
     if figure is not None:
         from electrolog.show.line_figure import draw_calibrations
 
         draw_calibrations(figure, found)
     routes = {one.calibration: lab.detection(one) for one in found} if detection else {}
-    calibrations.answer_list(found, json, csv, routes)
+    calibrations.answer_list(found, json, csv, routes, [] if found else lab.readings(names))
     lines.answer(found, Drawing.NONE if json or csv else drawing(chart, plain))
 
 

@@ -59,7 +59,7 @@ def command(
             draw(figure, found)
         courses.answer(found, how, against is Against.TIME)
     readings = lab.readings(names, analyte=analyte, waveform=waveform)
-    history.answer(readings, json, csv, how is Drawing.PLAIN)
+    history.answer(readings, json, csv, how is Drawing.PLAIN, [] if readings else lab.readings(names))
 
 
 def _ahead(length: str, setting: str | None) -> Ahead:

@@ -7,6 +7,7 @@ import numpy as np
 from electrolog.fouling.events import EXPOSURE, READING, Events
 from electrolog.fouling.fit import Component
 from electrolog.fouling.parameters import IN_VIVO
+from electrolog.units import shown_percent
 
 FEW_PAIRS = 8
 HARDLY_LEARNED = 0.8  # of a prior's sd still left
@@ -58,7 +59,7 @@ def on_shapes(shape_weights: dict[str, float]) -> list[str]:
     likely = sorted((name for name, weight in shape_weights.items() if weight >= 0.1), key=lambda n: -shape_weights[n])
     if len(likely) < 2 or max(shape_weights.values()) > 0.9:
         return []
-    said = ", ".join(f"{name} ({shape_weights[name]:.0%})" for name in likely)
+    said = ", ".join(f"{name} ({shown_percent(shape_weights[name])})" for name in likely)
     return [f"the calibrations can't tell between shapes of loss: {said}; forecasts average over them"]
 
 

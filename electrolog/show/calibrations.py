@@ -11,7 +11,7 @@ from electrolog.answers.history import Reading
 from electrolog.clock import shown_moment
 from electrolog.measure.calibrate import CalibrationFigures
 from electrolog.measure.geometry import Specific
-from electrolog.show.history import share
+from electrolog.show.history import none_said, share
 from electrolog.show.machine import plain, print_csv, print_json
 from electrolog.show.tables import print_lines, with_error
 from electrolog.show.text import one_line
@@ -57,14 +57,20 @@ def as_dict(reading: Reading) -> dict[str, Any]:
     }
 
 
-def answer_list(readings: Sequence[Reading], json: bool, csv: bool, routes: Mapping[str, Routes] | None = None) -> None:
-    """`routes`: detection limits by every route, by calibration, where they were asked for."""
+def answer_list(
+    readings: Sequence[Reading],
+    json: bool,
+    csv: bool,
+    routes: Mapping[str, Routes] | None = None,
+    others: Sequence[Reading] = (),
+) -> None:
+    """`routes`: detection limits by every route, by calibration, where they were asked for; `others` as in history."""
     known = routes or {}
     if json or csv:
         rows = [{**as_dict(one), **_detection_of(known.get(one.calibration))} for one in readings]
         print_json(rows) if json else print_csv([plain(row) for row in rows], None if rows else _COLUMNS)
     elif not readings:
-        print_lines("no calibration yet: log one with `electrolog calibrate`")
+        print_lines(none_said(others))
     else:
         for reading in readings:
             print_lines(*sentences(reading), *_route_lines(known.get(reading.calibration)))

@@ -24,7 +24,7 @@ def draw(path: Path, courses: Sequence[Course]) -> None:
     """Raises InputError where there is nothing to draw, or more than one page holds."""
     drawn = [course for course in courses if known(course)]
     if not drawn:
-        raise InputError("figure: no calibration gives a sensitivity, so that there is no course to draw")
+        raise InputError("figure: no such calibration gives a sensitivity, so that there is no course to draw")
     if len(drawn) > MOST_PANELS:
         raise InputError(
             f"figure: {len(drawn)} courses are too many for one picture; accepted: up to {MOST_PANELS}",
@@ -90,7 +90,8 @@ def _readings(axes: Axes, course: Course) -> None:
         ends = interval(one)
         if ends is not None:
             axes.plot([at, at], ends, color=INK, linewidth=1.1)
-    axes.plot(hours, values, MARKS[0], color=INK, label="calibration, 95 % interval")
+    # A reading of nearly nothing stands on the frame: whole, and over the marks at the foot.
+    axes.plot(hours, values, MARKS[0], color=INK, label="calibration, 95 % interval", clip_on=False, zorder=3)
     references = [(at, value) for at, value, one in zip(hours, values, found, strict=True) if one.is_reference]
     if references:
         axes.plot(

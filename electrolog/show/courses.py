@@ -12,7 +12,7 @@ from electrolog.record import sheets
 from electrolog.show.tables import print_lines
 from electrolog.show.terminal import Chart, Drawing
 from electrolog.show.text import safe
-from electrolog.units import shown_number, shown_percent, shown_span
+from electrolog.units import counted, shown_number, shown_percent, shown_span
 
 MOST_CHARTS = 6
 _SIGNS = {"coating": "C", "cleaning": "W", "re-cut": "X", "exposure": "r", "retirement": "E"}
@@ -84,10 +84,11 @@ def _draw(
         band = interval(reading)
         if band is not None:
             chart.interval(at, *band)
-    chart.points(x, [one.figures.sensitivity_na_um or 0.0 for one in known(course)], "o")
     above = _up(course)[1] / 10  # a row higher than the end of the run that a cleaning followed
     for sign, at in marks:
         chart.points([at], [0.0 if sign == _SIGNS["exposure"] else above], sign)
+    # Last, for no mark may hide a reading.
+    chart.points(x, [one.figures.sensitivity_na_um or 0.0 for one in known(course)], "o")
 
 
 def _span(values: Sequence[float]) -> tuple[float, float]:
@@ -123,10 +124,9 @@ def sentences(course: Course) -> list[str]:
     else:
         band = interval(last)
         inside = "error unknown" if band is None else f"95 % interval {shown_span(*band)}"
-        said.append(
-            f"last reading {shown_number(last.figures.sensitivity_na_um)} nA/µM ({inside}), after "
-            f"{shown_number(sum(last.exposure_h.values()))} h of exposure, of {len(course.readings)} calibrations"
-        )
+        hours, of = shown_number(sum(last.exposure_h.values())), counted(len(course.readings), "calibration")
+        value = shown_number(last.figures.sensitivity_na_um)
+        said.append(f"last reading {value} nA/µM ({inside}), after {hours} h of exposure, of {of}")
     if course.ahead:
         said += [_ahead(course.ahead[0], "now", ""), _ahead(course.ahead[-1], "", course.setting)]
     if course.limit_na_um is not None:

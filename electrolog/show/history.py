@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections import Counter
 from collections.abc import Sequence
 from typing import Any
 
@@ -9,21 +10,33 @@ from electrolog.answers.history import Reading
 from electrolog.clock import shown_moment
 from electrolog.show.machine import print_csv, print_json
 from electrolog.show.tables import print_lines, print_table, with_error
-from electrolog.units import shown_number
+from electrolog.units import counted, shown_number
 
 
-def answer(readings: Sequence[Reading], json: bool, csv: bool, plain: bool = False) -> None:
+def answer(
+    readings: Sequence[Reading], json: bool, csv: bool, plain: bool = False, others: Sequence[Reading] = ()
+) -> None:
+    """`others`: what there is of the probes where nothing is of the analyte or waveform that was asked for."""
     rows = [as_dict(reading) for reading in readings]
     if json:
         print_json(rows)
     elif csv:
         print_csv(rows, None if rows else _KEYS)
     elif not readings:
-        print_lines("no calibration yet: log one with `electrolog calibrate`")
+        print_lines(none_said(others))
     elif plain:
         print_lines(*[_sentence(reading) for reading in readings], *_warned(readings))
     else:
         _print(readings)
+
+
+def none_said(others: Sequence[Reading]) -> str:
+    """A probe calibrated with something else isn't one that never was."""
+    if not others:
+        return "no calibration yet: log one with `electrolog calibrate`"
+    kinds = Counter(f"{one.analyte}, {one.waveform}" for one in others)
+    found = "; ".join(f"{kind} ({counted(number, 'calibration')})" for kind, number in sorted(kinds.items()))
+    return f"no calibration of what was asked for; known: {found}"
 
 
 _KEYS = (
@@ -90,5 +103,5 @@ def share(reading: Reading) -> str:
         return "reference"
     if reading.share_left is None:
         return "?"
-    percent, error = reading.share_left * 100, reading.share_left_se
-    return f"{shown_number(percent)} ± {'?' if error is None else shown_number(error * 100, 2)} %"
+    error = reading.share_left_se
+    return f"{with_error(reading.share_left * 100, None if error is None else error * 100)} %"

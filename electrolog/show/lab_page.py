@@ -11,6 +11,7 @@ from electrolog.answers.shelf import STATES, Shelved
 from electrolog.clock import shown_moment
 from electrolog.fouling.typical import TypicalLoss
 from electrolog.judge.scores import share_interval
+from electrolog.judge.words import shown_share
 from electrolog.show.checks import SIGNS, odds_shown
 from electrolog.show.fits import hours_shown, off_shown, span_shown
 from electrolog.show.outlook import said_of
@@ -73,7 +74,7 @@ def _row(one: Shelved) -> dict[str, Any]:
                 one.sensitivity_na_um,
                 "" if one.last_calibration is None else with_error(one.sensitivity_na_um, one.sensitivity_se_na_um),
             ),
-            _number(one.share_left, "" if one.share_left is None else shown_percent(one.share_left)),
+            _number(one.share_left, "" if one.share_left is None else shown_share(one.share_left)),
         ],
     }
 
@@ -90,7 +91,7 @@ def _week(lab: LabSheet) -> list[str]:
 
 def _verdict(one: Ranked) -> tuple[str, ...]:
     because = "; ".join(reason.text for reason in one.reasons)
-    left, lod = shown_percent(one.end_fraction_left), shown_concentration(one.end_lod_um)
+    left, lod = shown_share(one.end_fraction_left), shown_concentration(one.end_lod_um)
     return one.electrode, f"{SIGNS[one.verdict]} {one.verdict}", odds_shown(one.p_breach), left, lod, because
 
 

@@ -12,7 +12,7 @@ from electrolog.show.text import safe
 from electrolog.units import counted, shown_concentration, shown_number
 
 MOST_CHARTS = 3
-_LOW = 8  # rows of what is left over
+_LOW = 11  # rows of what is left over: odd, so that zero has a row of its own
 _STEPS = 120
 
 

@@ -5,10 +5,11 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 
 from electrolog.fouling.typical import Floats, TypicalLoss
+from electrolog.judge.words import shown_share
 from electrolog.show import tables
 from electrolog.show.terminal import Chart, Drawing
 from electrolog.show.text import safe
-from electrolog.units import shown_number, shown_percent
+from electrolog.units import shown_number
 
 MOST_CHARTS = 3
 LEAST_WEIGHT = 0.01
@@ -54,8 +55,8 @@ def _percent(share: Floats) -> list[float]:
 def _sentences(loss: TypicalLoss) -> list[str]:
     places = range(0, len(loss.hours), max(1, len(loss.hours) // 6))
     return [
-        f"after {shown_number(float(loss.hours[k]))} h in vivo: {shown_percent(float(loss.median[k]))} left"
-        f" (90 % interval {shown_percent(float(loss.low[k]))} to {shown_percent(float(loss.high[k]))})"
+        f"after {shown_number(float(loss.hours[k]))} h in vivo: {shown_share(float(loss.median[k]))} left"
+        f" (90 % interval {shown_share(float(loss.low[k]))} to {shown_share(float(loss.high[k]))})"
         for k in places
         if k
     ]

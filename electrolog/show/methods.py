@@ -6,7 +6,7 @@ from collections.abc import Iterator
 from typing import TYPE_CHECKING
 
 from electrolog.show.machine import print_csv, print_json
-from electrolog.show.tables import print_lines
+from electrolog.show.tables import print_lines, with_error
 from electrolog.units import counted, shown_concentration, shown_number
 
 if TYPE_CHECKING:
@@ -104,7 +104,7 @@ def _spread(values: Spread, unit: str) -> str:
     if values.least == values.most:
         return f"{shown_number(values.mean)} {unit}"
     span = f"{shown_number(values.least)} to {shown_number(values.most)}"
-    return f"{shown_number(values.mean)} ± {shown_number(values.sd, 2)} {unit} (mean ± SD, {span})"
+    return f"{with_error(values.mean, values.sd)} {unit} (mean ± SD, {span})"
 
 
 def _of(values: Spread, whole: int) -> str:

@@ -6,10 +6,11 @@ from collections.abc import Sequence
 from dataclasses import fields
 
 from electrolog.answers.shelf import Shelved
+from electrolog.judge.words import shown_share
 from electrolog.show.machine import plain, print_csv, print_json
 from electrolog.show.tables import day_or_never, print_lines, print_table, with_error
 from electrolog.show.terminal import Drawing, trend
-from electrolog.units import counted, shown_number, shown_percent
+from electrolog.units import counted, shown_number
 
 _COLUMNS = ("probe", "state", "batch", "coating", "age (d)", "exposed (h)", "uses", "calibrated", "nA/µM", "left")
 _LEAST = ("batch", "age (d)", "uses", "coating", "calibrated", "exposed (h)")
@@ -56,5 +57,5 @@ def _row(probe: Shelved) -> tuple[object, ...]:
         probe.uses,
         day_or_never(probe.last_calibration),
         "" if probe.last_calibration is None else with_error(probe.sensitivity_na_um, probe.sensitivity_se_na_um),
-        "" if probe.share_left is None else shown_percent(probe.share_left),
+        "" if probe.share_left is None else shown_share(probe.share_left),
     )

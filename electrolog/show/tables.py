@@ -15,7 +15,7 @@ if TYPE_CHECKING:
     from rich.table import Table
 
 _TIE = "\ue000"  # of Unicode's private area: no text of the record is to lose a sign of its own
-_BEFORE_UNIT = re.compile(r"(?<=\d) (?=(?:%|h|min|[nµm]M|µM|nA|mV|V|°C|days)(?![\w]))")
+_BEFORE_UNIT = re.compile(r"(?<=\d) (?=±)|(?<=±) |(?<=\d) (?=(?:%|h|min|[nµm]M|µM|nA|mV|V|°C|days)(?![\w]))")
 
 
 def print_table(
@@ -85,13 +85,19 @@ def print_lines(*lines: str) -> None:
         print("\n".join(wrapped).replace(_TIE, " ") if wrapped else "")  # noqa: T201
 
 
-def with_error(value: float | None, error: float | None, digits: int = 3) -> str:
-    """`12.4 ± 0.3`; without an error the value alone says less, and is marked so."""
+def with_error(value: float | None, error: float | None) -> str:
+    """`10.00 ± 0.27`: the error to two digits and the value to the last of them, as the GUM asks (JCGM 100, 7.2.6).
+
+    Without an error the value alone says less, and is marked so.
+    """
     if value is None:
         return "?"
     if error is None:
-        return f"{shown_number(value, digits)} ± ?"
-    return f"{shown_number(value, digits)} ± {shown_number(error, 2)}"
+        return f"{shown_number(value)} ± ?"
+    if not (1e-6 <= error < 1e6 and abs(value) < 1e6):
+        return f"{shown_number(value)} ± {shown_number(error, 2)}"
+    decimals = 1 - int(f"{error:.1e}".partition("e")[2])
+    return " ± ".join(f"{round(one, decimals):.{max(0, decimals)}f}" for one in (value, error))
 
 
 def day_or_never(moment: datetime | None) -> str:

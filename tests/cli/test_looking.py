@@ -100,6 +100,33 @@ def test_a_probe_without_calibrations_is_a_plain_sentence(cli: Any) -> None:
     assert cli.ok("history", "B9-01", "--chart").out == "no calibration yet: log one with `electrolog calibrate`\n"
 
 
+def test_a_probe_calibrated_with_something_else_is_not_said_to_be_without(cli: Any) -> None:
+    for command in ("history", "calibrations"):
+        out = " ".join(cli.ok(command, "B07-03", "-a", "5-HT").out.split())
+        assert out == "no calibration of what was asked for; known: dopamine, triangle (1 calibration)"
+
+
+def test_no_mark_hides_a_reading_of_nearly_nothing(cli: Any) -> None:
+    """Its current was typed in the wrong unit, just after a run: the reading stands where the run's mark would."""
+    cli.ok("expose", "B07-03", "--for", "2h", "-s", "in-vivo", "-w", "triangle", "--start", "2026-01-21T09:00Z")
+    slip = ("0:0.0001", "0.5uM:0.0061", "1uM:0.0122", "2uM:0.0239")
+    cli.ok("calibrate", "B07-03", "post", "DA", *slip, "--at", "2026-01-22T09:00Z", "-w", "triangle", "-y")
+    (floor,) = [line for line in cli.ok("history", "B07-03", "--chart").out.splitlines() if line.startswith(" 0┤")]
+    assert floor.rstrip("│ ").endswith("o")
+
+
+def test_residuals_below_the_line_are_drawn_below_it(cli: Any, monkeypatch: pytest.MonkeyPatch) -> None:
+    """Line through 5, 10.1 and 20 nA at 0.5, 1 and 2 µM: -0.043, +0.064 and -0.021 nA are left over."""
+    monkeypatch.setenv("COLUMNS", "60")
+    points = ("0.5uM:5", "1uM:10.1", "2uM:20")
+    cli.ok("calibrate", "B9-01", "pre", "DA", *points, "--at", "2026-01-22T09:00Z", "-w", "triangle", "-y")
+    chart = cli.ok("calibrations", "B9-01", "--chart").out.partition("left over (nA)")[2].splitlines()
+    rows = [line.partition("┤")[2] or line.partition("│")[2] for line in chart]
+    level = next(place for place, row in enumerate(rows) if row.startswith("---"))
+    assert "o" not in rows[level]
+    assert sum(row.count("o") for row in rows[level + 1 : level + 5]) == 2
+
+
 def test_one_calibration_is_still_a_picture(cli: Any) -> None:
     out = cli.ok("history", "B07-03", "--chart").out
     assert BOX in out
@@ -176,7 +203,9 @@ def test_figures_are_written(judged: Any, tmp_path: Path) -> None:
 
 
 def test_a_figure_of_nothing_is_refused(cli: Any, tmp_path: Path) -> None:
-    assert "no calibration gives a sensitivity" in cli.refused("history", "B9-01", "--figure", str(tmp_path / "a.png"))
+    assert "no such calibration gives a sensitivity" in cli.refused(
+        "history", "B9-01", "--figure", str(tmp_path / "a.png")
+    )
     assert not (tmp_path / "a.png").exists()
 
 

@@ -84,6 +84,12 @@ def test_a_course_shows_readings_truth_forecast_limit_and_marks() -> None:
     assert [8.0 - 1.96 * 0.5, 8.0 + 1.96 * 0.5] in bars
 
 
+def test_a_reading_of_nearly_nothing_is_drawn_whole() -> None:
+    axes = drawn(course_figure.draw_course, course(reading("K1", 10.0), reading("K2", 0.008, 4.0)))
+    (read,) = [line for line in axes.lines if line.get_label().startswith("calibration")]
+    assert not read.get_clip_on()
+
+
 def test_an_endless_interval_leaves_the_axis_to_the_readings() -> None:
     wild = reading("K1", 10.0, sensitivity_low_na_um=-1e6, sensitivity_high_na_um=1e6)
     axes = drawn(course_figure.draw_course, course(wild))
@@ -97,7 +103,7 @@ def test_a_name_with_a_dollar_sign_is_no_formula(tmp_path: Path) -> None:
 
 
 def test_no_reading_is_refused_and_so_are_too_many(tmp_path: Path) -> None:
-    with pytest.raises(InputError, match="no calibration gives a sensitivity"):
+    with pytest.raises(InputError, match="no such calibration gives a sensitivity"):
         course_figure.draw(tmp_path / "a.png", [course(reading("K1", None))])
     with pytest.raises(InputError, match="13 courses are too many"):
         course_figure.draw(tmp_path / "a.png", [course(reading("K1", 10.0))] * 13)

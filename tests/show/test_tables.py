@@ -63,7 +63,21 @@ def test_sentences_are_wrapped_and_keep_their_indent(
 
 
 @pytest.mark.parametrize(
-    ("value", "error", "shown"), [(None, None, "?"), (12.4, None, "12.4 ± ?"), (12.4, 0.31, "12.4 ± 0.31")]
+    ("value", "error", "shown"),
+    [
+        (None, None, "?"),
+        (12.4, None, "12.4 ± ?"),
+        (12.4, 0.31, "12.40 ± 0.31"),
+        (10.0, 0.27, "10.00 ± 0.27"),
+        (10.5571, 0.0076, "10.5571 ± 0.0076"),
+        (15.8123, 0.0998, "15.81 ± 0.10"),
+        (12.36, 9.96, "12 ± 10"),
+        (1234.0, 567.0, "1230 ± 570"),
+        (0.008187, 0.000032, "0.008187 ± 0.000032"),
+        (12.4, 0.0, "12.4 ± 0"),
+        (12.4, float("inf"), "12.4 ± inf"),
+        (2e7, 3e5, "2.00e+07 ± 300000"),
+    ],
 )
 def test_an_estimate_is_never_shown_as_if_it_were_certain(value: float, error: float, shown: str) -> None:
     assert with_error(value, error) == shown
