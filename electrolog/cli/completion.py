@@ -11,7 +11,12 @@ from electrolog.errors import unknown
 SCRIPTS = {
     "bash": """_electrolog() {{
     local IFS=$'\\n'
-    COMPREPLY=($({python} -m electrolog.cli.completing "${{COMP_WORDS[@]:1:COMP_CWORD}}" 2>/dev/null))
+    local word found=($({python} -m electrolog.cli.completing "${{COMP_WORDS[@]:1:COMP_CWORD}}" 2>/dev/null))
+    COMPREPLY=()
+    for word in "${{found[@]}}"; do
+        [[ ${{COMP_WORDS[COMP_CWORD]}} == [\\"\\']* ]] || printf -v word %q "$word"
+        COMPREPLY+=("$word")
+    done
 }}
 complete -o default -o nosort -F _electrolog electrolog
 """,

@@ -26,7 +26,12 @@ def answer(found: Adoption, json: bool) -> None:
         print_json(found)
         return
     headings = [(one.heading, one.place, one.meaning, one.why) for one in found.headings]
-    print_table(("heading", "first at", "read as", "because of"), headings, least=("because of", "first at"))
+    print_table(
+        ("heading", "first at", "read as", "because of"),
+        headings,
+        least=("because of", "first at"),
+        other_ways=" or --json",
+    )
     print_lines("")
     _print_rows(found)
     _print_remarks(found)
@@ -60,7 +65,9 @@ def _print_rows(found: Adoption) -> None:
             shown.append((row.state, row.place, kind, row.name, _shown(row)))
         else:
             more[f"{kind}, {row.state}"] += 1
-    print_table(("state", "where", "what", "name", "holds"), shown, least=("name",), wrapped="holds")
+    print_table(
+        ("state", "where", "what", "name", "holds"), shown, least=("name",), wrapped="holds", other_ways=" or --json"
+    )
     if more:
         said = "; ".join(f"{count} more of {what}" for what, count in more.items())
         print_lines(f"and {said} (--json lists them all)")

@@ -94,7 +94,7 @@ def _print_days(found: FittedCohort) -> None:
     print_lines("", f"suspicious: {which}; is it the standard, the rig or the reference electrode?")
     columns = ("date", "standard", "rig", "all readings off by", "calibrations")
     rows = [(day.date, day.standard, day.rig, span_shown(day.effect, off_shown), day.calibrations) for day in odd]
-    print_table(columns, rows, columns[3:], least=("rig",))
+    print_table(columns, rows, columns[3:], least=("rig",), other_ways=" or --json")
 
 
 def _spreads(found: FittedCohort) -> list[str]:

@@ -22,7 +22,7 @@ def answer(found: Runs, json: bool) -> None:
         return
     columns = ("state", "file", "probe", "told by", "start", "length", "subject")
     if found.runs:
-        print_table(columns, [_row(run) for run in found.runs], least=("told by", "subject"))
+        print_table(columns, [_row(run) for run in found.runs], least=("told by", "subject"), other_ways=" or --json")
     for kind, states in (("refused", ("refused",)), ("doubtful", ("doubtful",)), ("also", ())):
         _print_said(kind, [run for run in found.runs if _is_of(run, states)])
     print_lines("", *_summary(found))

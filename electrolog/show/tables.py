@@ -24,11 +24,13 @@ def print_table(
     numeric: Iterable[str] = (),
     least: Sequence[str] = (),
     wrapped: str = "",
+    other_ways: str = ", --csv or --json",
 ) -> None:
     """Rows under their columns' names; cells are text and never markup: a note may hold brackets.
 
     `numeric` columns stand right. Where the width doesn't do, columns named in `least` are left out, the first
-    one first, and it is said; only the column `wrapped` is broken into lines before that.
+    one first, and it is said, with the `other_ways` of seeing them that the command has; only the column `wrapped`
+    is broken into lines before that.
     """
     cells = [[one_line("" if cell is None else cell) for cell in row] for row in rows]
     kept, dropped = _fitting(columns, cells, least, wrapped)
@@ -45,7 +47,7 @@ def print_table(
         table.add_row(*[Text(row[place]) for place in kept])
     _print(table)
     if dropped:
-        print_lines(f"(no room for: {', '.join(dropped)}; a wider terminal, --csv or --json shows all)")
+        print_lines(f"(no room for: {', '.join(dropped)}; a wider terminal{other_ways} shows all)")
 
 
 def _fitting(

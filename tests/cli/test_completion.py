@@ -108,6 +108,14 @@ def test_bash_completes_a_label(cli: Any) -> None:
     assert told.stdout.split() == ["B07-01", "B07-02", "B07-03"], told.stderr
 
 
+@pytest.mark.skipif(shutil.which("bash") is None, reason="bash is not installed here")
+def test_bash_takes_a_term_of_two_words_for_one(cli: Any) -> None:
+    script = cli.ok("completion", "bash").out
+    words = "COMP_WORDS=(electrolog clean --method carbon)\nCOMP_CWORD=3\n_electrolog\n"
+    told = shell_told("bash", f'{script}\n{words}printf "%s" "${{COMPREPLY[0]}}"\n', cli.db)
+    assert " ".join(told) == "carbon-purified\\ isopropanol"
+
+
 @pytest.mark.skipif(shutil.which("zsh") is None, reason="zsh is not installed here")
 def test_zsh_completes_a_label(cli: Any) -> None:
     script = cli.ok("completion", "zsh").out.replace("compdef _electrolog electrolog\n", "")

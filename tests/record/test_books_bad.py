@@ -138,6 +138,7 @@ def test_an_archive_that_was_overwritten_is_told(tmp_path: Path, cut: bytes) -> 
     ("name", "content", "said"),
     [
         ("a.xlsx", b"Probe,Date\n", "is named .xlsx and holds csv"),
+        ("a", b"Probe,Date\n", "is named without an ending and holds csv"),
         ("a.pdf", b"Probe,Date\n", "is named .pdf and holds csv"),
         ("a.xlsx", b"PK\x03\x04junk", "is damaged"),
         ("a.xls", b"\xd0\xcf\x11\xe0\xa1\xb1\x1a\xe1" + bytes(600), "can't be read as a spreadsheet"),
@@ -385,6 +386,13 @@ def test_no_grid_of_cells_brings_the_reader_down(rows: list[list[Any]]) -> None:
     book = Book("any.xlsx", "0" * 64, (Grid("any", tidy([HEADS, GOOD, *rows])), Grid("more", tidy(rows))))
     out = Extraction(book, BookMapping(), known, UTC).run()
     assert [draft.values["electrode"] for draft in out.of("calibrations")][:1] == ["K-1"]
+
+
+def test_a_sensitivity_that_is_not_above_zero_is_doubtful(lab: Lab, book: Callable[..., Path]) -> None:
+    path = book(GOOD, ["K-2", "2024-03-04", "pre", -8.0, ""])
+    assert remarks(lab, path, "doubtful") == {
+        "Sheet!D3": "a sensitivity of -8 nA/µM is not above zero: is its sign right?"
+    }
 
 
 # --- columns that may be probes ---------------------------------------------------------------------------------

@@ -40,6 +40,14 @@ def test_the_least_column_goes_first_and_it_is_said(
     assert "no room for: state" in text
 
 
+def test_what_was_left_out_is_to_be_sought_where_the_command_has_it(
+    capsys: pytest.CaptureFixture[str], monkeypatch: pytest.MonkeyPatch
+) -> None:
+    monkeypatch.setenv("COLUMNS", "60")
+    print_table(("what", "state"), [("x" * 30, "y" * 40)], least=("state",), other_ways=" or --json")
+    assert "(no room for: state; a wider terminal or --json shows all)" in printed(capsys)
+
+
 def test_numbers_stand_right(capsys: pytest.CaptureFixture[str]) -> None:
     print_table(("a", "n"), [("x", "1"), ("y", "1000")], numeric=("n",))
     lines = printed(capsys)

@@ -70,6 +70,8 @@ class Measured:
         if factor is not None and points:
             notes.append(f"slope in the book {shown_number(factor, 5)} nA/µM")
         elif factor is not None:
+            if factor <= 0:
+                self._doubt_sign(view, stage, factor)
             values |= {"sensitivity_na_um": factor, "sensitivity_se_na_um": error}
         elif not points:
             raise InputError("sensitivity: no number; accepted: a factor, or currents at known concentrations")
@@ -130,6 +132,11 @@ class Measured:
         if beside is not None and value is not None:
             error = self.optional(view, _in_unit_of(beside, found), units.SENSITIVITY_NA_UM, "standard error")
         return value, error
+
+    def _doubt_sign(self, view: View, stage: str, factor: float) -> None:
+        found = view.first("sensitivity", stage)
+        said = f"a sensitivity of {shown_number(factor, 4)} nA/µM is not above zero: is its sign right?"
+        self.out.say("doubtful", view.place(found) if found else view.range, said)
 
     def _is_inverted(self, found: Found) -> bool:
         answered = self.mapping.answered("unit_sensitivity") in UPSIDE_DOWN

@@ -81,8 +81,9 @@ def _kind(path: Path, content: bytes) -> str:
         ending
     )
     if named != found:
+        name = f".{shortened(ending, 20)}" if ending else "without an ending"
         raise InputError(
-            f"{path.name}: is named .{shortened(ending, 20)} and holds {found}; accepted: a name that says what it is",
+            f"{path.name}: is named {name} and holds {found}; accepted: a name that says what it is",
             f"rename it to {path.stem}.{found}, or save it anew from the spreadsheet program",
         )
     return found
