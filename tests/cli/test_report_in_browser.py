@@ -60,3 +60,16 @@ def test_text_stands_out_in_light_and_dark(opened: Any, scheme: str) -> None:
 @pytest.mark.parametrize(("paper", "width_mm"), [("A4", 210), ("Letter", 215.9)])
 def test_no_table_is_cut_on_paper(opened: Any, paper: str, width_mm: float) -> None:
     assert overhang_px(opened, width_mm) <= 1, paper
+
+
+def test_a_sentence_in_a_table_keeps_a_width_to_be_read_at(opened: Any) -> None:
+    """A narrow window once left it a column of single letters, beyond the right edge."""
+    size = {"width": 700, "height": 900, "deviceScaleFactor": 1, "mobile": False}
+    opened.execute_cdp_cmd("Emulation.setDeviceMetricsOverride", size)
+    try:
+        script = "return [...document.querySelectorAll('td.long')].map(cell => cell.clientWidth)"
+        widths = opened.execute_script(script)
+    finally:
+        opened.execute_cdp_cmd("Emulation.clearDeviceMetricsOverride", {})
+    assert widths
+    assert min(widths) >= 150
