@@ -15,6 +15,7 @@ from electrolog.answers import fits
 from electrolog.answers import life as lives
 from electrolog.answers.cohorts import REFERENCE_SETTING, Cohort, coating, gather
 from electrolog.answers.fits import Assay
+from electrolog.answers.history import must_be_known
 from electrolog.clock import utc_now
 from electrolog.errors import InputError
 from electrolog.measure.calibrate import CalibrationFigures
@@ -163,8 +164,9 @@ def ask(
 
 
 def _named(connection: Connection, labels: Sequence[str]) -> list[Row]:
-    """In the order named."""
+    """In the order named. Raises UnknownName."""
     found = {probe["electrode"]: probe for probe in queries.probes(connection, labels)} if labels else {}
+    must_be_known(Names(connection), labels, list(found.values()))
     return [found[label] for label in dict.fromkeys(labels) if label in found]
 
 

@@ -63,6 +63,7 @@ def readings(
         wanted_analyte = None if analyte is None else names.row_id("analytes", analyte)
         wanted_waveform = None if waveform is None else names.row_id("waveforms", waveform)
         probes = queries.probes(connection, labels)
+        must_be_known(names, labels, probes)
         ids = [probe["id"] for probe in probes]
         found = queries.calibrations(connection, ids, wanted_analyte, wanted_waveform)
         life = queries.events(connection, ids)
@@ -73,6 +74,14 @@ def readings(
         _reading(one, by_label[one.row["electrode"]], life[one.row["electrode"]], numbers, said.get(one.row["id"], ()))
         for one in found
     ]
+
+
+def must_be_known(names: Names, labels: Sequence[str], probes: Sequence[Row]) -> None:
+    """Raises UnknownName for a label without a probe: an answer that leaves one out looks like one about all."""
+    found = {probe["electrode"] for probe in probes}
+    for label in labels:
+        if label not in found:
+            names.row_id("electrodes", label)
 
 
 def readings_of(record: Record, calibrations: Sequence[str]) -> list[Reading]:

@@ -165,6 +165,19 @@ def test_a_lab_is_read_only_unless_writing_is_asked_for(cli: Any) -> None:
     assert [one.figures for one in lab.readings(["B07-01"])] == [one.figures for one in readings]
 
 
+def test_a_label_without_a_probe_is_named_and_not_left_out(judged: Any) -> None:
+    lab = electrolog.open_lab(judged.db)
+    run = electrolog.Run("dopamine", "triangle", "in-vivo", run_min=60)
+    for ask in (
+        lab.readings,
+        lab.courses,
+        lambda labels: lab.check(labels, run),
+        lambda labels: lab.forecast(labels, run),
+    ):
+        with pytest.raises(electrolog.InputError, match="no probe is called 'Z-99'"):
+            ask(["Z-99"])
+
+
 def test_a_reader_may_ask_for_a_verdict_and_keeps_nothing(judged: Any) -> None:
     lab = electrolog.open_lab(judged.db)
     kept = lab.verify().entries
