@@ -64,10 +64,9 @@ def typical_losses(record: Record, analyte: str) -> list[TypicalLoss]:
 
 
 def _typical(fit: CohortFit, longest_h: float | None = None) -> list[TypicalLoss]:
-    """As far as the record has seen, or twice the longest half-life where that isn't said."""
+    """As far as the record has seen: beyond, a curve would look like knowledge."""
     rows = fit.summary["half_lives"]
-    halves = [row["median"] for row in rows if row["median"] is not None]
-    until = longest_h or 2 * max(halves, default=LEAST_HOURS)
+    until = longest_h or fit.summary["longest_hours"]
     hours = np.linspace(0.0, min(max(until, LEAST_HOURS), MOST_HOURS), _STEPS + 1)
     return [typical_loss(fit, row["coating"], row["waveform"], hours) for row in rows]
 

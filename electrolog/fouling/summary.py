@@ -9,6 +9,7 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
+from electrolog.fouling.clock import run_clock
 from electrolog.fouling.covariance import between, variances
 from electrolog.fouling.events import EXPOSURE, READING, RENEWAL, Events
 from electrolog.fouling.fit import Component
@@ -45,7 +46,15 @@ def summarise(events: Events, fitted: list[Fitted], shape_weights: dict[str, flo
         "slips": slips(events, fitted),
         "damaged": damaged(events, fitted),
         "spreads": spreads(fitted),
+        "longest_hours": longest_hours(events, fitted),
     }
+
+
+def longest_hours(events: Events, fitted: list[Fitted]) -> float:
+    """The most that any reading's clock has shown, worth as hours in vivo: nothing was seen beyond."""
+    scales = [read_scales(one.part.layout, one.part.theta) for one in fitted]
+    clocks = [run_clock(events, scale.weight, scale.recovery).at_readings for scale in scales]
+    return max((float(at.max(initial=0.0)) for at in clocks), default=0.0)
 
 
 def interval(draws: Floats) -> dict[str, float | None]:

@@ -6,9 +6,10 @@ import numpy as np
 import pytest
 
 from electrolog.fouling.cohort import fit_cohort
+from electrolog.fouling.events import READING
 from electrolog.fouling.fit import CohortFit
 from electrolog.fouling.typical import typical_loss
-from tests.fouling.fleets.simulate import fleet
+from tests.fouling.fleets.simulate import fleet, walk
 
 
 @pytest.fixture(scope="module")
@@ -44,3 +45,10 @@ def test_only_shapes_of_the_fit_are_told_and_those_with_most_weight_are_there(fi
 def test_a_coating_never_seen_is_still_answered(fit: CohortFit) -> None:
     loss = typical_loss(fit, "a film of tomorrow", "a waveform of tomorrow", np.array([0.0, 5.0]))
     assert np.isfinite([loss.low, loss.median, loss.high]).all()
+
+
+def test_how_far_the_clock_was_ever_read_is_told(fit: CohortFit) -> None:
+    """Beside the true clock: what its weights and recoveries are learned to be is close to them."""
+    known = fleet("cleanings", 3, 80)
+    clock_h = walk(known.truth.generator, known.events).clock_h[known.events.kind == READING]
+    assert fit.summary["longest_hours"] == pytest.approx(clock_h.max(), rel=0.1)
