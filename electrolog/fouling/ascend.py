@@ -12,11 +12,24 @@ from electrolog.fouling.parameters import COMMON
 from electrolog.fouling.propagation import Outcome, Problem, State, settle, start
 
 Floats = NDArray[np.float64]
-MOST_STEPS, LOOK = 60, 8
+MOST_STEPS = 60
 FLAT = 0.02  # gain of log posterior (twice) that a last step would still bring
 NOISE = 0.02  # in a log evidence whose stand-ins haven't quite settled
 NEVER = -25.0  # log odds of slips and damage
 STEP = 0.15  # of a standard deviation, for second derivatives by differences
+
+
+@dataclass(frozen=True)
+class Patience:
+    """How exactly a peak is sought, and how long one that is far behind another."""
+
+    slack: float  # times as much as otherwise may still be to gain where a climb ends
+    settling: int  # sweeps, at most, before the first step
+    look: int  # steps that every climb is given
+    promise: float  # times what the last step gained and the next one promises: more is not expected
+
+
+THOROUGH, ROUGH = Patience(1.0, 15, 8, 10.0), Patience(10.0, 6, 3, 3.0)
 
 
 @dataclass(frozen=True)
@@ -60,26 +73,26 @@ def log_posterior(
     return outcome.log_evidence + log_prior, outcome.score - off / sd, outcome
 
 
-def climb(problem: Problem, theta: Floats, hopeless_below: float = -np.inf, slack: float = 1.0) -> Peak:
+def climb(problem: Problem, theta: Floats, hopeless_below: float = -np.inf, patience: Patience = THOROUGH) -> Peak:
     """Quasi-Newton ascent (BFGS), started from the outer product of the units' scores (Berndt et al. 1974).
 
-    The stand-ins are carried from step to step, so most steps need two sweeps. Gives up, unconverged, once its slope
-    promises to leave it below `hopeless_below`: a shape that far behind another has no weight, however well its
-    peak is found. `slack` times as much may still be to gain where it ends.
+    The stand-ins are carried from step to step, so most steps need two sweeps. Gives up, unconverged, once it
+    promises to stay below `hopeless_below`: a shape that far behind another has no weight, however well its peak is
+    found.
     """
-    loose = slack * crowd(problem)
+    loose = patience.slack * crowd(problem)
     state = start(problem, theta)
     # First as if nothing went wrong with any unit: else a bad day may be taken for as many slips, and stay so.
     settle(problem, without_mishaps(theta), state, 6, 0.1 * loose)
-    value, slope, outcome = log_posterior(problem, theta, state, 15)
+    value, slope, outcome = log_posterior(problem, theta, state, patience.settling)
     inverse = rough_covariance(problem, outcome)
     best = Step(theta, value, slope, outcome, deepcopy(state))
-    shrink, converged = 1.0, False
+    shrink, converged, gained = 1.0, False, np.inf
     for count in range(MOST_STEPS):
         step = capped(inverse @ best.slope) * shrink
         converged = bool(best.slope @ inverse @ best.slope < FLAT * loose)
-        hopeless = best.value + 10.0 * float(best.slope @ step) < hopeless_below
-        if converged or (count >= LOOK and hopeless):
+        to_come = patience.promise * min(gained, float(best.slope @ step))
+        if converged or (count >= patience.look and best.value + to_come < hopeless_below):
             break
         found = try_step(problem, best, step)
         if found is None or found.value < best.value - NOISE * loose:
@@ -90,6 +103,7 @@ def climb(problem: Problem, theta: Floats, hopeless_below: float = -np.inf, slac
                 break
             continue
         inverse = updated(inverse, found.theta - best.theta, best.slope - found.slope)
+        gained = found.value - best.value
         best, shrink = found, min(1.0, shrink * 2.0)
     return Peak(best.theta, best.value, best.state, best.outcome, converged, rough_covariance(problem, best.outcome))
 

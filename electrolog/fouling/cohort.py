@@ -9,7 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from electrolog.errors import DataError
-from electrolog.fouling.ascend import Peak, Width, climb, rough_width, widths
+from electrolog.fouling.ascend import ROUGH, THOROUGH, Patience, Peak, Width, climb, rough_width, widths
 from electrolog.fouling.batches import make_batches
 from electrolog.fouling.effects import lay_out_effects, layout_for
 from electrolog.fouling.events import EXPOSURE, READING, Events
@@ -27,7 +27,6 @@ from electrolog.fouling.young import settled_draws
 
 Floats = NDArray[np.float64]
 DRAWS = (32, 96)  # of the hyper-parameters, over all shapes: in a large cohort, in a young one
-ROUGH = 10.0  # how much less exactly a part is climbed: it tells shapes apart, and where to begin
 HOPELESS = 25.0  # nats behind the best shape: not climbed to its end
 CLOSE = 10.0  # nats behind the best shape: its evidence is worth a closer look
 PRIOR_ODDS = {"none": 0.1}  # against any other shape: a probe in use that doesn't foul at all is rare
@@ -93,25 +92,25 @@ def fit_shapes(events: Events, shapes: tuple[str, ...]) -> list[tuple[Problem, P
 
 
 def fit_further(
-    events: Events, fits: list[tuple[Problem, Peak, Width]], slack: float = 1.0
+    events: Events, fits: list[tuple[Problem, Peak, Width]], patience: Patience = THOROUGH
 ) -> list[tuple[Problem, Peak, Width]]:
     return [
-        fit_on(events, problem, peak, slack) if weight >= LEAST_WEIGHT else (problem, peak, out_of_the_running(width))
-        for (problem, peak, width), weight in zip(fits, weigh(fits), strict=True)
+        fit_on(events, *one[:2], patience) if weight >= LEAST_WEIGHT else out_of_the_running(*one)
+        for one, weight in zip(fits, weigh(fits), strict=True)
     ]
 
 
-def out_of_the_running(width: Width) -> Width:
+def out_of_the_running(problem: Problem, peak: Peak, width: Width) -> tuple[Problem, Peak, Width]:
     """A part's evidence is no match for that of more units."""
-    return replace(width, log_evidence=-np.inf)
+    return problem, peak, replace(width, log_evidence=-np.inf)
 
 
-def fit_on(events: Events, problem: Problem, peak: Peak, slack: float) -> tuple[Problem, Peak, Width]:
+def fit_on(events: Events, problem: Problem, peak: Peak, patience: Patience) -> tuple[Problem, Peak, Width]:
     """What fewer units have found is where more begin; with so many the scores' outer product is the curvature."""
     whole = pose(events, problem.layout.shape.name)
     known = dict(zip((p.name for p in problem.layout.priors), peak.theta, strict=True))
     theta = np.array([known.get(prior.name, prior.mean) for prior in whole.layout.priors])
-    top = climb(whole, theta, slack=slack)
+    top = climb(whole, theta, patience=patience)
     return whole, top, rough_width(whole, top)
 
 
@@ -123,7 +122,7 @@ def fit_each(events: Events, shapes: tuple[str, ...], rough: bool = False) -> li
     for name in shapes:
         problem = pose(events, name)
         theta = np.array([known.get(prior.name, prior.mean) for prior in problem.layout.priors])
-        peak = climb(problem, theta, best - HOPELESS, ROUGH if rough else 1.0)
+        peak = climb(problem, theta, best - HOPELESS, ROUGH if rough else THOROUGH)
         if peak.log_posterior > best:
             best = peak.log_posterior
             known.update(zip((p.name for p in problem.layout.priors), peak.theta, strict=True))
