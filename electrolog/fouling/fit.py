@@ -14,7 +14,7 @@ from electrolog.fouling.line_error import LineError
 from electrolog.fouling.parameters import Layout
 
 Floats = NDArray[np.float64]
-METHOD = "cohort-3"
+METHOD = "cohort-4"
 
 
 @dataclass(frozen=True)
