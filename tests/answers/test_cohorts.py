@@ -13,7 +13,9 @@ from electrolog.answers.cohorts import Cohort
 from electrolog.fouling.events import EXPOSURE, READING, RENEWAL
 from electrolog.lab import Lab, open_lab
 
-POINTS = ((0.0, 0.1), (0.5, 5.1), (1.0, 10.1), (2.0, 20.1))
+Points = tuple[tuple[float, float], ...]
+POINTS: Points = ((0.0, 0.1), (0.5, 5.1), (1.0, 10.1), (2.0, 20.1))
+SCATTERED: Points = ((0.0, 0.2), (0.5, 5.0), (1.0, 10.3), (2.0, 20.0))
 
 
 @pytest.fixture
@@ -23,11 +25,20 @@ def lab(tmp_path: Path) -> Lab:
     return made
 
 
-def calibrate(lab: Lab, at: str, *, probe: str = "P1", stage: str = "pre", factor: float = 1.0, **more: str) -> None:
+def calibrate(
+    lab: Lab,
+    at: str,
+    *,
+    probe: str = "P1",
+    stage: str = "pre",
+    factor: float = 1.0,
+    points: Points = POINTS,
+    **more: str,
+) -> None:
     from electrolog.answers.entering import NewCalibration
 
     values = {"electrode": probe, "at": at, "stage": stage, "analyte": "DA", "waveform": "triangle", **more}
-    lab.calibrate([NewCalibration(values, [(c, i * factor) for c, i in POINTS])], confirmed=True)
+    lab.calibrate([NewCalibration(values, [(c, i * factor) for c, i in points])], confirmed=True)
 
 
 def expose(lab: Lab, start: str, hours: float, setting: str = "in-vivo") -> None:
@@ -55,8 +66,13 @@ def test_a_reading_is_the_logarithm_of_the_sensitivity_with_its_relative_error(l
     calibrate(lab, "2026-03-02T09:00Z", standard="")
     cohort = gathered(lab)
     assert steps(cohort) == [("reading", "\n\n2026-03-02", round(math.log(10.0), 6))]
-    assert cohort.events.se[0] < 1e-6
+    assert math.isnan(cohort.events.se[0])  # no scatter tells nothing of the error
     assert cohort.left_out == {}
+    calibrate(lab, "2026-03-03T09:00Z", points=SCATTERED)
+    slope, covariance = np.polyfit(*np.transpose(SCATTERED), 1, cov="unscaled")
+    residual = np.subtract([i for _, i in SCATTERED], np.polyval(slope, [c for c, _ in SCATTERED]))
+    wanted = math.sqrt(residual @ residual / 2 * covariance[0, 0]) / slope[0]
+    assert gathered(lab).events.se[1] == pytest.approx(wanted, rel=1e-9)
 
 
 def test_an_exposure_is_cut_where_a_calibration_falls_into_it(lab: Lab) -> None:

@@ -84,10 +84,10 @@ def test_the_answer_says_what_was_computed(cli: Any) -> None:
     answer = cli.ok(
         "calibrate", "B9-01", "pre", "DA", "0:0", "1:10", "2:20.1", "3:29.9", "-w", "triangle", "--noise", "80pA"
     )
-    assert "sensitivity 9.98 ±" in answer.out
+    assert "sensitivity 9.980 ±" in answer.out
     assert "detection limit" in answer.out
     cli.ok("calibrate", "B9-01", "post", "DA", "0:0", "1:8", "2:16.1", "3:23.9", "--yes")
-    assert "share left 80 " in " ".join(cli.ok("calibrations", "B9-01").out.split())
+    assert "share left 79.96 " in " ".join(cli.ok("calibrations", "B9-01").out.split())
 
 
 def test_the_waveform_is_the_one_used_last(cli: Any) -> None:

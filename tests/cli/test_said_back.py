@@ -13,7 +13,7 @@ def test_a_corrected_point_says_the_new_sensitivity(cli: Any) -> None:
     out = cli.ok("amend", "point", "C0042/5", "current_na=12.8", "--why", "misread").out
     assert "point C0042/5: current was 12.2 nA, is 12.8 nA" in out
     before, after = out.splitlines()[1].split(", is ")
-    assert before.startswith("  C0042: sensitivity was 11.9 ± ")
+    assert before.startswith("  C0042: sensitivity was 11.927 ± ")
     assert after.endswith(" nA/µM")
     told = cli.ok("amend", "calibration", "C0043", "noise_na=0.2", "--why", "measured", "--json").json
     assert told["sensitivities"] == {}  # the noise moves the detection limit alone

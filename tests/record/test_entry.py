@@ -113,7 +113,8 @@ def test_several_calibrations_are_all_written_or_none(
 
 def test_a_calibration_gets_the_next_free_label(lived_in: Lab, calibrating: Callable[..., NewCalibration]) -> None:
     (own,) = lived_in.calibrate([calibrating("B1-02", "2026-02-01T10:00Z", calibration="C0004")])
-    made = lived_in.calibrate([calibrating("B1-02", f"2026-02-01T1{hour}:00Z") for hour in (1, 2)])
+    alike = [calibrating("B1-02", f"2026-02-01T1{hour}:00Z") for hour in (1, 2)]
+    made = lived_in.calibrate(alike, confirmed=True)
     assert own.values["calibration"] == "C0004"
     assert [one.values["calibration"] for one in made] == ["C0005", "C0006"]
 
@@ -135,7 +136,7 @@ def test_raw_points_keep_their_order_and_their_replicates(lived_in: Lab) -> None
         ({"sensitivity_se_na_um": "1"}, "without its sensitivity"),
         ({"noise_na": "-1"}, "out of range"),
         ({"temperature_c": "300C"}, "out of range"),
-        ({"stage": "middle"}, "no stage"),
+        ({"stage": "middle"}, "accepted: pre, interim, post"),
         ({"standard": "S9"}, "no standard"),
         ({"nonsense": "1"}, "no column"),
         ({"calibration": "x" * 201}, "too many"),
