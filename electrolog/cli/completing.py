@@ -13,6 +13,7 @@ from typing import Any
 
 from electrolog.cli.catalogue import HELP, module_of
 from electrolog.cli.preferences import in_force, usual_place
+from electrolog.record.word_kinds import WORD_KINDS
 
 # What an option's value names: a sheet, or a word list.
 VALUES = {
@@ -73,20 +74,7 @@ FIXED = {
     ),
     "list": ("words", "analytes", "waveforms", "batches", "standards"),
     "action": ("list", "set", "unset", "adopt"),
-    "addable": (
-        *(
-            "analyte",
-            "waveform",
-            "fibre",
-            "insulation",
-            "seal",
-            "coating material",
-            "coating method",
-            "medium",
-            "setting",
-        ),
-        *("cleaning method", "retirement reason"),
-    ),
+    "addable": ("analyte", "waveform", *WORD_KINDS),
     "shell": ("bash", "zsh", "fish", "powershell"),
 }
 GLOBAL = ("--db", "--zone", "--quiet")

@@ -7,7 +7,6 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from electrolog.fouling.fates import odds_of
 from electrolog.fouling.mixture import Mixture, Part
 from electrolog.fouling.parameters import Layout
 from electrolog.fouling.quadrature import Setup
@@ -70,10 +69,8 @@ def of_scales(score: Floats, layout: Layout, setup: Setup, excess: Floats) -> No
 
 
 def of_odds(score: Floats, mixture: Mixture) -> None:
-    setup = mixture.setup
-    odds = odds_of(setup.batch.real, setup.slip_odds, setup.damage_odds)
-    score[:, 5] = mixture.slipped.sum(1) - odds.slips_expected
-    score[:, 6] = mixture.damaged.sum(1) - odds.damages_expected
+    score[:, 5] = mixture.slipped.sum(1) - mixture.odds.slips_expected
+    score[:, 6] = mixture.damaged.sum(1) - mixture.odds.damages_expected
 
 
 def of_clock(score: Floats, layout: Layout, by_clock: Floats) -> None:

@@ -27,9 +27,6 @@ class Odds:
     slips: Floats
     damages: Floats
 
-    def take(self, rows: Integers) -> Odds:
-        return Odds(self.slips[rows], self.damages[rows])
-
     @property
     def total(self) -> Floats:
         """(B,) of nothing, any one thing, and any slip with one thing more."""
@@ -67,6 +64,9 @@ class Fates:
     mean: Floats  # (O,)
     variance: Floats  # (O,)
     freed: Floats  # (B, n) 1 where the reading is known to have slipped
+
+    def take(self, rows: Integers) -> Fates:
+        return Fates(self.along[rows], self.log_prior[rows], self.mean, self.variance, self.freed[rows])
 
     def damaged(self, by_fate: Floats) -> Floats:
         """(B, n) that damage came before each reading, from the fates' probabilities (B, O)."""
@@ -115,12 +115,12 @@ def one_thing(odds: Odds, real: NDArray[np.bool_], q: int) -> Fates:
     )
 
 
-def one_thing_more(fates: Fates, odds: Odds, reading: Integers, kind: Integers) -> Fates:
+def one_thing_more(fates: Fates, slip_odds: Floats, reading: Integers, kind: Integers) -> Fates:
     """The same beside a slip of a known kind (B,) at a known reading (B,), which cannot slip again."""
-    n_units, n = odds.slips.shape
+    n_units, n = slip_odds.shape
     unit = np.arange(n_units)
     with np.errstate(divide="ignore"):
-        log_prior = fates.log_prior + np.log(SLIP_KINDS[kind, 0] * odds.slips[unit, reading])[:, None]
+        log_prior = fates.log_prior + np.log(SLIP_KINDS[kind, 0] * slip_odds[unit, reading])[:, None]
     for again in range(len(SLIP_KINDS)):
         log_prior[unit, n + again * n + reading] = -np.inf
     freed = np.zeros((n_units, n))

@@ -21,7 +21,7 @@ from electrolog.fouling.draws import Posterior, Strand
 from electrolog.fouling.events import READING, Events
 from electrolog.fouling.fit import CohortFit, Component
 from electrolog.fouling.line_error import LineError
-from electrolog.fouling.mixture import Grids, Mixture, refit_grids, starting_grids, weigh
+from electrolog.fouling.mixture import Grids, Mixture, refit_grids, settle_grids, weigh
 from electrolog.fouling.parameters import Scales, prior_draws, read_scales
 from electrolog.fouling.quadrature import Grid, Setup
 from electrolog.fouling.sampling import sample
@@ -183,9 +183,7 @@ def set_up_pairs(view: View, batch: Batch, cavity: Cavity, scales: Scales, clock
 def peak_grids(view: View, batch: Batch, cavity: Cavity, peak: Scales, clock: Clock) -> Grids:
     """Grids at each part's most probable hyper-parameters, where those of all its draws start."""
     setup = set_up_pairs(view, batch, cavity.at_peaks(view), peak, clock)
-    grids = starting_grids(setup)
-    for _ in range(6):
-        grids = refit_grids(weigh(view.shape, setup, grids), grids)
+    grids = settle_grids(view.shape, setup)
     if view.at_peak:
         return grids
     pair = (np.arange(len(batch.unit))[:, None] * len(view.slices) + view.owner).ravel()

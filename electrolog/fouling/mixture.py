@@ -11,8 +11,18 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
-from electrolog.fouling.fates import SLIP_KINDS, likeliest_slip, nothing, odds_of, one_thing, one_thing_more
-from electrolog.fouling.quadrature import WELL, WRONG, Grid, Setup, Tilted, refit_grid, starting_grid, tilt
+from electrolog.fouling.fates import SLIP_KINDS, Odds, likeliest_slip, nothing, odds_of, one_thing, one_thing_more
+from electrolog.fouling.quadrature import (
+    WELL,
+    WRONG,
+    Grid,
+    Setup,
+    Tilted,
+    inverse_covariance,
+    refit_grid,
+    starting_grid,
+    tilt,
+)
 from electrolog.fouling.shapes.shape import Shape
 
 Floats = NDArray[np.float64]
@@ -40,6 +50,7 @@ class Part:
 @dataclass(frozen=True)
 class Mixture:
     setup: Setup
+    odds: Odds
     parts: tuple[Part, ...]
     log_evidence: Floats  # (B,)
     slipped: Floats  # (B, n) probabilities
@@ -51,12 +62,21 @@ def starting_grids(setup: Setup) -> Grids:
     return starting_grid(setup, WELL), wrong, wrong
 
 
+def settle_grids(shape: Shape, setup: Setup, rounds: int = 6) -> Grids:
+    """From the prior onto the peaks."""
+    grids = starting_grids(setup)
+    for _ in range(rounds):
+        grids = refit_grids(weigh(shape, setup, grids), grids)
+    return grids
+
+
 def weigh(shape: Shape, setup: Setup, grids: Grids) -> Mixture:
     real, q = setup.batch.real, setup.latent_variance.shape[1]
     n_units, n = real.shape
     odds = odds_of(real, setup.slip_odds, setup.damage_odds)
-    well = tilt(shape, setup, grids[0], nothing(odds, q))
-    wrong = tilt(shape, setup, grids[1], one_thing(odds, real, q))
+    inverse, fates = inverse_covariance(setup), one_thing(odds, real, q)
+    well = tilt(shape, setup, grids[0], nothing(odds, q), inverse)
+    wrong = tilt(shape, setup, grids[1], fates, inverse)
     by_fate = np.einsum("bgo->bo", wrong.probability)
     slip = by_fate[:, n:].sum(axis=1) * np.exp(wrong.log_evidence - np.logaddexp(well.log_evidence, wrong.log_evidence))
     suspects = np.flatnonzero((slip > LIKELY) & (real.sum(axis=1) >= FEWEST))
@@ -64,14 +84,14 @@ def weigh(shape: Shape, setup: Setup, grids: Grids) -> Mixture:
     tilts = [(everyone, setup, well), (everyone, setup, wrong)]
     if len(suspects):
         reading, kind = likeliest_slip(by_fate[suspects], n)
-        freed, more = setup.take(suspects), odds.take(suspects)
-        fates = one_thing_more(one_thing(more, freed.batch.real, q), more, reading, kind)
-        freed = free_of_slip(freed, reading, kind)
-        tilts.append((suspects, freed, tilt(shape, freed, grids[2].take(suspects), fates)))
-    return mix(setup, tilts)
+        more = one_thing_more(fates.take(suspects), odds.slips[suspects], reading, kind)
+        freed = free_of_slip(setup.take(suspects), reading, kind)
+        tilted = tilt(shape, freed, grids[2].take(suspects), more, inverse_covariance(freed))
+        tilts.append((suspects, freed, tilted))
+    return mix(setup, odds, tilts)
 
 
-def mix(setup: Setup, tilts: list[tuple[Integers, Setup, Tilted]]) -> Mixture:
+def mix(setup: Setup, odds: Odds, tilts: list[tuple[Integers, Setup, Tilted]]) -> Mixture:
     log_evidence = np.full((len(tilts), len(setup.batch.real)), -np.inf)
     for log, (rows, _, tilted) in zip(log_evidence, tilts, strict=True):
         log[rows] = tilted.log_evidence
@@ -82,9 +102,10 @@ def mix(setup: Setup, tilts: list[tuple[Integers, Setup, Tilted]]) -> Mixture:
     )
     slipped, damaged = np.zeros(setup.batch.real.shape), np.zeros(setup.batch.real.shape)
     for part in parts:
-        slipped[part.rows] += part.tilted.fates.slipped(part.by_fate, part.share)
-        damaged[part.rows] += part.tilted.fates.damaged(part.by_fate)
-    return Mixture(setup, parts, total, slipped, damaged)
+        by_fate = part.by_fate
+        slipped[part.rows] += part.tilted.fates.slipped(by_fate, part.share)
+        damaged[part.rows] += part.tilted.fates.damaged(by_fate)
+    return Mixture(setup, odds, parts, total, slipped, damaged)
 
 
 def free_of_slip(setup: Setup, reading: Integers, kind: Integers) -> Setup:

@@ -20,7 +20,7 @@ from electrolog.fouling.days import day_prior
 from electrolog.fouling.effects import Effects
 from electrolog.fouling.events import Events
 from electrolog.fouling.evidence import slopes
-from electrolog.fouling.mixture import Grids, Mixture, moments_of_latents, refit_grids, starting_grids, weigh
+from electrolog.fouling.mixture import Grids, Mixture, moments_of_latents, refit_grids, settle_grids, weigh
 from electrolog.fouling.parameters import Layout, Scales, read_scales
 from electrolog.fouling.quadrature import Setup
 from electrolog.fouling.shared import Assembly, assemble, solve
@@ -120,7 +120,7 @@ def sweep(problem: Problem, scales: Scales, clock: Clock, state: State) -> Outco
     for k, (batch, site) in enumerate(zip(problem.batches, state.sites, strict=True)):
         cavity_mean, cavity = cavity_of(batch.columns, site, state)
         setup = set_up(batch, scales, clock, cavity_mean, cavity)
-        grid = state.grids[k] if state.grids else settle_grids(problem, setup)
+        grid = state.grids[k] if state.grids else settle_grids(problem.layout.shape, setup)
         mixture = weigh(problem.layout.shape, setup, grid)
         found = slopes(problem.layout, mixture, clock.reading_slopes[batch.reading])
         log_evidence += float(np.sum(mixture.log_evidence - log_overlap(site, cavity_mean, cavity)))
@@ -267,10 +267,3 @@ def set_up(batch: Batch, scales: Scales, clock: Clock, mean: Floats, covariance:
         each(scales.damage_odds),
         each(scales.shape),
     )
-
-
-def settle_grids(problem: Problem, setup: Setup, rounds: int = 6) -> Grids:
-    grids = starting_grids(setup)
-    for _ in range(rounds):
-        grids = refit_grids(weigh(problem.layout.shape, setup, grids), grids)
-    return grids

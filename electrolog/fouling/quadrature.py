@@ -122,12 +122,13 @@ def place_nodes(grid: Grid, nodes: Nodes) -> Floats:
     return np.asarray(grid.centre[:, None, :] + nodes.place @ grid.spread.transpose(0, 2, 1))
 
 
-def tilt(shape: Shape, setup: Setup, grid: Grid, fates: Fates) -> Tilted:
+def tilt(shape: Shape, setup: Setup, grid: Grid, fates: Fates, inverse: tuple[Floats, Floats]) -> Tilted:
+    """inverse: of the setup's J, with its log determinant; the same for all that may have happened."""
     standard = standard_nodes(grid.centre.shape[1], grid.which)
     nodes = place_nodes(grid, standard)
     loss = shape.loss(setup.hours[:, None, :], nodes[:, :, None, :], setup.shape_parameters[:, None, None, :])
     residual = residuals(setup, nodes, loss)
-    precision, log_det = invert(covariance(setup))
+    precision, log_det = inverse
     pulled = residual @ precision
     bent = precision @ fates.along
     stiffness = np.einsum("bro,bro->bo", fates.along, bent) + 1.0 / fates.variance
@@ -156,6 +157,10 @@ def normalised(log_weight: Floats) -> tuple[Floats, Floats]:
     weight /= np.where(possible, total, 1.0)[:, None, None]
     with np.errstate(divide="ignore"):
         return top + np.log(np.where(possible, total, 1.0)), weight
+
+
+def inverse_covariance(setup: Setup) -> tuple[Floats, Floats]:
+    return invert(covariance(setup))
 
 
 def residuals(setup: Setup, nodes: Floats, loss: Loss) -> Floats:

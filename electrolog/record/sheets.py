@@ -17,21 +17,9 @@ from electrolog.record.columns import (
     Word,
 )
 from electrolog.record.sheet import AT, BY, NOTE, PROBE, Sheet, current, length, minutes, potential
+from electrolog.record.word_kinds import WORD_KINDS
 
 __all__ = ["BY_NAME", "EVENTS", "SHEETS", "WORD_KINDS", "Sheet"]
-
-WORD_KINDS = (
-    "fibre",
-    "insulation",
-    "seal",
-    "coating material",
-    "coating method",
-    "medium",
-    "setting",
-    "cleaning method",
-    "retirement reason",
-)
-
 
 TERMS = Sheet(
     "terms",
