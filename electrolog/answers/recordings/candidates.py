@@ -171,18 +171,20 @@ def recordings_in(folder: Path) -> list[str]:
     if not folder.is_dir():
         said = "is a file" if folder.exists() else "is not there"
         raise InputError(f"{folder} {said}; accepted: a folder of recordings")
-    found = [path.relative_to(folder) for path in folder.rglob("*") if path.suffix.casefold() == ".nwb"]
-    return sorted(path.as_posix() for path in found if not any(part.startswith((".", "~")) for part in path.parts))
+    return [path.as_posix() for path in _files_in(folder, (".nwb",))]
 
 
 def plain_files(folder: Path) -> list[str]:
     """Files that may be recordings, though only the list can say so."""
-    found = [path.relative_to(folder) for path in folder.rglob("*") if path.suffix.casefold() in ENDINGS]
-    return sorted(
-        path.as_posix()
-        for path in found
-        if path.name != LIST and not any(part.startswith((".", "~")) or ENCLOSED in part for part in path.parts)
-    )
+    found = [path for path in _files_in(folder, ENDINGS) if path.name != LIST]
+    return [path.as_posix() for path in found if not any(ENCLOSED in part for part in path.parts)]
+
+
+def _files_in(folder: Path, endings: Sequence[str]) -> list[Path]:
+    """As the folder names them, in order; neither hidden ones nor those that a program keeps while a file is open."""
+    found = [path.relative_to(folder) for path in folder.rglob("*") if path.suffix.casefold() in endings]
+    shown = [path for path in found if not any(part.startswith((".", "~")) for part in path.parts)]
+    return sorted(shown, key=Path.as_posix)
 
 
 def recording_of(file: str) -> str:
