@@ -5,6 +5,7 @@ from __future__ import annotations
 import os
 import subprocess
 import sys
+import time
 from collections.abc import Callable, Iterator
 from pathlib import Path
 
@@ -77,6 +78,7 @@ def test_it_comes_from_the_environment_or_a_file(
 @pytest.mark.skipif(sys.platform == "win32", reason="POSIX's terminals")
 def test_at_a_terminal_it_is_asked_for_and_not_shown(guarded: tuple[Server, str], run: Run) -> None:
     import pty
+    import termios
 
     seen, child = b"", pty.fork()
     if child[0] == 0:
@@ -85,6 +87,10 @@ def test_at_a_terminal_it_is_asked_for_and_not_shown(guarded: tuple[Server, str]
     try:
         while b"Password" not in seen:
             seen += os.read(child[1], 1000)
+        patience = time.monotonic() + 30
+        while termios.tcgetattr(child[1])[3] & termios.ECHO:  # what is typed before it is off is thrown away
+            assert time.monotonic() < patience, "still shows what is typed"
+            time.sleep(0.01)
         os.write(child[1], f"{SECRET}\n".encode())
         while more := os.read(child[1], 1000):
             seen += more
