@@ -17,6 +17,7 @@ from electrolog.record.readable import rows
 from electrolog.record.store import Connection, Record
 
 MANY_NEW = 200  # figures that cost more to make again than to keep
+KEPT_AT_ONCE = 1000  # of those made again: nobody waits longer than that for a turn to write
 NO_CONTENT = "neither points nor a factor were kept: there is nothing to compute from"
 
 
@@ -95,22 +96,17 @@ def all_figures(record: Record, calibrations: Iterable[Calibration]) -> dict[int
     found = {calibration.row["id"]: figures_of(calibration, uncertainties) for calibration in asked}
     new = [calibration for calibration in asked if calibration.figures is None]
     if len(new) >= MANY_NEW and record.may_keep:
-        _keep_new(record, new, found, uncertainties)
+        _keep_unchanged(record, new, found)
     return found
 
 
-def _keep_new(
-    record: Record,
-    new: Sequence[Calibration],
-    found: Mapping[int, CalibrationFigures],
-    uncertainties: dict[str, float | None],
-) -> None:
-    """Of those that are still as they were read: somebody else may have corrected one meanwhile."""
+def _keep_unchanged(record: Record, read: Sequence[Calibration], found: Mapping[int, CalibrationFigures]) -> None:
+    """Of those that still are as they were read, figures included: whoever corrected one meanwhile, or its standard,
+    made its figures anew, and these would be of what stood there before.
+    """
     with record.writing() as writer:
-        if not standards_uncertainties(writer.connection, new).items() <= uncertainties.items():
-            return
-        now = {one.row["id"]: one for one in queries.calibrations_by_id(writer.connection, [o.row["id"] for o in new])}
-        same = [one.row["id"] for one in new if now.get(one.row["id"]) == one]
+        now = {one.row["id"]: one for one in queries.calibrations_by_id(writer.connection, [o.row["id"] for o in read])}
+        same = [one.row["id"] for one in read if now.get(one.row["id"]) == one]
         queries.keep_figures(writer, {key: (found[key].method, found[key].to_dict()) for key in same})
 
 
@@ -142,10 +138,13 @@ def recompute(record: Record) -> list[Recomputed]:
     with record.reading() as connection:
         found = queries.calibrations(connection)
         uncertainties = standards_uncertainties(connection)
-    fresh = {calibration.row["id"]: computed(calibration, uncertainties) for calibration in found}
-    with record.writing() as writer:
-        queries.keep_figures(writer, {key: (made.method, made.to_dict()) for key, made in fresh.items()})
-    return [change for calibration in found for change in _changed(calibration, fresh[calibration.row["id"]])]
+    changes = []
+    for start in range(0, len(found), KEPT_AT_ONCE):
+        some = found[start : start + KEPT_AT_ONCE]
+        fresh = {calibration.row["id"]: computed(calibration, uncertainties) for calibration in some}
+        _keep_unchanged(record, some, fresh)
+        changes += [change for calibration in some for change in _changed(calibration, fresh[calibration.row["id"]])]
+    return changes
 
 
 def _changed(calibration: Calibration, made: CalibrationFigures) -> list[Recomputed]:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from pathlib import Path
+from typing import Any
 
 import pytest
 
@@ -13,6 +14,7 @@ from electrolog.record import queries
 from electrolog.record.queries import Calibration
 
 PROBES = figures.MANY_NEW
+PREPARED = {"prepared_at": "2026-01-04T09:00Z", "relative_uncertainty": "2%"}
 
 
 @pytest.fixture
@@ -28,7 +30,7 @@ def lab(tmp_path: Path) -> Lab:
         ],
         "calibration_points.csv": [
             "calibration,concentration_um,current_na",
-            *[f"C{label},{level},{10 * level}" for label in labels for level in (0, 1, 2)],
+            *[f"C{label},{level},{current}" for label in labels for level, current in ((0, 0.1), (1, 9.7), (2, 20.1))],
         ],
     }
     for name, lines in known.items():
@@ -60,6 +62,28 @@ def test_what_was_corrected_meanwhile_is_not_kept(lab: Lab) -> None:
     assert after["CP0"] == before
     assert after["CP1"] is not None
     assert lab.recompute() == []
+
+
+@pytest.mark.parametrize(
+    ("what", "values"), [("calibration CP0", {"noise_na": "0.1"}), ("standard S1", {"relative_uncertainty": "0.07"})]
+)
+def test_a_correction_while_all_are_made_again_stands(
+    lab: Lab, what: str, values: dict[str, str], monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """It comes in after the points were read and before anything is kept."""
+    lab.log_plain("standards", {"standard": "S1", "analyte": "dopamine", "concentration_um": "1mM", **PREPARED})
+    lab.amend("calibration", "CP0", {"standard": "S1", "noise_na": "0.2"}, "from the notebook")
+    keep, corrected = figures._keep_unchanged, []
+
+    def keep_after_a_correction(*told: Any) -> None:
+        if not corrected:
+            corrected.append(lab.amend(*what.split(), values, "misread", confirmed=True))
+        keep(*told)
+
+    monkeypatch.setattr(figures, "_keep_unchanged", keep_after_a_correction)
+    lab.recompute()
+    assert corrected
+    assert lab.verify().whole
 
 
 def test_a_few_are_not_worth_a_write(lab: Lab) -> None:
