@@ -1,4 +1,5 @@
-"""Whether the record can be trusted: its rows against its journal, and its kept figures against its raw points."""
+"""Whether the record can be trusted: its rows against its journal, its kept figures against its raw points, and its
+kept fits as they were kept."""
 
 from __future__ import annotations
 
@@ -7,8 +8,9 @@ from dataclasses import replace
 from typing import Any
 
 from electrolog.answers import figures as made
+from electrolog.fouling.fit import METHOD as FIT_METHOD
 from electrolog.measure.version import METHOD
-from electrolog.record import queries
+from electrolog.record import kept_fits, queries
 from electrolog.record.queries import Calibration
 from electrolog.record.store import Record
 from electrolog.record.verify import Verification, verify
@@ -24,7 +26,10 @@ def verified(record: Record, head: str | None = None) -> Verification:
             return found
         kept = [one for one in queries.calibrations(connection) if (one.figures or {}).get("method") == METHOD]
         uncertainties = made.standards_uncertainties(connection)
-    return replace(found, faults=tuple(fault for one in kept for fault in _forged(one, uncertainties)))
+        fits = kept_fits.changed(connection, FIT_METHOD)
+    faults = [fault for one in kept for fault in _forged(one, uncertainties)]
+    faults += [f"kept fit of {one}: was changed since it was kept; the next question makes it again" for one in fits]
+    return replace(found, faults=tuple(faults))
 
 
 def _forged(calibration: Calibration, uncertainties: dict[str, float | None]) -> list[str]:

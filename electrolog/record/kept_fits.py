@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import hashlib
 import json
 from collections.abc import Mapping
 from dataclasses import dataclass
@@ -10,6 +11,7 @@ from typing import Any
 
 from sqlalchemy import ColumnElement, Connection, and_, exists, func, or_, select
 
+from electrolog.errors import DataError
 from electrolog.record import schema, sheets
 from electrolog.record.journal import Writer
 
@@ -67,12 +69,37 @@ def kept_fit(connection: Connection, analyte_id: int) -> KeptFit | None:
 
 
 def content(connection: Connection, analyte_id: int) -> dict[str, Any]:
-    """The kept fit itself, as plain data."""
+    """The kept fit itself, as plain data.
+
+    Raises DataError where it isn't as it was kept: a bit that flipped would give another forecast, and nothing would
+    show it.
+    """
     table = schema.kept_fits
-    found: dict[str, Any] = json.loads(
-        connection.execute(select(table.c.fit).where(table.c.analyte_id == analyte_id)).scalar_one()
-    )
+    row = connection.execute(select(table).where(table.c.analyte_id == analyte_id)).mappings().one()
+    if not _is_whole(dict(row)):
+        raise DataError("the kept fit isn't what was kept", "fit the cohort again")
+    found: dict[str, Any] = json.loads(row["fit"])["fit"]
     return found
+
+
+def changed(connection: Connection, method: str) -> list[str]:
+    """The analytes whose fit, kept by this method, isn't as it was kept."""
+    table, analytes = schema.kept_fits, schema.tables[sheets.ANALYTES.name]
+    of = table.join(analytes, table.c.analyte_id == analytes.c.id)
+    rows = connection.execute(select(table, analytes.c.analyte).select_from(of).where(table.c.method == method))
+    return [row["analyte"] for row in rows.mappings() if not _is_whole(dict(row))]
+
+
+def _sealed(row: Mapping[str, Any], fit: str) -> str:
+    """JSON with the fit's own hash before it, and that of what says how much it has seen."""
+    said = [row[name] for name in ("method", "fingerprint", *_SEEN)]
+    digest = hashlib.sha256(f"{json.dumps(said)}{fit}".encode()).hexdigest()
+    return f'{{"sha256": "{digest}", "fit": {fit}}}'
+
+
+def _is_whole(row: Mapping[str, Any]) -> bool:
+    kept = row["fit"]
+    return bool(kept == _sealed(row, kept[len(_sealed(row, "")) - 1 : -1]))
 
 
 def keep_fit(
@@ -87,8 +114,8 @@ def keep_fit(
         "seen_newest": seen.newest,
         "seen_correction": seen.correction,
         "made_at": writer.at,
-        "fit": json.dumps(fit, allow_nan=False),
     }
+    row["fit"] = _sealed(row, json.dumps(fit, allow_nan=False))
     before = kept_fit(writer.connection, analyte_id)
     if before is None:
         writer.connection.execute(table.insert().values(analyte_id=analyte_id, **row))

@@ -67,14 +67,41 @@ def test_a_kept_fit_is_shown_again_and_a_fresh_one_is_the_same(lab: Terminal) ->
     assert {**fresh, "made_at": None} == {**kept, "made_at": None}
 
 
-@pytest.mark.parametrize("change", ["method = 'cohort-0'", "fit = json_remove(fit, '$.components')"])
-def test_a_kept_fit_that_this_version_cannot_read_is_made_again(lab: Terminal, tmp_path: Path, change: str) -> None:
+CHANGES = (
+    "fit = json_remove(fit, '$.fit.components')",
+    "fit = replace(fit, 'A', 'B')",  # other numbers, and nothing else would show it
+    "fit = 'not JSON'",
+    "fit = ''",
+    "seen_readings = seen_readings + 1",
+)
+
+
+@pytest.mark.parametrize("change", ["method = 'cohort-0'", *CHANGES])
+def test_a_kept_fit_that_is_not_what_was_kept_is_made_again(lab: Terminal, tmp_path: Path, change: str) -> None:
     before = lab.ok("fit", *ASKED, "--json").json
-    with closing(sqlite3.connect(tmp_path / "record.db")) as record, record:
-        record.execute(f"UPDATE kept_fits SET {change}")
+    spoil_kept_fit(tmp_path, change)
     after = lab.ok("fit", *ASKED, "--json").json
     assert after["made_at"] > before["made_at"]
     assert {**after, "made_at": None} == {**before, "made_at": None}
+
+
+@pytest.mark.parametrize("change", CHANGES)
+def test_a_kept_fit_that_was_changed_is_named_until_it_is_made_again(
+    lab: Terminal, tmp_path: Path, change: str
+) -> None:
+    lab.ok("fit", *ASKED)
+    lab.ok("verify")
+    spoil_kept_fit(tmp_path, change)
+    told = lab("verify")
+    assert told.status == 1
+    assert "kept fit of dopamine: was changed since it was kept" in told.out + told.err
+    lab.ok("fit", *ASKED)
+    lab.ok("verify")
+
+
+def spoil_kept_fit(folder: Path, change: str) -> None:
+    with closing(sqlite3.connect(folder / "record.db")) as record, record:
+        record.execute(f"UPDATE kept_fits SET {change}")
 
 
 def test_a_fit_says_what_it_rests_on(lab: Terminal) -> None:
