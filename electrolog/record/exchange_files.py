@@ -19,6 +19,7 @@ from electrolog.record.exchange_faults import FILES, Faults, printable
 from electrolog.record.sheets import BY_NAME, Sheet
 
 CHUNK = 1_000  # rows held as text at a time
+MOST_BYTES = 2 * 10**9  # of one file, all of whose rows are held at once: some 5 × 10⁷ points
 CELL_LIMIT = min(sys.maxsize, 2**31 - 1)
 Progress = Callable[[str, int], None]  # what is under way, and rows done so far
 
@@ -84,6 +85,10 @@ def _any_length_of_cell() -> Iterator[None]:
 
 def _read_file(path: Path, sheet: Sheet, zone: tzinfo | None, faults: Faults) -> Rows:
     rows = Rows(sheet, cells=[[] for _ in sheet.columns])
+    if refused := _no_table(path):
+        faults.add(rows.file, 0, refused)
+        rows.unsure = True
+        return rows
     try:
         # Bytes that are not UTF-8 come through as lone surrogates, and are refused cell by cell.
         with path.open(encoding="utf-8-sig", errors="surrogateescape", newline="") as stream:
@@ -92,6 +97,19 @@ def _read_file(path: Path, sheet: Sheet, zone: tzinfo | None, faults: Faults) ->
         faults.add(rows.file, 0, f"can't be read: {why.strerror}")
         rows.unsure = True
     return rows
+
+
+def _no_table(path: Path) -> str | None:
+    """Why the file isn't even opened: a pipe or a device has no end, and what is too large would fill the memory."""
+    if path.exists() and not path.is_file():
+        return "is a pipe or a device; accepted: a file"
+    size = path.stat().st_size if path.exists() else 0
+    if size <= MOST_BYTES:
+        return None
+    return (
+        f"{size / 1e9:.1f} GB are too many; accepted: up to {MOST_BYTES / 1e9:g} GB; make a folder for each part of the"
+        " probes, with all that belongs to them, and import one after the other"
+    )
 
 
 def _read_stream(stream: TextIO, rows: Rows, zone: tzinfo | None, faults: Faults) -> None:

@@ -149,6 +149,11 @@ def test_a_list_that_cannot_be_read_stops_it_all(cli: Any, folder: Path, text: s
     assert said in cli.refused("runs", "rig", *HERE, "--commit")
 
 
+def test_a_list_larger_than_anybody_would_write_is_not_read(cli: Any, folder: Path) -> None:
+    (folder / "recordings.csv").write_bytes(b"file,probe\n" + b"a.csv,B9-01\n" * 1_500_000)
+    assert "recordings.csv: is larger than 16 MB; accepted: CSV in UTF-8" in cli.refused("runs", "rig", *HERE)
+
+
 def test_semicolons_a_byte_order_mark_and_backslashes_are_taken(cli: Any, folder: Path) -> None:
     (folder / "day1").mkdir()
     (folder / "a.csv").rename(folder / "day1" / "a.csv")

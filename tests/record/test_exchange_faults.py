@@ -2,11 +2,15 @@
 
 from __future__ import annotations
 
+import os
 import time
 from pathlib import Path
 
 import pytest
 
+from electrolog.errors import FaultyRows
+from electrolog.record import exchange_files
+from electrolog.record.exchange_in import import_folder
 from electrolog.record.store import Record
 from tests.record.exchange_folders import LAB, faults_of, lab, new_record
 
@@ -118,6 +122,24 @@ def test_rows_that_rest_on_different_rows_kept_out_are_no_doubles(record: Record
     cuts = "electrode,at\nP1,2026-01-01T00:00Z\nP2,2026-01-01T00:00Z\n"
     found = faults_of(record, tmp_path, lab(batches="batch,made_on\nB1,soon\n", recuts=cuts))
     assert [fault.split(":")[0] for fault in found] == ["batches.csv line 2, made_on"]
+
+
+def test_a_file_too_large_to_be_held_is_refused_before_it_is_read(
+    record: Record, tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    monkeypatch.setattr(exchange_files, "MOST_BYTES", 1000)
+    (found,) = faults_of(record, tmp_path, {"batches.csv": "batch\n" + "B1\n" * 400})
+    assert found.startswith("batches.csv: 0.0 GB are too many; accepted: up to 1e-06 GB")
+
+
+@pytest.mark.skipif(not hasattr(os, "mkfifo"), reason="this system has no pipes with a name")
+def test_a_pipe_is_not_waited_for(record: Record, tmp_path: Path) -> None:
+    folder = tmp_path / "piped"
+    folder.mkdir()
+    os.mkfifo(folder / "batches.csv")
+    with pytest.raises(FaultyRows) as told:
+        import_folder(record, folder)
+    assert told.value.faults == ("batches.csv: is a pipe or a device; accepted: a file",)
 
 
 def test_a_wrong_file_of_many_rows_is_refused_in_seconds(record: Record, tmp_path: Path) -> None:

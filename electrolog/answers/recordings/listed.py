@@ -13,6 +13,7 @@ from electrolog.answers.recordings.told import Told
 from electrolog.clock import parse_iso
 from electrolog.errors import InputError, shortened, unknown
 from electrolog.record.columns import Number
+from electrolog.texts import small_text
 from electrolog.units import FREQUENCY_HZ, SECONDS
 
 LIST = "recordings.csv"
@@ -72,12 +73,12 @@ def read_list(folder: Path) -> list[Listed]:
     path = folder / LIST
     if not path.exists():
         return []
+    text = small_text(path, "CSV in UTF-8")
+    mark = max(",;\t", key=text.partition("\n")[0].count)
+    reader = csv.reader(io.StringIO(text, newline=""), delimiter=mark, strict=True)
     try:
-        text = path.read_text(encoding="utf-8-sig")
-        mark = max(",;\t", key=text.partition("\n")[0].count)
-        reader = csv.reader(io.StringIO(text, newline=""), delimiter=mark, strict=True)
         rows = [(reader.line_num, cells) for cells in reader]
-    except (OSError, UnicodeDecodeError, csv.Error) as why:
+    except csv.Error as why:
         raise InputError(f"{LIST}: can't be read ({shortened(str(why), 120)}); accepted: CSV in UTF-8") from None
     if not rows:
         raise InputError(f"{LIST}: is empty; accepted: a header row such as {','.join(COLUMNS)}")
