@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
+from dataclasses import dataclass
 from typing import Any, Protocol
 
 import numpy as np
@@ -39,24 +40,42 @@ def clock_of(sheet: ScanSheet, time_s: ArrayLike) -> Array:
     return time
 
 
-def first_pass(sheet: ScanSheet, block: int) -> tuple[Array, tuple[float, float]]:
-    """Means over `block` scans (m, points), and the lowest and highest current. Raises InputError for a NaN."""
+@dataclass(frozen=True)
+class Reach:
+    """Stretches of `size` rows, with the lowest and highest current in each."""
+
+    size: int
+    low: Array  # (stretches,)
+    high: Array  # (stretches,)
+
+
+def first_pass(sheet: ScanSheet, block: int) -> tuple[Array, Reach]:
+    """Means over `block` scans (m, points), and how far the current goes. Raises InputError for a NaN.
+
+    The means are made as exactly as the sheet is written, in half the time that doubles would take.
+    """
     size = max(block, _ROWS_AT_ONCE // block * block)
-    means, low, high = [], np.inf, -np.inf
+    means, reach = [], []
     for first, rows in _stretches(sheet, size):
-        bottom, top = float(rows.min()), float(rows.max())
-        if not (np.isfinite(bottom) and np.isfinite(top)):
-            row, column = (int(i[0]) for i in np.nonzero(~np.isfinite(rows)))
-            raise InputError(
-                f"scan {first + row + 1} holds no finite number at its point {column + 1}; every point needs one",
-                "leave that scan out of the file: a gap is named and borne",
-            )
-        low, high = min(low, bottom), max(high, top)
+        reach.append(_reach_of(rows, first))
         whole = len(rows) // block * block
-        means.append(rows[:whole].reshape(-1, block, rows.shape[1]).mean(1, dtype=np.float64))
-    if low == high:
-        raise DataError(f"the current is {low:g} nA throughout: nothing was recorded", "is the probe connected?")
-    return np.concatenate(means), (low, high)
+        exact = np.result_type(rows.dtype, np.float32)
+        means.append(rows[:whole].reshape(-1, block, rows.shape[1]).mean(1, dtype=exact))
+    low, high = np.array(reach).T
+    if low.min() == high.max():
+        raise DataError(f"the current is {low[0]:g} nA throughout: nothing was recorded", "is the probe connected?")
+    return np.concatenate(means).astype(np.float64), Reach(size, low, high)
+
+
+def _reach_of(rows: NDArray[np.floating[Any]], first: int) -> tuple[float, float]:
+    low, high = float(rows.min()), float(rows.max())
+    if not (np.isfinite(low) and np.isfinite(high)):
+        row, column = (int(i[0]) for i in np.nonzero(~np.isfinite(rows)))
+        raise InputError(
+            f"scan {first + row + 1} holds no finite number at its point {column + 1}; every point needs one",
+            "leave that scan out of the file: a gap is named and borne",
+        )
+    return low, high
 
 
 def column(sheet: ScanSheet, at: int) -> Array:
@@ -80,16 +99,17 @@ def mean_scan(sheet: ScanSheet, time: Array, span: Span) -> Array:
     return np.asarray(np.asarray(sheet[rows[0] : rows[-1] + 1]).mean(0, dtype=np.float64))
 
 
-def held_at_limit(sheet: ScanSheet, extremes: tuple[float, float], time: Array) -> tuple[Span, ...]:
+def held_at_limit(sheet: ScanSheet, reach: Reach, time: Array) -> tuple[Span, ...]:
     """Stretches of scans in which the current stands at the sheet's very extreme for several points on end."""
     flags = np.zeros(sheet.shape[0], dtype=bool)
-    for first, rows in _stretches(sheet, _ROWS_AT_ONCE):
-        at_one = (rows == extremes[0]) | (rows == extremes[1])
-        if np.count_nonzero(at_one) < HELD_POINTS:  # the rule, and far quicker to see than row by row
-            continue
+    least, most = float(reach.low.min()), float(reach.high.max())
+    for number in np.flatnonzero((reach.low == least) | (reach.high == most)).tolist():
+        first = number * reach.size
+        rows = np.asarray(sheet[first : first + reach.size])
+        at_one = (rows == least) | (rows == most)
         for row in np.flatnonzero(at_one.sum(1) >= HELD_POINTS).tolist():
             scan = rows[row]
-            flags[first + row] = bool((clipped(scan) & ((scan == extremes[0]) | (scan == extremes[1]))).any())
+            flags[first + row] = bool((clipped(scan) & ((scan == least) | (scan == most))).any())
     return spans_of(flags, time)
 
 

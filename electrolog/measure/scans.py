@@ -100,7 +100,7 @@ def read_scans(
     time = clock_of(sheet, time_s)
     potential = checked_potentials(potential_v, sheet.shape[1])
     block = max(1, round(settings.trace.edge_s / 4 / step_s(time)))
-    coarse, extremes = first_pass(sheet, block)
+    coarse, reach = first_pass(sheet, block)
     sign = -1.0 if settings.trace.turned else 1.0
     at = _where_it_shows(sign * coarse, potential, settings.oxidation_v)
     trace = sign * column(sheet, at)
@@ -131,7 +131,7 @@ def read_scans(
         charging_na=around(background, charging_at),
         noise_na=noise,
         settings=settings,
-        warnings=(*said_of_gaps(gaps(time)), *found, *_said_of(graphs, time, held_at_limit(sheet, extremes, time))),
+        warnings=(*said_of_gaps(gaps(time)), *found, *_said_of(graphs, time, held_at_limit(sheet, reach, time))),
     )
 
 
