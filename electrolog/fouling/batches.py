@@ -47,43 +47,59 @@ class Batch:
         )
 
 
+@dataclass(frozen=True)
+class Flat:
+    """All units' readings one after the other (M), and what each sees of the shared effects, before they are padded."""
+
+    owner: Integers  # (M,) unit
+    log_sensitivity: Floats  # (M,) less the log area changes so far
+    variance: Floats  # (M,) of the line's own error
+    day_column: Integers  # (M,)
+    latent_columns: Integers  # (U, q, e)
+    level_columns: Integers  # (U, e)
+    no_column: int
+
+
+def flatten(events: Events, effects: Effects, n_latents: int, line: LineError) -> Flat:
+    is_reading = events.kind == READING
+    return Flat(
+        events.unit[is_reading],
+        events.amount[is_reading] - log_area_changes(events)[0],
+        line.moderated(events.se[is_reading]),
+        columns_of_days(effects, events.days)[events.which[is_reading]],
+        *columns_of_units(effects, events, n_latents),
+        no_column=len(effects.names),
+    )
+
+
 def make_batches(events: Events, effects: Effects, n_latents: int, line: LineError) -> list[Batch]:
     """Every unit that has a reading, in batches by number of readings."""
-    is_reading = events.kind == READING
-    owner = events.unit[is_reading]
-    counts = np.bincount(owner, minlength=len(events.units))
+    flat = flatten(events, effects, n_latents, line)
+    counts = np.bincount(flat.owner, minlength=len(events.units))
     sizes = [s for s in SIZES if s < counts.max(initial=1)]
     edges = np.array([0, *sizes, counts.max(initial=1)])
     batches = []
     for low, high in pairwise(edges):
         units = np.flatnonzero((counts > low) & (counts <= high))
         chunks = np.array_split(units, -(-len(units) // CHUNK)) if len(units) else []
-        batches += [pad_units(chunk, int(high), events, effects, n_latents, line) for chunk in chunks]
+        batches += [pad_units(flat, chunk, int(high)) for chunk in chunks]
     return batches
 
 
-def pad_units(units: Integers, size: int, events: Events, effects: Effects, n_latents: int, line: LineError) -> Batch:
-    is_reading = events.kind == READING
-    owner = events.unit[is_reading]
-    level_seen = events.amount[is_reading] - log_area_changes(events)[0]
-    line_variance = line.moderated(events.se[is_reading])
-    day = columns_of_days(effects, events.days)[events.which[is_reading]]
-    first = np.searchsorted(owner, units, side="left")
-    count = np.searchsorted(owner, units, side="right") - first
+def pad_units(flat: Flat, units: Integers, size: int) -> Batch:
+    first = np.searchsorted(flat.owner, units, side="left")
+    count = np.searchsorted(flat.owner, units, side="right") - first
     within = np.arange(size)
     real = within < count[:, None]
     reading = np.where(real, first[:, None] + within, 0)
-    latents, level = columns_of_units(effects, events, n_latents)
-    none = len(effects.names)
-    level = level[units]
+    none, level, latents = flat.no_column, flat.level_columns[units], flat.latent_columns[units]
     seen = np.full((len(units), size, level.shape[1] + 1), none)
-    if size and len(owner):
+    y, variance = np.zeros((2, len(units), size))
+    if size and len(flat.owner):
         seen[:, :, :-1] = np.where(real[:, :, None], level[:, None, :], none)
-        seen[:, :, -1] = np.where(real, day[reading], none)
-        y = np.where(real, level_seen[reading], 0.0)
-        variance = np.where(real, line_variance[reading], 0.0)
-    else:
-        y, variance = np.zeros((len(units), size)), np.zeros((len(units), size))
-    widened = np.full((len(units), n_latents, seen.shape[2]), none)
-    widened[:, :, : latents.shape[2]] = latents[units]
+        seen[:, :, -1] = np.where(real, flat.day_column[reading], none)
+        y = np.where(real, flat.log_sensitivity[reading], 0.0)
+        variance = np.where(real, flat.variance[reading], 0.0)
+    widened = np.full((len(units), latents.shape[1], seen.shape[2]), none)
+    widened[:, :, : latents.shape[2]] = latents
     return Batch(units, reading, real, y, variance, np.concatenate([widened, seen], axis=1), level)

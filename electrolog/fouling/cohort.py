@@ -30,7 +30,7 @@ DRAWS = (32, 96)  # of the hyper-parameters, over all shapes: in a large cohort,
 HOPELESS = 25.0  # nats behind the best shape: not climbed to its end
 CLOSE = 10.0  # nats behind the best shape: its evidence is worth a closer look
 PRIOR_ODDS = {"none": 0.1}  # against any other shape: a probe in use that doesn't foul at all is rare
-LARGE = 2000  # units of a large cohort
+SMALL, LARGE = 400, 2000  # units of a cohort climbed at once; of one whose peak's width is found by differences
 PART, LARGER = 300, 5  # units of the part of it that tells shapes apart, and by how much each part outgrows the last
 YOUNG, YOUNG_DRAWS = 60, 32  # units of a young cohort; its draws of the hyper-parameters, each settled by itself
 LEAST_WEIGHT = 0.01  # a shape with less is named, but not drawn from
@@ -77,11 +77,11 @@ def weigh(fits: list[tuple[Problem, Peak, Width]]) -> Floats:
 def fit_shapes(events: Events, shapes: tuple[str, ...]) -> list[tuple[Problem, Peak, Width]]:
     """Every shape at its peak.
 
-    In a large cohort a part tells the shapes apart; those with weight there go on to ever larger parts, and at last to
-    all units, each time from where they ended: so near to the peak, a step or two suffice.
+    In all but a small cohort a part tells the shapes apart; those with weight there go on to ever larger parts, and at
+    last to all units, each time from where they ended: so near to the peak, a step or two suffice.
     """
     n_units = len(np.unique(events.unit[events.kind == READING]))
-    if n_units <= LARGE:
+    if n_units <= SMALL:
         return fit_each(events, shapes)
     fits = fit_each(take_units(events, neighbours_in_time(events, PART)), shapes, rough=True)
     size = PART * LARGER
@@ -111,7 +111,8 @@ def fit_on(events: Events, problem: Problem, peak: Peak, patience: Patience) -> 
     known = dict(zip((p.name for p in problem.layout.priors), peak.theta, strict=True))
     theta = np.array([known.get(prior.name, prior.mean) for prior in whole.layout.priors])
     top = climb(whole, theta, patience=patience)
-    return whole, top, rough_width(whole, top)
+    exact = patience is THOROUGH and len(events.units) <= LARGE
+    return whole, top, widths(whole, top) if exact else rough_width(whole, top)
 
 
 def fit_each(events: Events, shapes: tuple[str, ...], rough: bool = False) -> list[tuple[Problem, Peak, Width]]:
@@ -122,7 +123,7 @@ def fit_each(events: Events, shapes: tuple[str, ...], rough: bool = False) -> li
     for name in shapes:
         problem = pose(events, name)
         theta = np.array([known.get(prior.name, prior.mean) for prior in problem.layout.priors])
-        peak = climb(problem, theta, best - HOPELESS, ROUGH if rough else THOROUGH)
+        peak = climb(problem, theta, best - (CLOSE if rough else HOPELESS), ROUGH if rough else THOROUGH)
         if peak.log_posterior > best:
             best = peak.log_posterior
             known.update(zip((p.name for p in problem.layout.priors), peak.theta, strict=True))

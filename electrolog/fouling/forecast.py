@@ -15,7 +15,7 @@ from zlib import crc32
 import numpy as np
 from numpy.typing import NDArray
 
-from electrolog.fouling.batches import Batch, pad_units
+from electrolog.fouling.batches import Batch, flatten, pad_units
 from electrolog.fouling.clock import Clock, log_area_changes, run_clock
 from electrolog.fouling.draws import Posterior, Strand
 from electrolog.fouling.events import READING, Events
@@ -88,8 +88,9 @@ def draw_strands(
     share = np.array([part.weight / len(part.theta_draws) for part in parts])[view.owner]
     latents, level = np.zeros((n_units, k, each, q)), np.zeros((n_units, k, each))
     damage, since = np.zeros_like(level), np.zeros(level.shape, dtype=np.int64)
+    flat = flatten(events, view.effects, q, line)
     for units, size in groups_by_size(events, k):
-        batch = pad_units(units, size, events, view.effects, q, line)
+        batch = pad_units(flat, units, size)
         cavity = cavities(view, batch, events)
         grids = peak_grids(view, batch, cavity, peak, peak_clock)
         pairs = set_up_pairs(view, batch, cavity, scales, clock)

@@ -196,11 +196,15 @@ def no_negative(matrices: Floats) -> Floats:
 
 
 def positive_definite(matrices: Floats) -> NDArray[np.bool_]:
-    """By elimination of all at once: a factorisation would stop at the first that isn't, without saying which."""
+    """By elimination of all at once: a factorisation would stop at the first that isn't, without saying which.
+
+    Rows of zeros, where a unit has fewer readings than its batch, are as good as gone.
+    """
     left = matrices.copy()
     fine = np.ones(len(left), dtype=np.bool_)
+    empty = np.asarray(~np.any(matrices, axis=2))
     for k in range(left.shape[1]):
-        pivot = left[:, k, k]
+        pivot = np.where(empty[:, k], 1.0, left[:, k, k])
         fine &= pivot > 1e-12
         scaled = np.where(fine[:, None], left[:, k, k + 1 :] / np.where(fine, pivot, 1.0)[:, None], 0.0)
         left[:, k + 1 :, k + 1 :] -= left[:, k + 1 :, k][:, :, None] * scaled[:, None, :]
