@@ -21,7 +21,7 @@ if TYPE_CHECKING:
     from datetime import tzinfo
 
     from electrolog.answers.asked import Run
-    from electrolog.answers.entering import NewCalibration
+    from electrolog.answers.calibrating import NewCalibration
     from electrolog.answers.frames import frame
     from electrolog.errors import DoubtfulEntry, ElectrologError, InputError
     from electrolog.lab import Lab
@@ -44,7 +44,7 @@ _HOMES = {
     "ElectrologError": "errors",
     "InputError": "errors",
     "Lab": "lab",
-    "NewCalibration": "answers.entering",
+    "NewCalibration": "answers.calibrating",
     "Run": "answers.asked",
     "frame": "answers.frames",
 }

@@ -8,11 +8,8 @@ from typing import Any
 
 from electrolog.answers import life as lives
 from electrolog.clock import shown_moment, utc_now
-from electrolog.measure.calibrate import CalibrationFigures
-from electrolog.measure.slips import likely_slips
 from electrolog.record import sheets
-from electrolog.record.doubles import Readings, first_double, readings_of
-from electrolog.record.queries import Calibration, Event
+from electrolog.record.queries import Event
 from electrolog.record.sheets import Sheet
 from electrolog.units import shown_duration
 
@@ -39,36 +36,6 @@ def of_event(
     elif sheet is not sheets.CALIBRATIONS:
         said += _while_exposed(sheet, values, life, moment)
     return said
-
-
-def of_calibration(
-    values: Values,
-    points: Sequence[tuple[float, float]],
-    figures: CalibrationFigures,
-    earlier: Sequence[tuple[CalibrationFigures, Sequence[float]]],
-) -> list[str]:
-    """Likely slips; `earlier`: the probe's comparable calibrations, each with the concentrations used."""
-    concentrations, currents = zip(*points, strict=True) if points else ((), ())
-    said = likely_slips(
-        concentrations,
-        currents,
-        figures.sensitivity_na_um,
-        earlier_sensitivity_na_um=[e.sensitivity_na_um for e, _ in earlier if e.sensitivity_na_um is not None],
-        earlier_concentration_um=[c for _, used in earlier for c in used],
-        noise_na=values.get("noise_na"),
-    )
-    return [f"{values['electrode']}: {text}" for text in said]
-
-
-def entered_twice(values: Values, points: Sequence[tuple[float, float]], earlier: Sequence[Calibration]) -> list[str]:
-    """`earlier`: the probe's comparable calibrations."""
-    new = Readings(values["at"], values["stage"], tuple(points), values.get("sensitivity_na_um"))
-    found: Calibration | None = first_double(new, [(readings_of(one), one) for one in earlier])
-    if found is None:
-        return []
-    name, at = found.row["calibration"], shown_moment(found.at)
-    how = f"`electrolog strike calibration {name}` takes that one out"
-    return [f"{values['electrode']}: {new.said} as {name} of {at}: entered twice? {how}"]
 
 
 def _exposure(values: Values, life: Sequence[Event]) -> list[str]:

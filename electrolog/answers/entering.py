@@ -2,20 +2,15 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping, Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from datetime import datetime, timedelta, tzinfo
-from itertools import count
 from typing import Any
 
 from electrolog.answers import doubts as asked
-from electrolog.answers import figures as made
 from electrolog.answers.answer import Answer
-from electrolog.answers.handling import split
 from electrolog.answers.labels import expanded, known_labels, numbered
-from electrolog.errors import DoubtfulEntry, InputError, shortened, unknown, with_article
-from electrolog.measure.calibrate import CalibrationFigures
-from electrolog.measure.health import other_standard
+from electrolog.errors import DoubtfulEntry, InputError, unknown, with_article
 from electrolog.record import entry, queries, sheets
 from electrolog.record.columns import Value
 from electrolog.record.journal import Writer
@@ -24,7 +19,6 @@ from electrolog.record.sheets import Sheet
 from electrolog.record.store import Record
 
 Typed = Mapping[str, str | Value]
-Points = Sequence[tuple[float, float]]
 
 
 @dataclass(frozen=True)
@@ -35,14 +29,6 @@ class Entered(Answer):
     row_id: int
     values: dict[str, Value]
     doubts: tuple[str, ...]
-
-
-@dataclass(frozen=True)
-class NewCalibration:
-    """One calibration about to be logged: its columns as typed, its raw points (µM, nA)."""
-
-    values: Typed
-    points: Points = ()
 
 
 def read(sheet: Sheet, typed: Typed, zone: tzinfo | None = None) -> dict[str, Value]:
@@ -71,9 +57,9 @@ def log(
         rows = [read(sheet, {**typed, "electrode": label}, zone) for label in chosen]
         if sheet is sheets.INSPECTIONS:
             _beside_remarks(writer, rows)
-        said = _doubts(writer, sheet, rows)
-        _confirm(said, confirmed)
-        return [_entered(writer, sheet, entry.add(writer, sheet, row), said) for row in rows]
+        said = doubts_of(writer, sheet, rows)
+        confirm(said, confirmed)
+        return [entered(writer, sheet, entry.add(writer, sheet, row), said) for row in rows]
 
 
 def _beside_remarks(writer: Writer, rows: Sequence[dict[str, Value]]) -> None:
@@ -98,46 +84,14 @@ def log_plain(record: Record, sheet: Sheet, typed: Typed, zone: tzinfo | None) -
     """A row that is no event of a probe: a standard, a waveform, an analyte, a word."""
     values = read(sheet, typed, zone)
     with record.writing() as writer:
-        return _entered(writer, sheet, entry.add(writer, sheet, values))
+        return entered(writer, sheet, entry.add(writer, sheet, values))
 
 
-def _entered(writer: Writer, sheet: Sheet, row_id: int, doubts: Sequence[str] = ()) -> Entered:
+def entered(writer: Writer, sheet: Sheet, row_id: int, doubts: Sequence[str] = ()) -> Entered:
     """As it now stands in the record, with the record's own spelling of every name."""
     writer.flush()
     row = row_by_id(writer.connection, sheet, row_id)
     return Entered(sheet.name, row_id, {column.name: row[column.name] for column in sheet.columns}, tuple(doubts))
-
-
-def log_calibrations(
-    record: Record, new: Sequence[NewCalibration], zone: tzinfo | None, confirmed: bool
-) -> list[Entered]:
-    """Calibrations with their points and figures; a label that isn't given is the next free number."""
-    with record.writing() as writer:
-        labels = _labels(writer, new)
-        rows = [
-            (_labelled(writer, one.values, label, zone), _checked(one.points))
-            for one, label in zip(new, labels, strict=True)
-        ]
-        uncertainties = made.standards_uncertainties(writer.connection)
-        for row, points in rows:
-            _, handling = split(row.get("note"))  # type: ignore[arg-type]
-            handling.weights_of(points)  # asked for and not to be had: said before anything is written
-        computed = [made.computed(_as_calibration(row, points), uncertainties) for row, points in rows]
-        said = _doubts(writer, sheets.CALIBRATIONS, [row for row, _ in rows])
-        for (row, points), figures in zip(rows, computed, strict=True):
-            earlier = _earlier(writer, row)
-            said += asked.entered_twice(row, points, earlier)
-            said += asked.of_calibration(row, points, figures, _figured(earlier)) + _of_the_standard(writer, row)
-        _confirm(said, confirmed)
-        entered = [
-            _entered(writer, sheets.CALIBRATIONS, entry.add(writer, sheets.CALIBRATIONS, row, points), said)
-            for row, points in rows
-        ]
-        queries.keep_figures(
-            writer,
-            {one.row_id: (figures.method, figures.to_dict()) for one, figures in zip(entered, computed, strict=True)},
-        )
-        return entered
 
 
 def make_probes(
@@ -180,45 +134,8 @@ def _first_free(stem: str, known: Mapping[str, object]) -> int:
     return max((int(tail) for tail in taken if tail.isdigit()), default=0) + 1
 
 
-def _checked(points: Points) -> list[tuple[float, float]]:
-    """Points within their columns' bounds. Raises InputError."""
-    return [(sheets.POINT_UM.checked(c, str(c)), sheets.POINT_NA.checked(i, str(i))) for c, i in points]
-
-
-def _labelled(writer: Writer, typed: Typed, label: str, zone: tzinfo | None) -> dict[str, Value]:
-    """With its probe's and its standard's own spelling, and its label."""
-    electrodes = known_labels(writer.connection, [str(typed["electrode"])], writer.names)
-    if len(electrodes) > 1:
-        raise InputError(
-            f"electrode: '{shortened(str(typed['electrode']))}' names {len(electrodes)} probes;"
-            " accepted: one label, or a file of points with a label in every row (points belong to one probe)"
-        )
-    row = read(sheets.CALIBRATIONS, {**typed, "calibration": label, "electrode": electrodes[0]}, zone)
-    if row.get("standard") is not None:
-        row["standard"] = writer.names.spelled("standards", str(row["standard"])) or row["standard"]
-    return row
-
-
-def _labels(writer: Writer, new: Sequence[NewCalibration]) -> list[str]:
-    given = [str(one.values.get("calibration") or "") for one in new]
-    free = _free_labels(writer, given)
-    return [label or next(free) for label in given]
-
-
-def _free_labels(writer: Writer, taken: Sequence[str]) -> Iterator[str]:
-    """The next numbers that no calibration has: C0001, C0002, …"""
-    for number in count(queries.newest_id(writer.connection, sheets.CALIBRATIONS) + 1):
-        label = f"C{number:04d}"
-        if label not in taken and writer.names.spelled("calibrations", label) is None:
-            yield label
-
-
-def _as_calibration(row: dict[str, Value], points: Points) -> queries.Calibration:
-    full: dict[str, Any] = {column.name: row.get(column.name) for column in sheets.CALIBRATIONS.columns}
-    return queries.Calibration(full, tuple(points), None)
-
-
-def _doubts(writer: Writer, sheet: Sheet, rows: Sequence[dict[str, Value]]) -> list[str]:
+def doubts_of(writer: Writer, sheet: Sheet, rows: Sequence[dict[str, Value]]) -> list[str]:
+    """About new events, as they were read."""
     if sheet.time_column is None:
         return []
     probes = queries.probes(writer.connection, [str(row["electrode"]) for row in rows])
@@ -231,29 +148,6 @@ def _doubts(writer: Writer, sheet: Sheet, rows: Sequence[dict[str, Value]]) -> l
     ]
 
 
-def _earlier(writer: Writer, row: dict[str, Value]) -> list[queries.Calibration]:
-    """The probe's comparable calibrations."""
-    electrode_id = writer.names.row_id("electrodes", str(row["electrode"]))
-    analyte_id = writer.names.row_id("analytes", str(row["analyte"]))
-    waveform_id = writer.names.row_id("waveforms", str(row["waveform"]))
-    return queries.calibrations(writer.connection, [electrode_id], analyte_id, waveform_id)
-
-
-def _figured(found: Sequence[queries.Calibration]) -> list[tuple[CalibrationFigures, list[float]]]:
-    """With the concentrations used."""
-    uncertainties: dict[str, float | None] = {}
-    return [(made.figures_of(one, uncertainties), [c for c, _ in one.points]) for one in found]
-
-
-def _of_the_standard(writer: Writer, row: dict[str, Value]) -> list[str]:
-    if row.get("standard") is None:
-        return []
-    standard = row_by_id(writer.connection, sheets.STANDARDS, writer.names.row_id("standards", str(row["standard"])))
-    analyte = row_by_id(writer.connection, sheets.ANALYTES, writer.names.row_id("analytes", str(row["analyte"])))
-    text = other_standard(standard["analyte"], analyte["analyte"])
-    return [f"{row['electrode']}: {text}"] if text else []
-
-
-def _confirm(said: Sequence[str], confirmed: bool) -> None:
+def confirm(said: Sequence[str], confirmed: bool) -> None:
     if said and not confirmed:
         raise DoubtfulEntry("; ".join(said), said, "if it is right as it stands, repeat it with --yes")

@@ -12,7 +12,7 @@ from dataclasses import dataclass, replace
 from typing import Any
 
 from electrolog.errors import ElectrologError, InputError, shortened
-from electrolog.measure import weights
+from electrolog.measure.schemes import EQUAL, scheme
 
 MARK = "handling: "
 
@@ -21,7 +21,7 @@ MARK = "handling: "
 class Handling:
     """`signal`: the recording the points came from, with every setting and what was found in it."""
 
-    weights: str = weights.EQUAL
+    weights: str = EQUAL
     through_zero: bool = False
     signal: Mapping[str, Any] | None = None
     unreadable: str | None = None
@@ -29,7 +29,7 @@ class Handling:
     def to_dict(self) -> dict[str, Any]:
         """Only what isn't the usual way."""
         said = {
-            "weights": None if self.weights == weights.EQUAL else self.weights,
+            "weights": None if self.weights == EQUAL else self.weights,
             "through_zero": self.through_zero or None,
             "signal": self.signal,
         }
@@ -37,7 +37,9 @@ class Handling:
 
     def weights_of(self, points: Sequence[tuple[float, float]]) -> Any:
         """(n,) or None for equal ones. Raises DataError where the points can't give them."""
-        return weights.by_scheme(self.weights, *zip(*points, strict=True)) if points else None
+        from electrolog.measure.weights import by_scheme
+
+        return by_scheme(self.weights, *zip(*points, strict=True)) if points else None
 
 
 def with_handling(note: str | None, handling: Handling) -> str | None:
@@ -72,7 +74,7 @@ def amended(note: str | None, typed: Mapping[str, str]) -> dict[str, str]:
     known = given if given.to_dict() else known
     known = replace(
         known,
-        weights=weights.scheme(typed["weights"] or weights.EQUAL) if "weights" in typed else known.weights,
+        weights=scheme(typed["weights"] or EQUAL) if "weights" in typed else known.weights,
         through_zero=_yes(typed["through_zero"]) if "through_zero" in typed else known.through_zero,
     )
     return rest | {"note": with_handling(new_text, known) or ""}
@@ -104,7 +106,7 @@ def _read(said: Mapping[str, Any]) -> Handling:
     if not isinstance(signal, dict | None):
         raise ValueError("a signal is told as an object")
     return Handling(
-        weights=weights.scheme(said.get("weights", weights.EQUAL)),
+        weights=scheme(said.get("weights", EQUAL)),
         through_zero=bool(said.get("through_zero", False)),
         signal=signal,
     )

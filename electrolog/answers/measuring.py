@@ -12,9 +12,10 @@ from electrolog.record.columns import Value
 from electrolog.record.store import Record
 
 if TYPE_CHECKING:
+    from electrolog.answers.calibrating import NewCalibration
     from electrolog.answers.controlling import Controlled, Wanted
     from electrolog.answers.detecting import Routes
-    from electrolog.answers.entering import Entered, NewCalibration
+    from electrolog.answers.entering import Entered
     from electrolog.answers.figures import Recomputed
     from electrolog.answers.handling import Handling
     from electrolog.answers.history import Reading
@@ -37,7 +38,7 @@ class Measuring:
 
     def calibrate(self, new: Sequence[NewCalibration], *, confirmed: bool = False) -> list[Entered]:
         """Logs calibrations with their raw points and keeps what was computed from them."""
-        from electrolog.answers.entering import log_calibrations
+        from electrolog.answers.calibrating import log_calibrations
 
         return log_calibrations(self.record, new, self.zone, confirmed)
 

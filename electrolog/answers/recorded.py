@@ -6,7 +6,8 @@ from collections.abc import Mapping
 from dataclasses import replace
 from datetime import tzinfo
 
-from electrolog.answers.entering import Entered, NewCalibration, log_calibrations
+from electrolog.answers.calibrating import NewCalibration, log_calibrations
+from electrolog.answers.entering import Entered
 from electrolog.answers.handling import Handling, with_handling
 from electrolog.answers.history import usual_waveform
 from electrolog.answers.signals import Recorded

@@ -5,7 +5,8 @@ from __future__ import annotations
 from collections.abc import Sequence
 from datetime import tzinfo
 
-from electrolog.answers.entering import Entered, NewCalibration, log, log_calibrations
+from electrolog.answers.calibrating import NewCalibration, log_calibrations
+from electrolog.answers.entering import Entered, log
 from electrolog.errors import InputError
 from electrolog.record.columns import Value
 from electrolog.record.last_entry import last_entry

@@ -12,7 +12,7 @@ from electrolog.cli.session import lab_of, once_confirmed
 from electrolog.errors import InputError
 
 if TYPE_CHECKING:
-    from electrolog.answers.entering import NewCalibration
+    from electrolog.answers.calibrating import NewCalibration
     from electrolog.lab import Lab
 
 
@@ -52,7 +52,7 @@ def command(
     electrolog calibrate B9-01 pre DA 0:0.1 0.25uM:3.2 0.5uM:6.1,6.3 1uM:12.2 2uM:24.0 -w triangle --standard S-48-DA
     """
     from electrolog.answers.handling import Handling, with_handling
-    from electrolog.measure.weights import scheme
+    from electrolog.measure.schemes import scheme
 
     if figure is not None:
         from electrolog.show.figures import refuse_undrawable
@@ -115,7 +115,7 @@ def _points(
 def _new(
     lab: Lab, known: dict[str, str], label: str, points: dict[str, list[tuple[float, float]]]
 ) -> list[NewCalibration]:
-    from electrolog.answers.entering import NewCalibration
+    from electrolog.answers.calibrating import NewCalibration
 
     made = []
     for electrode, pairs in points.items():

@@ -35,7 +35,7 @@ def calibrate(
     points: Points = POINTS,
     **more: str,
 ) -> None:
-    from electrolog.answers.entering import NewCalibration
+    from electrolog.answers.calibrating import NewCalibration
 
     values = {"electrode": probe, "at": at, "stage": stage, "analyte": "DA", "waveform": "triangle", **more}
     lab.calibrate([NewCalibration(values, [(c, i * factor) for c, i in points])], confirmed=True)

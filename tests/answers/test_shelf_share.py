@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from pathlib import Path
 
-from electrolog.answers.entering import NewCalibration
+from electrolog.answers.calibrating import NewCalibration
 from electrolog.answers.shelf import Filter
 from electrolog.lab import open_lab
 

@@ -4,7 +4,7 @@ import numpy as np
 import pytest
 
 from electrolog.errors import DataError, InputError
-from electrolog.measure import weights
+from electrolog.measure import schemes, weights
 from electrolog.measure.calibrate import calibrate
 from electrolog.measure.line import fit_line
 from electrolog.measure.uneven import allowance, pooled_growth
@@ -92,14 +92,14 @@ def test_many_calibrations_together_show_what_one_cannot():
     [("1/X", "1/x"), ("1/x²", "1/x2"), ("none", "equal"), ("replicates", "replicates"), ("200pA + 3%", "0.2nA+3%")],
 )
 def test_schemes_have_one_spelling(typed, known):
-    assert weights.scheme(typed) == known
-    assert weights.scheme(known) == known
+    assert schemes.scheme(typed) == known
+    assert schemes.scheme(known) == known
 
 
 @pytest.mark.parametrize("typed", ["", "x", "0.2nA", "0.2nA+3", "0nA+3%", "0.2V+3%", "-1nA+3%"])
 def test_what_is_no_scheme_is_refused(typed):
     with pytest.raises(InputError, match="accepted"):
-        weights.scheme(typed)
+        schemes.scheme(typed)
 
 
 def test_a_scheme_gives_the_weights_it_names():

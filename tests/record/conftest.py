@@ -14,7 +14,7 @@ from typing import Any
 import pytest
 from sqlalchemy import create_engine, make_url, text
 
-from electrolog.answers.entering import NewCalibration
+from electrolog.answers.calibrating import NewCalibration
 from electrolog.lab import Lab, open_lab, set_up
 
 ENGINES = ("sqlite", "postgresql")

@@ -7,7 +7,7 @@ from typing import Any
 
 import pytest
 
-from electrolog.answers.entering import NewCalibration
+from electrolog.answers.calibrating import NewCalibration
 from electrolog.errors import DoubtfulEntry, InputError, UnknownName
 from electrolog.lab import Lab, open_lab
 

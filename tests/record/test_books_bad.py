@@ -14,7 +14,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from electrolog.answers.entering import NewCalibration
+from electrolog.answers.calibrating import NewCalibration
 from electrolog.errors import InputError
 from electrolog.lab import Lab, open_lab
 from electrolog.record.books.extraction import Extraction

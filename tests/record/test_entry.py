@@ -7,7 +7,7 @@ from typing import Any
 
 import pytest
 
-from electrolog.answers.entering import NewCalibration
+from electrolog.answers.calibrating import NewCalibration
 from electrolog.errors import InputError, UnknownName
 from electrolog.lab import Lab
 from electrolog.record import entry, sheets

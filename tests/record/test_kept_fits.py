@@ -6,7 +6,7 @@ from collections.abc import Callable
 
 import pytest
 
-from electrolog.answers.entering import NewCalibration
+from electrolog.answers.calibrating import NewCalibration
 from electrolog.lab import Lab
 from electrolog.record import journal, kept_fits
 from electrolog.record.kept_fits import Seen, Since
