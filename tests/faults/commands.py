@@ -73,7 +73,7 @@ def prepare(lab: Lab, rounds: int) -> None:
 
 
 def new_calibration(values: dict[str, str], points: list[tuple[float, float]]) -> object:
-    from electrolog.answers.entering import NewCalibration
+    from electrolog.answers.calibrating import NewCalibration
 
     return NewCalibration(values, tuple(points))
 

@@ -170,6 +170,14 @@ def forge_figures(connection: sqlite3.Connection, chance: random.Random) -> Done
     return Done(f"kept {name} of calibration {number}", f"calibration {label}: its kept {name}")
 
 
+def spoil_fit(connection: sqlite3.Connection, chance: random.Random) -> Done:
+    """One sign of a kept fit, or of what says how much it has seen: another forecast, and nobody would know why."""
+    name = chance.choice(("fit", "fit", "fit", "fingerprint", "seen_readings", "seen_newest", "seen_correction"))
+    ((number, old),) = connection.execute(f"SELECT analyte_id, {name} FROM kept_fits").fetchall()
+    connection.execute(f"UPDATE kept_fits SET {name} = ? WHERE analyte_id = ?", (another(old, chance), number))
+    return Done(f"kept fit, {name}", "kept fit of dopamine")
+
+
 def any_row(connection: sqlite3.Connection, chance: random.Random) -> tuple[str, int, str]:
     """Sheet, SQLite's own number of the row, and how `verify` calls it."""
     filled = [s for s in SHEETS if connection.execute(f"SELECT count(*) FROM {s.name}").fetchone()[0]]
@@ -193,6 +201,7 @@ def any_entry(connection: sqlite3.Connection, chance: random.Random) -> int:
 KINDS: tuple[Tamper, ...] = (
     *(change_cell, change_cell, change_cell, remove_row, insert_row, swap_rows, change_entry, change_entry),
     *(remove_entry, close_the_gap, reorder_entries, forge_entry, rewrite_to_the_end, cut_tail, forge_figures),
+    spoil_fit,
 )
 
 
@@ -212,6 +221,7 @@ def tamper(whole: Path, copy: Path, seed: int) -> tuple[str, Done]:
 
 def missed(lab: Lab, count: int, folder: Path) -> tuple[Counter[str], list[str]]:
     """How many of each kind were tried, and those that `verify` with a backup's head did not find, or not name."""
+    lab.cohort_fit("dopamine")
     whole = lab.back_up(folder / "whole")
     tried, overlooked = Counter[str](), []
     for seed in range(count):

@@ -25,7 +25,7 @@ from electrolog.lab import open_lab
 lab, rig = open_lab(sys.argv[1]), int(sys.argv[2])
 for number in range(int(sys.argv[3])):
     start = f"2026-02-{1 + rig % 28:02d}T{number // 60 % 24:02d}:{number % 60:02d}:{rig % 60:02d}Z"
-    lab.log("inspections", ["SHARED"], {"at": start, "note": f"{rig}/{number}"})
+    lab.log("inspections", [f"R{rig}"], {"at": start, "note": f"{rig}/{number}"})
 """
 READER = """
 import sys
@@ -60,7 +60,8 @@ class Outcome:
 def run(where: str, writers: int, entries: int) -> Outcome:
     set_up(where)
     lab = open_lab(where)
-    lab.make_probes(["SHARED"])
+    # A probe for each rig: a life of thousands of entries would take longer to read than an entry does to write.
+    probes = lab.make_probes([f"R{rig}" for rig in range(writers)])
     reader = started(READER, where)
     assert reader.stdout is not None
     assert reader.stdout.readline().strip() == b"looking"
@@ -69,8 +70,7 @@ def run(where: str, writers: int, entries: int) -> Outcome:
     said = [program.communicate()[1].decode() for program in rigs]
     took, used = time.perf_counter() - began, cpu_of_children_s() - used
     said.append(reader.communicate()[1].decode())
-    _, events = lab.life("SHARED")
-    found = [event.row["note"] for event in events]
+    found = [event.row["note"] for probe in probes for event in lab.life(probe)[1]]
     wanted = {f"{rig}/{number}" for rig in range(writers) for number in range(entries)}
     verified = lab.verify()
     whole = verified.whole and verified.entries - before == len(wanted)
