@@ -151,9 +151,9 @@ def ask(
     order = tuple(probe["electrode"] for probe in probes)
     story = {label: lives.until(told.get(label, ()), moment) for label in order}
     ahead = {label: told.get(label, [])[len(story[label]) :] for label in order}
-    fit = fits.fit_for(record, chosen)
-    figures = made.all_figures(record, found)
     units = [(label, chosen.waveform) for label in order]
+    fit = fits.fit_for(record, chosen, units=units)
+    figures = made.all_figures(record, found)
     cohort = gather(probes, story, figures, chosen.analyte, units, (REFERENCE_SETTING, setting, *more_settings))
     from electrolog.fouling.forecast import posterior
 

@@ -79,7 +79,7 @@ def board(record: Record, labels: Sequence[str] | None, run: Run, moment: dateti
         setting = Names(connection).word("setting", run.setting)
         seen = queries.lives_seen(connection, moment)
     wanted = list(seen) if labels is None else list(dict.fromkeys(labels))
-    fit, correction = fits.fit_for(record, assay), fits.corrected_last(record, assay)
+    fit, correction = fits.fit_for(record, assay, units=()), fits.corrected_last(record, assay)
     if labels is not None or len(wanted) < LARGE:
         return Board(assay, setting, fit, *_fresh(record, wanted, run, moment, ALL_DRAWS), ALL_DRAWS, moment)
     path = cache.path_of(record, "shelf.npz", assay.analyte, assay.waveform)

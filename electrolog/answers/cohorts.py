@@ -80,6 +80,11 @@ class _Names:
     days: _Index
 
 
+def unit_label(unit: UnitKey) -> str:
+    """As a fit knows it."""
+    return "\n".join(unit)
+
+
 def gather(
     probes: Sequence[Row],
     life: Mapping[str, list[Event]],
@@ -144,7 +149,7 @@ class Gathering:
             which=np.array(columns.which, dtype=np.int64),
             amount=np.array(columns.amount, dtype=np.float64),
             se=np.array(columns.se, dtype=np.float64),
-            units=tuple(f"{electrode}\n{waveform}" for electrode, waveform in self._units),
+            units=tuple(map(unit_label, self._units)),
             settings=names.settings.names,
             renewals=names.renewals.names,
             days=names.days.names,

@@ -90,13 +90,21 @@ def is_kept(record: Record, analyte: str) -> bool:
 
 
 def fit_for(
-    record: Record, asked: Assay, fresh: bool = False, known: tuple[Cohort, kept_fits.Seen] | None = None
+    record: Record,
+    asked: Assay,
+    fresh: bool = False,
+    known: tuple[Cohort, kept_fits.Seen] | None = None,
+    units: Sequence[UnitKey] | None = None,
 ) -> CohortFit:
-    """The cohort's fit, from the record if what it saw is still nearly all there is; `known`: as just gathered."""
+    """The cohort's fit, from the record if what it saw is still nearly all there is.
+
+    known: as just gathered. units: those that will be forecast, whose own share is to be taken out; None: any.
+    """
+    labels = None if units is None else [cohorts.unit_label(unit) for unit in units]
     with record.reading() as connection:
         if not fresh and _still_holds(connection, asked.analyte_id):
             with suppress(DataError):  # of a layout that this version can't read
-                return from_dict(kept_fits.content(connection, asked.analyte_id))
+                return from_dict(kept_fits.content(connection, asked.analyte_id, labels))
     cohort, seen = known or gathered(record, asked)
     fit = fit_cohort(cohort.events)
     keep(record, asked.analyte_id, fit, seen)

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from dataclasses import dataclass
 from typing import Any
 
@@ -64,7 +65,7 @@ class CohortFit:
         return to_dict(self)
 
     @staticmethod
-    def from_dict(kept: dict[str, Any]) -> CohortFit:
+    def from_dict(kept: Mapping[str, Any]) -> CohortFit:
         from electrolog.fouling.kept import from_dict
 
         return from_dict(kept)

@@ -1,11 +1,14 @@
 """A cohort's fit as plain data, never as code: JSON-able, and read back without any fitting library.
 
-Arrays stand as base64 of little-endian bytes beside their shape: exact, and quick to read.
+What is kept of each unit stands apart, by its label: whoever asks about one needs no other's. Arrays stand as base64 of
+little-endian bytes beside their shape: exact, and quick to read.
 """
 
 from __future__ import annotations
 
 import base64
+from collections import defaultdict
+from collections.abc import Mapping
 from typing import Any
 
 import numpy as np
@@ -22,32 +25,39 @@ from electrolog.fouling.shapes import SHAPES
 KINDS = {"f": "<f8", "i": "<i8", "b": "|b1"}
 PLAIN = ("method", "fingerprint", "shape_weights", "n_units", "n_readings", "converged", "notes", "summary")
 ARRAYS = ("theta", "theta_draws", "theta_covariance", "mean", "mean_draws")
+STAND_IN = ("columns", "precision", "shift")
 
 
 def to_dict(fit: CohortFit) -> dict[str, Any]:
+    """What all units share under "shared", what is each unit's own under "units" by its label."""
     plain = {name: getattr(fit, name) for name in PLAIN}
     line = {"typical_variance": fit.line_error.typical_variance, "prior_df": fit.line_error.prior_df}
-    return plain | {
+    shared = plain | {
         "line_error": line,
         "notes": list(fit.notes),
         "components": [_component(part) for part in fit.components],
     }
+    return {"shared": shared, "units": _units(fit)}
 
 
-def from_dict(kept: dict[str, Any]) -> CohortFit:
-    """Raises DataError when the fit was kept by another version of the method, or its layout is none that is known."""
-    if kept.get("method") != METHOD:
-        raise DataError(
-            f"the kept fit was made by method {kept.get('method')}; this version makes {METHOD}", "fit the cohort again"
-        )
+def from_dict(kept: Mapping[str, Any]) -> CohortFit:
+    """With those units that are given. Raises DataError when the fit was kept by another version of the method, or its
+    layout is none that is known.
+    """
     try:
-        return _read(kept)
-    except (KeyError, TypeError, ValueError) as fault:
+        shared = kept["shared"]
+        if shared.get("method") == METHOD:
+            return _read(shared, kept["units"])
+    except (AttributeError, KeyError, TypeError, ValueError) as fault:
         raise DataError(f"the kept fit can't be read: {fault!r}", "fit the cohort again") from fault
+    raise DataError(
+        f"the kept fit was made by method {shared.get('method')}; this version makes {METHOD}", "fit the cohort again"
+    )
 
 
-def _read(kept: dict[str, Any]) -> CohortFit:
-    parts = tuple(_read_component(part) for part in kept["components"])
+def _read(kept: dict[str, Any], units: Mapping[str, Any]) -> CohortFit:
+    stand_ins = _read_units(units, len(kept["components"]))
+    parts = tuple(_read_component(part, own) for part, own in zip(kept["components"], stand_ins, strict=True))
     plain = {name: kept[name] for name in PLAIN}
     return CohortFit(
         **(plain | {"line_error": LineError(**kept["line_error"]), "notes": tuple(kept["notes"]), "components": parts})
@@ -67,11 +77,10 @@ def _component(part: Component) -> dict[str, Any]:
         "variance_slot": _packed(effects.variance_slot),
         "covariance": _covariance(part.covariance),
         "weight": part.weight,
-        "units": [_units(kept) for kept in part.units],
     } | {name: _packed(getattr(part, name)) for name in ARRAYS}
 
 
-def _read_component(kept: dict[str, Any]) -> Component:
+def _read_component(kept: dict[str, Any], units: tuple[KeptUnits, ...]) -> Component:
     layout = Layout(
         SHAPES[kept["shape"]],
         tuple(kept["settings"]),
@@ -84,7 +93,6 @@ def _read_component(kept: dict[str, Any]) -> Component:
         _unpacked(kept["fixed_variance"]),
         _unpacked(kept["variance_slot"]),
     )
-    units = tuple(_read_units(one) for one in kept["units"])
     arrays = {name: _unpacked(kept[name]) for name in ARRAYS}
     return Component(
         layout=layout,
@@ -108,14 +116,31 @@ def _read_covariance(kept: dict[str, Any]) -> Covariance:
     return Thin(*(_unpacked(kept[name]) for name in ("precision", "couplings", "root")))
 
 
-def _units(kept: KeptUnits) -> dict[str, Any]:
-    arrays = {name: _packed(getattr(kept, name)) for name in ("columns", "precision", "shift")}
-    return {"labels": list(kept.labels)} | arrays
+def _units(fit: CohortFit) -> dict[str, list[dict[str, Any]]]:
+    """By label: the unit's stand-in in each component that has one."""
+    found: dict[str, list[dict[str, Any]]] = defaultdict(list)
+    for number, part in enumerate(fit.components):
+        for batch in part.units:
+            arrays = (getattr(batch, name) for name in STAND_IN)
+            for label, *own in zip(batch.labels, *arrays, strict=True):
+                packed = {name: _packed(array) for name, array in zip(STAND_IN, own, strict=True)}
+                found[label].append({"component": number, **packed})
+    return dict(found)
 
 
-def _read_units(kept: dict[str, Any]) -> KeptUnits:
-    arrays = (_unpacked(kept[name]) for name in ("columns", "precision", "shift"))
-    return KeptUnits(tuple(kept["labels"]), *arrays)
+def _read_units(units: Mapping[str, Any], n_components: int) -> list[tuple[KeptUnits, ...]]:
+    """Those of each component, units with as many readings together."""
+    alike: dict[tuple[int, tuple[int, ...]], list[tuple[str, list[NDArray[Any]]]]] = defaultdict(list)
+    for label, parts in units.items():
+        for part in parts:
+            arrays = [_unpacked(part[name]) for name in STAND_IN]
+            alike[part["component"], arrays[0].shape].append((label, arrays))
+    found: list[list[KeptUnits]] = [[] for _ in range(n_components)]
+    for (number, _), together in alike.items():
+        labels = tuple(label for label, _ in together)
+        columns, precision, shift = (np.stack(arrays) for arrays in zip(*(own for _, own in together), strict=True))
+        found[number].append(KeptUnits(labels, columns, precision, shift))
+    return [tuple(own) for own in found]
 
 
 def _packed(array: NDArray[Any]) -> dict[str, Any]:

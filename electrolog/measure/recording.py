@@ -14,6 +14,7 @@ Array = NDArray[np.float64]
 Flags = NDArray[np.bool_]
 
 MOST_SAMPLES = 1_000_000_000
+MOST_NA, MOST_S = 1e15, 1e15  # a million amperes, thirty million years: beyond lie other bytes read as numbers
 FEWEST_SAMPLES = 20
 GAP_STEPS = 5.0  # common practice: a pause of more than five samples is a gap
 CLIPPED_RUN = 5  # noise doesn't hold a signal at its very extreme for five samples on end
@@ -46,9 +47,11 @@ def checked_clock(time_s: ArrayLike) -> Array:
     if time.ndim != 1 or time.size < FEWEST_SAMPLES:
         raise InputError(f"{time.size} samples are no recording; {FEWEST_SAMPLES} or more are needed, in one row")
     refuse_too_many(time.size)
-    bad = np.flatnonzero(~np.isfinite(time))
+    bad = np.flatnonzero(~(np.abs(time) <= MOST_S))
     if bad.size:
-        raise InputError(f"the time of sample {bad[0] + 1} is {time[bad[0]]}; a finite number of seconds is needed")
+        raise InputError(
+            f"the time of sample {bad[0] + 1} is {time[bad[0]]:g} s; accepted: a finite number up to {MOST_S:g}"
+        )
     back = np.flatnonzero(np.diff(time) <= 0)
     if back.size:
         at = int(back[0])
@@ -65,11 +68,11 @@ def checked_current(current_na: ArrayLike, samples: int) -> Array:
     current = np.asarray(current_na, dtype=float)
     if current.shape != (samples,):
         raise InputError(f"{samples} times and {current.size} currents don't pair up; each sample needs one of both")
-    bad = np.flatnonzero(~np.isfinite(current))
+    bad = np.flatnonzero(~(np.abs(current) <= MOST_NA))
     if bad.size:
         raise InputError(
-            f"the current of sample {bad[0] + 1} is {current[bad[0]]}"
-            f"{f' ({bad.size} such samples)' if bad.size > 1 else ''}; finite numbers are needed",
+            f"the current of sample {bad[0] + 1} is {current[bad[0]]:g} nA"
+            f"{f' ({bad.size} such samples)' if bad.size > 1 else ''}; accepted: finite numbers up to {MOST_NA:g}",
             "leave those samples out of the file: a gap is named and borne",
         )
     if current.max() == current.min():

@@ -10,7 +10,7 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from electrolog.errors import DataError, InputError
-from electrolog.measure.recording import Span, checked_clock, clipped, refuse_too_many, spans_of
+from electrolog.measure.recording import MOST_NA, Span, checked_clock, clipped, refuse_too_many, spans_of
 
 Array = NDArray[np.float64]
 
@@ -69,10 +69,11 @@ def first_pass(sheet: ScanSheet, block: int) -> tuple[Array, Reach]:
 
 def _reach_of(rows: NDArray[np.floating[Any]], first: int) -> tuple[float, float]:
     low, high = float(rows.min()), float(rows.max())
-    if not (np.isfinite(low) and np.isfinite(high)):
-        row, column = (int(i[0]) for i in np.nonzero(~np.isfinite(rows)))
+    if not (low >= -MOST_NA and high <= MOST_NA):
+        row, column = (int(i[0]) for i in np.nonzero(~(np.abs(rows) <= MOST_NA)))
         raise InputError(
-            f"scan {first + row + 1} holds no finite number at its point {column + 1}; every point needs one",
+            f"scan {first + row + 1} holds {rows[row, column]:g} nA at its point {column + 1}; accepted: finite numbers"
+            f" up to {MOST_NA:g}",
             "leave that scan out of the file: a gap is named and borne",
         )
     return low, high

@@ -49,7 +49,8 @@ def full_metadata() -> MetaData:
     for sheet in SHEETS:
         _guard(sheet, full.tables[sheet.name])
     _index_cohorts(full.tables["calibrations"])
-    for name, target in (("calibration_figures", "calibrations"), ("kept_fits", "analytes")):
+    derived = {"calibration_figures": "calibrations", "kept_fits": "analytes", "kept_fit_units": "analytes"}
+    for name, target in derived.items():
         key = f"{target.removesuffix('s')}_id"
         full.tables[name].append_constraint(ForeignKeyConstraint([key], [f"{target}.id"]))
     return full

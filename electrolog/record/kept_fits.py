@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import hashlib
 import json
-from collections.abc import Mapping
+from collections.abc import Collection, Mapping, Sequence
 from dataclasses import dataclass
 from datetime import datetime
 from typing import Any
@@ -13,9 +13,10 @@ from sqlalchemy import ColumnElement, Connection, and_, exists, func, or_, selec
 
 from electrolog.errors import DataError
 from electrolog.record import schema, sheets
-from electrolog.record.journal import Writer
+from electrolog.record.journal import Writer, insert_columns
 
 _OF_ALL = (sheets.TERMS.name, sheets.WAVEFORMS.name)  # words that any cohort may use
+MOST_NAMED = 500  # units in one question; whoever asks about more is given all
 _SEEN = ("seen_readings", "seen_newest", "seen_correction")
 
 
@@ -68,45 +69,50 @@ def kept_fit(connection: Connection, analyte_id: int) -> KeptFit | None:
     return KeptFit(row.method, row.fingerprint, seen, row.made_at)
 
 
-def content(connection: Connection, analyte_id: int) -> dict[str, Any]:
-    """The kept fit itself, as plain data.
+def content(connection: Connection, analyte_id: int, units: Collection[str] | None = None) -> dict[str, Any]:
+    """The kept fit itself, as plain data: what is shared, and the named units' own, of all where None are named.
 
     Raises DataError where it isn't as it was kept: a bit that flipped would give another forecast, and nothing would
     show it.
     """
-    table = schema.kept_fits
+    table, own = schema.kept_fits, schema.kept_fit_units.c
     row = connection.execute(select(table).where(table.c.analyte_id == analyte_id)).mappings().one()
-    if not _is_whole(dict(row)):
+    query = select(own.unit, own.fit).where(own.analyte_id == analyte_id)
+    if units is not None and len(units) <= MOST_NAMED:
+        query = query.where(own.unit.in_(units))
+    parts = connection.execute(query).all()
+    if not _is_whole(connection, dict(row), parts):
         raise DataError("the kept fit isn't what was kept", "fit the cohort again")
-    found: dict[str, Any] = json.loads(row["fit"])["fit"]
-    return found
+    return {
+        "shared": json.loads(_text(row["fit"])),
+        "units": {part.unit: json.loads(_text(part.fit)) for part in parts},
+    }
 
 
 def changed(connection: Connection, method: str) -> list[str]:
     """The analytes whose fit, kept by this method, isn't as it was kept."""
-    table, analytes = schema.kept_fits, schema.tables[sheets.ANALYTES.name]
-    of = table.join(analytes, table.c.analyte_id == analytes.c.id)
-    rows = connection.execute(select(table, analytes.c.analyte).select_from(of).where(table.c.method == method))
-    return [row["analyte"] for row in rows.mappings() if not _is_whole(dict(row))]
-
-
-def _sealed(row: Mapping[str, Any], fit: str) -> str:
-    """JSON with the fit's own hash before it, and that of what says how much it has seen."""
-    said = [row[name] for name in ("method", "fingerprint", *_SEEN)]
-    digest = hashlib.sha256(f"{json.dumps(said)}{fit}".encode()).hexdigest()
-    return f'{{"sha256": "{digest}", "fit": {fit}}}'
-
-
-def _is_whole(row: Mapping[str, Any]) -> bool:
-    kept = row["fit"]
-    return bool(kept == _sealed(row, kept[len(_sealed(row, "")) - 1 : -1]))
+    table, own = schema.kept_fits, schema.kept_fit_units.c
+    analytes = schema.tables[sheets.ANALYTES.name].c
+    rows = connection.execute(select(table).where(table.c.method == method)).mappings().all()
+    found = []
+    for row in rows:
+        parts = connection.execute(select(own.unit, own.fit).where(own.analyte_id == row["analyte_id"])).all()
+        if not _is_whole(connection, dict(row), parts):
+            name = select(analytes.analyte).where(analytes.id == row["analyte_id"])
+            found.append(str(connection.execute(name).scalar()))
+    return found
 
 
 def keep_fit(
     writer: Writer, analyte_id: int, method: str, fingerprint: str, seen: Seen, fit: Mapping[str, Any]
 ) -> None:
-    """In place of the one kept before; of two machines that fitted at once, what had seen more is kept."""
-    table = schema.kept_fits
+    """In place of the one kept before; of two machines that fitted at once, what had seen more is kept.
+
+    fit: what all units share under "shared", each one's own under "units" by its label.
+    """
+    before = kept_fit(writer.connection, analyte_id)
+    if before is not None and before.method == method and not _as_much(seen, before.seen):
+        return
     row = {
         "method": method,
         "fingerprint": fingerprint,
@@ -115,12 +121,45 @@ def keep_fit(
         "seen_correction": seen.correction,
         "made_at": writer.at,
     }
-    row["fit"] = _sealed(row, json.dumps(fit, allow_nan=False))
-    before = kept_fit(writer.connection, analyte_id)
-    if before is None:
-        writer.connection.execute(table.insert().values(analyte_id=analyte_id, **row))
-    elif before.method != method or _as_much(seen, before.seen):
-        writer.connection.execute(table.update().where(table.c.analyte_id == analyte_id).values(**row))
+    shared = _sealed(_said(row, len(fit["units"])), json.dumps(fit["shared"], allow_nan=False))
+    for table in (schema.kept_fits, schema.kept_fit_units):
+        writer.connection.execute(table.delete().where(table.c.analyte_id == analyte_id))
+    writer.connection.execute(schema.kept_fits.insert().values(analyte_id=analyte_id, fit=shared, **row))
+    units = {unit: json.dumps(own, allow_nan=False) for unit, own in fit["units"].items()}
+    columns = {
+        "analyte_id": [analyte_id] * len(units),
+        "unit": list(units),
+        "fit": [_sealed(_seal(shared) + unit, text) for unit, text in units.items()],
+    }
+    if units:
+        insert_columns(writer.connection, schema.kept_fit_units, columns)
+
+
+def _said(row: Mapping[str, Any], units: int) -> str:
+    """What the fit's own hash is also over: what it has seen, and of how many units it holds something."""
+    return json.dumps([*(row[name] for name in ("method", "fingerprint", *_SEEN)), units])
+
+
+def _sealed(said: str, text: str) -> str:
+    """The text after its own hash, and that of what stands elsewhere and belongs to it."""
+    return hashlib.sha256(f"{said}{text}".encode()).hexdigest() + text
+
+
+def _seal(sealed: str) -> str:
+    return sealed[:64]
+
+
+def _text(sealed: str) -> str:
+    return sealed[64:]
+
+
+def _is_whole(connection: Connection, row: Mapping[str, Any], parts: Sequence[Any]) -> bool:
+    own = schema.kept_fit_units.c
+    count = connection.execute(select(func.count()).where(own.analyte_id == row["analyte_id"])).scalar_one()
+    shared = row["fit"]
+    return shared == _sealed(_said(row, count), _text(shared)) and all(
+        part.fit == _sealed(_seal(shared) + part.unit, _text(part.fit)) for part in parts
+    )
 
 
 def _as_much(seen: Seen, before: Seen) -> bool:

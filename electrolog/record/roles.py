@@ -13,7 +13,7 @@ from electrolog.record.store import Record
 
 READ, BENCH, STEWARD = ROLES = ("read", "bench", "steward")
 _LABS_OWN = (sheets.TERMS, sheets.ANALYTES, sheets.WAVEFORMS, sheets.LIMITS)  # its words and demands: a steward's
-_DERIVED = (schema.calibration_figures.name, schema.kept_fits.name)
+_DERIVED = tuple(table.name for table in (schema.calibration_figures, schema.kept_fits, schema.kept_fit_units))
 _LONGEST = 63 - len("_steward")  # PostgreSQL cuts a longer name off
 
 # Whoever is no owner: who, when and where in the chain are the server's to say, and what, as far as the role goes.

@@ -27,7 +27,7 @@ from electrolog.record import columns as kinds
 from electrolog.record.columns import as_utc
 from electrolog.record.sheets import POINTS, SHEETS, Sheet
 
-REVISION = "0002"  # the newest migration; a test holds it equal to the newest file in migrations/
+REVISION = "0003"  # the newest migration; a test holds it equal to the newest file in migrations/
 
 metadata = MetaData()
 
@@ -140,6 +140,14 @@ kept_fits = Table(
     SqlColumn("made_at", UtcMoment(), nullable=False),
     SqlColumn("fit", SqlText, nullable=False),
     SqlColumn("seen_newest", Integer),
+)
+# What a kept fit holds of each unit, apart: who asks about one probe reads no other's.
+kept_fit_units = Table(
+    "kept_fit_units",
+    metadata,
+    SqlColumn("analyte_id", Integer, primary_key=True, autoincrement=False),
+    SqlColumn("unit", SqlText, primary_key=True),
+    SqlColumn("fit", SqlText, nullable=False),
 )
 
 # Alembic's own table, described here so that an ordinary command can look at it without loading Alembic.

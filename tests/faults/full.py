@@ -7,6 +7,7 @@ Each entry is there as a whole or refused in words, and with room made again eve
 
 from __future__ import annotations
 
+import errno
 import os
 import random
 import subprocess
@@ -72,11 +73,27 @@ def filled(disk: Path, room_left: int) -> Iterator[None]:
     filler = disk / "filler"
     try:
         with filler.open("wb") as file:
-            found = os.statvfs(disk)
-            os.posix_fallocate(file.fileno(), 0, max(1, found.f_bavail * found.f_frsize - room_left))
+            while not _took(file.fileno(), _room(disk) - room_left):
+                pass
         yield
     finally:
         filler.unlink()
+
+
+def _room(disk: Path) -> int:
+    found = os.statvfs(disk)
+    return found.f_bavail * found.f_frsize
+
+
+def _took(file: int, size: int) -> bool:
+    """False where the server took of the same room meanwhile."""
+    try:
+        os.posix_fallocate(file, 0, max(1, size))
+    except OSError as why:
+        if why.errno != errno.ENOSPC or size <= 1:
+            raise
+        return False
+    return True
 
 
 def tried_once(where: str, disk: Path, number: int, room_left: int, out: Outcome) -> bool:

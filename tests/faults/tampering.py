@@ -172,10 +172,11 @@ def forge_figures(connection: sqlite3.Connection, chance: random.Random) -> Done
 
 def spoil_fit(connection: sqlite3.Connection, chance: random.Random) -> Done:
     """One sign of a kept fit, or of what says how much it has seen: another forecast, and nobody would know why."""
-    name = chance.choice(("fit", "fit", "fit", "fingerprint", "seen_readings", "seen_newest", "seen_correction"))
-    ((number, old),) = connection.execute(f"SELECT analyte_id, {name} FROM kept_fits").fetchall()
-    connection.execute(f"UPDATE kept_fits SET {name} = ? WHERE analyte_id = ?", (another(old, chance), number))
-    return Done(f"kept fit, {name}", "kept fit of dopamine")
+    places = [("kept_fits", name) for name in ("fit", "fingerprint", "seen_readings", "seen_newest", "seen_correction")]
+    table, name = chance.choice([*places, *[("kept_fit_units", name) for name in ("fit", "unit")]])
+    rowid, old = chance.choice(connection.execute(f"SELECT rowid, {name} FROM {table}").fetchall())
+    connection.execute(f"UPDATE {table} SET {name} = ? WHERE rowid = ?", (another(old, chance), rowid))
+    return Done(f"{table}.{name}", "kept fit of dopamine")
 
 
 def any_row(connection: sqlite3.Connection, chance: random.Random) -> tuple[str, int, str]:

@@ -124,19 +124,28 @@ class TestKeptFit:
         assert back.summary == fit.summary
         assert back.fingerprint == fit.fingerprint
 
+    def test_a_unit_is_forecast_alike_whatever_else_is_read_back(self, lab, fit):
+        kept = fit.to_dict()
+        label = lab.events.units[17]
+        alone = CohortFit.from_dict({"shared": kept["shared"], "units": {label: kept["units"][label]}})
+        own = take_units(lab.events, np.array([17]))
+        drawn = [posterior(one, own).log_sensitivity(ahead(own)) for one in (fit, alone)]
+        np.testing.assert_array_equal(*drawn)
+
     def test_a_fit_by_another_method_is_refused(self, fit):
         with pytest.raises(DataError, match="cohort-0"):
-            CohortFit.from_dict(fit.to_dict() | {"method": "cohort-0"})
+            CohortFit.from_dict({"shared": fit.to_dict()["shared"] | {"method": "cohort-0"}, "units": {}})
 
     @pytest.mark.parametrize("missing", ["components", "line_error", "summary"])
     def test_a_fit_of_another_layout_is_refused(self, fit, missing):
-        kept = {name: value for name, value in fit.to_dict().items() if name != missing}
+        kept = fit.to_dict()
+        del kept["shared"][missing]
         with pytest.raises(DataError, match=missing):
             CohortFit.from_dict(kept)
 
     def test_a_component_of_another_layout_is_refused(self, fit):
         kept = fit.to_dict()
-        del kept["components"][0]["mean_draws"]
+        del kept["shared"]["components"][0]["mean_draws"]
         with pytest.raises(DataError, match="mean_draws"):
             CohortFit.from_dict(kept)
 

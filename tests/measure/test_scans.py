@@ -123,7 +123,10 @@ def test_what_is_no_sheet_is_refused(made):
     scans, potential, time, _ = made
     broken = scans[:200].copy()
     broken[17, 3] = np.nan
-    with pytest.raises(InputError, match="scan 18 holds no finite number at its point 4"):
+    with pytest.raises(InputError, match="scan 18 holds nan nA at its point 4"):
+        read_scans(broken, potential, time[:200])
+    broken[17, 3] = 1e20
+    with pytest.raises(InputError, match=r"scan 18 holds 1e\+20 nA at its point 4; accepted: finite"):
         read_scans(broken, potential, time[:200])
     with pytest.raises(InputError, match="two dimensions"):
         read_scans(scans[0], potential, time)

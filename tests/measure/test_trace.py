@@ -207,6 +207,13 @@ def test_noise_alone_holds_no_injection():
         (np.arange(10.0), np.arange(10.0), InputError, "10 samples are no recording"),
         (np.arange(100.0), np.arange(99.0), InputError, "don't pair up"),
         (np.arange(100.0), np.where(np.arange(100) == 7, np.nan, 1.0), InputError, "current of sample 8 is nan"),
+        (
+            np.arange(100.0),
+            np.where(np.arange(100) == 7, -1e200, 1.0),
+            InputError,
+            r"current of sample 8 is -1e\+200 nA",
+        ),
+        (np.where(np.arange(100) == 99, 1e200, np.arange(100.0)), np.ones(100), InputError, r"sample 100 is 1e\+200 s"),
         (np.where(np.arange(100) == 7, np.inf, np.arange(100.0)), np.arange(100.0), InputError, "time of sample 8"),
         (np.arange(100.0), np.ones(100), DataError, "1 nA throughout"),
         (np.arange(30.0), np.random.default_rng(0).normal(size=30), DataError, "too short"),

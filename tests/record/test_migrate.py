@@ -5,7 +5,6 @@ from __future__ import annotations
 import sqlite3
 from collections.abc import Callable
 from contextlib import closing
-from dataclasses import astuple
 from pathlib import Path
 from typing import Any
 
@@ -15,8 +14,7 @@ from sqlalchemy.exc import IntegrityError
 
 from electrolog.errors import RecordError
 from electrolog.lab import Lab, open_lab, set_up
-from electrolog.record import builtin, kept_fits, migrate, schema
-from electrolog.record.names import Names
+from electrolog.record import builtin, migrate, schema
 from electrolog.record.store import connected, open_record
 from tests.faults import migrating
 
@@ -59,14 +57,16 @@ def test_a_populated_record_goes_down_and_up_again(lived_in: Lab, raw: Raw) -> N
         raw(lived_in, "DELETE FROM analytes")
 
 
-def test_a_fit_kept_before_fits_knew_their_newest_calibration_is_still_used(lived_in: Lab, raw: Raw) -> None:
+def test_a_fit_kept_in_another_layout_is_thrown_away_and_made_again(lived_in: Lab, raw: Raw) -> None:
     lived_in.cohort_fit("dopamine")
-    with lived_in.record.reading() as connection:
-        seen = kept_fits.to_be_seen(connection, Names(connection).row_id("analytes", "dopamine"))
     migrate.to_revision(lived_in.record, "0001")
     assert "seen_newest" not in {column["name"] for column in inspect(lived_in.record.engine).get_columns("kept_fits")}
+    columns = "analyte_id, method, fingerprint, seen_readings, seen_correction, made_at, fit"
+    values = "id, 'cohort-4', 'x', 2, 0, '2026-01-01T00:00:00.000000Z', '{}'"
+    raw(lived_in, f"INSERT INTO kept_fits ({columns}) SELECT {values} FROM analytes WHERE analyte = 'dopamine'")
     migrate.to_revision(lived_in.record, schema.REVISION)
-    assert raw(lived_in, "SELECT seen_readings, seen_newest, seen_correction FROM kept_fits") == [astuple(seen)]
+    assert raw(lived_in, "SELECT * FROM kept_fits") == []
+    assert lived_in.cohort_fit("dopamine").calibrations == 2
     assert lived_in.verify().whole
 
 

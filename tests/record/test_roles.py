@@ -17,7 +17,7 @@ from sqlalchemy.exc import DBAPIError
 from electrolog.clock import utc_now
 from electrolog.errors import InputError, RecordError, UnknownName
 from electrolog.lab import Lab, open_lab
-from electrolog.record import journal, schema
+from electrolog.record import journal, migrate, schema
 
 Raw = Callable[..., list[Any]]
 POINTS = [(0.0, 0.1), (1.0, 12.2), (2.0, 24.0)]
@@ -255,6 +255,15 @@ def test_a_stranger_does_not_even_get_in(login: Callable[[str], Lab], server: La
     raw(server, "CREATE ROLE stranger LOGIN")
     with pytest.raises(RecordError, match="may not do that"):
         open_lab(make_url(server.record.engine.url).set(username="stranger").render_as_string(False))
+
+
+def test_roles_hold_for_a_table_that_a_later_migration_brings(login: Callable[[str], Lab], server: Lab) -> None:
+    reader, bench = login("read"), login("bench")
+    migrate.to_revision(server.record, "0002")
+    migrate.to_revision(server.record, schema.REVISION)
+    made = bench.cohort_fit("dopamine")
+    assert reader.cohort_fit("dopamine").made_at == made.made_at
+    assert refused(reader, "DELETE FROM kept_fit_units") == NOT_ALLOWED
 
 
 def test_the_roles_can_be_made_again(server: Lab) -> None:
