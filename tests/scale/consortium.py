@@ -21,7 +21,7 @@ from electrolog.record.store import Record, connected
 from tests.scale.one_lab import NAME
 
 SHARED = ("terms", "waveforms")  # words of all labs: taken over once, as they stand
-LABELS = ("analyte", "batch", "electrode", "standard", "calibration", "rig", "fit")
+LABELS = ("analyte", "batch", "electrode", "standard", "calibration", "rig", "unit", "fit")
 LINKS = {
     "batch_id": "batches",
     "electrode_id": "electrodes",
