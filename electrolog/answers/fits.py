@@ -123,8 +123,9 @@ def corrected_last(record: Record, asked: Assay) -> int:
 def keep(record: Record, analyte_id: int, fit: CohortFit, seen: kept_fits.Seen) -> None:
     if not record.may_keep:
         return
+    ready = kept_fits.sealed(fit.method, fit.fingerprint, seen, to_dict(fit))
     with record.writing() as writer:
-        kept_fits.keep_fit(writer, analyte_id, fit.method, fit.fingerprint, seen, to_dict(fit))
+        kept_fits.keep_fit(writer, analyte_id, ready)
 
 
 def reading_sd_log(fit: CohortFit) -> float:

@@ -49,6 +49,15 @@ class KeptFit:
     made_at: datetime
 
 
+@dataclass(frozen=True)
+class Sealed:
+    """A fit ready to be kept: its row, and each unit's. Made beforehand, or everybody would wait for it to write."""
+
+    seen: Seen
+    row: Mapping[str, Any]
+    units: Mapping[str, str]
+
+
 def to_be_seen(connection: Connection, analyte_id: int) -> Seen:
     """What a fit made now would see."""
     calibrations, journal = schema.tables["calibrations"], schema.journal
@@ -103,35 +112,33 @@ def changed(connection: Connection, method: str) -> list[str]:
     return found
 
 
-def keep_fit(
-    writer: Writer, analyte_id: int, method: str, fingerprint: str, seen: Seen, fit: Mapping[str, Any]
-) -> None:
-    """In place of the one kept before; of two machines that fitted at once, what had seen more is kept.
-
-    fit: what all units share under "shared", each one's own under "units" by its label.
-    """
-    before = kept_fit(writer.connection, analyte_id)
-    if before is not None and before.method == method and not _as_much(seen, before.seen):
-        return
+def sealed(method: str, fingerprint: str, seen: Seen, fit: Mapping[str, Any]) -> Sealed:
+    """fit: what all units share under "shared", each one's own under "units" by its label."""
     row = {
         "method": method,
         "fingerprint": fingerprint,
         "seen_readings": seen.readings,
         "seen_newest": seen.newest,
         "seen_correction": seen.correction,
-        "made_at": writer.at,
     }
-    shared = _sealed(_said(row, len(fit["units"])), json.dumps(fit["shared"], allow_nan=False))
+    shared = _hashed(_said(row, len(fit["units"])), json.dumps(fit["shared"], allow_nan=False))
+    own = {unit: json.dumps(part, allow_nan=False) for unit, part in fit["units"].items()}
+    units = {unit: _hashed(_hash(shared) + unit, text) for unit, text in own.items()}
+    return Sealed(seen, row | {"fit": shared}, units)
+
+
+def keep_fit(writer: Writer, analyte_id: int, fit: Sealed) -> None:
+    """In place of the one kept before; of two machines that fitted at once, what had seen more is kept."""
+    before = kept_fit(writer.connection, analyte_id)
+    if before is not None and before.method == fit.row["method"] and not _as_much(fit.seen, before.seen):
+        return
     for table in (schema.kept_fits, schema.kept_fit_units):
         writer.connection.execute(table.delete().where(table.c.analyte_id == analyte_id))
-    writer.connection.execute(schema.kept_fits.insert().values(analyte_id=analyte_id, fit=shared, **row))
-    units = {unit: json.dumps(own, allow_nan=False) for unit, own in fit["units"].items()}
-    columns = {
-        "analyte_id": [analyte_id] * len(units),
-        "unit": list(units),
-        "fit": [_sealed(_seal(shared) + unit, text) for unit, text in units.items()],
-    }
-    if units:
+    row = {"analyte_id": analyte_id, "made_at": writer.at, **fit.row}
+    writer.connection.execute(schema.kept_fits.insert().values(row))
+    if fit.units:
+        of: list[Any] = [analyte_id] * len(fit.units)
+        columns = {"analyte_id": of, "unit": [*fit.units], "fit": [*fit.units.values()]}
         insert_columns(writer.connection, schema.kept_fit_units, columns)
 
 
@@ -140,25 +147,25 @@ def _said(row: Mapping[str, Any], units: int) -> str:
     return json.dumps([*(row[name] for name in ("method", "fingerprint", *_SEEN)), units])
 
 
-def _sealed(said: str, text: str) -> str:
+def _hashed(said: str, text: str) -> str:
     """The text after its own hash, and that of what stands elsewhere and belongs to it."""
     return hashlib.sha256(f"{said}{text}".encode()).hexdigest() + text
 
 
-def _seal(sealed: str) -> str:
-    return sealed[:64]
+def _hash(kept: str) -> str:
+    return kept[:64]
 
 
-def _text(sealed: str) -> str:
-    return sealed[64:]
+def _text(kept: str) -> str:
+    return kept[64:]
 
 
 def _is_whole(connection: Connection, row: Mapping[str, Any], parts: Sequence[Any]) -> bool:
     own = schema.kept_fit_units.c
     count = connection.execute(select(func.count()).where(own.analyte_id == row["analyte_id"])).scalar_one()
     shared = row["fit"]
-    return shared == _sealed(_said(row, count), _text(shared)) and all(
-        part.fit == _sealed(_seal(shared) + part.unit, _text(part.fit)) for part in parts
+    return shared == _hashed(_said(row, count), _text(shared)) and all(
+        part.fit == _hashed(_hash(shared) + part.unit, _text(part.fit)) for part in parts
     )
 
 

@@ -71,9 +71,11 @@ def _loop(table: dict[str, np.ndarray[Any, Any]]) -> None:
     from scipy.optimize import curve_fit
 
     ends = np.flatnonzero(np.diff(table["unit"])) + 1
-    for hours, y in zip(np.split(table["hours"], ends), np.split(table["y"], ends), strict=True):
-        if len(set(hours)) > 1:
-            curve_fit(_exponential, hours, np.exp(y), p0=(math.exp(y[0]), 0.1), maxfev=2000)
+    with warnings.catch_warnings():
+        warnings.simplefilter("ignore")  # of two readings that leave no error to be told
+        for hours, y in zip(np.split(table["hours"], ends), np.split(table["y"], ends), strict=True):
+            if len(set(hours)) > 1:
+                curve_fit(_exponential, hours, np.exp(y), p0=(math.exp(y[0]), 0.1), maxfev=2000)
 
 
 def _exponential(hours: Any, level: float, rate: float) -> Any:

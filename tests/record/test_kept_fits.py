@@ -113,11 +113,11 @@ def test_of_two_that_fitted_at_once_what_had_seen_more_is_kept(two_cohorts: Lab)
     for seen in (late, early, late, corrected, late):
         with two_cohorts.record.writing() as writer:
             analyte_id = writer.names.row_id("analytes", "serotonin")
-            kept_fits.keep_fit(
-                writer, analyte_id, "a method", f"{seen}", seen, {"shared": {"of": seen.readings}, "units": {}}
-            )
+            fit = {"shared": {"of": seen.readings}, "units": {"B1-02": [seen.readings]}}
+            kept_fits.keep_fit(writer, analyte_id, kept_fits.sealed("a method", f"{seen}", seen, fit))
         with two_cohorts.record.reading() as connection:
             found = kept_fits.kept_fit(connection, analyte_id)
             assert found is not None
-            kept.append((found.seen, kept_fits.content(connection, analyte_id)["shared"]["of"]))
-    assert kept == [(one, one.readings) for one in (late, late, late, corrected, corrected)]
+            told = kept_fits.content(connection, analyte_id)
+            kept.append((found.seen, told["shared"]["of"], told["units"]["B1-02"]))
+    assert kept == [(one, one.readings, [one.readings]) for one in (late, late, late, corrected, corrected)]
