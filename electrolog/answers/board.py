@@ -79,15 +79,17 @@ def board(record: Record, labels: Sequence[str] | None, run: Run, moment: dateti
         setting = Names(connection).word("setting", run.setting)
         seen = queries.lives_seen(connection, moment)
     wanted = list(seen) if labels is None else list(dict.fromkeys(labels))
-    fit, correction = fits.fit_for(record, assay, units=()), fits.corrected_last(record, assay)
     if labels is not None or len(wanted) < LARGE:
-        return Board(assay, setting, fit, *_fresh(record, wanted, run, moment, ALL_DRAWS), ALL_DRAWS, moment)
+        return Board(assay, setting, *_fresh(record, wanted, run, moment, ALL_DRAWS), ALL_DRAWS, moment)
+    fit, correction = fits.fit_for(record, assay, units=()), fits.corrected_last(record, assay)
     path = cache.path_of(record, "shelf.npz", assay.analyte, assay.waveform)
     stamp = f"{VERSION} {fit.method} {fit.fingerprint} {correction}"
     kept = _read(path, stamp)
     good = {label: None for label in wanted if _holds(kept, label, seen[label], moment)}
     missing = [label for label in wanted if label not in good]
-    made_cards, made = _fresh(record, missing, run, moment, FEWER_DRAWS) if missing else ((), {})
+    own, made_cards, made = _fresh(record, missing, run, moment, FEWER_DRAWS) if missing else (fit, (), {})
+    if own.fingerprint != fit.fingerprint:  # corrected meanwhile: what is kept rests on another fit
+        return board(record, labels, run, moment)
     known = [kept.cards[label] for label in good] if kept else []
     arrays = _together(kept, list(good), made)
     found = Board(assay, setting, fit, (*known, *made_cards), arrays, FEWER_DRAWS, moment)
@@ -105,12 +107,12 @@ def in_order(found: Board) -> Board:
 
 def _fresh(
     record: Record, labels: Sequence[str], run: Run, moment: datetime, draws: int
-) -> tuple[tuple[Card, ...], Arrays]:
+) -> tuple[CohortFit, tuple[Card, ...], Arrays]:
     asked: Asked = ask(record, labels, run, moment)
     with record.reading() as connection:
         standards = standards_of(connection, asked)
     arrays = packed(asked.posterior, draws) | {REFERENCE: thinned(asked.posterior, asked.log_references(), draws)}
-    return tuple(card_of(asked, label, standards) for label in asked.labels), arrays
+    return asked.fit, tuple(card_of(asked, label, standards) for label in asked.labels), arrays
 
 
 def _holds(kept: _Kept | None, label: str, seen: str, moment: datetime) -> bool:

@@ -96,18 +96,27 @@ def all_figures(record: Record, calibrations: Iterable[Calibration]) -> dict[int
     found = {calibration.row["id"]: figures_of(calibration, uncertainties) for calibration in asked}
     new = [calibration for calibration in asked if calibration.figures is None]
     if len(new) >= MANY_NEW and record.may_keep:
-        _keep_unchanged(record, new, found)
+        _keep_unchanged(record, new, found, uncertainties)
     return found
 
 
-def _keep_unchanged(record: Record, read: Sequence[Calibration], found: Mapping[int, CalibrationFigures]) -> None:
-    """Of those that still are as they were read, figures included: whoever corrected one meanwhile, or its standard,
-    made its figures anew, and these would be of what stood there before.
+def _keep_unchanged(
+    record: Record,
+    read: Sequence[Calibration],
+    found: Mapping[int, CalibrationFigures],
+    uncertainties: dict[str, float | None],
+) -> set[int]:
+    """Of those that still are as they were read, with figures and their standards' uncertainty; which those were.
+
+    What was corrected meanwhile has figures of its own, or none: these would be of what stood there before.
     """
     with record.writing() as writer:
+        standing = standards_uncertainties(writer.connection, read)
+        changed = {label for label, value in standing.items() if value != uncertainties.get(label)}
         now = {one.row["id"]: one for one in queries.calibrations_by_id(writer.connection, [o.row["id"] for o in read])}
-        same = [one.row["id"] for one in read if now.get(one.row["id"]) == one]
+        same = {o.row["id"] for o in read if now.get(o.row["id"]) == o and o.row["standard"] not in changed}
         queries.keep_figures(writer, {key: (found[key].method, found[key].to_dict()) for key in same})
+        return same
 
 
 def figures_without_points(
@@ -142,8 +151,8 @@ def recompute(record: Record) -> list[Recomputed]:
     for start in range(0, len(found), KEPT_AT_ONCE):
         some = found[start : start + KEPT_AT_ONCE]
         fresh = {calibration.row["id"]: computed(calibration, uncertainties) for calibration in some}
-        _keep_unchanged(record, some, fresh)
-        changes += [change for calibration in some for change in _changed(calibration, fresh[calibration.row["id"]])]
+        kept = _keep_unchanged(record, some, fresh, uncertainties)
+        changes += [change for one in some if (key := one.row["id"]) in kept for change in _changed(one, fresh[key])]
     return changes
 
 

@@ -103,7 +103,7 @@ def fit_for(
     labels = None if units is None else [cohorts.unit_label(unit) for unit in units]
     with record.reading() as connection:
         if not fresh and _still_holds(connection, asked.analyte_id):
-            with suppress(DataError):  # of a layout that this version can't read
+            with suppress(DataError):  # spoilt, or of a layout that this version can't read
                 return from_dict(kept_fits.content(connection, asked.analyte_id, labels))
     cohort, seen = known or gathered(record, asked)
     fit = fit_cohort(cohort.events)
@@ -123,9 +123,9 @@ def corrected_last(record: Record, asked: Assay) -> int:
 def keep(record: Record, analyte_id: int, fit: CohortFit, seen: kept_fits.Seen) -> None:
     if not record.may_keep:
         return
-    ready = kept_fits.sealed(fit.method, fit.fingerprint, seen, to_dict(fit))
+    ready = kept_fits.sealed(analyte_id, fit.method, fit.fingerprint, seen, to_dict(fit))
     with record.writing() as writer:
-        kept_fits.keep_fit(writer, analyte_id, ready)
+        kept_fits.keep_fit(writer, ready)
 
 
 def reading_sd_log(fit: CohortFit) -> float:

@@ -5,7 +5,6 @@ from __future__ import annotations
 from collections.abc import Sequence
 from datetime import tzinfo
 
-from electrolog.answers.calibrating import NewCalibration, log_calibrations
 from electrolog.answers.entering import Entered, log
 from electrolog.errors import InputError
 from electrolog.record.columns import Value
@@ -53,6 +52,8 @@ def _calibrated(
     zone: tzinfo | None,
     confirmed: bool,
 ) -> list[Entered]:
+    from electrolog.answers.calibrating import NewCalibration, log_calibrations
+
     if not points:
         raise InputError(
             "the last entry is a calibration, whose points are each probe's own; accepted: its points",

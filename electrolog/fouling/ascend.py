@@ -184,7 +184,9 @@ def widths(problem: Problem, peak: Peak) -> Width:
 
 
 def rough_width(problem: Problem, peak: Peak) -> Width:
-    """For a shape given up: by the scores' outer product, and only good for saying that it has no weight."""
+    """By the scores' outer product: of very many units it is as good; of fewer, good for saying that a shape has no
+    weight.
+    """
     n = len(peak.theta)
     log_det = np.linalg.slogdet(peak.rough_covariance)[1]
     log_evidence = peak.log_posterior + 0.5 * n * np.log(2.0 * np.pi) + 0.5 * float(log_det)

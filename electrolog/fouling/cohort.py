@@ -94,8 +94,10 @@ def fit_shapes(events: Events, shapes: tuple[str, ...]) -> list[tuple[Problem, P
 def fit_further(
     events: Events, fits: list[tuple[Problem, Peak, Width]], patience: Patience = THOROUGH
 ) -> list[tuple[Problem, Peak, Width]]:
+    """Those with weight in the part; where a part is most of all there is, it costs little to doubt it for longer."""
+    least = LEAST_WEIGHT if len(events.units) > LARGE else np.exp(-CLOSE)
     return [
-        fit_on(events, *one[:2], patience) if weight >= LEAST_WEIGHT else out_of_the_running(*one)
+        fit_on(events, *one[:2], patience) if weight >= least else out_of_the_running(*one)
         for one, weight in zip(fits, weigh(fits), strict=True)
     ]
 
@@ -106,7 +108,7 @@ def out_of_the_running(problem: Problem, peak: Peak, width: Width) -> tuple[Prob
 
 
 def fit_on(events: Events, problem: Problem, peak: Peak, patience: Patience) -> tuple[Problem, Peak, Width]:
-    """What fewer units have found is where more begin; with so many the scores' outer product is the curvature."""
+    """What fewer units have found is where more begin; with very many the scores' outer product is the curvature."""
     whole = pose(events, problem.layout.shape.name)
     known = dict(zip((p.name for p in problem.layout.priors), peak.theta, strict=True))
     theta = np.array([known.get(prior.name, prior.mean) for prior in whole.layout.priors])

@@ -15,7 +15,7 @@ from electrolog.fouling.line_error import LineError
 from electrolog.fouling.parameters import Layout
 
 Floats = NDArray[np.float64]
-METHOD = "cohort-4"
+METHOD = "cohort-5"
 
 
 @dataclass(frozen=True)

@@ -8,17 +8,28 @@ from numpy.typing import NDArray
 from electrolog.fouling.events import READING, Events
 
 Integers = NDArray[np.int64]
+STRETCHES = 3
 
 
 def neighbours_in_time(events: Events, count: int) -> Integers:
-    """`count` units that were measured at about the same time, so that they share their days; in their own order."""
+    """`count` units (in their own order) from early, middle and late stretches of the lab's time.
+
+    Those of a stretch were measured at about the same time, so that they share their days; and a lab that did something
+    else for a while isn't told by that while alone.
+    """
     read = events.kind == READING
     n_readings = np.bincount(events.unit[read], minlength=len(events.units))
     mean_day = np.bincount(events.unit[read], weights=events.which[read], minlength=len(events.units))
     seen = np.flatnonzero(n_readings > 0)
     order = seen[np.argsort(mean_day[seen] / n_readings[seen], kind="stable")]
-    start = max(0, (len(order) - count) // 2)
-    return np.sort(order[start : start + count])
+    stretches = np.array_split(order, STRETCHES)
+    sizes = [count // STRETCHES + (k < count % STRETCHES) for k in range(STRETCHES)]
+    return np.sort(np.concatenate([_middle(own, size) for own, size in zip(stretches, sizes, strict=True)]))
+
+
+def _middle(units: Integers, count: int) -> Integers:
+    start = max(0, (len(units) - count) // 2)
+    return units[start : start + count]
 
 
 def take_units(events: Events, units: Integers) -> Events:

@@ -50,9 +50,9 @@ class Reach:
 
 
 def first_pass(sheet: ScanSheet, block: int) -> tuple[Array, Reach]:
-    """Means over `block` scans (m, points), and how far the current goes. Raises InputError for a NaN.
+    """Means over `block` scans (m, points), and how far the current goes. Raises InputError for a NaN, or too much.
 
-    The means are made as exactly as the sheet is written, in half the time that doubles would take.
+    The means are made in the sheet's own precision, in half the time that doubles would take: they say where to look.
     """
     size = max(block, _ROWS_AT_ONCE // block * block)
     means, reach = [], []
@@ -70,7 +70,7 @@ def first_pass(sheet: ScanSheet, block: int) -> tuple[Array, Reach]:
 def _reach_of(rows: NDArray[np.floating[Any]], first: int) -> tuple[float, float]:
     low, high = float(rows.min()), float(rows.max())
     if not (low >= -MOST_NA and high <= MOST_NA):
-        row, column = (int(i[0]) for i in np.nonzero(~(np.abs(rows) <= MOST_NA)))
+        row, column = (int(i[0]) for i in np.nonzero(~((rows >= -MOST_NA) & (rows <= MOST_NA))))
         raise InputError(
             f"scan {first + row + 1} holds {rows[row, column]:g} nA at its point {column + 1}; accepted: finite numbers"
             f" up to {MOST_NA:g}",

@@ -9,8 +9,10 @@ from dataclasses import dataclass
 from datetime import datetime
 from typing import Any
 
-from sqlalchemy import ColumnElement, Connection, and_, exists, func, or_, select
+from sqlalchemy import ColumnElement, Connection, Select, and_, exists, func, or_, select
+from sqlalchemy.exc import OperationalError
 
+from electrolog.clock import utc_now
 from electrolog.errors import DataError
 from electrolog.record import schema, sheets
 from electrolog.record.journal import Writer, insert_columns
@@ -68,14 +70,15 @@ def to_be_seen(connection: Connection, analyte_id: int) -> Seen:
 
 
 def kept_fit(connection: Connection, analyte_id: int) -> KeptFit | None:
-    """Without the fit itself, which is large."""
+    """Without the fit itself, which is large. None where there is none that can be read."""
     table = schema.kept_fits
     columns = [table.c[name] for name in ("method", "fingerprint", *_SEEN, "made_at")]
-    row = connection.execute(select(*columns).where(table.c.analyte_id == analyte_id)).first()
-    if row is None:
+    found = _readable(connection, select(*columns).where(table.c.analyte_id == analyte_id))
+    if not found:
         return None
-    seen = Seen(row.seen_readings, row.seen_newest or 0, row.seen_correction)
-    return KeptFit(row.method, row.fingerprint, seen, row.made_at)
+    row = found[0]
+    seen = Seen(row["seen_readings"], row["seen_newest"] or 0, row["seen_correction"])
+    return KeptFit(row["method"], row["fingerprint"], seen, row["made_at"])
 
 
 def content(connection: Connection, analyte_id: int, units: Collection[str] | None = None) -> dict[str, Any]:
@@ -85,66 +88,90 @@ def content(connection: Connection, analyte_id: int, units: Collection[str] | No
     show it.
     """
     table, own = schema.kept_fits, schema.kept_fit_units.c
-    row = connection.execute(select(table).where(table.c.analyte_id == analyte_id)).mappings().one()
+    rows = _readable(connection, select(table).where(table.c.analyte_id == analyte_id))
     query = select(own.unit, own.fit).where(own.analyte_id == analyte_id)
     if units is not None and len(units) <= MOST_NAMED:
         query = query.where(own.unit.in_(units))
-    parts = connection.execute(query).all()
-    if not _is_whole(connection, dict(row), parts):
+    parts = _readable(connection, query)
+    if not rows or parts is None or not _is_whole(rows[0]) or not _are_whole(rows[0], parts):
         raise DataError("the kept fit isn't what was kept", "fit the cohort again")
-    return {
-        "shared": json.loads(_text(row["fit"])),
-        "units": {part.unit: json.loads(_text(part.fit)) for part in parts},
-    }
+    told = json.loads(_text(rows[0]["fit"]))
+    found = {part["unit"]: json.loads(_text(part["fit"])) for part in parts}
+    wanted = set(told["units"]) if units is None else set(told["units"]) & set(units)
+    if not wanted <= found.keys():  # one that went astray would pass for one that the fit has never seen
+        raise DataError("the kept fit isn't all there", "fit the cohort again")
+    return {"shared": told["shared"], "units": found}
 
 
 def changed(connection: Connection, method: str) -> list[str]:
     """The analytes whose fit, kept by this method, isn't as it was kept."""
-    table, own = schema.kept_fits, schema.kept_fit_units.c
-    analytes = schema.tables[sheets.ANALYTES.name].c
-    rows = connection.execute(select(table).where(table.c.method == method)).mappings().all()
+    table, analytes = schema.kept_fits, schema.tables[sheets.ANALYTES.name].c
     found = []
-    for row in rows:
-        parts = connection.execute(select(own.unit, own.fit).where(own.analyte_id == row["analyte_id"])).all()
-        if not _is_whole(connection, dict(row), parts):
-            name = select(analytes.analyte).where(analytes.id == row["analyte_id"])
-            found.append(str(connection.execute(name).scalar()))
+    for analyte_id in connection.execute(select(table.c.analyte_id)).scalars().all():
+        kept = kept_fit(connection, analyte_id)
+        if kept is not None and kept.method != method:
+            continue
+        try:
+            content(connection, analyte_id)
+        except DataError:
+            found.append(str(connection.execute(select(analytes.analyte).where(analytes.id == analyte_id)).scalar()))
     return found
 
 
-def sealed(method: str, fingerprint: str, seen: Seen, fit: Mapping[str, Any]) -> Sealed:
+def sealed(analyte_id: int, method: str, fingerprint: str, seen: Seen, fit: Mapping[str, Any]) -> Sealed:
     """fit: what all units share under "shared", each one's own under "units" by its label."""
     row = {
+        "analyte_id": analyte_id,
         "method": method,
         "fingerprint": fingerprint,
         "seen_readings": seen.readings,
         "seen_newest": seen.newest,
         "seen_correction": seen.correction,
+        "made_at": utc_now(),
     }
-    shared = _hashed(_said(row, len(fit["units"])), json.dumps(fit["shared"], allow_nan=False))
+    told = json.dumps({"units": list(fit["units"]), "shared": fit["shared"]}, allow_nan=False)
+    shared = _hashed(_said(row), told)
     own = {unit: json.dumps(part, allow_nan=False) for unit, part in fit["units"].items()}
     units = {unit: _hashed(_hash(shared) + unit, text) for unit, text in own.items()}
     return Sealed(seen, row | {"fit": shared}, units)
 
 
-def keep_fit(writer: Writer, analyte_id: int, fit: Sealed) -> None:
+def keep_fit(writer: Writer, fit: Sealed) -> None:
     """In place of the one kept before; of two machines that fitted at once, what had seen more is kept."""
-    before = kept_fit(writer.connection, analyte_id)
-    if before is not None and before.method == fit.row["method"] and not _as_much(fit.seen, before.seen):
+    analyte_id = fit.row["analyte_id"]
+    if _had_seen_more(writer.connection, fit):
         return
     for table in (schema.kept_fits, schema.kept_fit_units):
         writer.connection.execute(table.delete().where(table.c.analyte_id == analyte_id))
-    row = {"analyte_id": analyte_id, "made_at": writer.at, **fit.row}
-    writer.connection.execute(schema.kept_fits.insert().values(row))
+    writer.connection.execute(schema.kept_fits.insert().values(fit.row))
     if fit.units:
         of: list[Any] = [analyte_id] * len(fit.units)
         columns = {"analyte_id": of, "unit": [*fit.units], "fit": [*fit.units.values()]}
         insert_columns(writer.connection, schema.kept_fit_units, columns)
 
 
-def _said(row: Mapping[str, Any], units: int) -> str:
-    """What the fit's own hash is also over: what it has seen, and of how many units it holds something."""
-    return json.dumps([*(row[name] for name in ("method", "fingerprint", *_SEEN)), units])
+def _had_seen_more(connection: Connection, fit: Sealed) -> bool:
+    """Whether the fit that stands there did, and is whole: what is spoilt says so of itself in vain."""
+    table = schema.kept_fits
+    before = _readable(connection, select(table).where(table.c.analyte_id == fit.row["analyte_id"]))
+    if not before or before[0]["method"] != fit.row["method"] or not _is_whole(before[0]):
+        return False
+    row = before[0]
+    return not _as_much(fit.seen, Seen(row["seen_readings"], row["seen_newest"] or 0, row["seen_correction"]))
+
+
+def _readable(connection: Connection, query: Select[Any]) -> list[Mapping[str, Any]] | None:
+    """None where a bit has flipped so that what stands there is no text any more, or no moment."""
+    try:
+        return [dict(row) for row in connection.execute(query).mappings()]
+    except (OperationalError, ValueError):
+        return None
+
+
+def _said(row: Mapping[str, Any]) -> str:
+    """What the fit's own hash is also over."""
+    plain = [row[name] for name in ("analyte_id", "method", "fingerprint", *_SEEN)]
+    return json.dumps([*plain, schema.fixed_width(row["made_at"])])
 
 
 def _hashed(said: str, text: str) -> str:
@@ -160,13 +187,13 @@ def _text(kept: str) -> str:
     return kept[64:]
 
 
-def _is_whole(connection: Connection, row: Mapping[str, Any], parts: Sequence[Any]) -> bool:
-    own = schema.kept_fit_units.c
-    count = connection.execute(select(func.count()).where(own.analyte_id == row["analyte_id"])).scalar_one()
-    shared = row["fit"]
-    return shared == _hashed(_said(row, count), _text(shared)) and all(
-        part.fit == _hashed(_hash(shared) + part.unit, _text(part.fit)) for part in parts
-    )
+def _is_whole(row: Mapping[str, Any]) -> bool:
+    return bool(row["fit"] == _hashed(_said(row), _text(row["fit"])))
+
+
+def _are_whole(row: Mapping[str, Any], parts: Sequence[Mapping[str, Any]]) -> bool:
+    of = _hash(row["fit"])
+    return all(part["fit"] == _hashed(of + part["unit"], _text(part["fit"])) for part in parts)
 
 
 def _as_much(seen: Seen, before: Seen) -> bool:

@@ -39,7 +39,7 @@ def _admit_whoever_keeps_fits() -> None:
     connection = op.get_bind()
     quoted = connection.dialect.identifier_preparer.quote
     for grantee, privilege in connection.execute(sa.text(GRANTED)).all():
-        op.execute(f"GRANT {privilege} ON kept_fit_units TO {quoted(grantee)}")
+        op.execute(f"GRANT {privilege} ON kept_fit_units TO {grantee if grantee == 'PUBLIC' else quoted(grantee)}")
 
 
 def downgrade() -> None:

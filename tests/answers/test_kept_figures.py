@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from pathlib import Path
 from typing import Any
 
@@ -10,11 +11,11 @@ import pytest
 from electrolog.answers import figures
 from electrolog.answers.shelf import Filter
 from electrolog.lab import Lab, open_lab
-from electrolog.record import queries
+from electrolog.record import queries, schema
 from electrolog.record.queries import Calibration
 
 PROBES = figures.MANY_NEW
-PREPARED = {"prepared_at": "2026-01-04T09:00Z", "relative_uncertainty": "2%"}
+PREPARED = {"prepared_at": "2026-01-04T09:00Z"}
 
 
 @pytest.fixture
@@ -64,24 +65,45 @@ def test_what_was_corrected_meanwhile_is_not_kept(lab: Lab) -> None:
     assert lab.recompute() == []
 
 
+def amend(what: str, **values: str) -> Callable[[Lab, Path], object]:
+    return lambda lab, _: lab.amend(*what.split(), values, "misread", confirmed=True)
+
+
+def learn_uncertainty(lab: Lab, folder: Path) -> None:
+    """By an import, which takes away the figures that rest on the standard and makes none."""
+    (folder / "more").mkdir()
+    text = (
+        "standard,analyte,prepared_at,concentration_um,relative_uncertainty\nS1,dopamine,2026-01-04T09:00Z,1000,0.07\n"
+    )
+    (folder / "more" / "standards.csv").write_text(text, encoding="utf-8")
+    lab.import_folder(folder / "more")
+
+
 @pytest.mark.parametrize(
-    ("what", "values"), [("calibration CP0", {"noise_na": "0.1"}), ("standard S1", {"relative_uncertainty": "0.07"})]
+    "correct",
+    [amend("calibration CP0", noise_na="0.1"), amend("standard S1", relative_uncertainty="0.07"), learn_uncertainty],
 )
+@pytest.mark.parametrize("kept_before", [True, False])
 def test_a_correction_while_all_are_made_again_stands(
-    lab: Lab, what: str, values: dict[str, str], monkeypatch: pytest.MonkeyPatch
+    lab: Lab, tmp_path: Path, correct: Callable[[Lab, Path], object], kept_before: bool, monkeypatch: pytest.MonkeyPatch
 ) -> None:
     """It comes in after the points were read and before anything is kept."""
     lab.log_plain("standards", {"standard": "S1", "analyte": "dopamine", "concentration_um": "1mM", **PREPARED})
     lab.amend("calibration", "CP0", {"standard": "S1", "noise_na": "0.2"}, "from the notebook")
+    if kept_before:
+        lab.recompute()
+    else:
+        with lab.record.writing() as writer:
+            writer.connection.execute(schema.calibration_figures.delete())
     keep, corrected = figures._keep_unchanged, []
 
-    def keep_after_a_correction(*told: Any) -> None:
+    def keep_after_a_correction(*told: Any) -> set[int]:
         if not corrected:
-            corrected.append(lab.amend(*what.split(), values, "misread", confirmed=True))
-        keep(*told)
+            corrected.append(correct(lab, tmp_path))
+        return keep(*told)
 
     monkeypatch.setattr(figures, "_keep_unchanged", keep_after_a_correction)
-    lab.recompute()
+    assert not [change for change in lab.recompute() if change.calibration == "CP0"]
     assert corrected
     assert lab.verify().whole
 

@@ -67,13 +67,20 @@ def test_a_kept_fit_is_shown_again_and_a_fresh_one_is_the_same(lab: Terminal) ->
     assert {**fresh, "made_at": None} == {**kept, "made_at": None}
 
 
+FIRST = "(SELECT min(unit) FROM kept_fit_units)"
 CHANGES = (
     "UPDATE kept_fits SET fit = substr(fit, 1, 64) || '{}'",
     "UPDATE kept_fits SET fit = replace(fit, 'A', 'B')",  # other numbers, and nothing else would show it
     "UPDATE kept_fits SET fit = ''",
     "UPDATE kept_fits SET seen_readings = seen_readings + 1",
+    "UPDATE kept_fits SET seen_newest = seen_newest + 1000",  # as if it had seen more than any fit to come
+    "UPDATE kept_fits SET made_at = '1999-01-01T00:00:00.000000Z'",
+    "UPDATE kept_fits SET made_at = 'soon'",
+    "UPDATE kept_fits SET fingerprint = CAST(X'FF' AS TEXT)",  # no text any more
     "UPDATE kept_fit_units SET fit = replace(fit, 'A', 'B')",
-    "DELETE FROM kept_fit_units WHERE unit = (SELECT min(unit) FROM kept_fit_units)",
+    f"UPDATE kept_fit_units SET fit = CAST(X'FF' AS TEXT) WHERE unit = {FIRST}",
+    f"UPDATE kept_fit_units SET unit = 'another' WHERE unit = {FIRST}",
+    f"DELETE FROM kept_fit_units WHERE unit = {FIRST}",
 )
 
 
@@ -102,7 +109,15 @@ def test_a_kept_fit_that_was_changed_is_named_until_it_is_made_again(
 
 def spoil_kept_fit(folder: Path, change: str) -> None:
     with closing(sqlite3.connect(folder / "record.db")) as record, record:
+        record.execute("PRAGMA ignore_check_constraints = ON")
         record.execute(change)
+
+
+def test_a_unit_whose_part_of_the_fit_went_astray_is_not_taken_for_a_new_one(lab: Terminal, tmp_path: Path) -> None:
+    asked = ("forecast", "--all", *ASKED, "--waveform", "triangle", "--setting", "in-vivo", "--run", "2h", "--json")
+    before = lab.ok(*asked).json
+    spoil_kept_fit(tmp_path, "UPDATE kept_fit_units SET unit = 'another' || unit")
+    assert lab.ok(*asked).json == before
 
 
 def test_a_fit_says_what_it_rests_on(lab: Terminal) -> None:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import csv
+import os
 from datetime import timedelta
 from pathlib import Path
 from typing import Any
@@ -152,6 +153,12 @@ def test_a_list_that_cannot_be_read_stops_it_all(cli: Any, folder: Path, text: s
 def test_a_list_larger_than_anybody_would_write_is_not_read(cli: Any, folder: Path) -> None:
     (folder / "recordings.csv").write_bytes(b"file,probe\n" + b"a.csv,B9-01\n" * 1_500_000)
     assert "recordings.csv: is larger than 16 MB; accepted: CSV in UTF-8" in cli.refused("runs", "rig", *HERE)
+
+
+@pytest.mark.skipif(not hasattr(os, "mkfifo"), reason="this system has no pipes with a name")
+def test_a_pipe_in_the_place_of_the_list_is_not_waited_for(cli: Any, folder: Path) -> None:
+    os.mkfifo(folder / "recordings.csv")
+    assert "recordings.csv: is a folder, a pipe or a device; accepted: a file" in cli.refused("runs", "rig", *HERE)
 
 
 def test_semicolons_a_byte_order_mark_and_backslashes_are_taken(cli: Any, folder: Path) -> None:

@@ -128,6 +128,10 @@ def test_what_is_no_sheet_is_refused(made):
     broken[17, 3] = 1e20
     with pytest.raises(InputError, match=r"scan 18 holds 1e\+20 nA at its point 4; accepted: finite"):
         read_scans(broken, potential, time[:200])
+    whole = scans[:200].astype(np.int64)
+    whole[7, 3] = np.iinfo(np.int64).min  # as which NaN comes out where numbers are made whole
+    with pytest.raises(InputError, match="scan 8 holds -9"):
+        read_scans(whole, potential, time[:200])
     with pytest.raises(InputError, match="two dimensions"):
         read_scans(scans[0], potential, time)
     with pytest.raises(InputError, match="500 points and 3 potentials"):

@@ -114,7 +114,7 @@ def test_of_two_that_fitted_at_once_what_had_seen_more_is_kept(two_cohorts: Lab)
         with two_cohorts.record.writing() as writer:
             analyte_id = writer.names.row_id("analytes", "serotonin")
             fit = {"shared": {"of": seen.readings}, "units": {"B1-02": [seen.readings]}}
-            kept_fits.keep_fit(writer, analyte_id, kept_fits.sealed("a method", f"{seen}", seen, fit))
+            kept_fits.keep_fit(writer, kept_fits.sealed(analyte_id, "a method", f"{seen}", seen, fit))
         with two_cohorts.record.reading() as connection:
             found = kept_fits.kept_fit(connection, analyte_id)
             assert found is not None

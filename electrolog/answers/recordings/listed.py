@@ -73,6 +73,8 @@ def read_list(folder: Path) -> list[Listed]:
     path = folder / LIST
     if not path.exists():
         return []
+    if not path.is_file():
+        raise InputError(f"{LIST}: is a folder, a pipe or a device; accepted: a file, CSV in UTF-8")
     text = small_text(path, "CSV in UTF-8")
     mark = max(",;\t", key=text.partition("\n")[0].count)
     reader = csv.reader(io.StringIO(text, newline=""), delimiter=mark, strict=True)
