@@ -16,7 +16,7 @@ from electrolog.fouling.fit import METHOD, CohortFit
 from electrolog.fouling.kept import from_dict, to_dict
 from electrolog.fouling.parameters import read_scales
 from electrolog.measure.calibrate import CalibrationFigures
-from electrolog.record import kept_fits, queries, sheets
+from electrolog.record import kept_fits, queries, seen_by_fit, sheets
 from electrolog.record.names import Names
 from electrolog.record.queries import Event
 from electrolog.record.readable import Row, row_by_id
@@ -51,7 +51,7 @@ def assay(connection: Connection, analyte: str, waveform: str) -> Assay:
     return Assay(spelled, row_by_id(connection, WAVEFORMS, waveform_id)["waveform"], analyte_id)
 
 
-def gathered(record: Record, asked: Assay) -> tuple[Cohort, kept_fits.Seen]:
+def gathered(record: Record, asked: Assay) -> tuple[Cohort, seen_by_fit.Seen]:
     """The whole cohort of the assay's analyte: every probe, retired ones too, with every waveform; `readings` is empty.
 
     With it how much of the record that is. A stretch of probes at a time, so that what is held of a large cohort is its
@@ -59,7 +59,7 @@ def gathered(record: Record, asked: Assay) -> tuple[Cohort, kept_fits.Seen]:
     """
     gathering = Gathering(asked.analyte)
     with record.reading() as connection:
-        seen = kept_fits.to_be_seen(connection, asked.analyte_id)
+        seen = seen_by_fit.to_be_seen(connection, asked.analyte_id)
         members = queries.calibrated_with(connection, asked.analyte_id)
         for start in range(0, len(members), PROBES_AT_ONCE):
             gathering.add(*_stretch(connection, asked, members[start : start + PROBES_AT_ONCE]))
@@ -93,7 +93,7 @@ def fit_for(
     record: Record,
     asked: Assay,
     fresh: bool = False,
-    known: tuple[Cohort, kept_fits.Seen] | None = None,
+    known: tuple[Cohort, seen_by_fit.Seen] | None = None,
     units: Sequence[UnitKey] | None = None,
 ) -> CohortFit:
     """The cohort's fit, from the record if what it saw is still nearly all there is.
@@ -116,11 +116,11 @@ def corrected_last(record: Record, asked: Assay) -> int:
     with record.reading() as connection:
         kept = kept_fits.kept_fit(connection, asked.analyte_id)
         if kept is None:
-            return kept_fits.to_be_seen(connection, asked.analyte_id).correction
-        return kept_fits.since(connection, asked.analyte_id, kept.seen).correction or kept.seen.correction
+            return seen_by_fit.to_be_seen(connection, asked.analyte_id).correction
+        return seen_by_fit.since(connection, asked.analyte_id, kept.seen).correction or kept.seen.correction
 
 
-def keep(record: Record, analyte_id: int, fit: CohortFit, seen: kept_fits.Seen) -> None:
+def keep(record: Record, analyte_id: int, fit: CohortFit, seen: seen_by_fit.Seen) -> None:
     if not record.may_keep:
         return
     ready = kept_fits.sealed(analyte_id, fit.method, fit.fingerprint, seen, to_dict(fit))
@@ -144,5 +144,5 @@ def _still_holds(connection: Connection, analyte_id: int) -> bool:
     kept = kept_fits.kept_fit(connection, analyte_id)
     if kept is None or kept.method != METHOD:
         return False
-    since = kept_fits.since(connection, analyte_id, kept.seen)
+    since = seen_by_fit.since(connection, analyte_id, kept.seen)
     return not since.correction and since.readings <= CHANGED_ENOUGH * max(kept.seen.readings, 1)

@@ -17,7 +17,7 @@ import numpy as np
 from electrolog.answers import cache
 from electrolog.clock import utc_now
 from electrolog.fouling.fit import METHOD
-from electrolog.record import journal, kept_fits, queries
+from electrolog.record import journal, queries, seen_by_fit
 from electrolog.record.names import Names
 from electrolog.record.store import Record
 
@@ -51,7 +51,7 @@ class State:
     def of(cls, record: Record, analyte: str) -> State:
         """Raises UnknownName."""
         with record.reading() as connection:
-            seen = kept_fits.to_be_seen(connection, Names(connection).row_id("analytes", analyte))
+            seen = seen_by_fit.to_be_seen(connection, Names(connection).row_id("analytes", analyte))
             return cls(*journal.head(connection), seen.readings, seen.correction)
 
 

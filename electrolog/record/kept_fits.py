@@ -1,4 +1,4 @@
-"""The kept fit of a cohort: what it had seen, and what has happened to that cohort since, whatever the others did."""
+"""The kept fit of a cohort, as it was kept or not at all."""
 
 from __future__ import annotations
 
@@ -9,38 +9,17 @@ from dataclasses import dataclass
 from datetime import datetime
 from typing import Any
 
-from sqlalchemy import ColumnElement, Connection, Select, and_, exists, func, or_, select
+from sqlalchemy import Connection, Select, select
 from sqlalchemy.exc import OperationalError
 
 from electrolog.clock import utc_now
 from electrolog.errors import DataError
 from electrolog.record import schema, sheets
 from electrolog.record.journal import Writer, insert_columns
+from electrolog.record.seen_by_fit import Seen
 
-_OF_ALL = (sheets.TERMS.name, sheets.WAVEFORMS.name)  # words that any cohort may use
 MOST_NAMED = 500  # units in one question; whoever asks about more is given all
 _SEEN = ("seen_readings", "seen_newest", "seen_correction")
-
-
-@dataclass(frozen=True)
-class Seen:
-    """How much a fit has seen: its cohort's calibrations, how many and the newest one's number, and the record's
-    newest correction by its journal entry.
-    """
-
-    readings: int
-    newest: int
-    correction: int
-
-
-@dataclass(frozen=True)
-class Since:
-    """readings: calibrations that came after the newest one seen. correction: the newest entry that corrected anything
-    of the cohort, 0 where nothing was corrected.
-    """
-
-    readings: int
-    correction: int
 
 
 @dataclass(frozen=True)
@@ -58,15 +37,6 @@ class Sealed:
     seen: Seen
     row: Mapping[str, Any]
     units: Mapping[str, str]
-
-
-def to_be_seen(connection: Connection, analyte_id: int) -> Seen:
-    """What a fit made now would see."""
-    calibrations, journal = schema.tables["calibrations"], schema.journal
-    live = calibrations.c.analyte_id == analyte_id, calibrations.c.struck.is_(None)
-    count, newest = connection.execute(select(func.count(), func.max(calibrations.c.id)).where(*live)).one()
-    correction = select(func.max(journal.c.seq)).where(schema.CORRECTIONS)
-    return Seen(count, newest or 0, connection.execute(correction).scalar() or 0)
 
 
 def kept_fit(connection: Connection, analyte_id: int) -> KeptFit | None:
@@ -199,56 +169,3 @@ def _are_whole(row: Mapping[str, Any], parts: Sequence[Mapping[str, Any]]) -> bo
 def _as_much(seen: Seen, before: Seen) -> bool:
     """A correction may have struck what was the newest, so it goes first."""
     return (seen.correction, seen.newest) >= (before.correction, before.newest)
-
-
-def since(connection: Connection, analyte_id: int, seen: Seen) -> Since:
-    """Counted from where the fit stopped reading, so that asking costs no more as the cohort and the record grow."""
-    calibrations = schema.tables["calibrations"].c
-    came = calibrations.analyte_id == analyte_id, calibrations.struck.is_(None), calibrations.id > seen.newest
-    readings = connection.execute(select(func.count()).where(*came)).scalar_one()
-    return Since(readings, _corrected(connection, analyte_id, seen.correction))
-
-
-def _corrected(connection: Connection, analyte_id: int, after: int) -> int:
-    journal = schema.journal.c
-    touches = or_(journal.sheet.in_(_OF_ALL), _moved(), *_touching(analyte_id))
-    newest = select(func.max(journal.seq)).where(schema.CORRECTIONS, journal.seq > after, touches)
-    return connection.execute(newest).scalar() or 0
-
-
-def _moved() -> ColumnElement[bool]:
-    """From one probe, analyte or batch to another: whose it was before, the row no longer says."""
-    journal = schema.journal.c
-    links = ('%"electrode_id":%', '%"analyte_id":%', '%"batch_id":%')
-    return and_(journal.action == "amend", or_(*[journal.change.like(link) for link in links]))
-
-
-def _touching(analyte_id: int) -> list[ColumnElement[bool]]:
-    """Per sheet: whether the corrected row, struck or not, bears on a calibration with the analyte."""
-    corrected, tables = schema.journal.c, schema.tables
-    calibrations, electrodes = tables["calibrations"].c, tables["electrodes"].c
-
-    def measured(*where: ColumnElement[bool]) -> Any:
-        return exists().where(calibrations.analyte_id == analyte_id, *where)
-
-    def of(sheet: sheets.Sheet, *where: ColumnElement[bool]) -> ColumnElement[bool]:
-        return and_(corrected.sheet == sheet.name, *where)
-
-    own = calibrations.id == corrected.row_id
-    found = [
-        of(sheets.ANALYTES, corrected.row_id == analyte_id),
-        of(sheets.CALIBRATIONS, measured(own)),
-        of(sheets.POINTS, measured(own)),
-        of(sheets.STANDARDS, measured(calibrations.standard_id == corrected.row_id)),
-        of(sheets.ELECTRODES, measured(calibrations.electrode_id == corrected.row_id)),
-        of(
-            sheets.BATCHES,
-            measured(calibrations.electrode_id == electrodes.id, electrodes.batch_id == corrected.row_id),
-        ),
-    ]
-    for sheet in sheets.EVENTS:
-        event = tables[sheet.name].c
-        if sheet not in (sheets.CALIBRATIONS, sheets.STANDARDS):
-            probes = measured(calibrations.electrode_id == event.electrode_id, event.id == corrected.row_id)
-            found.append(of(sheet, probes))
-    return found

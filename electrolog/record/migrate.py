@@ -71,7 +71,8 @@ def upgrade(record: Record) -> Path | None:
     try:
         to_revision(record, schema.REVISION)
     except RecordError as why:
-        hint = why.hint if copy is None else f"the record is as it was, and the copy from before is {copy}"
+        kept = f"and the copy from before is {copy}" if copy else "and only the database's owner can upgrade it"
+        hint = f"the record is as it was, {kept}"
         raise RecordError(f"the upgrade stopped: {why.message}", hint) from None
     return copy
 

@@ -258,7 +258,9 @@ def _bring_to_revision(record: Record, create: bool) -> None:
         refuse_newer(record, found)
         raise RecordError(
             f"{record.name} is of an older version (revision {found}, now {schema.REVISION})",
-            "bring it up with `electrolog setup`; a copy is made first",
+            "bring it up with `electrolog setup`; a copy is made first"
+            if record.is_file
+            else "its owner brings it up with `electrolog setup`, after a backup by the server's own means",
         )
     from electrolog.record import migrate
 

@@ -15,7 +15,7 @@ from electrolog.answers.board import FEWER_DRAWS, LARGE
 from electrolog.answers.ranking import Ranked, Ranking
 from electrolog.fouling.cohort import fit_cohort
 from electrolog.lab import Lab, open_lab
-from electrolog.record import kept_fits
+from electrolog.record import seen_by_fit
 from tests.answers.fleet_folder import ANALYTE, WAVEFORM, write_fleet
 from tests.fouling.fleets.simulate import fleet
 
@@ -46,7 +46,7 @@ def keep_a_quick_fit(lab: Lab) -> None:
     """Of a smaller lab of the same kind: which fit is kept matters to the odds, not to what is tested here."""
     with lab.record.reading() as connection:
         assay = fits.assay(connection, ANALYTE, WAVEFORM)
-        seen = kept_fits.to_be_seen(connection, assay.analyte_id)
+        seen = seen_by_fit.to_be_seen(connection, assay.analyte_id)
     fits.keep(lab.record, assay.analyte_id, fit_cohort(fleet("exponential", 3, 60).events), seen)
 
 

@@ -8,9 +8,9 @@ import pytest
 
 from electrolog.answers.calibrating import NewCalibration
 from electrolog.lab import Lab
-from electrolog.record import journal, kept_fits
-from electrolog.record.kept_fits import Seen, Since
+from electrolog.record import journal, kept_fits, seen_by_fit
 from electrolog.record.names import Names
+from electrolog.record.seen_by_fit import Seen, Since
 from tests.record.conftest import POINTS, calibration
 
 Change = Callable[[Lab], object]
@@ -19,12 +19,12 @@ NOW = "2026-02-02T09:00Z"
 
 def seen_of(lab: Lab, analyte: str) -> Seen:
     with lab.record.reading() as connection:
-        return kept_fits.to_be_seen(connection, Names(connection).row_id("analytes", analyte))
+        return seen_by_fit.to_be_seen(connection, Names(connection).row_id("analytes", analyte))
 
 
 def since(lab: Lab, analyte: str, seen: Seen) -> Since:
     with lab.record.reading() as connection:
-        return kept_fits.since(connection, Names(connection).row_id("analytes", analyte), seen)
+        return seen_by_fit.since(connection, Names(connection).row_id("analytes", analyte), seen)
 
 
 def newest(lab: Lab) -> int:
