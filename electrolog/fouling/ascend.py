@@ -91,11 +91,13 @@ def climb(problem: Problem, theta: Floats, hopeless_below: float = -np.inf, pati
     for count in range(MOST_STEPS):
         step = capped(inverse @ best.slope) * shrink
         converged = bool(best.slope @ inverse @ best.slope < FLAT * loose)
-        to_come = patience.promise * min(gained, float(best.slope @ step))
-        if converged or (count >= patience.look and best.value + to_come < hopeless_below):
+        hopeless = best.value + patience.promise * min(gained, float(best.slope @ step)) < hopeless_below
+        if converged or (count >= patience.look and hopeless):
             break
         found = try_step(problem, best, step)
         if found is None or found.value < best.value - NOISE * loose:
+            if hopeless and np.isfinite(gained):
+                break
             best = try_step(problem, best, 0.0 * step, 12) or best
         if found is None or found.value < best.value - NOISE * loose:
             shrink *= 0.35

@@ -78,24 +78,24 @@ def fit_shapes(events: Events, shapes: tuple[str, ...]) -> list[tuple[Problem, P
     """Every shape at its peak.
 
     In all but a small cohort a part tells the shapes apart; those with weight there go on to ever larger parts, and at
-    last to all units, each time from where they ended: so near to the peak, a step or two suffice.
+    last to all units, each time from where they ended: so near to the peak, a step or two suffice. Where the part is
+    much of all there is, it costs little to doubt it for longer.
     """
     n_units = len(np.unique(events.unit[events.kind == READING]))
     if n_units <= SMALL:
         return fit_each(events, shapes)
     fits = fit_each(take_units(events, neighbours_in_time(events, PART)), shapes, rough=True)
-    size = PART * LARGER
+    least, size = (LEAST_WEIGHT if n_units > LARGE else np.exp(-CLOSE)), PART * LARGER
     while size * 2 < n_units:
-        fits = fit_further(take_units(events, neighbours_in_time(events, size)), fits, ROUGH)
+        fits = fit_further(take_units(events, neighbours_in_time(events, size)), fits, least, ROUGH)
         size *= LARGER
-    return fit_further(events, fits)
+    return fit_further(events, fits, least)
 
 
 def fit_further(
-    events: Events, fits: list[tuple[Problem, Peak, Width]], patience: Patience = THOROUGH
+    events: Events, fits: list[tuple[Problem, Peak, Width]], least: float, patience: Patience = THOROUGH
 ) -> list[tuple[Problem, Peak, Width]]:
-    """Those with weight in the part; where a part is most of all there is, it costs little to doubt it for longer."""
-    least = LEAST_WEIGHT if len(events.units) > LARGE else np.exp(-CLOSE)
+    """Those that had at least so much weight."""
     return [
         fit_on(events, *one[:2], patience) if weight >= least else out_of_the_running(*one)
         for one, weight in zip(fits, weigh(fits), strict=True)

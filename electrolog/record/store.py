@@ -256,12 +256,9 @@ def _bring_to_revision(record: Record, create: bool) -> None:
         raise RecordError(f"{record.name} holds no record", "make one there with `electrolog setup`")
     if found is not None:
         refuse_newer(record, found)
-        raise RecordError(
-            f"{record.name} is of an older version (revision {found}, now {schema.REVISION})",
-            "bring it up with `electrolog setup`; a copy is made first"
-            if record.is_file
-            else "its owner brings it up with `electrolog setup`, after a backup by the server's own means",
-        )
+        first = "a copy is made first" if record.is_file else "as its owner, and after a backup"
+        older = f"{record.name} is of an older version (revision {found}, now {schema.REVISION})"
+        raise RecordError(older, f"bring it up with `electrolog setup`; {first}")
     from electrolog.record import migrate
 
     migrate.create(record)
