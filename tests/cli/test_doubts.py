@@ -3,6 +3,8 @@
 from __future__ import annotations
 
 import os
+import select
+import signal
 import sys
 import time
 from pathlib import Path
@@ -110,24 +112,32 @@ def test_at_a_terminal_it_is_asked(cli: Any, typed: str, status: int, written: i
 
 
 def at_a_terminal(arguments: list[str], typed: str) -> tuple[str, int]:
-    """What a pseudo-terminal showed, and the exit status."""
+    """What a pseudo-terminal showed, and the exit status.
+
+    Typed again while nothing happens: an interrupt that comes just before Python listens is noticed at the next key.
+    """
     import pty
 
     child, master = pty.fork()
     if child == 0:
         os.execv(sys.executable, [sys.executable, "-m", "electrolog", *arguments])  # noqa: S606
-    said, answered, deadline = b"", False, time.monotonic() + 60
+    said, deadline = b"", time.monotonic() + 60
     while time.monotonic() < deadline:
+        if not select.select([master], [], [], 2.0)[0]:
+            if b"[y/N]" in said:
+                os.write(master, typed.encode())
+            continue
         try:
             part = os.read(master, 4096)
         except OSError:  # Linux's way to say that the other end is gone
             break
         if not part:
             break
-        said += part
-        if b"[y/N]" in said and not answered:
+        if b"[y/N]" in part:
             os.write(master, typed.encode())
-            answered = True
+        said += part
+    else:
+        os.kill(child, signal.SIGKILL)
     os.close(master)
     return said.decode(), os.waitstatus_to_exitcode(os.waitpid(child, 0)[1])
 

@@ -62,7 +62,7 @@ def test_a_fit_kept_in_another_layout_is_thrown_away_and_made_again(lived_in: La
     migrate.to_revision(lived_in.record, "0001")
     assert "seen_newest" not in {column["name"] for column in inspect(lived_in.record.engine).get_columns("kept_fits")}
     columns = "analyte_id, method, fingerprint, seen_readings, seen_correction, made_at, fit"
-    values = "id, 'cohort-4', 'x', 2, 0, '2026-01-01T00:00:00.000000Z', '{}'"
+    values = "id, 'cohort-0', 'x', 2, 0, '2026-01-01T00:00:00.000000Z', '{}'"
     raw(lived_in, f"INSERT INTO kept_fits ({columns}) SELECT {values} FROM analytes WHERE analyte = 'dopamine'")
     migrate.to_revision(lived_in.record, schema.REVISION)
     assert raw(lived_in, "SELECT * FROM kept_fits") == []
