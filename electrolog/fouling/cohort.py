@@ -30,9 +30,10 @@ DRAWS = (32, 96)  # of the hyper-parameters, over all shapes: in a large cohort,
 HOPELESS = 25.0  # nats behind the best shape: not climbed to its end
 CLOSE = 10.0  # nats behind the best shape: its evidence is worth a closer look
 PRIOR_ODDS = {"none": 0.1}  # against any other shape: a probe in use that doesn't foul at all is rare
-SMALL, LARGE = 400, 2000  # units of a cohort climbed at once; of one whose peak's width is found by differences
+SMALL, LARGE = 400, 2000  # units of a cohort that is climbed at once; of one that is climbed part by part
 PART, LARGER = 300, 5  # units of the part of it that tells shapes apart, and by how much each part outgrows the last
 YOUNG, YOUNG_DRAWS = 60, 32  # units of a young cohort; its draws of the hyper-parameters, each settled by itself
+WORSE = 0.1  # nats a unit: more units of the same lab explain theirs as well as fewer did
 LEAST_WEIGHT = 0.01  # a shape with less is named, but not drawn from
 
 
@@ -75,29 +76,40 @@ def weigh(fits: list[tuple[Problem, Peak, Width]]) -> Floats:
 
 
 def fit_shapes(events: Events, shapes: tuple[str, ...]) -> list[tuple[Problem, Peak, Width]]:
-    """Every shape at its peak.
-
-    In all but a small cohort a part tells the shapes apart; those with weight there go on to ever larger parts, and at
-    last to all units, each time from where they ended: so near to the peak, a step or two suffice. Where the part is
-    much of all there is, it costs little to doubt it for longer.
-    """
+    """Every shape at its peak. In all but a small cohort a part tells the shapes apart."""
     n_units = len(np.unique(events.unit[events.kind == READING]))
     if n_units <= SMALL:
         return fit_each(events, shapes)
     fits = fit_each(take_units(events, neighbours_in_time(events, PART)), shapes, rough=True)
-    least, size = (LEAST_WEIGHT if n_units > LARGE else np.exp(-CLOSE)), PART * LARGER
+    return fit_likely(events, fits) if n_units <= LARGE else fit_by_parts(events, fits, n_units)
+
+
+def fit_likely(events: Events, fits: list[tuple[Problem, Peak, Width]]) -> list[tuple[Problem, Peak, Width]]:
+    """From the beginning, those that aren't far behind in the part: all units are few enough for that."""
+    far = weigh(fits) < np.exp(-CLOSE)
+    likely = tuple(p.layout.shape.name for (p, _, _), out in zip(fits, far, strict=True) if not out)
+    found = iter(fit_each(events, likely))
+    return [out_of_the_running(*one) if out else next(found) for one, out in zip(fits, far, strict=True)]
+
+
+def fit_by_parts(
+    events: Events, fits: list[tuple[Problem, Peak, Width]], n_units: int
+) -> list[tuple[Problem, Peak, Width]]:
+    """Those with weight go on to ever larger parts, and at last to all units, each time from where they ended: so near
+    to the peak, a step or two suffice.
+    """
+    size = PART * LARGER
     while size * 2 < n_units:
-        fits = fit_further(take_units(events, neighbours_in_time(events, size)), fits, least, ROUGH)
+        fits = fit_further(take_units(events, neighbours_in_time(events, size)), fits, ROUGH)
         size *= LARGER
-    return fit_further(events, fits, least)
+    return fit_further(events, fits)
 
 
 def fit_further(
-    events: Events, fits: list[tuple[Problem, Peak, Width]], least: float, patience: Patience = THOROUGH
+    events: Events, fits: list[tuple[Problem, Peak, Width]], patience: Patience = THOROUGH
 ) -> list[tuple[Problem, Peak, Width]]:
-    """Those that had at least so much weight."""
     return [
-        fit_on(events, *one[:2], patience) if weight >= least else out_of_the_running(*one)
+        fit_on(events, *one[:2], patience) if weight >= LEAST_WEIGHT else out_of_the_running(*one)
         for one, weight in zip(fits, weigh(fits), strict=True)
     ]
 
@@ -108,13 +120,23 @@ def out_of_the_running(problem: Problem, peak: Peak, width: Width) -> tuple[Prob
 
 
 def fit_on(events: Events, problem: Problem, peak: Peak, patience: Patience) -> tuple[Problem, Peak, Width]:
-    """What fewer units have found is where more begin; with very many the scores' outer product is the curvature."""
+    """What fewer units have found is where more begin; with so many the scores' outer product is the curvature.
+
+    Where that doesn't lead to an end as good, it is begun from the prior too: the stand-ins of days and units may have
+    settled where a bad day is as many slips.
+    """
     whole = pose(events, problem.layout.shape.name)
     known = dict(zip((p.name for p in problem.layout.priors), peak.theta, strict=True))
     theta = np.array([known.get(prior.name, prior.mean) for prior in whole.layout.priors])
     top = climb(whole, theta, patience=patience)
-    exact = patience is THOROUGH and len(events.units) <= LARGE
-    return whole, top, widths(whole, top) if exact else rough_width(whole, top)
+    if not top.converged or per_unit(whole, top) < per_unit(problem, peak) - WORSE:
+        anew = climb(whole, np.array([prior.mean for prior in whole.layout.priors]), patience=patience)
+        top = max(top, anew, key=lambda one: one.log_posterior)
+    return whole, top, rough_width(whole, top)
+
+
+def per_unit(problem: Problem, peak: Peak) -> float:
+    return peak.log_posterior / max(1, len(problem.events.units))
 
 
 def fit_each(events: Events, shapes: tuple[str, ...], rough: bool = False) -> list[tuple[Problem, Peak, Width]]:

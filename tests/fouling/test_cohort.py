@@ -10,7 +10,8 @@ import numpy as np
 import pytest
 
 from electrolog.errors import DataError
-from electrolog.fouling import shared
+from electrolog.fouling import cohort, shared
+from electrolog.fouling.ascend import THOROUGH
 from electrolog.fouling.cohort import fit_cohort
 from electrolog.fouling.events import EXPOSURE, READING, RENEWAL, Events
 from electrolog.fouling.fit import CohortFit
@@ -114,6 +115,33 @@ class TestKnownTruth:
         hurt = {known.events.units[u] for u in np.flatnonzero(known.truth.units.damaged_at_run)}
         assert len(found & hurt) >= 4
         assert len(found - hurt) <= 3
+
+
+class TestParts:
+    @pytest.mark.parametrize(("hoped_for", "begun"), [(-1e4, 1), (1e4, 2)])
+    def test_where_more_units_end_worse_than_a_part_they_are_begun_anew(self, lab, monkeypatch, hoped_for, begun):
+        ((problem, peak, _),) = cohort.fit_each(lab.events, ("exponential",), rough=True)
+        climb, tops = cohort.climb, []
+
+        def watched(*told, **more):
+            tops.append(climb(*told, **more))
+            return tops[-1]
+
+        monkeypatch.setattr(cohort, "climb", watched)
+        part = replace(peak, log_posterior=peak.log_posterior + hoped_for)
+        _, top, _ = cohort.fit_on(lab.events, problem, part, THOROUGH)
+        assert len(tops) == begun
+        assert top.log_posterior == max(one.log_posterior for one in tops)
+
+    def test_a_shape_far_behind_in_the_part_has_no_weight_and_the_others_are_fitted_to_all(self, monkeypatch):
+        monkeypatch.setattr(cohort, "SMALL", 100)
+        monkeypatch.setattr(cohort, "PART", 60)
+        known = fleet("exponential", 3, 160)
+        fit = fit_cohort(known.events)
+        assert fit.n_units == 160
+        assert fit.shape_weights["none"] == 0.0
+        assert fit.shape_weights["exponential"] > 0.5
+        assert fit.converged
 
 
 class TestKeptFit:
