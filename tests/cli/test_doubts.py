@@ -120,6 +120,7 @@ def at_a_terminal(arguments: list[str], typed: str) -> tuple[str, int]:
 
     child, master = pty.fork()
     if child == 0:
+        signal.signal(signal.SIGINT, signal.SIG_DFL)  # a shell makes what it starts in the background deaf to it
         os.execv(sys.executable, [sys.executable, "-m", "electrolog", *arguments])  # noqa: S606
     said, deadline = b"", time.monotonic() + 60
     while time.monotonic() < deadline:
