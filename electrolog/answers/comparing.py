@@ -112,7 +112,7 @@ def _lab(record: Record, by: By, analyte: str, waveform: str | None) -> _Lab:
         found = queries.calibrations(connection, None, assay.analyte_id)
         chosen = "" if by is By.WAVEFORM else _waveform(connection, waveform, [one.row["waveform"] for one in found])
     life = {label: lives.until(events, now) for label, events in told.items()}
-    summary = fit_for(record, assay).summary
+    summary = fit_for(record, assay, units=()).summary
     weights = {row["setting"]: row["median"] for row in summary["settings"]}
     slips = frozenset((row["unit"], row["reading"]) for row in summary["slips"])
     return _Lab(assay.analyte, chosen, probes, life, all_figures(record, found), weights, slips)

@@ -50,7 +50,7 @@ def fan(record: Record, analyte: str) -> Fan:
             label: events[-1].row["material"]
             for label, events in queries.events(connection, None, (sheets.COATINGS,)).items()
         }
-    fit = fits.fit_for(record, asked)
+    fit = fits.fit_for(record, asked, units=())
     weights = {row["setting"]: row["median"] for row in fit.summary["settings"]}
     trails = _trails(history.readings(record, labels, asked.analyte), weights, films)
     longest = max((hours for trail in trails for hours in trail.hours), default=0.0)
@@ -60,7 +60,7 @@ def fan(record: Record, analyte: str) -> Fan:
 def typical_losses(record: Record, analyte: str) -> list[TypicalLoss]:
     with record.reading() as connection:
         asked = whole_cohort(connection, analyte)
-    return _typical(fits.fit_for(record, asked))
+    return _typical(fits.fit_for(record, asked, units=()))
 
 
 def _typical(fit: CohortFit, longest_h: float | None = None) -> list[TypicalLoss]:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import hashlib
+from collections.abc import Mapping
 from dataclasses import replace
 
 import numpy as np
@@ -126,13 +127,20 @@ def fit_on(events: Events, problem: Problem, peak: Peak, patience: Patience) -> 
     settled where a bad day is as many slips.
     """
     whole = pose(events, problem.layout.shape.name)
-    known = dict(zip((p.name for p in problem.layout.priors), peak.theta, strict=True))
-    theta = np.array([known.get(prior.name, prior.mean) for prior in whole.layout.priors])
-    top = climb(whole, theta, patience=patience)
+    top = climb(whole, beginning(whole, named(problem, peak)), patience=patience)
     if not top.converged or per_unit(whole, top) < per_unit(problem, peak) - WORSE:
-        anew = climb(whole, np.array([prior.mean for prior in whole.layout.priors]), patience=patience)
+        anew = climb(whole, beginning(whole, {}), patience=patience)
         top = max(top, anew, key=lambda one: one.log_posterior)
     return whole, top, rough_width(whole, top)
+
+
+def named(problem: Problem, peak: Peak) -> dict[str, float]:
+    return dict(zip((prior.name for prior in problem.layout.priors), peak.theta.tolist(), strict=True))
+
+
+def beginning(problem: Problem, known: Mapping[str, float]) -> Floats:
+    """Theta where a climb begins: what is known by name, the prior's mean of the rest."""
+    return np.array([known.get(prior.name, prior.mean) for prior in problem.layout.priors])
 
 
 def per_unit(problem: Problem, peak: Peak) -> float:
@@ -146,11 +154,12 @@ def fit_each(events: Events, shapes: tuple[str, ...], rough: bool = False) -> li
     best = -np.inf
     for name in shapes:
         problem = pose(events, name)
-        theta = np.array([known.get(prior.name, prior.mean) for prior in problem.layout.priors])
-        peak = climb(problem, theta, best - (CLOSE if rough else HOPELESS), ROUGH if rough else THOROUGH)
+        peak = climb(
+            problem, beginning(problem, known), best - (CLOSE if rough else HOPELESS), ROUGH if rough else THOROUGH
+        )
         if peak.log_posterior > best:
             best = peak.log_posterior
-            known.update(zip((p.name for p in problem.layout.priors), peak.theta, strict=True))
+            known |= named(problem, peak)
         climbed.append((problem, peak))
     guesses = [(problem, peak, rough_width(problem, peak)) for problem, peak in climbed]
     if rough:

@@ -101,9 +101,11 @@ def _read_file(path: Path, sheet: Sheet, zone: tzinfo | None, faults: Faults) ->
 
 def _no_table(path: Path) -> str | None:
     """Why the file isn't even opened: a pipe or a device has no end, and what is too large would fill the memory."""
-    if path.exists() and not path.is_file():
+    if not path.exists():  # a link that leads nowhere: opening it says so
+        return None
+    if not path.is_file():
         return "is a pipe or a device; accepted: a file"
-    size = path.stat().st_size if path.exists() else 0
+    size = path.stat().st_size
     if size <= MOST_BYTES:
         return None
     return (

@@ -34,7 +34,6 @@ class KeptFit:
 class Sealed:
     """A fit ready to be kept: its row, and each unit's. Made beforehand, or everybody would wait for it to write."""
 
-    seen: Seen
     row: Mapping[str, Any]
     units: Mapping[str, str]
 
@@ -47,8 +46,7 @@ def kept_fit(connection: Connection, analyte_id: int) -> KeptFit | None:
     if not found:
         return None
     row = found[0]
-    seen = Seen(row["seen_readings"], row["seen_newest"] or 0, row["seen_correction"])
-    return KeptFit(row["method"], row["fingerprint"], seen, row["made_at"])
+    return KeptFit(row["method"], row["fingerprint"], _seen_of(row), row["made_at"])
 
 
 def content(connection: Connection, analyte_id: int, units: Collection[str] | None = None) -> dict[str, Any]:
@@ -103,7 +101,7 @@ def sealed(analyte_id: int, method: str, fingerprint: str, seen: Seen, fit: Mapp
     shared = _hashed(_said(row), told)
     own = {unit: json.dumps(part, allow_nan=False) for unit, part in fit["units"].items()}
     units = {unit: _hashed(_hash(shared) + unit, text) for unit, text in own.items()}
-    return Sealed(seen, row | {"fit": shared}, units)
+    return Sealed(row | {"fit": shared}, units)
 
 
 def keep_fit(writer: Writer, fit: Sealed) -> None:
@@ -126,8 +124,11 @@ def _had_seen_more(connection: Connection, fit: Sealed) -> bool:
     before = _readable(connection, select(table).where(table.c.analyte_id == fit.row["analyte_id"]))
     if not before or before[0]["method"] != fit.row["method"] or not _is_whole(before[0]):
         return False
-    row = before[0]
-    return not _as_much(fit.seen, Seen(row["seen_readings"], row["seen_newest"] or 0, row["seen_correction"]))
+    return not _as_much(_seen_of(fit.row), _seen_of(before[0]))
+
+
+def _seen_of(row: Mapping[str, Any]) -> Seen:
+    return Seen(row["seen_readings"], row["seen_newest"] or 0, row["seen_correction"])
 
 
 def _readable(connection: Connection, query: Select[Any]) -> list[Mapping[str, Any]] | None:
